@@ -1,4 +1,4 @@
-"""Factor between ``resistance * capacitance`` and the 50 % delay: an ideal step, or a chain of alike stages."""
+"""Factor between ``resistance * capacitance`` and the 50 % delay: ideal step, or chain of alike stages."""
 
 from __future__ import annotations
 
@@ -22,8 +22,8 @@ CHAIN_FLOOR = 0.60
 def chain_factor(switching_level: ArrayLike) -> Array:
     """Return the factor F of ``F * R * C`` for a stage inside a chain of alike stages.
 
-    The input of a stage in a chain is no step but the exponential of the stage before; the switch waits until that
-    input has passed its own switching level w (the input level where R = 2 R_on at this supply)::
+    The input of a stage in a chain is no step but the exponential of the stage before; the switch waits until
+    that input has passed its own switching level w (the input level where R = 2 R_on at this supply)::
 
         F = max(0.60, ln(1 / (1 - w)))
 
@@ -39,10 +39,10 @@ def chain_factor(switching_level: ArrayLike) -> Array:
 
     Notes
     -----
-    Valid for complementary pairs of equal switches whose actuation is fast against R C (tau/RC < 0.3) and whose
-    window lies inside the swing; own simulation of 20 chains puts the error of the rule at -8 to +4 % (-11 % for
-    windows that fill the whole swing). No upper bound is applied: bounding w at 0.846 errs by -31 to -41 % on
-    full-swing windows. The step-driven stage has F = ``STEP_FACTOR`` instead.
+    Valid for complementary pairs of equal switches whose actuation is fast against R C (tau/RC < 0.3) and
+    whose window lies inside the swing; simulation of 20 chains puts the error of the rule at -8 to +4 %
+    (-11 % for windows that fill the whole swing). No upper bound is applied: bounding w at 0.846 errs by -31
+    to -41 % on full-swing windows. The step-driven stage has F = ``STEP_FACTOR`` instead.
     """
     level = np.asarray(switching_level, dtype=np.float64)
     with np.errstate(divide="ignore", invalid="ignore"):
