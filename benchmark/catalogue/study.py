@@ -1,0 +1,74 @@
+"""Value names of studies and the product classes (layer 1)."""
+
+from __future__ import annotations
+
+from benchmark.catalogue.quantity import Quantity
+
+__all__ = ["PRODUCT_CLASSES", "STUDY_QUANTITIES"]
+
+#: product class -> what usually decides (from memory, common practice, no source)
+PRODUCT_CLASSES: dict[str, str] = {
+    "always-on hub": "leakage over long idle times; state retention; power-gated high-threshold CMOS is the rival",
+    "microcontroller": "minimum energy with a deadline; cold delay near threshold",
+    "mobile core": "mix of burst speed and idle leakage",
+    "server core": "energy at equal delay, power density",
+    "multiply-accumulate array": "throughput per area at a power-density cap",
+    "memory periphery": "driving long lines at a voltage set by the cell",
+    "other": "stated in the study",
+}
+
+STUDY_QUANTITIES: tuple[Quantity, ...] = (
+    Quantity("clock_frequency", "f", "clock frequency; its inverse is the cycle time", "MHz", 0.001, 1.0e4),
+    Quantity("activity", "a", "rising transitions per clock cycle per net", "1", 1.0e-5, 1.0, "fraction"),
+    Quantity(
+        "busiest_activity",
+        "a_max",
+        "rising transitions per clock cycle of the busiest net",
+        "1",
+        1.0e-3,
+        1.0,
+        "fraction",
+    ),
+    Quantity("duty", "D", "share of the life in which the block is clocked", "1", 1.0e-6, 1.0, "fraction"),
+    Quantity("logic_depth", "N", "logic stages between registers", "1", 2.0, 100.0, "count"),
+    Quantity("gate_count", "G", "logic gates in the block, without registers", "1", 1.0, 1.0e9, "count"),
+    Quantity("register_count", "G_r", "registers in the block", "1", 1.0, 1.0e8, "nonnegative"),
+    Quantity("fan_out", "F", "driven inputs per net", "1", 0.5, 32.0, "nonnegative"),
+    Quantity("average_net_length", "L", "average length of a net", "um", 0.1, 1.0e4, "nonnegative"),
+    Quantity(
+        "average_net_pitches",
+        "L_p",
+        "average length of a net in gate pitches of each technology",
+        "1",
+        0.5,
+        1.0e3,
+        "nonnegative",
+    ),
+    Quantity("stage_count", "N_ring", "stages of a ring", "1", 3.0, 101.0, "count"),
+    Quantity("residual_leakage", "r", "share of the leakage left when power-gated", "1", 1.0e-4, 1.0, "fraction"),
+    Quantity(
+        "wake_energy_cycles",
+        "k_w",
+        "energy of one wake-up in full-swing cycles of the whole block (C V^2)",
+        "1",
+        0.1,
+        1000.0,
+        "nonnegative",
+    ),
+    Quantity("idle_time", "t_idle", "length of one idle period", "s", 1.0e-6, 1.0e5, "nonnegative"),
+    Quantity("active_cycles", "N_act", "clock cycles awake per idle period", "1", 1.0, 1.0e12),
+    Quantity(
+        "level_shifter_energy", "E_ls", "energy of level shifters per operation", "fJ", 1.0e-3, 1.0e6, "nonnegative"
+    ),
+    Quantity("level_shifter_delay", "t_ls", "delay of level shifters per operation", "ps", 0.1, 1.0e4, "nonnegative"),
+    Quantity("supply_efficiency", "eta", "efficiency of generating the supply", "1", 0.3, 1.0, "fraction"),
+    Quantity(
+        "overhead_power",
+        "P_ov",
+        "standing power of bias, pumps and drivers of the block",
+        "nW",
+        1.0e-6,
+        1.0e6,
+        "nonnegative",
+    ),
+)

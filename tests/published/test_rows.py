@@ -1,0 +1,69 @@
+"""Every bound check row holds, and a 7 % error in any exercised function is noticed by some row."""
+
+from __future__ import annotations
+
+import functools
+import importlib
+import pkgutil
+from collections import defaultdict
+from typing import Any
+
+import numpy as np
+import pytest
+
+import tests.published as here
+from tests.published.rows import Binding, failures, load
+
+ROWS = load()
+
+
+def _bindings() -> list[Binding]:
+    found: list[Binding] = []
+    for info in pkgutil.iter_modules(here.__path__):
+        if info.name.startswith("bind_"):
+            found += importlib.import_module(f"tests.published.{info.name}").BINDINGS
+    return found
+
+
+BINDINGS = _bindings()
+
+
+def test_every_binding_names_an_existing_row_once():
+    names = [binding.row for binding in BINDINGS]
+    assert set(names) <= set(ROWS)
+    assert len(names) == len(set(names))
+
+
+@pytest.mark.parametrize("binding", BINDINGS, ids=lambda b: b.row)
+def test_row_holds(binding: Binding):
+    assert failures(binding, ROWS[binding.row]) == []
+
+
+def _perturb(result: Any) -> Any:
+    if isinstance(result, tuple):
+        return tuple(_perturb(item) for item in result)
+    if isinstance(result, dict):
+        return {key: _perturb(item) for key, item in result.items()}
+    if isinstance(result, (int, float, np.ndarray, np.generic)):
+        return result * 1.07
+    return result
+
+
+EXERCISED: dict[str, list[Binding]] = defaultdict(list)
+for _binding in BINDINGS:
+    for _name in _binding.exercises:
+        EXERCISED[_name].append(_binding)
+
+
+@pytest.mark.parametrize("name", sorted(EXERCISED))
+def test_a_wrong_function_is_noticed(name: str, monkeypatch: pytest.MonkeyPatch):
+    module_name, _, function_name = name.partition(":")
+    module = importlib.import_module(module_name)
+    original = getattr(module, function_name)
+
+    @functools.wraps(original)
+    def wrong(*args: Any, **kwargs: Any) -> Any:
+        return _perturb(original(*args, **kwargs))
+
+    monkeypatch.setattr(module, function_name, wrong)
+    assert any(failures(binding, ROWS[binding.row]) for binding in EXERCISED[name])
