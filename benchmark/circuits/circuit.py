@@ -1,0 +1,144 @@
+"""Circuits as lists of nets: a driver, its loads, its wire, its activity (layer 5). The same for every technology.
+
+Numbers may be plain floats or arrays that broadcast with the arrays of the switch records (scenario values drawn at
+random have the shape (draw, 1, 1)). Everything is SI.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+from typing import Literal
+
+from benchmark.circuits.cells import Cell
+from benchmark.devices.record import Array
+from benchmark.errors import UsageError
+
+__all__ = ["Circuit", "Layer", "LengthUnit", "Load", "Net", "SwingFrom", "Value", "Wires"]
+
+Value = float | Array
+LengthUnit = Literal["m", "gate_pitch"]
+SwingFrom = Literal["own-rail", "supply"]
+
+
+@dataclass(frozen=True)
+class Layer:
+    """Wire of one layer, resistance [ohm/m] and capacitance [F/m] per length."""
+
+    resistance_per_length: Value
+    capacitance_per_length: Value
+
+
+@dataclass(frozen=True)
+class Wires:
+    """The wire set both sides of a study use at a node.
+
+    resistance_per_length [ohm/m], capacitance_per_length [F/m]
+        of the layer ``local``; a circuit may state further layers of its own.
+    layout_capacitance_per_pin [F]
+        layout parasitic added to every gate input and every gate output, of both sides alike.
+    """
+
+    resistance_per_length: Value
+    capacitance_per_length: Value
+    layout_capacitance_per_pin: Value = 0.0
+
+    def layer(self, name: str, stated: Mapping[str, Layer]) -> Layer:
+        """Return a layer: one the circuit states, or ``local``, the one of this set."""
+        if name in stated:
+            return stated[name]
+        if name == "local":
+            return Layer(self.resistance_per_length, self.capacitance_per_length)
+        message = f"no wire layer {name!r}; known are {', '.join(sorted({*stated, 'local'}))}"
+        raise UsageError(message)
+
+
+@dataclass(frozen=True)
+class Load:
+    """``count`` inputs named ``input`` of cells ``cell`` at the far end of a net."""
+
+    cell: Cell
+    input: str
+    count: Value = 1.0
+
+
+@dataclass(frozen=True)
+class Net:
+    """One net, or ``count`` alike nets, with the cell that drives each of them.
+
+    driver
+        The cell whose output the net is. Its switches, leakage and area belong to this net.
+    loads, fixed_load [F]
+        Driven inputs and a fixed capacitance, both at the far end of the wire.
+    wire_length [m or gate pitches]
+        ``length_unit`` says which; a gate pitch is the square root of the mean cell area of the circuit in the
+        technology at hand, so a larger cell pays with longer wires.
+    layer
+        Wire layer, ``local`` or one that the circuit states.
+    swing [V]
+        None: the full supply. A value fixed from outside (by a memory cell, a pad) is the same for all technologies.
+    swing_from
+        ``own-rail``: the net is charged from a rail of the voltage ``swing``, energy C swing^2.
+        ``supply``: it is charged from the logic supply V through part of the swing, energy C V swing.
+    rising_per_operation [1]
+        Activity: rising transitions of one such net per operation.
+    busiest_per_operation [1]
+        Rising transitions per operation of the busiest of these nets; endurance is judged on it.
+        None: ``rising_per_operation``.
+    count [1]
+        Number of alike nets (and drivers).
+    on_critical_path [1]
+        How many times a stage like this occurs on the critical path.
+    group
+        Bill in which the energy is listed: ``logic``, ``register``, ``clock`` or a name of the circuit's own.
+    """
+
+    name: str
+    driver: Cell
+    loads: tuple[Load, ...] = ()
+    fixed_load: Value = 0.0
+    wire_length: Value = 0.0
+    length_unit: LengthUnit = "m"
+    layer: str = "local"
+    swing: Value | None = None
+    swing_from: SwingFrom = "own-rail"
+    rising_per_operation: Value = 0.0
+    busiest_per_operation: Value | None = None
+    count: Value = 1.0
+    on_critical_path: Value = 0.0
+    group: str = "logic"
+
+    @property
+    def busiest(self) -> Value:
+        """Return the rising transitions per operation of the busiest of these nets."""
+        return self.rising_per_operation if self.busiest_per_operation is None else self.busiest_per_operation
+
+
+@dataclass(frozen=True)
+class Circuit:
+    """A named list of nets doing one operation.
+
+    operation
+        What one operation is, in words ("one clock cycle", "one row access").
+    layers
+        Wire layers that the circuit states itself.
+    notes
+        What was assumed when the nets were made, one sentence each.
+    """
+
+    name: str
+    title: str
+    operation: str
+    nets: tuple[Net, ...]
+    layers: Mapping[str, Layer] = field(default_factory=dict)
+    notes: tuple[str, ...] = ()
+
+    def __post_init__(self) -> None:
+        if not self.nets:
+            message = f"circuit {self.name!r} has no net"
+            raise UsageError(message)
+        names = [net.name for net in self.nets]
+        twice = sorted({name for name in names if names.count(name) > 1})
+        if twice:
+            message = f"circuit {self.name!r}: net names occur twice: {', '.join(twice)}"
+            raise UsageError(message)
