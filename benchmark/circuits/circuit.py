@@ -122,7 +122,7 @@ class Circuit:
         What one operation is, in words ("one clock cycle", "one row access").
     layers
         Wire layers that the circuit states itself.
-    notes
+    assumptions
         What was assumed when the nets were made, one sentence each.
     """
 
@@ -131,7 +131,7 @@ class Circuit:
     operation: str
     nets: tuple[Net, ...]
     layers: Mapping[str, Layer] = field(default_factory=dict)
-    notes: tuple[str, ...] = ()
+    assumptions: tuple[str, ...] = ()
 
     def __post_init__(self) -> None:
         if not self.nets:
