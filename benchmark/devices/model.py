@@ -21,7 +21,7 @@ from dataclasses import dataclass, field
 from typing import Any
 
 from benchmark.devices.record import Array, SwitchPair
-from benchmark.physics.measured import MeasuredTable
+from benchmark.measured import MeasuredTable
 
 __all__ = ["Default", "DeviceModel", "Finding", "Input", "ModelInputs", "Option", "Prepared"]
 

@@ -1,0 +1,68 @@
+"""Formulas of derived values: + - * / ** and names of the same set, never evaluated as code (layer 2)."""
+
+from __future__ import annotations
+
+import ast
+from collections.abc import Mapping
+
+import numpy as np
+from numpy.typing import NDArray
+
+__all__ = ["FormulaError", "evaluate_formula"]
+
+_MAX_LENGTH = 400
+
+
+class FormulaError(ValueError):
+    """The formula uses something that is not allowed, or a name the set does not have."""
+
+
+def evaluate_formula(text: str, values: Mapping[str, NDArray[np.float64]]) -> NDArray[np.float64]:
+    """Evaluate a formula over SI values.
+
+    Raises
+    ------
+    FormulaError
+        With the reason, in words.
+    """
+    if len(text) > _MAX_LENGTH:
+        message = f"is longer than {_MAX_LENGTH} characters"
+        raise FormulaError(message)
+    try:
+        tree = ast.parse(text, mode="eval")
+        with np.errstate(all="raise"):
+            return np.atleast_1d(np.asarray(_walk(tree.body, values), dtype=np.float64))
+    except (SyntaxError, ValueError, RecursionError, MemoryError) as error:
+        if isinstance(error, FormulaError):
+            raise
+        message = "is not an arithmetic expression"
+        raise FormulaError(message) from error
+    except (ArithmeticError, FloatingPointError) as error:
+        message = "cannot be computed with these values"
+        raise FormulaError(message) from error
+
+
+def _walk(node: ast.AST, values: Mapping[str, NDArray[np.float64]]) -> NDArray[np.float64]:
+    if isinstance(node, ast.Constant) and isinstance(node.value, (int, float)) and not isinstance(node.value, bool):
+        return np.asarray(float(node.value))
+    if isinstance(node, ast.Name):
+        if node.id not in values:
+            message = f"uses {node.id!r}, which the set does not have"
+            raise FormulaError(message)
+        return values[node.id]
+    if isinstance(node, ast.UnaryOp) and isinstance(node.op, ast.USub):
+        return -_walk(node.operand, values)
+    if isinstance(node, ast.BinOp):
+        left, right = _walk(node.left, values), _walk(node.right, values)
+        if isinstance(node.op, ast.Add):
+            return left + right
+        if isinstance(node.op, ast.Sub):
+            return left - right
+        if isinstance(node.op, ast.Mult):
+            return left * right
+        if isinstance(node.op, ast.Div):
+            return left / right
+        if isinstance(node.op, ast.Pow):
+            return np.asarray(left**right)
+    message = "may use only names, numbers and + - * / **"
+    raise FormulaError(message)

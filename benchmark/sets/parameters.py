@@ -1,0 +1,386 @@
+"""Parameter sets: a validated file as SI arrays by node, with provenance (layer 2)."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Callable, Iterable, Mapping, Sequence
+from dataclasses import dataclass, field
+from pathlib import Path
+from typing import Any, Protocol
+
+import numpy as np
+
+from benchmark.catalogue import QUANTITIES, TECHNOLOGY_QUANTITIES, WIRE_QUANTITIES
+from benchmark.errors import nearest
+from benchmark.measured import MeasuredTable
+from benchmark.sets.files import TomlFile
+from benchmark.sets.formulas import FormulaError, evaluate_formula
+from benchmark.sets.problems import Collector
+from benchmark.sets.schema import AnchorTable, DefaultsTable, Measure, RowTable, TechnologyFile, WiresFile, validate
+from benchmark.sets.tables import TableFile, read_table
+from benchmark.sets.values import Place, Value, convert_measure, convert_range, convert_value
+
+__all__ = ["Anchor", "ModelDeclaration", "ParameterSet", "build_technology", "build_wires"]
+
+
+class ModelDeclaration(Protocol):
+    """What this layer needs to know of a device model (``benchmark.devices.model.DeviceModel`` has it)."""
+
+    @property
+    def name(self) -> str: ...  # noqa: D102
+    @property
+    def inputs(self) -> Sequence[Any]: ...  # noqa: D102
+    @property
+    def options(self) -> Sequence[Any]: ...  # noqa: D102
+    @property
+    def tables(self) -> Mapping[str, bool]: ...  # noqa: D102
+
+
+@dataclass(frozen=True)
+class Anchor:
+    """A published number the set must predict."""
+
+    name: str
+    node: str
+    si: float
+    low: float
+    high: float
+    unit: str
+    supply: float | None
+    source: str
+    where: str
+    conditions: str
+    note: str
+
+
+@dataclass(frozen=True)
+class ParameterSet:
+    """One technology or wires set. ``values`` holds user values and defaults; ``options`` likewise."""
+
+    id: str
+    title: str
+    kind: str
+    model: str
+    nodes: tuple[str, ...]
+    flavour: str
+    ambition: str
+    note: str
+    options: Mapping[str, str]
+    default_options: frozenset[str]
+    values: Mapping[str, Value]
+    tables: Mapping[str, TableFile]
+    rows: Mapping[str, MeasuredTable]  # by node, for sets known by stage results
+    anchors: tuple[Anchor, ...]
+    valid: Mapping[str, tuple[float, float]]
+    file: str
+    sha256: str
+    text: str
+    path: Path
+    lines: Mapping[str, int] = field(default_factory=dict)
+
+    def position(self, node: str) -> int:
+        """Return the index of a node label."""
+        return self.nodes.index(node)
+
+    def at(self, node: str) -> dict[str, Value]:
+        """Return every value at one node."""
+        position = self.position(node)
+        return {name: value.at(position) for name, value in self.values.items()}
+
+
+def _quantity_names(kind: str) -> list[str]:
+    quantities = WIRE_QUANTITIES if kind == "wires" else TECHNOLOGY_QUANTITIES
+    return [quantity.name for quantity in quantities]
+
+
+def _convert_values(
+    tables: Mapping[str, Any], allowed: Iterable[str], nodes: Sequence[str], file: TomlFile, defaults: Any,
+    sources: frozenset[str], collector: Collector, owner: str,
+) -> dict[str, Value]:
+    allowed = list(allowed)
+    values: dict[str, Value] = {}
+    for name, table in tables.items():
+        dotted = f"value.{name}"
+        if name not in allowed:
+            known = name in QUANTITIES
+            collector.add(
+                file.problem(dotted, f"is not used by {owner}" if known else "is not a known name",
+                             "", ", ".join(sorted(allowed)), nearest(name, allowed))
+            )
+            continue
+        place = Place(file, dotted, defaults, sources)
+        value = convert_value(QUANTITIES[name], table, nodes, place, collector)
+        if value is not None:
+            values[name] = value
+    return values
+
+
+def _check_formulas(values: Mapping[str, Value], file: TomlFile, tables: Mapping[str, Any], collector: Collector) -> None:
+    """Recompute every derived value; it must agree within half a unit of its last printed digit."""
+    arrays = {name: value.si for name, value in values.items()}
+    for name, value in values.items():
+        dotted = f"value.{name}"
+        if value.evidence == "derived" and not value.formula:
+            collector.add(file.problem(dotted, "is derived and must state its formula", "", 'formula = "..."'))
+        if not value.formula:
+            continue
+        if value.evidence != "derived":
+            collector.add(file.problem(f"{dotted}.formula", "belongs to derived values only", value.evidence, "evidence = \"derived\""))
+            continue
+        try:
+            computed = evaluate_formula(value.formula, arrays)
+        except FormulaError as error:
+            collector.add(file.problem(f"{dotted}.formula", str(error), repr(value.formula)))
+            continue
+        table = tables[name]
+        printed = table.by_node.values() if table.by_node is not None else [table.value]
+        half_digit = np.array([0.5 * 10.0 ** int(_exponent(number)) for number in printed])
+        scale = value.si / np.array([float(number) for number in printed])
+        computed, expected = np.broadcast_arrays(computed, value.si)
+        if np.any(np.abs(computed - expected) > half_digit * np.abs(scale) * 1.000001):
+            worst = int(np.argmax(np.abs(computed - expected)))
+            collector.add(
+                file.problem(dotted, "is stale: its formula gives another number",
+                             f"{value.in_unit(float(expected.flat[worst])):.6g} {value.unit}",
+                             f"{value.in_unit(float(computed.flat[worst])):.6g} {value.unit}", f"formula: {value.formula}")
+            )
+
+
+def _exponent(number: Any) -> int:
+    return number.as_tuple().exponent if hasattr(number, "as_tuple") else 0  # type: ignore[no-any-return]
+
+
+def _anchors(tables: Mapping[str, AnchorTable], nodes: Sequence[str], file: TomlFile, sources: frozenset[str], collector: Collector) -> tuple[Anchor, ...]:
+    units = {
+        "on_current": "A/m", "on_current_p": "A/m", "off_current": "A/m", "off_current_p": "A/m",
+        "effective_current": "A/m", "effective_current_p": "A/m", "fan_out_4_delay": "s", "fan_out_4_energy": "J",
+    }
+    found: list[Anchor] = []
+    for name, table in tables.items():
+        dotted = f"anchor.{name}"
+        kind = name.split("__")[0]
+        if kind not in units:
+            collector.add(file.problem(dotted, "is not a known anchor", "", ", ".join(units), nearest(kind, units)))
+            continue
+        if table.source not in sources:
+            collector.add(file.problem(f"{dotted}.source", "is not a known source", repr(table.source), "a key of sources.toml", nearest(table.source, sources)))
+        if table.node is None and len(nodes) > 1:
+            collector.add(file.problem(dotted, "must name its node", "", ", ".join(nodes)))
+            continue
+        node = table.node or nodes[0]
+        if node not in nodes:
+            collector.add(file.problem(f"{dotted}.node", "is not a node of the set", repr(node), ", ".join(nodes), nearest(node, nodes)))
+            continue
+        place = Place(file, dotted, DefaultsTable(), sources)
+        numbers = {}
+        for key, number in (("value", table.value), ("low", table.low), ("high", table.high)):
+            if number is not None:
+                numbers[key] = convert_measure(
+                    Measure(value=number, unit=table.unit), units[kind], 0.0, place, collector
+                )
+        supply = None
+        if table.supply is not None:
+            supply = convert_measure(table.supply, "V", 0.0, Place(file, f"{dotted}.supply", DefaultsTable(), sources), collector)
+        value = numbers.get("value")
+        if value is None:
+            continue
+        low, high = numbers.get("low", value), numbers.get("high", value)
+        if low is None or high is None or not low <= value <= high:
+            collector.add(file.problem(dotted, "does not lie between its low and high"))
+            continue
+        found.append(Anchor(kind, node, value, low, high, table.unit, supply, table.source, table.where, table.conditions, table.note))
+    return tuple(found)
+
+
+def _rows(rows: Sequence[RowTable], nodes: Sequence[str], file: TomlFile, sources: frozenset[str], defaults: Any, collector: Collector) -> dict[str, MeasuredTable]:
+    units = {
+        "supply": "V", "temperature": "K", "delay": "s", "energy_per_cycle": "J", "leakage_power": "W",
+        "drive_resistance": "ohm", "input_capacitance": "F", "area": "m^2",
+    }
+    by_node: dict[str, dict[str, list[float]]] = {}
+    for position, row in enumerate(rows):
+        dotted = f"row.{position}"
+        if row.node not in nodes:
+            collector.add(file.problem(f"{dotted}.node", "is not a node of the set", repr(row.node), ", ".join(nodes), nearest(row.node, nodes)))
+            continue
+        source = row.source or defaults.source or ""
+        if source not in sources:
+            collector.add(file.problem(f"{dotted}.source", "is not a known source", repr(source), "a key of sources.toml", nearest(source, sources)))
+        columns = by_node.setdefault(row.node, {key: [] for key in units})
+        for key, unit in units.items():
+            measure = getattr(row, key)
+            if measure is None:
+                columns[key].append(np.nan)
+                continue
+            si = convert_measure(measure, unit, 0.0, Place(file, f"{dotted}.{key}", defaults, sources), collector)
+            columns[key].append(np.nan if si is None else si)
+    return {
+        node: MeasuredTable("rows", {key: np.array(column) for key, column in columns.items()}, {}, "delay", "supply", "log", "monotone", {}, file.name)
+        for node, columns in by_node.items()
+    }
+
+
+def _resolve_defaults(
+    declaration: ModelDeclaration, options: Mapping[str, str], values: dict[str, Value], stated: frozenset[str],
+    file: TomlFile, collector: Collector,
+) -> None:
+    """Fill declared defaults, and report required names that are absent."""
+    for item in declaration.inputs:
+        if item.name in values or item.name in stated:
+            if item.when is not None and options.get(item.when[0]) not in item.when[1]:
+                collector.add(
+                    file.problem(f"value.{item.name}", "has no effect with this option",
+                                 f"{item.when[0]} = {options.get(item.when[0])!r}", f"{item.when[0]} = " + " or ".join(item.when[1]))
+                )
+            continue
+        if item.when is not None and options.get(item.when[0]) not in item.when[1]:
+            continue
+        if item.default is not None:
+            values[item.name] = Value(
+                item.name, np.array([item.default.value]), QUANTITIES[item.name].unit, None, item.default.evidence, "",
+                origin=item.default.origin, file=file.name,
+            )
+        elif item.required:
+            quantity = QUANTITIES[item.name]
+            collector.add(
+                file.problem(f"value.{item.name}", f"is missing ({quantity.meaning})", "", f"a value in {quantity.unit}",
+                             f"the model {declaration.name} needs it")
+            )
+
+
+def build_technology(
+    file: TomlFile, declarations: Callable[[str], ModelDeclaration], model_names: Sequence[str],
+    sources: frozenset[str], collector: Collector,
+) -> ParameterSet | None:
+    """Validate and convert a technology file.
+
+    Parameters
+    ----------
+    file : TomlFile
+    declarations : callable
+        From model name to its declaration.
+    model_names : sequence of str
+    sources : frozenset of str
+        Known source keys.
+    collector : Collector
+        Receives every problem; when it received any from this file, None is returned.
+    """
+    before = len(collector.problems)
+    parsed = validate(TechnologyFile, file, collector)
+    if parsed is None:
+        return None
+    _check_identity(parsed, file, collector)
+    if parsed.model not in model_names:
+        collector.add(file.problem("model", "is not a known model", repr(parsed.model), ", ".join(model_names), nearest(parsed.model, model_names)))
+        return None
+    declaration = declarations(parsed.model)
+    options, default_options = _options(parsed.option, declaration, file, collector)
+    allowed = [item.name for item in declaration.inputs if item.name != "reference_temperature"]
+    values = _convert_values(
+        parsed.value, allowed, parsed.nodes, file, parsed.default, sources, collector, f"the model {parsed.model}"
+    )
+    temperature = convert_measure(
+        parsed.reference_temperature, "K", 1.0, Place(file, "reference_temperature", parsed.default, sources), collector
+    )
+    if temperature is not None:
+        values["reference_temperature"] = Value(
+            "reference_temperature", np.array([temperature]), parsed.reference_temperature.unit, None, "choice", "",
+            conditions="temperature at which the values of the set hold", file=file.name, line=file.line("reference_temperature"),
+        )
+    _resolve_defaults(declaration, options, values, frozenset(parsed.value), file, collector)
+    _check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
+    tables = _tables(parsed, declaration, file, sources, collector)
+    rows = _rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
+    if "rows" in declaration.tables:
+        for node in parsed.nodes:
+            if node not in rows:
+                collector.add(file.problem("row", f"has no entry for node {node!r}"))
+    elif parsed.row:
+        collector.add(file.problem("row", f"is not used by the model {parsed.model}"))
+    valid: dict[str, tuple[float, float]] = {}
+    for key, unit in (("supply", "V"), ("temperature", "K")):
+        table = getattr(parsed.valid, key)
+        if table is not None:
+            found = convert_range(table, unit, Place(file, f"valid.{key}", parsed.default, sources), collector)
+            if found is not None:
+                valid[key] = found
+    anchors = _anchors(parsed.anchor, parsed.nodes, file, sources, collector)
+    if len(collector.problems) > before:
+        return None
+    return ParameterSet(
+        parsed.id, parsed.title, "technology", parsed.model, tuple(parsed.nodes), parsed.flavour, parsed.ambition,
+        parsed.note, options, default_options, values, tables, rows, anchors, valid, file.name, file.sha256, file.text,
+        file.path, file.lines,
+    )
+
+
+def _check_identity(parsed: Any, file: TomlFile, collector: Collector) -> None:
+    if parsed.id != file.path.stem:
+        collector.add(file.problem("id", "differs from the file name", repr(parsed.id), repr(file.path.stem)))
+    repeated = sorted({node for node in parsed.nodes if parsed.nodes.count(node) > 1})
+    for node in repeated:
+        collector.add(file.problem("nodes", "names a node twice", repr(node)))
+
+
+def _options(
+    given: Mapping[str, str], declaration: ModelDeclaration, file: TomlFile, collector: Collector
+) -> tuple[dict[str, str], frozenset[str]]:
+    known = {option.name: option for option in declaration.options}
+    for name, text in given.items():
+        if name not in known:
+            collector.add(file.problem(f"option.{name}", f"is not an option of the model {declaration.name}", "", ", ".join(known), nearest(name, known)))
+        elif text not in known[name].allowed:
+            collector.add(file.problem(f"option.{name}", "is not one of the allowed words", repr(text), ", ".join(known[name].allowed), nearest(text, known[name].allowed)))
+    options = {name: given.get(name, option.default) for name, option in known.items()}
+    return options, frozenset(name for name in known if name not in given)
+
+
+def _tables(
+    parsed: TechnologyFile, declaration: ModelDeclaration, file: TomlFile, sources: frozenset[str], collector: Collector
+) -> dict[str, TableFile]:
+    allowed = [name for name in declaration.tables if name != "rows"]
+    found: dict[str, TableFile] = {}
+    for name, reference in parsed.table.items():
+        dotted = f"table.{name}"
+        if name not in allowed:
+            collector.add(file.problem(dotted, f"is not used by the model {declaration.name}", "", ", ".join(allowed), nearest(name, allowed)))
+            continue
+        path = Path(reference.file)
+        if path.is_absolute() or ".." in path.parts or "\\" in reference.file or "\x00" in reference.file or path.suffix != ".csv":
+            collector.add(file.problem(f"{dotted}.file", "is not a CSV file inside the folder of the sets", repr(reference.file), "a relative path such as tables/name.csv"))
+            continue
+        root = file.path.parent.parent if (file.path.parent.parent / path).exists() else file.path.parent
+        table = read_table(root / path, name, sources, collector, str(Path(file.name).parent / path) if file.name else str(path))
+        if table is not None:
+            found[name] = table
+    for name, required in declaration.tables.items():
+        if required and name != "rows" and name not in parsed.table:
+            collector.add(file.problem("table", f"{name} is missing", "", f"[table.{name}] file = \"tables/...csv\""))
+    return found
+
+
+def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -> ParameterSet | None:
+    """Validate and convert a wires file; all three wire values are required."""
+    before = len(collector.problems)
+    parsed = validate(WiresFile, file, collector)
+    if parsed is None:
+        return None
+    _check_identity(parsed, file, collector)
+    names = _quantity_names("wires")
+    values = _convert_values(parsed.value, names, parsed.nodes, file, parsed.default, sources, collector, "wires sets")
+    for name in names:
+        if name not in parsed.value:
+            collector.add(file.problem(f"value.{name}", "is missing", "", f"a value in {QUANTITIES[name].unit}"))
+    _check_formulas(values, file, parsed.value, collector)
+    if len(collector.problems) > before:
+        return None
+    return ParameterSet(
+        parsed.id, parsed.title, "wires", "", tuple(parsed.nodes), "", "today", parsed.note, {}, frozenset(), values,
+        {}, {}, (), {}, file.name, file.sha256, file.text, file.path, file.lines,
+    )
+
+
+def replace_values(original: ParameterSet, values: Mapping[str, Value]) -> ParameterSet:
+    """Return the set with some values replaced (what-if)."""
+    return dataclasses.replace(original, values={**original.values, **values})
+
