@@ -1,0 +1,124 @@
+"""Check rows of level restoration, thermal noise, the chain factor and the transient of chains."""
+
+from __future__ import annotations
+
+from benchmark.circuits import chain_rule
+from benchmark.physics import noise, regeneration
+from tests.published.rows import Binding
+
+NOISE = "benchmark.physics.noise:"
+REGENERATION = "benchmark.physics.regeneration:"
+TEN_YEARS = 10.0 * 365.25 * 86400.0
+
+
+def _noise_need() -> float:
+    frequency = noise.pole_frequency(1.0e4, 0.1e-15)
+    return float(noise.threshold_for_rate(1.0 / (1.0e9 * TEN_YEARS), frequency))
+
+
+# The tolerance of NOISE-rate and NOISE-Q is larger than the number itself: tests/unit/test_noise.py holds them.
+_NOISE_ROWS = [
+    Binding("cir.NOISE-Un", (NOISE + "noise_voltage",), lambda: 1e3 * noise.noise_voltage(0.1e-15, 300.0)),
+    Binding("cir.NOISE-need", (NOISE + "threshold_for_rate", NOISE + "pole_frequency"), _noise_need),
+]
+
+
+def _log_linear(ratio: float) -> list[float]:
+    low, high = regeneration.log_linear_levels(ratio)
+    return [regeneration.log_linear_gain(ratio), low, high, regeneration.log_linear_noise_margin(ratio)]
+
+
+_REGENERATION_ROWS = [
+    *(
+        Binding(
+            f"cir.RINV-{name}",
+            tuple(REGENERATION + f for f in ("log_linear_gain", "log_linear_levels", "log_linear_noise_margin")),
+            lambda ratio=ratio: _log_linear(ratio),
+        )
+        for name, ratio in (("10", 10.0), ("100", 100.0), ("1000", 1e3), ("10000", 1e4), ("1e+06", 1e6))
+    ),
+    Binding(
+        "cir.RINV-min",
+        (REGENERATION + "log_linear_minimum_ratio",),
+        lambda: regeneration.log_linear_minimum_ratio(),
+    ),
+    *(
+        Binding(
+            f"cir.RDIV-{ratio}",
+            (REGENERATION + "divider_levels",),
+            lambda ratio=ratio: regeneration.divider_levels(float(ratio)),
+        )
+        for ratio in (10, 10000)
+    ),
+    *(
+        Binding(
+            f"cir.RLOAD-{ratio}",
+            (REGENERATION + "resistor_load_levels",),
+            lambda ratio=ratio: regeneration.resistor_load_levels(float(ratio)),
+        )
+        for ratio in (10, 100, 10000)
+    ),
+    *(
+        Binding(
+            f"cir.RATIO-FI{inputs}-e{loss}",
+            (REGENERATION + "ratio_for_fan_in",),
+            lambda inputs=inputs, loss=loss: regeneration.ratio_for_fan_in(inputs, loss),
+        )
+        for inputs in (2, 4)
+        for loss in (0.1, 0.05)
+    ),
+    Binding(
+        "cir.RATIO-LEAK",
+        (REGENERATION + "ratio_for_leakage_share",),
+        lambda: regeneration.ratio_for_leakage_share(20.0, 0.05, 0.1),
+    ),
+    Binding(
+        "cir.RATIO-CHIP",
+        (REGENERATION + "ratio_for_chip_leakage",),
+        lambda: regeneration.ratio_for_chip_leakage(1e9, 0.7, 1e4, 1.0),
+    ),
+    Binding(
+        "cir.FANOUT-RTL",
+        (REGENERATION + "loaded_high_level",),
+        lambda: regeneration.loaded_high_level(5.0, 1e3, 1e4, 0.8, 5.0),
+    ),
+    *(
+        Binding(
+            f"cir.VMIN-n{n}",
+            (REGENERATION + "subthreshold_minimum_supply",),
+            lambda n=n: 1e3 * regeneration.subthreshold_minimum_supply(n, 300.0),
+        )
+        for n in (1.0, 1.5)
+    ),
+]
+
+#: switching levels w* printed in the rows of the chain rule, by row number
+_SWITCHING_LEVELS = {
+    1: 0.8495,
+    2: 0.9247,
+    3: 0.9499,
+    4: 0.9626,
+    5: 0.7097,
+    6: 0.755,
+    8: 0.7785,
+    9: 0.605,
+    10: 0.6285,
+    14: 0.4704,
+    15: 0.4814,
+    16: 0.4875,
+    17: 0.8398,
+    18: 0.8704,
+    19: 0.8814,
+    20: 0.8875,
+}
+
+_CHAIN_RULE_ROWS = [
+    Binding(
+        "dev.C2-wrule" + (f".{number}" if number > 1 else ""),
+        ("benchmark.circuits.chain_rule:chain_factor",),
+        lambda level=level: chain_rule.chain_factor(level),
+    )
+    for number, level in _SWITCHING_LEVELS.items()
+]
+
+BINDINGS: list[Binding] = [*_NOISE_ROWS, *_REGENERATION_ROWS, *_CHAIN_RULE_ROWS]
