@@ -1,4 +1,4 @@
-"""Thermal noise of a node and the errors it causes (layer 3).
+"""Errors that thermal noise causes at a node (layer 3); the noise voltage itself is in ``limits``.
 
 A node of capacitance C that reaches equilibrium holds a noise voltage of sqrt(k T / C), whatever resistance feeds
 it. A logic decision fails when that noise passes the threshold left after level degradation. White noise through
@@ -13,8 +13,6 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.special import erfc
 
-from benchmark.constants import BOLTZMANN
-
 __all__ = ["crossing_rate", "noise_voltage", "pole_frequency", "sampled_error", "threshold_for_rate"]
 
 Array = NDArray[np.float64]
@@ -22,28 +20,6 @@ Array = NDArray[np.float64]
 
 def _array(value: ArrayLike) -> Array:
     return np.asarray(value, dtype=np.float64)
-
-
-def noise_voltage(capacitance: ArrayLike, temperature: ArrayLike) -> Array:
-    """Return the root-mean-square noise U_n = sqrt(k T / C) of a node.
-
-    Parameters
-    ----------
-    capacitance : array_like
-        C of the node, all of it [F], > 0.
-    temperature : array_like
-        T [K], > 0.
-
-    Returns
-    -------
-    ndarray
-        U_n [V]. 0.1 fF at 300 K: 6.44 mV.
-
-    References
-    ----------
-    L. B. Kish, IEE Proc. Circuits Devices Syst. 151, 190 (2004), eq. 1.
-    """
-    return _array(np.sqrt(BOLTZMANN * _array(temperature) / _array(capacitance)))
 
 
 def pole_frequency(resistance: ArrayLike, capacitance: ArrayLike) -> Array:
@@ -57,7 +33,7 @@ def crossing_rate(threshold_over_noise: ArrayLike, frequency: ArrayLike) -> Arra
     Parameters
     ----------
     threshold_over_noise : array_like
-        U_th / U_n [1]: noise margin after level degradation over ``noise_voltage``.
+        U_th / U_n [1]: noise margin after level degradation over the noise voltage sqrt(k T / C).
     frequency : array_like
         f_c [Hz] of ``pole_frequency``.
 

@@ -1,12 +1,11 @@
-"""Closed forms of level restoration: what on/off ratio and what swing a logic switch needs (layer 3).
+"""Closed forms of level restoration: the gain and the swing a chain of logic stages keeps (layer 3).
 
-Levels are fractions of the supply, rho is the on/off ratio R_off / R_on. These forms check the numeric transfer curve
+Levels are fractions of the supply, rho is the on/off ratio R_off / R_on. Dividers with ideal inputs and the ratios
+that leakage asks for are in ``on_off_ratio``. These forms check the numeric transfer curve
 of the circuits and draw limit lines; the engine's functional floor is computed from each device's own current law.
 """
 
 from __future__ import annotations
-
-import math
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -14,17 +13,12 @@ from numpy.typing import ArrayLike, NDArray
 from benchmark.constants import BOLTZMANN, ELEMENTARY_CHARGE
 
 __all__ = [
-    "divider_levels",
     "loaded_high_level",
     "log_linear_gain",
     "log_linear_levels",
     "log_linear_minimum_ratio",
     "log_linear_noise_margin",
     "log_linear_output",
-    "ratio_for_chip_leakage",
-    "ratio_for_fan_in",
-    "ratio_for_leakage_share",
-    "resistor_load_levels",
     "stacked_high_level",
     "subthreshold_gain",
     "subthreshold_minimum_supply",
@@ -37,20 +31,6 @@ def _array(value: ArrayLike) -> Array:
     return np.asarray(value, dtype=np.float64)
 
 
-def divider_levels(ratio: ArrayLike) -> tuple[Array, Array]:
-    """Return (V_OL, V_OH) / V of a complementary pair with ideal inputs: 1/(1 + rho), rho/(1 + rho). Divider."""
-    rho = _array(ratio)
-    return _array(1.0 / (1.0 + rho)), _array(rho / (1.0 + rho))
-
-
-def resistor_load_levels(ratio: ArrayLike) -> tuple[Array, Array]:
-    """Return (V_OL, V_OH) / V of one switch against the best load resistor, R_L = sqrt(R_on R_off).
-
-    1/(1 + sqrt rho) and sqrt rho/(1 + sqrt rho): the switch needs rho^2 to do what a complementary pair does. Divider.
-    """
-    return divider_levels(np.sqrt(_array(ratio)))
-
-
 def stacked_high_level(fan_in: ArrayLike, ratio: ArrayLike) -> Array:
     """Return V_OH / V = 1/(1 + k^2/rho) of a k-input gate: k closed in series feed k open in parallel.
 
@@ -58,43 +38,6 @@ def stacked_high_level(fan_in: ArrayLike, ratio: ArrayLike) -> Array:
     """
     k = _array(fan_in)
     return _array(1.0 / (1.0 + k * k / _array(ratio)))
-
-
-def ratio_for_fan_in(fan_in: ArrayLike, level_loss: ArrayLike) -> Array:
-    """Return the on/off ratio k^2 (1/eps - 1) at which a k-input gate loses eps of the swing at one level [1]."""
-    k = _array(fan_in)
-    return _array(k * k * (1.0 / _array(level_loss) - 1.0))
-
-
-def ratio_for_leakage_share(
-    depth: ArrayLike, activity: ArrayLike, share: ArrayLike, factor: float = math.log(2.0)
-) -> Array:
-    """Return the on/off ratio at which leakage is a share x of the switching energy: rho = L_d F / (a x).
-
-    From E_leak/E_switch = T / (a R_off C) with T = L_d F R_on C: a self-timed path with no load-independent time.
-
-    Parameters
-    ----------
-    depth : array_like
-        Logic depth L_d [1].
-    activity : array_like
-        Rising edges per net and cycle a [1].
-    share : array_like
-        Leakage energy over switching energy x [1].
-    factor : float
-        F of the stage delay F R C [1]; ln 2 by default.
-
-    Returns
-    -------
-    ndarray
-        rho [1].
-    """
-    return _array(_array(depth) * factor / (_array(activity) * _array(share)))
-
-
-def ratio_for_chip_leakage(gates: ArrayLike, supply: ArrayLike, resistance: ArrayLike, power: ArrayLike) -> Array:
-    """Return the on/off ratio N V^2 / (R_on P) at which N gates leak P [W]; V [V], R_on [ohm]. Ohmic leakage."""
-    return _array(_array(gates) * _array(supply) ** 2 / (_array(resistance) * _array(power)))
 
 
 def loaded_high_level(

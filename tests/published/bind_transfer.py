@@ -18,7 +18,6 @@ def _noise_need() -> float:
 
 # The tolerance of NOISE-rate and NOISE-Q is larger than the number itself: tests/unit/test_noise.py holds them.
 _NOISE_ROWS = [
-    Binding("cir.NOISE-Un", (NOISE + "noise_voltage",), lambda: 1e3 * noise.noise_voltage(0.1e-15, 300.0)),
     Binding("cir.NOISE-need", (NOISE + "threshold_for_rate", NOISE + "pole_frequency"), _noise_need),
 ]
 
@@ -41,41 +40,6 @@ _REGENERATION_ROWS = [
         "cir.RINV-min",
         (REGENERATION + "log_linear_minimum_ratio",),
         lambda: regeneration.log_linear_minimum_ratio(),
-    ),
-    *(
-        Binding(
-            f"cir.RDIV-{ratio}",
-            (REGENERATION + "divider_levels",),
-            lambda ratio=ratio: regeneration.divider_levels(float(ratio)),
-        )
-        for ratio in (10, 10000)
-    ),
-    *(
-        Binding(
-            f"cir.RLOAD-{ratio}",
-            (REGENERATION + "resistor_load_levels",),
-            lambda ratio=ratio: regeneration.resistor_load_levels(float(ratio)),
-        )
-        for ratio in (10, 100, 10000)
-    ),
-    *(
-        Binding(
-            f"cir.RATIO-FI{inputs}-e{loss}",
-            (REGENERATION + "ratio_for_fan_in",),
-            lambda inputs=inputs, loss=loss: regeneration.ratio_for_fan_in(inputs, loss),
-        )
-        for inputs in (2, 4)
-        for loss in (0.1, 0.05)
-    ),
-    Binding(
-        "cir.RATIO-LEAK",
-        (REGENERATION + "ratio_for_leakage_share",),
-        lambda: regeneration.ratio_for_leakage_share(20.0, 0.05, 0.1),
-    ),
-    Binding(
-        "cir.RATIO-CHIP",
-        (REGENERATION + "ratio_for_chip_leakage",),
-        lambda: regeneration.ratio_for_chip_leakage(1e9, 0.7, 1e4, 1.0),
     ),
     Binding(
         "cir.FANOUT-RTL",

@@ -52,12 +52,10 @@ def test_ratio_at_or_below_the_minimum_keeps_no_level():
     assert regeneration.log_linear_gain(ratio[-1]) == pytest.approx(1.0)
 
 
-def test_fan_in_ratio_inverts_the_stacked_level():
-    inputs = np.array([1.0, 2.0, 4.0, 8.0])
-    ratio = regeneration.ratio_for_fan_in(inputs, 0.1)
-    assert regeneration.stacked_high_level(inputs, ratio) == pytest.approx(np.full(4, 0.9))
-    assert ratio[2] == pytest.approx(144.0)
-    assert regeneration.stacked_high_level(1, 1.0) == 0.5
+def test_stacked_level_is_the_hand_equation():
+    # 4 inputs at an on/off ratio of 144 keep 0.9 V; a ratio of 1 leaves half the supply
+    assert regeneration.stacked_high_level(4.0, 144.0) == pytest.approx(0.9)
+    assert regeneration.stacked_high_level(1.0, 1.0) == 0.5
 
 
 def test_subthreshold_gain_is_one_at_the_minimum_supply():
