@@ -124,6 +124,9 @@ class Circuit:
         Wire layers that the circuit states itself.
     assumptions
         What was assumed when the nets were made, one sentence each.
+    stage
+        Text of the one kind of stage the circuit is made of ("inverter, fan-out 4, no wire"); empty when it has
+        several. A technology known only at one stage can be used in a circuit of just that stage.
     """
 
     name: str
@@ -132,6 +135,7 @@ class Circuit:
     nets: tuple[Net, ...]
     layers: Mapping[str, Layer] = field(default_factory=dict)
     assumptions: tuple[str, ...] = ()
+    stage: str = ""
 
     def __post_init__(self) -> None:
         if not self.nets:

@@ -232,8 +232,8 @@ def _unable(circuit: Circuit, sized: Sized) -> dict[str, BoolArray]:
         add("does not switch at this supply", ~closes)
         if switch.partner == "none":
             add("no complementary partner: the cells need both polarities", everywhere)
-        if switch.stage_only:
-            add(f"known only at one stage ({switch.stage_only}); this circuit is another one", everywhere)
+        if switch.stage_only and switch.stage_only != circuit.stage:
+            add(f"known only at one stage ({switch.stage_only}); this circuit has other ones", everywhere)
         deepest = max(net.driver.depth(edge) for net in circuit.nets)
         if deepest > switch.stack_on.shape[-1]:
             add(f"{deepest} switches in series are more than the technology states", everywhere)

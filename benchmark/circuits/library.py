@@ -1,0 +1,330 @@
+"""Built-in circuits, made from the scenario values of a study (layer 5). The same nets for every technology.
+
+``BUILT_IN`` maps a name to its builder, the scenario values it needs and those it may use. Values are SI floats or
+arrays by catalogue name. A net length comes as ``average_net_length`` [m] or ``average_net_pitches`` [gate pitches],
+never as both. Counts that shape a netlist (``stage_count``, ``word_length``) must be single numbers.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
+from types import MappingProxyType
+from typing import Any, Final
+
+import numpy as np
+
+from benchmark.circuits.adder import ripple_adder, ripple_adder_activity
+from benchmark.circuits.cells import Cell, cell
+from benchmark.circuits.circuit import Circuit, Load, Net, Value
+from benchmark.circuits.netlist import Netlist, loads, longest_path
+from benchmark.circuits.register import FLIP_FLOP, register_facts
+from benchmark.errors import UsageError, nearest
+
+__all__ = ["BUILT_IN", "BuiltIn", "build"]
+
+Scenario = Mapping[str, Value]
+LENGTH_NAMES: Final = ("average_net_length", "average_net_pitches")
+
+
+@dataclass(frozen=True)
+class BuiltIn:
+    """A built-in circuit. ``length`` tells whether it needs a net length, may have one, or has none."""
+
+    name: str
+    title: str
+    operation: str
+    builder: Callable[[BuiltIn, Scenario], Circuit]
+    required: tuple[str, ...]
+    optional: tuple[str, ...] = ()
+    length: str = "optional"
+
+    @property
+    def reads(self) -> frozenset[str]:
+        """Return every scenario name that can change this circuit."""
+        return frozenset((*self.required, *self.optional, *LENGTH_NAMES))
+
+
+def build(name: str, scenario: Scenario) -> Circuit:
+    """Return the built-in circuit of that name for these scenario values.
+
+    Raises
+    ------
+    UsageError
+        If there is no such circuit, a value it needs is missing, or a value cannot mean anything.
+    """
+    if name not in BUILT_IN:
+        message = f"no built-in circuit {name!r}; known are {', '.join(BUILT_IN)}; {nearest(name, BUILT_IN)}"
+        raise UsageError(message)
+    which = BUILT_IN[name]
+    missing = [value for value in which.required if value not in scenario]
+    stated = [value for value in LENGTH_NAMES if value in scenario]
+    if missing:
+        message = f"circuit {name!r} needs the values {', '.join(missing)}"
+        raise UsageError(message)
+    if len(stated) > 1 or (which.length == "required" and not stated):
+        message = f"circuit {name!r} needs one of {' and '.join(LENGTH_NAMES)}, not {len(stated)} of them"
+        raise UsageError(message)
+    return which.builder(which, scenario)
+
+
+def _wire(scenario: Scenario) -> dict[str, Any]:
+    if "average_net_length" in scenario:
+        return {"wire_length": scenario["average_net_length"], "length_unit": "m"}
+    if "average_net_pitches" in scenario:
+        return {"wire_length": scenario["average_net_pitches"], "length_unit": "gate_pitch"}
+    return {}
+
+
+def _wire_remark(scenario: Scenario) -> tuple[str, ...]:
+    return () if _wire(scenario) else ("No wire on any net: an upper bound of what circuits reach.",)
+
+
+def _single(scenario: Scenario, name: str, least: int) -> int:
+    value = np.asarray(scenario[name])
+    if value.size != 1 or float(value.reshape(-1)[0]) != round(float(value.reshape(-1)[0])):
+        message = f"{name} must be one whole number for this circuit"
+        raise UsageError(message)
+    number = round(float(value.reshape(-1)[0]))
+    if number < least:
+        message = f"{name} must be at least {least}, not {number}"
+        raise UsageError(message)
+    return number
+
+
+def _stage_text(scenario: Scenario) -> str:
+    fan_out = np.asarray(scenario["fan_out"])
+    return (
+        f"inverter, fan-out {float(fan_out.reshape(-1)[0]):g}, no wire"
+        if fan_out.size == 1 and not _wire(scenario)
+        else ""
+    )
+
+
+def _inverter_chain(which: BuiltIn, scenario: Scenario) -> Circuit:
+    inverter = cell("inverter")
+    net = Net(
+        "stage",
+        inverter,
+        loads=(Load(inverter, "a", scenario["fan_out"]),),
+        rising_per_operation=scenario["activity"],
+        busiest_per_operation=scenario.get("busiest_activity"),
+        count=scenario["logic_depth"],
+        on_critical_path=scenario["logic_depth"],
+        **_wire(scenario),
+    )
+    return Circuit(
+        which.name,
+        which.title,
+        which.operation,
+        (net,),
+        assumptions=("Every stage is alike; the loads beyond the chain are inputs only.", *_wire_remark(scenario)),
+        stage=_stage_text(scenario),
+    )
+
+
+def _ring(which: BuiltIn, scenario: Scenario) -> Circuit:
+    inverter = cell("inverter")
+    count = _single(scenario, "stage_count", 3)
+    if count % 2 == 0:
+        message = f"a ring of inverters needs an odd stage_count, not {count}"
+        raise UsageError(message)
+    net = Net(
+        "stage",
+        inverter,
+        loads=(Load(inverter, "a", scenario["fan_out"]),),
+        rising_per_operation=1.0,
+        count=float(count),
+        on_critical_path=2.0 * count,
+        **_wire(scenario),
+    )
+    return Circuit(
+        which.name,
+        which.title,
+        which.operation,
+        (net,),
+        assumptions=("Frequency = 1 / time per operation = 1 / (2 N t).", *_wire_remark(scenario)),
+        stage=_stage_text(scenario),
+    )
+
+
+def _toggle_share(scenario: Scenario) -> Value:
+    """Return the share of cycles in which data changes: twice its rising transitions per cycle."""
+    share = 2.0 * np.asarray(scenario["activity"], dtype=np.float64)
+    if np.any(share > 1.0):
+        message = "activity of a register's data cannot exceed 0.5 rising transitions per cycle"
+        raise UsageError(message)
+    return share
+
+
+def _register_nets(scenario: Scenario, reader: Cell, count: Value) -> list[Net]:
+    """Return the nets of ``count`` registers with their local clock drivers; ``q`` drives the fan-out and the wire."""
+    facts = register_facts()
+    toggling = _toggle_share(scenario)
+    path = (*facts.setup, *facts.clock_to_output)
+    nets = []
+    for gate in FLIP_FLOP.gates:
+        name = gate.output
+        net = Net(
+            f"register {name}",
+            cell(gate.cell),
+            loads=loads(FLIP_FLOP, name),
+            rising_per_operation=facts.rising_quiet[name] * (1.0 - toggling) + facts.rising_toggle[name] * toggling,
+            busiest_per_operation=max(facts.rising_quiet[name], facts.rising_toggle[name]),
+            count=count,
+            on_critical_path=float(path.count(name)),
+            group="register",
+        )
+        if name == "q":
+            net = replace(net, loads=(*net.loads, Load(reader, "a", scenario["fan_out"])), **_wire(scenario))
+        nets.append(net)
+    clock = Net(
+        "clock",
+        cell("inverter"),
+        loads=loads(FLIP_FLOP, "clock"),
+        rising_per_operation=1.0,
+        count=count,
+        group="clock",
+        **_wire(scenario),
+    )
+    return [*nets, clock]
+
+
+REGISTER_ASSUMPTIONS: Final = (
+    "Register: edge-triggered flip-flop of six NAND gates; setup and clock-to-output stages and internal activity "
+    "come from its netlist.",
+    "Data changes at most once per cycle, while the clock is low.",
+    "Clock: one local inverter per register with one average net of wire and one rising edge per cycle; the tree "
+    "above the local inverters is outside the block.",
+)
+
+
+def _register(which: BuiltIn, scenario: Scenario) -> Circuit:
+    inverter = cell("inverter")
+    data = Net(
+        "data",
+        inverter,
+        loads=loads(FLIP_FLOP, "data"),
+        rising_per_operation=scenario["activity"],
+        busiest_per_operation=scenario.get("busiest_activity"),
+        group="logic",
+        **_wire(scenario),
+    )
+    return Circuit(
+        which.name,
+        which.title,
+        which.operation,
+        (data, *_register_nets(scenario, inverter, 1.0)),
+        assumptions=(*REGISTER_ASSUMPTIONS, *_wire_remark(scenario)),
+    )
+
+
+def _random_logic(which: BuiltIn, scenario: Scenario) -> Circuit:
+    gate = cell("nand2")
+    logic = Net(
+        "logic",
+        gate,
+        loads=(Load(gate, "a", scenario["fan_out"]),),
+        rising_per_operation=scenario["activity"],
+        busiest_per_operation=scenario.get("busiest_activity"),
+        count=scenario["gate_count"],
+        on_critical_path=scenario["logic_depth"],
+        **_wire(scenario),
+    )
+    nets = [logic]
+    registers = scenario["register_count"]
+    assumptions: tuple[str, ...] = (
+        "Every logic gate is a NAND2 and drives fan_out NAND2 inputs over one average net; register data inputs are "
+        "among them.",
+    )
+    if np.any(np.asarray(registers) > 0.0):
+        nets += _register_nets(scenario, gate, registers)
+        assumptions += REGISTER_ASSUMPTIONS
+    else:
+        assumptions += ("No registers and no clock: an upper bound of what clocked circuits reach.",)
+    return Circuit(which.name, which.title, which.operation, tuple(nets), assumptions=assumptions)
+
+
+def _ripple_adder(which: BuiltIn, scenario: Scenario) -> Circuit:
+    bits = _single(scenario, "word_length", 1)
+    netlist = ripple_adder(bits)
+    nets = netlist_nets(netlist, ripple_adder_activity(bits), longest_path(netlist), cell("inverter"), scenario)
+    return Circuit(
+        which.name,
+        which.title,
+        which.operation,
+        nets,
+        assumptions=(
+            "Nine-NAND full adders; every sum bit and the last carry drive one inverter; operands change once per "
+            "operation, independent and uniform; hazards are not counted.",
+            *_wire_remark(scenario),
+        ),
+    )
+
+
+def netlist_nets(
+    netlist: Netlist, activity: Mapping[str, float], path: tuple[str, ...], reader: Cell, scenario: Scenario
+) -> tuple[Net, ...]:
+    """Return the nets of a netlist, alike ones merged; outputs drive one input of ``reader`` each."""
+    merged: dict[tuple[Any, ...], Net] = {}
+    for gate in netlist.gates:
+        name = gate.output
+        driven = loads(netlist, name) + ((Load(reader, "a"),) if name in netlist.outputs else ())
+        key = (gate.cell, driven, round(activity[name], 12))
+        on_path = float(path.count(name))
+        if key in merged:
+            known = merged[key]
+            merged[key] = replace(known, count=known.count + 1.0, on_critical_path=known.on_critical_path + on_path)
+        else:
+            merged[key] = Net(
+                name,
+                cell(gate.cell),
+                loads=driven,
+                rising_per_operation=activity[name],
+                count=1.0,
+                on_critical_path=on_path,
+                **_wire(scenario),
+            )
+    return tuple(merged.values())
+
+
+BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
+    {
+        which.name: which
+        for which in (
+            BuiltIn(
+                "inverter-chain",
+                "Chain of alike inverters",
+                "one clock cycle of the chain",
+                _inverter_chain,
+                ("logic_depth", "fan_out", "activity"),
+                ("busiest_activity",),
+            ),
+            BuiltIn("ring", "Ring of inverters", "one period of the ring", _ring, ("stage_count", "fan_out")),
+            BuiltIn(
+                "register",
+                "Edge-triggered register with its clock driver",
+                "one clock cycle of one register",
+                _register,
+                ("fan_out", "activity"),
+                ("busiest_activity",),
+            ),
+            BuiltIn(
+                "random-logic",
+                "Block of random logic between registers",
+                "one clock cycle of the block, registers and clock net included",
+                _random_logic,
+                ("logic_depth", "fan_out", "activity", "gate_count", "register_count"),
+                ("busiest_activity",),
+                "required",
+            ),
+            BuiltIn(
+                "ripple-adder",
+                "Ripple-carry adder",
+                "one addition of two words",
+                _ripple_adder,
+                ("word_length",),
+            ),
+        )
+    }
+)
