@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import ArrayLike, NDArray
 from scipy.special import erfc
 
-__all__ = ["crossing_rate", "noise_voltage", "pole_frequency", "sampled_error", "threshold_for_rate"]
+__all__ = ["crossing_rate", "pole_frequency", "sampled_error", "threshold_for_rate"]
 
 Array = NDArray[np.float64]
 
