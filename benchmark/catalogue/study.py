@@ -44,6 +44,7 @@ STUDY_QUANTITIES: tuple[Quantity, ...] = (
         1.0e3,
         "nonnegative",
     ),
+    Quantity("word_length", "N_bit", "bits of a word", "1", 1.0, 128.0, "count"),
     Quantity("stage_count", "N_ring", "stages of a ring", "1", 3.0, 101.0, "count"),
     Quantity("residual_leakage", "r", "share of the leakage left when power-gated", "1", 1.0e-4, 1.0, "fraction"),
     Quantity(

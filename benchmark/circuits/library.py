@@ -93,12 +93,11 @@ def _single(scenario: Scenario, name: str, least: int) -> int:
 
 
 def _stage_text(scenario: Scenario) -> str:
+    """Return the text of the one stage; compared with that of a technology known at one stage only."""
     fan_out = np.asarray(scenario["fan_out"])
-    return (
-        f"inverter, fan-out {float(fan_out.reshape(-1)[0]):g}, no wire"
-        if fan_out.size == 1 and not _wire(scenario)
-        else ""
-    )
+    if fan_out.size != 1 or _wire(scenario):
+        return ""
+    return f"inverter, fan-out {float(fan_out.reshape(-1)[0]):g}, no wire"
 
 
 def _inverter_chain(which: BuiltIn, scenario: Scenario) -> Circuit:
@@ -247,16 +246,25 @@ def _random_logic(which: BuiltIn, scenario: Scenario) -> Circuit:
 
 def _ripple_adder(which: BuiltIn, scenario: Scenario) -> Circuit:
     bits = _single(scenario, "word_length", 1)
-    netlist = ripple_adder(bits)
-    nets = netlist_nets(netlist, ripple_adder_activity(bits), longest_path(netlist), cell("inverter"), scenario)
+    netlist, activity, inverter = ripple_adder(bits), ripple_adder_activity(bits), cell("inverter")
+    operands = Net(
+        "operand",
+        inverter,
+        loads=loads(netlist, netlist.inputs[0]),
+        rising_per_operation=activity[netlist.inputs[0]],
+        count=float(len(netlist.inputs)),
+        **_wire(scenario),
+    )
+    nets = (operands, *netlist_nets(netlist, activity, longest_path(netlist), inverter, scenario))
     return Circuit(
         which.name,
         which.title,
         which.operation,
         nets,
         assumptions=(
-            "Nine-NAND full adders; every sum bit and the last carry drive one inverter; operands change once per "
-            "operation, independent and uniform; hazards are not counted.",
+            "Nine-NAND full adders; an inverter drives every operand bit, every sum bit and the last carry drive one; "
+            "operands change once per operation, independent and uniform; hazards are not counted; the path starts "
+            "where the operands have arrived.",
             *_wire_remark(scenario),
         ),
     )
