@@ -81,7 +81,10 @@ def read_circuit(path: Path, library: Library, collector: Collector) -> CircuitS
     layers: dict[str, dict[str, Value]] = {}
     for name, table in parsed.layer.items():
         found = {}
-        for key, quantity in (("resistance_per_length", "wire_resistance_per_length"), ("capacitance_per_length", "wire_capacitance_per_length")):
+        for key, quantity in (
+            ("resistance_per_length", "wire_resistance_per_length"),
+            ("capacitance_per_length", "wire_capacitance_per_length"),
+        ):
             place = Place(file, f"layer.{name}.{key}", parsed.default, sources)
             value = convert_value(QUANTITIES[quantity], getattr(table, key), [""], place, collector)
             if value is not None:
@@ -89,7 +92,9 @@ def read_circuit(path: Path, library: Library, collector: Collector) -> CircuitS
         layers[name] = found
     nets = tuple(_net(net, position, file, layers, collector) for position, net in enumerate(parsed.net))
     if not any(net.on_critical_path > 0 for net in nets):
-        collector.add(file.problem("net", "no net is on the critical path", "", "on_critical_path above 0 on at least one"))
+        collector.add(
+            file.problem("net", "no net is on the critical path", "", "on_critical_path above 0 on at least one")
+        )
     names = [net.name for net in nets]
     for repeated in sorted({name for name in names if names.count(name) > 1}):
         collector.add(file.problem("net", "two nets have the same name", repr(repeated)))
@@ -127,11 +132,20 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
         if net.wire.length_unit == "gate-pitch":
             length, unit = float(net.wire.length), "gate_pitch"
         else:
-            length = convert_measure(Measure(value=net.wire.length, unit=net.wire.length_unit), "m", 0.0, place, collector) or 0.0
+            length = (
+                convert_measure(Measure(value=net.wire.length, unit=net.wire.length_unit), "m", 0.0, place, collector)
+                or 0.0
+            )
         if length < 0.0:
             refuse("wire", "has a negative length", str(net.wire.length))
         if layer != "local" and layer not in layers:
-            refuse("wire", "names a layer the circuit does not state", repr(layer), ", ".join(["local", *layers]), nearest(layer, ["local", *layers]))
+            refuse(
+                "wire",
+                "names a layer the circuit does not state",
+                repr(layer),
+                ", ".join(["local", *layers]),
+                nearest(layer, ["local", *layers]),
+            )
     swing = None
     if net.swing is not None:
         swing = convert_measure(Measure(value=net.swing.value, unit=net.swing.unit), "V", 1e-6, place, collector)
@@ -141,6 +155,17 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
             refuse(key, "is negative", str(number), "0 or above")
     busiest = net.busiest_per_operation if net.busiest_per_operation is not None else net.rising_per_operation
     return NetSpec(
-        net.name, net.driver, tuple(loads), fixed, length, unit, layer, swing, net.swing.reason if net.swing else "",
-        float(net.rising_per_operation), float(busiest), float(net.count), float(net.on_critical_path),
+        net.name,
+        net.driver,
+        tuple(loads),
+        fixed,
+        length,
+        unit,
+        layer,
+        swing,
+        net.swing.reason if net.swing else "",
+        float(net.rising_per_operation),
+        float(busiest),
+        float(net.count),
+        float(net.on_critical_path),
     )

@@ -91,8 +91,15 @@ class Library:
             if path is None:
                 known = self.ids(folder)
                 self.collector.add(
-                    Problem(where.file, where.line, where.name, f"there is no such set in {folder}", repr(name),
-                            ", ".join(known), nearest(name, known))
+                    Problem(
+                        where.file,
+                        where.line,
+                        where.name,
+                        f"there is no such set in {folder}",
+                        repr(name),
+                        ", ".join(known),
+                        nearest(name, known),
+                    )
                 )
                 self._sets[key] = None
             else:

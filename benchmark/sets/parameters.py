@@ -94,8 +94,14 @@ def _quantity_names(kind: str) -> list[str]:
 
 
 def _convert_values(
-    tables: Mapping[str, Any], allowed: Iterable[str], nodes: Sequence[str], file: TomlFile, defaults: Any,
-    sources: frozenset[str], collector: Collector, owner: str,
+    tables: Mapping[str, Any],
+    allowed: Iterable[str],
+    nodes: Sequence[str],
+    file: TomlFile,
+    defaults: Any,
+    sources: frozenset[str],
+    collector: Collector,
+    owner: str,
 ) -> dict[str, Value]:
     allowed = list(allowed)
     values: dict[str, Value] = {}
@@ -104,8 +110,13 @@ def _convert_values(
         if name not in allowed:
             known = name in QUANTITIES
             collector.add(
-                file.problem(dotted, f"is not used by {owner}" if known else "is not a known name",
-                             "", ", ".join(sorted(allowed)), nearest(name, allowed))
+                file.problem(
+                    dotted,
+                    f"is not used by {owner}" if known else "is not a known name",
+                    "",
+                    ", ".join(sorted(allowed)),
+                    nearest(name, allowed),
+                )
             )
             continue
         place = Place(file, dotted, defaults, sources)
@@ -115,7 +126,9 @@ def _convert_values(
     return values
 
 
-def _check_formulas(values: Mapping[str, Value], file: TomlFile, tables: Mapping[str, Any], collector: Collector) -> None:
+def _check_formulas(
+    values: Mapping[str, Value], file: TomlFile, tables: Mapping[str, Any], collector: Collector
+) -> None:
     """Recompute every derived value; it must agree within half a unit of its last printed digit."""
     arrays = {name: value.si for name, value in values.items()}
     for name, value in values.items():
@@ -125,7 +138,11 @@ def _check_formulas(values: Mapping[str, Value], file: TomlFile, tables: Mapping
         if not value.formula:
             continue
         if value.evidence != "derived":
-            collector.add(file.problem(f"{dotted}.formula", "belongs to derived values only", value.evidence, "evidence = \"derived\""))
+            collector.add(
+                file.problem(
+                    f"{dotted}.formula", "belongs to derived values only", value.evidence, 'evidence = "derived"'
+                )
+            )
             continue
         try:
             computed = evaluate_formula(value.formula, arrays)
@@ -140,9 +157,13 @@ def _check_formulas(values: Mapping[str, Value], file: TomlFile, tables: Mapping
         if np.any(np.abs(computed - expected) > half_digit * np.abs(scale) * 1.000001):
             worst = int(np.argmax(np.abs(computed - expected)))
             collector.add(
-                file.problem(dotted, "is stale: its formula gives another number",
-                             f"{value.in_unit(float(expected.flat[worst])):.6g} {value.unit}",
-                             f"{value.in_unit(float(computed.flat[worst])):.6g} {value.unit}", f"formula: {value.formula}")
+                file.problem(
+                    dotted,
+                    "is stale: its formula gives another number",
+                    f"{value.in_unit(float(expected.flat[worst])):.6g} {value.unit}",
+                    f"{value.in_unit(float(computed.flat[worst])):.6g} {value.unit}",
+                    f"formula: {value.formula}",
+                )
             )
 
 
@@ -150,10 +171,22 @@ def _exponent(number: Any) -> int:
     return number.as_tuple().exponent if hasattr(number, "as_tuple") else 0  # type: ignore[no-any-return]
 
 
-def _anchors(tables: Mapping[str, AnchorTable], nodes: Sequence[str], file: TomlFile, sources: frozenset[str], collector: Collector) -> tuple[Anchor, ...]:
+def _anchors(
+    tables: Mapping[str, AnchorTable],
+    nodes: Sequence[str],
+    file: TomlFile,
+    sources: frozenset[str],
+    collector: Collector,
+) -> tuple[Anchor, ...]:
     units = {
-        "on_current": "A/m", "on_current_p": "A/m", "off_current": "A/m", "off_current_p": "A/m",
-        "effective_current": "A/m", "effective_current_p": "A/m", "fan_out_4_delay": "s", "fan_out_4_energy": "J",
+        "on_current": "A/m",
+        "on_current_p": "A/m",
+        "off_current": "A/m",
+        "off_current_p": "A/m",
+        "effective_current": "A/m",
+        "effective_current_p": "A/m",
+        "fan_out_4_delay": "s",
+        "fan_out_4_energy": "J",
     }
     found: list[Anchor] = []
     for name, table in tables.items():
@@ -163,13 +196,25 @@ def _anchors(tables: Mapping[str, AnchorTable], nodes: Sequence[str], file: Toml
             collector.add(file.problem(dotted, "is not a known anchor", "", ", ".join(units), nearest(kind, units)))
             continue
         if table.source not in sources:
-            collector.add(file.problem(f"{dotted}.source", "is not a known source", repr(table.source), "a key of sources.toml", nearest(table.source, sources)))
+            collector.add(
+                file.problem(
+                    f"{dotted}.source",
+                    "is not a known source",
+                    repr(table.source),
+                    "a key of sources.toml",
+                    nearest(table.source, sources),
+                )
+            )
         if table.node is None and len(nodes) > 1:
             collector.add(file.problem(dotted, "must name its node", "", ", ".join(nodes)))
             continue
         node = table.node or nodes[0]
         if node not in nodes:
-            collector.add(file.problem(f"{dotted}.node", "is not a node of the set", repr(node), ", ".join(nodes), nearest(node, nodes)))
+            collector.add(
+                file.problem(
+                    f"{dotted}.node", "is not a node of the set", repr(node), ", ".join(nodes), nearest(node, nodes)
+                )
+            )
             continue
         place = Place(file, dotted, DefaultsTable(), sources)
         numbers = {}
@@ -180,7 +225,9 @@ def _anchors(tables: Mapping[str, AnchorTable], nodes: Sequence[str], file: Toml
                 )
         supply = None
         if table.supply is not None:
-            supply = convert_measure(table.supply, "V", 0.0, Place(file, f"{dotted}.supply", DefaultsTable(), sources), collector)
+            supply = convert_measure(
+                table.supply, "V", 0.0, Place(file, f"{dotted}.supply", DefaultsTable(), sources), collector
+            )
         value = numbers.get("value")
         if value is None:
             continue
@@ -188,24 +235,67 @@ def _anchors(tables: Mapping[str, AnchorTable], nodes: Sequence[str], file: Toml
         if low is None or high is None or not low <= value <= high:
             collector.add(file.problem(dotted, "does not lie between its low and high"))
             continue
-        found.append(Anchor(kind, node, value, low, high, table.unit, supply, table.source, table.where, table.conditions, table.note))
+        found.append(
+            Anchor(
+                kind,
+                node,
+                value,
+                low,
+                high,
+                table.unit,
+                supply,
+                table.source,
+                table.where,
+                table.conditions,
+                table.note,
+            )
+        )
     return tuple(found)
 
 
-def _rows(rows: Sequence[RowTable], nodes: Sequence[str], file: TomlFile, sources: frozenset[str], defaults: Any, collector: Collector) -> dict[str, MeasuredTable]:
+def _rows(
+    rows: Sequence[RowTable],
+    nodes: Sequence[str],
+    file: TomlFile,
+    sources: frozenset[str],
+    defaults: Any,
+    collector: Collector,
+) -> dict[str, MeasuredTable]:
     units = {
-        "supply": "V", "temperature": "K", "delay": "s", "energy_per_cycle": "J", "leakage_power": "W",
-        "drive_resistance": "ohm", "input_capacitance": "F", "area": "m^2",
+        "supply": "V",
+        "temperature": "K",
+        "delay": "s",
+        "energy_per_cycle": "J",
+        "leakage_power": "W",
+        "drive_resistance": "ohm",
+        "input_capacitance": "F",
+        "area": "m^2",
     }
     by_node: dict[str, dict[str, list[float]]] = {}
     for position, row in enumerate(rows):
         dotted = f"row.{position}"
         if row.node not in nodes:
-            collector.add(file.problem(f"{dotted}.node", "is not a node of the set", repr(row.node), ", ".join(nodes), nearest(row.node, nodes)))
+            collector.add(
+                file.problem(
+                    f"{dotted}.node",
+                    "is not a node of the set",
+                    repr(row.node),
+                    ", ".join(nodes),
+                    nearest(row.node, nodes),
+                )
+            )
             continue
         source = row.source or defaults.source or ""
         if source not in sources:
-            collector.add(file.problem(f"{dotted}.source", "is not a known source", repr(source), "a key of sources.toml", nearest(source, sources)))
+            collector.add(
+                file.problem(
+                    f"{dotted}.source",
+                    "is not a known source",
+                    repr(source),
+                    "a key of sources.toml",
+                    nearest(source, sources),
+                )
+            )
         columns = by_node.setdefault(row.node, {key: [] for key in units})
         for key, unit in units.items():
             measure = getattr(row, key)
@@ -215,42 +305,74 @@ def _rows(rows: Sequence[RowTable], nodes: Sequence[str], file: TomlFile, source
             si = convert_measure(measure, unit, 0.0, Place(file, f"{dotted}.{key}", defaults, sources), collector)
             columns[key].append(np.nan if si is None else si)
     return {
-        node: MeasuredTable("rows", {key: np.array(column) for key, column in columns.items()}, {}, "delay", "supply", "log", "monotone", {}, file.name)
+        node: MeasuredTable(
+            "rows",
+            {key: np.array(column) for key, column in columns.items()},
+            {},
+            "delay",
+            "supply",
+            "log",
+            "monotone",
+            {},
+            file.name,
+        )
         for node, columns in by_node.items()
     }
 
 
 def _resolve_defaults(
-    declaration: ModelDeclaration, options: Mapping[str, str], values: dict[str, Value], stated: frozenset[str],
-    file: TomlFile, collector: Collector,
+    declaration: ModelDeclaration,
+    options: Mapping[str, str],
+    values: dict[str, Value],
+    stated: frozenset[str],
+    file: TomlFile,
+    collector: Collector,
 ) -> None:
     """Fill declared defaults, and report required names that are absent."""
     for item in declaration.inputs:
         if item.name in values or item.name in stated:
             if item.when is not None and options.get(item.when[0]) not in item.when[1]:
                 collector.add(
-                    file.problem(f"value.{item.name}", "has no effect with this option",
-                                 f"{item.when[0]} = {options.get(item.when[0])!r}", f"{item.when[0]} = " + " or ".join(item.when[1]))
+                    file.problem(
+                        f"value.{item.name}",
+                        "has no effect with this option",
+                        f"{item.when[0]} = {options.get(item.when[0])!r}",
+                        f"{item.when[0]} = " + " or ".join(item.when[1]),
+                    )
                 )
             continue
         if item.when is not None and options.get(item.when[0]) not in item.when[1]:
             continue
         if item.default is not None:
             values[item.name] = Value(
-                item.name, np.array([item.default.value]), QUANTITIES[item.name].unit, None, item.default.evidence, "",
-                origin=item.default.origin, file=file.name,
+                item.name,
+                np.array([item.default.value]),
+                QUANTITIES[item.name].unit,
+                None,
+                item.default.evidence,
+                "",
+                origin=item.default.origin,
+                file=file.name,
             )
         elif item.required:
             quantity = QUANTITIES[item.name]
             collector.add(
-                file.problem(f"value.{item.name}", f"is missing ({quantity.meaning})", "", f"a value in {quantity.unit}",
-                             f"the model {declaration.name} needs it")
+                file.problem(
+                    f"value.{item.name}",
+                    f"is missing ({quantity.meaning})",
+                    "",
+                    f"a value in {quantity.unit}",
+                    f"the model {declaration.name} needs it",
+                )
             )
 
 
 def build_technology(
-    file: TomlFile, declarations: Callable[[str], ModelDeclaration], model_names: Sequence[str],
-    sources: frozenset[str], collector: Collector,
+    file: TomlFile,
+    declarations: Callable[[str], ModelDeclaration],
+    model_names: Sequence[str],
+    sources: frozenset[str],
+    collector: Collector,
 ) -> ParameterSet | None:
     """Validate and convert a technology file.
 
@@ -271,7 +393,15 @@ def build_technology(
         return None
     _check_identity(parsed, file, collector)
     if parsed.model not in model_names:
-        collector.add(file.problem("model", "is not a known model", repr(parsed.model), ", ".join(model_names), nearest(parsed.model, model_names)))
+        collector.add(
+            file.problem(
+                "model",
+                "is not a known model",
+                repr(parsed.model),
+                ", ".join(model_names),
+                nearest(parsed.model, model_names),
+            )
+        )
         return None
     declaration = declarations(parsed.model)
     options, default_options = _options(parsed.option, declaration, file, collector)
@@ -284,8 +414,15 @@ def build_technology(
     )
     if temperature is not None:
         values["reference_temperature"] = Value(
-            "reference_temperature", np.array([temperature]), parsed.reference_temperature.unit, None, "choice", "",
-            conditions="temperature at which the values of the set hold", file=file.name, line=file.line("reference_temperature"),
+            "reference_temperature",
+            np.array([temperature]),
+            parsed.reference_temperature.unit,
+            None,
+            "choice",
+            "",
+            conditions="temperature at which the values of the set hold",
+            file=file.name,
+            line=file.line("reference_temperature"),
         )
     _resolve_defaults(declaration, options, values, frozenset(parsed.value), file, collector)
     _check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
@@ -308,9 +445,26 @@ def build_technology(
     if len(collector.problems) > before:
         return None
     return ParameterSet(
-        parsed.id, parsed.title, "technology", parsed.model, tuple(parsed.nodes), parsed.flavour, parsed.ambition,
-        parsed.note, options, default_options, values, tables, rows, anchors, valid, file.name, file.sha256, file.text,
-        file.path, file.lines,
+        parsed.id,
+        parsed.title,
+        "technology",
+        parsed.model,
+        tuple(parsed.nodes),
+        parsed.flavour,
+        parsed.ambition,
+        parsed.note,
+        options,
+        default_options,
+        values,
+        tables,
+        rows,
+        anchors,
+        valid,
+        file.name,
+        file.sha256,
+        file.text,
+        file.path,
+        file.lines,
     )
 
 
@@ -328,9 +482,25 @@ def _options(
     known = {option.name: option for option in declaration.options}
     for name, text in given.items():
         if name not in known:
-            collector.add(file.problem(f"option.{name}", f"is not an option of the model {declaration.name}", "", ", ".join(known), nearest(name, known)))
+            collector.add(
+                file.problem(
+                    f"option.{name}",
+                    f"is not an option of the model {declaration.name}",
+                    "",
+                    ", ".join(known),
+                    nearest(name, known),
+                )
+            )
         elif text not in known[name].allowed:
-            collector.add(file.problem(f"option.{name}", "is not one of the allowed words", repr(text), ", ".join(known[name].allowed), nearest(text, known[name].allowed)))
+            collector.add(
+                file.problem(
+                    f"option.{name}",
+                    "is not one of the allowed words",
+                    repr(text),
+                    ", ".join(known[name].allowed),
+                    nearest(text, known[name].allowed),
+                )
+            )
     options = {name: given.get(name, option.default) for name, option in known.items()}
     return options, frozenset(name for name in known if name not in given)
 
@@ -343,19 +513,42 @@ def _tables(
     for name, reference in parsed.table.items():
         dotted = f"table.{name}"
         if name not in allowed:
-            collector.add(file.problem(dotted, f"is not used by the model {declaration.name}", "", ", ".join(allowed), nearest(name, allowed)))
+            collector.add(
+                file.problem(
+                    dotted,
+                    f"is not used by the model {declaration.name}",
+                    "",
+                    ", ".join(allowed),
+                    nearest(name, allowed),
+                )
+            )
             continue
         path = Path(reference.file)
-        if path.is_absolute() or ".." in path.parts or "\\" in reference.file or "\x00" in reference.file or path.suffix != ".csv":
-            collector.add(file.problem(f"{dotted}.file", "is not a CSV file inside the folder of the sets", repr(reference.file), "a relative path such as tables/name.csv"))
+        if (
+            path.is_absolute()
+            or ".." in path.parts
+            or "\\" in reference.file
+            or "\x00" in reference.file
+            or path.suffix != ".csv"
+        ):
+            collector.add(
+                file.problem(
+                    f"{dotted}.file",
+                    "is not a CSV file inside the folder of the sets",
+                    repr(reference.file),
+                    "a relative path such as tables/name.csv",
+                )
+            )
             continue
         root = file.path.parent.parent if (file.path.parent.parent / path).exists() else file.path.parent
-        table = read_table(root / path, name, sources, collector, str(Path(file.name).parent / path) if file.name else str(path))
+        table = read_table(
+            root / path, name, sources, collector, str(Path(file.name).parent / path) if file.name else str(path)
+        )
         if table is not None:
             found[name] = table
     for name, required in declaration.tables.items():
         if required and name != "rows" and name not in parsed.table:
-            collector.add(file.problem("table", f"{name} is missing", "", f"[table.{name}] file = \"tables/...csv\""))
+            collector.add(file.problem("table", f"{name} is missing", "", f'[table.{name}] file = "tables/...csv"'))
     return found
 
 
@@ -375,12 +568,29 @@ def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -
     if len(collector.problems) > before:
         return None
     return ParameterSet(
-        parsed.id, parsed.title, "wires", "", tuple(parsed.nodes), "", "today", parsed.note, {}, frozenset(), values,
-        {}, {}, (), {}, file.name, file.sha256, file.text, file.path, file.lines,
+        parsed.id,
+        parsed.title,
+        "wires",
+        "",
+        tuple(parsed.nodes),
+        "",
+        "today",
+        parsed.note,
+        {},
+        frozenset(),
+        values,
+        {},
+        {},
+        (),
+        {},
+        file.name,
+        file.sha256,
+        file.text,
+        file.path,
+        file.lines,
     )
 
 
 def replace_values(original: ParameterSet, values: Mapping[str, Value]) -> ParameterSet:
     """Return the set with some values replaced (what-if)."""
     return dataclasses.replace(original, values={**original.values, **values})
-

@@ -13,16 +13,19 @@ from benchmark.errors import Problem, nearest
 from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.problems import Collector
 
-__all__ = ["FileModel", "Number", "Measure", "SpreadTable", "ValueTable", "validate", "validate_part"]
+__all__ = ["FileModel", "Measure", "Number", "SpreadTable", "ValueTable", "validate", "validate_part"]
 
 
 def _number(value: Any) -> Any:
     if isinstance(value, bool) or not isinstance(value, (int, Decimal)):
-        raise PydanticCustomError("number", "a number is needed")
+        msg = "number"
+        raise PydanticCustomError(msg, "a number is needed")
     if isinstance(value, Decimal) and not value.is_finite():
-        raise PydanticCustomError("finite", "a finite number is needed")
+        msg = "finite"
+        raise PydanticCustomError(msg, "a finite number is needed")
     if abs(Decimal(value)) > Decimal("1e300") or (value != 0 and abs(Decimal(value)) < Decimal("1e-300")):
-        raise PydanticCustomError("finite", "the number is beyond the range of the program (1e-300 to 1e300)")
+        msg = "finite"
+        raise PydanticCustomError(msg, "the number is beyond the range of the program (1e-300 to 1e300)")
     return value
 
 
@@ -213,8 +216,21 @@ class WiresFile(FileModel):
 class SourceEntry(FileModel):
     """Where values come from."""
 
-    kind: Literal["article", "book", "thesis", "report", "roadmap", "standard", "data", "simulation", "measurement",
-                  "invented", "choice", "web page", "patent"]
+    kind: Literal[
+        "article",
+        "book",
+        "thesis",
+        "report",
+        "roadmap",
+        "standard",
+        "data",
+        "simulation",
+        "measurement",
+        "invented",
+        "choice",
+        "web page",
+        "patent",
+    ]
     authors: list[Text]
     year: int
     title: Text
@@ -274,7 +290,8 @@ def _dotted(location: tuple[Any, ...]) -> str:
     kept = [
         str(step)
         for position, step in enumerate(location)
-        if not (step in tags and position and location[position - 1] == "spread") and not str(step).startswith("function-")
+        if not (step in tags and position and location[position - 1] == "spread")
+        and not str(step).startswith("function-")
     ]
     return ".".join(kept)
 

@@ -55,8 +55,16 @@ def read_sources(path: Path, collector: Collector, name: str | None = None) -> d
         if entry.read == "second-hand" and not entry.via:
             collector.add(file.problem(key, "is second-hand and must say via what", "", 'via = "..."'))
         found[key] = Source(
-            key, entry.kind, tuple(entry.authors), entry.year, entry.title, entry.venue, entry.doi, entry.read,
-            entry.via, entry.note,
+            key,
+            entry.kind,
+            tuple(entry.authors),
+            entry.year,
+            entry.title,
+            entry.venue,
+            entry.doi,
+            entry.read,
+            entry.via,
+            entry.note,
         )
     return found
 

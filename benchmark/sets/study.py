@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any
+from typing import Any, Protocol
 
 from benchmark.catalogue import PRODUCT_CLASSES, QUANTITIES, STUDY_QUANTITIES
 from benchmark.errors import nearest
@@ -38,7 +38,19 @@ REQUIREMENTS: dict[str, tuple[str, str]] = {
 }
 _OVERHEADS = ("level_shifter_energy", "supply_efficiency", "overhead_power")
 _OPTIONAL_OVERHEADS = ("level_shifter_delay",)
+_LENGTHS = ("average_net_length", "average_net_pitches")
 _GATING = ("residual_leakage", "wake_energy_cycles")
+
+
+class CircuitDeclaration(Protocol):
+    """What this layer needs to know of a built-in circuit (``benchmark.circuits.library.BuiltIn`` has it)."""
+
+    @property
+    def required(self) -> tuple[str, ...]: ...
+    @property
+    def optional(self) -> tuple[str, ...]: ...
+    @property
+    def length(self) -> str: ...
 
 
 @dataclass(frozen=True)
@@ -136,7 +148,9 @@ class Study:
 class _Builder:
     """Walks a parsed study once, sending every problem to the collector."""
 
-    def __init__(self, parsed: StudyFile, file: TomlFile, library: Library, circuits: Mapping[str, Sequence[str]]) -> None:
+    def __init__(
+        self, parsed: StudyFile, file: TomlFile, library: Library, circuits: Mapping[str, CircuitDeclaration]
+    ) -> None:
         self.parsed, self.file, self.library, self.circuits = parsed, file, library, circuits
         self.collector: Collector = library.collector
         self.sources = frozenset(library.sources)
@@ -152,7 +166,9 @@ class _Builder:
 
     def word(self, dotted: str, text: str, allowed: Sequence[str]) -> None:
         if text not in allowed:
-            self.refuse(dotted, "is not one of the allowed words", repr(text), ", ".join(allowed), nearest(text, allowed))
+            self.refuse(
+                dotted, "is not one of the allowed words", repr(text), ", ".join(allowed), nearest(text, allowed)
+            )
 
     # -- values ---------------------------------------------------------------------------------------------
 
@@ -164,25 +180,27 @@ class _Builder:
         path = self.library.find(stem, "circuits")
         if path is None:
             known = [*self.circuits, *self.library.ids("circuits")]
-            self.refuse("workload.circuit", "there is no such circuit", repr(name), ", ".join(known), nearest(stem, known))
+            self.refuse(
+                "workload.circuit", "there is no such circuit", repr(name), ", ".join(known), nearest(stem, known)
+            )
             return None
         return read_circuit(path, self.library, self.collector)
 
     def needed_values(self) -> tuple[set[str], set[str]]:
         """Names the study must give, and names it may give."""
         parsed = self.parsed
-        must: set[str] = set(self.circuits.get(parsed.workload.circuit, ()))
-        may: set[str] = set()
-        length = {"average_net_length", "average_net_pitches"}
-        if must & length:
-            must -= length
-            may |= length
+        circuit = self.circuits.get(parsed.workload.circuit)
+        must: set[str] = set(circuit.required) if circuit else set()
+        may: set[str] = set(circuit.optional) - {"busiest_activity"} if circuit else set()
+        if circuit is not None and circuit.length != "none":
+            may |= set(_LENGTHS)
         if parsed.workload.timing == "clocked":
             must.add("clock_frequency")
         if parsed.workload.idle != "none":
             must |= {"idle_time", "active_cycles"}
         if "endurance" in parsed.requirements:
-            must.add("busiest_activity") if parsed.workload.circuit in self.circuits else None
+            if circuit is not None:
+                must.add("busiest_activity")
             if parsed.workload.idle == "none":
                 must.add("duty")
             if parsed.workload.timing == "self-timed":
@@ -197,17 +215,24 @@ class _Builder:
         for name, table in self.parsed.value.items():
             dotted = f"value.{name}"
             if name not in allowed:
-                what = "is not used by this circuit, timing, idle mode and requirements" if name in names else "is not a known name"
+                what = (
+                    "is not used by this circuit, timing, idle mode and requirements"
+                    if name in names
+                    else "is not a known name"
+                )
                 self.refuse(dotted, what, "", ", ".join(allowed), nearest(name, allowed))
                 continue
             value = convert_value(QUANTITIES[name], table, [""], self.place(dotted), self.collector)
             if value is not None:
                 found[name] = value
         for name in sorted(must - set(self.parsed.value)):
-            self.refuse(f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", f"a value in {QUANTITIES[name].unit}")
-        lengths = [name for name in ("average_net_length", "average_net_pitches") if name in self.parsed.value]
-        if {"average_net_length", "average_net_pitches"} <= may and len(lengths) != 1:
-            self.refuse("value", "needs exactly one of average_net_length and average_net_pitches", ", ".join(lengths) or "none")
+            self.refuse(
+                f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", f"a value in {QUANTITIES[name].unit}"
+            )
+        lengths = [name for name in _LENGTHS if name in self.parsed.value]
+        circuit = self.circuits.get(self.parsed.workload.circuit)
+        if len(lengths) > 1 or (circuit is not None and circuit.length == "required" and not lengths):
+            self.refuse("value", f"needs exactly one of {' and '.join(_LENGTHS)}", ", ".join(lengths) or "none")
         return found
 
     # -- sides ----------------------------------------------------------------------------------------------
@@ -227,10 +252,18 @@ class _Builder:
     def side(self, table: SideTable, dotted: str) -> Side | None:
         where = self.file.problem(f"{dotted}.technology", "")
         technology = self.library.load(table.technology, "technologies", where)
-        low = self.measure(Measure(value=table.knobs.supply.low, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply")
-        high = self.measure(Measure(value=table.knobs.supply.high, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply")
+        low = self.measure(
+            Measure(value=table.knobs.supply.low, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply"
+        )
+        high = self.measure(
+            Measure(value=table.knobs.supply.high, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply"
+        )
         if low is not None and high is not None and not 0.0 < low <= high:
-            self.refuse(f"{dotted}.knobs.supply", "needs 0 < low <= high", f"{table.knobs.supply.low} to {table.knobs.supply.high} {table.knobs.supply.unit}")
+            self.refuse(
+                f"{dotted}.knobs.supply",
+                "needs 0 < low <= high",
+                f"{table.knobs.supply.low} to {table.knobs.supply.high} {table.knobs.supply.unit}",
+            )
         sizes = self.frozen(table.knobs.size, "1", f"{dotted}.knobs.size", 1.0)
         if any(size <= 0 for size in sizes):
             self.refuse(f"{dotted}.knobs.size", "must be above 0")
@@ -248,19 +281,28 @@ class _Builder:
             self.refuse(f"{dotted}.knobs.threshold_shift", f"has no effect with the model {technology.model}")
         return Side(table.id or technology.id, technology, (low, high), sizes, shifts, overhead, gating)
 
-    def ledger(self, tables: Mapping[str, Any], must: Sequence[str], may: Sequence[str], dotted: str) -> dict[str, Value]:
+    def ledger(
+        self, tables: Mapping[str, Any], must: Sequence[str], may: Sequence[str], dotted: str
+    ) -> dict[str, Value]:
         found: dict[str, Value] = {}
         for name, table in tables.items():
             place = f"{dotted}.{name}"
             if name not in (*must, *may):
-                self.refuse(place, "is not used here", "", ", ".join((*must, *may)) or "nothing", nearest(name, (*must, *may)))
+                self.refuse(
+                    place, "is not used here", "", ", ".join((*must, *may)) or "nothing", nearest(name, (*must, *may))
+                )
                 continue
             value = convert_value(QUANTITIES[name], table, [""], self.place(place), self.collector)
             if value is not None:
                 found[name] = value
         for name in must:
             if name not in tables:
-                self.refuse(f"{dotted}.{name}", "is missing (a zero is an entry, not an omission)", "", f"a value in {QUANTITIES[name].unit}")
+                self.refuse(
+                    f"{dotted}.{name}",
+                    "is missing (a zero is an entry, not an omission)",
+                    "",
+                    f"a value in {QUANTITIES[name].unit}",
+                )
         return found
 
     def sides(self) -> tuple[Side | None, list[Side]]:
@@ -283,24 +325,50 @@ class _Builder:
         for repeated in sorted({label for label in labels if labels.count(label) > 1}):
             self.refuse("nodes.pairs", "a label appears twice", repr(repeated))
         if self.parsed.nodes.headline not in labels:
-            self.refuse("nodes.headline", "is not the label of a pair", repr(self.parsed.nodes.headline), ", ".join(labels), nearest(self.parsed.nodes.headline, labels))
+            self.refuse(
+                "nodes.headline",
+                "is not the label of a pair",
+                repr(self.parsed.nodes.headline),
+                ", ".join(labels),
+                nearest(self.parsed.nodes.headline, labels),
+            )
         ids = [side.id for side in contenders]
         for pair in self.parsed.nodes.pairs:
             dotted = "nodes.pairs"
             if candidate is not None and pair.candidate not in candidate.technology.nodes:
-                self.refuse(dotted, f"the candidate {candidate.technology.id} has no node", repr(pair.candidate), ", ".join(candidate.technology.nodes), nearest(pair.candidate, candidate.technology.nodes))
+                self.refuse(
+                    dotted,
+                    f"the candidate {candidate.technology.id} has no node",
+                    repr(pair.candidate),
+                    ", ".join(candidate.technology.nodes),
+                    nearest(pair.candidate, candidate.technology.nodes),
+                )
             reference = pair.reference if isinstance(pair.reference, dict) else dict.fromkeys(ids, pair.reference)
             for name in reference:
                 if name not in ids:
-                    self.refuse(dotted, "names a contender that is not listed", repr(name), ", ".join(ids), nearest(name, ids))
+                    self.refuse(
+                        dotted, "names a contender that is not listed", repr(name), ", ".join(ids), nearest(name, ids)
+                    )
             for side in contenders:
                 node = reference.get(side.id)
                 if node is not None and node not in side.technology.nodes:
-                    self.refuse(dotted, f"the reference {side.technology.id} has no node", repr(node), ", ".join(side.technology.nodes), nearest(node, side.technology.nodes))
+                    self.refuse(
+                        dotted,
+                        f"the reference {side.technology.id} has no node",
+                        repr(node),
+                        ", ".join(side.technology.nodes),
+                        nearest(node, side.technology.nodes),
+                    )
             if not reference:
                 self.refuse(dotted, "names no reference node", repr(pair.label))
             if wires is not None and pair.wires not in wires.nodes:
-                self.refuse(dotted, f"the wires set {wires.id} has no node", repr(pair.wires), ", ".join(wires.nodes), nearest(pair.wires, wires.nodes))
+                self.refuse(
+                    dotted,
+                    f"the wires set {wires.id} has no node",
+                    repr(pair.wires),
+                    ", ".join(wires.nodes),
+                    nearest(pair.wires, wires.nodes),
+                )
             found.append(NodePair(pair.label, pair.candidate, dict(reference), pair.wires))
         return found
 
@@ -311,7 +379,9 @@ class _Builder:
         for name, table in self.parsed.requirements.items():
             dotted = f"requirements.{name}"
             if name not in REQUIREMENTS:
-                self.refuse(dotted, "is not a known requirement", "", ", ".join(REQUIREMENTS), nearest(name, REQUIREMENTS))
+                self.refuse(
+                    dotted, "is not a known requirement", "", ", ".join(REQUIREMENTS), nearest(name, REQUIREMENTS)
+                )
                 continue
             unit, _ = REQUIREMENTS[name]
             limit, life = None, 0.0
@@ -324,7 +394,7 @@ class _Builder:
                 if name != "deadline" or self.parsed.workload.timing != "clocked":
                     self.refuse(f"{dotted}.limit", 'may be "cycle" only for the deadline of a clocked workload')
             elif table.limit is None or isinstance(table.limit, str):
-                self.refuse(dotted, "has no limit", "", f"limit = {{ value = ..., unit = \"{unit}\" }}")
+                self.refuse(dotted, "has no limit", "", f'limit = {{ value = ..., unit = "{unit}" }}')
             else:
                 limit = self.measure(table.limit, unit, f"{dotted}.limit")
             if table.life is not None and name != "endurance":
@@ -343,7 +413,13 @@ class _Builder:
         required: float | str = ""
         if table.required_time is None:
             if used & {"iso-delay"}:
-                self.refuse("policy.required_time", "is missing", "", '"cycle", "contender:<id>" or { value, unit }', "iso-delay needs it")
+                self.refuse(
+                    "policy.required_time",
+                    "is missing",
+                    "",
+                    '"cycle", "contender:<id>" or { value, unit }',
+                    "iso-delay needs it",
+                )
         elif isinstance(table.required_time, str):
             required = table.required_time
             names = [f"contender:{side.id}" for side in contenders]
@@ -394,7 +470,7 @@ class _Builder:
         return number
 
 
-def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Sequence[str]]) -> Study | None:
+def build_study(file: TomlFile, library: Library, circuits: Mapping[str, CircuitDeclaration]) -> Study | None:
     """Validate and convert a study with everything it refers to.
 
     Parameters
@@ -403,7 +479,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Sequenc
     library : Library
         Finds the sets, the wires and the sources; its collector receives every problem.
     circuits : mapping
-        Built-in circuit name -> names of the scenario values it needs.
+        Built-in circuit name -> what it declares.
     """
     before = len(library.collector.problems)
     parsed = validate(StudyFile, file, library.collector)
@@ -427,30 +503,82 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Sequenc
     leakage_band = build.number("conditions.guard_band.leakage", parsed.conditions.guard_band.leakage, 1.0, 1e6)
     points = int(build.number("search.supply_points", parsed.search.supply_points, 3, 5001))
     refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
+    _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
     _check_self_comparison(build, candidate, contenders)
     _check_invented(build, values, candidate, contenders, wires)
     if len(library.collector.problems) > before or candidate is None or wires is None or not contenders:
         return None
     return Study(
-        parsed.id, parsed.title, parsed.declared.isoformat(), parsed.owner, parsed.demonstration, parsed.note,
-        parsed.product.class_, parsed.product.describe, parsed.workload.operation, parsed.workload.circuit, spec,
-        parsed.workload.timing, parsed.workload.leakage_accounting, parsed.workload.idle, values, temperatures,
-        parsed.conditions.delay_rule, delay_band, leakage_band, wires, candidate, tuple(contenders),
-        parsed.nodes.headline, tuple(pairs), requirements, policy, advantage, parsed.verdict.invented_inputs, points,
-        refine, file.name, file.sha256, file.text, file.path,
+        parsed.id,
+        parsed.title,
+        parsed.declared.isoformat(),
+        parsed.owner,
+        parsed.demonstration,
+        parsed.note,
+        parsed.product.class_,
+        parsed.product.describe,
+        parsed.workload.operation,
+        parsed.workload.circuit,
+        spec,
+        parsed.workload.timing,
+        parsed.workload.leakage_accounting,
+        parsed.workload.idle,
+        values,
+        temperatures,
+        parsed.conditions.delay_rule,
+        delay_band,
+        leakage_band,
+        wires,
+        candidate,
+        tuple(contenders),
+        parsed.nodes.headline,
+        tuple(pairs),
+        requirements,
+        policy,
+        advantage,
+        parsed.verdict.invented_inputs,
+        points,
+        refine,
+        file.name,
+        file.sha256,
+        file.text,
+        file.path,
     )
+
+
+def _check_temperatures(build: _Builder, temperatures: Sequence[float], sides: Sequence[Side]) -> None:
+    """Every temperature of the study must lie in the validity range of every set."""
+    for side in sides:
+        low, high = side.technology.valid.get("temperature", (0.0, float("inf")))
+        for temperature in temperatures:
+            if not low <= temperature <= high:
+                build.refuse(
+                    "conditions.temperatures",
+                    f"is outside the validity of {side.technology.id}",
+                    f"{temperature:g} K",
+                    f"{low:g} to {high:g} K",
+                )
 
 
 def _check_self_comparison(build: _Builder, candidate: Side | None, contenders: Sequence[Side]) -> None:
     """The candidate may stand among the contenders only when its id says that this is a self-comparison."""
     for side in contenders:
         if candidate is not None and side.technology.id == candidate.technology.id and "self-comparison" not in side.id:
-            build.refuse("contender", "the candidate's technology is also a contender", repr(side.technology.id), "",
-                         'if this is meant, give the contender an id containing "self-comparison"')
+            build.refuse(
+                "contender",
+                "the candidate's technology is also a contender",
+                repr(side.technology.id),
+                "",
+                'if this is meant, give the contender an id containing "self-comparison"',
+            )
 
 
 def _check_invented(
-    build: _Builder, values: Mapping[str, Value], candidate: Side | None, contenders: Sequence[Side], wires: ParameterSet | None
+    build: _Builder,
+    values: Mapping[str, Value],
+    candidate: Side | None,
+    contenders: Sequence[Side],
+    wires: ParameterSet | None,
 ) -> None:
     """A study with invented inputs must call itself a demonstration, and only then."""
     groups = [values.values()] + [wires.values.values()] * (wires is not None)
@@ -464,5 +592,3 @@ def _check_invented(
     invented = sorted({value.name for group in groups for value in group if value.evidence == "invented"})
     if invented and not build.parsed.demonstration:
         build.refuse("demonstration", "must be true: some inputs are invented", ", ".join(invented[:5]))
-
-

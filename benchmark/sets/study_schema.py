@@ -11,9 +11,7 @@ from benchmark.sets.schema import DefaultsTable, FileModel, Label, Measure, Node
 
 __all__ = ["CircuitFile", "StudyFile"]
 
-POLICIES = Literal[
-    "declared-point", "iso-delay", "iso-energy", "minimum-energy", "minimum-energy-delay", "same-supply"
-]
+POLICIES = Literal["declared-point", "iso-delay", "iso-energy", "minimum-energy", "minimum-energy-delay", "same-supply"]
 METRICS = Literal["energy-per-operation", "time-per-operation", "area", "leakage-power"]
 
 

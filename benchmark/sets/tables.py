@@ -36,7 +36,13 @@ COLUMN_UNITS: dict[str, str] = {
     "path_resistance": "ohm",
 }
 #: values that must be positive once the declared sign is removed
-_POSITIVE = {"path_current", "path_current_per_width", "input_capacitance", "input_capacitance_per_width", "path_resistance"}
+_POSITIVE = {
+    "path_current",
+    "path_current_per_width",
+    "input_capacitance",
+    "input_capacitance_per_width",
+    "path_resistance",
+}
 
 
 class ColumnTable(FileModel):
@@ -87,8 +93,12 @@ class Sidecar(FileModel):
     def defaults(self) -> DefaultsTable:
         """Provenance shared by the whole table."""
         return DefaultsTable(
-            evidence=self.evidence, source=self.source, conditions=self.conditions, owner=self.owner or None,
-            where=self.where, note=self.note or None,
+            evidence=self.evidence,
+            source=self.source,
+            conditions=self.conditions,
+            owner=self.owner or None,
+            where=self.where,
+            note=self.note or None,
         )
 
 
@@ -109,7 +119,9 @@ class TableFile:
     sidecar_raw: str
 
 
-def read_table(csv_path: Path, name: str, sources: frozenset[str], collector: Collector, shown_name: str) -> TableFile | None:
+def read_table(
+    csv_path: Path, name: str, sources: frozenset[str], collector: Collector, shown_name: str
+) -> TableFile | None:
     """Read one table; every problem names file, row and column."""
     before = len(collector.problems)
     sidecar_path = csv_path.with_suffix(".toml")
@@ -120,10 +132,19 @@ def read_table(csv_path: Path, name: str, sources: frozenset[str], collector: Co
     if sidecar is None:
         return None
     if sidecar.file != csv_path.name:
-        collector.add(file.problem("file", "does not name the table beside the sidecar", repr(sidecar.file), repr(csv_path.name)))
+        collector.add(
+            file.problem("file", "does not name the table beside the sidecar", repr(sidecar.file), repr(csv_path.name))
+        )
     if sidecar.source not in sources:
-        collector.add(file.problem("source", "is not a known source", repr(sidecar.source), "a key of sources.toml",
-                                   nearest(sidecar.source, sources)))
+        collector.add(
+            file.problem(
+                "source",
+                "is not a known source",
+                repr(sidecar.source),
+                "a key of sources.toml",
+                nearest(sidecar.source, sources),
+            )
+        )
     units = _column_units(sidecar, file, collector)
     raw = read_bytes(csv_path, shown_name, collector)
     if raw is None:
@@ -151,8 +172,17 @@ def read_table(csv_path: Path, name: str, sources: frozenset[str], collector: Co
     if len(collector.problems) > before:
         return None
     return TableFile(
-        table, sidecar.evidence, sidecar.source, sidecar.where, sidecar.conditions, sidecar.note,
-        hashlib.sha256(raw).hexdigest(), file.sha256, shown_name, raw.decode("utf-8-sig"), file.text,
+        table,
+        sidecar.evidence,
+        sidecar.source,
+        sidecar.where,
+        sidecar.conditions,
+        sidecar.note,
+        hashlib.sha256(raw).hexdigest(),
+        file.sha256,
+        shown_name,
+        raw.decode("utf-8-sig"),
+        file.text,
     )
 
 
@@ -163,8 +193,15 @@ def _column_units(sidecar: Sidecar, file: TomlFile, collector: Collector) -> dic
         if spec.kind == "label":
             continue
         if spec.meaning not in COLUMN_UNITS:
-            collector.add(file.problem(f"{dotted}.meaning", "is not a known meaning", repr(spec.meaning),
-                                       ", ".join(COLUMN_UNITS), nearest(spec.meaning, COLUMN_UNITS)))
+            collector.add(
+                file.problem(
+                    f"{dotted}.meaning",
+                    "is not a known meaning",
+                    repr(spec.meaning),
+                    ", ".join(COLUMN_UNITS),
+                    nearest(spec.meaning, COLUMN_UNITS),
+                )
+            )
             continue
         wanted = parse_unit(COLUMN_UNITS[spec.meaning])
         if spec.unit is None:
@@ -176,7 +213,14 @@ def _column_units(sidecar: Sidecar, file: TomlFile, collector: Collector) -> dic
             collector.add(file.problem(f"{dotted}.unit", f"unknown unit: {error}"))
             continue
         if unit.dimension != wanted.dimension:
-            collector.add(file.problem(f"{dotted}.unit", "has the wrong dimension", repr(spec.unit), f"a unit such as {COLUMN_UNITS[spec.meaning]}"))
+            collector.add(
+                file.problem(
+                    f"{dotted}.unit",
+                    "has the wrong dimension",
+                    repr(spec.unit),
+                    f"a unit such as {COLUMN_UNITS[spec.meaning]}",
+                )
+            )
             continue
         units[column] = unit
     named = [("interpolate.column", sidecar.interpolate.column), ("interpolate.along", sidecar.interpolate.along)]
@@ -184,8 +228,15 @@ def _column_units(sidecar: Sidecar, file: TomlFile, collector: Collector) -> dic
         named.append(("floor.column", sidecar.floor.column))
     for dotted, column in named:
         if column not in sidecar.column:
-            collector.add(file.problem(dotted, "names a column that is not described", repr(column),
-                                       ", ".join(sidecar.column), nearest(column, sidecar.column)))
+            collector.add(
+                file.problem(
+                    dotted,
+                    "names a column that is not described",
+                    repr(column),
+                    ", ".join(sidecar.column),
+                    nearest(column, sidecar.column),
+                )
+            )
     return units
 
 
@@ -219,15 +270,35 @@ def _rows(raw: bytes, sidecar: Sidecar, name: str, collector: Collector) -> list
         collector.add(Problem(name, header_line, column, "column name appears twice"))
     for column in header:
         if column not in sidecar.column:
-            collector.add(Problem(name, header_line, column, "column is not described in the sidecar", "",
-                                  ", ".join(sidecar.column), nearest(column, sidecar.column)))
+            collector.add(
+                Problem(
+                    name,
+                    header_line,
+                    column,
+                    "column is not described in the sidecar",
+                    "",
+                    ", ".join(sidecar.column),
+                    nearest(column, sidecar.column),
+                )
+            )
     for column in sidecar.column:
         if column not in header:
-            collector.add(Problem(name, header_line, column, "column is described but absent", "", ", ".join(header),
-                                  nearest(column, header)))
+            collector.add(
+                Problem(
+                    name,
+                    header_line,
+                    column,
+                    "column is described but absent",
+                    "",
+                    ", ".join(header),
+                    nearest(column, header),
+                )
+            )
     for line, cells in rows[1:]:
         if len(cells) != len(header):
-            collector.add(Problem(name, line, "", "row and header differ in length", f"{len(cells)} cells", f"{len(header)}"))
+            collector.add(
+                Problem(name, line, "", "row and header differ in length", f"{len(cells)} cells", f"{len(header)}")
+            )
     return rows
 
 
@@ -255,18 +326,43 @@ def _columns(
             labels[spec.meaning] = tuple(cells[position] for _, cells in rows[1:])
             for line, cells in rows[1:]:
                 if spec.allowed and cells[position] not in spec.allowed:
-                    collector.add(Problem(name, line, column, "is not an allowed word", repr(cells[position]), ", ".join(spec.allowed)))
+                    collector.add(
+                        Problem(
+                            name, line, column, "is not an allowed word", repr(cells[position]), ", ".join(spec.allowed)
+                        )
+                    )
             continue
         numbers = []
         for line, cells in rows[1:]:
             number = _cell(cells[position], sidecar.decimal)
             if number is None:
-                hint = "declare decimal = \",\" in the sidecar" if "," in cells[position] and sidecar.decimal == "." else ""
-                collector.add(Problem(name, line, column, "is not a number", repr(cells[position][:40]), f"a number with decimal {sidecar.decimal!r}", hint))
+                hint = (
+                    'declare decimal = "," in the sidecar' if "," in cells[position] and sidecar.decimal == "." else ""
+                )
+                collector.add(
+                    Problem(
+                        name,
+                        line,
+                        column,
+                        "is not a number",
+                        repr(cells[position][:40]),
+                        f"a number with decimal {sidecar.decimal!r}",
+                        hint,
+                    )
+                )
                 continue
             number = -number if spec.sign == "negative" and number != 0 else number
             if spec.meaning in _POSITIVE and number <= 0:
-                collector.add(Problem(name, line, column, "must be above 0", cells[position], "above 0" if spec.sign == "positive" else "below 0 (declared negative)"))
+                collector.add(
+                    Problem(
+                        name,
+                        line,
+                        column,
+                        "must be above 0",
+                        cells[position],
+                        "above 0" if spec.sign == "positive" else "below 0 (declared negative)",
+                    )
+                )
                 continue
             numbers.append(to_si(number, units[column]))
         columns[spec.meaning] = np.array(numbers, dtype=np.float64)
@@ -297,8 +393,13 @@ def _check_rows(table: MeasuredTable, name: str, collector: Collector) -> None:
         value = float(table.columns[table.value][row])
         if seen.setdefault(key, value) != value:
             point = ", ".join(str(part) for part in key)
-            collector.add(Problem(name, row + 2, table.value, "has two different values at the same point of one sweep", point))
-        curve = (*(labels[row] for labels in table.labels.values()), *(float(table.columns[axis][row]) for axis in axes if axis != table.along))
+            collector.add(
+                Problem(name, row + 2, table.value, "has two different values at the same point of one sweep", point)
+            )
+        curve = (
+            *(labels[row] for labels in table.labels.values()),
+            *(float(table.columns[axis][row]) for axis in axes if axis != table.along),
+        )
         curves.setdefault(curve, set()).add(float(table.columns[table.along][row]))
     for curve, points in curves.items():
         if len(points) < 2:

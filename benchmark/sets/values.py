@@ -40,7 +40,8 @@ NORMAL_95 = 1.959963984540054
 class Spread:
     """Spread of a value. ``low`` and ``high`` are SI, per node: hard limits of uniform, loguniform and triangular,
     the central 95 % of normal and lognormal. ``scale`` is the standard deviation (normal, SI per node) or the
-    standard deviation of the logarithm (lognormal)."""
+    standard deviation of the logarithm (lognormal).
+    """
 
     shape: str
     low: NDArray[np.float64]
@@ -138,7 +139,9 @@ def convert_number(number: Decimal | int, unit: Unit, place: Place, key: str, co
     return si
 
 
-def check_range(quantity: Quantity, si: float, unit: Unit, unusual: bool, place: Place, key: str, collector: Collector) -> bool:
+def check_range(
+    quantity: Quantity, si: float, unit: Unit, unusual: bool, place: Place, key: str, collector: Collector
+) -> bool:
     """Check domain and usual range; beyond a factor 1000 only with ``unusual = true``."""
     dotted = f"{place.dotted}.{key}"
     as_found = f"{from_si(si, unit):.6g} {unit.text}"
@@ -156,7 +159,10 @@ def check_range(quantity: Quantity, si: float, unit: Unit, unusual: bool, place:
     if far:
         collector.add(
             place.file.problem(
-                dotted, "is more than a factor 1000 outside the usual range", as_found, allowed,
+                dotted,
+                "is more than a factor 1000 outside the usual range",
+                as_found,
+                allowed,
                 "check the prefix of the unit, or state unusual = true",
             )
         )
@@ -166,8 +172,14 @@ def check_range(quantity: Quantity, si: float, unit: Unit, unusual: bool, place:
 
 
 def _convert_spread(
-    table: Any, quantity: Quantity, unit: Unit, si: NDArray[np.float64], raw: Sequence[Decimal | int], by_node: bool,
-    place: Place, collector: Collector,
+    table: Any,
+    quantity: Quantity,
+    unit: Unit,
+    si: NDArray[np.float64],
+    raw: Sequence[Decimal | int],
+    by_node: bool,
+    place: Place,
+    collector: Collector,
 ) -> Spread | None:
     file, dotted = place.file, f"{place.dotted}.spread"
 
@@ -176,21 +188,35 @@ def _convert_spread(
 
     if isinstance(table, (Uniform, LogUniform, Triangular)):
         if by_node:
-            refuse("has absolute limits together with by_node", table.shape, "lognormal or normal with percent",
-                   "a spread must follow each node's own value")
+            refuse(
+                "has absolute limits together with by_node",
+                table.shape,
+                "lognormal or normal with percent",
+                "a spread must follow each node's own value",
+            )
             return None
         low, high = (to_si(bound, unit) for bound in (table.low, table.high))
         if table.low > table.high:
             refuse("has low above high", f"low {table.low}, high {table.high}", "low <= value <= high")
             return None
         if not table.low <= raw[0] <= table.high:
-            refuse("does not contain the value", f"value {raw[0]}, low {table.low}, high {table.high}", "low <= value <= high")
+            refuse(
+                "does not contain the value",
+                f"value {raw[0]}, low {table.low}, high {table.high}",
+                "low <= value <= high",
+            )
             return None
         if isinstance(table, LogUniform) and low <= 0.0:
             refuse("needs positive limits on a log scale", f"low {table.low}", "above 0")
             return None
-        if not (quantity.allows(low) or quantity.domain == "count") or not (quantity.allows(high) or quantity.domain == "count"):
-            refuse("reaches out of the domain of the value", f"{table.low} to {table.high} {unit.text}", quantity.domain_text)
+        if not (quantity.allows(low) or quantity.domain == "count") or not (
+            quantity.allows(high) or quantity.domain == "count"
+        ):
+            refuse(
+                "reaches out of the domain of the value",
+                f"{table.low} to {table.high} {unit.text}",
+                quantity.domain_text,
+            )
             return None
         return Spread(table.shape, np.array([low]), np.array([high]))
     if isinstance(table, Normal):
@@ -210,8 +236,12 @@ def _convert_spread(
             return None
         low_95, high_95 = si - NORMAL_95 * sd, si + NORMAL_95 * sd
         if not all(quantity.allows(float(bound)) for bound in (*low_95, *high_95)):
-            refuse("makes the value leave its domain", f"95 % range {low_95[0]:.3g} to {high_95[0]:.3g} (SI)",
-                   quantity.domain_text, "use lognormal")
+            refuse(
+                "makes the value leave its domain",
+                f"95 % range {low_95[0]:.3g} to {high_95[0]:.3g} (SI)",
+                quantity.domain_text,
+                "use lognormal",
+            )
             return None
         return Spread("normal", low_95, high_95, sd)
     return _convert_lognormal(table, quantity, si, refuse)
@@ -252,21 +282,31 @@ def _provenance(table: ValueTable, place: Place, collector: Collector) -> dict[s
         collector.add(file.problem(place.dotted, "has no evidence class", "", ", ".join(EVIDENCE)))
     elif evidence is None:
         collector.add(
-            file.problem(f"{place.dotted}.evidence", "is not an evidence class", repr(found["evidence"]),
-                         ", ".join(EVIDENCE), nearest(found["evidence"], EVIDENCE))
+            file.problem(
+                f"{place.dotted}.evidence",
+                "is not an evidence class",
+                repr(found["evidence"]),
+                ", ".join(EVIDENCE),
+                nearest(found["evidence"], EVIDENCE),
+            )
         )
     else:
         for key in evidence.must_state:
             if found[key].strip() in ("", "-"):
                 collector.add(
-                    file.problem(place.dotted, f"is {evidence.name} and must state its {key}", "", f"{key} = \"...\"")
+                    file.problem(place.dotted, f"is {evidence.name} and must state its {key}", "", f'{key} = "..."')
                 )
     if not found["source"]:
         collector.add(file.problem(place.dotted, "has no source", "", "a key of nodes/sources.toml"))
     elif found["source"] not in place.sources:
         collector.add(
-            file.problem(f"{place.dotted}.source", "is not a known source", repr(found["source"]),
-                         "a key of sources.toml", nearest(found["source"], place.sources))
+            file.problem(
+                f"{place.dotted}.source",
+                "is not a known source",
+                repr(found["source"]),
+                "a key of sources.toml",
+                nearest(found["source"], place.sources),
+            )
         )
     return {key: text or ("-" if key in ("where", "conditions") else "") for key, text in found.items()}
 
@@ -290,15 +330,20 @@ def convert_value(
             collector.add(file.problem(f"{place.dotted}.by_node", f"has no entry for node {node!r}"))
         for node in unknown:
             collector.add(
-                file.problem(f"{place.dotted}.by_node", "names a node the set does not have", repr(node),
-                             ", ".join(nodes), nearest(node, nodes))
+                file.problem(
+                    f"{place.dotted}.by_node",
+                    "names a node the set does not have",
+                    repr(node),
+                    ", ".join(nodes),
+                    nearest(node, nodes),
+                )
             )
         numbers = {node: table.by_node[node] for node in nodes if node in table.by_node}
         keys = [f"by_node.{node}" for node in numbers]
     else:
         numbers = {"": table.value}  # type: ignore[dict-item]
         keys = ["value"]
-    if unit is None or len(collector.problems) > before and not numbers:
+    if unit is None or (len(collector.problems) > before and not numbers):
         return None
     si: list[float] = []
     for key, number in zip(keys, numbers.values(), strict=True):
@@ -336,20 +381,30 @@ def convert_measure(
     try:
         unit = parse_unit(measure.unit)
     except UnitError as error:
-        collector.add(place.file.problem(f"{place.dotted}.unit", f"unknown unit: {error}", "", f"a unit such as {unit_like}"))
+        collector.add(
+            place.file.problem(f"{place.dotted}.unit", f"unknown unit: {error}", "", f"a unit such as {unit_like}")
+        )
         return None
     wanted = parse_unit(unit_like)
     if unit.dimension != wanted.dimension:
         collector.add(
-            place.file.problem(f"{place.dotted}.unit", "has the wrong dimension", f"{measure.unit!r} ({unit.dimension_text})",
-                               f"a unit such as {unit_like} ({wanted.dimension_text})")
+            place.file.problem(
+                f"{place.dotted}.unit",
+                "has the wrong dimension",
+                f"{measure.unit!r} ({unit.dimension_text})",
+                f"a unit such as {unit_like} ({wanted.dimension_text})",
+            )
         )
         return None
     si = convert_number(measure.value, unit, place, "value", collector)
     if si is not None and domain_low is not None and si < domain_low:
         collector.add(
-            place.file.problem(f"{place.dotted}.value", "is too small", f"{measure.value} {measure.unit}",
-                               f"at least {from_si(domain_low, unit):g} {measure.unit}")
+            place.file.problem(
+                f"{place.dotted}.value",
+                "is too small",
+                f"{measure.value} {measure.unit}",
+                f"at least {from_si(domain_low, unit):g} {measure.unit}",
+            )
         )
         return None
     return si
@@ -362,6 +417,8 @@ def convert_range(table: RangeTable, unit_like: str, place: Place, collector: Co
     if low is None or high is None:
         return None
     if low > high:
-        collector.add(place.file.problem(place.dotted, "has low above high", f"{table.low} to {table.high} {table.unit}"))
+        collector.add(
+            place.file.problem(place.dotted, "has low above high", f"{table.low} to {table.high} {table.unit}")
+        )
         return None
     return low, high

@@ -1,0 +1,65 @@
+"""A batch: many parameter vectors at once (layer 6). Row 0 is always the best estimate.
+
+A value is addressed by its ledger key, ``owner.name``: the owner is a technology id, a wires id, ``study``,
+``candidate.overhead`` and the like. A technology that plays both sides has one key, hence one value in every row.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.sets.values import Value
+
+__all__ = ["Batch", "resolve"]
+
+
+@dataclass(frozen=True)
+class Batch:
+    """``rows`` parameter vectors; ``columns`` holds only the values that differ from the best estimate."""
+
+    rows: int
+    columns: Mapping[str, NDArray[np.float64]]
+
+    @classmethod
+    def best_estimate(cls) -> Batch:
+        """One row, nothing moved."""
+        return cls(1, {})
+
+    @classmethod
+    def one_at_a_time(cls, moves: Iterable[tuple[str, float, float]]) -> Batch:
+        """Row 0 best estimate, then one row for each (key, best, moved) with that value alone moved."""
+        listed = list(moves)
+        rows = 1 + len(listed)
+        columns: dict[str, NDArray[np.float64]] = {}
+        for row, (key, best, moved) in enumerate(listed, start=1):
+            column = columns.setdefault(key, np.full(rows, best))
+            column[row] = moved
+        return cls(rows, columns)
+
+    def take(self, rows: NDArray[np.intp]) -> Batch:
+        """Return the batch of some rows, in the order given."""
+        return Batch(len(rows), {key: column[rows] for key, column in self.columns.items()})
+
+    def affected(self, keys: Iterable[str]) -> NDArray[np.intp]:
+        """Rows in which any of ``keys`` differs from row 0 (row 0 itself always included)."""
+        moved = np.zeros(self.rows, dtype=bool)
+        moved[0] = True
+        for key in keys:
+            column = self.columns.get(key)
+            if column is not None:
+                moved |= column != column[0]
+        return np.flatnonzero(moved)
+
+
+def resolve(owner: str, values: Mapping[str, Value], batch: Batch) -> dict[str, NDArray[np.float64]]:
+    """Return the values of one owner as arrays of shape (row or 1, 1, 1)."""
+    found: dict[str, NDArray[np.float64]] = {}
+    for name, value in values.items():
+        column = batch.columns.get(f"{owner}.{name}")
+        array = value.si[:1] if column is None else column
+        found[name] = np.asarray(array, dtype=np.float64).reshape(-1, 1, 1)
+    return found

@@ -1,0 +1,256 @@
+"""Design points of one side: what one operation costs at each supply (layer 6).
+
+Arrays have the shape (row, supply). Temperatures are reduced as the study says: the path delay at the slowest
+temperature of the list, leakage and dynamic energy at the highest.
+
+Energy of one operation [J]::
+
+    E = (E_dynamic + (P_leakage + P_bias + P_overhead) T + E_idle) / efficiency + E_level_shifter
+
+T is the cycle time under period accounting and the path delay under operation accounting. E_idle per operation is
+P_leakage t_idle / n_active when idle blocks leak, and (r P_leakage t_idle + k_wake sum(C V^2)) / n_active when they
+are power-gated.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Mapping
+from dataclasses import dataclass, field
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.circuits.operation import OperationMetrics, estimate
+from benchmark.devices.record import SwitchPair
+from benchmark.evaluate.side import SideProblem
+
+__all__ = ["Points", "design_points", "with_cycle"]
+
+Array = NDArray[np.float64]
+Mask = NDArray[np.bool_]
+
+
+@dataclass(frozen=True)
+class Points:
+    """Design points of one side; see the module docstring."""
+
+    supply: Array
+    size: float
+    threshold_shift: float
+    time: Array  # path delay with guard-band and level-shifter delay [s]
+    time_parts: Mapping[str, Array]
+    slowest_temperature: Array  # index into the study's list
+    cycle: Array  # T of the energy equation [s]
+    energy: Array
+    energy_parts: Mapping[str, Array]
+    dynamic_parts: Mapping[str, Array]  # before supply efficiency
+    leakage_power: Array
+    standing_power: Array  # leakage + bias + overheads
+    idle_energy: Array
+    area: Array
+    power_density: Array
+    noise_ratio: Array
+    hysteresis: Array
+    busiest_rising: Array
+    margins: Mapping[str, Array]  # device limit name -> smallest margin over temperatures
+    infeasible: Mapping[str, Mask]  # reason -> mask, not counting the study's requirements
+    capability: Mapping[str, tuple[Array, str]]  # name -> (value (row, 1), bound)
+    efficiency: Array = field(default_factory=lambda: np.ones((1, 1)))
+    shifter: Array = field(default_factory=lambda: np.zeros((1, 1)))
+
+    @property
+    def able(self) -> Mask:
+        """Points at which the numbers mean something."""
+        bad = np.zeros(self.energy.shape, dtype=bool)
+        for mask in self.infeasible.values():
+            bad |= mask
+        return ~bad & np.isfinite(self.energy) & np.isfinite(self.time)
+
+
+def _temperatures(problem: SideProblem, array: Array) -> Array:
+    """Broadcast to (row, temperature, supply)."""
+    return np.broadcast_to(array, np.broadcast_shapes(np.shape(array), (1, len(problem.study.temperatures), 1)))
+
+
+def _pick(array: Array, index: Array) -> Array:
+    """Take the temperature ``index`` (row, supply) of an array (row, temperature, supply)."""
+    array = np.broadcast_to(array, (index.shape[0], array.shape[1], index.shape[1]))
+    return np.take_along_axis(array, index[:, None, :], axis=1)[:, 0, :]
+
+
+def design_points(problem: SideProblem, supply: Array, size: float = 1.0, threshold_shift: float = 0.0) -> Points:
+    """Evaluate supplies of shape (row or 1, supply) for every row of the batch.
+
+    Parameters
+    ----------
+    problem : SideProblem
+    supply : array [V]
+    size : float
+        Units of width (or copies) of every switch.
+    threshold_shift : float [V]
+    """
+    pair = problem.switches(supply, threshold_shift)
+    metrics = estimate(
+        problem.circuit,
+        pair,
+        problem.wires,
+        problem.study.delay_rule,
+        size=size,
+        guard_delay=problem.study.guard_band_delay,
+        guard_leakage=problem.study.guard_band_leakage,
+    )
+    return _reduce(problem, np.atleast_2d(supply), size, threshold_shift, pair, metrics)
+
+
+def _reduce(
+    problem: SideProblem, supply: Array, size: float, shift: float, pair: SwitchPair, metrics: OperationMetrics
+) -> Points:
+    study = problem.study
+    delay = _temperatures(problem, metrics.path_delay)
+    rows = max(problem.batch.rows, supply.shape[0])
+    shape = (rows, supply.shape[1])
+    delay = np.broadcast_to(delay, (rows, delay.shape[1], shape[1]))
+    # where a point cannot switch at some temperature the delay there is not a number; it is infeasible anyway
+    slowest = np.argmax(np.where(np.isnan(delay), np.inf, delay), axis=1)
+    hot = len(study.temperatures) - 1
+
+    def at_hot(array: Array) -> Array:
+        return np.broadcast_to(_temperatures(problem, array)[:, hot, :], shape)
+
+    shifter_delay = problem.overhead.get("level_shifter_delay")
+    time_parts = {name: _pick(_temperatures(problem, part), slowest) for name, part in metrics.path_delay_parts.items()}
+    if shifter_delay is not None:
+        time_parts["level_shifter"] = np.broadcast_to(shifter_delay[:, 0, :], shape)
+    time = np.asarray(sum(time_parts.values()))
+    leakage = at_hot(metrics.leakage_power)
+    overhead_power = problem.overhead["overhead_power"][:, 0, :]
+    standing = leakage + at_hot(metrics.bias_power) + overhead_power
+    infeasible = _infeasible(problem, supply, shape, metrics)
+    points = Points(
+        supply=np.broadcast_to(supply, shape),
+        size=size,
+        threshold_shift=shift,
+        time=time,
+        time_parts=time_parts,
+        slowest_temperature=slowest,
+        cycle=time,
+        energy=time,
+        energy_parts={},
+        dynamic_parts={name: at_hot(part) for name, part in metrics.dynamic_energy_parts.items()},
+        leakage_power=leakage,
+        standing_power=standing,
+        idle_energy=_idle_energy(problem, leakage, at_hot(metrics.switched_capacitance) * supply**2),
+        area=at_hot(metrics.area),
+        power_density=time,
+        noise_ratio=np.broadcast_to(_temperatures(problem, metrics.half_swing_over_noise).min(axis=1), shape),
+        hysteresis=_hysteresis(problem, pair, shape),
+        busiest_rising=at_hot(metrics.busiest_rising_per_operation),
+        margins=_margins(problem, pair, shape),
+        infeasible=infeasible,
+        capability=_capabilities(pair, rows),
+        efficiency=problem.overhead["supply_efficiency"][:, 0, :],
+        shifter=problem.overhead["level_shifter_energy"][:, 0, :],
+    )
+    return with_cycle(problem, points, cycle_time(problem))
+
+
+def cycle_time(problem: SideProblem) -> Array | None:
+    """Return the clock period (row or 1, 1) of a clocked study, None when self-timed."""
+    if problem.study.timing != "clocked":
+        return None
+    return np.asarray(1.0 / problem.scenario["clock_frequency"][:, 0, :])
+
+
+def with_cycle(problem: SideProblem, points: Points, period: Array | None) -> Points:
+    """Return the points with their energy at another clock period [s] (None: self-timed)."""
+    accounting = problem.study.leakage_accounting
+    cycle = points.time if period is None or accounting == "operation" else np.broadcast_to(period, points.time.shape)
+    standing = points.standing_power * cycle
+    parts: dict[str, Array] = dict(points.dynamic_parts)
+    parts["leakage"] = points.leakage_power * cycle
+    parts["bias_and_overheads"] = standing - parts["leakage"]
+    parts["idle"] = points.idle_energy
+    core = np.asarray(sum(parts.values()))
+    parts["supply_loss"] = core * (1.0 / points.efficiency - 1.0)
+    parts["level_shifters"] = np.broadcast_to(points.shifter, core.shape)
+    energy = np.asarray(core / points.efficiency + points.shifter)
+    period_or_delay = points.time if period is None else np.broadcast_to(period, points.time.shape)
+    with np.errstate(divide="ignore", invalid="ignore"):
+        density = (energy - points.idle_energy / points.efficiency) / period_or_delay / points.area
+    return dataclasses.replace(
+        points, cycle=cycle, energy=energy, energy_parts=parts, power_density=np.asarray(density)
+    )
+
+
+def _idle_energy(problem: SideProblem, leakage: Array, full_swing_energy: Array) -> Array:
+    if problem.study.idle == "none":
+        return np.zeros(leakage.shape)
+    idle = problem.scenario["idle_time"][:, 0, :]
+    active = problem.scenario["active_cycles"][:, 0, :]
+    if problem.study.idle == "ungated":
+        return np.asarray(leakage * idle / active)
+    residual = problem.gating["residual_leakage"][:, 0, :]
+    wake = problem.gating["wake_energy_cycles"][:, 0, :] * full_swing_energy
+    return np.asarray((residual * leakage * idle + wake) / active)
+
+
+def _infeasible(
+    problem: SideProblem, supply: Array, shape: tuple[int, int], metrics: OperationMetrics
+) -> dict[str, Mask]:
+    found: dict[str, Mask] = {}
+    for reason, mask in metrics.unable.items():
+        wide = np.broadcast_to(mask, np.broadcast_shapes(mask.shape, (1, len(problem.study.temperatures), 1)))
+        found[reason] = np.broadcast_to(wide.any(axis=1), shape)
+    valid = problem.side.technology.valid.get("supply")
+    if valid is not None:
+        # a relative slack of a few units in the last place: limits and grid come from different decimal texts
+        outside = (supply < valid[0] * (1.0 - 1e-12)) | (supply > valid[1] * (1.0 + 1e-12))
+        if outside.any():
+            found["outside the fitted range of the set (supply)"] = np.broadcast_to(outside, shape)
+    return found
+
+
+def _margins(problem: SideProblem, pair: SwitchPair, shape: tuple[int, int]) -> dict[str, Array]:
+    found: dict[str, Array] = {}
+    for switch in (pair.down, pair.up):
+        for limit in switch.limits:
+            margin = np.broadcast_to(_temperatures(problem, limit.margin).min(axis=1), shape)
+            found[limit.name] = np.minimum(found.get(limit.name, margin), margin)
+    return found
+
+
+def _hysteresis(problem: SideProblem, pair: SwitchPair, shape: tuple[int, int]) -> Array:
+    worst = np.zeros(shape)
+    for switch in (pair.down, pair.up):
+        window = (switch.closing_voltage - switch.opening_voltage) / np.asarray(pair.supply)
+        window = np.where(np.isfinite(window), window, 0.0)
+        worst = np.maximum(worst, np.broadcast_to(_temperatures(problem, window).max(axis=1), shape))
+    return worst
+
+
+def _capabilities(pair: SwitchPair, rows: int) -> dict[str, tuple[Array, str]]:
+    found: dict[str, tuple[Array, str]] = {}
+    for name, capability in pair.down.capabilities.items():
+        value = np.asarray(capability.value, dtype=np.float64).reshape(-1)[:rows]
+        found[name] = (np.broadcast_to(value.reshape(-1, 1), (rows, 1)), capability.bound)
+    retention = np.asarray(pair.down.retention, dtype=np.float64)
+    if np.isfinite(retention).all() or np.isinf(retention).all():
+        found["retention"] = (np.broadcast_to(retention.reshape(-1, 1)[:rows], (rows, 1)), "")
+    return found
+
+
+def cycles_demanded(problem: SideProblem, points: Points, life: float) -> Array:
+    """Switching cycles of the busiest net over the life [1]: f a_max duty life (row, supply)."""
+    scenario = problem.scenario
+    per_operation = scenario["busiest_activity"][:, 0, :] if "busiest_activity" in scenario else points.busiest_rising
+    if problem.study.timing == "clocked":
+        frequency = scenario["clock_frequency"][:, 0, :]
+    else:
+        frequency = 1.0 / points.time
+    if problem.study.idle == "none":
+        duty = scenario["duty"][:, 0, :]
+    else:
+        awake = scenario["active_cycles"][:, 0, :] / frequency
+        duty = awake / (awake + scenario["idle_time"][:, 0, :])
+    return np.asarray(frequency * per_operation * duty * life)

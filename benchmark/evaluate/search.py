@@ -1,0 +1,238 @@
+"""Best design points over supply and frozen choices (layer 6).
+
+The supply is searched on a grid and then by repeated zooming into the interval around the best grid point; limits of
+the feasible region inside that interval are found to the same resolution. The result is never worse than the best
+grid point. An expensive condition (the functional floor) is first checked at the optimum alone: an optimum of the
+larger set that also satisfies the condition is the optimum of the smaller set. Only rows that fail it are searched
+again with the condition applied at every point.
+"""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, fields
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.evaluate.points import Points, design_points
+from benchmark.evaluate.side import SideProblem, build_side
+from benchmark.sets.study import NodePair
+
+__all__ = ["Optimum", "SideRun", "minimise", "supply_grid"]
+
+Array = NDArray[np.float64]
+Mask = NDArray[np.bool_]
+Objective = Callable[[SideProblem, Points], Array]
+Condition = Callable[[SideProblem, Points], Mask]
+
+ZOOM_POINTS = 17
+#: relative distance at which an optimum counts as lying on a limit of the search
+ON_BOUND = 1.0e-9
+
+
+@dataclass(frozen=True)
+class Optimum:
+    """Best point of every row. ``found`` marks rows with a feasible point; the others hold no meaning."""
+
+    points: Points  # (row, 1)
+    value: Array  # objective (row,)
+    found: Mask  # (row,)
+    at_lower: Mask
+    at_upper: Mask
+
+
+class SideRun:
+    """A side with its grids, each computed once."""
+
+    def __init__(self, problem: SideProblem, pair: NodePair) -> None:
+        self.problem = problem
+        self.pair = pair
+        self._grids: dict[tuple[float, float], Points] = {}
+
+    @property
+    def combinations(self) -> list[tuple[float, float]]:
+        """Frozen choices: (size, threshold shift)."""
+        side = self.problem.side
+        return [(size, shift) for size in side.sizes for shift in side.threshold_shifts]
+
+    def grid(self, combination: tuple[float, float]) -> Points:
+        """Design points over the supply grid."""
+        if combination not in self._grids:
+            self._grids[combination] = design_points(self.problem, supply_grid(self.problem), *combination)
+        return self._grids[combination]
+
+    def declared(self) -> Points:
+        """Points at each row's declared supply, first frozen choice."""
+        return design_points(self.problem, self.problem.declared_supply[:, 0, :], *self.combinations[0])
+
+    def subset(self, rows: NDArray[np.intp]) -> SideRun:
+        """The same side for some rows only."""
+        problem = self.problem
+        smaller = build_side(problem.study, problem.side, problem.role, self.pair, problem.batch.take(rows))
+        return SideRun(smaller, self.pair)
+
+
+def supply_grid(problem: SideProblem) -> Array:
+    """Return the supplies searched, (1 or row, supply): evenly spaced, with the declared supply among them."""
+    low, high = problem.side.supply
+    grid = np.linspace(low, high, problem.study.supply_points)[None, :] if high > low else np.array([[low]])
+    declared = problem.declared_supply[:, 0, :]
+    inside = np.isfinite(declared) & (declared >= low) & (declared <= high)
+    if not inside.any():
+        return grid
+    rows = declared.shape[0]
+    declared = np.where(inside, declared, low)
+    return np.asarray(np.sort(np.concatenate([np.broadcast_to(grid, (rows, grid.shape[1])), declared], axis=1), axis=1))
+
+
+def _take(points: Points, column: NDArray[np.intp]) -> Points:
+    """Pick one supply per row; every (row, supply) array becomes (row, 1)."""
+    shape = points.energy.shape
+
+    def pick(value: Any) -> Any:
+        if isinstance(value, np.ndarray) and value.shape == shape:
+            return np.take_along_axis(value, column[:, None], axis=1)
+        if isinstance(value, Mapping):
+            return {key: pick(item) for key, item in value.items()}
+        return value
+
+    changes = {item.name: pick(getattr(points, item.name)) for item in fields(points)}
+    return dataclasses.replace(points, **changes)
+
+
+def _best(objective: Array, mask: Mask) -> tuple[NDArray[np.intp], Array]:
+    score = np.where(mask, objective, np.inf)
+    column = np.argmin(score, axis=1)
+    return column, np.take_along_axis(score, column[:, None], axis=1)[:, 0]
+
+
+def _merge(first: Points, second: Points, use_second: Mask) -> Points:
+    """Take rows of ``second`` where asked; both have one supply per row."""
+    shape = first.energy.shape
+
+    def pick(a: Any, b: Any) -> Any:
+        if isinstance(a, np.ndarray) and a.shape == shape:
+            return np.where(use_second[:, None], np.broadcast_to(b, shape), a)
+        if isinstance(a, Mapping):
+            everywhere = np.zeros(shape, dtype=bool) if any(v.dtype == bool for v in (*a.values(), *b.values()) if isinstance(v, np.ndarray)) else None
+            keys = dict.fromkeys([*a, *b])
+            return {key: pick(a.get(key, everywhere), b.get(key, everywhere)) for key in keys}
+        return a
+
+    changes = {item.name: pick(getattr(first, item.name), getattr(second, item.name)) for item in fields(first)}
+    return dataclasses.replace(first, **changes)
+
+
+def _search(run: SideRun, combination: tuple[float, float], objective: Objective, condition: Condition) -> Optimum:
+    """Grid, then zoom."""
+    problem = run.problem
+    grid = run.grid(combination)
+    column, value = _best(objective(problem, grid), grid.able & condition(problem, grid))
+    best = _take(grid, column)
+    supplies = grid.supply
+    last = supplies.shape[1] - 1
+    rows = np.arange(supplies.shape[0])
+    low = supplies[rows, np.maximum(column - 1, 0)]
+    high = supplies[rows, np.minimum(column + 1, last)]
+    floor, ceiling = supplies[:, 0], supplies[:, -1]
+    while np.any((high - low) > problem.study.refine_relative * np.abs(high)) and last > 0:
+        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
+        points = design_points(problem, fine, *combination)
+        column, fine_value = _best(objective(problem, points), points.able & condition(problem, points))
+        better = fine_value < value
+        if better.any():
+            best = _merge(best, _take(points, column), better)
+            value = np.where(better, fine_value, value)
+        # where nothing in the interval was better, zoom around the best point so far
+        centre = np.where(better, fine[rows, column], best.supply[:, 0])
+        step = (high - low) / (ZOOM_POINTS - 1)
+        low, high = np.maximum(centre - step, floor), np.minimum(centre + step, ceiling)
+    found = np.isfinite(value)
+    supply = best.supply[:, 0]
+    return Optimum(
+        best, value, found,
+        found & (supply <= floor * (1.0 + ON_BOUND)) & (floor < ceiling),
+        found & (supply >= ceiling * (1.0 - ON_BOUND)) & (floor < ceiling),
+    )
+
+
+def minimise(
+    run: SideRun, objective: Objective, cheap: Condition, costly: Condition | None = None,
+    frozen: tuple[float, float] | None = None,
+) -> Optimum:
+    """Return the best feasible point of every row.
+
+    Parameters
+    ----------
+    run : SideRun
+    objective : callable
+        (problem, points) -> array (row, supply) to be made small.
+    cheap, costly : callable
+        (problem, points) -> mask of allowed points; ``costly`` is evaluated at as few points as possible.
+    frozen : (size, threshold shift), optional
+        Frozen choice to keep; by default the one that is best for row 0.
+    """
+    combinations = run.combinations if frozen is None else [frozen]
+    candidates = [_with_costly(run, combination, objective, cheap, costly) for combination in combinations]
+    values = [optimum.value[0] for optimum in candidates]
+    return candidates[int(np.argmin(values))]
+
+
+def _with_costly(
+    run: SideRun, combination: tuple[float, float], objective: Objective, cheap: Condition, costly: Condition | None
+) -> Optimum:
+    optimum = _search(run, combination, objective, cheap)
+    if costly is None or not optimum.found.any():
+        return optimum
+    allowed = costly(run.problem, optimum.points)[:, 0] | ~optimum.found
+    if allowed.all():
+        return optimum
+    rows = np.flatnonzero(~allowed)
+    smaller = run.subset(rows)
+    both: Condition = lambda problem, points: _both(problem, points, cheap, costly)  # noqa: E731
+    again = _search(smaller, combination, objective, both)
+    return _put_rows(optimum, again, rows)
+
+
+def _both(problem: SideProblem, points: Points, cheap: Condition, costly: Condition) -> Mask:
+    mask = cheap(problem, points) & points.able
+    return mask & costly(problem, points) if mask.any() else mask
+
+
+def _put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
+    """Write the rows of a subset back."""
+    size = whole.value.shape[0]
+
+    def widen(array: Any) -> Any:
+        wide = np.zeros((size, *array.shape[1:]), dtype=array.dtype)
+        wide[rows] = array
+        return wide
+
+    def grow(value: Any) -> Any:
+        if isinstance(value, np.ndarray) and value.ndim and value.shape[0] == len(rows):
+            return widen(value)
+        if isinstance(value, Mapping):
+            return {key: grow(item) for key, item in value.items()}
+        return value
+
+    changes = {
+        item.name: grow(getattr(part.points, item.name))
+        for item in fields(part.points)
+        if item.name not in ("capability", "size", "threshold_shift", "efficiency", "shifter")
+    }
+    use = np.zeros(size, dtype=bool)
+    use[rows] = True
+    merged = _merge(whole.points, dataclasses.replace(whole.points, **changes), use)
+
+    def choose(a: Any, b: Any) -> Any:
+        result = a.copy()
+        result[rows] = b
+        return result
+
+    return Optimum(
+        merged, choose(whole.value, part.value), choose(whole.found, part.found),
+        choose(whole.at_lower, part.at_lower), choose(whole.at_upper, part.at_upper),
+    )

@@ -1,0 +1,162 @@
+"""One side at one node pair: from a study to something that can be evaluated at any supply (layer 6)."""
+
+from __future__ import annotations
+
+import dataclasses
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.circuits.cells import cell
+from benchmark.circuits.circuit import Circuit, Layer, Load, Net, Wires
+from benchmark.circuits.library import build as build_built_in
+from benchmark.devices import model
+from benchmark.devices.model import DeviceModel, ModelInputs, Prepared
+from benchmark.devices.record import SwitchPair
+from benchmark.evaluate.batch import Batch, resolve
+from benchmark.sets.circuit_file import CircuitSpec
+from benchmark.sets.study import NodePair, Side, Study
+from benchmark.sets.values import Value
+
+__all__ = ["SideProblem", "build_side", "keys_of", "values_by_key"]
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True)
+class SideProblem:
+    """Everything needed to evaluate one side for every row of a batch.
+
+    ``scenario`` etc. are arrays of shape (row or 1, 1, 1).
+    """
+
+    study: Study
+    side: Side
+    role: str  # "candidate" or "contender"
+    node: str
+    batch: Batch
+    device: DeviceModel
+    prepared: Prepared
+    circuit: Circuit
+    wires: Wires
+    scenario: Mapping[str, Array]
+    overhead: Mapping[str, Array]
+    gating: Mapping[str, Array]
+    declared_supply: Array
+
+    def switches(self, supply: Array, threshold_shift: float) -> SwitchPair:
+        """Switch records at supplies of shape (row or 1, supply), all temperatures of the study."""
+        temperature = np.asarray(self.study.temperatures)[None, :, None]
+        knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift)}
+        return self.device.switch(self.prepared, np.atleast_2d(supply)[:, None, :], temperature, knobs)
+
+
+def owner_of_overhead(side: Side, role: str) -> str:
+    """Ledger owner of a side's overheads."""
+    return "candidate" if role == "candidate" else f"contender {side.id}"
+
+
+def values_by_key(study: Study, pair: NodePair) -> dict[str, Value]:
+    """Every value the study uses at one node pair, by ledger key, in a fixed order."""
+    found: dict[str, Value] = {f"study.{name}": value for name, value in study.values.items()}
+    if study.circuit_spec is not None:
+        for layer, table in study.circuit_spec.layers.items():
+            found |= {f"circuit.{layer}.{name}": value for name, value in table.items()}
+    found |= {f"{study.wires.id}.{name}": value for name, value in study.wires.at(pair.wires).items()}
+    for side, role, node in _sides(study, pair):
+        owner = owner_of_overhead(side, role)
+        found |= {f"{side.technology.id}.{name}": value for name, value in side.technology.at(node).items()}
+        found |= {f"{owner}.overhead.{name}": value for name, value in side.overhead.items()}
+        found |= {f"{owner}.gating.{name}": value for name, value in side.gating.items()}
+    return found
+
+
+def _sides(study: Study, pair: NodePair) -> list[tuple[Side, str, str]]:
+    listed = [(study.candidate, "candidate", pair.candidate)]
+    listed += [(side, "contender", pair.reference[side.id]) for side in study.contenders if side.id in pair.reference]
+    return listed
+
+
+def keys_of(study: Study, side: Side, role: str) -> Callable[[str], bool]:
+    """Return a test telling whether a ledger key can influence this side."""
+    owner = owner_of_overhead(side, role)
+    prefixes = (
+        "study.",
+        "circuit.",
+        f"{study.wires.id}.",
+        f"{side.technology.id}.",
+        f"{owner}.overhead.",
+        f"{owner}.gating.",
+    )
+    return lambda key: key.startswith(prefixes)
+
+
+def build_side(study: Study, side: Side, role: str, pair: NodePair, batch: Batch) -> SideProblem:
+    """Prepare one side: resolve the batch, calibrate the device, build the circuit."""
+    node = pair.candidate if role == "candidate" else pair.reference[side.id]
+    technology = side.technology
+    device = model(technology.model)
+    values = resolve(technology.id, technology.at(node), batch)
+    tables: dict[str, Any] = {name: table.table for name, table in technology.tables.items()}
+    if technology.rows:
+        tables["rows"] = technology.rows[node]
+    prepared = device.prepare(ModelInputs(values, technology.options, tables))
+    scenario = resolve("study", study.values, batch)
+    wire_values = resolve(study.wires.id, study.wires.at(pair.wires), batch)
+    wires = Wires(
+        resistance_per_length=wire_values["wire_resistance_per_length"],
+        capacitance_per_length=wire_values["wire_capacitance_per_length"],
+        layout_capacitance_per_pin=wire_values["layout_capacitance_per_pin"],
+    )
+    owner = owner_of_overhead(side, role)
+    declared = values.get("declared_supply", np.full((1, 1, 1), np.nan))
+    return SideProblem(
+        study,
+        side,
+        role,
+        node,
+        batch,
+        device,
+        prepared,
+        build_circuit(study, scenario, batch),
+        wires,
+        scenario,
+        resolve(f"{owner}.overhead", side.overhead, batch),
+        resolve(f"{owner}.gating", side.gating, batch),
+        declared,
+    )
+
+
+def build_circuit(study: Study, scenario: Mapping[str, Array], batch: Batch) -> Circuit:
+    """Build the study's circuit: a built-in one from scenario values, or the user's own nets."""
+    if study.circuit_spec is not None:
+        return _from_spec(study.circuit_spec, batch)
+    return dataclasses.replace(build_built_in(study.circuit, scenario), operation=study.operation)
+
+
+def _from_spec(spec: CircuitSpec, batch: Batch) -> Circuit:
+    layers = {}
+    for name, table in spec.layers.items():
+        values = resolve(f"circuit.{name}", table, batch)
+        layers[name] = Layer(values["resistance_per_length"], values["capacitance_per_length"])
+    nets = tuple(
+        Net(
+            name=net.name,
+            driver=cell(net.driver),
+            loads=tuple(Load(cell(load.cell), load.input, load.count) for load in net.loads),
+            fixed_load=net.fixed_load,
+            wire_length=net.wire_length,
+            length_unit="gate_pitch" if net.length_unit == "gate_pitch" else "m",
+            layer=net.layer,
+            swing=net.swing,
+            rising_per_operation=net.rising_per_operation,
+            busiest_per_operation=net.busiest_per_operation,
+            count=net.count,
+            on_critical_path=net.on_critical_path,
+        )
+        for net in spec.nets
+    )
+    return Circuit(spec.id, spec.title, spec.operation, nets, layers)
