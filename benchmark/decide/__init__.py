@@ -1,1 +1,1 @@
-""""""
+"""Policies, requirements, verdict (layer 7)."""

@@ -6,8 +6,8 @@ A value is addressed by its ledger key, ``owner.name``: the owner is a technolog
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
+from collections.abc import Callable, Iterable, Mapping
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -19,10 +19,23 @@ __all__ = ["Batch", "resolve"]
 
 @dataclass(frozen=True)
 class Batch:
-    """``rows`` parameter vectors; ``columns`` holds only the values that differ from the best estimate."""
+    """``rows`` parameter vectors; ``columns`` holds only the values that differ from the best estimate.
+
+    ``origin``: for a part of a larger batch, the row of the larger batch that each row came from.
+    """
 
     rows: int
     columns: Mapping[str, NDArray[np.float64]]
+    origin: NDArray[np.intp] = field(default_factory=lambda: np.zeros(0, dtype=np.intp))
+
+    def __post_init__(self) -> None:
+        """Number the rows of a whole batch."""
+        if self.origin.size != self.rows:
+            object.__setattr__(self, "origin", np.arange(self.rows))
+
+    def own(self, array: NDArray[np.float64]) -> NDArray[np.float64]:
+        """Pick this batch's rows from an array over the rows of the whole batch (or of one row for all)."""
+        return array if array.shape[0] == 1 else array[self.origin]
 
     @classmethod
     def best_estimate(cls) -> Batch:
@@ -42,15 +55,14 @@ class Batch:
 
     def take(self, rows: NDArray[np.intp]) -> Batch:
         """Return the batch of some rows, in the order given."""
-        return Batch(len(rows), {key: column[rows] for key, column in self.columns.items()})
+        return Batch(len(rows), {key: column[rows] for key, column in self.columns.items()}, self.origin[rows])
 
-    def affected(self, keys: Iterable[str]) -> NDArray[np.intp]:
-        """Rows in which any of ``keys`` differs from row 0 (row 0 itself always included)."""
+    def affected(self, concerns: Callable[[str], bool]) -> NDArray[np.intp]:
+        """Rows in which any key that ``concerns`` accepts differs from row 0 (row 0 itself always included)."""
         moved = np.zeros(self.rows, dtype=bool)
         moved[0] = True
-        for key in keys:
-            column = self.columns.get(key)
-            if column is not None:
+        for key, column in self.columns.items():
+            if concerns(key):
                 moved |= column != column[0]
         return np.flatnonzero(moved)
 

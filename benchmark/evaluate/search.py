@@ -117,7 +117,11 @@ def _merge(first: Points, second: Points, use_second: Mask) -> Points:
         if isinstance(a, np.ndarray) and a.shape == shape:
             return np.where(use_second[:, None], np.broadcast_to(b, shape), a)
         if isinstance(a, Mapping):
-            everywhere = np.zeros(shape, dtype=bool) if any(v.dtype == bool for v in (*a.values(), *b.values()) if isinstance(v, np.ndarray)) else None
+            everywhere = (
+                np.zeros(shape, dtype=bool)
+                if any(v.dtype == bool for v in (*a.values(), *b.values()) if isinstance(v, np.ndarray))
+                else None
+            )
             keys = dict.fromkeys([*a, *b])
             return {key: pick(a.get(key, everywhere), b.get(key, everywhere)) for key in keys}
         return a
@@ -153,14 +157,19 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
     found = np.isfinite(value)
     supply = best.supply[:, 0]
     return Optimum(
-        best, value, found,
+        best,
+        value,
+        found,
         found & (supply <= floor * (1.0 + ON_BOUND)) & (floor < ceiling),
         found & (supply >= ceiling * (1.0 - ON_BOUND)) & (floor < ceiling),
     )
 
 
 def minimise(
-    run: SideRun, objective: Objective, cheap: Condition, costly: Condition | None = None,
+    run: SideRun,
+    objective: Objective,
+    cheap: Condition,
+    costly: Condition | None = None,
     frozen: tuple[float, float] | None = None,
 ) -> Optimum:
     """Return the best feasible point of every row.
@@ -233,6 +242,9 @@ def _put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
         return result
 
     return Optimum(
-        merged, choose(whole.value, part.value), choose(whole.found, part.found),
-        choose(whole.at_lower, part.at_lower), choose(whole.at_upper, part.at_upper),
+        merged,
+        choose(whole.value, part.value),
+        choose(whole.found, part.found),
+        choose(whole.at_lower, part.at_lower),
+        choose(whole.at_upper, part.at_upper),
     )

@@ -1,0 +1,163 @@
+"""Candidate against every contender, for every row of a batch, under one policy (layer 7).
+
+advantage = metric of the strongest contender / metric of the candidate (all metrics are costs), so above 1 always
+favours the candidate. The strongest contender is the one with the lowest metric among those that meet the
+requirements: the lower envelope. Where a side has no permitted point the advantage is not a number.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.decide.policies import PolicyInputs, metric_of, optimum
+from benchmark.evaluate.batch import Batch
+from benchmark.evaluate.points import cycle_time
+from benchmark.evaluate.search import Optimum, SideRun
+from benchmark.evaluate.side import build_side, keys_of
+from benchmark.sets.study import NodePair, Side, Study
+
+__all__ = ["Comparison", "Outcome", "SideOutcome"]
+
+Array = NDArray[np.float64]
+Mask = NDArray[np.bool_]
+
+
+@dataclass(frozen=True)
+class SideOutcome:
+    """One side under one policy; arrays over the rows of the whole batch."""
+
+    id: str
+    optimum: Optimum  # over the side's own rows; row 0 is the best estimate
+    metric: Array
+    found: Mask
+    energy: Array
+    time: Array
+    area: Array
+    supply: Array
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """All sides under one policy. ``strongest`` indexes ``contenders`` (-1: no contender has a permitted point)."""
+
+    policy: str
+    candidate: SideOutcome
+    contenders: tuple[SideOutcome, ...]
+    strongest: NDArray[np.intp]
+    advantage: Array
+
+    @property
+    def strongest_side(self) -> SideOutcome | None:
+        """The strongest contender at the best estimate."""
+        return None if self.strongest[0] < 0 else self.contenders[int(self.strongest[0])]
+
+    def advantage_over(self, position: int) -> float:
+        """Advantage over one contender at the best estimate; nan when undefined."""
+        contender = self.contenders[position]
+        if not (contender.found[0] and self.candidate.found[0]):
+            return float("nan")
+        return float(contender.metric[0] / self.candidate.metric[0])
+
+
+class Comparison:
+    """A study at one node pair over a batch. Each side evaluates only the rows that can change it."""
+
+    def __init__(
+        self, study: Study, pair: NodePair, batch: Batch, *, frozen: Mapping[str, tuple[float, float]] | None = None
+    ) -> None:
+        self.study, self.pair, self.batch = study, pair, batch
+        self.frozen = dict(frozen or {})
+        self._position: dict[str, NDArray[np.intp]] = {}
+        self.candidate = self._run(study.candidate, "candidate")
+        self.contenders = {
+            side.id: self._run(side, "contender") for side in study.contenders if side.id in pair.reference
+        }
+
+    def _key(self, side: Side, role: str) -> str:
+        return f"{role} {side.id}"
+
+    def _run(self, side: Side, role: str) -> SideRun:
+        rows = self.batch.affected(keys_of(self.study, side, role))
+        position = np.zeros(self.batch.rows, dtype=np.intp)
+        position[rows] = np.arange(len(rows))
+        self._position[self._key(side, role)] = position
+        return SideRun(build_side(self.study, side, role, self.pair, self.batch.take(rows)), self.pair)
+
+    def widen(self, run: SideRun, array: Array) -> Array:
+        """Spread an array over a side's own rows (or one row) to all rows of the batch."""
+        if array.shape[0] == 1:
+            return np.broadcast_to(array, (self.batch.rows, *array.shape[1:]))
+        return np.asarray(array[self._position[self._key(run.problem.side, run.problem.role)]])
+
+    def required_time(self) -> Array | None:
+        """Return T* (1 or row, 1), or None when the study has none."""
+        required = self.study.policy.required_time
+        if required == "":
+            return None
+        if isinstance(required, float):
+            return np.asarray([[required]])
+        if required == "cycle":
+            return None if (cycle := cycle_time(self.candidate.problem)) is None else self.widen(self.candidate, cycle)
+        run = self.contenders[required.removeprefix("contender:")]
+        return self.widen(run, run.declared().time)
+
+    def policy_inputs(self) -> PolicyInputs:
+        """Collect what the study's policies need."""
+        policy = self.study.policy
+        first = next(iter(self.contenders.values()))
+        return PolicyInputs(
+            required_time=self.required_time(),
+            required_energy=policy.required_energy,
+            exponent=policy.exponent,
+            same_supply=self.widen(first, first.problem.declared_supply[:, 0, :]),
+        )
+
+    def side_outcome(self, policy: str, run: SideRun, inputs: PolicyInputs) -> SideOutcome:
+        """Optimise one side."""
+        side = run.problem.side
+        frozen = self.frozen.get(self._key(side, run.problem.role))
+        best = optimum(policy, run, inputs, frozen)
+        points = best.points
+        metric = metric_of(self.study.policy.metric, points)[:, 0]
+        found = (
+            self.widen(run, best.found).astype(bool)
+            if best.found.size > 1
+            else np.broadcast_to(best.found, (self.batch.rows,))
+        )
+        return SideOutcome(
+            side.id,
+            best,
+            self.widen(run, metric),
+            np.asarray(found),
+            self.widen(run, points.energy[:, 0]),
+            self.widen(run, points.time[:, 0]),
+            self.widen(run, points.area[:, 0]),
+            self.widen(run, points.supply[:, 0]),
+        )
+
+    def outcome(self, policy: str) -> Outcome:
+        """Compare all sides under one policy."""
+        inputs = self.policy_inputs()
+        candidate = self.side_outcome(policy, self.candidate, inputs)
+        contenders = tuple(self.side_outcome(policy, run, inputs) for run in self.contenders.values())
+        costs = np.stack([np.where(side.found, side.metric, np.inf) for side in contenders])
+        strongest = np.argmin(costs, axis=0)
+        lowest = costs[strongest, np.arange(self.batch.rows)]
+        defined = np.isfinite(lowest) & candidate.found
+        advantage = np.full(self.batch.rows, np.nan)
+        advantage[defined] = lowest[defined] / candidate.metric[defined]
+        return Outcome(policy, candidate, contenders, np.where(np.isfinite(lowest), strongest, -1), advantage)
+
+    def frozen_choices(self, outcome: Outcome) -> dict[str, tuple[float, float]]:
+        """Return the frozen choice (size, threshold shift) each side made at the best estimate."""
+        found = {f"candidate {outcome.candidate.id}": _choice(outcome.candidate)}
+        found |= {f"contender {side.id}": _choice(side) for side in outcome.contenders}
+        return found
+
+
+def _choice(side: SideOutcome) -> tuple[float, float]:
+    return side.optimum.points.size, side.optimum.points.threshold_shift

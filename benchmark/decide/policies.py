@@ -1,0 +1,125 @@
+"""Comparison policies: what each side is allowed to choose, and what it is judged by (layer 7).
+
+declared-point         x = the declared supply; nothing is optimised
+iso-delay              min E subject to T <= T*
+iso-energy             min T subject to E <= E*
+minimum-energy         min E subject to T <= T_max (when a required time is given)
+minimum-energy-delay   min E T^m
+same-supply            the reference's declared supply for both sides (diagnostic, not a verdict)
+
+A side that cannot reach T* or E* is infeasible; it is never given a number.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.decide.requirements import cheap_condition, functional_condition, functional_mask
+from benchmark.evaluate.points import Points, cycle_time, design_points
+from benchmark.evaluate.search import Condition, Objective, Optimum, SideRun, minimise
+from benchmark.evaluate.side import SideProblem
+
+__all__ = ["DIAGNOSTIC", "PolicyInputs", "metric_of", "optimum"]
+
+Array = NDArray[np.float64]
+Mask = NDArray[np.bool_]
+#: policies that never give a verdict
+DIAGNOSTIC = frozenset({"same-supply"})
+
+
+@dataclass(frozen=True)
+class PolicyInputs:
+    """What a policy needs beyond the side itself: arrays (1 or row of the whole batch, 1)."""
+
+    required_time: Array | None = None
+    required_energy: float | None = None
+    exponent: float = 1.0
+    same_supply: Array | None = None
+    enforce_requirements: bool = True
+
+
+def _energy(problem: SideProblem, points: Points) -> Array:
+    return points.energy
+
+
+def _time(problem: SideProblem, points: Points) -> Array:
+    return points.time
+
+
+def _never(problem: SideProblem, points: Points) -> Mask:
+    return np.ones(points.energy.shape, dtype=bool)
+
+
+def metric_of(name: str, points: Points) -> Array:
+    """Return the metric X of the study (row, supply); all four are costs."""
+    return {
+        "energy-per-operation": points.energy,
+        "time-per-operation": points.time,
+        "area": points.area,
+        "leakage-power": points.leakage_power,
+    }[name]
+
+
+def _within(limit: Array, attribute: str) -> Condition:
+    def condition(problem: SideProblem, points: Points) -> Mask:
+        return np.asarray(getattr(points, attribute) <= problem.batch.own(limit))
+
+    return condition
+
+
+def _all(*conditions: Condition) -> Condition:
+    def condition(problem: SideProblem, points: Points) -> Mask:
+        mask = conditions[0](problem, points)
+        for other in conditions[1:]:
+            mask = mask & other(problem, points)
+        return mask
+
+    return condition
+
+
+def _fixed(run: SideRun, points: Points, condition: Condition, costly: Condition | None) -> Optimum:
+    """Judge one given point per row."""
+    problem = run.problem
+    found = (points.able & condition(problem, points))[:, 0]
+    low, high = problem.side.supply
+    inside = (points.supply[:, 0] >= low * (1 - 1e-12)) & (points.supply[:, 0] <= high * (1 + 1e-12))
+    found = found & inside
+    if costly is not None and found.any():
+        found = found & costly(problem, points)[:, 0]
+    nothing = np.zeros(found.shape, dtype=bool)
+    return Optimum(points, points.energy[:, 0], found, nothing, nothing)
+
+
+def optimum(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, float] | None = None) -> Optimum:
+    """Return each row's choice under a policy.
+
+    Rows without any permitted point have ``found`` False.
+    """
+    problem = run.problem
+    hard: Condition = cheap_condition if inputs.enforce_requirements else _never
+    costly: Condition | None = (
+        functional_mask if inputs.enforce_requirements and functional_condition(problem.study) else None
+    )
+    if name == "declared-point":
+        points = design_points(problem, problem.declared_supply[:, 0, :], *(frozen or run.combinations[0]))
+        return _fixed(run, points, hard, costly)
+    if name == "same-supply":
+        if inputs.same_supply is None:
+            message = "same-supply needs the reference's declared supply"
+            raise ValueError(message)
+        points = design_points(problem, problem.batch.own(inputs.same_supply), *(frozen or run.combinations[0]))
+        return _fixed(run, points, hard, costly)
+    objective: Objective = _energy
+    condition = hard
+    if name in ("iso-delay", "minimum-energy"):
+        if inputs.required_time is not None:
+            condition = _all(hard, _within(inputs.required_time, "time"))
+    elif name == "iso-energy":
+        objective = _time
+        condition = _all(hard, _within(np.asarray([[inputs.required_energy]], dtype=np.float64), "energy"))
+    elif name == "minimum-energy-delay":
+        objective = lambda problem, points: points.energy * points.time**inputs.exponent  # noqa: E731
+    return minimise(run, objective, condition, costly, frozen)
