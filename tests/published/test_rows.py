@@ -2,10 +2,12 @@
 
 from __future__ import annotations
 
+import dataclasses
 import functools
 import importlib
 import pkgutil
 from collections import defaultdict
+from collections.abc import Mapping
 from typing import Any
 
 import numpy as np
@@ -42,8 +44,13 @@ def test_row_holds(binding: Binding):
 def _perturb(result: Any) -> Any:
     if isinstance(result, tuple):
         return tuple(_perturb(item) for item in result)
-    if isinstance(result, dict):
+    if isinstance(result, Mapping):
         return {key: _perturb(item) for key, item in result.items()}
+    if dataclasses.is_dataclass(result) and not isinstance(result, type):
+        changed = {f.name: _perturb(getattr(result, f.name)) for f in dataclasses.fields(result) if f.init}
+        return dataclasses.replace(result, **changed)
+    if isinstance(result, bool):
+        return result
     if isinstance(result, (int, float, np.ndarray, np.generic)):
         return result * 1.07
     return result
