@@ -30,7 +30,7 @@ def check_pair(pair: SwitchPair, tolerance: float = 1e-12) -> None:
         inside = _inside(switch, shape)
         for name in FIELDS:
             value = getattr(switch, name)
-            assert isinstance(value, np.ndarray), name
+            assert isinstance(value, (np.ndarray, np.float64)), name
             assert value.dtype == np.float64, name
             full = np.broadcast_to(value, shape)
             if name not in UNKNOWN_ALLOWED:
