@@ -25,6 +25,7 @@ from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
 from benchmark.sets.study import NodePair, Study
 from benchmark.sets.values import Value
+from benchmark.units import from_si, parse_unit
 
 __all__ = ["WORDS", "InputMove", "Verdict", "judge", "move_inputs"]
 
@@ -45,8 +46,8 @@ NO_EFFECT = 1.0e-9
 class InputMove:
     """One input moved alone. Advantages are nan where a side becomes infeasible.
 
-    ``low``, ``high``: ends of the range in the unit of the file (nan when no range is stated).
-    ``flip``: value at which the advantage equals M, in the unit of the file; nan when it does not straddle.
+    ``best``, ``low``, ``high``: in the catalogue's unit (nan when no range is stated), so that a respelled unit in
+    a file changes nothing. ``flip``: value at which the advantage equals M; nan when it does not straddle.
     """
 
     key: str
@@ -61,6 +62,7 @@ class InputMove:
     ranged: bool
     straddles: bool
     matters: bool
+    best_reaches: bool
     flip: float = float("nan")
 
     @property
@@ -131,16 +133,13 @@ def move_inputs(
         advantages = [float(outcome.advantage[row]) for row in positions]
         ranged = value.spread is not None
         changed = any(not (abs(a / best - 1.0) <= NO_EFFECT) for a in advantages)
-        low = value.in_unit(float(value.spread.low[0])) if value.spread else float("nan")
-        high = value.in_unit(float(value.spread.high[0])) if value.spread else float("nan")
+        unit = parse_unit(QUANTITIES[value.name].unit)
+        low = from_si(float(value.spread.low[0]), unit) if value.spread else float("nan")
+        high = from_si(float(value.spread.high[0]), unit) if value.spread else float("nan")
         sides = {_reaches(a, study.required_advantage) for a in [best, *advantages]}
         found.append(
             InputMove(
-                key,
-                value.name,
-                value.unit,
-                value.evidence,
-                value.in_unit(float(value.si[0])),
+                key, value.name, unit.text, value.evidence, from_si(float(value.si[0]), unit),
                 low,
                 high,
                 advantages[0],
@@ -148,6 +147,7 @@ def move_inputs(
                 ranged,
                 ranged and len(sides) > 1,
                 changed,
+                _reaches(best, study.required_advantage),
             )
         )
     return outcome, found

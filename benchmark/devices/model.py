@@ -102,6 +102,8 @@ class DeviceModel:
     check: Callable[[ModelInputs], list[Finding]] = _no_findings
     #: tables the model reads: name -> required
     tables: Mapping[str, bool] = field(default_factory=dict)
+    #: published targets the model is solved for at load (they check the solver, not the model)
+    calibrated_on: tuple[str, ...] = ()
     #: knobs beyond supply and size that this model honours
     knobs: tuple[str, ...] = ()
     #: equation numbers, validity and references, printed by ``evenload show model``

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
+from decimal import Decimal
 from pathlib import Path
 
 import benchmark
@@ -42,6 +43,7 @@ class Library:
     collector: Collector
     sources: dict[str, Source] = field(default_factory=dict)
     _sets: dict[str, ParameterSet | None] = field(default_factory=dict)
+    _overrides: dict[str, dict[str, Decimal | int]] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         """Read the source lists of all roots; a nearer root adds to the shipped list."""
@@ -111,8 +113,31 @@ class Library:
         file = read_toml(path, self.collector, self.shown(path))
         return None if file is None else self.build(file)
 
+    def override(self, name: str, key: str, number: Decimal | int) -> None:
+        """Use another number for one value of a set (what-if); it must exist in the set's file."""
+        if self.find(name, "technologies") is None and self.find(name, "wires") is None:
+            known = [*self.ids("technologies"), *self.ids("wires")]
+            self.collector.add(Problem("--set", 0, f"{name}.{key}", "there is no such set", repr(name), "", nearest(name, known)))
+            return
+        self._overrides.setdefault(name, {})[key] = number
+
+    def _apply(self, file: TomlFile) -> None:
+        values = file.data.get("value")
+        for key, number in self._overrides.get(file.path.stem, {}).items():
+            table = values.get(key) if isinstance(values, dict) else None
+            if not isinstance(table, dict):
+                known = list(values) if isinstance(values, dict) else []
+                self.collector.add(Problem("--set", 0, f"{file.path.stem}.{key}", "is not a value of the set", "", ", ".join(known), nearest(key, known)))
+                continue
+            if isinstance(table.get("by_node"), dict):
+                table["by_node"] = dict.fromkeys(table["by_node"], number)
+            else:
+                table["value"] = number
+            table.pop("spread", None)
+
     def build(self, file: TomlFile) -> ParameterSet | None:
         """Build a set from a parsed file."""
+        self._apply(file)
         sources = frozenset(self.sources)
         if file.data.get("kind") == "wires":
             return build_wires(file, sources, self.collector)

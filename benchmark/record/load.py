@@ -1,0 +1,142 @@
+"""Opening sets and studies: one place where files, models and built-in circuits meet (layer 8)."""
+
+from __future__ import annotations
+
+import tomllib
+from collections.abc import Mapping, Sequence
+from decimal import Decimal
+from pathlib import Path
+from typing import Any
+
+from benchmark.circuits.library import BUILT_IN
+from benchmark.devices import MODEL_NAMES, model
+from benchmark.errors import InputRefused, Problem, UsageError
+from benchmark.evaluate.batch import Batch, resolve
+from benchmark.devices.model import ModelInputs
+from benchmark.sets.files import TomlFile, read_toml
+from benchmark.sets.library import Library, shipped_nodes
+from benchmark.sets.parameters import ParameterSet
+from benchmark.sets.problems import Collector
+from benchmark.sets.study import Study, build_study
+
+__all__ = ["check_physics", "load_study", "load_technology", "open_library"]
+
+
+def open_library(*folders: Path, collector: Collector | None = None) -> Library:
+    """Open the shipped sets, with ``folders`` searched first."""
+    roots = tuple(dict.fromkeys([*(folder.resolve() for folder in folders), shipped_nodes().resolve()]))
+    return Library(model, MODEL_NAMES, roots, collector if collector is not None else Collector())
+
+
+def load_technology(name: str, *folders: Path) -> ParameterSet:
+    """Load one technology or wires set by id.
+
+    Raises
+    ------
+    InputRefused
+        With every problem of the file.
+    """
+    library = open_library(*folders)
+    folder = "technologies" if library.find(name, "technologies") else "wires"
+    found = library.load(name, folder, Problem("", 0, name, ""))
+    if found is not None and found.kind == "technology":
+        check_physics(found, library.collector)
+    library.collector.raise_if_any()
+    if found is None:
+        raise InputRefused([Problem("", 0, name, "could not be loaded")])
+    return found
+
+
+def load_study(
+    path: Path, nodes: Sequence[Path] = (), overrides: Mapping[str, str] | None = None
+) -> tuple[Study, Library]:
+    """Load a study with everything it refers to.
+
+    Parameters
+    ----------
+    path : Path
+        Study file; sets beside it (and in its ``nodes`` folder) are found first.
+    nodes : sequence of Path
+        Further folders of sets.
+    overrides : mapping, optional
+        What-if values: a study value name, or technology.name, to a number in the unit of the file.
+
+    Raises
+    ------
+    InputRefused
+        With every problem of every file, in one pass.
+    """
+    collector = Collector()
+    beside = [folder for folder in (path.parent, path.parent / "nodes") if folder.is_dir()]
+    library = open_library(*nodes, *beside, collector=collector)
+    file = read_toml(path, collector, path.name)
+    if file is None:
+        collector.raise_if_any()
+        raise UsageError("the study could not be read")  # noqa: EM101 - the collector has said why
+    file = _override(file, overrides or {}, library, collector)
+    study = build_study(file, library, BUILT_IN)
+    if study is not None:
+        for technology in {side.technology.id: side.technology for side in (study.candidate, *study.contenders)}.values():
+            check_physics(technology, collector)
+    collector.raise_if_any()
+    if study is None:
+        raise UsageError("the study could not be built")  # noqa: EM101 - the collector has said why
+    return study, library
+
+
+def check_physics(technology: ParameterSet, collector: Collector) -> None:
+    """Let the device model judge the values of every node: refusals and warnings go to the collector."""
+    device = model(technology.model)
+    for node in technology.nodes:
+        values = resolve(technology.id, technology.at(node), Batch.best_estimate())
+        tables: dict[str, Any] = {name: table.table for name, table in technology.tables.items()}
+        if technology.rows:
+            tables["rows"] = technology.rows[node]
+        for finding in device.check(ModelInputs(values, technology.options, tables)):
+            dotted = finding.name if "." in finding.name else f"value.{finding.name}"
+            problem = Problem(
+                technology.file, _line(technology, dotted), dotted, f"{finding.what} (node {node})", finding.found,
+                finding.allowed, finding.hint,
+            )
+            if finding.level == "refuse":
+                collector.add(problem)
+            else:
+                collector.warn(problem)
+
+
+def _line(technology: ParameterSet, dotted: str) -> int:
+    parts = dotted.split(".")
+    while parts:
+        if ".".join(parts) in technology.lines:
+            return technology.lines[".".join(parts)]
+        parts.pop()
+    return 0
+
+
+def _number(text: str) -> Decimal | int | None:
+    try:
+        value = tomllib.loads(f"x = {text}", parse_float=Decimal)["x"]
+    except (tomllib.TOMLDecodeError, KeyError, ValueError):
+        return None
+    return value if isinstance(value, (Decimal, int)) and not isinstance(value, bool) else None
+
+
+def _override(file: TomlFile, overrides: Mapping[str, str], library: Library, collector: Collector) -> TomlFile:
+    """Apply what-if numbers to the parsed study, or to the set they name."""
+    for name, text in overrides.items():
+        number = _number(text)
+        if number is None:
+            collector.add(Problem("--set", 0, name, "needs a number", repr(text)))
+            continue
+        owner, _, key = name.rpartition(".")
+        if not owner:
+            table = file.data.get("value", {})
+            if not isinstance(table, dict) or not isinstance(table.get(name), dict):
+                known = ", ".join(table) if isinstance(table, dict) else ""
+                collector.add(Problem("--set", 0, name, "is not a value of the study", "", known))
+                continue
+            table[name]["value"] = number
+            table[name].pop("spread", None)
+        else:
+            library.override(owner, key, number)
+    return file
