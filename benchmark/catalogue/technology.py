@@ -167,6 +167,8 @@ _STRESS_GATED = (
     Quantity("channel_area", "A_c", "area of the channel under the punch", "nm^2", 10.0, 1.0e8),
     Quantity("channel_modulus", "Y_c", "modulus of the channel, laterally constrained", "GPa", 1.0, 1000.0),
     Quantity("channel_sound_speed", "v_c", "sound speed in the channel", "m/s", 300.0, 2.0e4),
+    Quantity("electrode_thickness", "L_e", "thickness of all electrodes that the sound crosses", "nm", 0.1, 1.0e4),
+    Quantity("electrode_sound_speed", "v_e", "sound speed in the electrodes", "m/s", 300.0, 2.0e4),
     Quantity("frame_compliance", "C_f", "compliance of the frame", "m/N", 1.0e-7, 1.0, "nonnegative"),
     Quantity("punch_modulus", "E_p", "modulus of the punch faces", "GPa", 1.0, 1500.0),
     Quantity("punch_poisson_ratio", "nu_p", "Poisson ratio of the punch faces", "1", 0.0, 0.5, "fraction"),
