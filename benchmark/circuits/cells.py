@@ -324,8 +324,18 @@ def _letters(count: int) -> tuple[str, ...]:
     return tuple("abcdefgh"[:count])
 
 
+def _narrow_end_first(network: Network) -> Network:
+    """Order every series stack so that the part with the fewest switch ends stands at the output, as layouts do."""
+    if isinstance(network, Switched):
+        return network
+    parts = tuple(_narrow_end_first(part) for part in network.parts)
+    if isinstance(network, Parallel):
+        return Parallel(parts)
+    return Series(tuple(sorted(parts, key=lambda part: _end_width(part, "unit", 0, 0))))
+
+
 def _complementary(name: str, inputs: tuple[str, ...], down: Network) -> Cell:
-    return Cell(name, inputs, down, dual(down))
+    return Cell(name, inputs, _narrow_end_first(down), _narrow_end_first(dual(down)))
 
 
 def inverter() -> Cell:
