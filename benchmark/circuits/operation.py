@@ -228,7 +228,7 @@ def _unable(circuit: Circuit, sized: Sized) -> dict[str, BoolArray]:
     for edge in EDGES:
         switch = sized.switch(edge)
         level = np.asarray(switch.switching_level)
-        closes = np.isfinite(switch.resistance) & (level < 1.0)  # a level of nan compares as False
+        closes = np.isfinite(switch.resistance) & (level < 1.0) & (np.asarray(pair.supply) > 0.0)  # nan: False
         add("does not switch at this supply", ~closes)
         if switch.partner == "none":
             add("no complementary partner: the cells need both polarities", everywhere)

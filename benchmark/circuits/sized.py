@@ -51,7 +51,7 @@ class Sized:
         """Return the resistance [ohm] of the worst conducting path of the edge.
 
         R stack_on[k] mean(1/width) / size, largest over the paths; nan when the technology does not state k
-        switches in series. Parallel paths that may conduct at the same time are not used (one input switches last).
+        switches in series or the resistance is not finite. Parallel paths that may conduct at the same time are not used (one input switches last).
         """
         switch = self.switch(edge)
         ratios = [
@@ -60,7 +60,8 @@ class Sized:
         worst = ratios[0]
         for ratio in ratios[1:]:
             worst = np.maximum(worst, ratio)
-        return np.asarray(switch.resistance * worst / self.size)
+        unit = np.where(np.isfinite(switch.resistance), switch.resistance, np.nan)
+        return np.asarray(unit * worst / self.size)
 
     def transit(self, cell: Cell, edge: Edge) -> Array:
         """Return max(closing time of the stack that closes, opening time of the switch that opens) [s].

@@ -241,7 +241,7 @@ def stage(net: Net, settings: StageSettings) -> StageDetail:
     for load in net.loads:
         charge = charge + load.count * sized.input_charge(load.cell, load.input)
         extra = extra + load.count * sized.extra_energy(load.cell, load.input)
-    inputs = np.asarray(charge / supply)
+    inputs = np.asarray(charge / np.where(supply > 0.0, supply, np.nan))
     pins = burden.near_pin + burden.far_pins
     per_farad = rail * swing
     energy_parts = {

@@ -7,7 +7,7 @@ import itertools
 import numpy as np
 import pytest
 
-from benchmark.circuits.cells import Cell, Parallel, Series, Switched, cell, dual
+from benchmark.circuits.cells import Cell, Series, Switched, cell, dual
 from benchmark.circuits.sized import Sized
 from benchmark.errors import UsageError
 from tests.factories import ohmic_pair
