@@ -7,10 +7,28 @@ import numpy as np
 from benchmark.devices.record import Switch, SwitchPair
 
 FIELDS = (
-    "resistance", "switching_level", "on_current", "off_current_path", "off_current_input_high",
-    "off_current_input_low", "off_current_body", "input_charge", "input_capacitance_delay", "terminal_capacitance",
-    "terminal_capacitance_delay", "extra_energy", "closing_time", "opening_time", "natural_frequency", "quality",
-    "closing_voltage", "opening_voltage", "area", "height", "bias_power", "retention",
+    "resistance",
+    "switching_level",
+    "on_current",
+    "off_current_path",
+    "off_current_input_high",
+    "off_current_input_low",
+    "off_current_body",
+    "input_charge",
+    "input_capacitance_delay",
+    "terminal_capacitance",
+    "terminal_capacitance_delay",
+    "extra_energy",
+    "closing_time",
+    "opening_time",
+    "natural_frequency",
+    "quality",
+    "closing_voltage",
+    "opening_voltage",
+    "area",
+    "height",
+    "bias_power",
+    "retention",
 )
 UNKNOWN_ALLOWED = {"natural_frequency", "quality", "area", "height", "retention"}
 

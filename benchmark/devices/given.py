@@ -152,28 +152,46 @@ def _check(inputs: ModelInputs) -> list[Finding]:
     on, declared = values["on_resistance"], values["declared_supply"]
     off_state = option(MODEL, inputs, "off_state")
     if off_state == "resistance":
-        refuse("off_resistance", "is not above the on-resistance", values["off_resistance"] <= on,
-               "above on_resistance")
+        refuse(
+            "off_resistance", "is not above the on-resistance", values["off_resistance"] <= on, "above on_resistance"
+        )
     if off_state == "current":
         current = values["open_state_current"]
         refuse("open_state_current", "is zero", current <= 0.0, 'above 0; for no leakage at all say off_state = "none"')
-        refuse("open_state_current", "is not below half the on-current", current * on >= 0.5 * declared,
-               "below declared_supply / (2 on_resistance)")
+        refuse(
+            "open_state_current",
+            "is not below half the on-current",
+            current * on >= 0.5 * declared,
+            "below declared_supply / (2 on_resistance)",
+        )
     level = values["switching_level"]
     refuse("switching_level", "lies outside the input swing", (level <= 0.0) | (level >= 1.0), "above 0 and below 1")
     if "closing_voltage" not in values:
         if "opening_voltage" in values:
             found.append(Finding("refuse", "value.opening_voltage", "is stated without a closing voltage"))
-        found.append(Finding("note", "value.closing_voltage",
-                             "not stated: closes and opens at switching_level times supply, no hysteresis"))
+        found.append(
+            Finding(
+                "note",
+                "value.closing_voltage",
+                "not stated: closes and opens at switching_level times supply, no hysteresis",
+            )
+        )
         return found
     closing = values["closing_voltage"]
     opening = values.get("opening_voltage", closing)
-    refuse("closing_voltage", "contradicts switching_level times declared_supply",
-           np.abs(closing - level * declared) > SAME_LEVEL * declared, "within 1 % of the supply of their product")
+    refuse(
+        "closing_voltage",
+        "contradicts switching_level times declared_supply",
+        np.abs(closing - level * declared) > SAME_LEVEL * declared,
+        "within 1 % of the supply of their product",
+    )
     refuse("opening_voltage", "is above the closing voltage", opening > closing, "at or below closing_voltage")
-    refuse("opening_voltage", "makes a hysteresis window larger than the swing", closing - opening > declared,
-           "closing_voltage minus opening_voltage at most declared_supply")
+    refuse(
+        "opening_voltage",
+        "makes a hysteresis window larger than the swing",
+        closing - opening > declared,
+        "closing_voltage minus opening_voltage at most declared_supply",
+    )
     return found
 
 

@@ -86,9 +86,7 @@ def standing_fields(values: Mapping[str, Array]) -> dict[str, Any]:
 
 def capabilities(values: Mapping[str, Array]) -> dict[str, Capability]:
     """Return the capabilities that are stated; an absent one is unknown, which is no pass."""
-    return {
-        name: Capability(values[name], unit, "", name) for name, unit in _CAPABILITIES.items() if name in values
-    }
+    return {name: Capability(values[name], unit, "", name) for name, unit in _CAPABILITIES.items() if name in values}
 
 
 def supply_limits(values: Mapping[str, Array], supply: Array) -> tuple[Limit, ...]:

@@ -92,9 +92,9 @@ class CurrentSurface:
         """Return log I (one path voltage) or log(I / V_path) (several)."""
         if not self.measured_across:
             return np.log(row[0](control)) + 0.0 * path
-        known = np.stack([
-            np.log(item(control)) - np.log(volts) for item, volts in zip(row, self.path_voltages, strict=True)
-        ])
+        known = np.stack(
+            [np.log(item(control)) - np.log(volts) for item, volts in zip(row, self.path_voltages, strict=True)]
+        )
         return hermite_across(self.path_voltages, known, np.clip(path, self.path_voltages[0], self.path_high))
 
 
@@ -136,9 +136,9 @@ def current_surface(
         if not np.array_equal(np.unique(paths[at]), levels):
             problem = "every temperature needs the same path voltages"
             raise ValueError(problem)
-        rows.append(tuple(
-            curve(control[at & (paths == volts)], current[at & (paths == volts)], "log") for volts in levels
-        ))
+        rows.append(
+            tuple(curve(control[at & (paths == volts)], current[at & (paths == volts)], "log") for volts in levels)
+        )
     if levels.size == 1 and saturation_voltage is None:
         problem = "one path voltage needs a saturation voltage"
         raise ValueError(problem)

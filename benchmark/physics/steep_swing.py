@@ -141,9 +141,7 @@ def blend_law(
     return law
 
 
-def off_current_at_swing(
-    floor: ArrayLike, ceiling: ArrayLike, swing: ArrayLike, swing_then: ArrayLike
-) -> Array:
+def off_current_at_swing(floor: ArrayLike, ceiling: ArrayLike, swing: ArrayLike, swing_then: ArrayLike) -> Array:
     """Return the floor of the blend when the swing changes and the threshold stays.
 
     The window of control voltage between floor and ceiling, ``S log10(I_on / I_off)``, is kept, so that

@@ -42,9 +42,7 @@ BINDINGS = [
         for number, volts in ((2, 0.15), (3, 0.25), (5, 0.45))
     ),
     Binding("dev.L1-Landauer", (LIMITS + "landauer_energy",), lambda: limits.landauer_energy(300.0)),
-    Binding(
-        "dev.L2-sigma", (LIMITS + "thermal_noise_voltage",), lambda: limits.thermal_noise_voltage(10e-18, 300.0)
-    ),
+    Binding("dev.L2-sigma", (LIMITS + "thermal_noise_voltage",), lambda: limits.thermal_noise_voltage(10e-18, 300.0)),
     Binding("dev.L2-Pe", (LIMITS + "error_probability",), lambda: limits.error_probability(10e-18, 0.3, 300.0)),
     *(
         Binding(

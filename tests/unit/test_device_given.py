@@ -12,9 +12,17 @@ from benchmark.devices.model import ModelInputs
 from tests.switch_contract import check_pair
 
 BASE = {
-    "reference_temperature": 298.15, "declared_supply": 0.5, "on_resistance": 144e3, "off_resistance": 2e12,
-    "switching_level": 0.7, "input_capacitance": 0.5e-15, "terminal_capacitance": 0.05e-15, "closing_delay": 1e-7,
-    "opening_delay": 2e-7, "extra_energy_per_cycle": 1e-18, "footprint": 5e-14,
+    "reference_temperature": 298.15,
+    "declared_supply": 0.5,
+    "on_resistance": 144e3,
+    "off_resistance": 2e12,
+    "switching_level": 0.7,
+    "input_capacitance": 0.5e-15,
+    "terminal_capacitance": 0.05e-15,
+    "closing_delay": 1e-7,
+    "opening_delay": 2e-7,
+    "extra_energy_per_cycle": 1e-18,
+    "footprint": 5e-14,
 }
 
 
@@ -37,8 +45,9 @@ def test_contract_holds_for_every_option():
         ("current", ("off_resistance",), {"open_state_current": 1e-12}),
         ("none", ("off_resistance",), {}),
     ):
-        given = inputs({"off_state": off_state, "supply_dependence": "constant-resistance"}, drop,
-                       on_resistance=draws, **more)
+        given = inputs(
+            {"off_state": off_state, "supply_dependence": "constant-resistance"}, drop, on_resistance=draws, **more
+        )
         check_pair(pair_of(given, supply, temperature))
 
 
@@ -148,16 +157,21 @@ def test_supply_ceiling_is_a_hard_limit():
 
 # Hand scenario "always-on hub": energy per cycle and gate by E = a C V^2 + I_leak V T, deadline 10 us
 HUB = {
-    "fast": ({"off_state": "current"}, {"declared_supply": 0.60, "open_state_current": 100e-12,
-                                        "input_capacitance": 0.5e-15}),
-    "low leakage": ({"off_state": "current"}, {"declared_supply": 0.70, "open_state_current": 1e-12,
-                                               "input_capacitance": 0.5e-15}),
+    "fast": (
+        {"off_state": "current"},
+        {"declared_supply": 0.60, "open_state_current": 100e-12, "input_capacitance": 0.5e-15},
+    ),
+    "low leakage": (
+        {"off_state": "current"},
+        {"declared_supply": 0.70, "open_state_current": 1e-12, "input_capacitance": 0.5e-15},
+    ),
     "relay": ({"off_state": "none"}, {"declared_supply": 2.0, "input_capacitance": 0.25e-15}),
 }
 
 
-@pytest.mark.parametrize(("side", "slope", "rest"), [("fast", 0.36, 0.600), ("low leakage", 0.49, 0.007),
-                                                      ("relay", 2.0, 0.0)])
+@pytest.mark.parametrize(
+    ("side", "slope", "rest"), [("fast", 0.36, 0.600), ("low leakage", 0.49, 0.007), ("relay", 2.0, 0.0)]
+)
 def test_hub_by_hand(side: str, slope: float, rest: float):
     options, values = HUB[side]
     drop = ("off_resistance", "terminal_capacitance")

@@ -16,10 +16,19 @@ from benchmark.physics import steep_swing
 from tests.switch_contract import check_pair
 
 BASE = {
-    "reference_temperature": 298.15, "declared_supply": 0.30, "subthreshold_swing": 0.040, "on_current": 60.0,
-    "off_current": 5e-6, "saturation_voltage": 0.060, "gate_capacitance_total": 0.60e-9,
-    "drain_capacitance_share": 0.80, "terminal_capacitance_per_width": 0.10e-9, "transit_time": 0.0,
-    "unit_width": 200e-9, "swing_temperature_coefficient": 0.0, "footprint": 2e-14,
+    "reference_temperature": 298.15,
+    "declared_supply": 0.30,
+    "subthreshold_swing": 0.040,
+    "on_current": 60.0,
+    "off_current": 5e-6,
+    "saturation_voltage": 0.060,
+    "gate_capacitance_total": 0.60e-9,
+    "drain_capacitance_share": 0.80,
+    "terminal_capacitance_per_width": 0.10e-9,
+    "transit_time": 0.0,
+    "unit_width": 200e-9,
+    "swing_temperature_coefficient": 0.0,
+    "footprint": 2e-14,
 }
 LN2 = math.log(2.0)
 
@@ -192,13 +201,18 @@ def test_ceiling_of_the_supply_is_reported():
 
 @settings(deadline=None, max_examples=40)
 @given(
-    swing=st.floats(0.01, 0.1), decades=st.floats(2.0, 9.0), supply=st.floats(0.05, 1.0), scale=st.floats(0.2, 5.0),
+    swing=st.floats(0.01, 0.1),
+    decades=st.floats(2.0, 9.0),
+    supply=st.floats(0.05, 1.0),
+    scale=st.floats(0.2, 5.0),
     shift=st.floats(-0.05, 0.1),
 )
 def test_all_voltages_times_k_leave_currents_and_scale_resistance(swing, decades, supply, scale, shift):
     def at(k: float):
         given_inputs = inputs(
-            subthreshold_swing=swing * k, saturation_voltage=0.06 * k, off_current=60.0 / 10.0**decades,
+            subthreshold_swing=swing * k,
+            saturation_voltage=0.06 * k,
+            off_current=60.0 / 10.0**decades,
             series_switches_max=2.0,
         )
         return pair_of(given_inputs, supply * k, shift=shift * k).down
