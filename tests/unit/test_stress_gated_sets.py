@@ -8,9 +8,12 @@ import math
 import numpy as np
 import pytest
 
+from benchmark.circuits.circuit import Wires
+from benchmark.circuits.library import build
+from benchmark.circuits.operation import estimate
 from benchmark.devices import MODEL_NAMES, model
 from benchmark.devices.model import ModelInputs
-from benchmark.devices.record import Switch
+from benchmark.devices.record import Switch, SwitchPair
 from benchmark.errors import Problem
 from benchmark.physics import piezo
 from benchmark.sets.library import Library, shipped_nodes
@@ -38,10 +41,14 @@ def _inputs(loaded: ParameterSet, node: str, **changed: float) -> ModelInputs:
     return ModelInputs(values, loaded.options, {})
 
 
-def _switch(loaded: ParameterSet, node: str, supply: float, kelvin: float = 298.15, **changed: float) -> Switch:
+def _pair(loaded: ParameterSet, node: str, supply: float, kelvin: float = 298.15, **changed: float) -> SwitchPair:
     prepared = MODEL.prepare(_inputs(loaded, node, **changed))
     knobs = {"threshold_shift": np.zeros(1)}
-    return MODEL.switch(prepared, np.array([supply]), np.array([kelvin]), knobs).down
+    return MODEL.switch(prepared, np.array([supply]), np.array([kelvin]), knobs)
+
+
+def _switch(loaded: ParameterSet, node: str, supply: float, kelvin: float = 298.15, **changed: float) -> Switch:
+    return _pair(loaded, node, supply, kelvin, **changed).down
 
 
 @pytest.mark.parametrize("name", ["demo-stress-gated", "hand-stress-gated"])
@@ -99,3 +106,26 @@ def test_hand_set_gives_the_pocket_calculator_numbers(
     assert 2.0 * float(switch.input_charge[0]) * supply * 1e18 == pytest.approx(aj, rel=1e-12)
     field = next(item for item in switch.limits if item.name == "actuator field")
     assert bool(field.margin[0] >= 1.0) is field_allowed
+
+
+@pytest.mark.parametrize(
+    ("picometre_per_volt", "supply", "delay", "aj", "leakage_over_dynamic"),
+    [
+        (300.0, 0.25, 21.93, 6.25, 0.0877),
+        (150.0, 0.25, 708.1, 6.25, 2.833),
+        (150.0, 0.50, 21.93, 25.0, 0.0877),
+        (150.0, 0.40, 58.73, 16.0, 0.235),
+    ],
+)
+def test_hand_set_through_the_circuit_estimate(
+    picometre_per_volt: float, supply: float, delay: float, aj: float, leakage_over_dynamic: float
+):
+    """Depth 20, activity 0.05, self-timed, step rule: N t/(a R_0 C) for the leakage over the dynamic energy."""
+    loaded, _ = _load("hand-stress-gated")
+    pair = _pair(loaded, "hand", supply, actuator_coefficient=picometre_per_volt * 1e-12)
+    circuit = build("inverter-chain", {"fan_out": 1.0, "activity": 0.05, "logic_depth": 20.0})
+    metrics = estimate(circuit, pair, Wires(0.0, 0.0), "step", short_circuit=False)
+    assert float(metrics.path_delay[0]) / 20.0 * 1e12 == pytest.approx(delay, abs=0.005 if delay < 100.0 else 0.05)
+    assert float(metrics.dynamic_energy[0]) * 1e18 == pytest.approx(aj, rel=1e-12)
+    share = float((metrics.leakage_power * metrics.path_delay / metrics.dynamic_energy)[0])
+    assert share == pytest.approx(leakage_over_dynamic, abs=5e-5 if leakage_over_dynamic < 0.1 else 5e-4)
