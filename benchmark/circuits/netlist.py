@@ -85,7 +85,7 @@ class Settled:
 def settle(netlist: Netlist, values: Mapping[str, bool], stimulus: Mapping[str, bool]) -> Settled:
     """Apply new input values at stage 0 and let every gate answer one stage later until nothing moves.
 
-    Hazards are simulated and counted. A race that does not settle is refused.
+    ``values`` of all nets must be at rest. Hazards are simulated and counted. A race that does not settle is refused.
     """
     state = {**values, **stimulus}
     moved = {net for net, value in stimulus.items() if values[net] != value}
@@ -102,7 +102,11 @@ def settle(netlist: Netlist, values: Mapping[str, bool], stimulus: Mapping[str, 
             if value != state[gate.output]:
                 after[gate.output] = value
                 changed_at[gate.output] = now
-                cause[gate.output] = next(net for net in gate.inputs if net in moved)
+                why = next((net for net in gate.inputs if net in moved), None)
+                if why is None:
+                    message = f"netlist {netlist.name!r} was not at rest at {gate.output!r} before the stimulus"
+                    raise UsageError(message)
+                cause[gate.output] = why
                 rising[gate.output] = rising.get(gate.output, 0) + int(value)
         state.update(after)
         moved = set(after)

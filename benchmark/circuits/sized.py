@@ -51,7 +51,8 @@ class Sized:
         """Return the resistance [ohm] of the worst conducting path of the edge.
 
         R stack_on[k] mean(1/width) / size, largest over the paths; nan when the technology does not state k
-        switches in series or the resistance is not finite. Parallel paths that may conduct at the same time are not used (one input switches last).
+        switches in series or the resistance is not finite. Parallel paths that may conduct at the same time are not
+        used (one input switches last).
         """
         switch = self.switch(edge)
         ratios = [
