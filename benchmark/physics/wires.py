@@ -117,8 +117,8 @@ def distributed_rc_time(level: ArrayLike) -> Array:
 def driven_line_delay(driver: ArrayLike, resistance: ArrayLike, capacitance: ArrayLike, load: ArrayLike) -> Array:
     """Return the 50 % step delay [s] of driver R_t, line R, C and load C_t.
 
-    0.377 R C + 0.693 (R_t C_t + R_t C + R C_t); Sakurai, IEEE JSSC 18 (1983) 418 (from memory), within 1 % of the
-    exact line.
+    0.377 R C + 0.693 (R_t C_t + R_t C + R C_t); Sakurai, IEEE JSSC 18 (1983) 418 (from memory). Against the exact
+    solution of a 400-section ladder: 0 to 3.3 % too short for R_t/R and C_t/C between 0 and 10, worst near 0.3.
     """
     r_t, r, c, c_t = _array(driver), _array(resistance), _array(capacitance), _array(load)
     return np.asarray(0.377 * r * c + 0.693 * (r_t * c_t + r_t * c + r * c_t))
