@@ -169,11 +169,17 @@ def scan_nodes(study: Study, policy: str) -> list[NodeResult]:
         ok = bool(candidate.found[0])
         results.append(
             NodeResult(
-                pair.label, pair.candidate, float(outcome.advantage[0]), reference.id if reference else "",
-                float(candidate.energy[0]) if ok else nan, float(candidate.time[0]) if ok else nan,
+                pair.label,
+                pair.candidate,
+                float(outcome.advantage[0]),
+                reference.id if reference else "",
+                float(candidate.energy[0]) if ok else nan,
+                float(candidate.time[0]) if ok else nan,
                 float(candidate.supply[0]) if ok else nan,
-                float(reference.energy[0]) if reference else nan, float(reference.time[0]) if reference else nan,
-                float(reference.supply[0]) if reference else nan, note,
+                float(reference.energy[0]) if reference else nan,
+                float(reference.time[0]) if reference else nan,
+                float(reference.supply[0]) if reference else nan,
+                note,
             )
         )
     return results

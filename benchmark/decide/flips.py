@@ -52,11 +52,17 @@ def with_flips(
         )
         advantage = Comparison(study, pair, batch, frozen=frozen).outcome(policy).advantage[1:]
         with np.errstate(invalid="ignore"):
-            found = np.where(np.isfinite(advantage), np.log(np.where(np.isfinite(advantage), advantage, 1.0)), INFEASIBLE)
+            found = np.where(
+                np.isfinite(advantage), np.log(np.where(np.isfinite(advantage), advantage, 1.0)), INFEASIBLE
+            )
         return np.asarray(found - target).reshape(shape)
 
     result = elementwise.find_root(
-        difference, (best, ends), args=(np.arange(len(straddling)),), tolerances={"xrtol": TOLERANCE, "fatol": 1e-9}, maxiter=60
+        difference,
+        (best, ends),
+        args=(np.arange(len(straddling)),),
+        tolerances={"xrtol": TOLERANCE, "fatol": 1e-9},
+        maxiter=60,
     )
     flips = {
         move.key: from_si(float(x), parse_unit(QUANTITIES[move.name].unit)) if ok else float("nan")

@@ -44,7 +44,9 @@ class Limiting:
     energy_limit: str
 
 
-def groups_of(parts: Mapping[str, NDArray[np.float64]], groups: Mapping[str, tuple[str, ...]]) -> dict[str, NDArray[np.float64]]:
+def groups_of(
+    parts: Mapping[str, NDArray[np.float64]], groups: Mapping[str, tuple[str, ...]]
+) -> dict[str, NDArray[np.float64]]:
     """Sum parts into groups; every part must belong to exactly one group."""
     known = {part for names in groups.values() for part in names}
     unknown = sorted(set(parts) - known)
@@ -66,6 +68,8 @@ def limiting(points: Points, row: int = 0, column: int = 0) -> Limiting:
     delay_shares = {k: v / total_delay if total_delay > 0 else 0.0 for k, v in delay.items()}
     energy_shares = {k: v / total_energy if total_energy > 0 else 0.0 for k, v in energy.items()}
     return Limiting(
-        delay_shares, energy_shares, max(delay_shares, key=lambda k: delay_shares[k]),
+        delay_shares,
+        energy_shares,
+        max(delay_shares, key=lambda k: delay_shares[k]),
         max(energy_shares, key=lambda k: energy_shares[k]),
     )

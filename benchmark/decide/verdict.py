@@ -139,7 +139,11 @@ def move_inputs(
         sides = {_reaches(a, study.required_advantage) for a in [best, *advantages]}
         found.append(
             InputMove(
-                key, value.name, unit.text, value.evidence, from_si(float(value.si[0]), unit),
+                key,
+                value.name,
+                unit.text,
+                value.evidence,
+                from_si(float(value.si[0]), unit),
                 low,
                 high,
                 advantages[0],
@@ -261,11 +265,15 @@ def _swing(move: InputMove) -> float:
     return abs(float(np.log(move.advantage_high / move.advantage_low)))
 
 
+def _amount(number: float, unit: str) -> str:
+    return f"{number:.4g}" if unit == "1" else f"{number:.4g} {unit}"
+
+
 def _condition(move: InputMove) -> str:
     if not move.ranged:
-        return f"{move.key} stays at {move.best:.4g} {move.unit} ({move.evidence}, no range stated)"
+        return f"{move.key} stays at {_amount(move.best, move.unit)} ({move.evidence}, no range stated)"
     if not np.isfinite(move.flip):
         return f"{move.key} ({move.evidence})"
     rises = not _reaches(move.advantage_low, 1e-300) or move.advantage_high > move.advantage_low
     word = "at least" if rises else "at most"
-    return f"{move.key} {word} {move.flip:.4g} {move.unit} ({move.evidence})"
+    return f"{move.key} {word} {_amount(move.flip, move.unit)} ({move.evidence})"

@@ -56,7 +56,9 @@ def fan_out_4(pair: SwitchPair, rule: str = "chain") -> tuple[float, float]:
     """Return delay [s] and energy per full cycle [J] of an inverter driving four alike, no wire, no layout parasitic."""
     inverter = cell("inverter")
     net = Net("stage", inverter, loads=(Load(inverter, "a", 4.0),), rising_per_operation=1.0, on_critical_path=1.0)
-    circuit = Circuit("fan-out-4", "Inverter with fan-out 4", "one full cycle", (net,), stage="inverter, fan-out 4, no wire")
+    circuit = Circuit(
+        "fan-out-4", "Inverter with fan-out 4", "one full cycle", (net,), stage="inverter, fan-out 4, no wire"
+    )
     metrics = estimate(circuit, pair, Wires(0.0, 0.0), rule)
     return float(metrics.path_delay.ravel()[0]), float(metrics.dynamic_energy.ravel()[0])
 
@@ -93,7 +95,9 @@ def anchor_results(technology: ParameterSet) -> list[AnchorResult]:
             value = values.get(name)
             if value is not None:
                 si = float(value.si[0])
-                listed.append(Anchor(name, node, si, si, si, value.unit, None, value.source, value.where, value.conditions, ""))
+                listed.append(
+                    Anchor(name, node, si, si, si, value.unit, None, value.source, value.where, value.conditions, "")
+                )
     for anchor in listed:
         pair, supply = _pair(technology, anchor.node, anchor.supply)
         width_value = technology.at(anchor.node).get("unit_width")
@@ -101,8 +105,19 @@ def anchor_results(technology: ParameterSet) -> list[AnchorResult]:
         predicted = _predict(anchor.name, pair, supply, width)
         results.append(
             AnchorResult(
-                technology.id, anchor.node, anchor.name, anchor.si, anchor.low, anchor.high, predicted,
-                predicted / anchor.si - 1.0, anchor.unit, supply, anchor.name in fitted, anchor.source, anchor.where,
+                technology.id,
+                anchor.node,
+                anchor.name,
+                anchor.si,
+                anchor.low,
+                anchor.high,
+                predicted,
+                predicted / anchor.si - 1.0,
+                anchor.unit,
+                supply,
+                anchor.name in fitted,
+                anchor.source,
+                anchor.where,
                 anchor.conditions,
             )
         )

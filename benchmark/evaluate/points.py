@@ -97,8 +97,10 @@ def design_points(problem: SideProblem, supply: Array, size: float = 1.0, thresh
         problem.wires,
         problem.study.delay_rule,
         size=size,
+        size_as="copies" if problem.side.technology.options.get("size_scaling") == "copies" else "width",
         guard_delay=problem.study.guard_band_delay,
         guard_leakage=problem.study.guard_band_leakage,
+        short_circuit=problem.study.short_circuit == "estimated",
     )
     return _reduce(problem, np.atleast_2d(supply), size, threshold_shift, pair, metrics)
 
@@ -148,7 +150,7 @@ def _reduce(
         busiest_rising=at_hot(metrics.busiest_rising_per_operation),
         margins=_margins(problem, pair, shape),
         infeasible=infeasible,
-        capability=_capabilities(pair, rows),
+        capability=_capabilities(problem, pair, rows),
         efficiency=problem.overhead["supply_efficiency"][:, 0, :],
         shifter=problem.overhead["level_shifter_energy"][:, 0, :],
     )
@@ -229,11 +231,13 @@ def _hysteresis(problem: SideProblem, pair: SwitchPair, shape: tuple[int, int]) 
     return worst
 
 
-def _capabilities(pair: SwitchPair, rows: int) -> dict[str, tuple[Array, str]]:
+def _capabilities(problem: SideProblem, pair: SwitchPair, rows: int) -> dict[str, tuple[Array, str]]:
     found: dict[str, tuple[Array, str]] = {}
     for name, capability in pair.down.capabilities.items():
         value = np.asarray(capability.value, dtype=np.float64).reshape(-1)[:rows]
-        found[name] = (np.broadcast_to(value.reshape(-1, 1), (rows, 1)), capability.bound)
+        stated = problem.side.technology.values.get(capability.source)
+        bound = stated.bound if stated is not None else capability.bound
+        found[name] = (np.broadcast_to(value.reshape(-1, 1), (rows, 1)), bound)
     retention = np.asarray(pair.down.retention, dtype=np.float64)
     if np.isfinite(retention).all() or np.isinf(retention).all():
         found["retention"] = (np.broadcast_to(retention.reshape(-1, 1)[:rows], (rows, 1)), "")

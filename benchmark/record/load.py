@@ -76,7 +76,9 @@ def load_study(
     file = _override(file, overrides or {}, library, collector)
     study = build_study(file, library, BUILT_IN)
     if study is not None:
-        for technology in {side.technology.id: side.technology for side in (study.candidate, *study.contenders)}.values():
+        for technology in {
+            side.technology.id: side.technology for side in (study.candidate, *study.contenders)
+        }.values():
             check_physics(technology, collector)
     collector.raise_if_any()
     if study is None:
@@ -95,8 +97,13 @@ def check_physics(technology: ParameterSet, collector: Collector) -> None:
         for finding in device.check(ModelInputs(values, technology.options, tables)):
             dotted = finding.name if "." in finding.name else f"value.{finding.name}"
             problem = Problem(
-                technology.file, _line(technology, dotted), dotted, f"{finding.what} (node {node})", finding.found,
-                finding.allowed, finding.hint,
+                technology.file,
+                _line(technology, dotted),
+                dotted,
+                f"{finding.what} (node {node})",
+                finding.found,
+                finding.allowed,
+                finding.hint,
             )
             if finding.level == "refuse":
                 collector.add(problem)

@@ -117,7 +117,9 @@ class Library:
         """Use another number for one value of a set (what-if); it must exist in the set's file."""
         if self.find(name, "technologies") is None and self.find(name, "wires") is None:
             known = [*self.ids("technologies"), *self.ids("wires")]
-            self.collector.add(Problem("--set", 0, f"{name}.{key}", "there is no such set", repr(name), "", nearest(name, known)))
+            self.collector.add(
+                Problem("--set", 0, f"{name}.{key}", "there is no such set", repr(name), "", nearest(name, known))
+            )
             return
         self._overrides.setdefault(name, {})[key] = number
 
@@ -127,7 +129,17 @@ class Library:
             table = values.get(key) if isinstance(values, dict) else None
             if not isinstance(table, dict):
                 known = list(values) if isinstance(values, dict) else []
-                self.collector.add(Problem("--set", 0, f"{file.path.stem}.{key}", "is not a value of the set", "", ", ".join(known), nearest(key, known)))
+                self.collector.add(
+                    Problem(
+                        "--set",
+                        0,
+                        f"{file.path.stem}.{key}",
+                        "is not a value of the set",
+                        "",
+                        ", ".join(known),
+                        nearest(key, known),
+                    )
+                )
                 continue
             if isinstance(table.get("by_node"), dict):
                 table["by_node"] = dict.fromkeys(table["by_node"], number)

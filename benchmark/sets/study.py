@@ -121,6 +121,7 @@ class Study:
     values: Mapping[str, Value]
     temperatures: tuple[float, ...]
     delay_rule: str
+    short_circuit: str
     guard_band_delay: float
     guard_band_leakage: float
     wires: ParameterSet
@@ -526,6 +527,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         values,
         temperatures,
         parsed.conditions.delay_rule,
+        parsed.conditions.short_circuit,
         delay_band,
         leakage_band,
         wires,

@@ -54,6 +54,7 @@ class ConditionsTable(FileModel):
     delay_at: Literal["slowest"] = "slowest"
     leakage_at: Literal["highest"] = "highest"
     delay_rule: Literal["chain", "step", "integral", "transient"]
+    short_circuit: Literal["estimated", "none"] = "estimated"
     wires: Text
     guard_band: GuardBand
 

@@ -1,0 +1,192 @@
+"""The ``evenload`` command: one function per command, exit status in one place (layer 10).
+
+Exit status: 0 done, 1 internal fault, 2 wrong usage, 3 input refused; with ``--gate``: 0 go, 10 conditional,
+11 requirement failed, 12 not better, 13 not decidable.
+"""
+
+from __future__ import annotations
+
+import os
+import sys
+from pathlib import Path
+from typing import Annotated
+
+import typer
+
+import benchmark
+from benchmark.errors import EvenloadError, InputRefused, UsageError
+
+__all__ = ["app", "main"]
+
+app = typer.Typer(
+    name="evenload",
+    help="Is a new switch worth it against scaled CMOS? Equal terms, every assumption listed.",
+    no_args_is_help=True,
+    add_completion=False,
+    pretty_exceptions_enable=False,
+    rich_markup_mode=None,
+)
+
+GATE = {
+    "go": 0,
+    "conditional go": 10,
+    "no-go, requirement failed": 11,
+    "no-go, not better": 12,
+    "not decidable on this evidence": 13,
+}
+MOST_PROBLEMS = 40
+
+Nodes = Annotated[
+    list[Path] | None, typer.Option("--nodes", help="Further folder of sets, searched first (repeatable).")
+]
+Set = Annotated[
+    list[str] | None,
+    typer.Option("--set", help="What-if: NAME=NUMBER or TECHNOLOGY.NAME=NUMBER, in the unit of the file."),
+]
+
+
+def main() -> None:
+    """Run the command line and turn errors into messages and exit status."""
+    if "NO_COLOR" in os.environ:
+        os.environ.pop("FORCE_COLOR", None)
+    try:
+        app(standalone_mode=True)
+    except InputRefused as error:
+        _refuse(error)
+        sys.exit(3)
+    except UsageError as error:
+        print(f"evenload: {error}", file=sys.stderr)  # noqa: T201
+        sys.exit(2)
+    except EvenloadError as error:
+        print(f"evenload: {error}", file=sys.stderr)  # noqa: T201
+        sys.exit(3)
+    except BrokenPipeError:
+        sys.stderr.close()
+        sys.exit(1)
+    except KeyboardInterrupt:
+        print("evenload: stopped; nothing half-written", file=sys.stderr)  # noqa: T201
+        sys.exit(1)
+
+
+def _refuse(error: InputRefused) -> None:
+    shown = error.problems[:MOST_PROBLEMS]
+    print(f"evenload: input refused, {len(error.problems)} problem(s); nothing was run", file=sys.stderr)  # noqa: T201
+    for problem in shown:
+        print(f"  {problem}", file=sys.stderr)  # noqa: T201
+    if len(error.problems) > len(shown):
+        print(f"  ... and {len(error.problems) - len(shown)} more", file=sys.stderr)  # noqa: T201
+
+
+def _overrides(pairs: list[str] | None) -> dict[str, str]:
+    found: dict[str, str] = {}
+    for pair in pairs or []:
+        name, equals, text = pair.partition("=")
+        if not equals or not name.strip() or not text.strip():
+            message = f"--set needs NAME=NUMBER, found {pair!r}"
+            raise UsageError(message)
+        if name.strip() in found:
+            message = f"--set names {name.strip()!r} twice"
+            raise UsageError(message)
+        found[name.strip()] = text.strip()
+    return found
+
+
+@app.callback(invoke_without_command=True)
+def top(
+    context: typer.Context,
+    version: Annotated[bool, typer.Option("--version", help="Print the version and stop.")] = False,
+) -> None:
+    """Is a new switch worth it against scaled CMOS? Equal terms, every assumption listed."""
+    if version:
+        typer.echo(benchmark.__version__)
+        raise typer.Exit
+    if context.invoked_subcommand is None:
+        typer.echo(context.get_help())
+
+
+@app.command()
+def run(
+    study: Annotated[Path, typer.Argument(help="Study file (TOML).")],
+    out: Annotated[
+        Path | None, typer.Option("--out", help="Record folder to write; default: evenload-<study id> here.")
+    ] = None,
+    nodes: Nodes = None,
+    set_: Set = None,
+    gate: Annotated[bool, typer.Option("--gate", help="Exit status tells the verdict.")] = False,
+    freeze_time: Annotated[str, typer.Option("--freeze-time", help="Time stamp to write instead of the clock.")] = "",
+    quiet: Annotated[bool, typer.Option("--quiet", help="Print the verdict only.")] = False,
+) -> None:
+    """Run a study: verdict on the terminal, record folder with report, tables and figures."""
+    from benchmark.cli.commands import run_command
+
+    word = run_command(study, out, nodes or [], _overrides(set_), freeze_time, quiet)
+    if gate:
+        raise typer.Exit(GATE[word])
+
+
+@app.command()
+def demo(
+    out: Annotated[Path | None, typer.Option("--out", help="Record folder to write.")] = None,
+    freeze_time: Annotated[str, typer.Option("--freeze-time", help="Time stamp to write instead of the clock.")] = "",
+    quiet: Annotated[bool, typer.Option("--quiet", help="Print the verdict only.")] = False,
+) -> None:
+    """Run the worked study that comes with the program (invented switch, published CMOS)."""
+    from benchmark.cli.commands import run_command
+    from benchmark.sets.library import shipped_reports
+
+    run_command(
+        shipped_reports() / "always-on-hub" / "study.toml", out or Path("evenload-demo"), [], {}, freeze_time, quiet
+    )
+
+
+@app.command()
+def check(
+    paths: Annotated[list[Path], typer.Argument(help="Files or folders: sets, sources, circuits, studies.")],
+    nodes: Nodes = None,
+) -> None:
+    """Check files: names, units, sources, ranges, physics. All problems in one pass."""
+    from benchmark.cli.commands import check_command
+
+    check_command(paths, nodes or [])
+
+
+@app.command()
+def show(
+    what: Annotated[
+        str, typer.Argument(help="technologies, wires, circuits, models, values, sources, or a name of one of these.")
+    ] = "technologies",
+    nodes: Nodes = None,
+) -> None:
+    """Show what there is: technologies, values, circuits, models, or the provenance of one of them."""
+    from benchmark.cli.show import show_command
+
+    show_command(what, nodes or [])
+
+
+@app.command()
+def new(
+    kind: Annotated[str, typer.Argument(help="study, technology or circuit.")],
+    path: Annotated[Path, typer.Argument(help="File to write (ends in .toml).")],
+    model: Annotated[str, typer.Option("--model", help="Device model of a new technology.")] = "given",
+) -> None:
+    """Write a commented template to start from."""
+    from benchmark.cli.new import new_command
+
+    new_command(kind, path, model)
+
+
+@app.command()
+def trace(
+    study: Annotated[Path, typer.Argument(help="Study file, or a record folder.")],
+    side: Annotated[str, typer.Option("--side", help="candidate, or the id of a contender.")] = "candidate",
+    supply: Annotated[
+        float | None, typer.Option("--supply", help="Supply in volt; default: the optimum of the primary policy.")
+    ] = None,
+    node: Annotated[str, typer.Option("--node", help="Label of a node pair; default: the headline pair.")] = "",
+    nodes: Nodes = None,
+    set_: Set = None,
+) -> None:
+    """Show the arithmetic of one result: formula, numbers put in, intermediate results."""
+    from benchmark.cli.trace import trace_command
+
+    trace_command(study, side, supply, node, nodes or [], _overrides(set_))

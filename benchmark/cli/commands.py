@@ -1,0 +1,77 @@
+"""The commands ``run``, ``demo`` and ``check`` (layer 10)."""
+
+from __future__ import annotations
+
+import sys
+from collections.abc import Mapping, Sequence
+from pathlib import Path
+
+import typer
+
+from benchmark.errors import UsageError
+
+__all__ = ["check_command", "run_command"]
+
+
+class _Steps:
+    """Progress on standard error: a line that rewrites itself on a terminal, nothing elsewhere."""
+
+    def __init__(self, quiet: bool) -> None:
+        self.active = not quiet and sys.stderr.isatty()
+
+    def __call__(self, step: str, share: float) -> None:
+        if self.active:
+            sys.stderr.write(f"\r\x1b[K{share:4.0%}  {step}")
+            if share >= 1.0:
+                sys.stderr.write("\r\x1b[K")
+            sys.stderr.flush()
+
+
+def run_command(
+    study_path: Path,
+    out: Path | None,
+    nodes: Sequence[Path],
+    overrides: Mapping[str, str],
+    freeze_time: str,
+    quiet: bool,
+) -> str:
+    """Run a study and write its record folder; returns the word of the verdict."""
+    from benchmark.record.load import load_study
+    from benchmark.record.run import run_study
+    from benchmark.record.text import verdict_text
+    from benchmark.record.write import write_folder
+    from benchmark.report.folder import fill_folder
+
+    _folders(nodes)
+    study, library = load_study(study_path, nodes, overrides)
+    folder = out or Path(f"evenload-{study.id}")
+    record = run_study(study, library, created=freeze_time or None, progress=_Steps(quiet))
+    record["what_if"] = dict(overrides)
+    write_folder(folder, lambda place: fill_folder(place, record))
+    typer.echo(verdict_text(record))
+    if not quiet:
+        typer.echo("")
+        typer.echo(f"Record:  {folder}")
+        typer.echo(f"Report:  {folder / 'report.html'}")
+    return str(record["verdict"]["word"])
+
+
+def _folders(nodes: Sequence[Path]) -> None:
+    for folder in nodes:
+        if not folder.is_dir():
+            message = f"--nodes: {folder} is not a folder"
+            raise UsageError(message)
+
+
+def check_command(paths: Sequence[Path], nodes: Sequence[Path]) -> None:
+    """Check every file; prints what is fine, then refuses with all problems."""
+    from benchmark.errors import InputRefused
+    from benchmark.record.check import check_paths
+
+    _folders(nodes)
+    result = check_paths(paths, nodes)
+    for warning in result.warnings:
+        typer.echo(f"warning: {warning}", err=True)
+    if result.problems:
+        raise InputRefused(result.problems)
+    typer.echo(f"{result.files} file(s) fine" + (f", {len(result.warnings)} warning(s)" if result.warnings else ""))

@@ -1,0 +1,75 @@
+"""Checking files of every kind in one pass (layer 8)."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from pathlib import Path
+
+from benchmark.circuits.library import BUILT_IN
+from benchmark.errors import Problem
+from benchmark.record.load import check_physics, open_library
+from benchmark.sets.circuit_file import read_circuit
+from benchmark.sets.files import read_toml
+from benchmark.sets.library import Library
+from benchmark.sets.problems import Collector
+from benchmark.sets.study import build_study
+
+__all__ = ["CheckResult", "check_paths"]
+
+
+@dataclass(frozen=True)
+class CheckResult:
+    """What was found; ``files`` counts the files read."""
+
+    files: int
+    problems: tuple[Problem, ...]
+    warnings: tuple[Problem, ...]
+
+
+def _listed(paths: Sequence[Path], collector: Collector) -> list[Path]:
+    """Every TOML file named or inside a named folder; table descriptions are checked with the set that uses them."""
+    found: list[Path] = []
+    for path in paths:
+        if path.is_dir():
+            inside = [item for item in sorted(path.rglob("*.toml")) if item.parent.name != "tables"]
+            if not inside:
+                collector.add(Problem(str(path), 0, "", "has no TOML file"))
+            found += inside
+        elif path.exists():
+            found.append(path)
+        else:
+            collector.add(Problem(str(path), 0, "", "does not exist"))
+    return found
+
+
+def _roots(path: Path) -> list[Path]:
+    parent = path.parent
+    root = parent.parent if parent.name in ("technologies", "wires", "circuits") else parent
+    return [folder for folder in (root, root / "nodes") if folder.is_dir()]
+
+
+def check_paths(paths: Sequence[Path], nodes: Sequence[Path] = ()) -> CheckResult:
+    """Check files and folders; nothing is run."""
+    collector = Collector()
+    files = _listed(paths, collector)
+    for path in files:
+        library = open_library(*nodes, *_roots(path), collector=collector)
+        _check_one(path, library, collector)
+    return CheckResult(len(files), tuple(sorted(set(collector.problems))), tuple(sorted(set(collector.warnings))))
+
+
+def _check_one(path: Path, library: Library, collector: Collector) -> None:
+    file = read_toml(path, collector, str(path))
+    if file is None:
+        return
+    if path.name == "sources.toml":
+        return  # read, with its problems, when the library was opened
+    if "workload" in file.data or "contender" in file.data:
+        build_study(file, library, BUILT_IN)
+    elif "net" in file.data:
+        read_circuit(path, library, collector)
+    else:
+        built = library.build(file)
+        if built is not None and built.kind == "technology":
+            check_physics(built, collector)

@@ -1,0 +1,327 @@
+"""Run a study: from a checked study to its record (layer 8)."""
+
+from __future__ import annotations
+
+import datetime
+import platform
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+import benchmark
+from benchmark.decide.compare import Comparison, Outcome
+from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
+from benchmark.decide.flips import with_flips
+from benchmark.decide.policies import DIAGNOSTIC
+from benchmark.decide.requirements import RequirementResult, assess, functional_margins
+from benchmark.decide.self_checks import self_checks
+from benchmark.decide.verdict import InputMove, Verdict, judge, move_inputs
+from benchmark.errors import EvenloadError
+from benchmark.evaluate.anchors import anchor_results
+from benchmark.evaluate.batch import Batch
+from benchmark.decide.closed_form import delay_factor
+from benchmark.evaluate.search import SideRun
+from benchmark.record.ledger import ledger_rows, option_rows, technologies
+from benchmark.record.results import clean, envelope_rows, outcome_row, requirement_rows, swept_rows, verdict_row
+from benchmark.record.statements import CAUTIONS, NOT_MODELLED, conventions
+from benchmark.sets.library import Library
+from benchmark.sets.study import Study
+
+__all__ = ["RECORD_SCHEMA", "Progress", "run_study"]
+
+RECORD_SCHEMA = 1
+#: told the name of each step and the share done
+Progress = Callable[[str, float], None]
+
+
+def _silent(step: str, share: float) -> None:
+    return None
+
+
+@dataclass(frozen=True)
+class _Primary:
+    """The primary policy at the headline pair."""
+
+    comparison: Comparison
+    outcome: Outcome
+    requirements: list[RequirementResult]
+    curves: dict[str, list[tuple[SideRun, Swept]]]
+
+
+def _primary(study: Study) -> _Primary:
+    pair = study.pair(study.headline)
+    comparison = Comparison(study, pair, Batch.best_estimate())
+    outcome = comparison.outcome(study.policy.primary)
+    strongest = outcome.strongest_side
+    ratio = None
+    if strongest is not None and outcome.candidate.found[0]:
+        ratio = float(outcome.candidate.area[0] / strongest.area[0])
+    run = comparison.candidate
+    functional = functional_margins(run)
+    optimum = outcome.candidate.optimum if outcome.candidate.found[0] else None
+    requirements = assess(run, optimum, ratio, functional)
+    curves: dict[str, list[tuple[SideRun, Swept]]] = {}
+    for key, side_run in {"candidate": run, **comparison.contenders}.items():
+        margins = functional if key == "candidate" else functional_margins(side_run)
+        curves[key] = [
+            (side_run, swept(side_run, combination, margins[combination])) for combination in side_run.combinations
+        ]
+    return _Primary(comparison, outcome, requirements, curves)
+
+
+def _verdict(study: Study, primary: _Primary) -> Verdict:
+    pair = study.pair(study.headline)
+    policy = study.policy.primary
+    frozen = primary.comparison.frozen_choices(primary.outcome)
+    moves: list[InputMove] = []
+    if primary.outcome.candidate.found[0] and primary.outcome.strongest[0] >= 0:
+        _, moves = move_inputs(study, pair, policy, frozen)
+        moves = with_flips(study, pair, policy, frozen, moves)
+    return judge(study, primary.outcome, primary.requirements, moves)
+
+
+def _software() -> dict[str, str]:
+    from importlib.metadata import version
+
+    names = ("numpy", "scipy", "pandas", "pydantic", "pint", "altair", "vl-convert-python")
+    return {
+        "evenload": benchmark.__version__,
+        "python": platform.python_version(),
+        **{name: version(name) for name in names},
+    }
+
+
+def _files(study: Study, library: Library) -> list[dict[str, str]]:
+    """Every input file with its text, so that the record alone can be run again."""
+    rows = [{"name": study.file, "kind": "study", "sha256": study.sha256, "text": study.text}]
+    if study.circuit_spec is not None:
+        spec = study.circuit_spec
+        rows.append({"name": spec.file, "kind": "circuit", "sha256": spec.sha256, "text": spec.text})
+    for item in (study.wires, *technologies(study)):
+        rows.append({"name": item.file, "kind": item.kind, "sha256": item.sha256, "text": item.text})
+        for table in item.tables.values():
+            rows.append({"name": table.file, "kind": "table", "sha256": table.sha256, "text": table.raw})
+            sidecar = table.file.rsplit(".", 1)[0] + ".toml"
+            rows.append(
+                {
+                    "name": sidecar,
+                    "kind": "table description",
+                    "sha256": table.sidecar_sha256,
+                    "text": table.sidecar_raw,
+                }
+            )
+    return rows
+
+
+def run_study(
+    study: Study, library: Library, *, created: str | None = None, progress: Progress = _silent
+) -> dict[str, Any]:
+    """Run a study and return its record as plain data.
+
+    Parameters
+    ----------
+    study, library
+        From ``load_study``.
+    created : str, optional
+        Time stamp to write instead of the clock (for byte-identical records).
+    progress : callable
+        Told each step and the share done.
+    """
+    progress("evaluating the headline pair", 0.0)
+    primary = _primary(study)
+    progress("moving every input alone", 0.2)
+    verdict = _verdict(study, primary)
+    progress("other policies", 0.6)
+    policies = [outcome_row(primary.outcome, study.policy.primary in DIAGNOSTIC)]
+    for name in study.policy.also:
+        policies.append(outcome_row(primary.comparison.outcome(name), name in DIAGNOSTIC))
+    progress("required times and nodes", 0.7)
+    envelope = advantage_against_time(study, primary.curves)
+    nodes = scan_nodes(study, study.policy.primary)
+    progress("checking the reference and the method", 0.8)
+    anchors = [result for item in technologies(study) if item.model for result in anchor_results(item)]
+    checks = self_checks(study, primary.outcome)
+    progress("writing the record", 0.95)
+    sources = library.sources
+    used = _used_sources(study)
+    record = {
+        "schema": RECORD_SCHEMA,
+        "software": _software(),
+        "created": created or datetime.datetime.now(datetime.UTC).strftime("%Y-%m-%dT%H:%M:%SZ"),
+        "study": _study_row(study),
+        "verdict": verdict_row(verdict),
+        "requirements": requirement_rows(primary.requirements),
+        "policies": policies,
+        "sides": _side_rows(study),
+        "curves": _curve_rows(primary),
+        "advantage_against_time": envelope_rows(envelope),
+        "crossings": _crossings(study, envelope),
+        "nodes": [vars(row) for row in nodes],
+        "node_crossings": _node_crossings(study, [row.advantage for row in nodes]),
+        "anchors": [vars(row) for row in anchors],
+        "closed_form": [],
+        "self_checks": checks,
+        "ledger": ledger_rows(study, verdict.moves, sources),
+        "options": option_rows(study),
+        "sources": {
+            key: vars(sources[key]) | {"citation": sources[key].citation} for key in sorted(used) if key in sources
+        },
+        "conventions": conventions(study, _factors(primary)),
+        "circuit_assumptions": list(primary.comparison.candidate.problem.circuit.assumptions),
+        "not_modelled": list(NOT_MODELLED),
+        "cautions": list(CAUTIONS),
+        "warnings": [str(warning) for warning in sorted(set(library.collector.warnings))]
+        + _result_warnings(primary, verdict),
+        "files": _files(study, library),
+    }
+    progress("done", 1.0)
+    return clean(record)  # type: ignore[no-any-return]
+
+
+def _study_row(study: Study) -> dict[str, Any]:
+    pair = study.pair(study.headline)
+    policy = study.policy
+    return {
+        "id": study.id,
+        "title": study.title,
+        "declared": study.declared,
+        "owner": study.owner,
+        "note": study.note,
+        "demonstration": study.demonstration,
+        "product_class": study.product_class,
+        "product": study.product,
+        "operation": study.operation,
+        "circuit": study.circuit,
+        "timing": study.timing,
+        "leakage_accounting": study.leakage_accounting,
+        "idle": study.idle,
+        "temperatures": list(study.temperatures),
+        "delay_rule": study.delay_rule,
+        "short_circuit": study.short_circuit,
+        "guard_band_delay": study.guard_band_delay,
+        "guard_band_leakage": study.guard_band_leakage,
+        "wires": study.wires.id,
+        "primary_policy": policy.primary,
+        "also": list(policy.also),
+        "metric": policy.metric,
+        "required_time": policy.required_time,
+        "required_energy": policy.required_energy,
+        "exponent": policy.exponent,
+        "required_advantage": study.required_advantage,
+        "headline": study.headline,
+        "headline_nodes": {"candidate": pair.candidate, "reference": dict(pair.reference), "wires": pair.wires},
+        "supply_points": study.supply_points,
+        "refine_relative": study.refine_relative,
+        "sha256": study.sha256,
+    }
+
+
+def _side_rows(study: Study) -> list[dict[str, Any]]:
+    rows = []
+    for side, role in [(study.candidate, "candidate"), *((side, "contender") for side in study.contenders)]:
+        item = side.technology
+        rows.append(
+            {
+                "id": side.id,
+                "role": role,
+                "technology": item.id,
+                "title": item.title,
+                "flavour": item.flavour,
+                "ambition": item.ambition,
+                "model": item.model,
+                "note": item.note,
+                "supply": list(side.supply),
+                "sizes": list(side.sizes),
+                "threshold_shifts": list(side.threshold_shifts),
+                "sha256": item.sha256,
+            }
+        )
+    return rows
+
+
+def _curve_rows(primary: _Primary) -> list[dict[str, Any]]:
+    rows = []
+    for key, curves in primary.curves.items():
+        for run, curve in curves:
+            rows.append(
+                {
+                    "side": curve.id,
+                    "role": "candidate" if key == "candidate" else "contender",
+                    "size": curve.points.size,
+                    "threshold_shift": curve.points.threshold_shift,
+                    "technology": run.problem.side.technology.id,
+                    "points": swept_rows(curve),
+                }
+            )
+    return rows
+
+
+def _crossings(study: Study, envelope: Envelope) -> list[dict[str, float]]:
+    levels = dict.fromkeys([1.0, study.required_advantage])
+    return [
+        {"level": level, "time": time}
+        for level in levels
+        for time in crossings(envelope.time, envelope.advantage, level)
+    ]
+
+
+def _node_crossings(study: Study, advantages: list[float]) -> list[dict[str, Any]]:
+    """Neighbouring node pairs between which the advantage passes M or 1."""
+    labels = [pair.label for pair in study.pairs]
+    found = []
+    for level in dict.fromkeys([1.0, study.required_advantage]):
+        for i in range(len(labels) - 1):
+            a, b = advantages[i], advantages[i + 1]
+            if np.isfinite(a) and np.isfinite(b) and (a >= level) != (b >= level):
+                found.append({"level": level, "between": [labels[i], labels[i + 1]], "advantages": [a, b]})
+    return found
+
+
+def _factors(primary: _Primary) -> dict[str, Any]:
+    """Delay factor F of each side at its optimum, from the estimator's own stage detail."""
+    found = {}
+    for side, run in [
+        (primary.outcome.candidate, primary.comparison.candidate),
+        *zip(primary.outcome.contenders, primary.comparison.contenders.values(), strict=True),
+    ]:
+        found[side.id] = f"{delay_factor(run, side):.4g}" if side.found[0] else "no permitted point"
+    return found
+
+
+def _used_sources(study: Study) -> set[str]:
+    values = list(study.values.values()) + list(study.wires.values.values())
+    used: set[str] = set()
+    for side in (study.candidate, *study.contenders):
+        item = side.technology
+        values += [*item.values.values(), *side.overhead.values(), *side.gating.values()]
+        used |= {table.source for table in item.tables.values()} | {anchor.source for anchor in item.anchors}
+    if study.circuit_spec is not None:
+        values += [value for table in study.circuit_spec.layers.values() for value in table.values()]
+    return used | {value.source for value in values if value.source}
+
+
+def _result_warnings(primary: _Primary, verdict: Verdict) -> list[str]:
+    """Things to say loudly that are not problems of the files."""
+    found = []
+    outcome = primary.outcome
+    for side in (outcome.candidate, *outcome.contenders):
+        if side.found[0] and (side.optimum.at_lower[0] or side.optimum.at_upper[0]):
+            end = "lower" if side.optimum.at_lower[0] else "upper"
+            found.append(f"{side.id}: the optimum lies on the {end} end of its supply range")
+    if np.isfinite(verdict.advantage) and not 1e-3 <= verdict.advantage <= 1e3:
+        found.append(f"the advantage is {verdict.advantage:.3g}: check units first")
+    decisive = [move for move in verdict.moves if move.decisive]
+    weak = [move for move in decisive if move.evidence in ("target", "projected", "assumed")]
+    if decisive and len(weak) * 3 > len(decisive):
+        found.append(f"{len(weak)} of {len(decisive)} decisive inputs are targets, projections or assumptions")
+    return found
+
+
+def rerun_inputs(record: dict[str, Any]) -> dict[str, str]:
+    """Return name -> text of every input file of a record, to be written into an empty folder and run again."""
+    if record.get("schema") != RECORD_SCHEMA:
+        message = f"record schema {record.get('schema')!r} is not the one this version reads ({RECORD_SCHEMA})"
+        raise EvenloadError(message)
+    return {item["name"]: item["text"] for item in record["files"]}
