@@ -2,8 +2,12 @@
 
 from __future__ import annotations
 
-from benchmark.circuits import chain_rule
+import numpy as np
+
+from benchmark.circuits import chain_rule, functional, transfer
+from benchmark.devices.record import Array
 from benchmark.physics import noise, regeneration
+from tests.factories import ohmic_pair
 from tests.published.rows import Binding
 
 NOISE = "benchmark.physics.noise:"
@@ -23,18 +27,54 @@ _NOISE_ROWS = [
 
 
 def _log_linear(ratio: float) -> list[float]:
+    pair = ohmic_pair(on_resistance=1e4, off_resistance=1e4 * ratio, window=(0.0, 1.0))
+    curve = transfer.transfer_curve(pair, points=401)
     low, high = regeneration.log_linear_levels(ratio)
-    return [regeneration.log_linear_gain(ratio), low, high, regeneration.log_linear_noise_margin(ratio)]
+    margin = functional.functional(pair, 1, "accurate").noise_margin
+    square = transfer.largest_square(curve.v_in, curve.v_out)
+    return [float(x) for x in (regeneration.log_linear_gain(ratio), low, high, margin, square)]
+
+
+def _square_law(supply: float, threshold: float) -> list[float]:
+    """Unity-gain inputs of a pair of long-channel square-law switches; 1e-12 of conductance keeps them defined."""
+
+    def current(control: Array, path: Array) -> Array:
+        over = np.maximum(control - threshold, 0.0)
+        inside = np.minimum(path, over)
+        return np.asarray((over - 0.5 * inside) * inside + 1e-12 * path)
+
+    pair = ohmic_pair(supply=supply, current=current)
+    found = functional.functional(pair, 1, "accurate")
+    return [float(found.v_il), float(found.v_ih)]
+
+
+def _piecewise(gain: float) -> float:
+    half = 0.5 / gain
+    return float(transfer.largest_square([0.0, 0.5 - half, 0.5 + half, 1.0], [1.0, 1.0, 0.0, 0.0]))
 
 
 _REGENERATION_ROWS = [
     *(
         Binding(
             f"cir.RINV-{name}",
-            tuple(REGENERATION + f for f in ("log_linear_gain", "log_linear_levels", "log_linear_noise_margin")),
+            (
+                REGENERATION + "log_linear_gain",
+                REGENERATION + "log_linear_levels",
+                "benchmark.circuits.functional:corner",
+                "benchmark.circuits.transfer:largest_square",
+            ),
             lambda ratio=ratio: _log_linear(ratio),
         )
         for name, ratio in (("10", 10.0), ("100", 100.0), ("1000", 1e3), ("10000", 1e4), ("1e+06", 1e6))
+    ),
+    Binding("cir.VTC-SYM", ("benchmark.circuits.functional:corner",), lambda: _square_law(5.0, 0.74)),
+    *(
+        Binding(
+            f"cir.SNM-PWL-{gain}",
+            ("benchmark.circuits.transfer:largest_square",),
+            lambda gain=gain: _piecewise(float(gain)),
+        )
+        for gain in ("1.5", "5")
     ),
     Binding(
         "cir.RINV-min",
