@@ -27,6 +27,7 @@ from collections.abc import Mapping
 import numpy as np
 
 from benchmark.devices.model import Default, DeviceModel, Finding, Input, ModelInputs, Option, Prepared
+from benchmark.devices.ohmic_law import OhmicLaw
 from benchmark.devices.record import Array, BoolArray, Switch, SwitchPair
 from benchmark.devices.standing import (
     STANDING_INPUTS,
@@ -39,7 +40,6 @@ from benchmark.devices.standing import (
     supply_limits,
     values_of,
 )
-from benchmark.physics.ohmic import conduction_window, log_linear_conductance, perfect_conductance
 
 __all__ = ["MODEL"]
 
@@ -83,7 +83,7 @@ def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mappin
         input_scales_with_size=True,
         resistance=on,
         switching_level=level,
-        current=_Law(v, on, open_resistance, level),
+        current=OhmicLaw(v, on, open_resistance, array(level)),
         on_current=v / on,
         off_current_path=off_current,
         off_current_input_high=array(0.0),
@@ -122,23 +122,6 @@ def _off_current(values: Mapping[str, Array], supply: Array, open_resistance: Ar
     if off_state == "current":
         return values["open_state_current"] * (supply / values["declared_supply"])
     return supply / open_resistance
-
-
-class _Law:
-    """Path current of a switch with a log-linear (or perfect) opening; a class so that records can be pickled."""
-
-    def __init__(self, supply: Array, on: Array, open_resistance: Array | None, level: Array) -> None:
-        self._supply, self._on, self._level = supply[..., None], on[..., None], array(level)[..., None]
-        self._decades: Array | None = None
-        if open_resistance is not None:
-            self._decades = np.log10(open_resistance / on)[..., None]
-            self._window = conduction_window(self._level, self._decades)
-
-    def __call__(self, control: Array, path: Array) -> Array:
-        share = control / self._supply
-        if self._decades is None:
-            return path * perfect_conductance(share, self._on, self._level)
-        return path * log_linear_conductance(share, self._on, self._decades, *self._window)
 
 
 def _check(inputs: ModelInputs) -> list[Finding]:
