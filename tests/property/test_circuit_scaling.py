@@ -6,7 +6,6 @@ from dataclasses import replace
 from typing import Any
 
 import numpy as np
-import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
@@ -15,6 +14,7 @@ from benchmark.circuits.circuit import Circuit, Load, Net, Wires
 from benchmark.circuits.library import build
 from benchmark.circuits.operation import OperationMetrics, estimate
 from tests.factories import ohmic_pair
+from tests.near import near
 
 LIMITED = settings(deadline=None, max_examples=40)
 
@@ -199,7 +199,7 @@ def test_width_times_k_with_wire(fields, circuit, wires, rule, k):
     )
     assert unloaded.path_delay <= after.path_delay * (1.0 + 1e-12)
     loaded = float(before.path_delay - unloaded.path_delay)
-    assert float(after.path_delay - unloaded.path_delay) == pytest.approx(
+    assert float(after.path_delay - unloaded.path_delay) == near(
         loaded / k, rel=1e-6, abs=1e-12 * float(before.path_delay)
     )
 
@@ -303,11 +303,9 @@ def test_long_wires_forget_the_switch(one, two, r, c, rule):
         )
 
     with_r, without_r = [line(f, r) for f in (one, two)], [line(f, 0.0) for f in (one, two)]
-    assert with_r[0].dynamic_energy / with_r[1].dynamic_energy == pytest.approx(
-        (one["supply"] / two["supply"]) ** 2, rel=1e-2
-    )
-    assert with_r[0].path_delay / with_r[1].path_delay == pytest.approx(1.0, abs=0.02)
-    assert without_r[0].path_delay / without_r[1].path_delay == pytest.approx(
+    assert with_r[0].dynamic_energy / with_r[1].dynamic_energy == near((one["supply"] / two["supply"]) ** 2, rel=1e-2)
+    assert with_r[0].path_delay / with_r[1].path_delay == near(1.0, abs=0.02)
+    assert without_r[0].path_delay / without_r[1].path_delay == near(
         one["on_resistance"] / two["on_resistance"], rel=0.02
     )
 
@@ -333,8 +331,8 @@ def test_large_fan_out_forgets_transit_and_own_capacitance(fields):
         build("inverter-chain", scenario), ohmic_pair(**fields), Wires(0.0, 0.0), "step", short_circuit=False
     )
     per_input = 2.0 * fields["input_capacitance"]  # two switches per inverter input
-    assert found.path_delay / fan_out == pytest.approx(np.log(2.0) * fields["on_resistance"] * per_input, rel=1e-3)
-    assert found.dynamic_energy / fan_out == pytest.approx(per_input * fields["supply"] ** 2, rel=1e-6)
+    assert found.path_delay / fan_out == near(np.log(2.0) * fields["on_resistance"] * per_input, rel=1e-3)
+    assert found.dynamic_energy / fan_out == near(per_input * fields["supply"] ** 2, rel=1e-6)
 
 
 @LIMITED

@@ -11,6 +11,7 @@ from benchmark.circuits.cells import Cell, Series, Switched, cell, dual
 from benchmark.circuits.sized import Sized
 from benchmark.errors import UsageError
 from tests.factories import ohmic_pair
+from tests.near import near
 
 A, B = Switched("a"), Switched("b")
 
@@ -68,13 +69,13 @@ def test_logical_effort_follows_from_the_topology(n, mu):
     for kind, effort in (("nand", (n + mu) / (1 + mu)), ("nor", (1 + n * mu) / (1 + mu))):
         which = cell(f"{kind}{n}")
         for name in which.inputs:
-            assert made.input_capacitance(which, name) / inverter == pytest.approx(effort, rel=1e-12)
+            assert made.input_capacitance(which, name) / inverter == near(effort, rel=1e-12)
         for edge in ("down", "up"):
-            assert made.path_resistance(which, edge) == pytest.approx(1e4, rel=1e-12)
+            assert made.path_resistance(which, edge) == near(1e4, rel=1e-12)
         own = made.output_capacitance(which, "delay", "down") / made.output_capacitance(
             cell("inverter"), "delay", "down"
         )
-        assert own == pytest.approx(n, rel=1e-12)  # series side n wide once, parallel side n times: n at any mu
+        assert own == near(n, rel=1e-12)  # series side n wide once, parallel side n times: n at any mu
 
 
 def test_and_or_invert_effort():
@@ -86,9 +87,9 @@ def test_and_or_invert_effort():
     )
     which, inverter = cell("aoi21"), made.input_capacitance(cell("inverter"), "a")
     efforts = [float(made.input_capacitance(which, name) / inverter) for name in which.inputs]
-    assert efforts == pytest.approx([2.0, 2.0, 5.0 / 3.0])
+    assert efforts == near([2.0, 2.0, 5.0 / 3.0])
     own = made.output_capacitance(which, "delay", "down") / made.output_capacitance(cell("inverter"), "delay", "down")
-    assert float(own) == pytest.approx(7.0 / 3.0)
+    assert float(own) == near(7.0 / 3.0)
 
 
 def test_nand3_elmore_with_internal_nodes():
@@ -104,29 +105,29 @@ def test_nand3_elmore_with_internal_nodes():
     )
     which = cell("nand3")
     own = made.output_capacitance(which, "delay", "down")
-    assert float(own / unit) == pytest.approx(12.0)
-    assert float(made.input_capacitance(which, "b") / unit) == pytest.approx(5.0)
+    assert float(own / unit) == near(12.0)
+    assert float(made.input_capacitance(which, "b") / unit) == near(5.0)
 
 
 def test_unit_sizing_stacks_resistance():
     made = Sized(ohmic_pair(on_resistance=1e4))
-    assert float(made.path_resistance(cell("nand3"), "down")) == pytest.approx(3e4)
-    assert float(made.path_resistance(cell("nand3"), "up")) == pytest.approx(1e4)
-    assert float(made.path_resistance(cell("aoi21"), "down")) == pytest.approx(2e4)
+    assert float(made.path_resistance(cell("nand3"), "down")) == near(3e4)
+    assert float(made.path_resistance(cell("nand3"), "up")) == near(1e4)
+    assert float(made.path_resistance(cell("aoi21"), "down")) == near(2e4)
 
 
 def test_stack_on_is_used_and_its_end_is_nan():
     stacked = np.array([1.0, 2.5])
     made = Sized(ohmic_pair(on_resistance=1e4, stack_on=stacked))
-    assert float(made.path_resistance(cell("nand2"), "down")) == pytest.approx(2.5e4)
+    assert float(made.path_resistance(cell("nand2"), "down")) == near(2.5e4)
     assert np.isnan(made.path_resistance(cell("nand3"), "down"))
     wide = Sized(ohmic_pair(on_resistance=1e4, stack_on=stacked), sizing="equal-drive")
-    assert float(wide.path_resistance(cell("nand2"), "down")) == pytest.approx(1.25e4)
+    assert float(wide.path_resistance(cell("nand2"), "down")) == near(1.25e4)
 
 
 def _hand_leakage(name: str, states: dict[str, float]) -> None:
     found = Sized(ohmic_pair(off_resistance=1e9)).leakage_current(cell(name))["path"] * 1e9
-    assert float(found) == pytest.approx(sum(states.values()) / len(states), rel=1e-12)
+    assert float(found) == near(sum(states.values()) / len(states), rel=1e-12)
 
 
 def test_state_averaged_leakage_by_hand():
@@ -142,14 +143,14 @@ def test_state_averaged_leakage_by_hand():
 def test_stack_off_is_used():
     steep = np.array([1.0, 0.1])
     found = Sized(ohmic_pair(off_resistance=1e9, stack_off=steep)).leakage_current(cell("nand2"))["path"] * 1e9
-    assert float(found) == pytest.approx((0.1 + 1 + 1 + 2) / 4)
+    assert float(found) == near((0.1 + 1 + 1 + 2) / 4)
 
 
 def test_input_and_body_leakage_of_every_switch():
     pair = ohmic_pair(input_leakage=1e-12, body_leakage=1e-13)
     found = Sized(pair, size=3.0).leakage_current(cell("nand2"))
-    assert float(found["input"]) == pytest.approx(4 * 3 * 0.5e-12)
-    assert float(found["body"]) == pytest.approx(4 * 3 * 1e-13)
+    assert float(found["input"]) == near(4 * 3 * 0.5e-12)
+    assert float(found["body"]) == near(4 * 3 * 1e-13)
 
 
 def test_an_actuator_apart_keeps_its_charge_unless_the_size_means_copies():
@@ -161,7 +162,7 @@ def test_an_actuator_apart_keeps_its_charge_unless_the_size_means_copies():
         assert method(copies, which, "a") == 4.0 * method(single, which, "a")
     assert copies.bias_power(which) == 4.0 * wide.bias_power(which)
     assert wide.path_resistance(which, "down") == copies.path_resistance(which, "down")
-    assert float(Sized(pair, sizing="equal-drive").input_capacitance(which, "a")) == pytest.approx(2e-15)
+    assert float(Sized(pair, sizing="equal-drive").input_capacitance(which, "a")) == near(2e-15)
 
 
 def test_transit_of_stacks():
@@ -169,7 +170,7 @@ def test_transit_of_stacks():
     together = Sized(ohmic_pair(**fields))
     assert float(together.transit(cell("nand3"), "down")) == 5e-12
     in_turn = Sized(ohmic_pair(**fields, stack_time="sequential"))
-    assert float(in_turn.transit(cell("nand3"), "down")) == pytest.approx(6e-12)
+    assert float(in_turn.transit(cell("nand3"), "down")) == near(6e-12)
     assert float(in_turn.transit(cell("nand3"), "up")) == 5e-12
 
 

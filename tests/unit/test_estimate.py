@@ -16,6 +16,7 @@ from benchmark.circuits.rules import EdgeFactors
 from benchmark.circuits.sized import Sized
 from benchmark.errors import UsageError
 from tests.factories import ohmic_pair
+from tests.near import near
 
 LN2 = np.log(2.0)
 INVERTER = cell("inverter")
@@ -47,20 +48,20 @@ def test_word_line_driver():
         "step",
         short_circuit=False,
     )
-    assert float(reference.path_delay) / PS == pytest.approx(515.6, abs=0.05)
-    assert float(candidate.path_delay) / PS == pytest.approx(405.9, abs=0.05)
-    assert float(reference.path_delay / candidate.path_delay) == pytest.approx(1.270, abs=5e-4)
-    assert float(reference.dynamic_energy) / FS == pytest.approx(324.0, rel=1e-12)
+    assert float(reference.path_delay) / PS == near(515.6, abs=0.05)
+    assert float(candidate.path_delay) / PS == near(405.9, abs=0.05)
+    assert float(reference.path_delay / candidate.path_delay) == near(1.270, abs=5e-4)
+    assert float(reference.dynamic_energy) / FS == near(324.0, rel=1e-12)
     assert float(candidate.dynamic_energy) == float(reference.dynamic_energy)  # never (1.8/0.25)^2
     with_shifters = (float(reference.dynamic_energy) + 5 * FS) / (float(candidate.dynamic_energy) + 20 * FS)
-    assert with_shifters == pytest.approx(0.956, abs=5e-4)
+    assert with_shifters == near(0.956, abs=5e-4)
     perfect, with_transit = (
         estimate(circuit, ohmic_pair(on_resistance=1e-6, closing_time=t), NO_WIRE, "step") for t in (0.0, 15 * PS)
     )
-    assert float(reference.path_delay / perfect.path_delay) == pytest.approx(1.368, abs=5e-4)
-    assert float(reference.path_delay / with_transit.path_delay) == pytest.approx(1.315, abs=5e-4)
+    assert float(reference.path_delay / perfect.path_delay) == near(1.368, abs=5e-4)
+    assert float(reference.path_delay / with_transit.path_delay) == near(1.315, abs=5e-4)
     needed = estimate(circuit, ohmic_pair(on_resistance=543.8, closing_time=15 * PS), NO_WIRE, "step")
-    assert float(reference.path_delay / needed.path_delay) == pytest.approx(1.2, abs=5e-5)
+    assert float(reference.path_delay / needed.path_delay) == near(1.2, abs=5e-5)
 
 
 @pytest.mark.parametrize(
@@ -80,11 +81,11 @@ def test_stress_gated_switch_by_hand(supply, resistance, rc, delay, energy, leak
     chain = build("inverter-chain", {"logic_depth": 20.0, "fan_out": 1.0, "activity": 0.05})
     found = estimate(chain, pair, NO_WIRE, "step", short_circuit=False)
     stage = found.stages[0]
-    assert float(stage.delay_parts["input"]) / PS == pytest.approx(rc, rel=2e-4)
-    assert float(stage.delay) / PS == pytest.approx(delay, rel=4e-4)
-    assert float(stage.energy) / 1e-18 == pytest.approx(energy, rel=1e-9)
+    assert float(stage.delay_parts["input"]) / PS == near(rc, rel=2e-4)
+    assert float(stage.delay) / PS == near(delay, rel=4e-4)
+    assert float(stage.energy) / 1e-18 == near(energy, rel=1e-9)
     share = float(found.leakage_power * found.path_delay / found.dynamic_energy)
-    assert share == pytest.approx(leakage, rel=2e-3)
+    assert share == near(leakage, rel=2e-3)
 
 
 def test_always_on_hub_by_hand():
@@ -100,9 +101,9 @@ def test_always_on_hub_by_hand():
 
     fast, low, new = per_gate(1 * FS, 0.6, 6e9), per_gate(1 * FS, 0.7, 700e9), per_gate(0.5 * FS, 2.0, 1e30)
     energies = [(0.02 * swing + leak) / FS for swing, leak in (fast, low, new)]
-    assert energies == pytest.approx([0.6072, 0.0168, 0.0400], abs=5e-5)
-    assert (fast[1] - new[1]) / (new[0] - fast[0]) == pytest.approx(0.3659, abs=5e-5)
-    assert (low[1] - new[1]) / (new[0] - low[0]) == pytest.approx(0.004636, abs=5e-7)
+    assert energies == near([0.6072, 0.0168, 0.0400], abs=5e-5)
+    assert (fast[1] - new[1]) / (new[0] - fast[0]) == near(0.3659, abs=5e-5)
+    assert (low[1] - new[1]) / (new[0] - low[0]) == near(0.004636, abs=5e-7)
 
 
 def test_every_term_of_the_stage_delay():
@@ -138,14 +139,14 @@ def test_every_term_of_the_stage_delay():
         + factor * (1e4 * (own + wire + driven + pins + fixed) + r * length * far)
         + (0.1 + 0.4 * factor) * r * c * length**2
     )
-    assert float(found.stages[0].delay) == pytest.approx(expected, rel=1e-12)
-    assert float(found.path_delay) == pytest.approx(2 * expected, rel=1e-12)
+    assert float(found.stages[0].delay) == near(expected, rel=1e-12)
+    assert float(found.path_delay) == near(2 * expected, rel=1e-12)
     parts = found.stages[0].delay_parts
-    assert float(parts["layout"]) == pytest.approx(factor * 1e4 * pins, rel=1e-12)
-    assert float(parts["input"]) == pytest.approx(factor * 1e4 * driven, rel=1e-12)
+    assert float(parts["layout"]) == near(factor * 1e4 * pins, rel=1e-12)
+    assert float(parts["input"]) == near(factor * 1e4 * driven, rel=1e-12)
     energy = (2 * 9e-16 + wire + 3 * 2e-15 + pins + fixed) + 3 * 2 * 1e-17
-    assert float(found.stages[0].energy) == pytest.approx(energy, rel=1e-12)
-    assert float(found.dynamic_energy) == pytest.approx(2.5 * energy, rel=1e-12)
+    assert float(found.stages[0].energy) == near(energy, rel=1e-12)
+    assert float(found.dynamic_energy) == near(2.5 * energy, rel=1e-12)
 
 
 def test_unequal_edges():
@@ -153,17 +154,17 @@ def test_unequal_edges():
     net = Net("n", INVERTER, fixed_load=1e-15, on_critical_path=1.0)
     found = _one(net, pair)
     stage = found.stages[0]
-    assert float(stage.falling.delay) == pytest.approx(LN2 * 1e-11)
-    assert float(stage.rising.delay) == pytest.approx(LN2 * 3e-11 + 2 * PS)
-    assert float(found.path_delay) == pytest.approx(LN2 * 2e-11 + 1 * PS)
-    assert float(found.worst_edge_path_delay) == pytest.approx(LN2 * 3e-11 + 2 * PS)
+    assert float(stage.falling.delay) == near(LN2 * 1e-11)
+    assert float(stage.rising.delay) == near(LN2 * 3e-11 + 2 * PS)
+    assert float(found.path_delay) == near(LN2 * 2e-11 + 1 * PS)
+    assert float(found.worst_edge_path_delay) == near(LN2 * 3e-11 + 2 * PS)
 
 
 def test_an_edge_waits_for_the_switch_it_closes_in_the_next_stage():
     pair = ohmic_pair(switching_level=0.5, up={"switching_level": 0.9})
     stage = _one(Net("n", INVERTER, fixed_load=1e-15), pair, rule="chain").stages[0]
-    assert float(stage.falling.factor) == pytest.approx(np.log(10.0))  # a falling output closes a pull-up switch
-    assert float(stage.rising.factor) == pytest.approx(LN2)
+    assert float(stage.falling.factor) == near(np.log(10.0))  # a falling output closes a pull-up switch
+    assert float(stage.rising.factor) == near(LN2)
 
 
 def test_gate_pitches_follow_the_technology():
@@ -190,7 +191,7 @@ def test_short_circuit_charge_against_adaptive_quadrature(window):
 
     expected = 0.8 * ramp * (crossing(pair.down) + crossing(pair.up))
     kinked = window != (0.0, 1.0)
-    assert float(stage.energy_parts["short_circuit"]) == pytest.approx(expected, rel=2e-3 if kinked else 1e-10)
+    assert float(stage.energy_parts["short_circuit"]) == near(expected, rel=2e-3 if kinked else 1e-10)
 
 
 def test_short_circuit_is_small_for_a_window_that_does_not_overlap():
@@ -205,7 +206,7 @@ def test_overlap_of_a_switch_that_opens_late():
     pair = ohmic_pair(on_resistance=1e4, off_resistance=1e30, closing_time=1 * PS, opening_time=4 * PS)
     net = Net("n", INVERTER)
     energy = float(_one(net, pair).stages[0].energy_parts["short_circuit"])
-    assert energy == pytest.approx(2 * 1.0**2 / (2 * 1e4) * 3 * PS, rel=1e-9)
+    assert energy == near(2 * 1.0**2 / (2 * 1e4) * 3 * PS, rel=1e-9)
     early = ohmic_pair(on_resistance=1e4, off_resistance=1e30, closing_time=4 * PS, opening_time=1 * PS)
     assert float(_one(net, early).stages[0].energy_parts["short_circuit"]) == 0.0
 
@@ -266,15 +267,15 @@ def test_a_rule_of_ones_own():
         return EdgeFactors(edge.transit + PS, np.asarray(2.0), np.asarray(0.0))
 
     found = _one(Net("n", INVERTER, fixed_load=1e-15, on_critical_path=1.0), ohmic_pair(), rule=rule)
-    assert float(found.path_delay) == pytest.approx(PS + 2e-11)
+    assert float(found.path_delay) == near(PS + 2e-11)
 
 
 def test_guard_bands_multiply_delay_and_leakage_only():
     net = Net("n", INVERTER, fixed_load=1e-15, on_critical_path=1.0, rising_per_operation=1.0)
     plain = _one(net, ohmic_pair(input_leakage=1e-12))
     guarded = _one(net, ohmic_pair(input_leakage=1e-12), guard_delay=1.3, guard_leakage=1.5)
-    assert float(guarded.path_delay / plain.path_delay) == pytest.approx(1.3)
-    assert float(guarded.leakage_power / plain.leakage_power) == pytest.approx(1.5)
+    assert float(guarded.path_delay / plain.path_delay) == near(1.3)
+    assert float(guarded.leakage_power / plain.leakage_power) == near(1.5)
     assert guarded.dynamic_energy == plain.dynamic_energy
 
 
@@ -282,7 +283,7 @@ def test_thermal_noise_takes_the_worst_net():
     nets = (Net("small", INVERTER, fixed_load=1e-16), Net("large", INVERTER, fixed_load=1e-14))
     found = estimate(Circuit("two", "", "", nets), ohmic_pair(supply=0.1, temperature=300.0), NO_WIRE)
     # 0.1 fF at 300 K: 6.4358 mV (Kish 2004); half of 0.1 V is 7.77 of it
-    assert float(found.half_swing_over_noise) == pytest.approx(0.05 / 6.4358e-3, rel=1e-4)
+    assert float(found.half_swing_over_noise) == near(0.05 / 6.4358e-3, rel=1e-4)
 
 
 def test_scenario_arrays_broadcast_with_the_records():
@@ -304,21 +305,21 @@ def test_scenario_arrays_broadcast_with_the_records():
 def test_equal_drive_makes_stacks_as_fast_and_larger():
     net = Net("n", cell("nand3"), fixed_load=1e-14, on_critical_path=1.0)
     unit, equal = (_one(net, ohmic_pair(), sizing=sizing) for sizing in ("unit", "equal-drive"))
-    assert float(unit.stages[0].falling.delay) == pytest.approx(3 * float(equal.stages[0].falling.delay))
-    assert float(equal.area / unit.area) == pytest.approx((3 * 3 + 3) / 6)
+    assert float(unit.stages[0].falling.delay) == near(3 * float(equal.stages[0].falling.delay))
+    assert float(equal.area / unit.area) == near((3 * 3 + 3) / 6)
 
 
 def test_internal_nodes_count_in_delay_and_energy():
     pair = ohmic_pair(on_resistance=1e4, terminal_capacitance=1e-16)
     net = Net("n", cell("nand2"), on_critical_path=1.0, rising_per_operation=1.0)
     outside, inside = (_one(net, pair, internal_nodes=flag, short_circuit=False) for flag in (False, True))
-    assert float(inside.dynamic_energy - outside.dynamic_energy) == pytest.approx(1e-16)
+    assert float(inside.dynamic_energy - outside.dynamic_energy) == near(1e-16)
     stages = inside.stages[0], outside.stages[0]
-    assert float(stages[0].falling.delay - stages[1].falling.delay) == pytest.approx(LN2 * 2e4 * 0.5e-16)
-    assert float(stages[0].rising.delay - stages[1].rising.delay) == pytest.approx(LN2 * 1e4 * 1e-16)
+    assert float(stages[0].falling.delay - stages[1].falling.delay) == near(LN2 * 2e4 * 0.5e-16)
+    assert float(stages[0].rising.delay - stages[1].rising.delay) == near(LN2 * 1e4 * 1e-16)
 
 
 def test_the_size_of_a_width_scales_terminals_and_leakage():
     made = Sized(ohmic_pair(terminal_capacitance=1e-16, off_resistance=1e9), size=5.0)
-    assert float(made.output_capacitance(INVERTER, "energy", "down")) == pytest.approx(10e-16)
-    assert float(made.leakage_current(INVERTER)["path"]) == pytest.approx(5e-9)
+    assert float(made.output_capacitance(INVERTER, "energy", "down")) == near(10e-16)
+    assert float(made.leakage_current(INVERTER)["path"]) == near(5e-9)

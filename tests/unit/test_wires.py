@@ -12,6 +12,7 @@ from scipy.optimize import brentq, minimize
 
 from benchmark.errors import UsageError
 from benchmark.physics import wire_lengths, wires
+from tests.near import near
 
 LN2 = np.log(2.0)
 POSITIVE = st.floats(1e-3, 1e3)
@@ -41,7 +42,7 @@ def test_driven_line_is_within_its_stated_error(driver, load):
 
 
 def test_open_line_is_the_series():
-    assert float(wires.distributed_rc_time(0.5)) == pytest.approx(_exact_half_time(1e-9, 1.0, 1.0, 0.0, 2000), rel=1e-5)
+    assert float(wires.distributed_rc_time(0.5)) == near(_exact_half_time(1e-9, 1.0, 1.0, 0.0, 2000), rel=1e-5)
     level = np.array([0.05, 0.3, 0.9, 0.999])
     np.testing.assert_allclose(wires.distributed_rc_response(wires.distributed_rc_time(level)), level, rtol=1e-12)
 
@@ -51,13 +52,13 @@ def test_open_line_is_the_series():
 def test_pi_segments_leave_the_elmore_delay(driver, resistance, capacitance, load, segments):
     expected = driver * (capacitance + load) + resistance * (capacitance / 2 + load)
     found = wires.elmore_pi_line(driver, resistance, capacitance, load, segments)
-    assert float(found) == pytest.approx(expected, rel=1e-9)
+    assert float(found) == near(expected, rel=1e-9)
 
 
 def test_elmore_chain_of_six():
     """Six 20 kohm / 20 fF sections: 0.69 R C 21 = 5.8 ns (Rabaey 1996, example 7.4)."""
     tau = wires.elmore_delay(np.full(6, 20e3), np.full(6, 20e-15))
-    assert 0.69 * float(tau) == pytest.approx(5.8e-9, abs=0.05e-9)
+    assert 0.69 * float(tau) == near(5.8e-9, abs=0.05e-9)
 
 
 def test_functions_are_elementwise():
@@ -83,12 +84,12 @@ def test_repeated_line_against_direct_minimisation(transit):
 
     best = minimize(per_length, np.log([1e-3, 30.0]), method="Nelder-Mead", options={"xatol": 1e-8, "fatol": 1e-10})
     found = wires.repeated_line_delay_per_length(r, c, r_0, c_0, own, transit)
-    assert float(found) == pytest.approx(best.fun * 1e-9, rel=1e-6)
+    assert float(found) == near(best.fun * 1e-9, rel=1e-6)
 
 
 def test_repeaters_limited_by_transit():
     left = wires.repeated_line_delay_per_length(2e5, 2e-10, 1e-9, 1e-15, 1.0, 10e-12)
-    assert float(left) == pytest.approx(2 * np.sqrt(0.377 * 2e5 * 2e-10 * 10e-12), rel=1e-6)
+    assert float(left) == near(2 * np.sqrt(0.377 * 2e5 * 2e-10 * 10e-12), rel=1e-6)
 
 
 def test_repeaters_against_direct_minimisation():
@@ -98,8 +99,8 @@ def test_repeaters_against_direct_minimisation():
 
     best = minimize(total, np.log([10.0, 50.0]), method="Nelder-Mead", options={"xatol": 1e-9, "fatol": 1e-12})
     count, size, delay = wires.repeater_optimum(2e3, 2e-12, 1e4, 1e-15)
-    assert [float(count), float(size)] == pytest.approx(np.exp(best.x).tolist(), rel=1e-4)
-    assert float(delay) == pytest.approx(best.fun * 1e-10, rel=1e-8)
+    assert [float(count), float(size)] == near(np.exp(best.x).tolist(), rel=1e-4)
+    assert float(delay) == near(best.fun * 1e-10, rel=1e-8)
 
 
 @pytest.mark.parametrize(("k", "p"), [(0.5, 0.0), (1.0, 0.9), (5.0, 0.3)])
@@ -108,22 +109,22 @@ def test_film_integral_against_adaptive_quadrature(k, p):
         return (t**-3 - t**-5) * (1 - np.exp(-k * t)) / (1 - p * np.exp(-k * t))
 
     expected = 1.0 / (1.0 - 1.5 / k * (1 - p) * quad(inside, 1.0, np.inf, epsabs=1e-13)[0])
-    assert float(wires.fuchs_sondheimer(k, 1.0, p)) == pytest.approx(expected, rel=1e-8)
+    assert float(wires.fuchs_sondheimer(k, 1.0, p)) == near(expected, rel=1e-8)
 
 
 def test_scattering_limits():
     assert float(wires.mayadas_shatzkes(1e-8, 39.9e-9, 0.0)) == 1.0
-    assert float(wires.fuchs_sondheimer(1e-3, 39.9e-9, 0.0)) == pytest.approx(
+    assert float(wires.fuchs_sondheimer(1e-3, 39.9e-9, 0.0)) == near(
         float(wires.fuchs_sondheimer_thick(1e-3, 39.9e-9, 0.0)), rel=1e-9
     )
     # published together: rho lambda = 6.70e-16 ohm m^2 (Gall 2016)
-    assert pytest.approx(6.70e-16, rel=5e-3) == wires.COPPER_RESISTIVITY * wires.COPPER_MEAN_FREE_PATH
+    assert near(6.70e-16, rel=5e-3) == wires.COPPER_RESISTIVITY * wires.COPPER_MEAN_FREE_PATH
 
 
 def test_quiet_and_opposite_neighbours():
     quiet, along, against = (float(wires.coupled_line_capacitance(1, 1, 1, 1, 1.0, m)) for m in (1.0, 0.0, 2.0))
-    assert along == pytest.approx(float(wires.single_line_capacitance(1, 1, 1)))
-    assert against - quiet == pytest.approx(quiet - along)
+    assert along == near(float(wires.single_line_capacitance(1, 1, 1)))
+    assert against - quiet == near(quiet - along)
 
 
 def test_two_point_pairs_are_counted_exactly():
@@ -133,12 +134,12 @@ def test_two_point_pairs_are_counted_exactly():
     for i, (x, y) in enumerate(points):
         for u, v in points[:i]:
             counted[abs(x - u) + abs(y - v)] += 1
-    near = np.arange(1.0, 2 * side - 1)
+    distance = np.arange(1.0, 2 * side - 1)
     p, k, alpha = 0.6, 4.0, 0.75
-    b, c = near * (near - 1), 2 * near
+    b, c = distance * (distance - 1), 2 * distance
     wires_at = alpha * k / c * ((1 + b) ** p + (b + c) ** p - (1 + b + c) ** p - b**p) * counted[1:]
     found = wire_lengths.davis_discrete(side**2, p, k, 3.0)
-    assert found == pytest.approx((wires_at.sum(), (wires_at * near).sum() / wires_at.sum()), rel=1e-12)
+    assert found == near((wires_at.sum(), (wires_at * distance).sum() / wires_at.sum()), rel=1e-12)
 
 
 def test_lengths_that_mean_nothing_are_refused():
