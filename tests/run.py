@@ -34,11 +34,17 @@ def system_packages() -> None:
         say(f"installing system packages: {' '.join(packages)}")
         environment = {**os.environ, "DEBIAN_FRONTEND": "noninteractive"}
         subprocess.run(["apt-get", "update", "-qq"], check=True, env=environment)
-        subprocess.run(["apt-get", "install", "-y", "-qq", "--no-install-recommends", *packages], check=True,
-                       env=environment, stdout=subprocess.DEVNULL)
+        subprocess.run(
+            ["apt-get", "install", "-y", "-qq", "--no-install-recommends", *packages],
+            check=True,
+            env=environment,
+            stdout=subprocess.DEVNULL,
+        )
     still = sorted(program for program in missing if shutil.which(program) is None)
     if still:
-        sys.exit(f"missing programs: {', '.join(still)}; install them (Debian packages: {' '.join(packages)}) and run again")
+        sys.exit(
+            f"missing programs: {', '.join(still)}; install them (Debian packages: {' '.join(packages)}) and run again"
+        )
 
 
 def python_packages() -> None:
@@ -47,7 +53,10 @@ def python_packages() -> None:
         say("creating .venv")
         venv.create(ENVIRONMENT, with_pip=True)
     say("installing evenload and its test tools into .venv")
-    subprocess.run([BIN / "python", "-m", "pip", "install", "--quiet", "--disable-pip-version-check", "-e", f"{ROOT}[test]"], check=True)
+    subprocess.run(
+        [BIN / "python", "-m", "pip", "install", "--quiet", "--disable-pip-version-check", "-e", f"{ROOT}[test]"],
+        check=True,
+    )
 
 
 def main() -> None:

@@ -123,11 +123,7 @@ class Comparison:
         best = optimum(policy, run, inputs, frozen)
         points = best.points
         metric = metric_of(self.study.policy.metric, points)[:, 0]
-        found = (
-            self.widen(run, best.found).astype(bool)
-            if best.found.size > 1
-            else np.broadcast_to(best.found, (self.batch.rows,))
-        )
+        found = self.widen(run, best.found.astype(np.float64)) > 0.0
         return SideOutcome(
             side.id,
             best,

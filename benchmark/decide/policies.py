@@ -18,7 +18,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from benchmark.decide.requirements import cheap_condition, functional_condition, functional_mask
-from benchmark.evaluate.points import Points, cycle_time, design_points
+from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.search import Condition, Objective, Optimum, SideRun, minimise
 from benchmark.evaluate.side import SideProblem
 

@@ -171,7 +171,7 @@ def judge(
     known = [a for a in [best, *advantages] if np.isfinite(a)]
     low, high = (min(known), max(known)) if known else (float("nan"), float("nan"))
     effective = [move for move in moves if move.matters]
-    common = {
+    common: dict[str, Any] = {
         "advantage": best,
         "advantage_low": low,
         "advantage_high": high,

@@ -53,7 +53,7 @@ def _pair(technology: ParameterSet, node: str, supply: float | None) -> tuple[Sw
 
 
 def fan_out_4(pair: SwitchPair, rule: str = "chain") -> tuple[float, float]:
-    """Return delay [s] and energy per full cycle [J] of an inverter driving four alike, no wire, no layout parasitic."""
+    """Return delay [s] and energy per cycle [J] of an inverter driving four alike: no wire, no layout parasitic."""
     inverter = cell("inverter")
     net = Net("stage", inverter, loads=(Load(inverter, "a", 4.0),), rising_per_operation=1.0, on_critical_path=1.0)
     circuit = Circuit(

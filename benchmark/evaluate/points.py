@@ -40,7 +40,7 @@ class Points:
     threshold_shift: float
     time: Array  # path delay with guard-band and level-shifter delay [s]
     time_parts: Mapping[str, Array]
-    slowest_temperature: Array  # index into the study's list
+    slowest_temperature: NDArray[np.intp]  # index into the study's list
     cycle: Array  # T of the energy equation [s]
     energy: Array
     energy_parts: Mapping[str, Array]
@@ -73,7 +73,7 @@ def _temperatures(problem: SideProblem, array: Array) -> Array:
     return np.broadcast_to(array, np.broadcast_shapes(np.shape(array), (1, len(problem.study.temperatures), 1)))
 
 
-def _pick(array: Array, index: Array) -> Array:
+def _pick(array: Array, index: NDArray[np.intp]) -> Array:
     """Take the temperature ``index`` (row, supply) of an array (row, temperature, supply)."""
     array = np.broadcast_to(array, (index.shape[0], array.shape[1], index.shape[1]))
     return np.take_along_axis(array, index[:, None, :], axis=1)[:, 0, :]

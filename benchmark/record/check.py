@@ -13,7 +13,7 @@ from benchmark.sets.circuit_file import read_circuit
 from benchmark.sets.files import read_toml
 from benchmark.sets.library import Library
 from benchmark.sets.problems import Collector
-from benchmark.sets.study import build_study
+from benchmark.sets.study_builder import build_study
 
 __all__ = ["CheckResult", "check_paths"]
 

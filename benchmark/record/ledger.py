@@ -1,4 +1,4 @@
-"""The assumption ledger: every number used, where it comes from, and whether the user or the program set it (layer 8)."""
+"""The assumption ledger: every number used, its origin, and whether the user or the program set it (layer 8)."""
 
 from __future__ import annotations
 

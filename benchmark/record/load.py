@@ -10,14 +10,15 @@ from typing import Any
 
 from benchmark.circuits.library import BUILT_IN
 from benchmark.devices import MODEL_NAMES, model
+from benchmark.devices.model import ModelInputs
 from benchmark.errors import InputRefused, Problem, UsageError
 from benchmark.evaluate.batch import Batch, resolve
-from benchmark.devices.model import ModelInputs
 from benchmark.sets.files import TomlFile, read_toml
 from benchmark.sets.library import Library, shipped_nodes
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.problems import Collector
-from benchmark.sets.study import Study, build_study
+from benchmark.sets.study import Study
+from benchmark.sets.study_builder import build_study
 
 __all__ = ["check_physics", "load_study", "load_technology", "open_library"]
 

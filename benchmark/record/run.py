@@ -11,6 +11,7 @@ from typing import Any
 import numpy as np
 
 import benchmark
+from benchmark.decide.closed_form import delay_factor
 from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
 from benchmark.decide.flips import with_flips
@@ -21,7 +22,6 @@ from benchmark.decide.verdict import InputMove, Verdict, judge, move_inputs
 from benchmark.errors import EvenloadError
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
-from benchmark.decide.closed_form import delay_factor
 from benchmark.evaluate.search import SideRun
 from benchmark.record.ledger import ledger_rows, option_rows, technologies
 from benchmark.record.results import clean, envelope_rows, outcome_row, requirement_rows, swept_rows, verdict_row
@@ -135,8 +135,7 @@ def run_study(
     verdict = _verdict(study, primary)
     progress("other policies", 0.6)
     policies = [outcome_row(primary.outcome, study.policy.primary in DIAGNOSTIC)]
-    for name in study.policy.also:
-        policies.append(outcome_row(primary.comparison.outcome(name), name in DIAGNOSTIC))
+    policies += [outcome_row(primary.comparison.outcome(name), name in DIAGNOSTIC) for name in study.policy.also]
     progress("required times and nodes", 0.7)
     envelope = advantage_against_time(study, primary.curves)
     nodes = scan_nodes(study, study.policy.primary)

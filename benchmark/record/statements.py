@@ -54,6 +54,7 @@ def conventions(study: Study, factors: dict[str, Any]) -> list[dict[str, str]]:
         "integral": "solved from the integral of dt/(R C) along the actuator's own motion",
         "transient": "solved as a differential equation",
     }[study.delay_rule]
+    listed = ", ".join(f"{t:.6g} K" for t in study.temperatures)
     time = (
         "the clock period" if study.leakage_accounting == "period" and study.timing == "clocked" else "the path delay"
     )
@@ -75,7 +76,7 @@ def conventions(study: Study, factors: dict[str, Any]) -> list[dict[str, str]]:
         ),
         (
             "temperature",
-            f"delay at each side's slowest, leakage and energy at the highest of {', '.join(f'{t:.6g} K' for t in study.temperatures)}",
+            f"delay at each side's slowest, leakage and energy at the highest of {listed}",
         ),
         (
             "guard-band",

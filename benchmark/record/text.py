@@ -57,10 +57,12 @@ def answer_sentence(record: Mapping[str, Any]) -> str:
         return f"{sentence}: no advantage in {metric} can be stated, because a side has no permitted design point."
     span = ""
     if verdict["advantage_low"] is not None and verdict["advantage_low"] != verdict["advantage_high"]:
-        span = f" ({verdict['advantage_low']:.2g} to {verdict['advantage_high']:.2g} as inputs move one at a time over their ranges)"
+        low, high = verdict["advantage_low"], verdict["advantage_high"]
+        span = f" ({low:.2g} to {high:.2g} as inputs move one at a time over their ranges)"
     return (
-        f"{sentence}: advantage {verdict['advantage']:.2g}{span} in {metric}, required {study['required_advantage']:g}, "
-        f"policy {study['primary_policy']}, against {primary['strongest']!r}, the strongest contender."
+        f"{sentence}: advantage {verdict['advantage']:.2g}{span} in {metric}, "
+        f"required {study['required_advantage']:g}, policy {study['primary_policy']}, "
+        f"against {primary['strongest']!r}, the strongest contender."
     )
 
 
@@ -97,7 +99,7 @@ def verdict_text(record: Mapping[str, Any]) -> str:
             f"offered {engineering(row['offered'], unit)}{margin}{note}"
         )
     counts = (
-        f"{verdict['inputs_with_effect']} inputs move the result, {verdict['inputs_without_range']} of them have no stated "
-        f"range, {verdict['inputs_of_judgement']} are judgement or invented."
+        f"{verdict['inputs_with_effect']} inputs move the result, {verdict['inputs_without_range']} of them have "
+        f"no stated range, {verdict['inputs_of_judgement']} are judgement or invented."
     )
     return "\n".join([*lines, counts, *record["cautions"][:1]])

@@ -6,7 +6,7 @@ import dataclasses
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
-from typing import Any, Protocol
+from typing import Any
 
 import numpy as np
 
@@ -16,41 +16,12 @@ from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile
 from benchmark.sets.formulas import FormulaError, evaluate_formula
 from benchmark.sets.problems import Collector
-from benchmark.sets.schema import AnchorTable, DefaultsTable, Measure, RowTable, TechnologyFile, WiresFile, validate
-from benchmark.sets.tables import TableFile, read_table
+from benchmark.sets.schema import TechnologyFile, WiresFile, validate
+from benchmark.sets.set_parts import Anchor, ModelDeclaration, read_anchors, read_rows, read_tables
+from benchmark.sets.tables import TableFile
 from benchmark.sets.values import Place, Value, convert_measure, convert_range, convert_value
 
 __all__ = ["Anchor", "ModelDeclaration", "ParameterSet", "build_technology", "build_wires"]
-
-
-class ModelDeclaration(Protocol):
-    """What this layer needs to know of a device model (``benchmark.devices.model.DeviceModel`` has it)."""
-
-    @property
-    def name(self) -> str: ...  # noqa: D102
-    @property
-    def inputs(self) -> Sequence[Any]: ...  # noqa: D102
-    @property
-    def options(self) -> Sequence[Any]: ...  # noqa: D102
-    @property
-    def tables(self) -> Mapping[str, bool]: ...  # noqa: D102
-
-
-@dataclass(frozen=True)
-class Anchor:
-    """A published number the set must predict."""
-
-    name: str
-    node: str
-    si: float
-    low: float
-    high: float
-    unit: str
-    supply: float | None
-    source: str
-    where: str
-    conditions: str
-    note: str
 
 
 @dataclass(frozen=True)
@@ -168,156 +139,7 @@ def _check_formulas(
 
 
 def _exponent(number: Any) -> int:
-    return number.as_tuple().exponent if hasattr(number, "as_tuple") else 0  # type: ignore[no-any-return]
-
-
-def _anchors(
-    tables: Mapping[str, AnchorTable],
-    nodes: Sequence[str],
-    file: TomlFile,
-    sources: frozenset[str],
-    collector: Collector,
-) -> tuple[Anchor, ...]:
-    units = {
-        "on_current": "A/m",
-        "on_current_p": "A/m",
-        "off_current": "A/m",
-        "off_current_p": "A/m",
-        "effective_current": "A/m",
-        "effective_current_p": "A/m",
-        "fan_out_4_delay": "s",
-        "fan_out_4_energy": "J",
-    }
-    found: list[Anchor] = []
-    for name, table in tables.items():
-        dotted = f"anchor.{name}"
-        kind = name.split("__")[0]
-        if kind not in units:
-            collector.add(file.problem(dotted, "is not a known anchor", "", ", ".join(units), nearest(kind, units)))
-            continue
-        if table.source not in sources:
-            collector.add(
-                file.problem(
-                    f"{dotted}.source",
-                    "is not a known source",
-                    repr(table.source),
-                    "a key of sources.toml",
-                    nearest(table.source, sources),
-                )
-            )
-        if table.node is None and len(nodes) > 1:
-            collector.add(file.problem(dotted, "must name its node", "", ", ".join(nodes)))
-            continue
-        node = table.node or nodes[0]
-        if node not in nodes:
-            collector.add(
-                file.problem(
-                    f"{dotted}.node", "is not a node of the set", repr(node), ", ".join(nodes), nearest(node, nodes)
-                )
-            )
-            continue
-        place = Place(file, dotted, DefaultsTable(), sources)
-        numbers = {}
-        for key, number in (("value", table.value), ("low", table.low), ("high", table.high)):
-            if number is not None:
-                numbers[key] = convert_measure(
-                    Measure(value=number, unit=table.unit), units[kind], 0.0, place, collector
-                )
-        supply = None
-        if table.supply is not None:
-            supply = convert_measure(
-                table.supply, "V", 0.0, Place(file, f"{dotted}.supply", DefaultsTable(), sources), collector
-            )
-        value = numbers.get("value")
-        if value is None:
-            continue
-        low, high = numbers.get("low", value), numbers.get("high", value)
-        if low is None or high is None or not low <= value <= high:
-            collector.add(file.problem(dotted, "does not lie between its low and high"))
-            continue
-        found.append(
-            Anchor(
-                kind,
-                node,
-                value,
-                low,
-                high,
-                table.unit,
-                supply,
-                table.source,
-                table.where,
-                table.conditions,
-                table.note,
-            )
-        )
-    return tuple(found)
-
-
-def _rows(
-    rows: Sequence[RowTable],
-    nodes: Sequence[str],
-    file: TomlFile,
-    sources: frozenset[str],
-    defaults: Any,
-    collector: Collector,
-) -> dict[str, MeasuredTable]:
-    units = {
-        "supply": "V",
-        "temperature": "K",
-        "delay": "s",
-        "energy_per_cycle": "J",
-        "leakage_power": "W",
-        "drive_resistance": "ohm",
-        "input_capacitance": "F",
-        "area": "m^2",
-    }
-    by_node: dict[str, dict[str, list[float]]] = {}
-    for position, row in enumerate(rows):
-        dotted = f"row.{position}"
-        if row.node not in nodes:
-            collector.add(
-                file.problem(
-                    f"{dotted}.node",
-                    "is not a node of the set",
-                    repr(row.node),
-                    ", ".join(nodes),
-                    nearest(row.node, nodes),
-                )
-            )
-            continue
-        source = row.source or defaults.source or ""
-        if source not in sources:
-            collector.add(
-                file.problem(
-                    f"{dotted}.source",
-                    "is not a known source",
-                    repr(source),
-                    "a key of sources.toml",
-                    nearest(source, sources),
-                )
-            )
-        columns = by_node.setdefault(row.node, {key: [] for key in units})
-        for key, unit in units.items():
-            measure = getattr(row, key)
-            if measure is None:
-                columns[key].append(np.nan)
-                continue
-            si = convert_measure(measure, unit, 0.0, Place(file, f"{dotted}.{key}", defaults, sources), collector)
-            columns[key].append(np.nan if si is None else si)
-    return {
-        node: MeasuredTable(
-            "rows",
-            {key: np.array(column) for key, column in columns.items()},
-            {},
-            "delay",
-            "supply",
-            "log",
-            "monotone",
-            {},
-            file.name,
-        )
-        for node, columns in by_node.items()
-    }
+    return number.as_tuple().exponent if hasattr(number, "as_tuple") else 0
 
 
 def _resolve_defaults(
@@ -426,8 +248,8 @@ def build_technology(
         )
     _resolve_defaults(declaration, options, values, frozenset(parsed.value), file, collector)
     _check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
-    tables = _tables(parsed, declaration, file, sources, collector)
-    rows = _rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
+    tables = read_tables(parsed, declaration, file, sources, collector)
+    rows = read_rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
     if "rows" in declaration.tables:
         for node in parsed.nodes:
             if node not in rows:
@@ -441,7 +263,7 @@ def build_technology(
             found = convert_range(table, unit, Place(file, f"valid.{key}", parsed.default, sources), collector)
             if found is not None:
                 valid[key] = found
-    anchors = _anchors(parsed.anchor, parsed.nodes, file, sources, collector)
+    anchors = read_anchors(parsed.anchor, parsed.nodes, file, sources, collector)
     if len(collector.problems) > before:
         return None
     return ParameterSet(
@@ -503,53 +325,6 @@ def _options(
             )
     options = {name: given.get(name, option.default) for name, option in known.items()}
     return options, frozenset(name for name in known if name not in given)
-
-
-def _tables(
-    parsed: TechnologyFile, declaration: ModelDeclaration, file: TomlFile, sources: frozenset[str], collector: Collector
-) -> dict[str, TableFile]:
-    allowed = [name for name in declaration.tables if name != "rows"]
-    found: dict[str, TableFile] = {}
-    for name, reference in parsed.table.items():
-        dotted = f"table.{name}"
-        if name not in allowed:
-            collector.add(
-                file.problem(
-                    dotted,
-                    f"is not used by the model {declaration.name}",
-                    "",
-                    ", ".join(allowed),
-                    nearest(name, allowed),
-                )
-            )
-            continue
-        path = Path(reference.file)
-        if (
-            path.is_absolute()
-            or ".." in path.parts
-            or "\\" in reference.file
-            or "\x00" in reference.file
-            or path.suffix != ".csv"
-        ):
-            collector.add(
-                file.problem(
-                    f"{dotted}.file",
-                    "is not a CSV file inside the folder of the sets",
-                    repr(reference.file),
-                    "a relative path such as tables/name.csv",
-                )
-            )
-            continue
-        root = file.path.parent.parent if (file.path.parent.parent / path).exists() else file.path.parent
-        table = read_table(
-            root / path, name, sources, collector, str(Path(file.name).parent / path) if file.name else str(path)
-        )
-        if table is not None:
-            found[name] = table
-    for name, required in declaration.tables.items():
-        if required and name != "rows" and name not in parsed.table:
-            collector.add(file.problem("table", f"{name} is missing", "", f'[table.{name}] file = "tables/...csv"'))
-    return found
 
 
 def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -> ParameterSet | None:

@@ -1,0 +1,486 @@
+"""From a study file to a ``Study``: every problem of every slot in one pass (layer 2)."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any, Protocol
+
+from benchmark.catalogue import PRODUCT_CLASSES, QUANTITIES, STUDY_QUANTITIES
+from benchmark.errors import nearest
+from benchmark.sets.circuit_file import CircuitSpec, read_circuit
+from benchmark.sets.files import TomlFile, shown
+from benchmark.sets.library import Library
+from benchmark.sets.parameters import ParameterSet
+from benchmark.sets.problems import Collector
+from benchmark.sets.schema import Measure, validate
+from benchmark.sets.study import REQUIREMENTS, NodePair, Policy, Requirement, Side, Study
+from benchmark.sets.study_schema import FrozenKnob, SideTable, StudyFile
+from benchmark.sets.values import Place, Value, convert_measure, convert_value
+from benchmark.units import UnitError, parse_unit, to_si
+
+__all__ = ["CircuitDeclaration", "build_study"]
+
+_OVERHEADS = ("level_shifter_energy", "supply_efficiency", "overhead_power")
+_OPTIONAL_OVERHEADS = ("level_shifter_delay",)
+_LENGTHS = ("average_net_length", "average_net_pitches")
+_GATING = ("residual_leakage", "wake_energy_cycles")
+
+
+class CircuitDeclaration(Protocol):
+    """What this layer needs to know of a built-in circuit (``benchmark.circuits.library.BuiltIn`` has it)."""
+
+    @property
+    def required(self) -> tuple[str, ...]: ...  # noqa: D102
+    @property
+    def optional(self) -> tuple[str, ...]: ...  # noqa: D102
+    @property
+    def length(self) -> str: ...  # noqa: D102
+
+
+class _Builder:
+    """Walks a parsed study once, sending every problem to the collector."""
+
+    def __init__(
+        self, parsed: StudyFile, file: TomlFile, library: Library, circuits: Mapping[str, CircuitDeclaration]
+    ) -> None:
+        self.parsed, self.file, self.library, self.circuits = parsed, file, library, circuits
+        self.collector: Collector = library.collector
+        self.sources = frozenset(library.sources)
+
+    def refuse(self, dotted: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> None:
+        self.collector.add(self.file.problem(dotted, what, found, allowed, hint))
+
+    def place(self, dotted: str) -> Place:
+        return Place(self.file, dotted, self.parsed.default, self.sources)
+
+    def measure(self, measure: Measure, unit: str, dotted: str, low: float | None = 0.0) -> float | None:
+        return convert_measure(measure, unit, low, self.place(dotted), self.collector)
+
+    def word(self, dotted: str, text: str, allowed: Sequence[str]) -> None:
+        if text not in allowed:
+            self.refuse(
+                dotted, "is not one of the allowed words", repr(text), ", ".join(allowed), nearest(text, allowed)
+            )
+
+    # -- values ---------------------------------------------------------------------------------------------
+
+    def circuit_spec(self) -> CircuitSpec | None:
+        name = self.parsed.workload.circuit
+        if name in self.circuits:
+            return None
+        stem = name.removesuffix(".toml")
+        path = self.library.find(stem, "circuits")
+        if path is None:
+            known = [*self.circuits, *self.library.ids("circuits")]
+            self.refuse(
+                "workload.circuit", "there is no such circuit", repr(name), ", ".join(known), nearest(stem, known)
+            )
+            return None
+        return read_circuit(path, self.library, self.collector)
+
+    def needed_values(self) -> tuple[set[str], set[str]]:
+        """Names the study must give, and names it may give."""
+        parsed = self.parsed
+        circuit = self.circuits.get(parsed.workload.circuit)
+        must: set[str] = set(circuit.required) if circuit else set()
+        may: set[str] = set(circuit.optional) - {"busiest_activity"} if circuit else set()
+        if circuit is not None and circuit.length != "none":
+            may |= set(_LENGTHS)
+        if parsed.workload.timing == "clocked":
+            must.add("clock_frequency")
+        if parsed.workload.idle != "none":
+            must |= {"idle_time", "active_cycles"}
+        if "endurance" in parsed.requirements:
+            if circuit is not None:
+                must.add("busiest_activity")
+            if parsed.workload.idle == "none":
+                must.add("duty")
+            if parsed.workload.timing == "self-timed":
+                may.add("clock_frequency")
+        return must, may
+
+    def values(self) -> dict[str, Value]:
+        must, may = self.needed_values()
+        allowed = sorted(must | may)
+        names = {quantity.name for quantity in STUDY_QUANTITIES}
+        found: dict[str, Value] = {}
+        for name, table in self.parsed.value.items():
+            dotted = f"value.{name}"
+            if name not in allowed:
+                what = (
+                    "is not used by this circuit, timing, idle mode and requirements"
+                    if name in names
+                    else "is not a known name"
+                )
+                self.refuse(dotted, what, "", ", ".join(allowed), nearest(name, allowed))
+                continue
+            value = convert_value(QUANTITIES[name], table, [""], self.place(dotted), self.collector)
+            if value is not None:
+                found[name] = value
+        for name in sorted(must - set(self.parsed.value)):
+            self.refuse(
+                f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", f"a value in {QUANTITIES[name].unit}"
+            )
+        lengths = [name for name in _LENGTHS if name in self.parsed.value]
+        circuit = self.circuits.get(self.parsed.workload.circuit)
+        if len(lengths) > 1 or (circuit is not None and circuit.length == "required" and not lengths):
+            self.refuse("value", f"needs exactly one of {' and '.join(_LENGTHS)}", ", ".join(lengths) or "none")
+        return found
+
+    # -- sides ----------------------------------------------------------------------------------------------
+
+    def frozen(self, knob: FrozenKnob | None, unit_like: str, dotted: str, neutral: float) -> tuple[float, ...]:
+        if knob is None:
+            return (neutral,)
+        found = []
+        for number in knob.values:
+            si = self.measure(Measure(value=number, unit=knob.unit), unit_like, dotted, None)
+            if si is not None:
+                found.append(si)
+        if len(set(found)) != len(found):
+            self.refuse(dotted, "names a value twice")
+        return tuple(found)
+
+    def side(self, table: SideTable, dotted: str) -> Side | None:
+        where = self.file.problem(f"{dotted}.technology", "")
+        technology = self.library.load(table.technology, "technologies", where)
+        low = self.measure(
+            Measure(value=table.knobs.supply.low, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply"
+        )
+        high = self.measure(
+            Measure(value=table.knobs.supply.high, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply"
+        )
+        if low is not None and high is not None and not 0.0 < low <= high:
+            self.refuse(
+                f"{dotted}.knobs.supply",
+                "needs 0 < low <= high",
+                f"{table.knobs.supply.low} to {table.knobs.supply.high} {table.knobs.supply.unit}",
+            )
+        sizes = self.frozen(table.knobs.size, "1", f"{dotted}.knobs.size", 1.0)
+        if any(size <= 0 for size in sizes):
+            self.refuse(f"{dotted}.knobs.size", "must be above 0")
+        shifts = self.frozen(table.knobs.threshold_shift, "V", f"{dotted}.knobs.threshold_shift", 0.0)
+        overhead = self.ledger(table.overhead, (*_OVERHEADS,), _OPTIONAL_OVERHEADS, f"{dotted}.overhead")
+        gated = self.parsed.workload.idle == "gated"
+        gating = self.ledger(table.gating, _GATING if gated else (), (), f"{dotted}.gating")
+        if technology is None or low is None or high is None:
+            return None
+        if technology.kind != "technology":
+            self.refuse(f"{dotted}.technology", "is a wires set", repr(table.technology))
+            return None
+        knobs = getattr(self.library.declarations(technology.model), "knobs", ())
+        if table.knobs.threshold_shift is not None and "threshold_shift" not in knobs and any(shifts):
+            self.refuse(f"{dotted}.knobs.threshold_shift", f"has no effect with the model {technology.model}")
+        return Side(table.id or technology.id, technology, (low, high), sizes, shifts, overhead, gating)
+
+    def ledger(
+        self, tables: Mapping[str, Any], must: Sequence[str], may: Sequence[str], dotted: str
+    ) -> dict[str, Value]:
+        found: dict[str, Value] = {}
+        for name, table in tables.items():
+            place = f"{dotted}.{name}"
+            if name not in (*must, *may):
+                self.refuse(
+                    place, "is not used here", "", ", ".join((*must, *may)) or "nothing", nearest(name, (*must, *may))
+                )
+                continue
+            value = convert_value(QUANTITIES[name], table, [""], self.place(place), self.collector)
+            if value is not None:
+                found[name] = value
+        for name in must:
+            if name not in tables:
+                self.refuse(
+                    f"{dotted}.{name}",
+                    "is missing (a zero is an entry, not an omission)",
+                    "",
+                    f"a value in {QUANTITIES[name].unit}",
+                )
+        return found
+
+    def sides(self) -> tuple[Side | None, list[Side]]:
+        candidate = self.side(self.parsed.candidate, "candidate")
+        contenders = []
+        for position, table in enumerate(self.parsed.contender):
+            side = self.side(table, f"contender.{position}")
+            if side is not None:
+                contenders.append(side)
+        ids = [side.id for side in contenders]
+        for repeated in sorted({name for name in ids if ids.count(name) > 1}):
+            self.refuse("contender", "two contenders have the same id", repr(repeated))
+        return candidate, contenders
+
+    # -- nodes ----------------------------------------------------------------------------------------------
+
+    def pairs(self, candidate: Side | None, contenders: Sequence[Side], wires: ParameterSet | None) -> list[NodePair]:
+        found = []
+        labels = [pair.label for pair in self.parsed.nodes.pairs]
+        for repeated in sorted({label for label in labels if labels.count(label) > 1}):
+            self.refuse("nodes.pairs", "a label appears twice", repr(repeated))
+        if self.parsed.nodes.headline not in labels:
+            self.refuse(
+                "nodes.headline",
+                "is not the label of a pair",
+                repr(self.parsed.nodes.headline),
+                ", ".join(labels),
+                nearest(self.parsed.nodes.headline, labels),
+            )
+        ids = [side.id for side in contenders]
+        for pair in self.parsed.nodes.pairs:
+            dotted = "nodes.pairs"
+            if candidate is not None and pair.candidate not in candidate.technology.nodes:
+                self.refuse(
+                    dotted,
+                    f"the candidate {candidate.technology.id} has no node",
+                    repr(pair.candidate),
+                    ", ".join(candidate.technology.nodes),
+                    nearest(pair.candidate, candidate.technology.nodes),
+                )
+            reference = pair.reference if isinstance(pair.reference, dict) else dict.fromkeys(ids, pair.reference)
+            for name in reference:
+                if name not in ids:
+                    self.refuse(
+                        dotted, "names a contender that is not listed", repr(name), ", ".join(ids), nearest(name, ids)
+                    )
+            for side in contenders:
+                node = reference.get(side.id)
+                if node is not None and node not in side.technology.nodes:
+                    self.refuse(
+                        dotted,
+                        f"the reference {side.technology.id} has no node",
+                        repr(node),
+                        ", ".join(side.technology.nodes),
+                        nearest(node, side.technology.nodes),
+                    )
+            if not reference:
+                self.refuse(dotted, "names no reference node", repr(pair.label))
+            if wires is not None and pair.wires not in wires.nodes:
+                self.refuse(
+                    dotted,
+                    f"the wires set {wires.id} has no node",
+                    repr(pair.wires),
+                    ", ".join(wires.nodes),
+                    nearest(pair.wires, wires.nodes),
+                )
+            found.append(NodePair(pair.label, pair.candidate, dict(reference), pair.wires))
+        return found
+
+    # -- requirements, policy -------------------------------------------------------------------------------
+
+    def requirements(self) -> dict[str, Requirement]:
+        found: dict[str, Requirement] = {}
+        for name, table in self.parsed.requirements.items():
+            dotted = f"requirements.{name}"
+            if name not in REQUIREMENTS:
+                self.refuse(
+                    dotted, "is not a known requirement", "", ", ".join(REQUIREMENTS), nearest(name, REQUIREMENTS)
+                )
+                continue
+            unit, _ = REQUIREMENTS[name]
+            limit, life = None, 0.0
+            if name == "endurance":
+                if table.limit is not None or table.life is None:
+                    self.refuse(dotted, "needs a life and no limit", "", 'life = { value = 10.0, unit = "year" }')
+                else:
+                    life = self.measure(table.life, "s", f"{dotted}.life") or 0.0
+            elif table.limit == "cycle":
+                if name != "deadline" or self.parsed.workload.timing != "clocked":
+                    self.refuse(f"{dotted}.limit", 'may be "cycle" only for the deadline of a clocked workload')
+            elif table.limit is None or isinstance(table.limit, str):
+                self.refuse(dotted, "has no limit", "", f'limit = {{ value = ..., unit = "{unit}" }}')
+            else:
+                limit = self.measure(table.limit, unit, f"{dotted}.limit")
+            if table.life is not None and name != "endurance":
+                self.refuse(f"{dotted}.life", "belongs to endurance only")
+            functional = name in ("noise_margin", "voltage_gain")
+            if table.fan_in is not None and not functional:
+                self.refuse(f"{dotted}.fan_in", "belongs to noise_margin and voltage_gain only")
+            if table.fan_in is not None and not 1 <= table.fan_in <= 16:
+                self.refuse(f"{dotted}.fan_in", "is out of range", str(table.fan_in), "1 to 16")
+            found[name] = Requirement(name, limit, unit, table.kind, table.fan_in or 1, life)
+        return found
+
+    def policy(self, contenders: Sequence[Side]) -> Policy:
+        table = self.parsed.policy
+        used = {table.primary, *table.also}
+        required: float | str = ""
+        if table.required_time is None:
+            if used & {"iso-delay"}:
+                self.refuse(
+                    "policy.required_time",
+                    "is missing",
+                    "",
+                    '"cycle", "contender:<id>" or { value, unit }',
+                    "iso-delay needs it",
+                )
+        elif isinstance(table.required_time, str):
+            required = table.required_time
+            names = [f"contender:{side.id}" for side in contenders]
+            allowed = (["cycle"] if self.parsed.workload.timing == "clocked" else []) + names
+            self.word("policy.required_time", required, allowed)
+        else:
+            required = self.measure(table.required_time, "s", "policy.required_time") or 0.0
+        energy = None
+        if table.required_energy is not None:
+            if "iso-energy" not in used:
+                self.refuse("policy.required_energy", "is used by iso-energy only, which is not asked for")
+            energy = self.measure(table.required_energy, "J", "policy.required_energy")
+        elif "iso-energy" in used:
+            self.refuse("policy.required_energy", "is missing", "", "{ value, unit }", "iso-energy needs it")
+        exponent = 1.0
+        if table.exponent is not None:
+            exponent = float(table.exponent)
+            if "minimum-energy-delay" not in used:
+                self.refuse("policy.exponent", "is used by minimum-energy-delay only, which is not asked for")
+            if not 0.0 < exponent <= 10.0:
+                self.refuse("policy.exponent", "is out of range", shown(table.exponent), "above 0, at most 10")
+        elif "minimum-energy-delay" in used:
+            self.refuse("policy.exponent", "is missing", "", "exponent = 1.0", "minimum-energy-delay needs it")
+        also = tuple(dict.fromkeys(name for name in table.also if name != table.primary))
+        return Policy(table.primary, also, required, energy, exponent, table.metric)
+
+    def temperatures(self) -> tuple[float, ...]:
+        table = self.parsed.conditions.temperatures
+        try:
+            unit = parse_unit(table.unit)
+        except UnitError as error:
+            self.refuse("conditions.temperatures", f"unknown unit: {error}")
+            return ()
+        if unit.dimension != parse_unit("K").dimension:
+            self.refuse("conditions.temperatures", "has the wrong dimension", repr(table.unit), "K or degC")
+            return ()
+        found = tuple(sorted(to_si(number, unit) for number in table.values))
+        if found and found[0] <= 0.0:
+            self.refuse("conditions.temperatures", "is at or below absolute zero", f"{found[0]:g} K")
+        if len(set(found)) != len(found):
+            self.refuse("conditions.temperatures", "names a temperature twice")
+        return found
+
+    def number(self, dotted: str, value: Any, low: float, high: float) -> float:
+        number = float(value)
+        if not low <= number <= high:
+            self.refuse(dotted, "is out of range", shown(value), f"{low:g} to {high:g}")
+        return number
+
+
+def build_study(file: TomlFile, library: Library, circuits: Mapping[str, CircuitDeclaration]) -> Study | None:
+    """Validate and convert a study with everything it refers to.
+
+    Parameters
+    ----------
+    file : TomlFile
+    library : Library
+        Finds the sets, the wires and the sources; its collector receives every problem.
+    circuits : mapping
+        Built-in circuit name -> what it declares.
+    """
+    before = len(library.collector.problems)
+    parsed = validate(StudyFile, file, library.collector)
+    if parsed is None:
+        return None
+    build = _Builder(parsed, file, library, circuits)
+    build.word("product.class", parsed.product.class_, list(PRODUCT_CLASSES))
+    spec = build.circuit_spec()
+    values = build.values()
+    temperatures = build.temperatures()
+    wires = library.load(parsed.conditions.wires, "wires", file.problem("conditions.wires", ""))
+    if wires is not None and wires.kind != "wires":
+        build.refuse("conditions.wires", "is not a wires set", repr(parsed.conditions.wires))
+        wires = None
+    candidate, contenders = build.sides()
+    pairs = build.pairs(candidate, contenders, wires)
+    requirements = build.requirements()
+    policy = build.policy(contenders)
+    advantage = build.number("verdict.required_advantage", parsed.verdict.required_advantage, 1e-6, 1e6)
+    delay_band = build.number("conditions.guard_band.delay", parsed.conditions.guard_band.delay, 1.0, 100.0)
+    leakage_band = build.number("conditions.guard_band.leakage", parsed.conditions.guard_band.leakage, 1.0, 1e6)
+    points = int(build.number("search.supply_points", parsed.search.supply_points, 3, 5001))
+    refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
+    _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
+    _check_self_comparison(build, candidate, contenders)
+    _check_invented(build, values, candidate, contenders, wires)
+    if len(library.collector.problems) > before or candidate is None or wires is None or not contenders:
+        return None
+    return Study(
+        parsed.id,
+        parsed.title,
+        parsed.declared.isoformat(),
+        parsed.owner,
+        parsed.demonstration,
+        parsed.note,
+        parsed.product.class_,
+        parsed.product.describe,
+        parsed.workload.operation,
+        parsed.workload.circuit,
+        spec,
+        parsed.workload.timing,
+        parsed.workload.leakage_accounting,
+        parsed.workload.idle,
+        values,
+        temperatures,
+        parsed.conditions.delay_rule,
+        parsed.conditions.short_circuit,
+        delay_band,
+        leakage_band,
+        wires,
+        candidate,
+        tuple(contenders),
+        parsed.nodes.headline,
+        tuple(pairs),
+        requirements,
+        policy,
+        advantage,
+        parsed.verdict.invented_inputs,
+        points,
+        refine,
+        file.name,
+        file.sha256,
+        file.text,
+        file.path,
+    )
+
+
+def _check_temperatures(build: _Builder, temperatures: Sequence[float], sides: Sequence[Side]) -> None:
+    """Every temperature of the study must lie in the validity range of every set."""
+    for side in sides:
+        low, high = side.technology.valid.get("temperature", (0.0, float("inf")))
+        for temperature in temperatures:
+            if not low <= temperature <= high:
+                build.refuse(
+                    "conditions.temperatures",
+                    f"is outside the validity of {side.technology.id}",
+                    f"{temperature:g} K",
+                    f"{low:g} to {high:g} K",
+                )
+
+
+def _check_self_comparison(build: _Builder, candidate: Side | None, contenders: Sequence[Side]) -> None:
+    """The candidate may stand among the contenders only when its id says that this is a self-comparison."""
+    for side in contenders:
+        if candidate is not None and side.technology.id == candidate.technology.id and "self-comparison" not in side.id:
+            build.refuse(
+                "contender",
+                "the candidate's technology is also a contender",
+                repr(side.technology.id),
+                "",
+                'if this is meant, give the contender an id containing "self-comparison"',
+            )
+
+
+def _check_invented(
+    build: _Builder,
+    values: Mapping[str, Value],
+    candidate: Side | None,
+    contenders: Sequence[Side],
+    wires: ParameterSet | None,
+) -> None:
+    """A study with invented inputs must call itself a demonstration, and only then."""
+    groups: list[list[Value]] = [list(values.values()), list(wires.values.values()) if wires is not None else []]
+    for side in [*contenders, *([candidate] if candidate else [])]:
+        groups += [list(table.values()) for table in (side.technology.values, side.overhead, side.gating)]
+        for table in side.technology.tables.values():
+            if table.evidence == "invented" and not build.parsed.demonstration:
+                build.refuse("demonstration", "must be true: a table of an input set is invented", table.file)
+                return
+    invented = sorted({value.name for group in groups for value in group if value.evidence == "invented"})
+    if invented and not build.parsed.demonstration:
+        build.refuse("demonstration", "must be true: some inputs are invented", ", ".join(invented[:5]))
