@@ -7,12 +7,14 @@ requirements: the lower envelope. Where a side has no permitted point the advant
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
+from benchmark.decide.infeasible import why_infeasible
 from benchmark.decide.policies import PolicyInputs, metric_of, optimum
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import cycle_time
@@ -38,6 +40,7 @@ class SideOutcome:
     time: Array
     area: Array
     supply: Array
+    why: str  # why the best estimate has no permitted point; empty when it has one
 
 
 @dataclass(frozen=True)
@@ -133,11 +136,12 @@ class Comparison:
             self.widen(run, points.time[:, 0]),
             self.widen(run, points.area[:, 0]),
             self.widen(run, points.supply[:, 0]),
+            "" if found[0] or self.batch.rows > 1 else why_infeasible(policy, run, *_required(run, inputs)),
         )
 
-    def outcome(self, policy: str) -> Outcome:
-        """Compare all sides under one policy."""
-        inputs = self.policy_inputs()
+    def outcome(self, policy: str, *, enforce: bool = True) -> Outcome:
+        """Compare all sides under one policy; ``enforce=False`` sets the hard requirements aside."""
+        inputs = dataclasses.replace(self.policy_inputs(), enforce_requirements=enforce)
         candidate = self.side_outcome(policy, self.candidate, inputs)
         contenders = tuple(self.side_outcome(policy, run, inputs) for run in self.contenders.values())
         costs = np.stack([np.where(side.found, side.metric, np.inf) for side in contenders])
@@ -153,6 +157,12 @@ class Comparison:
         found = {f"candidate {outcome.candidate.id}": _choice(outcome.candidate)}
         found |= {f"contender {side.id}": _choice(side) for side in outcome.contenders}
         return found
+
+
+def _required(run: SideRun, inputs: PolicyInputs) -> tuple[float | None, float | None]:
+    """Required time and energy of a side at the best estimate."""
+    time = None if inputs.required_time is None else float(run.problem.batch.own(inputs.required_time)[0, 0])
+    return time, inputs.required_energy
 
 
 def _choice(side: SideOutcome) -> tuple[float, float]:

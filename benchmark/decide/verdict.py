@@ -162,9 +162,26 @@ def _reaches(advantage: float, required: float) -> bool:
 
 
 def judge(
-    study: Study, outcome: Outcome, requirements: Sequence[RequirementResult], moves: Sequence[InputMove]
+    study: Study,
+    outcome: Outcome,
+    requirements: Sequence[RequirementResult],
+    moves: Sequence[InputMove],
+    relaxed: Outcome | None = None,
 ) -> Verdict:
-    """Apply the verdict table at the best estimate ``outcome`` (row 0)."""
+    """Apply the verdict table at the best estimate (row 0).
+
+    Parameters
+    ----------
+    study : Study
+    outcome : Outcome
+        Primary policy.
+    requirements : sequence of RequirementResult
+    moves : sequence of InputMove
+        Empty when a side has no permitted point.
+    relaxed : Outcome, optional
+        The same policy with the hard requirements set aside, when the candidate has no permitted point: says what the
+        advantage would be.
+    """
     required = study.required_advantage
     best = float(outcome.advantage[0])
     advantages = [a for move in moves if move.ranged for a in (move.advantage_low, move.advantage_high)]
@@ -181,20 +198,10 @@ def judge(
         "inputs_with_effect": len(effective),
     }
     shortfall = _shortfall(outcome, required)
-    failed = [_failure(result) for result in requirements if result.state == "fail" and not result.passes_somewhere]
-    if not outcome.candidate.found[0]:
-        failed += [_failure(r) for r in requirements if r.state == "fail" and r.passes_somewhere and r.kind == "hard"]
-        failed = failed or ["no permitted point meets all hard requirements together"]
-    failed += [
-        _failure(r)
-        for r in requirements
-        if r.state == "fail" and r.passes_somewhere and r.kind == "report" and outcome.candidate.found[0]
-    ]
+    failed = _failures(outcome, requirements)
     if failed:
-        return Verdict(WORDS[2], tuple(dict.fromkeys([*failed, *shortfall])), **common)
-    unknown = [
-        f"{result.name}: {result.note or 'cannot be judged'}" for result in requirements if result.state == "unknown"
-    ]
+        return Verdict(WORDS[2], tuple(dict.fromkeys([*failed, *shortfall, *_set_aside(relaxed, required)])), **common)
+    unknown = [f"{r.name}: {r.note or 'cannot be judged'}" for r in requirements if r.state == "unknown"]
     if outcome.strongest[0] < 0:
         unknown.append("no contender meets the hard requirements, so there is nothing to compare with")
     if unknown:
@@ -202,8 +209,30 @@ def judge(
     return _by_ranges(study, best, moves, shortfall, common)
 
 
+def _failures(outcome: Outcome, requirements: Sequence[RequirementResult]) -> list[str]:
+    """Every failed requirement; when the candidate has no permitted point, also why."""
+    failed = [_failure(result) for result in requirements if result.state == "fail"]
+    if not outcome.candidate.found[0]:
+        failed.append(outcome.candidate.why or "no permitted point meets all hard requirements together")
+    return failed
+
+
+def _set_aside(relaxed: Outcome | None, required: float) -> list[str]:
+    """What the advantage would be without the hard requirements."""
+    if relaxed is None or not np.isfinite(relaxed.advantage[0]):
+        return []
+    advantage = float(relaxed.advantage[0])
+    word = "below" if advantage < required else "at or above"
+    return [
+        f"with the hard requirements set aside the advantage would be {advantage:.4g}, {word} the required {required:g}"
+    ]
+
+
 def _failure(result: RequirementResult) -> str:
-    return f"requirement {result.name} failed (margin {result.margin:.3g}, needs 1)"
+    text = f"requirement {result.name} failed (margin {result.margin:.3g}, needs 1)"
+    if result.kind == "report" and result.passes_somewhere and np.isfinite(result.margin):
+        text += "; other permitted points meet it: make it hard to bound the search"
+    return text
 
 
 def _shortfall(outcome: Outcome, required: float) -> list[str]:

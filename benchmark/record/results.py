@@ -67,7 +67,7 @@ def point_row(points: Points, row: int = 0, column: int = 0) -> dict[str, Any]:
 def side_row(side: SideOutcome) -> dict[str, Any]:
     """One side of an outcome."""
     found = bool(side.found[0])
-    row: dict[str, Any] = {"id": side.id, "feasible": found, "at": "", "point": None}
+    row: dict[str, Any] = {"id": side.id, "feasible": found, "why": side.why, "at": "", "point": None}
     if found:
         row["point"] = point_row(side.optimum.points)
         row["at"] = (

@@ -48,6 +48,7 @@ class _Primary:
     outcome: Outcome
     requirements: list[RequirementResult]
     curves: dict[str, list[tuple[SideRun, Swept]]]
+    relaxed: Outcome | None  # with the hard requirements set aside, when the candidate has no permitted point
 
 
 def _primary(study: Study) -> _Primary:
@@ -60,7 +61,11 @@ def _primary(study: Study) -> _Primary:
         ratio = float(outcome.candidate.area[0] / strongest.area[0])
     run = comparison.candidate
     functional = functional_margins(run)
+    relaxed = None
     optimum = outcome.candidate.optimum if outcome.candidate.found[0] else None
+    if optimum is None:
+        relaxed = comparison.outcome(study.policy.primary, enforce=False)
+        optimum = relaxed.candidate.optimum if relaxed.candidate.found[0] else None
     requirements = assess(run, optimum, ratio, functional)
     curves: dict[str, list[tuple[SideRun, Swept]]] = {}
     for key, side_run in {"candidate": run, **comparison.contenders}.items():
@@ -68,7 +73,7 @@ def _primary(study: Study) -> _Primary:
         curves[key] = [
             (side_run, swept(side_run, combination, margins[combination])) for combination in side_run.combinations
         ]
-    return _Primary(comparison, outcome, requirements, curves)
+    return _Primary(comparison, outcome, requirements, curves, relaxed)
 
 
 def _verdict(study: Study, primary: _Primary) -> Verdict:
@@ -79,7 +84,7 @@ def _verdict(study: Study, primary: _Primary) -> Verdict:
     if primary.outcome.candidate.found[0] and primary.outcome.strongest[0] >= 0:
         _, moves = move_inputs(study, pair, policy, frozen)
         moves = with_flips(study, pair, policy, frozen, moves)
-    return judge(study, primary.outcome, primary.requirements, moves)
+    return judge(study, primary.outcome, primary.requirements, moves, primary.relaxed)
 
 
 def _software() -> dict[str, str]:
