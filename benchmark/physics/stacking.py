@@ -105,7 +105,7 @@ def series_balance(
     Notes
     -----
     Newton steps on the logarithms of the current and of the voltage across each device. The linear system is solved by
-    one sweep up the stack: each device's step is linear in the step of the common current. A step that raises the largest
+    one sweep up the stack: each device's step is linear in the step of the common current. A step that raises the worst
     imbalance is cut to a quarter. The accepted step is added to the answer, whose error is of the order of
     ``BALANCED`` squared. Every element stops on its own; one that does not converge is nan.
     """
