@@ -134,10 +134,10 @@ def _currents_met(t: Transistor, targets: Targets) -> Calibration:
 
     def mismatch(threshold: Array) -> Array:
         tried = with_velocity(threshold)
+        # an unreachable on-current gives an infinite velocity: nan from here on, and the search steps back
+        tried = replace(tried, velocity=np.where(np.isfinite(tried.velocity), tried.velocity, np.nan))
         state = virtual_source.channel_state(tried, np.zeros_like(v), v, off)
-        # an unreachable on-current gives an infinite velocity: nan here, and the search steps back
-        carried = np.where(np.isfinite(tried.velocity), state.charge * tried.velocity * state.saturation, np.nan)
-        return np.asarray(np.log(carried) - log_off)
+        return np.asarray(np.log(state.charge * tried.velocity * state.saturation) - log_off)
 
     n_phi = np.asarray(t.slope_factor * t.thermal_voltage)
     scale = np.asarray(t.inversion_capacitance * n_phi * t.velocity)
