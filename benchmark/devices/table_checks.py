@@ -196,9 +196,10 @@ def _check_values(inputs: ModelInputs, values: Mapping[str, Array]) -> list[Find
     if "drain_capacitance_share" not in values:
         found.append(
             Finding(
-                "note",
+                "warn",
                 "value.drain_capacitance_share",
-                "not stated: no part of the input charge is counted twice (Miller)",
+                "not stated: no coupling between input and output is counted, which favours this switch",
+                hint="state 0 if the input does not couple to the conducting path",
             )
         )
     return found

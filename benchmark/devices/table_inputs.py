@@ -137,17 +137,16 @@ class Charge:
 
 
 def prepare_charge(inputs: ModelInputs, values: Mapping[str, Array]) -> Charge:
-    """Return the input charge of the unit switch; the drain share of it counts twice when stated."""
-    miller = 1.0 + values["drain_capacitance_share"] if "drain_capacitance_share" in values else array(1.0)
+    """Return the input charge of the unit switch as measured."""
     table = inputs.tables.get("charge")
     if table is None:
         constant = values.get("input_capacitance")
         if constant is None:
             constant = values["gate_capacitance_total"] * values["unit_width"]
-        return Charge(constant, array([]), (), miller)
+        return Charge(constant, array([]), (), array(1.0))
     voltage, capacitance = table.columns["control_voltage"], table.columns[table.value]
     temperature = table.columns.get("temperature", np.full(voltage.size, _single(values["reference_temperature"])))
     steps = np.unique(temperature)
     curves = tuple(charge_curve(voltage[temperature == t], capacitance[temperature == t]) for t in steps)
     width = values["unit_width"] if table.value.endswith(PER_WIDTH) else array(1.0)
-    return Charge(None, steps, curves, miller * width)
+    return Charge(None, steps, curves, width)

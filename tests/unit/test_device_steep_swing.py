@@ -71,10 +71,11 @@ def test_currents_resistance_and_charge_by_hand():
     # the 50 % step of a current source: ln 2 R C = C V / (2 I)
     assert LN2 * pair.down.resistance * 1e-15 == pytest.approx(1e-15 * 0.3 / (2.0 * effective), rel=1e-12)
     assert pair.down.switching_level == 0.5
-    capacitance = 0.60e-9 * 200e-9 * 1.8
-    assert pair.down.input_charge == pytest.approx(0.3 * capacitance, rel=1e-12)
-    assert pair.down.input_capacitance_delay == pytest.approx(capacitance, rel=1e-12)
-    assert pair.down.terminal_capacitance == pytest.approx(0.10e-9 * 200e-9, rel=1e-12)
+    gate, coupled = 0.60e-9 * 200e-9, 0.80 * 0.60e-9 * 200e-9
+    assert pair.down.input_charge == pytest.approx(0.3 * (gate + 0.5 * coupled), rel=1e-12)
+    assert pair.down.input_capacitance_delay == pytest.approx(gate + coupled, rel=1e-12)
+    assert pair.down.terminal_capacitance == pytest.approx(0.10e-9 * 200e-9 + 1.5 * coupled, rel=1e-12)
+    assert pair.down.terminal_capacitance_delay == pytest.approx(0.10e-9 * 200e-9 + 2.0 * coupled, rel=1e-12)
 
 
 def test_current_law_is_the_blend_times_the_drain_factor():

@@ -219,8 +219,13 @@ def test_rows_at_the_floor_are_marked_upper_bounds():
     assert clean.down.intermediates["off-current is an upper bound"][0] == 0.0
 
 
-def test_drain_share_counts_twice_and_constant_capacitance_is_accepted():
-    assert pair_of(inputs(drain_capacitance_share=0.5)).down.input_charge == pytest.approx(0.3 * 1.5e-15, rel=1e-12)
+def test_drain_share_counts_at_input_and_output_and_constant_capacitance_is_accepted():
+    coupled = pair_of(inputs(drain_capacitance_share=0.5)).down
+    assert coupled.input_charge == pytest.approx(0.3 * 1.25e-15, rel=1e-12)
+    assert coupled.input_capacitance_delay == pytest.approx(1.5e-15, rel=1e-12)
+    assert coupled.terminal_capacitance == pytest.approx(0.1e-15 + 0.75e-15, rel=1e-12)
+    assert coupled.terminal_capacitance_delay == pytest.approx(0.1e-15 + 1.0e-15, rel=1e-12)
+    assert any("favours this switch" in f.what for f in MODEL.check(inputs()) if f.level == "warn")
     absolute = inputs(drop=("gate_capacitance_total",), input_capacitance=2e-15)
     assert pair_of(absolute).down.input_charge == pytest.approx(0.6e-15, rel=1e-12)
 
