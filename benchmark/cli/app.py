@@ -6,6 +6,7 @@ Exit status: 0 done, 1 internal fault, 2 wrong usage, 3 input refused; with ``--
 
 from __future__ import annotations
 
+import io
 import os
 import sys
 from pathlib import Path
@@ -49,6 +50,9 @@ def main() -> None:
     """Run the command line and turn errors into messages and exit status."""
     if "NO_COLOR" in os.environ:
         os.environ.pop("FORCE_COLOR", None)
+    for stream in (sys.stdout, sys.stderr):
+        if isinstance(stream, io.TextIOWrapper):
+            stream.reconfigure(errors="backslashreplace")  # a terminal without Unicode is no reason to stop
     try:
         app(standalone_mode=True)
     except InputRefused as error:
@@ -69,10 +73,12 @@ def main() -> None:
 
 
 def _refuse(error: InputRefused) -> None:
+    from benchmark.cli.layout import printable
+
     shown = error.problems[:MOST_PROBLEMS]
     print(f"evenload: input refused, {len(error.problems)} problem(s); nothing was run", file=sys.stderr)  # noqa: T201
     for problem in shown:
-        print(f"  {problem}", file=sys.stderr)  # noqa: T201
+        print(f"  {printable(str(problem))}", file=sys.stderr)  # noqa: T201
     if len(error.problems) > len(shown):
         print(f"  ... and {len(error.problems) - len(shown)} more", file=sys.stderr)  # noqa: T201
 
@@ -153,11 +159,15 @@ def check(
 @app.command()
 def show(
     what: Annotated[
-        str, typer.Argument(help="technologies, wires, circuits, models, values, sources, or a name of one of these.")
+        str,
+        typer.Argument(
+            help="A list: technologies, wires, circuits, models, values, sources, requirements, evidence, classes; "
+            "or one name of these, or TECHNOLOGY.VALUE."
+        ),
     ] = "technologies",
     nodes: Nodes = None,
 ) -> None:
-    """Show what there is: technologies, values, circuits, models, or the provenance of one of them."""
+    """Show what there is, or everything about one name, with sources."""
     from benchmark.cli.show import show_command
 
     show_command(what, nodes or [])

@@ -10,7 +10,7 @@ import typer
 
 from benchmark.errors import UsageError
 
-__all__ = ["check_command", "run_command"]
+__all__ = ["check_command", "check_folders", "run_command"]
 
 
 class _Steps:
@@ -42,7 +42,7 @@ def run_command(
     from benchmark.record.write import write_folder
     from benchmark.report.folder import fill_folder
 
-    _folders(nodes)
+    check_folders(nodes)
     study, library = load_study(study_path, nodes, overrides)
     folder = out or Path(f"evenload-{study.id}")
     record = run_study(study, library, created=freeze_time or None, progress=_Steps(quiet))
@@ -56,7 +56,8 @@ def run_command(
     return str(record["verdict"]["word"])
 
 
-def _folders(nodes: Sequence[Path]) -> None:
+def check_folders(nodes: Sequence[Path]) -> None:
+    """Refuse --nodes that are no folders."""
     for folder in nodes:
         if not folder.is_dir():
             message = f"--nodes: {folder} is not a folder"
@@ -68,7 +69,7 @@ def check_command(paths: Sequence[Path], nodes: Sequence[Path]) -> None:
     from benchmark.errors import InputRefused
     from benchmark.record.check import check_paths
 
-    _folders(nodes)
+    check_folders(nodes)
     result = check_paths(paths, nodes)
     for warning in result.warnings:
         typer.echo(f"warning: {warning}", err=True)

@@ -87,18 +87,19 @@ def _predict(anchor_name: str, pair: SwitchPair, supply: float, width: float) ->
 def anchor_results(technology: ParameterSet) -> list[AnchorResult]:
     """Evaluate every anchor of a set, and the calibration targets it was solved for."""
     results: list[AnchorResult] = []
-    listed: list[Anchor] = list(technology.anchors)
-    fitted = model(technology.model).calibrated_on
+    # an anchor is predicted even when it bears the name of a calibration target: the set did not solve for it
+    listed: list[tuple[Anchor, bool]] = [(anchor, False) for anchor in technology.anchors]
     for node in technology.nodes:
         values = technology.at(node)
-        for name in fitted:
+        for name in model(technology.model).calibrated_on:
             value = values.get(name)
             if value is not None:
                 si = float(value.si[0])
-                listed.append(
-                    Anchor(name, node, si, si, si, value.unit, None, value.source, value.where, value.conditions, "")
+                target = Anchor(
+                    name, node, si, si, si, value.unit, None, value.source, value.where, value.conditions, ""
                 )
-    for anchor in listed:
+                listed.append((target, True))
+    for anchor, fitted in listed:
         pair, supply = _pair(technology, anchor.node, anchor.supply)
         width_value = technology.at(anchor.node).get("unit_width")
         width = float(width_value.si[0]) if width_value is not None else 1.0
@@ -115,7 +116,7 @@ def anchor_results(technology: ParameterSet) -> list[AnchorResult]:
                 predicted / anchor.si - 1.0,
                 anchor.unit,
                 supply,
-                anchor.name in fitted,
+                fitted,
                 anchor.source,
                 anchor.where,
                 anchor.conditions,

@@ -1,0 +1,156 @@
+"""The lists of the command ``show`` (layer 10)."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from typing import Any
+
+from benchmark.catalogue import EVIDENCE, PRODUCT_CLASSES, QUANTITIES
+from benchmark.circuits.library import BUILT_IN
+from benchmark.cli.describe import SUPPORT
+from benchmark.cli.layout import Block, Note, Table
+from benchmark.devices import MODEL_NAMES, model
+from benchmark.sets.files import TomlFile, read_toml
+from benchmark.sets.library import Library
+from benchmark.sets.problems import Collector
+from benchmark.sets.study import REQUIREMENTS
+
+__all__ = ["FOLDERS", "LISTS", "files_of", "length_words"]
+
+FOLDERS = {"technology": "technologies", "wires": "wires", "circuit": "circuits"}
+
+
+def _kind(data: dict[str, Any]) -> str:
+    if "workload" in data or "contender" in data:
+        return "study"
+    if "net" in data:
+        return "circuit"
+    return "wires" if data.get("kind") == "wires" else "technology"
+
+
+def files_of(library: Library, kind: str) -> dict[str, TomlFile | None]:
+    """Every file of a kind by id; the nearest folder wins. None: the file is not TOML."""
+    found: dict[str, TomlFile | None] = {}
+    for path in library.paths(FOLDERS[kind]):
+        if path.name == "sources.toml" or path.stem in found:
+            continue
+        file = read_toml(path, Collector(), library.shown(path))
+        if file is None and path.parent.name != FOLDERS[kind]:
+            continue
+        if file is None or _kind(file.data) == kind:
+            found[path.stem] = file
+    return dict(sorted(found.items()))
+
+
+def _words(value: Any) -> str:
+    return ", ".join(str(item) for item in value) if isinstance(value, list) else str(value)
+
+
+def _list_files(library: Library, kind: str, keys: Sequence[str]) -> list[tuple[str, ...]]:
+    rows = []
+    for name, file in files_of(library, kind).items():
+        if file is None:
+            rows.append((name, "not readable: evenload check says why", *("" for _ in keys[1:])))
+        else:
+            rows.append((name, *(_words(file.data.get(key, "-")) for key in keys)))
+    return rows
+
+
+def _technologies(library: Library) -> list[Block]:
+    keys = ("title", "model", "nodes", "flavour", "ambition")
+    rows = [(*row[:-1], "today" if row[-1] == "-" else row[-1]) for row in _list_files(library, "technology", keys)]
+    return [Table("Technologies", ("id", *keys), rows), Note("evenload show ID: all its values and their sources.")]
+
+
+def _wires(library: Library) -> list[Block]:
+    return [Table("Wires", ("id", "title", "nodes"), _list_files(library, "wires", ("title", "nodes")))]
+
+
+def length_words(length: str) -> str:
+    """Say how a circuit takes its net length."""
+    lengths = "average_net_length or average_net_pitches"
+    return {"required": f"one of {lengths}", "optional": f"at most one of {lengths}", "none": ""}[length]
+
+
+def _circuits(library: Library) -> list[Block]:
+    built_in = [
+        (
+            name,
+            which.title,
+            which.operation,
+            ", ".join(which.required),
+            ", ".join(text for text in (*which.optional, length_words(which.length)) if text),
+        )
+        for name, which in BUILT_IN.items()
+    ]
+    blocks: list[Block] = [
+        Table(
+            "Built-in circuits",
+            ("name", "title", "one operation", "scenario values it needs", "and may use"),
+            built_in,
+        )
+    ]
+    files = _list_files(library, "circuit", ("title", "operation"))
+    if files:
+        blocks.append(Table("Circuit files", ("id", "title", "one operation"), files))
+    return blocks
+
+
+def _models(library: Library) -> list[Block]:
+    rows = [
+        (
+            name,
+            model(name).title,
+            str(len(model(name).inputs)),
+            ", ".join(option.name for option in model(name).options) or "-",
+            ", ".join(model(name).tables) or "-",
+        )
+        for name in MODEL_NAMES
+    ]
+    return [
+        Table("Device models", ("name", "title", "inputs", "options", "tables"), rows),
+        Note("evenload show NAME: its inputs, options and references."),
+    ]
+
+
+def _values(library: Library) -> list[Block]:
+    rows = [
+        (name, item.symbol, item.meaning, item.unit, f"{item.low:g} to {item.high:g}", item.domain_text)
+        for name, item in sorted(QUANTITIES.items())
+    ]
+    return [Table("Value names", ("name", "symbol", "meaning", "unit", "usual range", "allowed"), rows)]
+
+
+def _sources(library: Library) -> list[Block]:
+    rows = [(key, item.kind, item.read, item.citation) for key, item in sorted(library.sources.items())]
+    return [Table("Sources", ("key", "kind", "read", "citation"), rows)]
+
+
+def _requirements(library: Library) -> list[Block]:
+    rows = [(name, unit, meaning) for name, (unit, meaning) in REQUIREMENTS.items()]
+    return [Table("Requirements", ("name", "unit of the limit", "demands"), rows)]
+
+
+def _evidence(library: Library) -> list[Block]:
+    rows = [
+        (item.name, item.meaning, SUPPORT[item.support], ", ".join(item.must_state) or "-")
+        for item in EVIDENCE.values()
+    ]
+    return [Table("Evidence classes", ("name", "meaning", "a decisive value of this class", "must state"), rows)]
+
+
+def _classes(library: Library) -> list[Block]:
+    return [Table("Product classes", ("name", "what usually decides (from memory)"), list(PRODUCT_CLASSES.items()))]
+
+
+LISTS: dict[str, Callable[[Library], list[Block]]] = {
+    "technologies": _technologies,
+    "wires": _wires,
+    "circuits": _circuits,
+    "models": _models,
+    "values": _values,
+    "sources": _sources,
+    "requirements": _requirements,
+    "evidence": _evidence,
+    "classes": _classes,
+}
