@@ -10,6 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from scipy.interpolate import PchipInterpolator
 
+from benchmark.devices import model
 from benchmark.devices.model import ModelInputs
 from benchmark.devices.record import SwitchPair
 from benchmark.devices.table import MODEL
@@ -17,6 +18,7 @@ from benchmark.measured import MeasuredTable
 from benchmark.physics.interpolation import charge_curve, curve, hermite_across, inverse_temperature_weights
 from tests.unit.test_device_steep_swing import inputs as steep_inputs
 from tests.unit.test_device_steep_swing import pair_of as steep_pair
+from tests.unit.test_direct_sets import inputs_of, load
 
 SETTINGS = settings(deadline=None, max_examples=80)
 ROOM = 298.15
@@ -171,10 +173,24 @@ def test_a_table_of_the_steep_swing_model_is_the_model():
     assert_converges(lambda supply: steep_pair(steep_inputs(), supply), 0.5, SUPPLIES, 2e-4)
 
 
+def test_a_table_of_the_virtual_source_model_is_the_model():
+    loaded, _ = load("open-7nm-regular")
+    given_inputs = inputs_of(loaded, "n7")
+    values = {name: value.reshape(()) for name, value in given_inputs.values.items()}
+    device = model("virtual-source")
+    prepared = device.prepare(ModelInputs({**values, "series_switches_max": np.asarray(1.0)}, given_inputs.options, {}))
+
+    def source(supply) -> SwitchPair:
+        knobs = {"threshold_shift": np.zeros(())}
+        return device.switch(prepared, np.asarray(supply, float), np.asarray(ROOM), knobs)
+
+    assert_converges(source, 0.7, np.array([0.16, 0.24, 0.33, 0.41, 0.52, 0.63, 0.69]), 2e-5)
+
+
 def test_on_grid_points_a_table_of_the_model_is_exact():
     supply = np.array([0.1, 0.2, 0.3, 0.4, 0.5])
     got = table_pair(table_of(steep_pair(steep_inputs(), 0.5), 0.5, 11, 10), supply)
-    model = steep_pair(steep_inputs(), supply)
+    source = steep_pair(steep_inputs(), supply)
     for name in COMPARED:
-        assert getattr(got.down, name) == pytest.approx(getattr(model.down, name), rel=1e-12), name
+        assert getattr(got.down, name) == pytest.approx(getattr(source.down, name), rel=1e-12), name
     assert math.isclose(float(got.down.switching_level[0]), 0.5)
