@@ -6,6 +6,8 @@ import math
 
 import numpy as np
 import pytest
+from hypothesis import given, settings
+from hypothesis import strategies as st
 
 from benchmark.devices.given import MODEL, STATED_ONLY
 from benchmark.devices.model import ModelInputs
@@ -31,9 +33,9 @@ def inputs(options: dict[str, str] | None = None, drop: tuple[str, ...] = (), **
     return ModelInputs({name: np.asarray(value, dtype=float) for name, value in merged.items()}, options or {}, {})
 
 
-def pair_of(given: ModelInputs, supply: object = 0.5, temperature: object = 298.15):
+def pair_of(stated: ModelInputs, supply: object = 0.5, temperature: object = 298.15):
     zero = {"threshold_shift": np.zeros(())}
-    return MODEL.switch(MODEL.prepare(given), np.asarray(supply, float), np.asarray(temperature, float), zero)
+    return MODEL.switch(MODEL.prepare(stated), np.asarray(supply, float), np.asarray(temperature, float), zero)
 
 
 def test_contract_holds_for_every_option():
@@ -45,10 +47,10 @@ def test_contract_holds_for_every_option():
         ("current", ("off_resistance",), {"open_state_current": 1e-12}),
         ("none", ("off_resistance",), {}),
     ):
-        given = inputs(
+        stated = inputs(
             {"off_state": off_state, "supply_dependence": "constant-resistance"}, drop, on_resistance=draws, **more
         )
-        check_pair(pair_of(given, supply, temperature))
+        check_pair(pair_of(stated, supply, temperature))
 
 
 def test_off_resistance_leaks_through_the_series_of_open_and_closed():
@@ -62,8 +64,8 @@ def test_off_resistance_leaks_through_the_series_of_open_and_closed():
 
 def test_off_current_holds_at_the_declared_supply_and_follows_the_supply_ohmically():
     options = {"off_state": "current", "supply_dependence": "constant-resistance"}
-    given = inputs(options, ("off_resistance",), open_state_current=1e-10)
-    pair = pair_of(given, [0.5, 1.0])
+    stated = inputs(options, ("off_resistance",), open_state_current=1e-10)
+    pair = pair_of(stated, [0.5, 1.0])
     assert pair.down.off_current_path == pytest.approx([1e-10, 2e-10], rel=1e-14)
 
 
@@ -92,8 +94,8 @@ def test_a_fixed_point_refuses_other_supplies_and_tolerates_rounding():
 
 
 def test_stated_closing_voltage_does_not_move_with_the_supply():
-    given = inputs({"supply_dependence": "constant-resistance"}, closing_voltage=0.35, opening_voltage=0.30)
-    pair = pair_of(given, [0.3, 0.5, 0.7])
+    stated = inputs({"supply_dependence": "constant-resistance"}, closing_voltage=0.35, opening_voltage=0.30)
+    pair = pair_of(stated, [0.3, 0.5, 0.7])
     assert pair.down.switching_level == pytest.approx([np.nan, 0.7, 0.5], nan_ok=True)
     assert pair.down.outside["supply does not exceed the closing voltage"].tolist() == [True, False, False]
     assert pair.down.closing_voltage == 0.35
@@ -175,10 +177,42 @@ HUB = {
 def test_hub_by_hand(side: str, slope: float, rest: float):
     options, values = HUB[side]
     drop = ("off_resistance", "terminal_capacitance")
-    given = inputs(options, drop, on_resistance=1e4, switching_level=0.5, **values)
+    stated = inputs(options, drop, on_resistance=1e4, switching_level=0.5, **values)
     supply = values["declared_supply"]
-    pair = pair_of(given, supply)
+    pair = pair_of(stated, supply)
     switched = supply * (pair.down.input_charge + pair.up.input_charge)
     leaked = supply * 0.5 * (pair.down.off_current_path + pair.up.off_current_path) * 10e-6
     assert switched * 1e15 == pytest.approx(slope, rel=1e-12)
     assert leaked * 1e15 == pytest.approx(rest, rel=1e-12, abs=0.0)
+
+
+@settings(deadline=None, max_examples=60)
+@given(k=st.floats(0.1, 10.0), level=st.floats(0.2, 0.95))
+def test_impedance_times_k_leaves_products_and_divides_currents(k: float, level: float):
+    one = pair_of(inputs(switching_level=level)).down
+    scaled = pair_of(
+        inputs(
+            switching_level=level,
+            on_resistance=144e3 * k,
+            off_resistance=2e12 * k,
+            input_capacitance=0.5e-15 / k,
+            terminal_capacitance=0.05e-15 / k,
+        )
+    ).down
+    for name in ("input_capacitance_delay", "terminal_capacitance_delay"):
+        product = scaled.resistance * getattr(scaled, name)
+        assert product == pytest.approx(float(one.resistance * getattr(one, name)), rel=1e-9)
+    control, path = np.linspace(0.0, 0.5, 11), np.full(11, 0.5)
+    assert scaled.current(control, path) * k == pytest.approx(one.current(control, path), rel=1e-9)
+    assert scaled.off_current_path * k == pytest.approx(float(one.off_current_path), rel=1e-9)
+
+
+@settings(deadline=None, max_examples=60)
+@given(k=st.floats(0.2, 5.0))
+def test_supply_times_k_at_fixed_resistance(k: float):
+    constant = inputs({"supply_dependence": "constant-resistance"})
+    one, scaled = pair_of(constant, 0.5).down, pair_of(constant, 0.5 * k).down
+    assert scaled.resistance == one.resistance
+    assert scaled.switching_level == one.switching_level
+    assert scaled.input_charge * k * 0.5 == pytest.approx(float(one.input_charge) * 0.5 * k**2, rel=1e-9)
+    assert scaled.off_current_path * k * 0.5 == pytest.approx(float(one.off_current_path) * 0.5 * k**2, rel=1e-9)
