@@ -9,14 +9,13 @@ gives 1 without drain-induced barrier lowering where the balance gives 1.75.
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import NamedTuple
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 __all__ = [
     "Balance",
-    "ohmic_leakage",
     "series_balance",
     "subthreshold_current",
     "two_stack_reduction",
@@ -37,16 +36,12 @@ LONGEST = 1.5
 BALANCED = 3.0e-6
 
 
-class Balance(NamedTuple):
+@dataclass(frozen=True)
+class Balance:
     """Current through the stack [A] and voltage across each device [V], rail side first (trailing axis k)."""
 
     current: Array
     across: Array
-
-
-def ohmic_leakage(count: Number) -> Number:
-    """Return the leakage of ``count`` open ohmic switches in series relative to one: 1/count [1] (Ohm's law)."""
-    return 1.0 / count
 
 
 def two_stack_reduction(barrier_lowering: Number, swing: Number, supply: Number) -> Number:

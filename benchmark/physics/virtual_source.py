@@ -24,7 +24,6 @@ The last line holds I on both sides: it is solved by Newton steps inside a brack
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from typing import NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
@@ -88,7 +87,8 @@ class Transistor:
     body_potential: Number = 1.2
 
 
-class Channel(NamedTuple):
+@dataclass(frozen=True)
+class Channel:
     """State at the virtual source: charge Q [C/m^2], F_s [1], V_dsat [V], F_f [1]."""
 
     charge: Array
@@ -97,7 +97,8 @@ class Channel(NamedTuple):
     fermi: Array
 
 
-class Slopes(NamedTuple):
+@dataclass(frozen=True)
+class Slopes:
     """Current I [A] and its derivatives by gate and drain voltage [S] (source and body fixed)."""
 
     current: Array
@@ -105,7 +106,8 @@ class Slopes(NamedTuple):
     by_path: Array
 
 
-class _Inner(NamedTuple):
+@dataclass(frozen=True)
+class _Inner:
     """Current and its derivatives by the internal voltages and by the external gate voltage."""
 
     current: Array
