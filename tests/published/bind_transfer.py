@@ -2,13 +2,18 @@
 
 from __future__ import annotations
 
+import math
+from typing import Any
+
 import numpy as np
 
-from benchmark.circuits import chain_rule, functional, transfer
+from benchmark.circuits import chain_rule, functional, integral, transfer, transient
 from benchmark.devices.record import Array
-from benchmark.physics import noise, regeneration
+from benchmark.physics import noise, regeneration, two_pole, virtual_source
 from tests.factories import ohmic_pair
 from tests.published.rows import Binding
+from tests.soft_window import C_NODE, RC, soft_pair
+from tests.soft_window import two_pole as two_pole_fields
 
 NOISE = "benchmark.physics.noise:"
 REGENERATION = "benchmark.physics.regeneration:"
@@ -125,4 +130,115 @@ _CHAIN_RULE_ROWS = [
     for number, level in _SWITCHING_LEVELS.items()
 ]
 
-BINDINGS: list[Binding] = [*_NOISE_ROWS, *_REGENERATION_ROWS, *_CHAIN_RULE_ROWS]
+NODE = transient.ChainLoad(C_NODE)
+
+_WINDOWS = {"A": (0.0, 1.0), "B": (0.2, 0.8), "C": (0.35, 0.65), "D": (0.1, 0.5), "E": (0.5, 0.9)}
+#: decades and window of the rows of the chain in transport, by row number
+_CHAINS = {
+    3: ("A", 6),
+    5: ("B", 2),
+    6: ("B", 4),
+    8: ("B", 8),
+    9: ("C", 2),
+    10: ("C", 4),
+    13: ("D", 2),
+    15: ("D", 6),
+    16: ("D", 8),
+    17: ("E", 2),
+    19: ("E", 6),
+    20: ("E", 8),
+}
+
+
+def _chain(window: str, decades: float) -> float:
+    """Stage delay minus the transport of one R C, in R C."""
+    pair = soft_pair(decades, *_WINDOWS[window], closing_time=RC, opening_time=RC)
+    return transient.chain_transient(pair, NODE).delay / RC - 1.0
+
+
+def _integral(quality: float, ratio: float, decades: float) -> float:
+    """Step-driven delay in R C with a two-pole actuator of w0 = pi/(2 tau), tau = ratio R C, window 0.35..0.65."""
+    pair = soft_pair(decades, 0.35, 0.65, **two_pole_fields(ratio, quality))
+    return float(integral.integral_delay(pair.down, pair.supply, np.asarray(C_NODE), drive="step")) / RC
+
+
+def _transistor(threshold: float, velocity: float, mobility: float) -> virtual_source.Transistor:
+    """32-nm targets, own calibration, 1 um wide."""
+    return virtual_source.Transistor(
+        width=1e-6,
+        length=23e-9,
+        inversion_capacitance=2.57e-2,
+        source_resistance=75e-6,
+        drain_resistance=75e-6,
+        velocity=velocity,
+        mobility=mobility,
+        threshold=threshold,
+        slope_factor=1.4,
+        barrier_lowering=0.12,
+        fermi_width=3.5,
+        saturation_exponent=1.8,
+        thermal_voltage=virtual_source.thermal_voltage(300.0),
+    )
+
+
+def _transistor_chain(supply: float) -> float:
+    """Delay of a chain of equally wide n and p transistors with 3 fF at every node [s]."""
+
+    def fields(t: virtual_source.Transistor) -> dict[str, Any]:
+        high = virtual_source.drain_current(t, np.asarray(supply), np.asarray(0.5 * supply))
+        low = virtual_source.drain_current(t, np.asarray(0.5 * supply), np.asarray(supply))
+        drive = virtual_source.effective_current(high, low)
+        return {
+            "current": lambda control, path: virtual_source.drain_current(t, control, path),
+            "resistance": np.asarray(supply / (2.0 * math.log(2.0) * drive)),
+        }
+
+    pair = ohmic_pair(
+        supply=supply,
+        **fields(_transistor(0.45338, 9.7726e4, 0.0200)),
+        up=fields(_transistor(0.43609, 6.1852e4, 0.0165)),
+    )
+    return transient.chain_transient(pair, transient.ChainLoad(3e-15)).delay
+
+
+_TRANSIENT_ROWS = [
+    *(
+        Binding(
+            f"dev.C1-chain.{number}",
+            ("benchmark.circuits.transient:chain_transient",),
+            lambda window=window, decades=decades: _chain(window, decades),
+        )
+        for number, (window, decades) in _CHAINS.items()
+    ),
+    *(
+        Binding(
+            "dev.C5-integral" + suffix,
+            ("benchmark.circuits.integral:integral_delay",),
+            lambda quality=quality, ratio=ratio, decades=decades: _integral(quality, ratio, decades),
+        )
+        for suffix, quality, ratio, decades in (
+            ("", 0.5, 10, 4),
+            (".2", 1, 10, 4),
+            (".3", 3, 10, 4),
+            (".4", 10, 100, 6),
+        )
+    ),
+    *(
+        Binding(
+            "dev.C3-mech" + suffix,
+            ("benchmark.physics.two_pole:time_to_level",),
+            lambda quality=quality: two_pole.time_to_level(0.6, 0.5 * math.pi, quality),
+        )
+        for suffix, quality in (("", 0.5), (".3", 3.0), (".4", 10.0))
+    ),
+    *(
+        Binding(
+            "dev.M3-delay" + suffix,
+            ("benchmark.circuits.transient:chain_transient",),
+            lambda supply=supply: _transistor_chain(supply),
+        )
+        for suffix, supply in (("", 1.0), (".3", 0.8), (".5", 0.6), (".7", 0.5))
+    ),
+]
+
+BINDINGS: list[Binding] = [*_NOISE_ROWS, *_REGENERATION_ROWS, *_CHAIN_RULE_ROWS, *_TRANSIENT_ROWS]
