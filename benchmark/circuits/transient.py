@@ -23,25 +23,21 @@ from __future__ import annotations
 
 import dataclasses
 import math
-from bisect import bisect_right
-from collections.abc import Callable
 from dataclasses import dataclass
 from typing import Literal
 
 import numpy as np
-from scipy.integrate import solve_ivp
-from scipy.interpolate import CubicSpline
 from scipy.special import expit
 
 from benchmark.circuits.balance import gate_balance, record_shape
-from benchmark.circuits.law_table import ScalarLaw, scalar_law
+from benchmark.circuits.law_table import scalar_law
+from benchmark.circuits.stage_equations import StageEquations, actor_of, response_time, solve_stage
+from benchmark.circuits.waveform import Edges, Signal, Waveform, edge_times
 from benchmark.devices.record import Array, Switch, SwitchPair
 from benchmark.errors import UsageError
 
 __all__ = ["ChainLoad", "ChainResult", "chain_transient", "headline_difference"]
 
-_RTOL = 1e-8
-_ATOL = 1e-10
 #: of the supply: a chain that keeps less swing than this has no edges to time
 _LEAST_SWING = 0.01
 
@@ -114,197 +110,8 @@ class ChainResult:
         return self.energy - self.leakage_energy
 
 
-class _Waveform:
-    """A signal as a fraction of the supply over scaled time: constant before and after its cubic pieces."""
-
-    def __init__(self, time: Array, value: Array) -> None:
-        slope = CubicSpline(time, value).derivative()(time)
-        self.time: list[float] = time.tolist()
-        self.value: list[float] = value.tolist()
-        self.slope: list[float] = slope.tolist()
-
-    def __call__(self, t: float) -> float:
-        if t <= self.time[0]:
-            return self.value[0]
-        if t >= self.time[-1]:
-            return self.value[-1]
-        i = bisect_right(self.time, t) - 1
-        h = self.time[i + 1] - self.time[i]
-        s = (t - self.time[i]) / h
-        a, b = self.value[i], self.value[i + 1]
-        rest = 1.0 - s
-        bend = h * s * rest * (rest * self.slope[i] - s * self.slope[i + 1])
-        return a + s * s * (3.0 - 2.0 * s) * (b - a) + bend
-
-    def crossings(self) -> list[float]:
-        """Return the times of passing 1/2."""
-        found = []
-        for i in range(len(self.time) - 1):
-            a, b = self.value[i] - 0.5, self.value[i + 1] - 0.5
-            if (a < 0.0) == (b < 0.0):
-                continue
-            low, high = self.time[i], self.time[i + 1]
-            for _ in range(50):
-                middle = 0.5 * (low + high)
-                if (self(middle) < 0.5) == (a < 0.0):
-                    low = middle
-                else:
-                    high = middle
-            found.append(0.5 * (low + high))
-        return found
-
-
-@dataclass(frozen=True)
-class _Edges:
-    """Times of the two edges of a signal in one period, scaled, and the number of other crossings of 1/2."""
-
-    first: float
-    second: float
-    false: int
-
-
-_Signal = Callable[[float], float]
-
-
-def _transported(signal: _Signal, closing: float, opening: float) -> _Signal:
-    """Return the control that follows ``signal`` late by ``closing`` while it rises and by ``opening`` while it falls.
-
-    The later of the two copies on each edge: the smaller value where closing is the slower one, else the larger.
-    """
-    if closing == opening:
-        return lambda t: signal(t - closing)
-    pick = min if closing > opening else max
-    return lambda t: pick(signal(t - closing), signal(t - opening))
-
-
-@dataclass(frozen=True)
-class _Actor:
-    """One switch of the scaled problem: law [in units of V/R], transport or two-pole actuator."""
-
-    law: Callable[[float, float], float]
-    closing: float
-    opening: float
-    frequency: float  # nan: pure transport
-    quality: float
-
-    @property
-    def two_pole(self) -> bool:
-        return math.isfinite(self.frequency)
-
-
-def _actor(switch: Switch, law: ScalarLaw, unit: float, time: float) -> _Actor:
-    frequency = float(switch.natural_frequency)
-    current = law.current
-    return _Actor(
-        law=lambda level, path: current(min(max(level, 0.0), 1.0), path) * unit,
-        closing=float(switch.closing_time) / time,
-        opening=float(switch.opening_time) / time,
-        frequency=frequency * time,
-        quality=float(switch.quality),
-    )
-
-
-def _response_time(actor: _Actor) -> tuple[float, float]:
-    """Return a generous response time of the actuator and the time its ringing takes to die, scaled."""
-    if not actor.two_pole:
-        return max(actor.closing, actor.opening), 0.0
-    q = actor.quality
-    return (3.0 + 3.0 / q) / actor.frequency, 14.0 * (2.0 * q + 1.0 / q) / actor.frequency
-
-
-@dataclass(frozen=True)
-class _Problem:
-    """The chain in scaled units: time in R C, voltage in V, current in V/R."""
-
-    down: _Actor
-    up: _Actor
-    capacitance: list[float]  # of the nodes, in the total
-    conductance: float  # between neighbours, in 1/R
-    half: float  # half the period
-
-    def equations(self, signal: _Signal) -> Callable[[float, Array], list[float]]:
-        """Return the right-hand side; order of the states: nodes, energy, actuators of the two switches."""
-        n = len(self.capacitance)
-        input_down = _transported(signal, self.down.closing, self.down.opening)
-        raised: _Signal = lambda t: 1.0 - signal(t)  # noqa: E731
-        input_up = _transported(raised, self.up.closing, self.up.opening)
-        law_down, law_up = self.down.law, self.up.law
-        up_at = n + 1 + (2 if self.down.two_pole else 0)
-
-        def rates(t: float, y: Array) -> list[float]:
-            state = y.tolist()
-            v = state[0]
-            out: list[float] = []
-            tail: list[float] = []
-            if self.down.two_pole:
-                control_down = state[n + 1]
-                tail += _two_pole(self.down, signal(t), control_down, state[n + 2])
-            else:
-                control_down = input_down(t)
-            if self.up.two_pole:
-                control_up = state[up_at]
-                tail += _two_pole(self.up, raised(t), control_up, state[up_at + 1])
-            else:
-                control_up = input_up(t)
-            drawn = law_up(control_up, 1.0 - v)
-            flow = drawn - law_down(control_down, v)
-            for k in range(n - 1):
-                onward = self.conductance * (state[k] - state[k + 1])
-                out.append((flow - onward) / self.capacitance[k])
-                flow = onward
-            out.append(flow / self.capacitance[n - 1])
-            out.append(drawn)
-            return out + tail
-
-        return rates
-
-
-def _two_pole(actor: _Actor, target: float, position: float, speed: float) -> list[float]:
-    w = actor.frequency
-    return [speed, w * (w * (target - position) - speed / actor.quality)]
-
-
-@dataclass(frozen=True)
-class _Run:
-    """Waveform at the far node of one stage and the energy it drew in C V^2."""
-
-    far: _Waveform
-    drawn: float
-
-
-def _solve_stage(problem: _Problem, signal: _Signal, low: float, high: float) -> _Run:
-    """Solve one stage over a full period from its settled state (output ``high`` if the input starts low)."""
-    rates = problem.equations(signal)
-    n = len(problem.capacitance)
-    begin = signal(-math.inf)
-    first = [high if begin < 0.5 else low] * n + [0.0]
-    if problem.down.two_pole:
-        first += [begin, 0.0]
-    if problem.up.two_pole:
-        first += [1.0 - begin, 0.0]
-    end = 2.0 * problem.half
-    # a step is at most a tenth of a half-period: no edge can be stepped over
-    solution = solve_ivp(
-        rates,
-        (0.0, end),
-        first,
-        method="LSODA",
-        rtol=_RTOL,
-        atol=_ATOL,
-        dense_output=True,
-        max_step=0.1 * problem.half,
-    )
-    if not solution.success:
-        message = f"transient of the chain did not finish: {solution.message}"
-        raise UsageError(message)
-    steps = solution.t
-    fine = np.unique(np.concatenate([steps, *(steps[:-1] + f * np.diff(steps) for f in (0.25, 0.5, 0.75))]))
-    values = solution.sol(fine)
-    return _Run(_Waveform(fine, values[n - 1]), float(solution.y[n, -1]))
-
-
 def _static_levels(pair: SwitchPair) -> tuple[float, float, float, float]:
-    """Return the settled low and high output of a long chain [V] over V, and the supply current at each [A]."""
+    """Return the settled low and high output of a long chain over V [1], and the supply current at each [A]."""
     balance = gate_balance(pair, 1, 1)
     level = np.zeros(1)
     high = low = level
@@ -321,14 +128,14 @@ def _static_levels(pair: SwitchPair) -> tuple[float, float, float, float]:
     return float(low[0]), float(high[0]), float(leak_low[0]), float(leak_high[0])
 
 
-def _driving_edge(half: float) -> _Waveform:
+def _driving_edge(half: float) -> Waveform:
     """Return the input of the first stage: exponential edges of one R C, up at 0 and down at half the period."""
     rise = np.linspace(0.0, min(30.0, half), 400) ** 2 / min(30.0, half)
     up = -np.expm1(-rise)
     time = np.concatenate([rise, half + rise])
     value = np.concatenate([up, 1.0 - up])
     keep = np.concatenate([[True], np.diff(time) > 1e-9])
-    return _Waveform(time[keep], value[keep])
+    return Waveform(time[keep], value[keep])
 
 
 def _check(pair: SwitchPair, stages: int) -> None:
@@ -368,19 +175,19 @@ def _flat(pair: SwitchPair) -> SwitchPair:
     )
 
 
-def _scaled(pair: SwitchPair, load: ChainLoad, stages: int) -> tuple[_Problem, float, float]:
+def _scaled(pair: SwitchPair, load: ChainLoad, stages: int) -> tuple[StageEquations, float, float]:
     """Return the scaled problem, its unit of time [s] and the error of the tabulated laws."""
     supply = float(pair.supply)
     resistance = max(float(pair.down.resistance), float(pair.up.resistance))
     time = resistance * load.total
     laws = scalar_law(pair.down, supply), scalar_law(pair.up, supply)
     down, up = (
-        _actor(switch, law, resistance / supply, time) for switch, law in zip((pair.down, pair.up), laws, strict=True)
+        actor_of(switch, law, resistance / supply, time) for switch, law in zip((pair.down, pair.up), laws, strict=True)
     )
-    respond, ring = (max(both) for both in zip(_response_time(down), _response_time(up), strict=True))
+    respond, ring = (max(both) for both in zip(response_time(down), response_time(up), strict=True))
     nodes, between = load.nodes()
     wire = load.wire_resistance / resistance
-    problem = _Problem(
+    problem = StageEquations(
         down=down,
         up=up,
         capacitance=[c / load.total for c in nodes],
@@ -426,17 +233,17 @@ def chain_transient(
     problem, time, table_error = _scaled(pair, load, stages)
     low, high, leak_low, leak_high = _static_levels(pair)
     period = 2.0 * problem.half
-    wave: _Signal
+    wave: Signal
     if drive == "step":
         wave, rounds = (lambda t: 1.0 if 0.0 < t <= problem.half else 0.0), 1
-        edges = [_Edges(0.0, problem.half, 0)]
+        edges = [Edges(0.0, problem.half, 0)]
     else:
         wave, rounds = _driving_edge(problem.half), stages
-        edges = [_edges(wave, problem.half)]
+        edges = [edge_times(wave, problem.half)]
     for _ in range(rounds):
-        run = _solve_stage(problem, wave, low, high)
+        run = solve_stage(problem, wave, low, high)
         wave = run.far
-        edges.append(_edges(run.far, problem.half))
+        edges.append(edge_times(run.far, problem.half))
     source, output = edges[-2:]
     first, second = output.first - source.first, output.second - source.second
     # an odd number of stages turns the rising input of the chain into a falling output
@@ -460,17 +267,6 @@ def chain_transient(
         table_error=table_error,
         period=period * time,
     )
-
-
-def _edges(wave: _Waveform, half: float) -> _Edges:
-    """Return the first crossing of 1/2 in each half of the period; the ringing of the first edge is over by half."""
-    times = wave.crossings()
-    first = next((t for t in times if t < half), None)
-    second = next((t for t in times if t >= half), None)
-    if first is None or second is None:
-        message = "an edge died out on its way through the chain: the switches do not follow"
-        raise UsageError(message)
-    return _Edges(first, second, len(times) - 2)
 
 
 def headline_difference(closed_delay: float, pair: SwitchPair, load: ChainLoad, stages: int = 6) -> float:
