@@ -44,7 +44,9 @@ def check_pair(pair: SwitchPair, tolerance: float = 1e-12) -> None:
     """Shapes, signs and the identities between the current law and the scalar fields."""
     for switch, polarity in ((pair.down, "down"), (pair.up, "up")):
         assert switch.polarity == polarity
-        shape = np.broadcast_shapes(pair.supply.shape, pair.temperature.shape, switch.resistance.shape)
+        shape = np.broadcast_shapes(
+            pair.supply.shape, pair.temperature.shape, *(np.shape(getattr(switch, name)) for name in FIELDS)
+        )
         inside = _inside(switch, shape)
         for name in FIELDS:
             value = getattr(switch, name)
@@ -68,9 +70,7 @@ def _check_current(
 ) -> None:
     supply = np.broadcast_to(pair.supply, shape)[..., None]
     share = np.linspace(0.0, 1.0, 23)
-    current = switch.current(share * supply, supply)
-    assert current.shape == (*shape, share.size)
-    current = current[inside]
+    current = np.broadcast_to(switch.current(share * supply, supply), (*shape, share.size))[inside]
     assert np.isfinite(current).all()
     assert (current >= 0.0).all()
     assert (np.diff(current) >= -1e-12 * current[:, 1:]).all(), "current falls with the control voltage"
@@ -78,7 +78,7 @@ def _check_current(
     off = np.broadcast_to(switch.off_current_path, shape)[inside]
     np.testing.assert_allclose(current[:, -1], on, rtol=tolerance)
     np.testing.assert_allclose(current[:, 0], off, rtol=tolerance)
-    across = switch.current(supply, share * supply)[inside]
+    across = np.broadcast_to(switch.current(supply, share * supply), (*shape, share.size))[inside]
     assert (across[:, 0] == 0.0).all()
     assert (np.diff(across) > 0.0).all(), "current of the closed switch does not rise with the path voltage"
     for mask in switch.outside.values():

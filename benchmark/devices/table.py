@@ -37,6 +37,7 @@ References: F. N. Fritsch and J. Butland, SIAM J. Sci. Stat. Comput. 5, 300 (198
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -89,45 +90,53 @@ def _prepare(inputs: ModelInputs) -> Prepared:
     }
 
 
+@dataclass(frozen=True)
 class _Current:
-    """Path current at given supplies and temperatures; a class so that records can be pickled."""
+    """Path current at given conditions (arrays that broadcast to the shape of the record)."""
 
-    def __init__(
-        self, surfaces: Mapping[str, CurrentSurface], branch: str, width: Array, supply: Array, temperature: Array
-    ) -> None:
-        self._surfaces, self._branch = surfaces, branch
-        self._width, self._supply, self._temperature = width, supply, temperature
+    surfaces: Mapping[str, CurrentSurface]
+    branch: str
+    width: Array
+    saturation_voltage: Array | None
+    supply: Array
+    temperature: Array
 
     def sweep(self, name: str, control: Array, path: Array) -> Array:
         """Return the current of one sweep [A]; the only one there is when the table has no sweeps."""
-        surface = self._surfaces.get(name) or self._surfaces["only"]
-        return np.asarray(surface(control, path, self._temperature) * self._width)
+        surface = self.surfaces.get(name) or self.surfaces["only"]
+        return np.asarray(surface(control, path, self.temperature, self.saturation_voltage) * self.width)
 
     def at(self, control: Array, path: Array) -> Array:
-        """Return the current of the chosen branch [A]; arguments have the shape of the supply."""
-        if "only" in self._surfaces:
+        """Return the current of the chosen branch [A]; arguments broadcast against the conditions."""
+        if "only" in self.surfaces:
             return self.sweep("only", control, path)
-        if self._branch != "pessimistic":
-            return self.sweep(self._branch, control, path)
+        if self.branch != "pessimistic":
+            return self.sweep(self.branch, control, path)
         forward, backward = self.sweep("forward", control, path), self.sweep("backward", control, path)
-        return blended_branches(forward, backward, control / self._supply)
+        return blended_branches(forward, backward, control / self.supply)
 
     def __call__(self, control: Array, path: Array) -> Array:
-        inner = _Current(
-            self._surfaces, self._branch, self._width[..., None], self._supply[..., None], self._temperature[..., None]
+        """Return the current as the record wants it: arguments with one trailing axis more."""
+        wider = replace(
+            self,
+            width=self.width[..., None],
+            saturation_voltage=None if self.saturation_voltage is None else self.saturation_voltage[..., None],
+            supply=self.supply[..., None],
+            temperature=self.temperature[..., None],
         )
-        return inner.at(control, path)
+        return wider.at(control, path)
 
 
 def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mapping[str, Array]) -> SwitchPair:
     values: Mapping[str, Array] = prepared["values"]
     surfaces: Mapping[str, CurrentSurface] = prepared["surfaces"]
     v, kelvin = array(supply), array(temperature)
-    current = _Current(surfaces, prepared["branch"], prepared["width"], v, kelvin)
+    measured = next(iter(surfaces.values())).measured_across
+    scale = None if measured else values["saturation_voltage"]
+    current = _Current(surfaces, prepared["branch"], prepared["width"], scale, v, kelvin)
     charge, charge_outside = prepared["charge"].at(v, kelvin)
     outside = _outside(surfaces, v, kelvin, charge_outside)
     on, off = current.at(v, v), current.at(0.0 * v, v)
-    measured = next(iter(surfaces.values())).measured_across
     if measured:
         resistance = effective_resistance(v, current.at(v, 0.5 * v), current.at(0.5 * v, v))
         level = np.where(off < 0.5 * on, 0.5, np.nan)

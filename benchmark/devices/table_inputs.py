@@ -90,13 +90,11 @@ def prepare_surfaces(
     table = inputs.tables["current"]
     columns = _current_columns(table)
     paths = columns.get("path_voltage")
-    several = paths is not None and np.unique(paths).size > 1
     surfaces = {
         name: current_surface(
             {column: data[rows] for column, data in columns.items()},
             None if paths is not None else _single(values["declared_supply"]),
             _single(values["reference_temperature"]),
-            None if several else values["saturation_voltage"],
         )
         for name, rows in sweep_rows(table).items()
     }

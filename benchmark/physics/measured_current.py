@@ -33,14 +33,14 @@ class CurrentSurface:
     """One sweep direction; build it with `current_surface`.
 
     temperatures [K] and path_voltages [V] rise; ``curves[i][j]`` is the current [A, or A/m per width] against the
-    control voltage at temperature i and path voltage j. With one path voltage ``saturation_voltage`` [V] says how the
-    current falls towards 0 V across the path: I(V_path) / I(measured) = f(V_path) / f(measured), f = 1 - exp(-V/V_sat).
+    control voltage at temperature i and path voltage j. With one path voltage the caller's saturation voltage says how
+    the current falls towards 0 V across the path: I(V_path) / I(measured) = f(V_path) / f(measured),
+    f = 1 - exp(-V/V_sat).
     """
 
     temperatures: Array
     path_voltages: Array
     curves: tuple[tuple[Curve, ...], ...]
-    saturation_voltage: Array | None
 
     @property
     def control_low(self) -> float:
@@ -71,8 +71,13 @@ class CurrentSurface:
         known = self.control_high if self.control_low <= 0.0 else -np.inf
         return outside(voltage, 0.0, min(known, self.path_high))
 
-    def __call__(self, control: Array, path: Array, temperature: Array) -> Array:
-        """Return the path current; control and path in V (path 0 or above), temperature in K, broadcasting."""
+    def __call__(
+        self, control: Array, path: Array, temperature: Array, saturation_voltage: Array | None = None
+    ) -> Array:
+        """Return the path current; control and path in V (path 0 or above), temperature in K, broadcasting.
+
+        ``saturation_voltage`` [V] is needed with one path voltage (``ValueError`` without) and not used with several.
+        """
         weights, beyond = inverse_temperature_weights(temperature, self.temperatures)
         path = np.asarray(path, dtype=np.float64)
         path = np.where(outside(path, 0.0, self.path_high), np.nan, path)
@@ -83,9 +88,11 @@ class CurrentSurface:
             logarithm = self._log_conductance(row, control, path)
             total = total + np.where(weight > 0.0, weight * logarithm, 0.0)
         shape_factor = path
-        if self.saturation_voltage is not None:
-            measured = drain_factor(self.path_high, self.saturation_voltage)
-            shape_factor = drain_factor(path, self.saturation_voltage) / measured
+        if not self.measured_across:
+            if saturation_voltage is None:
+                problem = "one path voltage needs a saturation voltage"
+                raise ValueError(problem)
+            shape_factor = drain_factor(path, saturation_voltage) / drain_factor(self.path_high, saturation_voltage)
         return np.where(beyond, np.nan, np.exp(total) * shape_factor)
 
     def _log_conductance(self, row: tuple[Curve, ...], control: Array, path: Array) -> Array:
@@ -98,9 +105,7 @@ class CurrentSurface:
         return hermite_across(self.path_voltages, known, np.clip(path, self.path_voltages[0], self.path_high))
 
 
-def current_surface(
-    columns: Mapping[str, Array], path_voltage: float | None, temperature: float, saturation_voltage: Array | None
-) -> CurrentSurface:
+def current_surface(columns: Mapping[str, Array], path_voltage: float | None, temperature: float) -> CurrentSurface:
     """Return the surface through the rows of one sweep, in any order.
 
     Parameters
@@ -112,13 +117,11 @@ def current_surface(
         Path voltage of the whole table [V] when it has no such column.
     temperature : float
         Temperature of the whole table [K] when it has no such column.
-    saturation_voltage : ndarray or None
-        Needed with one path voltage, ignored with several [V].
 
     Raises
     ------
     ValueError
-        Not every temperature has the same path voltages, or one path voltage comes without a saturation voltage.
+        Not every temperature has the same path voltages.
     """
     control, current = columns["control_voltage"], columns["current"]
     everywhere = np.ones(control.size)
@@ -139,10 +142,7 @@ def current_surface(
         rows.append(
             tuple(curve(control[at & (paths == volts)], current[at & (paths == volts)], "log") for volts in levels)
         )
-    if levels.size == 1 and saturation_voltage is None:
-        problem = "one path voltage needs a saturation voltage"
-        raise ValueError(problem)
-    return CurrentSurface(steps, levels, tuple(rows), saturation_voltage if levels.size == 1 else None)
+    return CurrentSurface(steps, levels, tuple(rows))
 
 
 def blended_branches(first: Array, second: Array, level: Array) -> Array:

@@ -108,9 +108,9 @@ def test_charge_of_a_straight_capacitance_is_exact_at_the_points(base, slope, st
 
 
 @SETTINGS
-@given(st.lists(st.floats(200.0, 450.0), min_size=1, max_size=5, unique=True), st.floats(150.0, 500.0))
+@given(st.lists(st.integers(800, 1800), min_size=1, max_size=5, unique=True), st.floats(150.0, 500.0))
 def test_temperature_weights(given_temperatures, wanted):
-    kelvin = np.sort(np.array(given_temperatures))
+    kelvin = np.sort(np.array(given_temperatures)) / 4.0
     weights, beyond = inverse_temperature_weights(wanted, kelvin)
     assert weights.sum(axis=0) == pytest.approx(1.0, rel=1e-12)
     assert beyond == ((wanted < kelvin[0] - 1e-6) or (wanted > kelvin[-1] + 1e-6))

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from dataclasses import replace
 
 import numpy as np
 import pytest
@@ -71,6 +72,30 @@ def test_sets_load_pass_their_check_and_keep_the_contract(name: str):
         pair = declared_pair(name, node)
         assert pair.down.outside == {}
         check_pair(pair)
+
+
+@pytest.mark.parametrize("name", NAMES)
+def test_every_value_may_be_an_array_of_draws(name: str):
+    """Three draws of every value, two temperatures, two supplies: shapes broadcast, and draws stay apart."""
+    loaded, _ = load(name)
+    device = model(loaded.model)
+    given = inputs_of(loaded, loaded.nodes[0])
+    draws = {k: np.broadcast_to(v, (3, 1, 1)).copy() for k, v in given.values.items()}
+    supply = given.values["declared_supply"] * np.array([1.0, 0.95]).reshape(1, 1, 2)
+    temperature = np.array([298.15, 358.15]).reshape(1, 2, 1)
+    knobs = {"threshold_shift": np.zeros((1, 1, 1))}
+    pair = device.switch(device.prepare(replace(given, values=draws)), supply, temperature, knobs)
+    alone = device.switch(device.prepare(given), supply, temperature, knobs)
+    control = np.linspace(0.0, 1.0, 5) * supply[..., None]
+    got = pair.down.current(control, supply[..., None])
+    assert np.broadcast_shapes(got.shape, (3, 2, 2, 5)) == (3, 2, 2, 5)
+    one = np.broadcast_to(alone.down.current(control, supply[..., None]), got.shape)
+    assert np.array_equal(got, one, equal_nan=True)
+    for field in ("resistance", "stack_on", "stack_off", "input_charge", "terminal_capacitance"):
+        value, single = getattr(pair.down, field), getattr(alone.down, field)
+        np.broadcast_shapes(value.shape, (3, 2, 2, value.shape[-1]) if field.startswith("stack") else (3, 2, 2))
+        assert np.array_equal(value, np.broadcast_to(single, value.shape), equal_nan=True), field
+    check_pair(pair)
 
 
 @pytest.mark.parametrize("name", NAMES)
