@@ -2,7 +2,7 @@
 
 A rule sees one output edge: the switch that closes and drives it, the switch that opens, the resistance of the driving
 path and the lumped capacitance. It answers with the load-independent time, the factor F of every R C product and the
-factor of r c L^2. ``chain`` and ``step`` are closed forms; rules that solve for the factor have the same signature.
+factor of r c L^2. ``chain`` and ``step`` are closed forms, ``integral`` solves for the factor.
 """
 
 from __future__ import annotations
@@ -15,10 +15,21 @@ from typing import Final
 import numpy as np
 
 from benchmark.circuits.chain_rule import STEP_FACTOR, chain_factor
+from benchmark.circuits.integral import integral_factors
 from benchmark.devices.record import Array, Switch
 from benchmark.errors import UsageError, nearest
 
-__all__ = ["RULES", "STEP_WIRE_FACTOR", "EdgeFactors", "EdgeInputs", "StageRule", "chain", "rule_by_name", "step"]
+__all__ = [
+    "RULES",
+    "STEP_WIRE_FACTOR",
+    "EdgeFactors",
+    "EdgeInputs",
+    "StageRule",
+    "chain",
+    "integral",
+    "rule_by_name",
+    "step",
+]
 
 #: t50 of a distributed line behind a step: 0.377 r c L^2 (Sakurai, IEEE JSSC 18 (1983) 418, from memory).
 #: 0.1 + 0.4 ln 2 = 0.37726 is the same number rounded differently; the printed constant is used.
@@ -78,11 +89,28 @@ def step(edge: EdgeInputs) -> EdgeFactors:
     return EdgeFactors(edge.transit, factor, np.asarray(factor / STEP_FACTOR * STEP_WIRE_FACTOR))
 
 
-RULES: Final = MappingProxyType({"chain": chain, "step": step})
+def integral(edge: EdgeInputs) -> EdgeFactors:
+    """Stage inside a chain, solved with the actuators of both switches still under way; see ``integral_factors``.
+
+    F is the marginal factor of R C at this point, the rest of the delay counts as load-independent. Wire factor
+    0.1 + 0.4 F as for ``chain``.
+    """
+    found = integral_factors(
+        edge.closing,
+        edge.supply,
+        edge.capacitance,
+        resistance=edge.resistance,
+        opening=edge.opening,
+        transit=edge.transit,
+    )
+    return EdgeFactors(found.transit, found.factor, 0.1 + 0.4 * found.factor)
+
+
+RULES: Final = MappingProxyType({"chain": chain, "step": step, "integral": integral})
 
 
 def rule_by_name(name: str) -> StageRule:
-    """Return the closed-form rule of that name.
+    """Return the rule of that name.
 
     Raises
     ------

@@ -10,6 +10,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from benchmark.circuits.integral import integral_delay, integral_factors
+from benchmark.circuits.rules import EdgeInputs, rule_by_name
 from benchmark.circuits.transient import ChainLoad, chain_transient
 from tests.factories import ohmic_pair
 from tests.soft_window import C_NODE, R_ON, RC, soft_pair, two_pole
@@ -93,6 +94,15 @@ def test_factors_add_up_and_are_the_marginal_delay():
     found = integral_factors(plain.down, plain.supply, LOAD, opening=plain.up)
     assert found.transit == pytest.approx(7.0 * RC, rel=1e-9)
     assert found.factor == pytest.approx(0.976, abs=0.002)
+
+
+def test_rule_of_a_stage_gives_the_same_delay():
+    pair = soft_pair(4.0, 0.2, 0.8, **two_pole(3.0, 0.7))
+    edge = EdgeInputs(pair.down, pair.up, pair.supply, 2.0 * pair.down.resistance, LOAD, pair.down.closing_time)
+    found = rule_by_name("integral")(edge)
+    delay = integral_delay(pair.down, pair.supply, LOAD, resistance=2.0 * pair.down.resistance, opening=pair.up)
+    assert found.transit + found.factor * edge.resistance * LOAD == pytest.approx(delay, rel=1e-12)
+    assert found.wire_factor == pytest.approx(0.1 + 0.4 * found.factor)
 
 
 @settings(deadline=None, max_examples=15)
