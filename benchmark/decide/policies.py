@@ -49,7 +49,7 @@ def _time(problem: SideProblem, points: Points) -> Array:
     return points.time
 
 
-def _never(problem: SideProblem, points: Points) -> Mask:
+def _anything(run: SideRun, points: Points, among: Mask) -> Mask:
     return np.ones(points.energy.shape, dtype=bool)
 
 
@@ -64,17 +64,17 @@ def metric_of(name: str, points: Points) -> Array:
 
 
 def _within(limit: Array, attribute: str) -> Condition:
-    def condition(problem: SideProblem, points: Points) -> Mask:
-        return np.asarray(getattr(points, attribute) <= problem.batch.own(limit))
+    def condition(run: SideRun, points: Points, among: Mask) -> Mask:
+        return np.asarray(getattr(points, attribute) <= run.problem.batch.own(limit))
 
     return condition
 
 
 def _all(*conditions: Condition) -> Condition:
-    def condition(problem: SideProblem, points: Points) -> Mask:
-        mask = conditions[0](problem, points)
+    def condition(run: SideRun, points: Points, among: Mask) -> Mask:
+        mask = conditions[0](run, points, among)
         for other in conditions[1:]:
-            mask = mask & other(problem, points)
+            mask = mask & other(run, points, among)
         return mask
 
     return condition
@@ -83,12 +83,12 @@ def _all(*conditions: Condition) -> Condition:
 def _fixed(run: SideRun, points: Points, condition: Condition, costly: Condition | None) -> Optimum:
     """Judge one given point per row."""
     problem = run.problem
-    found = (points.able & condition(problem, points))[:, 0]
+    found = (points.able & condition(run, points, points.able))[:, 0]
     low, high = problem.side.supply
     inside = (points.supply[:, 0] >= low * (1 - 1e-12)) & (points.supply[:, 0] <= high * (1 + 1e-12))
     found = found & inside
     if costly is not None and found.any():
-        found = found & costly(problem, points)[:, 0]
+        found = found & costly(run, points, found[:, None])[:, 0]
     nothing = np.zeros(found.shape, dtype=bool)
     return Optimum(points, points.energy[:, 0], found, nothing, nothing)
 
@@ -99,7 +99,7 @@ def optimum(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, 
     Rows without any permitted point have ``found`` False.
     """
     problem = run.problem
-    hard: Condition = cheap_condition if inputs.enforce_requirements else _never
+    hard: Condition = cheap_condition if inputs.enforce_requirements else _anything
     costly: Condition | None = (
         functional_mask if inputs.enforce_requirements and functional_condition(problem.study) else None
     )

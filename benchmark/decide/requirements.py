@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 
 from benchmark.evaluate.functional import functional_points
 from benchmark.evaluate.points import Points, cycle_time, cycles_demanded
-from benchmark.evaluate.search import Optimum, SideRun
+from benchmark.evaluate.search import Optimum, SideRun, take_columns
 from benchmark.evaluate.side import SideProblem
 from benchmark.sets.study import REQUIREMENTS, Requirement, Study
 
@@ -78,8 +78,9 @@ def margins_at(problem: SideProblem, points: Points, requirement: Requirement) -
     return None
 
 
-def cheap_condition(problem: SideProblem, points: Points) -> Mask:
+def cheap_condition(run: SideRun, points: Points, among: Mask) -> Mask:
     """Hard point-wise requirements, except the functional floor."""
+    problem = run.problem
     mask = np.ones(points.energy.shape, dtype=bool)
     for requirement in problem.study.requirements.values():
         if requirement.kind == "hard":
@@ -101,16 +102,23 @@ def functional_condition(study: Study) -> bool:
     return any(name in study.requirements and study.requirements[name].kind == "hard" for name in FUNCTIONAL)
 
 
-def functional_mask(problem: SideProblem, points: Points) -> Mask:
-    """Hard functional requirements (expensive)."""
-    mask = np.ones(points.energy.shape, dtype=bool)
-    wanted = [problem.study.requirements[name] for name in FUNCTIONAL if name in problem.study.requirements]
-    for fan_in in {requirement.fan_in for requirement in wanted if requirement.kind == "hard"}:
-        found = functional_points(problem, points, fan_in)
-        for requirement in wanted:
-            if requirement.kind == "hard" and requirement.fan_in == fan_in:
+def functional_mask(run: SideRun, points: Points, among: Mask) -> Mask:
+    """Hard functional requirements at the points asked about (expensive: other supplies are not evaluated)."""
+    asked = np.flatnonzero(among.any(axis=0))
+    mask = np.zeros(points.energy.shape, dtype=bool)
+    if not asked.size:
+        return mask
+    some = take_columns(points, asked)
+    allowed = np.ones(some.energy.shape, dtype=bool)
+    wanted = [run.problem.study.requirements[name] for name in FUNCTIONAL if name in run.problem.study.requirements]
+    hard = [requirement for requirement in wanted if requirement.kind == "hard"]
+    for fan_in in sorted({requirement.fan_in for requirement in hard}):
+        found = functional_points(run.problem, some, fan_in)
+        for requirement in hard:
+            if requirement.fan_in == fan_in:
                 offered = found.noise_margin if requirement.name == "noise_margin" else found.gain
-                mask &= np.where(np.isnan(offered), -np.inf, offered) >= (requirement.limit or 0.0)
+                allowed &= np.where(np.isnan(offered), -np.inf, offered) >= (requirement.limit or 0.0)
+    mask[:, asked] = allowed
     return mask
 
 
@@ -206,12 +214,10 @@ def _assess_standing(
 
 
 def _middle(run: SideRun) -> Points:
-    from benchmark.evaluate.search import _take
-
     grid = run.grid(run.combinations[0])
     able = np.flatnonzero(grid.able[0])
     column = int(able[len(able) // 2]) if len(able) else 0
-    return _take(grid, np.full(grid.energy.shape[0], column))
+    return take_columns(grid, np.array([column]))
 
 
 def _assess_pointwise(

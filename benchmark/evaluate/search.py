@@ -21,14 +21,15 @@ from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.side import SideProblem, build_side
 from benchmark.sets.study import NodePair
 
-__all__ = ["Optimum", "SideRun", "minimise", "supply_grid"]
+__all__ = ["Condition", "Objective", "Optimum", "SideRun", "minimise", "supply_grid", "take_columns"]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 Objective = Callable[[SideProblem, Points], Array]
-Condition = Callable[[SideProblem, Points], Mask]
+#: (run, points, points that need an answer) -> mask; may say anything about the other points
+Condition = Callable[["SideRun", Points, Mask], Mask]
 
-ZOOM_POINTS = 17
+ZOOM_POINTS = 33
 #: relative distance at which an optimum counts as lying on a limit of the search
 ON_BOUND = 1.0e-9
 
@@ -103,6 +104,20 @@ def _take(points: Points, column: NDArray[np.intp]) -> Points:
     return dataclasses.replace(points, **changes)
 
 
+def take_columns(points: Points, columns: NDArray[np.intp]) -> Points:
+    """Return the points at some of the supplies, the same for every row."""
+    shape = points.energy.shape
+
+    def pick(value: Any) -> Any:
+        if isinstance(value, np.ndarray) and value.shape == shape:
+            return value[:, columns]
+        if isinstance(value, Mapping):
+            return {key: pick(item) for key, item in value.items()}
+        return value
+
+    return dataclasses.replace(points, **{item.name: pick(getattr(points, item.name)) for item in fields(points)})
+
+
 def _best(objective: Array, mask: Mask) -> tuple[NDArray[np.intp], Array]:
     score = np.where(mask, objective, np.inf)
     column = np.argmin(score, axis=1)
@@ -134,7 +149,7 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
     """Grid, then zoom."""
     problem = run.problem
     grid = run.grid(combination)
-    column, value = _best(objective(problem, grid), grid.able & condition(problem, grid))
+    column, value = _best(objective(problem, grid), grid.able & condition(run, grid, grid.able))
     best = _take(grid, column)
     supplies = grid.supply
     last = supplies.shape[1] - 1
@@ -145,7 +160,10 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
     while np.any((high - low) > problem.study.refine_relative * np.abs(high)) and last > 0:
         fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
         points = design_points(problem, fine, *combination)
-        column, fine_value = _best(objective(problem, points), points.able & condition(problem, points))
+        score = objective(problem, points)
+        # only points that would improve on the best so far need to be judged
+        candidates = points.able & (score < value[:, None])
+        column, fine_value = _best(score, candidates & condition(run, points, candidates))
         better = fine_value < value
         if better.any():
             best = _merge(best, _take(points, column), better)
@@ -180,7 +198,7 @@ def minimise(
     objective : callable
         (problem, points) -> array (row, supply) to be made small.
     cheap, costly : callable
-        (problem, points) -> mask of allowed points; ``costly`` is evaluated at as few points as possible.
+        Conditions; ``costly`` is asked about as few points as possible.
     frozen : (size, threshold shift), optional
         Frozen choice to keep; by default the one that is best for row 0.
     """
@@ -196,19 +214,21 @@ def _with_costly(
     optimum = _search(run, combination, objective, cheap)
     if costly is None or not optimum.found.any():
         return optimum
-    allowed = costly(run.problem, optimum.points)[:, 0] | ~optimum.found
+    allowed = costly(run, optimum.points, optimum.found[:, None])[:, 0] | ~optimum.found
     if allowed.all():
         return optimum
     rows = np.flatnonzero(~allowed)
     smaller = run.subset(rows)
-    both: Condition = lambda problem, points: _both(problem, points, cheap, costly)  # noqa: E731
-    again = _search(smaller, combination, objective, both)
+    again = _search(smaller, combination, objective, _both(cheap, costly))
     return _put_rows(optimum, again, rows)
 
 
-def _both(problem: SideProblem, points: Points, cheap: Condition, costly: Condition) -> Mask:
-    mask = cheap(problem, points) & points.able
-    return mask & costly(problem, points) if mask.any() else mask
+def _both(cheap: Condition, costly: Condition) -> Condition:
+    def condition(run: SideRun, points: Points, among: Mask) -> Mask:
+        mask = among & cheap(run, points, among)
+        return mask & costly(run, points, mask) if mask.any() else mask
+
+    return condition
 
 
 def _put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
