@@ -84,7 +84,7 @@ class Comparison:
         return f"{role} {side.id}"
 
     def _run(self, side: Side, role: str) -> SideRun:
-        rows = self.batch.affected(keys_of(self.study, side, role))
+        rows = self.batch.affected(keys_of(self.pair, side, role))
         position = np.zeros(self.batch.rows, dtype=np.intp)
         position[rows] = np.arange(len(rows))
         self._position[self._key(side, role)] = position

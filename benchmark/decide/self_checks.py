@@ -19,7 +19,7 @@ def _with_sides(
 ) -> tuple[Study, NodePair]:
     contender = dataclasses.replace(contender, id="self-check contender")
     pair = study.pair(study.headline)
-    pair = NodePair(pair.label, candidate_node, {contender.id: contender_node}, pair.wires)
+    pair = NodePair(pair.label, candidate_node, {contender.id: contender_node}, pair.wires, pair.wires_node)
     policy = study.policy
     if isinstance(policy.required_time, str) and policy.required_time.startswith("contender:"):
         policy = dataclasses.replace(policy, required_time=f"contender:{contender.id}")

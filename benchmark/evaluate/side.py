@@ -65,7 +65,7 @@ def values_by_key(study: Study, pair: NodePair) -> dict[str, Value]:
     if study.circuit_spec is not None:
         for layer, table in study.circuit_spec.layers.items():
             found |= {f"circuit.{layer}.{name}": value for name, value in table.items()}
-    found |= {f"{study.wires.id}.{name}": value for name, value in study.wires.at(pair.wires).items()}
+    found |= {f"{pair.wires.id}.{name}": value for name, value in pair.wires.at(pair.wires_node).items()}
     for side, role, node in _sides(study, pair):
         owner = owner_of_overhead(side, role)
         found |= {f"{side.technology.id}.{name}": value for name, value in side.technology.at(node).items()}
@@ -80,13 +80,13 @@ def _sides(study: Study, pair: NodePair) -> list[tuple[Side, str, str]]:
     return listed
 
 
-def keys_of(study: Study, side: Side, role: str) -> Callable[[str], bool]:
+def keys_of(pair: NodePair, side: Side, role: str) -> Callable[[str], bool]:
     """Return a test telling whether a ledger key can influence this side."""
     owner = owner_of_overhead(side, role)
     prefixes = (
         "study.",
         "circuit.",
-        f"{study.wires.id}.",
+        f"{pair.wires.id}.",
         f"{side.technology.id}.",
         f"{owner}.overhead.",
         f"{owner}.gating.",
@@ -105,7 +105,7 @@ def build_side(study: Study, side: Side, role: str, pair: NodePair, batch: Batch
         tables["rows"] = technology.rows[node]
     prepared = device.prepare(ModelInputs(values, technology.options, tables))
     scenario = resolve("study", study.values, batch)
-    wire_values = resolve(study.wires.id, study.wires.at(pair.wires), batch)
+    wire_values = resolve(pair.wires.id, pair.wires.at(pair.wires_node), batch)
     wires = Wires(
         resistance_per_length=wire_values["wire_resistance_per_length"],
         capacitance_per_length=wire_values["wire_capacitance_per_length"],

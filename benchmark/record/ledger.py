@@ -80,7 +80,7 @@ def ledger_rows(study: Study, moves: Sequence[InputMove], sources: Mapping[str, 
         owner = owner_of_overhead(side, role)
         rows += [_row(f"{owner}.overhead", value, [], by_key, sources) for value in side.overhead.values()]
         rows += [_row(f"{owner}.gating", value, [], by_key, sources) for value in side.gating.values()]
-    for item in (study.wires, *technologies(study)):
+    for item in (*study.wires_sets, *technologies(study)):
         rows += [_row(item.id, value, item.nodes, by_key, sources) for _, value in sorted(item.values.items())]
     return rows
 

@@ -10,7 +10,7 @@ from typing import Any
 
 from benchmark.circuits.library import BUILT_IN
 from benchmark.devices import MODEL_NAMES, model
-from benchmark.devices.model import ModelInputs
+from benchmark.devices.model import Finding, ModelInputs
 from benchmark.errors import InputRefused, Problem, UsageError
 from benchmark.evaluate.batch import Batch, resolve
 from benchmark.sets.files import TomlFile, read_toml
@@ -88,28 +88,32 @@ def load_study(
 
 
 def check_physics(technology: ParameterSet, collector: Collector) -> None:
-    """Let the device model judge the values of every node: refusals and warnings go to the collector."""
+    """Let the device model judge the values of every node; equal findings of several nodes become one.
+
+    Refusals and warnings go to the collector, and so do notes (defaults a model takes), marked as such.
+    """
     device = model(technology.model)
+    nodes_of: dict[Finding, list[str]] = {}
     for node in technology.nodes:
         values = resolve(technology.id, technology.at(node), Batch.best_estimate())
         tables: dict[str, Any] = {name: table.table for name, table in technology.tables.items()}
         if technology.rows:
             tables["rows"] = technology.rows[node]
         for finding in device.check(ModelInputs(values, technology.options, tables)):
-            dotted = finding.name if "." in finding.name else f"value.{finding.name}"
-            problem = Problem(
-                technology.file,
-                _line(technology, dotted),
-                dotted,
-                f"{finding.what} (node {node})",
-                finding.found,
-                finding.allowed,
-                finding.hint,
-            )
-            if finding.level == "refuse":
-                collector.add(problem)
-            else:
-                collector.warn(problem)
+            nodes_of.setdefault(finding, []).append(node)
+    for finding, nodes in nodes_of.items():
+        dotted = finding.name if "." in finding.name else f"value.{finding.name}"
+        where = "" if len(technology.nodes) == 1 else f" (node {', '.join(nodes)})"
+        problem = Problem(
+            technology.file,
+            _line(technology, dotted),
+            dotted,
+            f"{finding.what}{where}",
+            finding.found,
+            finding.allowed,
+            finding.hint,
+        )
+        {"refuse": collector.add, "warn": collector.warn}.get(finding.level, collector.note)(problem)
 
 
 def _line(technology: ParameterSet, dotted: str) -> int:

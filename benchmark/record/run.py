@@ -104,7 +104,7 @@ def _files(study: Study, library: Library) -> list[dict[str, str]]:
     if study.circuit_spec is not None:
         spec = study.circuit_spec
         rows.append({"name": spec.file, "kind": "circuit", "sha256": spec.sha256, "text": spec.text})
-    for item in (study.wires, *technologies(study)):
+    for item in (*study.wires_sets, *technologies(study)):
         rows.append({"name": item.file, "kind": item.kind, "sha256": item.sha256, "text": item.text})
         for table in item.tables.values():
             rows.append({"name": table.file, "kind": "table", "sha256": table.sha256, "text": table.raw})
@@ -176,6 +176,7 @@ def run_study(
         "circuit_assumptions": list(primary.comparison.candidate.problem.circuit.assumptions),
         "not_modelled": list(NOT_MODELLED),
         "cautions": list(CAUTIONS),
+        "notes": [str(note) for note in sorted(set(library.collector.notes))],
         "warnings": [str(warning) for warning in sorted(set(library.collector.warnings))]
         + _result_warnings(primary, verdict),
         "files": _files(study, library),
@@ -206,7 +207,7 @@ def _study_row(study: Study) -> dict[str, Any]:
         "short_circuit": study.short_circuit,
         "guard_band_delay": study.guard_band_delay,
         "guard_band_leakage": study.guard_band_leakage,
-        "wires": study.wires.id,
+        "wires": [item.id for item in study.wires_sets],
         "primary_policy": policy.primary,
         "also": list(policy.also),
         "metric": policy.metric,
@@ -215,7 +216,11 @@ def _study_row(study: Study) -> dict[str, Any]:
         "exponent": policy.exponent,
         "required_advantage": study.required_advantage,
         "headline": study.headline,
-        "headline_nodes": {"candidate": pair.candidate, "reference": dict(pair.reference), "wires": pair.wires},
+        "headline_nodes": {
+            "candidate": pair.candidate,
+            "reference": dict(pair.reference),
+            "wires": f"{pair.wires.id} {pair.wires_node}",
+        },
         "supply_points": study.supply_points,
         "refine_relative": study.refine_relative,
         "sha256": study.sha256,
@@ -295,7 +300,7 @@ def _factors(primary: _Primary) -> dict[str, Any]:
 
 
 def _used_sources(study: Study) -> set[str]:
-    values = list(study.values.values()) + list(study.wires.values.values())
+    values = [*study.values.values(), *(value for item in study.wires_sets for value in item.values.values())]
     used: set[str] = set()
     for side in (study.candidate, *study.contenders):
         item = side.technology

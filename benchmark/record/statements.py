@@ -54,6 +54,7 @@ def conventions(study: Study, factors: dict[str, Any]) -> list[dict[str, str]]:
         "integral": "solved from the integral of dt/(R C) along the actuator's own motion",
         "transient": "solved as a differential equation",
     }[study.delay_rule]
+    sets = ", ".join(item.id for item in study.wires_sets)
     listed = ", ".join(f"{t:.6g} K" for t in study.temperatures)
     time = (
         "the clock period" if study.leakage_accounting == "period" and study.timing == "clocked" else "the path delay"
@@ -84,7 +85,10 @@ def conventions(study: Study, factors: dict[str, Any]) -> list[dict[str, str]]:
             + ("; 1 means none" if study.guard_band_delay == study.guard_band_leakage == 1.0 else ""),
         ),
         ("advantage", "reference / candidate for costs, so above 1 always favours the candidate"),
-        ("wires", f"set {study.wires.id}, the same for both sides; layout parasitic per pin likewise"),
+        (
+            "wires",
+            f"{sets}: the same for both sides, layout parasitic per pin likewise",
+        ),
         ("registers and clock", "in, for circuits that have them; the clock net rises once per cycle"),
         (
             "idle",

@@ -15,6 +15,7 @@ class Collector:
 
     problems: list[Problem] = field(default_factory=list)
     warnings: list[Problem] = field(default_factory=list)
+    notes: list[Problem] = field(default_factory=list)
 
     def add(self, problem: Problem) -> None:
         """Record a reason to refuse."""
@@ -23,6 +24,10 @@ class Collector:
     def warn(self, problem: Problem) -> None:
         """Record something to say loudly without refusing."""
         self.warnings.append(problem)
+
+    def note(self, problem: Problem) -> None:
+        """Record what a model takes where a file is silent."""
+        self.notes.append(problem)
 
     def raise_if_any(self) -> None:
         """Refuse the input if any problem was recorded.

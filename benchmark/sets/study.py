@@ -44,12 +44,13 @@ class Side:
 
 @dataclass(frozen=True)
 class NodePair:
-    """One comparison: candidate node, reference node by contender id, wires node."""
+    """One comparison: candidate node, reference node by contender id, and the wires both sides use."""
 
     label: str
     candidate: str
     reference: Mapping[str, str]
-    wires: str
+    wires: ParameterSet
+    wires_node: str
 
 
 @dataclass(frozen=True)
@@ -100,7 +101,6 @@ class Study:
     short_circuit: str
     guard_band_delay: float
     guard_band_leakage: float
-    wires: ParameterSet
     candidate: Side
     contenders: tuple[Side, ...]
     headline: str
@@ -116,6 +116,11 @@ class Study:
     text: str
     path: Path
     default_fields: tuple[str, ...] = field(default=())
+
+    @property
+    def wires_sets(self) -> tuple[ParameterSet, ...]:
+        """Every wires set the study uses, once."""
+        return tuple({pair.wires.id: pair.wires for pair in self.pairs}.values())
 
     def pair(self, label: str) -> NodePair:
         """Return a node pair by label."""

@@ -15,6 +15,7 @@ from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate
 from benchmark.sets.study import REQUIREMENTS, NodePair, Policy, Requirement, Side, Study
 from benchmark.sets.study_schema import FrozenKnob, SideTable, StudyFile
+from benchmark.sets.study_schema import NodePair as NodePairTable
 from benchmark.sets.values import Place, Value, convert_measure, convert_value
 from benchmark.units import UnitError, parse_unit, to_si
 
@@ -211,6 +212,18 @@ class _Builder:
 
     # -- nodes ----------------------------------------------------------------------------------------------
 
+    def wires_set(self, name: str, dotted: str) -> ParameterSet | None:
+        found = self.library.load(name, "wires", self.file.problem(dotted, ""))
+        if found is not None and found.kind != "wires":
+            self.refuse(dotted, "is not a wires set", repr(name))
+            return None
+        return found
+
+    def wires_of(self, pair: NodePairTable, default: ParameterSet | None) -> tuple[ParameterSet | None, str]:
+        if isinstance(pair.wires, str):
+            return default, pair.wires
+        return self.wires_set(pair.wires.set, "nodes.pairs"), pair.wires.node
+
     def pairs(self, candidate: Side | None, contenders: Sequence[Side], wires: ParameterSet | None) -> list[NodePair]:
         found = []
         labels = [pair.label for pair in self.parsed.nodes.pairs]
@@ -253,15 +266,18 @@ class _Builder:
                     )
             if not reference:
                 self.refuse(dotted, "names no reference node", repr(pair.label))
-            if wires is not None and pair.wires not in wires.nodes:
+            used, node = self.wires_of(pair, wires)
+            if used is None:
+                continue
+            if node not in used.nodes:
                 self.refuse(
                     dotted,
-                    f"the wires set {wires.id} has no node",
-                    repr(pair.wires),
-                    ", ".join(wires.nodes),
-                    nearest(pair.wires, wires.nodes),
+                    f"the wires set {used.id} has no node",
+                    repr(node),
+                    ", ".join(used.nodes),
+                    nearest(node, used.nodes),
                 )
-            found.append(NodePair(pair.label, pair.candidate, dict(reference), pair.wires))
+            found.append(NodePair(pair.label, pair.candidate, dict(reference), used, node))
         return found
 
     # -- requirements, policy -------------------------------------------------------------------------------
@@ -382,10 +398,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     spec = build.circuit_spec()
     values = build.values()
     temperatures = build.temperatures()
-    wires = library.load(parsed.conditions.wires, "wires", file.problem("conditions.wires", ""))
-    if wires is not None and wires.kind != "wires":
-        build.refuse("conditions.wires", "is not a wires set", repr(parsed.conditions.wires))
-        wires = None
+    wires = build.wires_set(parsed.conditions.wires, "conditions.wires")
     candidate, contenders = build.sides()
     pairs = build.pairs(candidate, contenders, wires)
     requirements = build.requirements()
@@ -397,7 +410,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
     _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
     _check_self_comparison(build, candidate, contenders)
-    _check_invented(build, values, candidate, contenders, wires)
+    _check_invented(build, values, candidate, contenders, [pair.wires for pair in pairs], spec)
     if len(library.collector.problems) > before or candidate is None or wires is None or not contenders:
         return None
     return Study(
@@ -421,7 +434,6 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         parsed.conditions.short_circuit,
         delay_band,
         leakage_band,
-        wires,
         candidate,
         tuple(contenders),
         parsed.nodes.headline,
@@ -471,10 +483,12 @@ def _check_invented(
     values: Mapping[str, Value],
     candidate: Side | None,
     contenders: Sequence[Side],
-    wires: ParameterSet | None,
+    wires: Sequence[ParameterSet],
+    circuit: CircuitSpec | None,
 ) -> None:
     """A study with invented inputs must call itself a demonstration, and only then."""
-    groups: list[list[Value]] = [list(values.values()), list(wires.values.values()) if wires is not None else []]
+    groups: list[list[Value]] = [list(values.values()), *(list(item.values.values()) for item in wires)]
+    groups += [list(layer.values()) for layer in circuit.layers.values()] if circuit is not None else []
     for side in [*contenders, *([candidate] if candidate else [])]:
         groups += [list(table.values()) for table in (side.technology.values, side.overhead, side.gating)]
         for table in side.technology.tables.values():

@@ -94,13 +94,20 @@ class SideTable(FileModel):
     gating: dict[str, ValueTable] = {}
 
 
+class WiresAt(FileModel):
+    """A node of another wires set than the study's."""
+
+    set: Text
+    node: NodeLabel
+
+
 class NodePair(FileModel):
-    """Which label stands against which."""
+    """Which label stands against which; ``wires`` is a node of the study's wires set, or of another one."""
 
     label: NodeLabel
     candidate: NodeLabel
     reference: dict[str, NodeLabel] | NodeLabel
-    wires: NodeLabel
+    wires: NodeLabel | WiresAt
 
 
 class NodesTable(FileModel):
