@@ -1,7 +1,6 @@
 """Closed forms of level restoration: the gain and the swing a chain of logic stages keeps (layer 3).
 
-Levels are fractions of the supply, rho is the on/off ratio R_off / R_on. Dividers with ideal inputs and the ratios
-that leakage asks for are in ``on_off_ratio``. These forms check the numeric transfer curve
+Levels are fractions of the supply, rho is the on/off ratio R_off / R_on. These forms check the numeric transfer curve
 of the circuits and draw limit lines; the engine's functional floor is computed from each device's own current law.
 """
 
@@ -19,6 +18,8 @@ __all__ = [
     "log_linear_minimum_ratio",
     "log_linear_noise_margin",
     "log_linear_output",
+    "ratio_for_fan_in",
+    "resistor_load_levels",
     "stacked_high_level",
     "subthreshold_gain",
     "subthreshold_minimum_supply",
@@ -29,6 +30,21 @@ Array = NDArray[np.float64]
 
 def _array(value: ArrayLike) -> Array:
     return np.asarray(value, dtype=np.float64)
+
+
+def resistor_load_levels(ratio: ArrayLike) -> tuple[Array, Array]:
+    """Return (V_OL, V_OH) / V of one switch against its best load resistor, R_L = sqrt(R_on R_off). Divider.
+
+    1/(1 + sqrt rho) and sqrt rho/(1 + sqrt rho): the switch needs rho^2 to do what a complementary pair does.
+    """
+    root = np.sqrt(_array(ratio))
+    return _array(1.0 / (1.0 + root)), _array(root / (1.0 + root))
+
+
+def ratio_for_fan_in(fan_in: ArrayLike, level_loss: ArrayLike) -> Array:
+    """Return the on/off ratio k^2 (1/eps - 1) at which a k-input gate loses eps of the swing at one level [1]."""
+    k = _array(fan_in)
+    return _array(k * k * (1.0 / _array(level_loss) - 1.0))
 
 
 def stacked_high_level(fan_in: ArrayLike, ratio: ArrayLike) -> Array:

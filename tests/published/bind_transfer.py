@@ -9,7 +9,7 @@ import numpy as np
 
 from benchmark.circuits import chain_rule, functional, integral, transfer, transient
 from benchmark.devices.record import Array
-from benchmark.physics import noise, regeneration, two_pole, virtual_source
+from benchmark.physics import limits, noise, regeneration, two_pole, virtual_source
 from tests.factories import ohmic_pair
 from tests.published.rows import Binding
 from tests.soft_window import C_NODE, RC, soft_pair
@@ -27,6 +27,11 @@ def _noise_need() -> float:
 
 # The tolerance of NOISE-rate and NOISE-Q is larger than the number itself: tests/unit/test_noise.py holds them.
 _NOISE_ROWS = [
+    Binding(
+        "cir.NOISE-Un",
+        ("benchmark.physics.limits:thermal_noise_voltage",),
+        lambda: 1e3 * limits.thermal_noise_voltage(0.1e-15, 300.0),
+    ),
     Binding("cir.NOISE-need", (NOISE + "threshold_for_rate", NOISE + "pole_frequency"), _noise_need),
 ]
 
@@ -38,6 +43,12 @@ def _log_linear(ratio: float) -> list[float]:
     margin = functional.functional(pair, 1, "accurate").noise_margin
     square = transfer.largest_square(curve.v_in, curve.v_out)
     return [float(x) for x in (regeneration.log_linear_gain(ratio), low, high, margin, square)]
+
+
+def _divider(ratio: float) -> list[float]:
+    """Ends of the transfer curve: inputs at the rails."""
+    curve = transfer.transfer_curve(ohmic_pair(on_resistance=1e4, off_resistance=1e4 * ratio), points=3)
+    return [float(curve.v_out[-1]), float(curve.v_out[0])]
 
 
 def _square_law(supply: float, threshold: float) -> list[float]:
@@ -85,6 +96,31 @@ _REGENERATION_ROWS = [
         "cir.RINV-min",
         (REGENERATION + "log_linear_minimum_ratio",),
         lambda: regeneration.log_linear_minimum_ratio(),
+    ),
+    *(
+        Binding(
+            f"cir.RDIV-{ratio}",
+            ("benchmark.circuits.transfer:transfer_curve",),
+            lambda ratio=ratio: _divider(float(ratio)),
+        )
+        for ratio in (10, 10000)
+    ),
+    *(
+        Binding(
+            f"cir.RLOAD-{ratio}",
+            (REGENERATION + "resistor_load_levels",),
+            lambda ratio=ratio: regeneration.resistor_load_levels(float(ratio)),
+        )
+        for ratio in (10, 100, 10000)
+    ),
+    *(
+        Binding(
+            f"cir.RATIO-FI{inputs}-e{loss}",
+            (REGENERATION + "ratio_for_fan_in",),
+            lambda inputs=inputs, loss=loss: regeneration.ratio_for_fan_in(inputs, loss),
+        )
+        for inputs in (2, 4)
+        for loss in (0.1, 0.05)
     ),
     Binding(
         "cir.FANOUT-RTL",

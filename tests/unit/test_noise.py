@@ -56,6 +56,7 @@ def test_stacked_level_is_the_hand_equation():
     # 4 inputs at an on/off ratio of 144 keep 0.9 V; a ratio of 1 leaves half the supply
     assert regeneration.stacked_high_level(4.0, 144.0) == pytest.approx(0.9)
     assert regeneration.stacked_high_level(1.0, 1.0) == 0.5
+    assert regeneration.ratio_for_fan_in(4.0, 0.1) == pytest.approx(144.0)
 
 
 def test_subthreshold_gain_is_one_at_the_minimum_supply():
