@@ -318,6 +318,8 @@ def _check_polarity(values: Mapping[str, Array], polarity: str, found: list[Find
             )
     if polarity == "p":
         missing = [name for name in _LIKE_N if f"{name}_p" not in values]
+        if "channel_mobility_p" not in values and "effective_current_p" not in values:
+            missing.append("channel_mobility")
         found.extend(Finding("note", f"value.{name}_p", "not stated: taken like the n type") for name in missing)
 
 

@@ -132,9 +132,9 @@ def series_balance(
 def _first_current(law: Law, control: Number, path: Array, resistance: Array, whole: Array) -> Array:
     """Logarithm of what the lowest device would carry, at most half of what the access resistances allow."""
     current = law(np.asarray(control) + 0.0 * path, path)[0]
-    with np.errstate(divide="ignore"):
+    with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         allowed = 0.5 * whole / resistance
-    return np.log(np.minimum(current, allowed))
+        return np.asarray(np.log(np.minimum(current, allowed)))
 
 
 def _newton_steps(
