@@ -29,7 +29,10 @@ LENGTH_NAMES: Final = ("average_net_length", "average_net_pitches")
 
 @dataclass(frozen=True)
 class BuiltIn:
-    """A built-in circuit. ``length`` tells whether it needs a net length, may have one, or has none."""
+    """A built-in circuit. ``length`` tells whether it needs a net length, may have one, or has none.
+
+    ``whole``: counts that shape the netlist, so they have one value and no spread.
+    """
 
     name: str
     title: str
@@ -38,6 +41,7 @@ class BuiltIn:
     required: tuple[str, ...]
     optional: tuple[str, ...] = ()
     length: str = "optional"
+    whole: tuple[str, ...] = ()
 
     @property
     def reads(self) -> frozenset[str]:
@@ -308,7 +312,14 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
                 ("logic_depth", "fan_out", "activity"),
                 ("busiest_activity",),
             ),
-            BuiltIn("ring", "Ring of inverters", "one period of the ring", _ring, ("stage_count", "fan_out")),
+            BuiltIn(
+                "ring",
+                "Ring of inverters",
+                "one period of the ring",
+                _ring,
+                ("stage_count", "fan_out"),
+                whole=("stage_count",),
+            ),
             BuiltIn(
                 "register",
                 "Edge-triggered register with its clock driver",
@@ -332,6 +343,7 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
                 "one addition of two words",
                 _ripple_adder,
                 ("word_length",),
+                whole=("word_length",),
             ),
         )
     }

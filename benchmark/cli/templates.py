@@ -236,7 +236,7 @@ def circuit_template(stem: str) -> str:
         lines = ["[[net]]", f'name = "{net["name"]}"']
         layer = ', layer = "upper"' if position else ""
         remarks = (
-            "Cell that drives the net: inverter, nand2 to nand16, nor2 to nor16",
+            "Cell that drives the net: inverter, nand2 to nand8, nor2 to nor8, aoi21, oai22 and the like",
             "Driven inputs at the far end: cell, input (a, b, ...), how many",
             "A fixed capacitance at the far end",
             'Wire: length in a unit or in "gate-pitch"; layer "local" is the wires set of the study',

@@ -19,6 +19,7 @@ from typing import Any
 import numpy as np
 
 from benchmark.catalogue import EVIDENCE, QUANTITIES
+from benchmark.circuits.library import BUILT_IN
 from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.requirements import RequirementResult
 from benchmark.evaluate.batch import Batch
@@ -95,17 +96,18 @@ def _probe(value: Value) -> float | None:
     quantity = QUANTITIES[value.name]
     if si == 0.0 or EVIDENCE.get(value.evidence, EVIDENCE["assumed"]).support == "go":
         return None
-    moved = si * (1.0 + PROBE)
     if quantity.domain == "count":
-        moved = si + 1.0
-    if quantity.domain == "fraction" and moved > 1.0:
-        moved = si * (1.0 - PROBE)
-    return moved
+        return si + 1.0
+    # a share is moved down: above it may lie a limit of its own (data of a register rise at most every other cycle)
+    return si * (1.0 - PROBE if quantity.domain == "fraction" else 1.0 + PROBE)
 
 
-def _moves_of(values: Mapping[str, Value]) -> list[tuple[str, float, float]]:
+def _moves_of(values: Mapping[str, Value], shaping: tuple[str, ...]) -> list[tuple[str, float, float]]:
+    """List what is moved; counts that shape the netlist stay, for another netlist is another study."""
     moves: list[tuple[str, float, float]] = []
     for key, value in values.items():
+        if value.name in shaping:
+            continue
         best = float(value.si[0])
         if value.spread is not None:
             moves += [(key, best, float(value.spread.low[0])), (key, best, float(value.spread.high[0]))]
@@ -121,7 +123,8 @@ def move_inputs(
 ) -> tuple[Outcome, list[InputMove]]:
     """Move every input alone over its range, both sides re-optimised in each row (frozen choices kept)."""
     values = values_by_key(study, pair)
-    moves = _moves_of(values)
+    circuit = BUILT_IN.get(study.circuit)
+    moves = _moves_of(values, circuit.whole if circuit else ())
     outcome = Comparison(study, pair, Batch.one_at_a_time(moves), frozen=frozen).outcome(policy)
     best = float(outcome.advantage[0])
     rows: dict[str, list[int]] = {}

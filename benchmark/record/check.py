@@ -8,7 +8,7 @@ from pathlib import Path
 
 from benchmark.circuits.library import BUILT_IN
 from benchmark.errors import Problem
-from benchmark.record.load import check_physics, open_library
+from benchmark.record.load import check_physics, check_study, open_library
 from benchmark.sets.circuit_file import read_circuit
 from benchmark.sets.files import read_toml
 from benchmark.sets.library import Library
@@ -66,7 +66,9 @@ def _check_one(path: Path, library: Library, collector: Collector) -> None:
     if path.name == "sources.toml":
         return  # read, with its problems, when the library was opened
     if "workload" in file.data or "contender" in file.data:
-        build_study(file, library, BUILT_IN)
+        study = build_study(file, library, BUILT_IN)
+        if study is not None:
+            check_study(study, file, collector)
     elif "net" in file.data:
         read_circuit(path, library, collector)
     else:

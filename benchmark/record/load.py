@@ -8,11 +8,14 @@ from decimal import Decimal
 from pathlib import Path
 from typing import Any
 
+import numpy as np
+
 from benchmark.circuits.library import BUILT_IN
 from benchmark.devices import MODEL_NAMES, model
 from benchmark.devices.model import Finding, ModelInputs
 from benchmark.errors import InputRefused, Problem, UsageError
 from benchmark.evaluate.batch import Batch, resolve
+from benchmark.evaluate.side import build_circuit
 from benchmark.sets.files import TomlFile, read_toml
 from benchmark.sets.library import Library, shipped_nodes
 from benchmark.sets.parameters import ParameterSet
@@ -20,7 +23,7 @@ from benchmark.sets.problems import Collector
 from benchmark.sets.study import Study
 from benchmark.sets.study_builder import build_study
 
-__all__ = ["check_physics", "load_study", "load_technology", "open_library"]
+__all__ = ["check_physics", "check_study", "load_study", "load_technology", "open_library"]
 
 
 def open_library(*folders: Path, collector: Collector | None = None) -> Library:
@@ -77,14 +80,34 @@ def load_study(
     file = _override(file, overrides or {}, library, collector)
     study = build_study(file, library, BUILT_IN)
     if study is not None:
-        for technology in {
-            side.technology.id: side.technology for side in (study.candidate, *study.contenders)
-        }.values():
-            check_physics(technology, collector)
+        check_study(study, file, collector)
     collector.raise_if_any()
     if study is None:
         raise UsageError("the study could not be built")  # noqa: EM101 - the collector has said why
     return study, library
+
+
+def check_study(study: Study, file: TomlFile, collector: Collector) -> None:
+    """Judge what a study alone cannot know: the physics of its sets, and whether its circuit can be made."""
+    for technology in {side.technology.id: side.technology for side in (study.candidate, *study.contenders)}.values():
+        check_physics(technology, collector)
+    if study.circuit_spec is not None:
+        return
+    ends = [
+        (name, float(end[0]))
+        for name, value in study.values.items()
+        if value.spread is not None
+        for end in (value.spread.low, value.spread.high)
+    ]
+    scenario = {name: value.si.reshape(1, 1, 1) for name, value in study.values.items()}
+    for name, end in [("", 0.0), *ends]:
+        moved = {**scenario, name: np.full((1, 1, 1), end)} if name else scenario
+        try:
+            build_circuit(study, moved, Batch.best_estimate())
+        except UsageError as error:
+            dotted = f"value.{name}.spread" if name else "workload.circuit"
+            collector.add(file.problem(dotted, f"cannot be made with these values: {error}"))
+            return
 
 
 def check_physics(technology: ParameterSet, collector: Collector) -> None:

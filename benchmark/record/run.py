@@ -19,7 +19,6 @@ from benchmark.decide.policies import DIAGNOSTIC
 from benchmark.decide.requirements import RequirementResult, assess, functional_margins
 from benchmark.decide.self_checks import self_checks
 from benchmark.decide.verdict import InputMove, Verdict, judge, move_inputs
-from benchmark.errors import EvenloadError
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
@@ -326,11 +325,3 @@ def _result_warnings(primary: _Primary, verdict: Verdict) -> list[str]:
     if decisive and len(weak) * 3 > len(decisive):
         found.append(f"{len(weak)} of {len(decisive)} decisive inputs are targets, projections or assumptions")
     return found
-
-
-def rerun_inputs(record: dict[str, Any]) -> dict[str, str]:
-    """Return name -> text of every input file of a record, to be written into an empty folder and run again."""
-    if record.get("schema") != RECORD_SCHEMA:
-        message = f"record schema {record.get('schema')!r} is not the one this version reads ({RECORD_SCHEMA})"
-        raise EvenloadError(message)
-    return {item["name"]: item["text"] for item in record["files"]}

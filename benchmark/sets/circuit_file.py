@@ -21,7 +21,17 @@ if TYPE_CHECKING:
 
 __all__ = ["CircuitSpec", "LoadSpec", "NetSpec", "read_circuit"]
 
-_CELL = re.compile(r"^(inverter|nand[2-9]|nor[2-9]|nand1[0-6]|nor1[0-6])$")
+_CELL = re.compile(r"(?:nand|nor)([2-8])|(?:aoi|oai)([1-4]{2,4})")
+_CELLS = "inverter, nand2 to nand8, nor2 to nor8, aoi or oai with digits such as aoi21, at most 8 inputs"
+
+
+def _inputs(cell: str) -> tuple[str, ...]:
+    """Input names of a cell of the library; none when there is no such cell."""
+    if cell == "inverter":
+        return ("a",)
+    found = _CELL.fullmatch(cell)
+    count = 0 if found is None else int(found[1]) if found[1] else sum(int(digit) for digit in found[2])
+    return tuple("abcdefgh"[:count]) if count <= 8 else ()
 
 
 @dataclass(frozen=True)
@@ -114,12 +124,15 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
         collector.add(file.problem(f"{dotted}.{key}", what, found, allowed, hint))
 
     place = Place(file, dotted, None, frozenset())  # type: ignore[arg-type]
-    if not _CELL.match(net.driver):
-        refuse("driver", "is not a known cell", repr(net.driver), "inverter, nand2 to nand16, nor2 to nor16")
+    if not _inputs(net.driver):
+        refuse("driver", "is not a known cell", repr(net.driver), _CELLS)
     loads = []
     for load in net.loads:
-        if not _CELL.match(load.cell):
-            refuse("loads", "is not a known cell", repr(load.cell), "inverter, nand2 to nand16, nor2 to nor16")
+        inputs = _inputs(load.cell)
+        if not inputs:
+            refuse("loads", "is not a known cell", repr(load.cell), _CELLS)
+        elif load.input not in inputs:
+            refuse("loads", f"is not an input of {load.cell}", repr(load.input), ", ".join(inputs))
         if load.count < 0:
             refuse("loads", "has a negative count", str(load.count))
         loads.append(LoadSpec(load.cell, load.input, float(load.count)))

@@ -36,6 +36,8 @@ class CircuitDeclaration(Protocol):
     def optional(self) -> tuple[str, ...]: ...  # noqa: D102
     @property
     def length(self) -> str: ...  # noqa: D102
+    @property
+    def whole(self) -> tuple[str, ...]: ...  # noqa: D102
 
 
 class _Builder:
@@ -118,12 +120,15 @@ class _Builder:
             value = convert_value(QUANTITIES[name], table, [""], self.place(dotted), self.collector)
             if value is not None:
                 found[name] = value
+        circuit = self.circuits.get(self.parsed.workload.circuit)
+        for name in circuit.whole if circuit else ():
+            if name in found and found[name].spread is not None:
+                self.refuse(f"value.{name}.spread", "is not possible: the number shapes the netlist of the circuit")
         for name in sorted(must - set(self.parsed.value)):
             self.refuse(
                 f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", f"a value in {QUANTITIES[name].unit}"
             )
         lengths = [name for name in _LENGTHS if name in self.parsed.value]
-        circuit = self.circuits.get(self.parsed.workload.circuit)
         if len(lengths) > 1 or (circuit is not None and circuit.length == "required" and not lengths):
             self.refuse("value", f"needs exactly one of {' and '.join(_LENGTHS)}", ", ".join(lengths) or "none")
         return found
