@@ -305,6 +305,7 @@ def _used_sources(study: Study) -> set[str]:
         item = side.technology
         values += [*item.values.values(), *side.overhead.values(), *side.gating.values()]
         used |= {table.source for table in item.tables.values()} | {anchor.source for anchor in item.anchors}
+        used |= {source for _, source in item.rows_rest_on}
     if study.circuit_spec is not None:
         values += [value for table in study.circuit_spec.layers.values() for value in table.values()]
     return used | {value.source for value in values if value.source}

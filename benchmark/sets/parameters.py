@@ -48,6 +48,7 @@ class ParameterSet:
     text: str
     path: Path
     lines: Mapping[str, int] = field(default_factory=dict)
+    rows_rest_on: frozenset[tuple[str, str]] = frozenset()  # (evidence, source) of the stage results
 
     def position(self, node: str) -> int:
         """Return the index of a node label."""
@@ -249,7 +250,7 @@ def build_technology(
     _resolve_defaults(declaration, options, values, frozenset(parsed.value), file, collector)
     _check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
     tables = read_tables(parsed, declaration, file, sources, collector)
-    rows = read_rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
+    rows, rows_rest_on = read_rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
     if "rows" in declaration.tables:
         for node in parsed.nodes:
             if node not in rows:
@@ -287,6 +288,7 @@ def build_technology(
         file.text,
         file.path,
         file.lines,
+        rows_rest_on,
     )
 
 

@@ -15,7 +15,7 @@ from benchmark.sets.files import TomlFile
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import AnchorTable, DefaultsTable, Measure, RowTable, TechnologyFile
 from benchmark.sets.tables import TableFile, read_table
-from benchmark.sets.values import Place, convert_measure
+from benchmark.sets.values import Place, convert_measure, read_provenance
 
 __all__ = ["Anchor", "ModelDeclaration", "read_anchors", "read_rows", "read_tables"]
 
@@ -140,8 +140,8 @@ def read_rows(
     sources: frozenset[str],
     defaults: Any,
     collector: Collector,
-) -> dict[str, MeasuredTable]:
-    """Convert the stage results of a technology file, by node."""
+) -> tuple[dict[str, MeasuredTable], frozenset[tuple[str, str]]]:
+    """Convert the stage results of a technology file, by node; with the (evidence, source) pairs they rest on."""
     units = {
         "supply": "V",
         "temperature": "K",
@@ -153,6 +153,7 @@ def read_rows(
         "area": "m^2",
     }
     by_node: dict[str, dict[str, list[float]]] = {}
+    rests_on: set[tuple[str, str]] = set()
     for position, row in enumerate(rows):
         dotted = f"row.{position}"
         if row.node not in nodes:
@@ -166,17 +167,8 @@ def read_rows(
                 )
             )
             continue
-        source = row.source or defaults.source or ""
-        if source not in sources:
-            collector.add(
-                file.problem(
-                    f"{dotted}.source",
-                    "is not a known source",
-                    repr(source),
-                    "a key of sources.toml",
-                    nearest(source, sources),
-                )
-            )
+        provenance = read_provenance(row, Place(file, dotted, defaults, sources), collector)
+        rests_on.add((provenance["evidence"], provenance["source"]))
         columns = by_node.setdefault(row.node, {key: [] for key in units})
         for key, unit in units.items():
             measure = getattr(row, key)
@@ -185,7 +177,7 @@ def read_rows(
                 continue
             si = convert_measure(measure, unit, 0.0, Place(file, f"{dotted}.{key}", defaults, sources), collector)
             columns[key].append(np.nan if si is None else si)
-    return {
+    found = {
         node: MeasuredTable(
             "rows",
             {key: np.array(column) for key, column in columns.items()},
@@ -199,6 +191,7 @@ def read_rows(
         )
         for node, columns in by_node.items()
     }
+    return found, frozenset(rests_on)
 
 
 def read_tables(

@@ -500,6 +500,12 @@ def _check_invented(
             if table.evidence == "invented" and not build.parsed.demonstration:
                 build.refuse("demonstration", "must be true: a table of an input set is invented", table.file)
                 return
+        if (
+            any(evidence == "invented" for evidence, _ in side.technology.rows_rest_on)
+            and not build.parsed.demonstration
+        ):
+            build.refuse("demonstration", "must be true: stage results of a set are invented", side.technology.id)
+            return
     invented = sorted({value.name for group in groups for value in group if value.evidence == "invented"})
     if invented and not build.parsed.demonstration:
         build.refuse("demonstration", "must be true: some inputs are invented", ", ".join(invented[:5]))

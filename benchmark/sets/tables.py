@@ -18,6 +18,7 @@ from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile, read_bytes, read_toml
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import DefaultsTable, FileModel, Number, Text, validate
+from benchmark.sets.values import Place, read_provenance
 from benchmark.units import Unit, UnitError, parse_unit, to_si
 
 __all__ = ["COLUMN_UNITS", "TableFile", "read_table"]
@@ -89,18 +90,6 @@ class Sidecar(FileModel):
     interpolate: InterpolateTable
     column: Annotated[dict[str, ColumnTable], Field(min_length=2)]
 
-    @property
-    def defaults(self) -> DefaultsTable:
-        """Provenance shared by the whole table."""
-        return DefaultsTable(
-            evidence=self.evidence,
-            source=self.source,
-            conditions=self.conditions,
-            owner=self.owner or None,
-            where=self.where,
-            note=self.note or None,
-        )
-
 
 @dataclass(frozen=True)
 class TableFile:
@@ -135,16 +124,7 @@ def read_table(
         collector.add(
             file.problem("file", "does not name the table beside the sidecar", repr(sidecar.file), repr(csv_path.name))
         )
-    if sidecar.source not in sources:
-        collector.add(
-            file.problem(
-                "source",
-                "is not a known source",
-                repr(sidecar.source),
-                "a key of sources.toml",
-                nearest(sidecar.source, sources),
-            )
-        )
+    read_provenance(sidecar, Place(file, "", DefaultsTable(), sources), collector)
     units = _column_units(sidecar, file, collector)
     raw = read_bytes(csv_path, shown_name, collector)
     if raw is None:
@@ -181,7 +161,7 @@ def read_table(
         hashlib.sha256(raw).hexdigest(),
         file.sha256,
         shown_name,
-        raw.decode("utf-8-sig"),
+        raw.decode("utf-8"),
         file.text,
     )
 

@@ -30,7 +30,7 @@ from benchmark.sets.schema import (
 )
 from benchmark.units import Unit, UnitError, from_si, parse_unit, to_si
 
-__all__ = ["Spread", "Value", "convert_measure", "convert_range", "convert_value"]
+__all__ = ["Spread", "Value", "convert_measure", "convert_range", "convert_value", "read_provenance"]
 
 #: half-width of the central 95 % of a normal distribution, in standard deviations
 NORMAL_95 = 1.959963984540054
@@ -271,8 +271,10 @@ def _convert_lognormal(table: LogNormal, quantity: Quantity, si: NDArray[np.floa
     return Spread("lognormal", si / factor, high, np.full(si.shape, ln_sd))
 
 
-def _provenance(table: ValueTable, place: Place, collector: Collector) -> dict[str, str]:
+def read_provenance(table: Any, place: Place, collector: Collector) -> dict[str, str]:
+    """Collect evidence, source and the rest of a value, a stage result or a table, with the file's defaults."""
     defaults, file = place.defaults, place.file
+    inside = f"{place.dotted}." if place.dotted else ""
     found = {
         key: getattr(table, key) or getattr(defaults, key, None) or ""
         for key in ("evidence", "source", "where", "conditions", "note", "owner")
@@ -283,7 +285,7 @@ def _provenance(table: ValueTable, place: Place, collector: Collector) -> dict[s
     elif evidence is None:
         collector.add(
             file.problem(
-                f"{place.dotted}.evidence",
+                f"{inside}evidence",
                 "is not an evidence class",
                 repr(found["evidence"]),
                 ", ".join(EVIDENCE),
@@ -301,7 +303,7 @@ def _provenance(table: ValueTable, place: Place, collector: Collector) -> dict[s
     elif found["source"] not in place.sources:
         collector.add(
             file.problem(
-                f"{place.dotted}.source",
+                f"{inside}source",
                 "is not a known source",
                 repr(found["source"]),
                 "a key of sources.toml",
@@ -317,7 +319,7 @@ def convert_value(
     """Convert one value table to SI; problems go to the collector and None comes back."""
     file = place.file
     before = len(collector.problems)
-    provenance = _provenance(table, place, collector)
+    provenance = read_provenance(table, place, collector)
     unit = unit_for(quantity, table.unit, place, collector)
     if (table.value is None) == (table.by_node is None):
         collector.add(file.problem(place.dotted, "needs exactly one of value and by_node"))
