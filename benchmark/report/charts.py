@@ -1,0 +1,28 @@
+"""Every chart of a record, in the order of the report (layer 9)."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+from benchmark.report.advantage import advantage_against_time, advantage_by_node
+from benchmark.report.energy_delay import energy_delay
+from benchmark.report.figure import Chart
+from benchmark.report.margins import requirement_margins
+from benchmark.report.parts import where_it_goes
+from benchmark.report.swings import input_swings
+
+__all__ = ["charts"]
+
+
+def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
+    """Return key -> chart; a chart with nothing to draw has no specification and says why in its caption."""
+    found = [
+        requirement_margins(record),
+        energy_delay(record),
+        advantage_against_time(record),
+        *where_it_goes(record),
+        input_swings(record),
+        advantage_by_node(record),
+    ]
+    return {chart.key: chart for chart in found}

@@ -1,0 +1,220 @@
+"""Energy per operation against time per operation: what is plotted, and its words (layer 9)."""
+
+from __future__ import annotations
+
+import itertools
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from typing import Any
+
+from benchmark.report.figure import Chart, Row, checked
+from benchmark.report.style import LogAxis, positive, spec
+from benchmark.report.tables import curve_rows, envelope_rows, policy_rows
+from benchmark.report.words import amount, is_number, plural, state_word
+
+__all__ = ["FEASIBLE", "Limits", "Plane", "energy_delay", "envelope_path", "limits_of", "side_key", "side_name"]
+
+Record = Mapping[str, Any]
+WIDTH, HEIGHT = 610.0, 420.0
+POLICY_SHAPES = ("circle", "square", "diamond", "triangle-up", "cross", "triangle-down")
+FEASIBLE = state_word(True)
+#: how far beyond the feasible points the chart looks
+BEYOND = 4.0
+
+
+@dataclass(frozen=True)
+class Limits:
+    """Bounds of the plane that come from the study: None when there is none."""
+
+    deadline: float | None
+    energy: float | None
+
+
+def limits_of(record: Record) -> Limits:
+    """Return the deadline [s] and, when a policy uses it, the allowed energy [J]."""
+    deadline = next((row["demanded"] for row in record["requirements"] if row["name"] == "deadline"), None)
+    if not is_number(deadline):
+        deadline = record["study"]["required_time"]
+    energy = record["study"]["required_energy"]
+    uses = {record["study"]["primary_policy"], *record["study"]["also"]}
+    return Limits(
+        deadline if is_number(deadline) else None, energy if is_number(energy) and "iso-energy" in uses else None
+    )
+
+
+def side_key(row: Mapping[str, Any]) -> str:
+    """Return the key of a side: both roles may carry the same id."""
+    return f"{row['role']} {row['side']}"
+
+
+def side_name(record: Record, key: str) -> str:
+    """Return the words for a side: the title of the candidate, the name the study gives a contender."""
+    side = next(side for side in record["sides"] if f"{side['role']} {side['id']}" == key)
+    return str(side["title"] if side["role"] == "candidate" else side["id"])
+
+
+def _drawn(record: Record) -> tuple[dict[str, list[Row]], int]:
+    """Return side key -> points of the frozen choice of the primary policy (else the first), and how many are left."""
+    chosen = {
+        side_key(row): (row["size"], row["threshold_shift_V"])
+        for row in policy_rows(record)
+        if row["policy"] == record["policies"][0]["policy"] and row["state"] == FEASIBLE
+    }
+    groups: dict[str, dict[tuple[float, float], list[Row]]] = {}
+    for row in curve_rows(record):
+        groups.setdefault(side_key(row), {}).setdefault((row["size"], row["threshold_shift_V"]), []).append(row)
+    drawn, left_out = {}, 0
+    for key, choices in groups.items():
+        choice = chosen.get(key, next(iter(choices)))
+        drawn[key] = choices.get(choice, next(iter(choices.values())))
+        left_out += len(choices) - 1
+    return drawn, left_out
+
+
+@dataclass(frozen=True)
+class Plane:
+    """The axes with everything plotted on them."""
+
+    x: LogAxis
+    y: LogAxis
+    curves: dict[str, list[Row]]
+    envelope: list[Row]
+    marks: list[Row]
+    limits: Limits
+    dropped: int
+    outside: int
+    left_out: int
+
+    def pixel(self, row: Mapping[str, Any]) -> tuple[float, float]:
+        """Return the place of a point in pixels."""
+        return self.x.pixel(row["time_s"]), self.y.pixel(row["energy_J"])
+
+
+def _marks(record: Record) -> list[Row]:
+    """Design points: the candidate and the strongest contender of each policy."""
+    shapes = {policy["policy"]: POLICY_SHAPES[i % len(POLICY_SHAPES)] for i, policy in enumerate(record["policies"])}
+    ambition = {f"{side['role']} {side['id']}": side["ambition"] for side in record["sides"]}
+    columns = ("policy", "role", "side", "supply_V", "time_s", "energy_J")
+    rows = [
+        {name: row[name] for name in columns}
+        | {"shape": shapes[row["policy"]], "hollow": ambition.get(side_key(row), "today") != "today"}
+        for row in policy_rows(record)
+        if row["state"] == FEASIBLE and (row["role"] == "candidate" or row["strongest"])
+    ]
+    return positive(rows, "time_s", "energy_J")[0]
+
+
+def _plane(record: Record) -> Plane | None:
+    drawn, left_out = _drawn(record)
+    usable, dropped = {}, 0
+    for key, rows in drawn.items():
+        usable[key], lost = positive(rows, "time_s", "energy_J")
+        dropped += lost
+    everything = list(itertools.chain.from_iterable(usable.values()))
+    if not everything:
+        return None
+    envelope, marks = positive(envelope_rows(record), "time_s", "energy_J")[0], _marks(record)
+    core: list[Row] = [row for row in everything if row["state"] == FEASIBLE] or everything
+    core = [*core, *envelope, *marks]
+    limits = limits_of(record)
+    times, energies = [row["time_s"] for row in core], [row["energy_J"] for row in core]
+    if limits.deadline is not None and min(times) / 1e3 < limits.deadline < max(times) * 1e3:
+        times.append(limits.deadline)
+    x = LogAxis.around([min(times) / BEYOND, max(times) * BEYOND], WIDTH, "s", "time per operation (s)", room=0.0)
+    span = [min(energies) / 2.0, max(energies) * BEYOND]
+    y = LogAxis.around(span, HEIGHT, "J", "energy per operation (J)", vertical=True, room=0.0)
+    curves = {
+        key: [row for row in rows if x.holds(row["time_s"]) and y.holds(row["energy_J"])]
+        for key, rows in usable.items()
+    }
+    shown = sum(map(len, curves.values()))
+    return Plane(x, y, curves, envelope, marks, limits, dropped, len(everything) - shown, left_out)
+
+
+def envelope_path(envelope: Sequence[Row]) -> list[Row]:
+    """Join neighbours of one curve straight, and steps between curves at a right angle (nothing lies between them)."""
+    path: list[Row] = []
+    for row in envelope:
+        if path and row["side"] != path[-1]["side"]:
+            path.append({**path[-1], "time_s": row["time_s"], "corner": True})
+        path.append({**row, "corner": False})
+    return path
+
+
+def _points(plane: Plane) -> tuple[Row, ...]:
+    """Return the plotted points as one table."""
+    place = ("role", "side", "supply_V", "time_s", "energy_J")
+    rows: list[Row] = [
+        {"series": "curve"} | {name: row[name] for name in (*place, "state", "reason")} | {"policy": ""}
+        for points in plane.curves.values()
+        for row in points
+    ]
+    for row in envelope_path(plane.envelope):
+        series = "reference envelope corner" if row["corner"] else "reference envelope"
+        named = {"role": "contender"} | {name: row[name] for name in place[1:]}
+        rows.append({"series": series} | named | {"state": FEASIBLE, "reason": "", "policy": ""})
+    rows += [
+        {"series": "design point"}
+        | {name: row[name] for name in place}
+        | {"state": FEASIBLE, "reason": "", "policy": row["policy"]}
+        for row in plane.marks
+    ]
+    return tuple(rows)
+
+
+def _caption(plane: Plane) -> str:
+    words = [
+        "Each technology is a curve swept over its supply, with supplies marked along it: drawn through where every "
+        "hard requirement holds, dotted where one fails."
+    ]
+    if plane.envelope:
+        words.append(
+            "The broad grey line is the reference: least energy of the contenders' feasible points for each time."
+        )
+    else:
+        words.append("No contender has a feasible point, so there is no reference line.")
+    if plane.marks:
+        words.append("Larger symbols are the design points of the policies, one shape per policy.")
+        if any(mark["hollow"] for mark in plane.marks):
+            words.append("Hollow: the technology is a target or a limit, not one of today.")
+    deadline = plane.limits.deadline
+    if deadline is not None:
+        here = plane.x.holds(deadline)
+        words.append(f"{'Hatched: later than' if here else 'Outside the axes:'} the deadline {amount(deadline, 's')}.")
+    if plane.outside:
+        words.append(f"{plural(plane.outside, 'swept point')} outside the axes not shown.")
+    if plane.dropped:
+        words.append(f"{plural(plane.dropped, 'point')} without a positive time and energy dropped from the log axes.")
+    if plane.left_out:
+        words.append(f"{plural(plane.left_out, 'other frozen choice')} (size, threshold shift) only in the tables.")
+    return " ".join(words)
+
+
+def _alternative(record: Record, plane: Plane) -> str:
+    words = []
+    for key, rows in sorted(plane.curves.items()):
+        good = [row for row in rows if row["state"] == FEASIBLE]
+        name = side_name(record, key)
+        if not good:
+            words.append(f"{name}: no feasible point.")
+            continue
+        fast = min(good, key=lambda row: row["time_s"])
+        least = min(good, key=lambda row: row["energy_J"])
+        words.append(
+            f"{name}: fastest feasible point {amount(fast['time_s'], 's')} at {amount(fast['energy_J'], 'J')}, "
+            f"least energy {amount(least['energy_J'], 'J')} at {amount(least['time_s'], 's')}."
+        )
+    return "Energy per operation against time per operation. " + " ".join(words)
+
+
+def energy_delay(record: Record) -> Chart:
+    """Draw swept curves, the reference envelope and the design points of all policies."""
+    from benchmark.report.energy_delay_layers import layers
+
+    title = "Energy against time per operation"
+    plane = _plane(record)
+    if plane is None:
+        words = "Not drawn: no design point of any side has a positive time and energy."
+        return Chart("energy-delay", title, None, words, words)
+    drawing = checked(spec(layers(record, plane), WIDTH, HEIGHT, (74.0, 10.0, 12.0, 48.0)))
+    return Chart("energy-delay", title, drawing, _caption(plane), _alternative(record, plane), _points(plane))

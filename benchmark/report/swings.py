@@ -1,0 +1,200 @@
+"""What moves the answer: the advantage over the range of each input moved alone (layer 9)."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from benchmark.report.advantage import levels
+from benchmark.report.drawing import Canvas, Words
+from benchmark.report.figure import Chart, Row, checked
+from benchmark.report.placing import Box, text_width, wrapped
+from benchmark.report.style import GREY, INK, LinearAxis, LogAxis, spec
+from benchmark.report.words import flat_powers, is_number, listed, number, plural, spaced
+
+__all__ = ["input_swings", "ranged_moves"]
+
+Record = Mapping[str, Any]
+WIDTH, LEFT, RIGHT = 440.0, 216.0, 34.0
+ROW, BAR, TOP = 40.0, 11.0, 48.0
+MOST = 12
+#: marker and word of the evidence class, at the best estimate of each bar
+_MARKERS = {
+    "defined": "circle",
+    "measured": "circle",
+    "published": "square",
+    "choice": "diamond",
+    "extracted": "triangle-up",
+    "simulated": "triangle-up",
+    "derived": "triangle-up",
+    "projected": "triangle-down",
+    "target": "triangle-down",
+    "assumed": "cross",
+    "invented": "triangle-right",
+}
+
+
+def ranged_moves(record: Record) -> list[Row]:
+    """Return the inputs with a stated range that move the result, in the order of the record (largest swing first)."""
+    return [dict(row) for row in record["verdict"]["moves"] if row["ranged"] and row["matters"]]
+
+
+def _name(key: str) -> tuple[str, str]:
+    owner, _, name = key.rpartition(".")
+    return name.replace("_", " "), owner
+
+
+def _end(row: Row, which: str) -> str:
+    return f"{which} {spaced(row[which], row['unit'], 2)}"
+
+
+def _axis(record: Record, rows: Sequence[Row], height: float) -> LogAxis:
+    best = record["verdict"]["advantage"]
+    ends = [row[name] for row in rows for name in ("advantage_low", "advantage_high")]
+    values = [value for value in [*ends, best] if is_number(value) and value > 0.0]
+    values += [level for level, _ in levels(record) if min(values) / 30.0 < level < max(values) * 30.0]
+    return LogAxis.around(values, WIDTH, "1", "advantage (reference / candidate)", room=0.26)
+
+
+def _ends(axis: LogAxis, row: Row) -> dict[str, tuple[float, str, bool]]:
+    """Return, for low and high, the pixel where the bar ends, the words, and whether a side is infeasible there."""
+    best = row["best_advantage"]
+    found = {}
+    for which in ("low", "high"):
+        value = row[f"advantage_{which}"]
+        known = is_number(value) and value > 0.0
+        place = axis.pixel(value) if known else axis.pixel(best)
+        found[which] = (place, _end(row, which) + ("" if known else ": infeasible"), not known)
+    return found
+
+
+def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float) -> None:
+    ends = _ends(axis, row)
+    places = sorted(place for place, _, _ in ends.values())
+    left, right = places[0], max(places[1], places[0] + 1.0)
+    if any(gone for _, _, gone in ends.values()):  # towards an end where a side is infeasible, the bar has no known end
+        canvas.rules([(right, middle, WIDTH, middle)], color=GREY, strokeWidth=1.6, strokeDash=[2, 3])
+    canvas.boxes(
+        [Box(left, middle - BAR / 2, right, middle + BAR / 2)], color="#bcd7ea", stroke="#0072B2", strokeWidth=1.0
+    )
+    best = axis.pixel(row["best_advantage"])
+    marker = _MARKERS.get(row["evidence"], "circle")
+    canvas.symbols([(best, middle)], shape=marker, size=55, color=INK, stroke=INK, strokeWidth=1.2)
+    words = []
+    low, high = ends["low"], ends["high"]
+    first, second = (low, high) if (low[0], not low[2]) <= (high[0], not high[2]) else (high, low)
+    words.append(Words(first[1], left - 5.0, middle, "right"))
+    if second[2]:
+        words.append(Words(second[1], WIDTH - 6.0, middle, "right"))
+    else:
+        words.append(Words(second[1], right + 5.0, middle))
+    if text_width(flat_powers(first[1])) + 8.0 > left:
+        words[0] = Words(first[1], left, middle - 12.0)
+    if row["straddles"] and is_number(row["flip"]) and axis.holds(required):
+        x = axis.pixel(required)
+        canvas.rules([(x, middle - 10.0, x, middle + 10.0)], color=INK, strokeWidth=3.0)
+        text = f"flips at {spaced(row['flip'], row['unit'], 2)}"
+        words.append(Words(text, x, middle + 15.0, "center", bold=True))
+    canvas.words(words, back=True)
+
+
+def _lines(canvas: Canvas, record: Record, axis: LogAxis, height: float) -> None:
+    """Draw the best estimate, 1 and M through all bars, each named in a row of its own at the top."""
+    wanted = [level for level, _ in levels(record)]
+    best = float(record["verdict"]["advantage"])
+    lines = [(best, f"best estimate {number(best, 2, wanted)}"), *levels(record)]
+    words = []
+    for position, (value, name) in enumerate(line for line in lines if axis.holds(line[0])):
+        x, y = axis.pixel(value), 9.0 + 14.0 * position
+        estimate = name.startswith("best")
+        canvas.rules(
+            [(x, y + 6.0, x, height)],
+            color=INK,
+            strokeWidth=1.6 if "required" in name else 1.0,
+            strokeDash=[1, 0] if estimate else [6, 3],
+        )
+        half = 0.5 * text_width(name, bold=True)
+        words.append(Words(name, min(max(x, half + 3.0), WIDTH - half - 3.0), y, "center", bold=True))
+    canvas.words(words, back=True)
+
+
+def input_swings(record: Record) -> Chart:
+    """Draw at most twelve inputs, largest swing first."""
+    key, title = "input-swings", "What moves the answer"
+    moves, best = ranged_moves(record), record["verdict"]["advantage"]
+    if not moves or not is_number(best):
+        why = (
+            "no advantage exists at the best estimate" if not is_number(best) else "no input has a range that moves it"
+        )
+        words = f"Not drawn: {why}."
+        return Chart(key, title, None, words, words)
+    rows: list[Row] = [{**row, "best_advantage": best} for row in moves[:MOST]]
+    height = ROW * len(rows) + TOP + 4.0
+    axis = _axis(record, rows, height)
+    canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
+    canvas.frame()
+    _lines(canvas, record, axis, height)
+    required = float(record["study"]["required_advantage"])
+    for position, row in enumerate(rows):
+        middle = TOP + ROW * (position + 0.45)
+        _bar(canvas, axis, row, middle, required)
+        name, owner = _name(row["key"])
+        canvas.words(
+            [
+                Words(wrapped(name, 34, 1)[0], -10.0, middle - 6.5, "right", bold=True),
+                Words(wrapped(f"{owner}; {row['evidence']}", 38, 1)[0], -10.0, middle + 6.5, "right"),
+            ]
+        )
+    drawing = checked(spec(canvas.layers, WIDTH, height, (LEFT, 6.0, RIGHT, 48.0)))
+    points = tuple(
+        {name: row[name] for name in ("key", "unit", "evidence", "low", "best", "high", "straddles")}
+        | {
+            "advantage_at_low": "infeasible" if row["advantage_low"] is None else row["advantage_low"],
+            "advantage_at_best": best,
+            "advantage_at_high": "infeasible" if row["advantage_high"] is None else row["advantage_high"],
+            "flips_at": "does not flip" if row["flip"] is None else row["flip"],
+        }
+        for row in rows
+    )
+    words = _summary(record, rows, moves)
+    return Chart(key, title, drawing, _caption(record, words, moves), f"What moves the answer. {words}", points)
+
+
+def _summary(record: Record, rows: Sequence[Row], moves: Sequence[Row]) -> str:
+    flips = [
+        f"{_name(row['key'])[0]} at {spaced(row['flip'], row['unit'], 2)}"
+        for row in moves
+        if row["straddles"] and is_number(row["flip"])
+    ]
+    ends = [row for row in moves if row["straddles"] and not is_number(row["flip"])]
+    first = rows[0]
+    parts = [f"Largest swing: {_name(first['key'])[0]} ({_range(first)})."]
+    required = number(record["study"]["required_advantage"], 3)
+    if flips:
+        parts.append(f"Alone, these carry the advantage across {required}: {listed(flips)}.")
+    if ends:
+        parts.append(f"At one end of {listed(_name(row['key'])[0] for row in ends)} a side is infeasible.")
+    if not flips and not ends:
+        parts.append(f"No input alone carries the advantage across {required}.")
+    return " ".join(parts)
+
+
+def _range(row: Row) -> str:
+    known = [row[name] for name in ("advantage_low", "advantage_high") if is_number(row[name])]
+    if len(known) < 2:
+        return "infeasible at one end"
+    return f"advantage {number(min(known))} to {number(max(known))}"
+
+
+def _caption(record: Record, words: str, moves: Sequence[Row]) -> str:
+    unranged = sum(not row["ranged"] for row in record["verdict"]["moves"])
+    parts = [
+        "Each input moved alone over its stated range, both sides re-optimised; the symbol stands at the best estimate "
+        "and its shape tells the evidence class named at the left.",
+        words,
+    ]
+    if len(moves) > MOST:
+        parts.append(f"{plural(len(moves) - MOST, 'further input')} with smaller swing in the table.")
+    if unranged:
+        parts.append(f"{plural(unranged, 'input')} that move the result have no stated range and no bar.")
+    return " ".join(parts)
