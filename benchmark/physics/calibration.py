@@ -19,7 +19,7 @@ from dataclasses import dataclass, replace
 import numpy as np
 from numpy.typing import NDArray
 
-from benchmark.physics import virtual_source
+from benchmark.physics import drive, virtual_source
 from benchmark.physics.virtual_source import Transistor
 
 __all__ = ["Calibration", "Targets", "calibrate"]
@@ -103,7 +103,7 @@ def calibrate(template: Transistor, targets: Targets) -> Calibration:
         tried = _currents_met(replace(t, mobility=np.exp(log_mobility)), targets).applied_to(t)
         high = virtual_source.drain_current(tried, v, 0.5 * v)
         low = virtual_source.drain_current(tried, 0.5 * v, v)
-        return np.asarray(np.log(virtual_source.effective_current(high, low)) - wanted)
+        return np.asarray(np.log(drive.effective_current(high, low)) - wanted)
 
     first = np.log(np.asarray(t.mobility, dtype=np.float64)) + np.zeros(_shape(t, targets))
     root, found = _secant(mismatch, first, 0.2, 0.7)
@@ -158,7 +158,7 @@ def _inversion_capacitance(t: Transistor, targets: Targets) -> Array:
     """C_inv that gives the switching capacitance at this threshold: Q(V, 0) is proportional to C_inv."""
     v = np.asarray(targets.supply, dtype=np.float64)
     wanted = np.asarray(targets.switching_capacitance)
-    full = virtual_source.switching_capacitance(t, v, targets.edge_capacitance)
+    full = drive.switching_capacitance(t, v, targets.edge_capacitance)
     edges = 3.0 * np.asarray(targets.edge_capacitance)
     scale = (wanted - edges) / (full - edges)
     return np.where(scale > 0.0, t.inversion_capacitance * scale, np.nan)

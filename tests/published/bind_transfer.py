@@ -9,7 +9,7 @@ import numpy as np
 
 from benchmark.circuits import chain_rule, functional, integral, transfer, transient
 from benchmark.devices.record import Array
-from benchmark.physics import limits, noise, regeneration, two_pole, virtual_source
+from benchmark.physics import drive, limits, noise, regeneration, two_pole, virtual_source
 from tests.factories import ohmic_pair
 from tests.published.rows import Binding
 from tests.soft_window import C_NODE, RC, soft_pair
@@ -223,10 +223,10 @@ def _transistor_chain(supply: float) -> float:
     def fields(t: virtual_source.Transistor) -> dict[str, Any]:
         high = virtual_source.drain_current(t, np.asarray(supply), np.asarray(0.5 * supply))
         low = virtual_source.drain_current(t, np.asarray(0.5 * supply), np.asarray(supply))
-        drive = virtual_source.effective_current(high, low)
+        effective = drive.effective_current(high, low)
         return {
             "current": lambda control, path: virtual_source.drain_current(t, control, path),
-            "resistance": np.asarray(supply / (2.0 * math.log(2.0) * drive)),
+            "resistance": np.asarray(supply / (2.0 * math.log(2.0) * effective)),
         }
 
     pair = ohmic_pair(

@@ -7,7 +7,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from benchmark.physics import calibration, stacking
+from benchmark.physics import calibration, drive, stacking
 from benchmark.physics import virtual_source as vs
 from tests.published.rows import Binding
 
@@ -127,7 +127,7 @@ def _calibrated(name: str) -> vs.Transistor:
 
 def _effective(t: vs.Transistor, supply: float) -> float:
     v = np.float64(supply)
-    return float(vs.effective_current(vs.drain_current(t, v, 0.5 * v), vs.drain_current(t, 0.5 * v, v)))
+    return float(drive.effective_current(vs.drain_current(t, v, 0.5 * v), vs.drain_current(t, 0.5 * v, v)))
 
 
 SOLVE = "calibration:calibrate"
@@ -138,7 +138,7 @@ for _suffix, _name in ((".2", "n32"), (".6", "n45"), (".8", "p45")):
 for _suffix, _name in (("", "n32"), (".2", "p32"), (".3", "n45"), (".4", "p45")):
     _bind(
         f"dev.M2-Ieff{_suffix}",
-        f"virtual_source:effective_current {CURRENT}",
+        f"drive:effective_current {CURRENT}",
         lambda name=_name: _effective(_calibrated(name), 1.0),
     )
 
@@ -148,17 +148,17 @@ for _suffix, _name in (("", "n32"), (".2", "p32"), (".3", "n45"), (".4", "p45"))
 
 def _mean_delay(supply: float) -> float:
     return 0.5 * sum(
-        float(vs.drive_delay(3e-15, supply, _effective(_calibrated(name), supply))) for name in ("n32", "p32")
+        float(drive.drive_delay(3e-15, supply, _effective(_calibrated(name), supply))) for name in ("n32", "p32")
     )
 
 
 for _suffix, _supply in ((".2", 1.0), (".4", 0.8), (".6", 0.6), (".8", 0.5)):
-    _bind(f"dev.M3-delay{_suffix}", "virtual_source:drive_delay", lambda supply=_supply: _mean_delay(supply))
+    _bind(f"dev.M3-delay{_suffix}", "drive:drive_delay", lambda supply=_supply: _mean_delay(supply))
 
 _bind(
     "cir.IEFF",
-    "virtual_source:drive_delay virtual_source:effective_current",
-    lambda: float(vs.drive_delay(1e-15, 1.0, vs.effective_current(0.8e-3, 0.4e-3))) * 1e12,
+    "drive:drive_delay drive:effective_current",
+    lambda: float(drive.drive_delay(1e-15, 1.0, drive.effective_current(0.8e-3, 0.4e-3))) * 1e12,
 )
 
 
@@ -193,8 +193,8 @@ _bind(
 EDGE = 1.47e-10 + 0.345e-10 * 4.5e-9 / 1.3e-9
 _bind(
     "dev.M7-Cin.2",
-    "virtual_source:switching_capacitance",
-    lambda: vs.switching_capacitance(_calibrated("n32"), np.float64(1.0), EDGE),
+    "drive:switching_capacitance",
+    lambda: drive.switching_capacitance(_calibrated("n32"), np.float64(1.0), EDGE),
 )
 
 # --- open stacks -----------------------------------------------------------------------------------------------------

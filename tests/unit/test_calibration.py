@@ -7,6 +7,7 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
+from benchmark.physics import drive
 from benchmark.physics import virtual_source as vs
 from benchmark.physics.calibration import Calibration, Targets, calibrate
 
@@ -40,7 +41,7 @@ def _errors(found: Calibration, targets: Targets) -> dict[str, np.ndarray]:
     if targets.effective_current is not None:
         errors["effective"] = effective / targets.effective_current - 1.0
     if targets.switching_capacitance is not None:
-        capacitance = vs.switching_capacitance(t, v, targets.edge_capacitance)
+        capacitance = drive.switching_capacitance(t, v, targets.edge_capacitance)
         errors["capacitance"] = capacitance / targets.switching_capacitance - 1.0
     return errors
 

@@ -12,6 +12,7 @@ import numpy as np
 import pytest
 from scipy.integrate import solve_ivp
 
+from benchmark.physics import drive
 from benchmark.physics import virtual_source as vs
 from benchmark.physics.calibration import Targets, calibrate
 
@@ -82,7 +83,7 @@ class _Chain:
         wide = self.t.fermi_width * self.t.thermal_voltage
         beta = np.asarray(self.t.saturation_exponent)
         r = d / np.sqrt(state.fermi * wide**2 + (state.charge / self.t.inversion_capacitance) ** 2)
-        source, drain_share = vs.charge_partition(1.0 - r * (1.0 + r**beta) ** (-1.0 / beta))
+        source, drain_share = drive.charge_partition(1.0 - r * (1.0 + r**beta) ** (-1.0 / beta))
         charge = self.t.length * state.charge
         at_drain = charge * np.where(reversed_, source, drain_share)
         total = charge * (source + drain_share)
@@ -138,10 +139,10 @@ def _closed_form(n: vs.Transistor, p: vs.Transistor, edge: float, supply: float)
     capacitance, slowness = 0.0, 0.0
     for t in (n, p):
         high, low = vs.drain_current(t, v, 0.5 * v), vs.drain_current(t, 0.5 * v, v)
-        weight = vs.miller_weight(vs.drain_current(t, 0.75 * v, 0.75 * v) / high)
-        capacitance += FAN_OUT * float(vs.switching_capacitance(t, v, edge, weight)) + 2.0 * edge
-        slowness += 0.5 / float(vs.effective_current(high, low))
-    return float(vs.drive_delay(capacitance, supply, 1.0) * slowness)
+        weight = drive.miller_weight(vs.drain_current(t, 0.75 * v, 0.75 * v) / high)
+        capacitance += FAN_OUT * float(drive.switching_capacitance(t, v, edge, weight)) + 2.0 * edge
+        slowness += 0.5 / float(drive.effective_current(high, low))
+    return float(drive.drive_delay(capacitance, supply, 1.0) * slowness)
 
 
 @pytest.mark.parametrize(("name", "supply"), CASES)

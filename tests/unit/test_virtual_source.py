@@ -8,6 +8,7 @@ import mpmath
 import numpy as np
 import pytest
 
+from benchmark.physics import drive
 from benchmark.physics import virtual_source as vs
 
 N32 = vs.Transistor(
@@ -143,21 +144,21 @@ def test_slope_factor_is_one_at_the_thermionic_limit():
 
 
 def test_charge_shares():
-    assert vs.charge_partition(1.0) == (0.5, 0.5)
-    assert sum(vs.charge_partition(0.0)) == pytest.approx(2.0 / 3.0)
+    assert drive.charge_partition(1.0) == (0.5, 0.5)
+    assert sum(drive.charge_partition(0.0)) == pytest.approx(2.0 / 3.0)
     whole = N32.width * N32.length * vs.channel_state(N32, np.float64(1.0), np.float64(0.0)).charge
-    assert vs.gate_charge(N32, np.float64(1.0), np.float64(0.0)) == pytest.approx(float(whole), rel=1e-15)
-    saturated = vs.gate_charge(N32, np.float64(1.0), np.float64(50.0))
+    assert drive.gate_charge(N32, np.float64(1.0), np.float64(0.0)) == pytest.approx(float(whole), rel=1e-15)
+    saturated = drive.gate_charge(N32, np.float64(1.0), np.float64(50.0))
     charge = vs.channel_state(N32, np.float64(1.0), np.float64(50.0)).charge
     assert saturated == pytest.approx(float(2.0 / 3.0 * N32.width * N32.length * charge), rel=0.02)
 
 
 def test_switching_capacitance_counts_the_drain_edge_with_its_weight():
     edge = 0.2e-9
-    single, double = (vs.switching_capacitance(N32, np.float64(1.0), edge, m) for m in (1.0, 2.0))
+    single, double = (drive.switching_capacitance(N32, np.float64(1.0), edge, m) for m in (1.0, 2.0))
     assert double - single == pytest.approx(edge * N32.width, rel=1e-9)
 
 
 def test_miller_weight_falls_to_its_floor():
     ratio = np.array([0.0, 0.1, 0.3, 0.52, 0.8])
-    np.testing.assert_allclose(vs.miller_weight(ratio), [2.32, 2.038, 1.474, 0.8536, 0.8536])
+    np.testing.assert_allclose(drive.miller_weight(ratio), [2.32, 2.038, 1.474, 0.8536, 0.8536])
