@@ -7,7 +7,7 @@ from typing import Any
 
 from benchmark.units import format_si
 
-__all__ = ["answer_sentence", "engineering", "verdict_text"]
+__all__ = ["answer_sentence", "engineering", "factor", "verdict_text"]
 
 _PREFIXES = (
     (1e15, "P"),
@@ -44,6 +44,14 @@ def engineering(value: float | str | None, unit: str, digits: int = 3) -> str:
     return f"{value / factor:.{digits}g} {prefix}{unit}"
 
 
+def factor(value: float, *limits: float) -> str:
+    """Print a factor with two significant digits, with more where rounding would cross one of ``limits``."""
+    digits = 2
+    while digits < 17 and any((float(f"{value:.{digits}g}") >= limit) != (value >= limit) for limit in limits):
+        digits += 1
+    return f"{float(f'{value:.{digits}g}'):.{max(digits, 6)}g}"
+
+
 def answer_sentence(record: Mapping[str, Any]) -> str:
     """One sentence: class, verdict, advantage with range, M, policy, strongest reference."""
     study, verdict = record["study"], record["verdict"]
@@ -55,12 +63,13 @@ def answer_sentence(record: Mapping[str, Any]) -> str:
     sentence = f"{head}{word} for {candidate['title']!r} in {study['product_class']}"
     if verdict["advantage"] is None:
         return f"{sentence}: no advantage in {metric} can be stated, because a side has no permitted design point."
+    limits = (1.0, study["required_advantage"])
     span = ""
     if verdict["advantage_low"] is not None and verdict["advantage_low"] != verdict["advantage_high"]:
         low, high = verdict["advantage_low"], verdict["advantage_high"]
-        span = f" ({low:.2g} to {high:.2g} as inputs move one at a time over their ranges)"
+        span = f" ({factor(low, *limits)} to {factor(high, *limits)} as inputs move one at a time over their ranges)"
     return (
-        f"{sentence}: advantage {verdict['advantage']:.2g}{span} in {metric}, "
+        f"{sentence}: advantage {factor(verdict['advantage'], *limits)}{span} in {metric}, "
         f"required {study['required_advantage']:g}, policy {study['primary_policy']}, "
         f"against {primary['strongest']!r}, the strongest contender."
     )
