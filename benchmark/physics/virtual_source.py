@@ -1,4 +1,4 @@
-"""Virtual-source transistor: drain current, charge and switching capacitance from source injection (layer 3).
+"""Virtual-source transistor: drain current and channel charge from injection at the source (layer 3).
 
 Equations of the released model v1.0.1 after A. Khakifirooz, O. M. Nayfeh and D. Antoniadis, "A simple semiempirical
 short-channel MOSFET current-voltage model continuous across all regions of operation and employing only physical
