@@ -5,7 +5,7 @@ from __future__ import annotations
 import dataclasses
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
-from typing import Any
+from typing import Any, Literal
 
 import numpy as np
 from numpy.typing import NDArray
@@ -47,6 +47,11 @@ class SideProblem:
     gating: Mapping[str, Array]
     declared_supply: Array
 
+    @property
+    def size_as(self) -> Literal["width", "copies"]:
+        """What the size knob multiplies: the width of a switch, or the number of unit switches."""
+        return "copies" if self.side.technology.options.get("size_scaling") == "copies" else "width"
+
     def switches(self, supply: Array, threshold_shift: float) -> SwitchPair:
         """Switch records at supplies of shape (row or 1, supply), all temperatures of the study."""
         temperature = np.asarray(self.study.temperatures)[None, :, None]
@@ -60,17 +65,17 @@ def owner_of_overhead(side: Side, role: str) -> str:
 
 
 def values_by_key(study: Study, pair: NodePair) -> dict[str, Value]:
-    """Every value the study uses at one node pair, by ledger key, in a fixed order."""
-    found: dict[str, Value] = {f"study.{name}": value for name, value in study.values.items()}
+    """Every value the study uses at one node pair, by ledger key: owners in the study's order, names in order."""
+    found: dict[str, Value] = {f"study.{name}": value for name, value in sorted(study.values.items())}
     if study.circuit_spec is not None:
-        for layer, table in study.circuit_spec.layers.items():
-            found |= {f"circuit.{layer}.{name}": value for name, value in table.items()}
-    found |= {f"{pair.wires.id}.{name}": value for name, value in pair.wires.at(pair.wires_node).items()}
+        for layer, table in sorted(study.circuit_spec.layers.items()):
+            found |= {f"circuit.{layer}.{name}": value for name, value in sorted(table.items())}
+    found |= {f"{pair.wires.id}.{name}": value for name, value in sorted(pair.wires.at(pair.wires_node).items())}
     for side, role, node in _sides(study, pair):
         owner = owner_of_overhead(side, role)
-        found |= {f"{side.technology.id}.{name}": value for name, value in side.technology.at(node).items()}
-        found |= {f"{owner}.overhead.{name}": value for name, value in side.overhead.items()}
-        found |= {f"{owner}.gating.{name}": value for name, value in side.gating.items()}
+        found |= {f"{side.technology.id}.{name}": value for name, value in sorted(side.technology.at(node).items())}
+        found |= {f"{owner}.overhead.{name}": value for name, value in sorted(side.overhead.items())}
+        found |= {f"{owner}.gating.{name}": value for name, value in sorted(side.gating.items())}
     return found
 
 

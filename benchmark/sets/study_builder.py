@@ -23,6 +23,8 @@ __all__ = ["CircuitDeclaration", "build_study"]
 
 _OVERHEADS = ("level_shifter_energy", "supply_efficiency", "overhead_power")
 _OPTIONAL_OVERHEADS = ("level_shifter_delay",)
+#: supplies on the curves of a study that uses the transient rule
+TRANSIENT_POINTS = 9
 _LENGTHS = ("average_net_length", "average_net_pitches")
 _GATING = ("residual_leakage", "wake_energy_cycles")
 
@@ -271,6 +273,10 @@ class _Builder:
                     )
             if not reference:
                 self.refuse(dotted, "names no reference node", repr(pair.label))
+            self.one_node_each(pair.label, pair.candidate, reference, candidate, contenders)
+            deciding = str(self.parsed.policy.required_time).removeprefix("contender:")
+            if deciding in ids and deciding not in reference:
+                self.refuse(dotted, "leaves out the contender that sets the required time", repr(pair.label), deciding)
             used, node = self.wires_of(pair, wires)
             if used is None:
                 continue
@@ -283,7 +289,35 @@ class _Builder:
                     nearest(node, used.nodes),
                 )
             found.append(NodePair(pair.label, pair.candidate, dict(reference), used, node))
+        for name in ids:
+            if found and not any(name in pair.reference for pair in found):
+                self.refuse("contender", "stands in no node pair", repr(name))
         return found
+
+    def one_node_each(
+        self,
+        label: str,
+        node: str,
+        reference: Mapping[str, str],
+        candidate: Side | None,
+        contenders: Sequence[Side],
+    ) -> None:
+        """In one comparison a technology has one node, for each of its values has one ledger key."""
+        nodes: dict[str, set[str]] = {}
+        if candidate is not None:
+            nodes[candidate.technology.id] = {node}
+        for side in contenders:
+            if side.id in reference:
+                nodes.setdefault(side.technology.id, set()).add(reference[side.id])
+        for name, several in nodes.items():
+            if len(several) > 1:
+                self.refuse(
+                    "nodes.pairs",
+                    f"compares two nodes of {name} in pair {label}",
+                    ", ".join(sorted(several)),
+                    "one node of a technology per pair",
+                    "give the other node a set of its own",
+                )
 
     # -- requirements, policy -------------------------------------------------------------------------------
 
@@ -318,7 +352,7 @@ class _Builder:
             if table.fan_in is not None and not 1 <= table.fan_in <= 16:
                 self.refuse(f"{dotted}.fan_in", "is out of range", str(table.fan_in), "1 to 16")
             found[name] = Requirement(name, limit, unit, table.kind, table.fan_in or 1, life)
-        return found
+        return {name: found[name] for name in REQUIREMENTS if name in found}
 
     def policy(self, contenders: Sequence[Side]) -> Policy:
         table = self.parsed.policy
@@ -413,6 +447,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     leakage_band = build.number("conditions.guard_band.leakage", parsed.conditions.guard_band.leakage, 1.0, 1e6)
     points = int(build.number("search.supply_points", parsed.search.supply_points, 3, 5001))
     refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
+    _check_transient(build, points)
     _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
     _check_self_comparison(build, candidate, contenders)
     _check_invented(build, values, candidate, contenders, [pair.wires for pair in pairs], spec)
@@ -454,6 +489,26 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         file.text,
         file.path,
     )
+
+
+def _check_transient(build: _Builder, points: int) -> None:
+    """The transient rule solves every point apart: declared points only, and few supplies on the curves."""
+    if build.parsed.conditions.delay_rule != "transient":
+        return
+    table = build.parsed.policy
+    slow = sorted({table.primary, *table.also} - {"declared-point", "same-supply"})
+    if slow:
+        build.refuse(
+            "conditions.delay_rule",
+            "transient solves a differential equation at every point and cannot search a supply",
+            ", ".join(slow),
+            "declared-point and same-supply",
+            "use chain: reports show its difference to the transient at the points the verdict rests on",
+        )
+    if points > TRANSIENT_POINTS:
+        build.refuse(
+            "search.supply_points", "is too many for the transient rule", str(points), f"3 to {TRANSIENT_POINTS}"
+        )
 
 
 def _check_temperatures(build: _Builder, temperatures: Sequence[float], sides: Sequence[Side]) -> None:
