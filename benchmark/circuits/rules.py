@@ -117,7 +117,11 @@ def rule_by_name(name: str) -> StageRule:
     UsageError
         If there is none.
     """
+    if name == "transient":
+        from benchmark.circuits.transient_rule import transient  # it builds on this module, and needs an ODE solver
+
+        return transient
     if name not in RULES:
-        message = f"no delay rule {name!r}; known are {', '.join(RULES)}; {nearest(name, RULES)}"
+        message = f"no delay rule {name!r}; known are {', '.join(RULES)}, transient; {nearest(name, RULES)}"
         raise UsageError(message)
     return RULES[name]

@@ -1,7 +1,8 @@
 """The verdict table (layer 7): requirements first, then each input moved alone over its range, capped by evidence.
 
 1. a requirement failed at all permitted points        -> no-go, requirement failed (all failures listed)
-2. a requirement unknown                               -> not decidable on this evidence
+2. a requirement unknown                               -> not decidable on this evidence, unless every advantage is
+                                                          below M: then no measurement of it can help, and 3 holds
 3. every input moved alone: all advantages >= M        -> go
                             all < M                    -> no-go, not better
    straddling, best estimate >= M, and every straddling input of a conditional class
@@ -207,6 +208,10 @@ def judge(
     unknown = [f"{r.name}: {r.note or 'cannot be judged'}" for r in requirements if r.state == "unknown"]
     if outcome.strongest[0] < 0:
         unknown.append("no contender meets the hard requirements, so there is nothing to compare with")
+    if unknown and np.isfinite(best) and all(not _reaches(a, required) for a in [best, *advantages]):
+        # nothing that could be learnt about the unknown requirement can turn this into a go
+        aside = tuple(f"not settled, and cannot change the answer: {text}" for text in unknown)
+        return Verdict(WORDS[3], (*shortfall, *aside), **common)
     if unknown:
         return Verdict(WORDS[4], tuple(unknown), measure_next=tuple(unknown), **common)
     return _by_ranges(study, best, moves, shortfall, common)

@@ -97,7 +97,7 @@ def design_points(problem: SideProblem, supply: Array, size: float = 1.0, thresh
         problem.wires,
         problem.study.delay_rule,
         size=size,
-        size_as="copies" if problem.side.technology.options.get("size_scaling") == "copies" else "width",
+        size_as=problem.size_as,
         guard_delay=problem.study.guard_band_delay,
         guard_leakage=problem.study.guard_band_leakage,
         short_circuit=problem.study.short_circuit == "estimated",

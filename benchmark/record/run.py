@@ -11,7 +11,7 @@ from typing import Any
 import numpy as np
 
 import benchmark
-from benchmark.decide.closed_form import delay_factor
+from benchmark.decide.closed_form import closed_form_differences, delay_factor
 from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
 from benchmark.decide.flips import with_flips
@@ -164,7 +164,7 @@ def run_study(
         "nodes": [vars(row) for row in nodes],
         "node_crossings": _node_crossings(study, [row.advantage for row in nodes]),
         "anchors": [vars(row) for row in anchors],
-        "closed_form": [],
+        "closed_form": closed_form_differences(primary.comparison, primary.outcome),
         "self_checks": checks,
         "ledger": ledger_rows(study, verdict.moves, sources),
         "options": option_rows(study),
