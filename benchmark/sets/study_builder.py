@@ -244,7 +244,7 @@ class _Builder:
                 ", ".join(labels),
                 nearest(self.parsed.nodes.headline, labels),
             )
-        ids = [side.id for side in contenders]
+        ids = [table.id or table.technology for table in self.parsed.contender]  # also those whose set is refused
         for pair in self.parsed.nodes.pairs:
             dotted = "nodes.pairs"
             if candidate is not None and pair.candidate not in candidate.technology.nodes:
