@@ -6,7 +6,7 @@ import copy
 import itertools
 import json
 import random
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from decimal import Decimal
 from pathlib import Path
 from typing import Any
@@ -57,14 +57,6 @@ ZERO_CELSIUS = D("273.15")
 
 def _bytes(record: dict[str, Any]) -> str:
     return to_json(summary(record))
-
-
-@pytest.fixture(autouse=True, scope="module")
-def _without_transients() -> Iterator[None]:
-    """Leave out the record's comparison with a solved transient: half of the time, and no part of the summary."""
-    with pytest.MonkeyPatch.context() as patch:
-        patch.setattr("benchmark.record.run.closed_form_differences", lambda *_: [])
-        yield
 
 
 @pytest.fixture(scope="module")
@@ -211,7 +203,7 @@ def test_a_value_nothing_uses_is_refused(name: str, value: str, message: str, tm
 
 
 def test_same_inputs_give_the_same_record_byte_for_byte(tmp_path: Path):
-    first, second = (run(mixed(), tmp_path / name) for name in ("first", "second"))
+    first, second = (run(mixed(), tmp_path / name, whole=True) for name in ("first", "second"))
     assert to_json(first) == to_json(second)
 
 
@@ -230,7 +222,7 @@ def _again(record: dict[str, Any], folder: Path) -> dict[str, Any]:
 
 @pytest.mark.parametrize("make", [mixed, hub])
 def test_a_record_runs_again_from_its_own_files_with_every_number(make: Callable[[], Inputs], tmp_path: Path):
-    record = run(make(), tmp_path / "first")
+    record = run(make(), tmp_path / "first", whole=True)
     again = _again(record, tmp_path / "again")
     assert _without_time(again) == _without_time(record)
     assert again["created"] != record["created"]
