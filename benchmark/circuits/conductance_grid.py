@@ -17,7 +17,7 @@ from scipy.interpolate import CubicSpline
 from scipy.special import expit
 
 from benchmark.circuits.balance import Z_MAX, Balance
-from benchmark.devices.record import Array, Switch
+from benchmark.devices.record import Array, BoolArray, Switch
 
 __all__ = ["ConductanceGrid", "conductance_grid", "settle"]
 
@@ -31,12 +31,22 @@ _FLATTEST = 1e-3
 
 @dataclass(frozen=True)
 class _Table:
-    """ln(I/path) and its derivative by t = sqrt(path/V), both of shape S + (controls * nodes,)."""
+    """ln(I/path) and its derivative by t = sqrt(path/V), of shape S + (controls * nodes,), laid flat.
+
+    ``start``: index of the first entry of every element of S, shape S + (1,).
+    """
 
     value: Array
     slope: Array
+    start: NDArray[np.intp]
     controls: int
     nodes: int
+
+    @property
+    def unknown(self) -> BoolArray:
+        """Elements of S of which some current is nan."""
+        whole = self.value.reshape(*self.start.shape[:-1], self.controls * self.nodes)
+        return np.asarray(np.isnan(whole).any(axis=-1))
 
     def at(self, level: Array, t: Array) -> tuple[Array, Array]:
         """Return ln(I/path) and its derivative by t; ``level`` in [0, 1]."""
@@ -48,7 +58,7 @@ class _Table:
         left = np.minimum(column.astype(np.intp), self.nodes - 2)
         u = column - left
         h = (1.0 - _FIRST_NODE) / (self.nodes - 1)
-        index = first * self.nodes + left
+        index = self.start + first * self.nodes + left
         v0, v1 = self._blend(self.value, index, share), self._blend(self.value, index + 1, share)
         d0, d1 = h * self._blend(self.slope, index, share), h * self._blend(self.slope, index + 1, share)
         rise = v1 - v0
@@ -58,8 +68,7 @@ class _Table:
         return np.asarray(value), np.asarray(slope)
 
     def _blend(self, table: Array, index: NDArray[np.intp], share: Array) -> Array:
-        near = np.take_along_axis(table, index, axis=-1)
-        far = np.take_along_axis(table, index + self.nodes, axis=-1)
+        near, far = table[index], table[index + self.nodes]
         return np.asarray(near + share * (far - near))
 
 
@@ -103,7 +112,9 @@ def _table(switch: Switch, supply: Array, controls: int, nodes: int) -> _Table:
     derive = CubicSpline(t, np.eye(nodes)).derivative()(t)
     stacked = value.reshape(*value.shape[:-1], controls, nodes)
     slope = (stacked @ derive.T).reshape(value.shape)
-    return _Table(value, np.asarray(slope), controls, nodes)
+    per_element = controls * nodes
+    start = (np.arange(value.size // per_element) * per_element).reshape(*value.shape[:-1], 1)
+    return _Table(value.ravel(), np.asarray(slope).ravel(), start, controls, nodes)
 
 
 def conductance_grid(balance: Balance, controls: int = 17, nodes: int = 7) -> ConductanceGrid:

@@ -7,7 +7,8 @@ names), its options (closed lists) and two pure functions:
     everything that does not depend on supply or temperature: calibration on published targets, derived
     constants, interpolants of tables. Returns a mapping that only ``switch`` reads.
 ``switch(prepared, supply, temperature, knobs)``
-    the ``SwitchPair``. ``knobs`` always has ``threshold_shift`` [V] (0 when unused).
+    the ``SwitchPair``. ``knobs`` always has ``threshold_shift`` [V] (0 when unused). It may have ``stack_depth``:
+    the longest series stack the caller will ask about, so that a model with costly stacks can stop there.
 
 Both are elementwise over broadcast arrays: no loop over samples, no clipping, no file, no clock, no random state.
 The evaluator calls ``prepare`` with value arrays of shape (draw, 1, 1) and ``switch`` with supply (1 or draw, 1,

@@ -129,7 +129,7 @@ def _first_guess(t: vs.Transistor, supply: Array, above: int) -> Array:
     return np.asarray(lifted - np.log1p(-1.0 / above) * t.thermal_voltage)
 
 
-def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift: Array) -> Switch:
+def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift: Array, depth: int | None) -> Switch:
     values: Mapping[str, Array] = prepared["values"]
     calibrated, solved = prepared["transistors"][polarity]
     t = _at(calibrated, values, kelvin, shift)
@@ -142,7 +142,7 @@ def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift:
     width, edge = values["unit_width"], values["overlap_capacitance"]
     weight = drive.miller_weight(middle / high)
     own_terminal = values["terminal_capacitance_per_width"] * width
-    stack_on, stack_off = _stacks(t, supply + 0.0 * on, high + low, stack_counts(values))
+    stack_on, stack_off = _stacks(t, supply + 0.0 * on, high + low, stack_counts(values)[:depth])
     outside: dict[str, BoolArray] = {
         "no threshold and velocity meet the stated currents": ~solved,
         f"temperature outside {COLDEST:g} K to {HOTTEST:g} K": (kelvin < COLDEST) | (kelvin > HOTTEST),
@@ -190,10 +190,12 @@ def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift:
 
 def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mapping[str, Array]) -> SwitchPair:
     v, kelvin, shift = array(supply), array(temperature), array(knobs["threshold_shift"])
-    down = _one(prepared, "n", v, kelvin, shift)
+    # each further switch of a stack costs three current balances per point
+    depth = int(np.max(knobs["stack_depth"])) if "stack_depth" in knobs else None
+    down = _one(prepared, "n", v, kelvin, shift, depth)
     if prepared["partner"] == "mirrored":
         return mirrored(down, v, kelvin)
-    return SwitchPair(down=down, up=_one(prepared, "p", v, kelvin, shift), supply=v, temperature=kelvin)
+    return SwitchPair(down=down, up=_one(prepared, "p", v, kelvin, shift, depth), supply=v, temperature=kelvin)
 
 
 def _check(inputs: ModelInputs) -> list[Finding]:

@@ -2,9 +2,10 @@
 
 The supply is searched on a grid and then by repeated zooming into the interval around the best grid point; limits of
 the feasible region inside that interval are found to the same resolution. The result is never worse than the best
-grid point. An expensive condition (the functional floor) is first checked at the optimum alone: an optimum of the
-larger set that also satisfies the condition is the optimum of the smaller set. Only rows that fail it are searched
-again with the condition applied at every point.
+grid point. Where no grid point is permitted, the permitted ones may lie between two neighbours that fail different
+conditions (too slow here, beyond a limit there); such intervals are divided further. An expensive condition (the
+functional floor) is first checked at the optimum alone: an optimum of the larger set that also satisfies the condition
+is the optimum of the smaller set. Only rows that fail it are searched again with the condition applied at every point.
 """
 
 from __future__ import annotations
@@ -21,7 +22,7 @@ from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.side import SideProblem, build_side
 from benchmark.sets.study import NodePair
 
-__all__ = ["Condition", "Objective", "Optimum", "SideRun", "minimise", "supply_grid", "take_columns"]
+__all__ = ["All", "Condition", "Objective", "Optimum", "SideRun", "minimise", "supply_grid", "take_columns"]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -43,6 +44,29 @@ class Optimum:
     found: Mask  # (row,)
     at_lower: Mask
     at_upper: Mask
+    at_limit: Mask  # inside the range, but the supplies next to it that would be better are not permitted
+
+
+@dataclass(frozen=True)
+class All:
+    """Conditions that must hold together; kept apart, so that a search can see which of them fails where."""
+
+    parts: tuple[Condition, ...]
+
+    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+        """Return where all hold, among the points asked about."""
+        mask = among
+        for part in self.parts:
+            mask = mask & part(run, points, mask)
+        return mask
+
+    @classmethod
+    def of(cls, *conditions: Condition) -> All:
+        """Join conditions; those that are joined already are taken apart."""
+        parts: list[Condition] = []
+        for condition in conditions:
+            parts += condition.parts if isinstance(condition, All) else (condition,)
+        return cls(tuple(parts))
 
 
 class SideRun:
@@ -145,42 +169,115 @@ def _merge(first: Points, second: Points, use_second: Mask) -> Points:
     return dataclasses.replace(first, **changes)
 
 
+def _bracket(centre: Array, reach: float | Array, ends: tuple[float, float]) -> tuple[Array, Array]:
+    """Interval around a supply, inside the range searched."""
+    return np.asarray(np.maximum(centre - reach, ends[0])), np.asarray(np.minimum(centre + reach, ends[1]))
+
+
 def _search(run: SideRun, combination: tuple[float, float], objective: Objective, condition: Condition) -> Optimum:
-    """Grid, then zoom."""
+    """Grid, then zoom. What a row gets does not depend on the other rows of the batch."""
     problem = run.problem
     grid = run.grid(combination)
+    ends = problem.side.supply
     column, value = _best(objective(problem, grid), grid.able & condition(run, grid, grid.able))
     best = _take(grid, column)
-    supplies = grid.supply
-    last = supplies.shape[1] - 1
-    rows = np.arange(supplies.shape[0])
-    low = supplies[rows, np.maximum(column - 1, 0)]
-    high = supplies[rows, np.minimum(column + 1, last)]
-    floor, ceiling = supplies[:, 0], supplies[:, -1]
-    while np.any((high - low) > problem.study.refine_relative * np.abs(high)) and last > 0:
+    step = (ends[1] - ends[0]) / max(problem.study.supply_points - 1, 1)
+    # the step of the grid, not its neighbours: a declared supply may lie beside a point of the grid, or on it
+    low, high = _bracket(best.supply[:, 0], step, ends)
+    missing = ~np.isfinite(value)
+    if missing.any() and step > 0.0:
+        window, inside = _window(run, combination, objective, condition, missing)
+        if window is not None:
+            best, value = _merge(best, window.points, window.found), np.where(window.found, window.value, value)
+            near = _bracket(best.supply[:, 0], inside, ends)
+            low, high = np.where(window.found, near[0], low), np.where(window.found, near[1], high)
+    at_limit = np.zeros(value.shape, dtype=bool)
+    active = np.isfinite(value) & (high - low > problem.study.refine_relative * high)
+    while active.any():
         fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
         points = design_points(problem, fine, *combination)
         score = objective(problem, points)
         # only points that would improve on the best so far need to be judged
         candidates = points.able & (score < value[:, None])
-        column, fine_value = _best(score, candidates & condition(run, points, candidates))
-        better = fine_value < value
+        permitted = candidates & condition(run, points, candidates)
+        column, fine_value = _best(score, permitted)
+        better = active & (fine_value < value)
         if better.any():
             best = _merge(best, _take(points, column), better)
             value = np.where(better, fine_value, value)
+        # a better supply next to the best permitted one is not permitted
+        refused = ((score < value[:, None]) | ~points.able) & ~permitted
+        at_limit = np.where(active, refused.any(axis=1), at_limit)
         # where nothing in the interval was better, zoom around the best point so far
-        centre = np.where(better, fine[rows, column], best.supply[:, 0])
-        step = (high - low) / (ZOOM_POINTS - 1)
-        low, high = np.maximum(centre - step, floor), np.minimum(centre + step, ceiling)
+        near = _bracket(best.supply[:, 0], (high - low) / (ZOOM_POINTS - 1), ends)
+        low, high = np.where(active, near[0], low), np.where(active, near[1], high)
+        active &= high - low > problem.study.refine_relative * high
     found = np.isfinite(value)
     supply = best.supply[:, 0]
-    return Optimum(
-        best,
-        value,
-        found,
-        found & (supply <= floor * (1.0 + ON_BOUND)) & (floor < ceiling),
-        found & (supply >= ceiling * (1.0 - ON_BOUND)) & (floor < ceiling),
-    )
+    at_lower = found & (supply <= ends[0] * (1.0 + ON_BOUND)) & (step > 0.0)
+    at_upper = found & (supply >= ends[1] * (1.0 - ON_BOUND)) & (step > 0.0)
+    return Optimum(best, value, found, at_lower, at_upper, found & at_limit & ~at_lower & ~at_upper)
+
+
+def _window(
+    run: SideRun, combination: tuple[float, float], objective: Objective, condition: Condition, missing: Mask
+) -> tuple[Optimum | None, Array]:
+    """Look for permitted supplies between two points of the grid, for rows without a permitted point on it.
+
+    Such a window can only lie between neighbours that fail different conditions. Returns the best point found, or
+    None, and the distance to its neighbours.
+    """
+    problem = run.problem
+    points = run.grid(combination)
+    low, high, looking = _gap(run, points, condition, missing)
+    found: Optimum | None = None
+    inside = np.zeros(missing.shape)
+    while looking.any():
+        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
+        points = design_points(problem, fine, *combination)
+        asked = points.able & looking[:, None]
+        column, value = _best(objective(problem, points), asked & condition(run, points, asked))
+        hit = np.isfinite(value)
+        nowhere = np.zeros(hit.shape, dtype=bool)
+        if hit.any():
+            taken = _take(points, column)
+            first = Optimum(taken, value, hit, nowhere, nowhere, nowhere)
+            found = first if found is None else _join(found, first)
+            inside = np.where(hit, (high - low) / (ZOOM_POINTS - 1), inside)
+        looking = looking & ~hit & (high - low > problem.study.refine_relative * high)
+        if looking.any():
+            low, high, looking = _gap(run, points, condition, looking)
+    return found, inside
+
+
+def _join(first: Optimum, second: Optimum) -> Optimum:
+    points = _merge(first.points, second.points, second.found)
+    value = np.where(second.found, second.value, first.value)
+    return dataclasses.replace(first, points=points, value=value, found=first.found | second.found)
+
+
+def _gap(run: SideRun, points: Points, condition: Condition, wanted: Mask) -> tuple[Array, Array, Mask]:
+    """Return the first interval of each row at one end of which every single condition is met, and where there is one.
+
+    An expensive condition is asked only at the ends of intervals that all conditions before it leave.
+    """
+
+    def either(mask: Mask) -> Mask:
+        return np.asarray(mask[:, :-1] | mask[:, 1:])
+
+    left = np.broadcast_to(wanted[:, None], (wanted.size, points.supply.shape[1] - 1))
+    for mask in (*points.infeasible.values(), ~np.isfinite(points.energy) | ~np.isfinite(points.time)):
+        left = left & either(~np.asarray(mask))
+    for part in condition.parts if isinstance(condition, All) else (condition,):
+        ends = np.zeros(points.supply.shape, dtype=bool)
+        ends[:, :-1] |= left
+        ends[:, 1:] |= left
+        if not ends.any():
+            break
+        left = left & either(part(run, points, ends))
+    column = np.argmax(left, axis=1)
+    rows = np.arange(wanted.size)
+    return points.supply[rows, column], points.supply[rows, column + 1], left.any(axis=1)
 
 
 def minimise(
@@ -219,16 +316,8 @@ def _with_costly(
         return optimum
     rows = np.flatnonzero(~allowed)
     smaller = run.subset(rows)
-    again = _search(smaller, combination, objective, _both(cheap, costly))
+    again = _search(smaller, combination, objective, All.of(cheap, costly))
     return _put_rows(optimum, again, rows)
-
-
-def _both(cheap: Condition, costly: Condition) -> Condition:
-    def condition(run: SideRun, points: Points, among: Mask) -> Mask:
-        mask = among & cheap(run, points, among)
-        return mask & costly(run, points, mask) if mask.any() else mask
-
-    return condition
 
 
 def _put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
@@ -267,4 +356,5 @@ def _put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
         choose(whole.found, part.found),
         choose(whole.at_lower, part.at_lower),
         choose(whole.at_upper, part.at_upper),
+        choose(whole.at_limit, part.at_limit),
     )

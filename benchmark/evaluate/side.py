@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 from benchmark.circuits.cells import cell
 from benchmark.circuits.circuit import Circuit, Layer, Load, Net, Wires
 from benchmark.circuits.library import build as build_built_in
+from benchmark.circuits.sized import EDGES
 from benchmark.devices import model
 from benchmark.devices.model import DeviceModel, ModelInputs, Prepared
 from benchmark.devices.record import SwitchPair
@@ -52,10 +53,16 @@ class SideProblem:
         """What the size knob multiplies: the width of a switch, or the number of unit switches."""
         return "copies" if self.side.technology.options.get("size_scaling") == "copies" else "width"
 
+    @property
+    def stack_depth(self) -> int:
+        """Longest series stack of the circuit and of the functional requirements."""
+        circuit = max(net.driver.depth(edge) for net in self.circuit.nets for edge in EDGES)
+        return max(circuit, *(requirement.fan_in for requirement in self.study.requirements.values()), 1)
+
     def switches(self, supply: Array, threshold_shift: float) -> SwitchPair:
         """Switch records at supplies of shape (row or 1, supply), all temperatures of the study."""
         temperature = np.asarray(self.study.temperatures)[None, :, None]
-        knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift)}
+        knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift), "stack_depth": np.asarray(self.stack_depth)}
         return self.device.switch(self.prepared, np.atleast_2d(supply)[:, None, :], temperature, knobs)
 
 
