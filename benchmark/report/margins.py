@@ -156,10 +156,15 @@ def _decade_word(value: float | None) -> Any:
     return value if math.isfinite(value) else ("infinite" if value > 0 else "-infinite")
 
 
+def _state_words(row: Row) -> str:
+    name, words = requirement_name(row["name"]), margin_words(row)
+    said = words.removeprefix(row["state"]).lstrip(", ").strip("()")
+    return f"{name} ({said})" if said else name
+
+
 def _summary(rows: Sequence[Row]) -> str:
     by_state = {
-        state: [f"{requirement_name(row['name'])} ({margin_words(row)})" for row in rows if row["state"] == state]
-        for state in ("fail", "unknown", "pass")
+        state: [_state_words(row) for row in rows if row["state"] == state] for state in ("fail", "unknown", "pass")
     }
     parts = [f"{len(by_state['pass'])} of {len(rows)} pass."]
     if by_state["fail"]:

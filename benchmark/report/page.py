@@ -1,0 +1,121 @@
+"""The report page (layer 9): one file, no request, no script needed, every text escaped."""
+
+from __future__ import annotations
+
+import base64
+import hashlib
+from collections.abc import Mapping
+from importlib.resources import files
+from typing import Any
+
+from benchmark.record.write import to_json
+from benchmark.report import section_evidence as evidence
+from benchmark.report import section_method as method
+from benchmark.report import section_question as asked
+from benchmark.report import section_results as results
+from benchmark.report.blocks import Figure, Section, Table, plain
+from benchmark.report.figure import Chart
+from benchmark.report.svg import inline_svg
+from benchmark.report.words import plural
+
+__all__ = ["digest_of", "embedded_record", "page", "sections"]
+
+Record = Mapping[str, Any]
+
+
+def digest_of(record: Record) -> str:
+    """Return the sha256 of record.json."""
+    return hashlib.sha256(to_json(record).encode()).hexdigest()
+
+
+def embedded_record(record: Record) -> str:
+    """Return the record as JSON that cannot end the element it stands in; parsed, it is record.json again."""
+    return to_json(record).replace("&", "\\u0026").replace("<", "\\u003c").replace(">", "\\u003e")
+
+
+def _text(name: str) -> str:
+    return files("benchmark.report").joinpath("templates", name).read_text(encoding="utf-8")
+
+
+def _data(chart: Chart) -> Table | None:
+    if not chart.points:
+        return None
+    columns = list(dict.fromkeys(name for row in chart.points for name in row))
+    rows = [[row.get(name, "") for name in columns] for row in chart.points]
+    key = f"data-{chart.key}"
+    return plain(key, f"Data of the chart: {chart.title}", columns, rows, digits=5, wide=True)
+
+
+def _figure(chart: Chart, drawings: Mapping[str, str]) -> Figure:
+    svg = inline_svg(drawings[chart.key], chart.key, chart.alternative) if chart.spec is not None else ""
+    return Figure(chart, svg, _data(chart))
+
+
+def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str, str]) -> list[Section]:
+    """Return every section in the order of the report."""
+    digest = digest_of(record)
+    shown = {key: _figure(chart, drawings) for key, chart in charts.items()}
+    return [
+        asked.answer(record, digest),
+        asked.question(record),
+        asked.requirements(record, shown["requirement-margins"]),
+        results.curves(shown["energy-delay"]),
+        results.required_time(record, shown["advantage-against-time"]),
+        results.energy_and_time(record, shown["time-parts"], shown["energy-parts"]),
+        results.policies(record),
+        results.moves(record, shown["input-swings"]),
+        results.nodes(record, shown["advantage-by-node"]),
+        evidence.anchors(record),
+        evidence.closed_form(record),
+        evidence.ledger(record),
+        evidence.options(record),
+        evidence.conventions(record),
+        evidence.circuit_assumptions(record),
+        evidence.not_modelled(record),
+        method.self_checks(record),
+        method.warnings(record),
+        method.reproduce(record, digest),
+        Section("sources", "Sources", (evidence.sources(record),)),
+        method.terms(),
+        method.cautions(record),
+    ]
+
+
+def _hash(script: str) -> str:
+    return base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
+
+
+def page(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str, str]) -> str:
+    """Return the whole page.
+
+    Parameters
+    ----------
+    record : mapping
+        As ``run_study`` returns it.
+    charts : mapping
+        Key -> chart, from ``charts``.
+    drawings : mapping
+        Key -> SVG of every chart that has a specification.
+    """
+    import jinja2
+
+    environment = jinja2.Environment(
+        loader=jinja2.FunctionLoader(_text),
+        autoescape=True,
+        undefined=jinja2.StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+        keep_trailing_newline=True,
+    )
+    script = _text("report.js")
+    return environment.get_template("report.html").render(
+        title=record["study"]["title"],
+        sections=sections(record, charts, drawings),
+        css=_text("report.css"),
+        script=script,
+        script_hash=_hash(script),
+        record_json=embedded_record(record),
+        software=record["software"]["evenload"],
+        created=record["created"],
+        plural=plural,
+    )

@@ -1,0 +1,218 @@
+"""Evidence in the report: anchors, cross-check, ledger, options, conventions, omissions, sources (layer 9)."""
+
+from __future__ import annotations
+
+from collections import Counter
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+from benchmark.report.blocks import Block, Bullets, Cell, Notice, Pairs, Paragraph, Section, Table, plain
+from benchmark.report.words import is_number, listed, number, plural, spaced, volts
+from benchmark.units import from_si, parse_unit
+
+__all__ = ["anchors", "closed_form", "conventions", "ledger", "not_modelled", "options", "source_numbers", "sources"]
+
+Record = Mapping[str, Any]
+
+
+def source_numbers(record: Record) -> dict[str, int]:
+    """Return source key -> number in the list of sources."""
+    return {key: position for position, key in enumerate(record["sources"], start=1)}
+
+
+def _source(record: Record, key: str, where: str) -> Cell:
+    if not key:
+        return Cell("none")
+    found = source_numbers(record).get(key)
+    place = "" if where in ("", "-") else where
+    return Cell(f"[{found}] {key}", f"#source-{found}", place) if found else Cell(key, small=place)
+
+
+def _in_unit(value: float, unit: str) -> str:
+    return spaced(from_si(value, parse_unit(unit)), unit, 3)
+
+
+def _difference(relative: float) -> str:
+    percent = 100.0 * relative
+    return "under 0.001 %" if abs(percent) < 1e-3 else f"{number(percent)} %"
+
+
+def anchors(record: Record) -> Section:
+    """Return published values beside predicted ones; a technology without any says none."""
+    rows: list[Sequence[Any]] = []
+    for technology in dict.fromkeys(side["technology"] for side in record["sides"]):
+        mine = [row for row in record["anchors"] if row["technology"] == technology]
+        if not mine:
+            rows.append((Cell(technology), *["none"] * 8))
+        for row in mine:
+            spread = ""
+            if row["low"] != row["high"]:
+                spread = f"{_in_unit(row['low'], row['unit'])} to {_in_unit(row['high'], row['unit'])}"
+            rows.append(
+                (
+                    Cell(technology, small=f"node {row['node']}"),
+                    row["name"].replace("_", " "),
+                    volts(row["supply"], 3),
+                    Cell(_in_unit(row["published"], row["unit"]), small=spread),
+                    _in_unit(row["predicted"], row["unit"]),
+                    _difference(row["difference"]),
+                    "fitted" if row["fitted"] else "predicted",
+                    _source(record, row["source"], row["where"]),
+                    "" if row["conditions"] == "-" else row["conditions"],
+                )
+            )
+    columns = (
+        *("technology", "quantity", "supply", "published", "by this model", "difference", "fitted or predicted"),
+        *("source", "conditions"),
+    )
+    free = [abs(row["difference"]) for row in record["anchors"] if not row["fitted"]]
+    text = (
+        f"{plural(len(free), 'value')} predicted without fitting, largest difference {number(100.0 * max(free))} %."
+        if free
+        else "No value is predicted without fitting, so nothing outside the inputs supports the reference."
+    )
+    caption = "Published values and what the models say for them"
+    block = Paragraph(text) if free else Notice(text)
+    return Section("anchors", "Reference anchors", (block, plain("anchors", caption, columns, rows, wide=True)))
+
+
+def closed_form(record: Record) -> Section:
+    """Return the closed-form delay beside the transient of the same switches."""
+    rows = record["closed_form"]
+    title = "Closed form against transient"
+    if not rows:
+        text = (
+            "Not executed for this study: the closed-form delay was not compared with a transient of the same switches."
+        )
+        return Section("closed-form", title, (Paragraph(text),))
+    names = list(dict.fromkeys(name for row in rows for name in row))
+    cells = [[_raw(row.get(name)) for name in names] for row in rows]
+    caption = "Delay by the rule of the study and by solving the circuit of the same switches in time (SI units)"
+    columns = [name.replace("_", " ") for name in names]
+    return Section("closed-form", title, (plain("closed-form", caption, columns, cells, digits=4, wide=True),))
+
+
+def _raw(value: Any) -> Any:
+    if value is None:
+        return "not stated"
+    return value if isinstance(value, (bool, str)) or is_number(value) else str(value)
+
+
+def _values(row: Mapping[str, Any]) -> Cell:
+    shown = [number(value, 6) for value in row["value"]]
+    unit = "" if row["unit"] == "1" else f" {row['unit']}"
+    bound = {"at-least": "at least ", "at-most": "at most "}.get(row["bound"], "")
+    if row["nodes"]:
+        pairs = ", ".join(f"{node}: {value}" for node, value in zip(row["nodes"], shown, strict=True))
+        return Cell(f"{bound}{pairs}{unit}")
+    return Cell(f"{bound}{shown[0]}{unit}")
+
+
+def _range(row: Mapping[str, Any]) -> Cell:
+    spread = row["spread"]
+    if spread is None:
+        return Cell("no range stated")
+    pairs = zip(spread["low"], spread["high"], strict=True)
+    words = dict.fromkeys(f"{number(low, 4)} to {number(high, 4)}" for low, high in pairs)
+    return Cell(", ".join(words), small=f"{spread['shape']}, {spread['meaning']}")
+
+
+def _effect(row: Mapping[str, Any]) -> str:
+    if row["decisive"]:
+        return "decisive"
+    if row["matters"] is None:
+        return "not moved"
+    return "moves the result" if row["matters"] else "no effect"
+
+
+def _set_by(row: Mapping[str, Any]) -> Cell:
+    if row["set_by"] == "default":
+        return Cell("default", small=row["origin"])
+    place = f"{row['file']}, line {row['line']}" if row["line"] else row["file"]
+    return Cell("user", small=place)
+
+
+def _remarks(row: Mapping[str, Any]) -> str:
+    parts = [
+        "" if row["conditions"] == "-" else row["conditions"],
+        row["note"],
+        f"owner: {row['owner_of_choice']}" if row["owner_of_choice"] else "",
+        f"formula: {row['formula']}" if row["formula"] else "",
+        f"date: {row['date']}" if row["date"] else "",
+    ]
+    return "; ".join(part for part in parts if part)
+
+
+def ledger(record: Record) -> Section:
+    """Return every number used."""
+    rows, tags = [], []
+    for row in record["ledger"]:
+        symbol = f" ({row['symbol']})" if row["symbol"] else ""
+        rows.append(
+            (
+                Cell(f"{row['name'].replace('_', ' ')}{symbol}", small=f"{row['owner']}: {row['meaning']}"),
+                _values(row),
+                _range(row),
+                row["evidence"],
+                _source(record, row["source"], row["where"]),
+                _remarks(row),
+                _set_by(row),
+                _effect(row),
+            )
+        )
+        tags.append({"evidence": row["evidence"], "set-by": row["set_by"], "effect": _effect(row)})
+    columns = (
+        *("value of", "value and unit", "range and its meaning", "evidence", "source and place"),
+        *("conditions and notes", "set by", "effect when moved alone"),
+    )
+    by_default = sum(row["set_by"] == "default" for row in [*record["ledger"], *record["options"]])
+    without = sum(row["spread"] is None for row in record["ledger"])
+    counts = Counter(row["evidence"] for row in record["ledger"])
+    text = (
+        f"{len(record['ledger'])} values, complete. {plural(by_default, 'default')} set by the program "
+        f"(values and options), the rest by the user's files. No range stated: {without}. Evidence: "
+        f"{listed(f'{name} {count}' for name, count in sorted(counts.items()))}."
+    )
+    table = plain("ledger", "Every value used", columns, rows, wide=True, filterable=True, tags=tuple(tags))
+    return Section("ledger", "Assumptions: every value used", (Paragraph(text), table))
+
+
+def options(record: Record) -> Section:
+    """Return every choice that is not a number."""
+    rows = [(row["owner"], row["name"].replace("_", " "), row["value"], row["set_by"]) for row in record["options"]]
+    columns = ("technology", "option", "choice", "set by")
+    empty = "No technology has options."
+    return Section(
+        "options", "Options", (plain("options", "Choices that are not numbers", columns, rows, empty=empty),)
+    )
+
+
+def conventions(record: Record) -> Section:
+    """Return the conventions with their factors, and what the circuit assumes."""
+    pairs = Pairs(tuple((row["name"], row["text"]) for row in record["conventions"]))
+    return Section("conventions", "Conventions with their factors", (pairs,))
+
+
+def circuit_assumptions(record: Record) -> Section:
+    """Return what the circuit assumes."""
+    items = tuple(record["circuit_assumptions"])
+    block: Block = Bullets(items) if items else Paragraph("The circuit states none beyond its netlist.")
+    return Section("circuit", "Circuit assumptions", (block,))
+
+
+def not_modelled(record: Record) -> Section:
+    """Return what is left out, and whom that favours."""
+    rows = [(row["what"], row["favours"]) for row in record["not_modelled"]]
+    table = plain("not-modelled", "Left out, and the side that gains", ("not modelled", "favours"), rows)
+    return Section("not-modelled", "Not modelled", (table,))
+
+
+def sources(record: Record) -> Table:
+    """Return the numbered sources."""
+    rows = []
+    for key, position in source_numbers(record).items():
+        source = record["sources"][key]
+        doi = f"doi {source['doi']}" if source["doi"] else ""
+        small = "; ".join(part for part in (source["kind"], doi, source["note"]) if part)
+        rows.append((Cell(f"[{position}]"), key, Cell(source["citation"], small=small)))
+    return plain("sources", "Sources, as read", ("number", "key", "source"), rows, empty="No source is named.")

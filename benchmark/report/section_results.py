@@ -1,0 +1,204 @@
+"""Results in the report: curves, advantage, parts, policies, what moves the answer, nodes (layer 9)."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+from benchmark.report.advantage import crossing_words, levels
+from benchmark.report.blocks import Block, Cell, Figure, Notice, Paragraph, Section, Table, plain
+from benchmark.report.words import amount, is_number, number, plural, policy_name, spaced, volts
+
+__all__ = ["curves", "energy_and_time", "moves", "nodes", "policies", "required_time"]
+
+Record = Mapping[str, Any]
+INFEASIBLE = "infeasible"
+
+
+def _advantage(record: Record, value: Any, reason: str = "") -> str:
+    """Print an advantage with its place against 1 and M in words and a symbol."""
+    if not is_number(value):
+        return f"{INFEASIBLE}: {reason}" if reason else INFEASIBLE
+    limits = [level for level, _ in levels(record)]
+    shown = number(value, 2, limits)
+    if value >= record["study"]["required_advantage"]:
+        return f"▲ {shown}, reaches {number(record['study']['required_advantage'], 3)}"
+    if value >= 1.0:
+        return f"■ {shown}, better, below {number(record['study']['required_advantage'], 3)}"
+    return f"▼ {shown}, not better"
+
+
+def curves(figure: Figure) -> Section:
+    """Return the swept curves."""
+    return Section("curves", "Energy against time", (figure,))
+
+
+def required_time(record: Record, figure: Figure) -> Section:
+    """Return the advantage for other required times, crossings in words."""
+    blocks: list[Block] = [Paragraph(text) for text in crossing_words(record)]
+    return Section("required-time", "Advantage against required time", (*blocks, figure))
+
+
+def _limits(record: Record) -> Table:
+    primary = record["policies"][0]
+    rows = []
+    for role, side in (("candidate", primary["candidate"]), *(("contender", side) for side in primary["contenders"])):
+        point = side["point"]
+        if point is None:
+            why = f"{INFEASIBLE}: {side.get('why') or 'no permitted point'}"
+            rows.append((side["id"], role, why, *["–"] * 7))
+            continue
+        delay = f"{point['delay_limit']}, {number(100 * point['delay_shares'].get(point['delay_limit'], 0.0))} %"
+        energy = f"{point['energy_limit']}, {number(100 * point['energy_shares'].get(point['energy_limit'], 0.0))} %"
+        rows.append(
+            (
+                side["id"],
+                role,
+                volts(point["supply"], 3),
+                amount(point["time"], "s", 3),
+                amount(point["energy"], "J", 3),
+                amount(point["leakage_power"], "W", 3),
+                amount(point["area"], "m^2", 3),
+                amount(point["power_density"], "W/m^2", 3),
+                delay,
+                energy,
+            )
+        )
+    columns = (
+        *("side", "role", "supply", "time per operation", "energy per operation", "leakage power", "area"),
+        *("power density", "delay limited by", "energy mostly"),
+    )
+    return plain("design-points", "Design points of the primary policy", columns, rows, wide=True)
+
+
+def energy_and_time(record: Record, time: Figure, energy: Figure) -> Section:
+    """Return where time and energy go."""
+    return Section("parts", "Where time and energy go", (time, energy, _limits(record)))
+
+
+def _policy_cell(side: Mapping[str, Any] | None) -> list[str]:
+    if side is None or side["point"] is None:
+        why = (side or {}).get("why") or "no permitted point"
+        return [f"{INFEASIBLE}: {why}", INFEASIBLE, INFEASIBLE]
+    point = side["point"]
+    return [volts(point["supply"], 3), amount(point["time"], "s", 3), amount(point["energy"], "J", 3)]
+
+
+def _contenders(record: Record) -> Table:
+    """Return the advantage over each contender, one column per policy."""
+    names = [policy_name(policy["policy"]) for policy in record["policies"]]
+    rows = []
+    for position, side in enumerate(record["policies"][0]["contenders"]):
+        found = [policy["contenders"][position] for policy in record["policies"]]
+        rows.append((side["id"], *(_advantage(record, one["advantage"], one.get("why", "")) for one in found)))
+    caption = "Advantage over each contender, each at its own design point"
+    return plain("contenders", caption, ("contender", *names), rows, wide=True)
+
+
+def policies(record: Record) -> Section:
+    """Return every policy asked for; diagnostic ones say so."""
+    rows = []
+    for position, policy in enumerate(record["policies"]):
+        strongest = next((side for side in policy["contenders"] if side["id"] == policy["strongest"]), None)
+        role = "diagnostic, not a verdict" if policy["diagnostic"] else "primary" if position == 0 else "robustness"
+        name = Cell(policy_name(policy["policy"]), small=role)
+        reason = policy["candidate"].get("why", "") if not policy["candidate"]["feasible"] else ""
+        rows.append(
+            (
+                name,
+                _advantage(record, policy["advantage"], reason),
+                policy["strongest"] or f"{INFEASIBLE}: no contender has a permitted point",
+                *_policy_cell(policy["candidate"]),
+                policy["candidate"]["at"] or INFEASIBLE,
+                *_policy_cell(strongest),
+            )
+        )
+    columns = (
+        *("policy", "advantage over the strongest", "strongest contender", "candidate supply", "candidate time"),
+        *("candidate energy", "candidate optimum lies", "reference supply", "reference time", "reference energy"),
+    )
+    blocks: list[Block] = []
+    if any(policy["diagnostic"] for policy in record["policies"]):
+        text = "same supply for both sides is shown to compare with other texts; it never gives a verdict."
+        blocks.append(Notice(text, "Diagnostic:"))
+    held = [policy for policy in record["policies"] if not policy["diagnostic"]]
+    reach = sum(is_number(p["advantage"]) and p["advantage"] >= record["study"]["required_advantage"] for p in held)
+    blocks.append(Paragraph(f"The best estimate reaches the required advantage under {reach} of {len(held)} policies."))
+    blocks.append(plain("policies", "Answer under every policy, fixed before the run", columns, rows, wide=True))
+    blocks.append(_contenders(record))
+    return Section("policies", "Other policies: robustness", tuple(blocks))
+
+
+def _move_row(record: Record, row: Mapping[str, Any]) -> tuple[Any, ...]:
+    owner, _, name = row["key"].rpartition(".")
+    limits = [level for level, _ in levels(record)]
+    unit = row["unit"]
+    if row["ranged"]:
+        ends = [spaced(row["low"], unit), spaced(row["high"], unit)]
+        moved = [
+            number(row[f"advantage_{end}"], 3, limits) if is_number(row[f"advantage_{end}"]) else INFEASIBLE
+            for end in ("low", "high")
+        ]
+    else:
+        ends, moved = ["no range stated"] * 2, ["–"] * 2
+    flip = (
+        spaced(row["flip"], unit)
+        if is_number(row["flip"])
+        else "at an infeasible end"
+        if row["straddles"]
+        else "does not flip"
+    )
+    return (
+        Cell(name.replace("_", " "), small=owner),
+        row["evidence"],
+        spaced(row["best"], unit),
+        *ends,
+        *moved,
+        flip if row["ranged"] else "–",
+        "decisive" if row["decisive"] else "no",
+    )
+
+
+def moves(record: Record, figure: Figure) -> Section:
+    """Return what moves the answer: chart, and all inputs with flip values."""
+    verdict = record["verdict"]
+    columns = (
+        *("input", "evidence", "best estimate", "low", "high", "advantage at low", "advantage at high"),
+        *(f"advantage is {number(record['study']['required_advantage'], 3)} at", "decisive"),
+    )
+    rows = [_move_row(record, row) for row in verdict["moves"]]
+    caption = "Inputs that move the result, each alone, both sides re-optimised; largest swing first"
+    table = plain("moves", caption, columns, rows, wide=True, empty="No input moves the result.")
+    counts = (
+        f"{plural(verdict['inputs_with_effect'], 'input')} move the result; {verdict['inputs_without_range']} of them "
+        f"have no stated range; {verdict['inputs_of_judgement']} are judgement or invented; "
+        f"{plural(len(verdict['without_effect']), 'input')} moved without effect."
+    )
+    return Section("moves", "What moves the answer", (Paragraph(counts), figure, table))
+
+
+def _node_side(row: Mapping[str, Any], side: str) -> list[str]:
+    supply, time, energy = (row[f"{side}_{name}"] for name in ("supply", "time", "energy"))
+    shown = [volts(supply, 3), amount(time, "s", 3), amount(energy, "J", 3)]
+    return shown if is_number(energy) else [INFEASIBLE] * 3
+
+
+def nodes(record: Record, figure: Figure) -> Section:
+    """Return the primary policy at every node pair."""
+    rows = [
+        (
+            Cell(row["label"], small=f"candidate node {row['candidate_node']}"),
+            _advantage(record, row["advantage"], row["note"]),
+            row["strongest"] or INFEASIBLE,
+            *_node_side(row, "candidate"),
+            *_node_side(row, "reference"),
+        )
+        for row in record["nodes"]
+    ]
+    columns = (
+        *("node", "advantage", "strongest contender", "candidate supply", "candidate time", "candidate energy"),
+        *("reference supply", "reference time", "reference energy"),
+    )
+    return Section(
+        "nodes", "Nodes", (figure, plain("nodes", "Primary policy at every node pair", columns, rows, wide=True))
+    )
