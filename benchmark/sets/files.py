@@ -6,8 +6,10 @@ line; it is used for messages only, never for values.
 
 from __future__ import annotations
 
+import codecs
 import hashlib
 import re
+import stat
 import tomllib
 from dataclasses import dataclass
 from decimal import Decimal
@@ -22,6 +24,7 @@ __all__ = ["TomlFile", "read_bytes", "read_toml", "shown"]
 #: a parameter file is written by hand; anything larger is not one
 MAX_BYTES = 4_000_000
 _HEADER = re.compile(r"^\s*(\[\[?)\s*([^\[\]]+?)\s*\]\]?\s*(?:#.*)?$")
+_OPENS = re.compile(r"\s*(\"\"\"|''')")
 _KEY = re.compile(r"^\s*([A-Za-z0-9_\-]+|\"[^\"]*\")(?:\s*\.\s*([A-Za-z0-9_\-.]+))?\s*=")
 
 
@@ -71,8 +74,11 @@ def shown(value: Any) -> str:
 def _index(text: str) -> dict[str, int]:
     lines: dict[str, int] = {}
     counts: dict[str, int] = {}
-    prefix = ""
+    prefix, quotes = "", ""
     for number, line in enumerate(text.splitlines(), start=1):
+        if quotes:  # inside a string of several lines
+            quotes = "" if quotes in line else quotes
+            continue
         header = _HEADER.match(line)
         if header and "=" not in header.group(2):
             name = header.group(2).replace('"', "").replace(" ", "")
@@ -91,6 +97,8 @@ def _index(text: str) -> dict[str, int]:
         if key:
             name = key.group(1).strip('"') + (f".{key.group(2)}" if key.group(2) else "")
             lines.setdefault(f"{prefix}.{name}" if prefix else name, number)
+            opened = _OPENS.match(line[key.end() :])
+            quotes = opened.group(1) if opened and opened.group(1) not in line[key.end() + opened.end() :] else ""
     return lines
 
 
@@ -100,9 +108,12 @@ def read_bytes(path: Path, name: str, collector: Collector) -> bytes | None:
         if path.is_dir():
             collector.add(Problem(name, 0, "", "is a folder, a file is needed"))
             return None
-        size = path.stat().st_size
-        if size > MAX_BYTES:
-            collector.add(Problem(name, 0, "", "is too large", f"{size} bytes", f"at most {MAX_BYTES} bytes"))
+        status = path.stat()
+        if not stat.S_ISREG(status.st_mode):
+            collector.add(Problem(name, 0, "", "is not a regular file"))
+            return None
+        if status.st_size > MAX_BYTES:
+            collector.add(Problem(name, 0, "", "is too large", f"{status.st_size} bytes", f"at most {MAX_BYTES} bytes"))
             return None
         return path.read_bytes()
     except FileNotFoundError:
@@ -125,6 +136,9 @@ def read_toml(path: Path, collector: Collector, name: str | None = None) -> Toml
         return None
     if not raw.strip():
         collector.add(Problem(name, 0, "", "is empty"))
+        return None
+    if raw.startswith(codecs.BOM_UTF8):
+        collector.add(Problem(name, 1, "", "starts with a byte order mark", "", "UTF-8 text without it"))
         return None
     try:
         text = raw.decode("utf-8")

@@ -32,8 +32,14 @@ def _number(value: Any) -> Any:
 M = TypeVar("M", bound="FileModel")
 Number = Annotated[Decimal | int, BeforeValidator(_number)]
 Text = Annotated[str, Field(max_length=20_000)]
-Label = Annotated[str, Field(pattern=r"^[A-Za-z0-9][A-Za-z0-9_.\-]{0,80}$")]
-NodeLabel = Annotated[str, Field(pattern=r"^[A-Za-z][A-Za-z0-9_\-]{0,40}$")]
+_LABEL = r"^[A-Za-z0-9][A-Za-z0-9_.\-]{0,80}$"
+_NODE_LABEL = r"^[A-Za-z][A-Za-z0-9_\-]{0,40}$"
+_PATTERN_TEXT = {
+    _LABEL: "up to 81 letters, digits, '_', '.' and '-', starting with a letter or digit",
+    _NODE_LABEL: "up to 41 letters, digits, '_' and '-', starting with a letter",
+}
+Label = Annotated[str, Field(pattern=_LABEL)]
+NodeLabel = Annotated[str, Field(pattern=_NODE_LABEL)]
 
 
 class FileModel(BaseModel):
@@ -251,6 +257,7 @@ _KIND_TEXT = {
     "list_type": "a list is needed",
     "dict_type": "a table is needed",
     "model_type": "a table is needed",
+    "model_attributes_type": "a table is needed",
     "string_pattern_mismatch": "has characters that are not allowed here",
     "string_too_long": "is too long",
     "too_short": "needs at least one entry",
@@ -265,10 +272,12 @@ def _models_in(annotation: Any) -> list[type[BaseModel]]:
 
 
 def _child(annotation: Any, step: Any) -> Any:
-    """The annotation one step further down: a field, the value type of a dict, or a list item."""
+    """The annotation one step further down: a field, the value type of a dict, a list item, or a spread's shape."""
     if get_origin(annotation) is dict:
         return get_args(annotation)[1]
     for model in _models_in(annotation):
+        if "shape" in model.model_fields and step in get_args(model.model_fields["shape"].annotation):
+            return model
         for key, info in model.model_fields.items():
             if step in (key, info.alias):
                 return info.annotation
@@ -292,6 +301,7 @@ def _dotted(location: tuple[Any, ...]) -> str:
         for position, step in enumerate(location)
         if not (step in tags and position and location[position - 1] == "spread")
         and not str(step).startswith("function-")
+        and step != "[key]"
     ]
     return ".".join(kept)
 
@@ -332,7 +342,8 @@ def _as_problem(model: type[FileModel], file: TomlFile, prefix: tuple[str, ...],
     elif kind in ("number", "finite"):
         what = str(item["msg"])
     elif kind == "string_pattern_mismatch":
-        what, allowed = _KIND_TEXT[kind], str(context.get("pattern", ""))
+        pattern = str(context.get("pattern", ""))
+        what, allowed = _KIND_TEXT[kind], _PATTERN_TEXT.get(pattern, pattern)
     else:
         what = _KIND_TEXT.get(kind, str(item["msg"]))
     return Problem(file.name, file.line(dotted), dotted, what, found, allowed, hint)

@@ -139,12 +139,16 @@ def convert_number(number: Decimal | int, unit: Unit, place: Place, key: str, co
     return si
 
 
+def _amount(number: str, unit: str) -> str:
+    return number if unit == "1" else f"{number} {unit}"
+
+
 def check_range(
     quantity: Quantity, si: float, unit: Unit, unusual: bool, place: Place, key: str, collector: Collector
 ) -> bool:
     """Check domain and usual range; beyond a factor 1000 only with ``unusual = true``."""
     dotted = f"{place.dotted}.{key}"
-    as_found = f"{from_si(si, unit):.6g} {unit.text}"
+    as_found = _amount(f"{from_si(si, unit):.6g}", unit.text)
     if not quantity.allows(si):
         collector.add(place.file.problem(dotted, "is out of its domain", as_found, quantity.domain_text))
         return False
@@ -152,7 +156,7 @@ def check_range(
     low, high = (to_si(Decimal(repr(bound)), unit_of_range) for bound in (quantity.low, quantity.high))
     if low <= si <= high or (si == 0.0 and quantity.domain != "positive"):
         return True
-    allowed = f"usually {quantity.low:g} to {quantity.high:g} {quantity.unit}"
+    allowed = _amount(f"usually {quantity.low:g} to {quantity.high:g}", quantity.unit)
     far = (low > 0.0 and abs(si) < low / 1000.0) or abs(si) > 1000.0 * max(abs(low), abs(high))
     if unusual:
         return True
@@ -169,6 +173,11 @@ def check_range(
         return False
     collector.warn(place.file.problem(dotted, "is outside the usual range", as_found, allowed))
     return True
+
+
+def _may_reach(quantity: Quantity, si: float) -> bool:
+    """Tell whether a range may reach a number; a range of whole numbers passes between them."""
+    return si >= 1.0 if quantity.domain == "count" else quantity.allows(si)
 
 
 def _convert_spread(
@@ -209,12 +218,10 @@ def _convert_spread(
         if isinstance(table, LogUniform) and low <= 0.0:
             refuse("needs positive limits on a log scale", f"low {table.low}", "above 0")
             return None
-        if not (quantity.allows(low) or quantity.domain == "count") or not (
-            quantity.allows(high) or quantity.domain == "count"
-        ):
+        if not (_may_reach(quantity, low) and _may_reach(quantity, high)):
             refuse(
                 "reaches out of the domain of the value",
-                f"{table.low} to {table.high} {unit.text}",
+                _amount(f"{table.low} to {table.high}", unit.text),
                 quantity.domain_text,
             )
             return None
@@ -235,7 +242,7 @@ def _convert_spread(
             refuse("is negative", shown(table.sd if table.sd is not None else table.percent), "0 or above")
             return None
         low_95, high_95 = si - NORMAL_95 * sd, si + NORMAL_95 * sd
-        if not all(quantity.allows(float(bound)) for bound in (*low_95, *high_95)):
+        if not all(_may_reach(quantity, float(bound)) for bound in (*low_95, *high_95)):
             refuse(
                 "makes the value leave its domain",
                 f"95 % range {low_95[0]:.3g} to {high_95[0]:.3g} (SI)",
@@ -263,11 +270,12 @@ def _convert_lognormal(table: LogNormal, quantity: Quantity, si: NDArray[np.floa
     ln_sd = math.log(float(table.factor)) / NORMAL_95 if table.factor is not None else float(table.ln_sd or 0)
     factor = float(table.factor) if table.factor is not None else math.exp(NORMAL_95 * ln_sd)
     high = si * factor
-    if quantity.domain == "fraction":
-        high = np.where(high > 1.0, np.nan, high)
-        if np.any(np.isnan(high)):
-            refuse("reaches above 1", f"value times {factor:.3g}", quantity.domain_text)
-            return None
+    if quantity.domain == "fraction" and np.any(high > 1.0):
+        refuse("reaches above 1", f"value times {factor:.3g}", quantity.domain_text)
+        return None
+    if quantity.domain == "count" and np.any(si / factor < 1.0):
+        refuse("reaches below 1", f"value over {factor:.3g}", quantity.domain_text)
+        return None
     return Spread("lognormal", si / factor, high, np.full(si.shape, ln_sd))
 
 
