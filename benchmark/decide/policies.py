@@ -90,7 +90,7 @@ def _fixed(run: SideRun, points: Points, condition: Condition, costly: Condition
     if costly is not None and found.any():
         found = found & costly(run, points, found[:, None])[:, 0]
     nothing = np.zeros(found.shape, dtype=bool)
-    return Optimum(points, points.energy[:, 0], found, nothing, nothing)
+    return Optimum(points, points.energy[:, 0], found, nothing, nothing, nothing)
 
 
 def optimum(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, float] | None = None) -> Optimum:
