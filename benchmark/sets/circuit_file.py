@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 from benchmark.catalogue import QUANTITIES
 from benchmark.errors import nearest
 from benchmark.sets.files import TomlFile, read_toml
+from benchmark.sets.parameters import check_formulas
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate
 from benchmark.sets.study_schema import CircuitFile, NetTable
@@ -99,6 +100,7 @@ def read_circuit(path: Path, library: Library, collector: Collector) -> CircuitS
             value = convert_value(QUANTITIES[quantity], getattr(table, key), [""], place, collector)
             if value is not None:
                 found[key] = value
+        check_formulas(found, file, {key: getattr(table, key) for key in found}, collector, f"layer.{name}")
         layers[name] = found
     nets = tuple(_net(net, position, file, layers, collector) for position, net in enumerate(parsed.net))
     if not any(net.on_critical_path > 0 for net in nets):

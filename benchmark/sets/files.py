@@ -40,7 +40,14 @@ class TomlFile:
     lines: dict[str, int]
 
     def line(self, dotted: str) -> int:
-        """Return the line of a dotted name, or of its nearest enclosing table (0 if unknown)."""
+        """Return the line of a dotted name, else of the first thing inside it, else of the nearest enclosing table.
+
+        0 if the name stands nowhere.
+        """
+        if dotted not in self.lines:
+            inside = [line for key, line in self.lines.items() if key.startswith(f"{dotted}.")]
+            if inside:
+                return min(inside)
         parts = dotted.split(".")
         while parts:
             found = self.lines.get(".".join(parts))

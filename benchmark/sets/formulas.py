@@ -8,7 +8,7 @@ from collections.abc import Mapping
 import numpy as np
 from numpy.typing import NDArray
 
-__all__ = ["FormulaError", "evaluate_formula"]
+__all__ = ["FormulaError", "evaluate_formula", "names_in"]
 
 _MAX_LENGTH = 400
 
@@ -40,6 +40,15 @@ def evaluate_formula(text: str, values: Mapping[str, NDArray[np.float64]]) -> ND
     except (ArithmeticError, FloatingPointError) as error:
         message = "cannot be computed with these values"
         raise FormulaError(message) from error
+
+
+def names_in(text: str) -> frozenset[str]:
+    """Return the names a formula uses; none when it cannot be read."""
+    try:
+        tree = ast.parse(text[:_MAX_LENGTH], mode="eval")
+    except (SyntaxError, ValueError, RecursionError, MemoryError):
+        return frozenset()
+    return frozenset(node.id for node in ast.walk(tree) if isinstance(node, ast.Name))
 
 
 def _walk(node: ast.AST, values: Mapping[str, NDArray[np.float64]]) -> NDArray[np.float64]:

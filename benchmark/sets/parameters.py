@@ -14,14 +14,15 @@ from benchmark.catalogue import QUANTITIES, TECHNOLOGY_QUANTITIES, WIRE_QUANTITI
 from benchmark.errors import nearest
 from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile
-from benchmark.sets.formulas import FormulaError, evaluate_formula
+from benchmark.sets.formulas import FormulaError, evaluate_formula, names_in
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import TechnologyFile, WiresFile, validate
 from benchmark.sets.set_parts import Anchor, ModelDeclaration, read_anchors, read_rows, read_tables
 from benchmark.sets.tables import TableFile
 from benchmark.sets.values import Place, Value, convert_measure, convert_range, convert_value
+from benchmark.units import parse_unit
 
-__all__ = ["Anchor", "ModelDeclaration", "ParameterSet", "build_technology", "build_wires"]
+__all__ = ["Anchor", "ModelDeclaration", "ParameterSet", "build_technology", "build_wires", "check_formulas"]
 
 
 @dataclass(frozen=True)
@@ -98,13 +99,23 @@ def _convert_values(
     return values
 
 
-def _check_formulas(
-    values: Mapping[str, Value], file: TomlFile, tables: Mapping[str, Any], collector: Collector
+def check_formulas(
+    values: Mapping[str, Value],
+    file: TomlFile,
+    tables: Mapping[str, Any],
+    collector: Collector,
+    prefix: str = "value",
+    others: Mapping[str, Value] | None = None,
 ) -> None:
-    """Recompute every derived value; it must agree within half a unit of its last printed digit."""
-    arrays = {name: value.si for name, value in values.items()}
+    """Recompute every derived value; it must agree within half a unit of its last printed digit.
+
+    ``values`` are those of the tables at ``prefix`` that could be read; ``others`` are further names to use.
+    """
+    known = {**(others or {}), **values}
+    arrays = {name: value.si for name, value in known.items()}
+    uses = {name: names_in(value.formula) for name, value in values.items() if value.formula}
     for name, value in values.items():
-        dotted = f"value.{name}"
+        dotted = f"{prefix}.{name}"
         if value.evidence == "derived" and not value.formula:
             collector.add(file.problem(dotted, "is derived and must state its formula", "", 'formula = "..."'))
         if not value.formula:
@@ -116,27 +127,51 @@ def _check_formulas(
                 )
             )
             continue
+        circle = _circle(name, uses)
+        if circle:
+            collector.add(file.problem(f"{dotted}.formula", "leads back to the value itself", " <- ".join(circle)))
+            continue
+        if any(used in tables and used not in values for used in uses[name]):
+            continue  # a value it needs has a problem of its own
         try:
             computed = evaluate_formula(value.formula, arrays)
         except FormulaError as error:
             collector.add(file.problem(f"{dotted}.formula", str(error), repr(value.formula)))
             continue
-        table = tables[name]
-        printed = table.by_node.values() if table.by_node is not None else [table.value]
-        half_digit = np.array([0.5 * 10.0 ** int(_exponent(number)) for number in printed])
-        scale = value.si / np.array([float(number) for number in printed])
-        computed, expected = np.broadcast_arrays(computed, value.si)
-        if np.any(np.abs(computed - expected) > half_digit * np.abs(scale) * 1.000001):
-            worst = int(np.argmax(np.abs(computed - expected)))
-            collector.add(
-                file.problem(
-                    dotted,
-                    "is stale: its formula gives another number",
-                    f"{value.in_unit(float(expected.flat[worst])):.6g} {value.unit}",
-                    f"{value.in_unit(float(computed.flat[worst])):.6g} {value.unit}",
-                    f"formula: {value.formula}",
-                )
+        _check_formula(value, computed, file, tables[name], dotted, collector)
+
+
+def _circle(name: str, uses: Mapping[str, frozenset[str]]) -> list[str]:
+    """Follow the formulas from a value back to itself; empty when they do not lead there."""
+    paths = [[name]]
+    seen: set[str] = set()
+    while paths:
+        path = paths.pop()
+        for used in sorted(uses.get(path[-1], ())):
+            if used == name:
+                return [*path, name]
+            if used not in seen:
+                seen.add(used)
+                paths.append([*path, used])
+    return []
+
+
+def _check_formula(value: Value, computed: Any, file: TomlFile, table: Any, dotted: str, collector: Collector) -> None:
+    printed = table.by_node.values() if table.by_node is not None else [table.value]
+    half_digit = np.array([0.5 * 10.0 ** int(_exponent(number)) for number in printed])
+    tolerance = half_digit * float(parse_unit(value.unit).factor) * 1.000001
+    computed, expected = np.broadcast_arrays(computed, value.si)
+    if np.any(np.abs(computed - expected) > tolerance):
+        worst = int(np.argmax(np.abs(computed - expected)))
+        collector.add(
+            file.problem(
+                dotted,
+                "is stale: its formula gives another number",
+                f"{value.in_unit(float(expected.flat[worst])):.6g} {value.unit}",
+                f"{value.in_unit(float(computed.flat[worst])):.6g} {value.unit}",
+                f"formula: {value.formula}",
             )
+        )
 
 
 def _exponent(number: Any) -> int:
@@ -152,7 +187,10 @@ def _resolve_defaults(
     collector: Collector,
 ) -> None:
     """Fill declared defaults, and report required names that are absent."""
+    words = {option.name: option.allowed for option in declaration.options}
     for item in declaration.inputs:
+        if item.when is not None and options.get(item.when[0]) not in words[item.when[0]]:
+            continue  # the option itself is refused
         if item.name in values or item.name in stated:
             if item.when is not None and options.get(item.when[0]) not in item.when[1]:
                 collector.add(
@@ -247,8 +285,9 @@ def build_technology(
             file=file.name,
             line=file.line("reference_temperature"),
         )
-    _resolve_defaults(declaration, options, values, frozenset(parsed.value), file, collector)
-    _check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
+    stated = frozenset({*parsed.value, "reference_temperature"})
+    _resolve_defaults(declaration, options, values, stated, file, collector)
+    check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
     tables = read_tables(parsed, declaration, file, sources, collector)
     rows, rows_rest_on = read_rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
     if "rows" in declaration.tables:
@@ -341,7 +380,7 @@ def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -
     for name in names:
         if name not in parsed.value:
             collector.add(file.problem(f"value.{name}", "is missing", "", f"a value in {QUANTITIES[name].unit}"))
-    _check_formulas(values, file, parsed.value, collector)
+    check_formulas(values, file, parsed.value, collector)
     if len(collector.problems) > before:
         return None
     return ParameterSet(

@@ -334,6 +334,8 @@ def _as_problem(model: type[FileModel], file: TomlFile, prefix: tuple[str, ...],
         names = _fields_at(model, location[:-1])
         what, found = "is not a known name here", ""
         allowed, hint = ", ".join(names), nearest(str(location[-1]), names)
+    elif kind == "literal_error" and location == ("schema",):
+        what, allowed = "is not a file format this version reads", str(context.get("expected", ""))
     elif kind == "literal_error":
         what, allowed = "is not one of the allowed words", str(context.get("expected", ""))
         hint = nearest(str(item["input"]), [word.strip("'") for word in allowed.replace(" or ", ", ").split(", ")])

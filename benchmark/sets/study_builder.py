@@ -10,7 +10,7 @@ from benchmark.errors import nearest
 from benchmark.sets.circuit_file import CircuitSpec, read_circuit
 from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.library import Library
-from benchmark.sets.parameters import ParameterSet
+from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate
 from benchmark.sets.study import REQUIREMENTS, NodePair, Policy, Requirement, Side, Study
@@ -51,6 +51,7 @@ class _Builder:
         self.parsed, self.file, self.library, self.circuits = parsed, file, library, circuits
         self.collector: Collector = library.collector
         self.sources = frozenset(library.sources)
+        self.study_values: Mapping[str, Value] = {}
 
     def refuse(self, dotted: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> None:
         self.collector.add(self.file.problem(dotted, what, found, allowed, hint))
@@ -122,6 +123,8 @@ class _Builder:
             value = convert_value(QUANTITIES[name], table, [""], self.place(dotted), self.collector)
             if value is not None:
                 found[name] = value
+        check_formulas(found, self.file, self.parsed.value, self.collector)
+        self.study_values = found
         circuit = self.circuits.get(self.parsed.workload.circuit)
         for name in circuit.whole if circuit else ():
             if name in found and found[name].spread is not None:
@@ -203,6 +206,7 @@ class _Builder:
                     "",
                     f"a value in {QUANTITIES[name].unit}",
                 )
+        check_formulas(found, self.file, tables, self.collector, dotted, self.study_values)
         return found
 
     def sides(self) -> tuple[Side | None, list[Side]]:

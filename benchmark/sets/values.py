@@ -283,6 +283,11 @@ def read_provenance(table: Any, place: Place, collector: Collector) -> dict[str,
     """Collect evidence, source and the rest of a value, a stage result or a table, with the file's defaults."""
     defaults, file = place.defaults, place.file
     inside = f"{place.dotted}." if place.dotted else ""
+
+    def said(key: str) -> str:
+        """Where the file says it: in the table itself, or among its defaults (then once for all values)."""
+        return f"{inside}{key}" if getattr(table, key) else f"default.{key}"
+
     found = {
         key: getattr(table, key) or getattr(defaults, key, None) or ""
         for key in ("evidence", "source", "where", "conditions", "note", "owner")
@@ -293,7 +298,7 @@ def read_provenance(table: Any, place: Place, collector: Collector) -> dict[str,
     elif evidence is None:
         collector.add(
             file.problem(
-                f"{inside}evidence",
+                said("evidence"),
                 "is not an evidence class",
                 repr(found["evidence"]),
                 ", ".join(EVIDENCE),
@@ -307,11 +312,11 @@ def read_provenance(table: Any, place: Place, collector: Collector) -> dict[str,
                     file.problem(place.dotted, f"is {evidence.name} and must state its {key}", "", f'{key} = "..."')
                 )
     if not found["source"]:
-        collector.add(file.problem(place.dotted, "has no source", "", "a key of nodes/sources.toml"))
+        collector.add(file.problem(place.dotted, "has no source", "", "a key of sources.toml"))
     elif found["source"] not in place.sources:
         collector.add(
             file.problem(
-                f"{inside}source",
+                said("source"),
                 "is not a known source",
                 repr(found["source"]),
                 "a key of sources.toml",
@@ -331,6 +336,9 @@ def convert_value(
     unit = unit_for(quantity, table.unit, place, collector)
     if (table.value is None) == (table.by_node is None):
         collector.add(file.problem(place.dotted, "needs exactly one of value and by_node"))
+        return None
+    if table.by_node is not None and list(nodes) == [""]:
+        collector.add(file.problem(f"{place.dotted}.by_node", "belongs to sets, which have nodes; one value is needed"))
         return None
     numbers: Mapping[str, Decimal | int]
     if table.by_node is not None:
