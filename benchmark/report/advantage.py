@@ -111,8 +111,8 @@ def advantage_against_time(record: Record) -> Chart:
     look = looks(record)[_candidate_key(record)]
     canvas.frame()
     placer.avoid_line([(x.pixel(row["time_s"]), y.pixel(row["advantage"])) for row in known])
-    labels = _gaps(canvas, rows, placer)
-    labels += _level_lines(canvas, record, y, placer)
+    labels = _level_lines(canvas, record, y, placer)
+    labels += _gaps(canvas, rows, placer)
     deadline = limits_of(record).deadline
     if deadline is not None and x.holds(deadline):
         edge = x.pixel(deadline)
@@ -167,8 +167,14 @@ def _gaps(canvas: Canvas, rows: Sequence[Row], placer: Placer) -> list[Label]:
         columns = max(9, int((right - left - 8.0) / 5.6))
         spots = [(left + 4.0, canvas.y.size * share) for share in (0.08, 0.3, 0.5, 0.7, 0.9)]
         canvas.rules([(edge, 0.0, edge, canvas.y.size) for edge in (left, right) if 0.0 < edge < canvas.x.size])
-        room = Box(left + 3.0, 3.0, right, canvas.y.size - 3.0)
-        placed = Placer(room, placer.boxes, placer.cells).place(wrapped(reason, columns, 8), spots, distances=(2.0,))
+        if right - left > 70.0:
+            room = Placer(Box(left + 3.0, 3.0, right, canvas.y.size - 3.0), placer.boxes, placer.cells)
+            columns = int((right - left - 8.0) / 5.6)
+            spots = [(left + 4.0, canvas.y.size * share) for share in (0.08, 0.3, 0.5, 0.7, 0.9)]
+            placed = room.place(wrapped(reason, columns, 8), spots, distances=(2.0,))
+        else:  # too narrow to write in: beside it
+            spots = [(0.5 * (left + right), canvas.y.size * share) for share in (0.9, 0.7, 0.5, 0.3, 0.1)]
+            placed = placer.place(wrapped(reason, 20), spots, distances=(20.0, 30.0, 45.0))
         if placed is not None:
             labels.append(Label(placed))
     return labels
@@ -203,7 +209,7 @@ def advantage_by_node(record: Record) -> Chart:
     height = 240.0
     y = _advantage_axis(record, [row["advantage"] for row in known], height)
     ticks = tuple((float(row["order"]), " ") for row in rows)
-    x = LinearAxis(-0.6, len(rows) - 0.4, WIDTH, "node label, in order", ticks)
+    x = LinearAxis(-0.6, len(rows) - 0.4, WIDTH, "node label, in order", ticks, title_gap=24.0)
     canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, WIDTH - 3.0, height - 3.0))
     look = looks(record)[_candidate_key(record)]
     canvas.frame()
@@ -226,14 +232,24 @@ def advantage_by_node(record: Record) -> Chart:
     remarks = [
         Words(row["note"] or "infeasible", x.pixel(float(row["order"])), height - 10.0, "center") for row in infeasible
     ]
-    names = [
-        Words(wrapped(row["node"], 14, 1)[0], x.pixel(float(row["order"])), height + 14.0, "center") for row in rows
-    ]
+    names = _node_names(rows, x, height)
     canvas.words([*(words for label in labels for words in label.words()), *remarks, *names])
-    drawing = checked(spec(canvas.layers, WIDTH, height, MARGINS))
+    drawing = checked(spec(canvas.layers, WIDTH, height, (64.0, 10.0, 12.0, 64.0)))
     summary = _node_words(record, rows)
     caption = f"Primary policy at every node pair. {summary} Labels are equally spaced: a label is not a length."
     return Chart(key, title, drawing, caption, f"Advantage by node. {summary}", tuple(rows))
+
+
+def _node_names(rows: Sequence[Row], x: LinearAxis, height: float) -> list[Words]:
+    """Write labels under their ticks in at most two lines; of very many labels every second, third ... one."""
+    room = x.size / len(rows)
+    stride = max(1, -(-34 // int(room)))
+    columns = max(5, int(room * stride * 0.95 / 6.2))
+    return [
+        Words(line, x.pixel(float(row["order"])), height + 15.0 + 13.0 * i, "center")
+        for row in rows[::stride]
+        for i, line in enumerate(wrapped(row["node"], columns, 2))
+    ]
 
 
 def _node_crossings(canvas: Canvas, record: Record, rows: Sequence[Row], y: LogAxis, placer: Placer) -> list[Label]:

@@ -8,7 +8,7 @@ from typing import Any
 
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, hatch, text_width
+from benchmark.report.placing import Box, hatch, text_width, wrapped
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import amount, is_number, listed, number, requirement_name
 
@@ -49,6 +49,11 @@ def _order(row: Row) -> tuple[float, str]:
     if row["state"] == "fail":
         return (-1e6 if place is None else max(place, -1e5), row["name"])
     return (-1e-9 if place is None or row["state"] == "unknown" else min(place, 1e6), row["name"])
+
+
+def _offer(row: Row) -> str:
+    offered, demanded = (amount(row[name], row["unit"], 2) for name in ("offered", "demanded"))
+    return wrapped(f"offered {offered}, demanded {demanded}", 46, 1)[0]
 
 
 def _axis(rows: Sequence[Row]) -> LinearAxis:
@@ -116,18 +121,20 @@ def requirement_margins(record: Record) -> Chart:
     for position, row in enumerate(rows):
         middle = 4.0 + ROW * (position + 0.5)
         _bar(canvas, axis, row, middle)
-        offered, demanded = (amount(row[name], row["unit"], 2) for name in ("offered", "demanded"))
         canvas.words(
             [
-                Words(requirement_name(row["name"]), -10.0, middle, "right", bold=row["state"] != "pass"),
-                Words(margin_words(row), WIDTH + 10.0, middle - 6.5, bold=row["state"] != "pass"),
-                Words(f"offered {offered}, demanded {demanded}", WIDTH + 10.0, middle + 6.5),
+                Words(
+                    wrapped(requirement_name(row["name"]), 24, 1)[0],
+                    -10.0,
+                    middle,
+                    "right",
+                    bold=row["state"] != "pass",
+                ),
+                Words(wrapped(margin_words(row), 42, 1)[0], WIDTH + 10.0, middle - 6.5, bold=row["state"] != "pass"),
+                Words(_offer(row), WIDTH + 10.0, middle + 6.5),
             ]
         )
-    longest = max(
-        text_width(f"offered {amount(r['offered'], r['unit'])}, demanded {amount(r['demanded'], r['unit'])}")
-        for r in rows
-    )
+    longest = max(text_width(_offer(row)) for row in rows)
     right = max(RIGHT, longest + 14.0)
     drawing = checked(spec(canvas.layers, WIDTH, height, (LEFT, 6.0, right, 48.0)))
     words = _summary(rows)

@@ -59,7 +59,10 @@ def _nice(total: float) -> tuple[list[float], float]:
 
 def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, factor: float, unit: str) -> None:
     """Draw one stacked bar with its words inside, or below it where a segment is narrow."""
-    left, words, below = 0.0, [], []
+    left = 0.0
+    words: list[Words] = []
+    below: list[tuple[float, str]] = []
+    every: list[tuple[float, str]] = []
     total = sum(row["value_SI"] for row in rows)
     for row in rows:
         if row["value_SI"] <= 0.0:
@@ -71,8 +74,8 @@ def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, fact
         if lined and right - left > 3.0:
             canvas.rules(hatch(box, 6.0), color="#a8a8a8", strokeWidth=0.8)
         if row["share"] >= SMALL:
-            share = f"{number(100.0 * row['share'])} %"
-            text = f"{row['part']} {share}"
+            text = f"{row['part']} {number(100.0 * row['share'])} %".replace(" ", "\u00a0")
+            every.append((0.5 * (left + right), text))
             if text_width(text) + 8.0 <= right - left:
                 half = 0.5 * text_width(text) + 2.0
                 middle = 0.5 * (left + right)
@@ -82,8 +85,17 @@ def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, fact
             else:
                 below.append((0.5 * (left + right), text))
         left = right
-    words.append(Words(f"{amount(total, unit, 3)}", left + 5.0, top + 0.5 * BAR, bold=True))
-    _below(canvas, below, words, top + BAR, canvas.x.size)
+    said = amount(total, unit, 3)
+    words.append(Words(said, left + 5.0, top + 0.5 * BAR, bold=True))
+    beside = left + 17.0 + text_width(said, bold=True)
+    if len(below) > 1 and beside < 0.55 * canvas.x.size:  # a short bar: its parts in order, beside it
+        listing = "from the left: " + ", ".join(text for _, text in every)
+        lines = wrapped(listing, int((canvas.x.size - beside) / 5.4), 3)
+        words += [
+            Words(line, beside, top + 0.5 * BAR + 13.0 * (i - 0.5 * (len(lines) - 1))) for i, line in enumerate(lines)
+        ]
+    else:
+        _below(canvas, below, words, top + BAR, canvas.x.size)
     canvas.words(words)
 
 
@@ -123,7 +135,7 @@ def _panel(record: Record, rows: Sequence[Row], quantity: str) -> tuple[list[Row
     words = []
     for position, (key, mine) in enumerate(sides):
         top = 8.0 + ROW * position
-        name = wrapped(side_name(record, key), 20, 2)
+        name = wrapped(side_name(record, key), 19, 2)
         canvas.words(
             [
                 Words(line, -10.0, top + 0.5 * BAR + 13.0 * (i - 0.5 * (len(name) - 1)), "right", bold=True)

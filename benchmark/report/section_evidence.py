@@ -7,7 +7,7 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from benchmark.report.blocks import Block, Bullets, Cell, Notice, Pairs, Paragraph, Section, Table, plain
-from benchmark.report.words import is_number, listed, number, plural, spaced, volts
+from benchmark.report.words import amount, is_number, listed, number, plural, spaced, volts
 from benchmark.units import from_si, parse_unit
 
 __all__ = ["anchors", "closed_form", "conventions", "ledger", "not_modelled", "options", "source_numbers", "sources"]
@@ -78,24 +78,37 @@ def anchors(record: Record) -> Section:
 
 def closed_form(record: Record) -> Section:
     """Return the closed-form delay beside the transient of the same switches."""
-    rows = record["closed_form"]
     title = "Closed form against transient"
-    if not rows:
+    if not record["closed_form"]:
         text = (
             "Not executed for this study: the closed-form delay was not compared with a transient of the same switches."
         )
         return Section("closed-form", title, (Paragraph(text),))
-    names = list(dict.fromkeys(name for row in rows for name in row))
-    cells = [[_raw(row.get(name)) for name in names] for row in rows]
-    caption = "Delay by the rule of the study and by solving the circuit of the same switches in time (SI units)"
-    columns = [name.replace("_", " ") for name in names]
-    return Section("closed-form", title, (plain("closed-form", caption, columns, cells, digits=4, wide=True),))
-
-
-def _raw(value: Any) -> Any:
-    if value is None:
-        return "not stated"
-    return value if isinstance(value, (bool, str)) or is_number(value) else str(value)
+    rows = [
+        (
+            Cell(row["side"], small=f"net {row['net']}"),
+            volts(row["supply"], 3),
+            amount(row["temperature"], "K", 4),
+            row["rule"],
+            amount(row["closed_delay"], "s", 4),
+            amount(row["transient_delay"], "s", 4) if is_number(row["transient_delay"]) else "not solved",
+            _difference(row["difference"]) if is_number(row["difference"]) else "not solved",
+            row["note"],
+        )
+        for row in record["closed_form"]
+    ]
+    columns = (
+        "side",
+        "supply",
+        "temperature",
+        "delay rule",
+        "by the rule",
+        "by transient",
+        "rule over transient, minus 1",
+        "note",
+    )
+    caption = "Delay of the stage that takes most of the path, by the rule of the study and solved in time"
+    return Section("closed-form", title, (plain("closed-form", caption, columns, rows, wide=True),))
 
 
 def _values(row: Mapping[str, Any]) -> Cell:

@@ -15,6 +15,7 @@ __all__ = ["answer", "evidence_counts", "question", "requirements"]
 
 Record = Mapping[str, Any]
 MOST_NAMED = 5
+MOST_LISTED = 8
 #: evidence classes that cannot be improved by measuring
 SETTLED = ("defined", "measured", "choice")
 
@@ -55,6 +56,13 @@ def _first_to_measure(record: Record) -> str:
     return "nothing: no single input, wherever it lies in its stated range, would change this answer."
 
 
+def _first(items: Sequence[str]) -> tuple[str, ...]:
+    """Keep the first screen short; the section What moves the answer has all."""
+    if len(items) <= MOST_LISTED:
+        return tuple(items)
+    return (*items[:MOST_LISTED], f"and {len(items) - MOST_LISTED} more, listed in the section What moves the answer")
+
+
 def answer(record: Record, digest: str) -> Section:
     """Return the answer in one sentence, its conditions, and three lines."""
     study, verdict = record["study"], record["verdict"]
@@ -70,9 +78,9 @@ def answer(record: Record, digest: str) -> Section:
     if verdict["reasons"]:
         blocks.append(Bullets(tuple(verdict["reasons"]), "Why"))
     if verdict["conditions"]:
-        blocks.append(Bullets(tuple(verdict["conditions"]), "Conditions: each of these must hold"))
+        blocks.append(Bullets(_first(verdict["conditions"]), "Conditions: each of these must hold"))
     if verdict["measure_next"] and verdict["measure_next"] != verdict["reasons"]:
-        blocks.append(Bullets(tuple(verdict["measure_next"]), "To be measured before deciding"))
+        blocks.append(Bullets(_first(verdict["measure_next"]), "To be measured before deciding"))
     advantage = verdict["advantage"]
     if is_number(advantage) and study["required_advantage"] != 1.0:
         word = "reaches" if advantage >= 1.0 else "does not reach"
@@ -181,7 +189,7 @@ def _sides(record: Record) -> Table:
 
 def question(record: Record) -> Section:
     """Return the question as asked: every slot filled."""
-    blocks: list[Block] = [Paragraph(record["study"]["title"]), Pairs(tuple(_slots(record)))]
+    blocks: list[Block] = [Pairs(tuple(_slots(record)))]
     if record["study"]["note"]:
         blocks.append(Paragraph(record["study"]["note"], "Note:"))
     what_if = record.get("what_if") or {}

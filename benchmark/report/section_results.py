@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from benchmark.report.advantage import crossing_words, levels
-from benchmark.report.blocks import Block, Cell, Figure, Notice, Paragraph, Section, Table, plain
+from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Paragraph, Section, Table, plain
 from benchmark.report.words import amount, is_number, number, plural, policy_name, spaced, volts
 
 __all__ = ["curves", "energy_and_time", "moves", "nodes", "policies", "required_time"]
@@ -174,7 +174,12 @@ def moves(record: Record, figure: Figure) -> Section:
         f"have no stated range; {verdict['inputs_of_judgement']} are judgement or invented; "
         f"{plural(len(verdict['without_effect']), 'input')} moved without effect."
     )
-    return Section("moves", "What moves the answer", (Paragraph(counts), figure, table))
+    complete = [
+        Bullets(tuple(verdict[key]), title)
+        for key, title in (("conditions", "All conditions"), ("measure_next", "All to be measured before deciding"))
+        if verdict[key]
+    ]
+    return Section("moves", "What moves the answer", (Paragraph(counts), figure, table, *complete))
 
 
 def _node_side(row: Mapping[str, Any], side: str) -> list[str]:

@@ -183,6 +183,7 @@ class LinearAxis:
     title: str = ""
     ticks: tuple[tuple[float, str], ...] = ()
     vertical: bool = False
+    title_gap: float = 8.0
 
     def pixel(self, value: float) -> float:
         """Pixels from the left, or from the top."""
@@ -203,6 +204,7 @@ class LinearAxis:
             "title": self.title,
             "values": values,
             "labelExpr": f"{labels!r}[indexof({values!r}, datum.value)]",
+            "titlePadding": self.title_gap,
             "labelOverlap": False,
         }
 

@@ -83,6 +83,7 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
     words = []
     low, high = ends["low"], ends["high"]
     first, second = (low, high) if (low[0], not low[2]) <= (high[0], not high[2]) else (high, low)
+    left, right = min(left, best - 5.0), max(right, best + 5.0)  # clear of the symbol
     words.append(Words(first[1], left - 5.0, middle, "right"))
     if second[2]:
         words.append(Words(second[1], WIDTH - 6.0, middle, "right"))
@@ -141,7 +142,7 @@ def input_swings(record: Record) -> Chart:
         name, owner = _name(row["key"])
         canvas.words(
             [
-                Words(wrapped(name, 34, 1)[0], -10.0, middle - 6.5, "right", bold=True),
+                Words(wrapped(name, 33, 1)[0], -10.0, middle - 6.5, "right", bold=True),
                 Words(wrapped(f"{owner}; {row['evidence']}", 38, 1)[0], -10.0, middle + 6.5, "right"),
             ]
         )

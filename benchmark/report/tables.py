@@ -252,6 +252,23 @@ def _anchors(record: Record) -> list[Row]:
     ]
 
 
+def _closed_form(record: Record) -> list[Row]:
+    return [
+        {
+            "side": row["side"],
+            "net": row["net"],
+            "supply_V": row["supply"],
+            "temperature_K": row["temperature"],
+            "delay_rule": row["rule"],
+            "closed_form_delay_s": row["closed_delay"],
+            "transient_delay_s": _word(row["transient_delay"], "not solved"),
+            "relative_difference": _word(row["difference"], "not solved"),
+            "note": row["note"],
+        }
+        for row in record["closed_form"]
+    ]
+
+
 def _ledger(record: Record) -> list[Row]:
     rows = []
     for row in record["ledger"]:
@@ -340,7 +357,7 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "moves": _moves,
     "nodes": _nodes,
     "anchors": _anchors,
-    "closed_form": _plain("closed_form"),
+    "closed_form": _closed_form,
     "ledger": _ledger,
     "options": _plain("options"),
     "sides": _side_rows,
