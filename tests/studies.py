@@ -13,7 +13,6 @@ from typing import Any
 import pytest
 
 from benchmark.record.load import load_study
-from benchmark.record.run import run_study
 
 Table = dict[str, Any]
 D = Decimal
@@ -126,6 +125,8 @@ def run(inputs: Inputs, folder: Path, *, whole: bool = False) -> dict[str, Any]:
     Unless ``whole``, the comparison of the closed-form delay with a solved transient is left out: it takes most of the
     time of a small study and nothing of the verdict or the summary depends on it.
     """
+    from benchmark.record.run import run_study
+
     study, library = load_study(inputs.write(folder))
     with pytest.MonkeyPatch.context() as patch:
         if not whole:

@@ -41,6 +41,11 @@ class Quantity:
         return True
 
     @property
+    def example(self) -> str:
+        """What to write for it, for messages."""
+        return "a number" if self.unit == "1" else f"a value in {self.unit}"
+
+    @property
     def domain_text(self) -> str:
         """The domain in words, for messages."""
         return {

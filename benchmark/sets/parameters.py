@@ -222,7 +222,7 @@ def _resolve_defaults(
                     f"value.{item.name}",
                     f"is missing ({quantity.meaning})",
                     "",
-                    f"a value in {quantity.unit}",
+                    quantity.example,
                     f"the model {declaration.name} needs it",
                 )
             )
@@ -379,7 +379,7 @@ def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -
     values = _convert_values(parsed.value, names, parsed.nodes, file, parsed.default, sources, collector, "wires sets")
     for name in names:
         if name not in parsed.value:
-            collector.add(file.problem(f"value.{name}", "is missing", "", f"a value in {QUANTITIES[name].unit}"))
+            collector.add(file.problem(f"value.{name}", "is missing", "", QUANTITIES[name].example))
     check_formulas(values, file, parsed.value, collector)
     if len(collector.problems) > before:
         return None

@@ -59,8 +59,10 @@ class _Builder:
     def place(self, dotted: str) -> Place:
         return Place(self.file, dotted, self.parsed.default, self.sources)
 
-    def measure(self, measure: Measure, unit: str, dotted: str, low: float | None = 0.0) -> float | None:
-        return convert_measure(measure, unit, low, self.place(dotted), self.collector)
+    def measure(
+        self, measure: Measure, unit: str, dotted: str, low: float | None = 0.0, key: str = "value"
+    ) -> float | None:
+        return convert_measure(measure, unit, low, self.place(dotted), self.collector, key)
 
     def word(self, dotted: str, text: str, allowed: Sequence[str]) -> None:
         if text not in allowed:
@@ -105,10 +107,12 @@ class _Builder:
                 may.add("clock_frequency")
         return must, may
 
-    def values(self) -> dict[str, Value]:
+    def values(self, spec: CircuitSpec | None) -> dict[str, Value]:
         must, may = self.needed_values()
-        allowed = sorted(must | may)
         names = {quantity.name for quantity in STUDY_QUANTITIES}
+        if spec is None and self.parsed.workload.circuit not in self.circuits:
+            may = names  # the circuit is refused: what it would need is not known
+        allowed = sorted(must | may)
         found: dict[str, Value] = {}
         for name, table in self.parsed.value.items():
             dotted = f"value.{name}"
@@ -130,9 +134,7 @@ class _Builder:
             if name in found and found[name].spread is not None:
                 self.refuse(f"value.{name}.spread", "is not possible: the number shapes the netlist of the circuit")
         for name in sorted(must - set(self.parsed.value)):
-            self.refuse(
-                f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", f"a value in {QUANTITIES[name].unit}"
-            )
+            self.refuse(f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", QUANTITIES[name].example)
         lengths = [name for name in _LENGTHS if name in self.parsed.value]
         if len(lengths) > 1 or (circuit is not None and circuit.length == "required" and not lengths):
             self.refuse("value", f"needs exactly one of {' and '.join(_LENGTHS)}", ", ".join(lengths) or "none")
@@ -155,18 +157,13 @@ class _Builder:
     def side(self, table: SideTable, dotted: str) -> Side | None:
         where = self.file.problem(f"{dotted}.technology", "")
         technology = self.library.load(table.technology, "technologies", where)
-        low = self.measure(
-            Measure(value=table.knobs.supply.low, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply"
-        )
-        high = self.measure(
-            Measure(value=table.knobs.supply.high, unit=table.knobs.supply.unit), "V", f"{dotted}.knobs.supply"
+        span, place = table.knobs.supply, f"{dotted}.knobs.supply"
+        low, high = (
+            self.measure(Measure(value=number, unit=span.unit), "V", place, key=key)
+            for key, number in (("low", span.low), ("high", span.high))
         )
         if low is not None and high is not None and not 0.0 < low <= high:
-            self.refuse(
-                f"{dotted}.knobs.supply",
-                "needs 0 < low <= high",
-                f"{table.knobs.supply.low} to {table.knobs.supply.high} {table.knobs.supply.unit}",
-            )
+            self.refuse(place, "needs 0 < low <= high", f"{span.low} to {span.high} {span.unit}")
         sizes = self.frozen(table.knobs.size, "1", f"{dotted}.knobs.size", 1.0)
         if any(size <= 0 for size in sizes):
             self.refuse(f"{dotted}.knobs.size", "must be above 0")
@@ -204,7 +201,7 @@ class _Builder:
                     f"{dotted}.{name}",
                     "is missing (a zero is an entry, not an omission)",
                     "",
-                    f"a value in {QUANTITIES[name].unit}",
+                    QUANTITIES[name].example,
                 )
         check_formulas(found, self.file, tables, self.collector, dotted, self.study_values)
         return found
@@ -439,7 +436,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     build = _Builder(parsed, file, library, circuits)
     build.word("product.class", parsed.product.class_, list(PRODUCT_CLASSES))
     spec = build.circuit_spec()
-    values = build.values()
+    values = build.values(spec)
     temperatures = build.temperatures()
     wires = build.wires_set(parsed.conditions.wires, "conditions.wires")
     candidate, contenders = build.sides()
@@ -516,14 +513,16 @@ def _check_transient(build: _Builder, points: int) -> None:
 
 
 def _check_temperatures(build: _Builder, temperatures: Sequence[float], sides: Sequence[Side]) -> None:
-    """Every temperature of the study must lie in the validity range of every set."""
-    for side in sides:
-        low, high = side.technology.valid.get("temperature", (0.0, float("inf")))
+    """Every temperature of the study must lie in the validity range of every set that states one."""
+    for technology in {side.technology.id: side.technology for side in sides}.values():
+        if "temperature" not in technology.valid:
+            continue
+        low, high = technology.valid["temperature"]
         for temperature in temperatures:
-            if not low <= temperature <= high:
+            if temperature > 0.0 and not low <= temperature <= high:
                 build.refuse(
                     "conditions.temperatures",
-                    f"is outside the validity of {side.technology.id}",
+                    f"is outside the validity of {technology.id}",
                     f"{temperature:g} K",
                     f"{low:g} to {high:g} K",
                 )

@@ -393,9 +393,12 @@ def convert_value(
 
 
 def convert_measure(
-    measure: Measure, unit_like: str, domain_low: float | None, place: Place, collector: Collector
+    measure: Measure, unit_like: str, domain_low: float | None, place: Place, collector: Collector, key: str = "value"
 ) -> float | None:
-    """Convert a plain number with unit; ``unit_like`` fixes the dimension, ``domain_low`` the lowest value (SI)."""
+    """Convert a plain number with unit; ``unit_like`` fixes the dimension, ``domain_low`` the lowest value (SI).
+
+    ``key``: how the file calls the number.
+    """
     try:
         unit = parse_unit(measure.unit)
     except UnitError as error:
@@ -414,11 +417,11 @@ def convert_measure(
             )
         )
         return None
-    si = convert_number(measure.value, unit, place, "value", collector)
+    si = convert_number(measure.value, unit, place, key, collector)
     if si is not None and domain_low is not None and si < domain_low:
         collector.add(
             place.file.problem(
-                f"{place.dotted}.value",
+                f"{place.dotted}.{key}",
                 "is too small",
                 f"{measure.value} {measure.unit}",
                 f"at least {from_si(domain_low, unit):g} {measure.unit}",
@@ -430,8 +433,8 @@ def convert_measure(
 
 def convert_range(table: RangeTable, unit_like: str, place: Place, collector: Collector) -> tuple[float, float] | None:
     """Convert a closed range; low must not exceed high."""
-    low = convert_measure(Measure(value=table.low, unit=table.unit), unit_like, None, place, collector)
-    high = convert_measure(Measure(value=table.high, unit=table.unit), unit_like, None, place, collector)
+    low = convert_measure(Measure(value=table.low, unit=table.unit), unit_like, None, place, collector, "low")
+    high = convert_measure(Measure(value=table.high, unit=table.unit), unit_like, None, place, collector, "high")
     if low is None or high is None:
         return None
     if low > high:
