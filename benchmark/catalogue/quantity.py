@@ -7,7 +7,7 @@ from typing import Literal
 
 __all__ = ["Domain", "Quantity"]
 
-Domain = Literal["positive", "nonnegative", "any", "fraction", "count"]
+Domain = Literal["positive", "nonnegative", "any", "fraction", "share", "count"]
 
 
 @dataclass(frozen=True)
@@ -17,7 +17,7 @@ class Quantity:
     ``unit`` fixes the dimension and is the unit in which ``low`` and ``high`` (the usual range) are stated and in
     which reports print the value. Outside the usual range a value is warned about; beyond a factor 1000 it is
     refused unless the file says ``unusual = true``. ``domain`` is never negotiable: positive, nonnegative, any
-    sign, fraction (0 to 1) or count (whole number >= 1).
+    sign, fraction (0 to 1), share (above 0, at most 1) or count (whole number >= 1).
     """
 
     name: str
@@ -36,6 +36,8 @@ class Quantity:
             return si >= 0.0
         if self.domain == "fraction":
             return 0.0 <= si <= 1.0
+        if self.domain == "share":
+            return 0.0 < si <= 1.0
         if self.domain == "count":
             return si >= 1.0 and float(si).is_integer()
         return True
@@ -53,5 +55,6 @@ class Quantity:
             "nonnegative": "0 or above",
             "any": "any finite number",
             "fraction": "between 0 and 1",
+            "share": "above 0, at most 1",
             "count": "a whole number, 1 or more",
         }[self.domain]

@@ -62,7 +62,7 @@ STUDY_QUANTITIES: tuple[Quantity, ...] = (
         "level_shifter_energy", "E_ls", "energy of level shifters per operation", "fJ", 1.0e-3, 1.0e6, "nonnegative"
     ),
     Quantity("level_shifter_delay", "t_ls", "delay of level shifters per operation", "ps", 0.1, 1.0e4, "nonnegative"),
-    Quantity("supply_efficiency", "eta", "efficiency of generating the supply", "1", 0.3, 1.0, "fraction"),
+    Quantity("supply_efficiency", "eta", "efficiency of generating the supply", "1", 0.3, 1.0, "share"),
     Quantity(
         "overhead_power",
         "P_ov",

@@ -22,7 +22,7 @@ import numpy as np
 from benchmark.catalogue import EVIDENCE, QUANTITIES
 from benchmark.circuits.library import BUILT_IN
 from benchmark.decide.compare import Comparison, Outcome
-from benchmark.decide.requirements import RequirementResult
+from benchmark.decide.assess import RequirementResult
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
 from benchmark.sets.study import NodePair, Study
@@ -100,7 +100,7 @@ def _probe(value: Value) -> float | None:
     if quantity.domain == "count":
         return si + 1.0
     # a share is moved down: above it may lie a limit of its own (data of a register rise at most every other cycle)
-    return si * (1.0 - PROBE if quantity.domain == "fraction" else 1.0 + PROBE)
+    return si * (1.0 - PROBE if quantity.domain in ("fraction", "share") else 1.0 + PROBE)
 
 
 def _moves_of(values: Mapping[str, Value], shaping: tuple[str, ...]) -> list[tuple[str, float, float]]:

@@ -19,7 +19,7 @@ from benchmark.sets.problems import Collector
 from benchmark.sets.schema import TechnologyFile, WiresFile, validate
 from benchmark.sets.set_parts import Anchor, ModelDeclaration, read_anchors, read_rows, read_tables
 from benchmark.sets.tables import TableFile
-from benchmark.sets.values import Place, Value, convert_measure, convert_range, convert_value
+from benchmark.sets.values import Place, Value, amount, convert_measure, convert_range, convert_value
 from benchmark.units import parse_unit
 
 __all__ = ["Anchor", "ModelDeclaration", "ParameterSet", "build_technology", "build_wires", "check_formulas"]
@@ -167,8 +167,8 @@ def _check_formula(value: Value, computed: Any, file: TomlFile, table: Any, dott
             file.problem(
                 dotted,
                 "is stale: its formula gives another number",
-                f"{value.in_unit(float(expected.flat[worst])):.6g} {value.unit}",
-                f"{value.in_unit(float(computed.flat[worst])):.6g} {value.unit}",
+                amount(f"{value.in_unit(float(expected.flat[worst])):.6g}", value.unit),
+                amount(f"{value.in_unit(float(computed.flat[worst])):.6g}", value.unit),
                 f"formula: {value.formula}",
             )
         )

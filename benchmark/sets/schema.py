@@ -300,7 +300,8 @@ def _dotted(location: tuple[Any, ...]) -> str:
         str(step)
         for position, step in enumerate(location)
         if not (step in tags and position and location[position - 1] == "spread")
-        and not str(step).startswith("function-")
+        and not str(step).startswith(("function-", "literal[", "dict[", "constrained-"))
+        and step not in ("Measure", "str")
         and step != "[key]"
     ]
     return ".".join(kept)

@@ -13,7 +13,8 @@ from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate
-from benchmark.sets.study import REQUIREMENTS, NodePair, Policy, Requirement, Side, Study
+from benchmark.sets.study import NodePair, Side, Study
+from benchmark.sets.study_policy import check_declared_supplies, read_policy, read_requirements
 from benchmark.sets.study_schema import FrozenKnob, SideTable, StudyFile
 from benchmark.sets.study_schema import NodePair as NodePairTable
 from benchmark.sets.values import Place, Value, convert_measure, convert_value
@@ -320,80 +321,6 @@ class _Builder:
                     "give the other node a set of its own",
                 )
 
-    # -- requirements, policy -------------------------------------------------------------------------------
-
-    def requirements(self) -> dict[str, Requirement]:
-        found: dict[str, Requirement] = {}
-        for name, table in self.parsed.requirements.items():
-            dotted = f"requirements.{name}"
-            if name not in REQUIREMENTS:
-                self.refuse(
-                    dotted, "is not a known requirement", "", ", ".join(REQUIREMENTS), nearest(name, REQUIREMENTS)
-                )
-                continue
-            unit, _ = REQUIREMENTS[name]
-            limit, life = None, 0.0
-            if name == "endurance":
-                if table.limit is not None or table.life is None:
-                    self.refuse(dotted, "needs a life and no limit", "", 'life = { value = 10.0, unit = "year" }')
-                else:
-                    life = self.measure(table.life, "s", f"{dotted}.life") or 0.0
-            elif table.limit == "cycle":
-                if name != "deadline" or self.parsed.workload.timing != "clocked":
-                    self.refuse(f"{dotted}.limit", 'may be "cycle" only for the deadline of a clocked workload')
-            elif table.limit is None or isinstance(table.limit, str):
-                self.refuse(dotted, "has no limit", "", f'limit = {{ value = ..., unit = "{unit}" }}')
-            else:
-                limit = self.measure(table.limit, unit, f"{dotted}.limit")
-            if table.life is not None and name != "endurance":
-                self.refuse(f"{dotted}.life", "belongs to endurance only")
-            functional = name in ("noise_margin", "voltage_gain")
-            if table.fan_in is not None and not functional:
-                self.refuse(f"{dotted}.fan_in", "belongs to noise_margin and voltage_gain only")
-            if table.fan_in is not None and not 1 <= table.fan_in <= 16:
-                self.refuse(f"{dotted}.fan_in", "is out of range", str(table.fan_in), "1 to 16")
-            found[name] = Requirement(name, limit, unit, table.kind, table.fan_in or 1, life)
-        return {name: found[name] for name in REQUIREMENTS if name in found}
-
-    def policy(self, contenders: Sequence[Side]) -> Policy:
-        table = self.parsed.policy
-        used = {table.primary, *table.also}
-        required: float | str = ""
-        if table.required_time is None:
-            if used & {"iso-delay"}:
-                self.refuse(
-                    "policy.required_time",
-                    "is missing",
-                    "",
-                    '"cycle", "contender:<id>" or { value, unit }',
-                    "iso-delay needs it",
-                )
-        elif isinstance(table.required_time, str):
-            required = table.required_time
-            names = [f"contender:{side.id}" for side in contenders]
-            allowed = (["cycle"] if self.parsed.workload.timing == "clocked" else []) + names
-            self.word("policy.required_time", required, allowed)
-        else:
-            required = self.measure(table.required_time, "s", "policy.required_time") or 0.0
-        energy = None
-        if table.required_energy is not None:
-            if "iso-energy" not in used:
-                self.refuse("policy.required_energy", "is used by iso-energy only, which is not asked for")
-            energy = self.measure(table.required_energy, "J", "policy.required_energy")
-        elif "iso-energy" in used:
-            self.refuse("policy.required_energy", "is missing", "", "{ value, unit }", "iso-energy needs it")
-        exponent = 1.0
-        if table.exponent is not None:
-            exponent = float(table.exponent)
-            if "minimum-energy-delay" not in used:
-                self.refuse("policy.exponent", "is used by minimum-energy-delay only, which is not asked for")
-            if not 0.0 < exponent <= 10.0:
-                self.refuse("policy.exponent", "is out of range", shown(table.exponent), "above 0, at most 10")
-        elif "minimum-energy-delay" in used:
-            self.refuse("policy.exponent", "is missing", "", "exponent = 1.0", "minimum-energy-delay needs it")
-        also = tuple(dict.fromkeys(name for name in table.also if name != table.primary))
-        return Policy(table.primary, also, required, energy, exponent, table.metric)
-
     def temperatures(self) -> tuple[float, ...]:
         table = self.parsed.conditions.temperatures
         try:
@@ -441,8 +368,8 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     wires = build.wires_set(parsed.conditions.wires, "conditions.wires")
     candidate, contenders = build.sides()
     pairs = build.pairs(candidate, contenders, wires)
-    requirements = build.requirements()
-    policy = build.policy(contenders)
+    requirements = read_requirements(build)
+    policy = read_policy(build)
     advantage = build.number("verdict.required_advantage", parsed.verdict.required_advantage, 1e-6, 1e6)
     delay_band = build.number("conditions.guard_band.delay", parsed.conditions.guard_band.delay, 1.0, 100.0)
     leakage_band = build.number("conditions.guard_band.leakage", parsed.conditions.guard_band.leakage, 1.0, 1e6)
@@ -451,6 +378,8 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     _check_transient(build, points)
     _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
     _check_self_comparison(build, candidate, contenders)
+    if candidate is not None and contenders:
+        check_declared_supplies(build, policy, candidate, contenders)
     _check_invented(build, values, candidate, contenders, [pair.wires for pair in pairs], spec)
     if len(library.collector.problems) > before or candidate is None or wires is None or not contenders:
         return None

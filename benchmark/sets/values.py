@@ -30,7 +30,7 @@ from benchmark.sets.schema import (
 )
 from benchmark.units import Unit, UnitError, from_si, parse_unit, to_si
 
-__all__ = ["Spread", "Value", "convert_measure", "convert_range", "convert_value", "read_provenance"]
+__all__ = ["Spread", "Value", "amount", "convert_measure", "convert_range", "convert_value", "read_provenance"]
 
 #: half-width of the central 95 % of a normal distribution, in standard deviations
 NORMAL_95 = 1.959963984540054
@@ -139,7 +139,8 @@ def convert_number(number: Decimal | int, unit: Unit, place: Place, key: str, co
     return si
 
 
-def _amount(number: str, unit: str) -> str:
+def amount(number: str, unit: str) -> str:
+    """Write a number with its unit; a plain number has none."""
     return number if unit == "1" else f"{number} {unit}"
 
 
@@ -148,7 +149,7 @@ def check_range(
 ) -> bool:
     """Check domain and usual range; beyond a factor 1000 only with ``unusual = true``."""
     dotted = f"{place.dotted}.{key}"
-    as_found = _amount(f"{from_si(si, unit):.6g}", unit.text)
+    as_found = amount(f"{from_si(si, unit):.6g}", unit.text)
     if not quantity.allows(si):
         collector.add(place.file.problem(dotted, "is out of its domain", as_found, quantity.domain_text))
         return False
@@ -156,7 +157,7 @@ def check_range(
     low, high = (to_si(Decimal(repr(bound)), unit_of_range) for bound in (quantity.low, quantity.high))
     if low <= si <= high or (si == 0.0 and quantity.domain != "positive"):
         return True
-    allowed = _amount(f"usually {quantity.low:g} to {quantity.high:g}", quantity.unit)
+    allowed = amount(f"usually {quantity.low:g} to {quantity.high:g}", quantity.unit)
     far = (low > 0.0 and abs(si) < low / 1000.0) or abs(si) > 1000.0 * max(abs(low), abs(high))
     if unusual:
         return True
@@ -221,7 +222,7 @@ def _convert_spread(
         if not (_may_reach(quantity, low) and _may_reach(quantity, high)):
             refuse(
                 "reaches out of the domain of the value",
-                _amount(f"{table.low} to {table.high}", unit.text),
+                amount(f"{table.low} to {table.high}", unit.text),
                 quantity.domain_text,
             )
             return None
@@ -270,7 +271,7 @@ def _convert_lognormal(table: LogNormal, quantity: Quantity, si: NDArray[np.floa
     ln_sd = math.log(float(table.factor)) / NORMAL_95 if table.factor is not None else float(table.ln_sd or 0)
     factor = float(table.factor) if table.factor is not None else math.exp(NORMAL_95 * ln_sd)
     high = si * factor
-    if quantity.domain == "fraction" and np.any(high > 1.0):
+    if quantity.domain in ("fraction", "share") and np.any(high > 1.0):
         refuse("reaches above 1", f"value times {factor:.3g}", quantity.domain_text)
         return None
     if quantity.domain == "count" and np.any(si / factor < 1.0):
@@ -423,8 +424,8 @@ def convert_measure(
             place.file.problem(
                 f"{place.dotted}.{key}",
                 "is too small",
-                f"{measure.value} {measure.unit}",
-                f"at least {from_si(domain_low, unit):g} {measure.unit}",
+                amount(str(measure.value), measure.unit),
+                amount(f"at least {from_si(domain_low, unit):g}", measure.unit),
             )
         )
         return None
