@@ -30,14 +30,22 @@ class FunctionalPoints:
 
 
 def functional_points(problem: SideProblem, points: Points, fan_in: int) -> FunctionalPoints:
-    """Evaluate the functional floor of ``fan_in``-input gates; nan where the pair does not switch."""
+    """Evaluate the functional floor of ``fan_in``-input gates.
+
+    nan where the pair does not switch, and everywhere when the technology states fewer switches in series than the
+    gate needs: such a gate cannot be built, so it meets no floor.
+    """
     rows, supplies = points.supply.shape
     step = max(1, BLOCK_POINTS // (max(rows, problem.batch.rows) * len(problem.study.temperatures)))
     pieces = []
     for start in range(0, supplies, step):
         part = points.supply[:, start : start + step]
-        found = functional(problem.switches(part, points.threshold_shift), fan_in)
+        pair = problem.switches(part, points.threshold_shift)
         shape = (rows, len(problem.study.temperatures), part.shape[1])
+        if fan_in > min(pair.down.stack_on.shape[-1], pair.up.stack_on.shape[-1]):
+            pieces.append([np.full(shape, np.nan)] * 5)
+            continue
+        found = functional(pair, fan_in)
         pieces.append(
             [
                 np.broadcast_to(array, shape)
