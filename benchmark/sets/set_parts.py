@@ -230,10 +230,11 @@ def read_tables(
                 )
             )
             continue
-        root = file.path.parent.parent if (file.path.parent.parent / path).exists() else file.path.parent
-        table = read_table(
-            root / path, name, sources, collector, str(Path(file.name).parent / path) if file.name else str(path)
-        )
+        # beside the set, or beside the folder of the technologies
+        beside = any((file.path.parent / path).with_suffix(suffix).exists() for suffix in (".csv", ".toml"))
+        root = file.path.parent if beside else file.path.parent.parent
+        shown_root = Path(file.name).parent if beside else Path(file.name).parent.parent
+        table = read_table(root / path, name, sources, collector, str(shown_root / path))
         if table is not None:
             found[name] = table
     for name, required in declaration.tables.items():

@@ -24,6 +24,8 @@ from benchmark.units import Unit, UnitError, parse_unit, to_si
 __all__ = ["COLUMN_UNITS", "TableFile", "read_table"]
 
 MAX_ROWS = 200_000
+#: range of the numbers a cell may hold, as in every other file
+LEAST, MOST = Decimal("1e-300"), Decimal("1e300")
 
 #: meaning of a column -> unit that fixes its dimension
 COLUMN_UNITS: dict[str, str] = {
@@ -148,7 +150,7 @@ def read_table(
         floor=floor,
         where=shown_name,
     )
-    _check_rows(table, shown_name, collector)
+    _check_rows(table, [line for line, _ in rows[1:]], shown_name, collector)
     if len(collector.problems) > before:
         return None
     return TableFile(
@@ -203,20 +205,20 @@ def _column_units(sidecar: Sidecar, file: TomlFile, collector: Collector) -> dic
             )
             continue
         units[column] = unit
-    named = [("interpolate.column", sidecar.interpolate.column), ("interpolate.along", sidecar.interpolate.along)]
+    meanings = [spec.meaning for spec in sidecar.column.values()]
+    for meaning in sorted({meaning for meaning in meanings if meanings.count(meaning) > 1}):
+        collector.add(file.problem("column", "two columns have the same meaning", repr(meaning)))
+    named = [
+        ("interpolate.column", sidecar.interpolate.column, "value"),
+        ("interpolate.along", sidecar.interpolate.along, "axis"),
+    ]
     if sidecar.floor:
-        named.append(("floor.column", sidecar.floor.column))
-    for dotted, column in named:
-        if column not in sidecar.column:
-            collector.add(
-                file.problem(
-                    dotted,
-                    "names a column that is not described",
-                    repr(column),
-                    ", ".join(sidecar.column),
-                    nearest(column, sidecar.column),
-                )
-            )
+        named.append(("floor.column", sidecar.floor.column, "value"))
+    for dotted, column, kind in named:
+        allowed = [name for name, spec in sidecar.column.items() if spec.kind == kind]
+        if column not in allowed:
+            what = f"is not a column of kind {kind}" if column in sidecar.column else "is a column nobody describes"
+            collector.add(file.problem(dotted, what, repr(column), ", ".join(allowed), nearest(column, allowed)))
     return units
 
 
@@ -291,7 +293,9 @@ def _cell(text: str, decimal: str) -> Decimal | None:
         number = Decimal(text)
     except InvalidOperation:
         return None
-    return number if number.is_finite() and "_" not in text else None
+    if not number.is_finite() or "_" in text or (number and not LEAST <= abs(number) <= MOST):
+        return None
+    return number
 
 
 def _columns(
@@ -326,7 +330,7 @@ def _columns(
                         column,
                         "is not a number",
                         repr(cells[position][:40]),
-                        f"a number with decimal {sidecar.decimal!r}",
+                        f"a number with decimal {sidecar.decimal!r}, at most 1e300",
                         hint,
                     )
                 )
@@ -338,9 +342,8 @@ def _columns(
                         name,
                         line,
                         column,
-                        "must be above 0",
+                        "must be above 0" if spec.sign == "positive" else "must be below 0, as its sign is declared",
                         cells[position],
-                        "above 0" if spec.sign == "positive" else "below 0 (declared negative)",
                     )
                 )
                 continue
@@ -363,7 +366,7 @@ def _floor(sidecar: Sidecar, file: TomlFile, units: dict[str, Unit], collector: 
     return {sidecar.column[sidecar.floor.column].meaning: to_si(sidecar.floor.value, unit)}
 
 
-def _check_rows(table: MeasuredTable, name: str, collector: Collector) -> None:
+def _check_rows(table: MeasuredTable, lines: list[int], name: str, collector: Collector) -> None:
     """Refuse two different values at the same point of one sweep, and curves with fewer than two points."""
     axes = [column for column in table.columns if column != table.value]
     seen: dict[tuple[object, ...], float] = {}
@@ -374,7 +377,7 @@ def _check_rows(table: MeasuredTable, name: str, collector: Collector) -> None:
         if seen.setdefault(key, value) != value:
             point = ", ".join(str(part) for part in key)
             collector.add(
-                Problem(name, row + 2, table.value, "has two different values at the same point of one sweep", point)
+                Problem(name, lines[row], table.value, "has two different values at the same point of one sweep", point)
             )
         curve = (
             *(labels[row] for labels in table.labels.values()),
