@@ -24,10 +24,15 @@ def check(model: DeviceModel, inputs: ModelInputs) -> list[Finding]:
     """Return every reason why the curves or the values beside them cannot be used."""
     values = values_of(model, inputs)
     table = inputs.tables["current"]
+    charge = inputs.tables.get("charge")
+    found = _check_reading("current", table, "log", "monotone")
+    if charge is not None:
+        found += _check_reading("charge", charge, "linear", "charge")
+    if found:
+        return found
     found = _check_current(table)
     found += _check_sweeps(table, option(model, inputs, "branch"))
     found += _check_values(inputs, values)
-    charge = inputs.tables.get("charge")
     if charge is not None:
         found += _check_charge(charge)
     return found
@@ -35,6 +40,17 @@ def check(model: DeviceModel, inputs: ModelInputs) -> list[Finding]:
 
 def _refuse(name: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> Finding:
     return Finding("refuse", name, what, found, allowed, hint)
+
+
+def _check_reading(name: str, table: MeasuredTable, scale: str, method: str) -> list[Finding]:
+    """The model reads curves in one way only; a description that says another one would have no effect."""
+    said = {"along": table.along, "scale": table.scale, "method": table.method}
+    read = {"along": "control_voltage", "scale": scale, "method": method}
+    return [
+        _refuse(f"table.{name}", f"is not read that way: {key} of its interpolation", repr(said[key]), repr(read[key]))
+        for key in read
+        if said[key] != read[key]
+    ]
 
 
 def _curves(table: MeasuredTable) -> dict[str, BoolArray]:

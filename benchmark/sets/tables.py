@@ -134,8 +134,8 @@ def read_table(
     rows = _rows(raw, sidecar, shown_name, collector)
     if rows is None or len(collector.problems) > before:
         return None
-    columns, labels = _columns(rows, sidecar, units, shown_name, collector)
     floor = _floor(sidecar, file, units, collector)
+    columns, labels = _columns(rows, sidecar, units, floor, shown_name, collector)
     if len(collector.problems) > before:
         return None
     meanings = {column: spec.meaning for column, spec in sidecar.column.items()}
@@ -299,7 +299,12 @@ def _cell(text: str, decimal: str) -> Decimal | None:
 
 
 def _columns(
-    rows: list[tuple[int, list[str]]], sidecar: Sidecar, units: dict[str, Unit], name: str, collector: Collector
+    rows: list[tuple[int, list[str]]],
+    sidecar: Sidecar,
+    units: dict[str, Unit],
+    floor: dict[str, float],
+    name: str,
+    collector: Collector,
 ) -> tuple[dict[str, np.ndarray], dict[str, tuple[str, ...]]]:
     header = rows[0][1]
     columns: dict[str, np.ndarray] = {}
@@ -336,7 +341,9 @@ def _columns(
                 )
                 continue
             number = -number if spec.sign == "negative" and number != 0 else number
-            if spec.meaning in _POSITIVE and number <= 0:
+            si = to_si(number, units[column])
+            noise = abs(si) <= floor.get(spec.meaning, -1.0)  # around zero, no larger than the stated floor
+            if spec.meaning in _POSITIVE and number <= 0 and not noise:
                 collector.add(
                     Problem(
                         name,
@@ -347,7 +354,7 @@ def _columns(
                     )
                 )
                 continue
-            numbers.append(to_si(number, units[column]))
+            numbers.append(si)
         columns[spec.meaning] = np.array(numbers, dtype=np.float64)
     return columns, labels
 
