@@ -41,6 +41,25 @@ _PATTERN_TEXT = {
 Label = Annotated[str, Field(pattern=_LABEL)]
 NodeLabel = Annotated[str, Field(pattern=_NODE_LABEL)]
 
+# keys that several tables have; the descriptions are what editors show (nodes/schema, tests/remake_schemas.py)
+Schema = Annotated[Literal[1], Field(alias="schema", description="Version of the file format: 1")]
+Identity = Annotated[Label, Field(description="Name of the file without .toml; other files refer to it")]
+Title = Annotated[Text, Field(description="One line for lists and reports")]
+Nodes = Annotated[
+    list[NodeLabel],
+    Field(min_length=1, description="Node labels in order, such as n7 or n1p5; labels, never lengths"),
+]
+Evidence = Annotated[Text | None, Field(description="What the number is worth: its evidence class")]
+SourceKey = Annotated[Text | None, Field(description="Where the number comes from: a key of sources.toml")]
+Where = Annotated[Text | None, Field(description="Place in the source: table, figure, page")]
+Conditions = Annotated[Text | None, Field(description="What the number holds for: temperature, sample, geometry")]
+Note = Annotated[Text | None, Field(description="Anything a reader must know about the number")]
+Owner = Annotated[Text | None, Field(description="Who decided, for choices and targets")]
+UnitText = Annotated[Text, Field(description="Unit in any common spelling; converted exactly")]
+Low = Annotated[Number, Field(description="Lower end")]
+High = Annotated[Number, Field(description="Upper end, not below the lower end")]
+FreeNote = Annotated[Text, Field(description="Anything a reader must know")]
+
 
 class FileModel(BaseModel):
     """Strict: no unknown keys, no coercion."""
@@ -51,41 +70,43 @@ class FileModel(BaseModel):
 class Uniform(FileModel):
     """Equally likely between two hard limits, in the unit of the value."""
 
-    shape: Literal["uniform"]
-    low: Number
-    high: Number
+    shape: Literal["uniform"] = Field(description="Equally likely between low and high")
+    low: Low
+    high: High
 
 
 class LogUniform(FileModel):
     """Equally likely per decade between two hard limits."""
 
-    shape: Literal["loguniform"]
-    low: Number
-    high: Number
+    shape: Literal["loguniform"] = Field(description="Equally likely per decade between low and high")
+    low: Low
+    high: High
 
 
 class Triangular(FileModel):
     """Hard limits, most likely at the value."""
 
-    shape: Literal["triangular"]
-    low: Number
-    high: Number
+    shape: Literal["triangular"] = Field(description="Between low and high, most likely at the value")
+    low: Low
+    high: High
 
 
 class Normal(FileModel):
     """Normal; give ``sd`` in the unit of the value, or ``percent``: the standard deviation as per cent of it."""
 
-    shape: Literal["normal"]
-    sd: Number | None = None
-    percent: Number | None = None
+    shape: Literal["normal"] = Field(description="Normal around the value")
+    sd: Number | None = Field(default=None, description="Standard deviation in the unit of the value; not with by_node")
+    percent: Number | None = Field(default=None, description="Standard deviation as per cent of the value")
 
 
 class LogNormal(FileModel):
     """Log-normal with the value as median: central 95 % between value/factor and value*factor, or ``ln_sd``."""
 
-    shape: Literal["lognormal"]
-    factor: Number | None = None
-    ln_sd: Number | None = None
+    shape: Literal["lognormal"] = Field(description="Log-normal with the value as median")
+    factor: Number | None = Field(
+        default=None, description="Central 95 % lie between value/factor and value*factor; 1 or more"
+    )
+    ln_sd: Number | None = Field(default=None, description="Standard deviation of the natural logarithm")
 
 
 SpreadTable = Annotated[Uniform | LogUniform | Triangular | Normal | LogNormal, Field(discriminator="shape")]
@@ -94,129 +115,147 @@ SpreadTable = Annotated[Uniform | LogUniform | Triangular | Normal | LogNormal, 
 class ValueTable(FileModel):
     """One value with unit, spread and provenance: the atom of every file."""
 
-    value: Number | None = None
-    by_node: dict[NodeLabel, Number] | None = None
-    unit: Text | None = None
-    spread: SpreadTable | None = None
-    evidence: Text | None = None
-    source: Text | None = None
-    where: Text | None = None
-    conditions: Text | None = None
-    note: Text | None = None
-    owner: Text | None = None
-    bound: Literal["at-least", "at-most"] | None = None
-    formula: Text | None = None
-    unusual: bool = False
-    date: datetime.date | None = None
+    value: Number | None = Field(default=None, description="The number, in the unit")
+    by_node: dict[NodeLabel, Number] | None = Field(default=None, description="One number per node, in the unit")
+    unit: Text | None = Field(
+        default=None, description="Unit in any common spelling; may be left out for plain numbers"
+    )
+    spread: SpreadTable | None = Field(default=None, description="How far the value may lie from the number")
+    evidence: Evidence = None
+    source: SourceKey = None
+    where: Where = None
+    conditions: Conditions = None
+    note: Note = None
+    owner: Owner = None
+    bound: Literal["at-least", "at-most"] | None = Field(
+        default=None, description="The number is only a bound: the value is at least, or at most, this"
+    )
+    formula: Text | None = Field(
+        default=None, description="Derived values: + - * / ** over other names of the set, in SI; recomputed by check"
+    )
+    unusual: bool = Field(default=False, description="true: yes, far outside the usual range is meant")
+    date: datetime.date | None = Field(default=None, description="Day of the measurement or choice, such as 2026-01-31")
 
 
 class Measure(FileModel):
     """A plain number with its unit."""
 
-    value: Number
-    unit: Text
+    value: Number = Field(description="The number, in the unit")
+    unit: UnitText
 
 
 class RangeTable(FileModel):
     """A closed range with its unit."""
 
-    low: Number
-    high: Number
-    unit: Text
+    low: Low
+    high: High
+    unit: UnitText
 
 
 class DefaultsTable(FileModel):
     """What values use when they do not say their own."""
 
-    evidence: Text | None = None
-    source: Text | None = None
-    conditions: Text | None = None
-    owner: Text | None = None
-    where: Text | None = None
-    note: Text | None = None
+    evidence: Evidence = None
+    source: SourceKey = None
+    conditions: Conditions = None
+    owner: Owner = None
+    where: Where = None
+    note: Note = None
 
 
 class AnchorTable(FileModel):
     """A published number that the set must predict; never fitted, except where it says so."""
 
-    value: Number
-    unit: Text
-    node: NodeLabel | None = None
-    supply: Measure | None = None
-    low: Number | None = None
-    high: Number | None = None
-    source: Text
-    where: Text = "-"
-    conditions: Text = "-"
-    note: Text = ""
+    value: Number = Field(description="The published number, in the unit")
+    unit: UnitText
+    node: NodeLabel | None = Field(default=None, description="Node it belongs to; needed when the set has several")
+    supply: Measure | None = Field(
+        default=None, description="Supply it was published at; without it the declared supply"
+    )
+    low: Number | None = Field(default=None, description="Lower end of the published range, in the unit")
+    high: Number | None = Field(default=None, description="Upper end of the published range, in the unit")
+    source: Text = Field(description="Where the number comes from: a key of sources.toml")
+    where: Text = Field(default="-", description="Place in the source: table, figure, page")
+    conditions: Text = Field(default="-", description="What the number holds for")
+    note: FreeNote = ""
 
 
 class TableReference(FileModel):
     """A measured table: a CSV file whose sidecar has the same stem."""
 
-    file: Text
+    file: Text = Field(description="CSV file inside the folder of the sets, such as tables/name.csv")
 
 
 class ValidTable(FileModel):
     """Ranges in which the set may be used."""
 
-    supply: RangeTable | None = None
-    temperature: RangeTable | None = None
+    supply: RangeTable | None = Field(
+        default=None, description="Supplies [V] the set may be used at; outside: infeasible"
+    )
+    temperature: RangeTable | None = Field(
+        default=None, description="Temperatures the set may be used at; outside: infeasible"
+    )
 
 
 class RowTable(FileModel):
     """One stage result of a technology known only by stage results."""
 
-    node: NodeLabel
-    supply: Measure
-    temperature: Measure
-    delay: Measure
-    energy_per_cycle: Measure
-    leakage_power: Measure
-    drive_resistance: Measure | None = None
-    input_capacitance: Measure | None = None
-    area: Measure | None = None
-    evidence: Text | None = None
-    source: Text | None = None
-    where: Text | None = None
-    conditions: Text | None = None
-    note: Text | None = None
-    owner: Text | None = None
+    node: NodeLabel = Field(description="Node label of the set")
+    supply: Measure = Field(description="Supply [V]")
+    temperature: Measure = Field(description="Temperature [K or degC]")
+    delay: Measure = Field(description="Delay of the stage [s]")
+    energy_per_cycle: Measure = Field(description="Energy of one full cycle of the stage [J]")
+    leakage_power: Measure = Field(description="Leakage power of the stage [W]")
+    drive_resistance: Measure | None = Field(default=None, description="Drive resistance of the stage [ohm]")
+    input_capacitance: Measure | None = Field(default=None, description="Input capacitance of the stage [F]")
+    area: Measure | None = Field(default=None, description="Area of the stage [m^2]")
+    evidence: Evidence = None
+    source: SourceKey = None
+    where: Where = None
+    conditions: Conditions = None
+    note: Note = None
+    owner: Owner = None
 
 
 class TechnologyFile(FileModel):
     """A parameter set of one technology."""
 
-    schema_: Literal[1] = Field(alias="schema")
-    id: Label
-    title: Text
-    kind: Literal["technology"] = "technology"
-    model: Text
-    nodes: Annotated[list[NodeLabel], Field(min_length=1)]
-    flavour: Text = ""
-    ambition: Literal["today", "target", "limit"] = "today"
-    note: Text = ""
-    reference_temperature: Measure
-    default: DefaultsTable = DefaultsTable()
-    option: dict[str, Text] = {}
-    value: dict[str, ValueTable] = {}
-    anchor: dict[str, AnchorTable] = {}
-    table: dict[str, TableReference] = {}
-    row: list[RowTable] = []
-    valid: ValidTable = ValidTable()
+    schema_: Schema
+    id: Identity
+    title: Title
+    kind: Literal["technology"] = Field(default="technology", description="Kind of the set")
+    model: Text = Field(description="Device model that reads the values")
+    nodes: Nodes
+    flavour: Text = Field(default="", description="A label such as a threshold flavour")
+    ambition: Literal["today", "target", "limit"] = Field(
+        default="today", description="today: as it is; target: wished for by a programme; limit: what physics allows"
+    )
+    note: FreeNote = ""
+    reference_temperature: Measure = Field(description="Temperature at which the values hold")
+    default: DefaultsTable = Field(default=DefaultsTable(), description="What a value below does not say itself")
+    option: dict[str, Text] = Field(default={}, description="Choices of the model in words")
+    value: dict[str, ValueTable] = Field(default={}, description="Values by catalogue name")
+    anchor: dict[str, AnchorTable] = Field(
+        default={}, description="Published numbers the set must predict: compared, never fitted"
+    )
+    table: dict[str, TableReference] = Field(default={}, description="Measured tables the model reads")
+    row: list[RowTable] = Field(default=[], description="Stage results: one per node, supply and temperature")
+    valid: ValidTable = Field(
+        default=ValidTable(), description="Where the set may be used; outside a point is infeasible"
+    )
 
 
 class WiresFile(FileModel):
     """Wires of one or several nodes, used by both sides of a study."""
 
-    schema_: Literal[1] = Field(alias="schema")
-    id: Label
-    title: Text
-    kind: Literal["wires"]
-    nodes: Annotated[list[NodeLabel], Field(min_length=1)]
-    note: Text = ""
-    default: DefaultsTable = DefaultsTable()
-    value: dict[str, ValueTable] = {}
+    schema_: Schema
+    id: Identity
+    title: Title
+    kind: Literal["wires"] = Field(description="Kind of the set")
+    nodes: Nodes
+    note: FreeNote = ""
+    default: DefaultsTable = Field(default=DefaultsTable(), description="What a value below does not say itself")
+    value: dict[str, ValueTable] = Field(default={}, description="Values by catalogue name")
 
 
 class SourceEntry(FileModel):
@@ -236,15 +275,17 @@ class SourceEntry(FileModel):
         "choice",
         "web page",
         "patent",
-    ]
-    authors: list[Text]
-    year: int
-    title: Text
-    venue: Text = ""
-    doi: Text = ""
-    read: Literal["original", "abstract", "second-hand", "memory"]
-    via: Text = ""
-    note: Text = ""
+    ] = Field(description="What it is")
+    authors: list[Text] = Field(description="Who wrote, measured or decided")
+    year: int = Field(description="Year of publication")
+    title: Title
+    venue: Text = Field(default="", description="Journal, volume and pages; publisher; conference")
+    doi: Text = Field(default="", description="Digital object identifier, without a prefix")
+    read: Literal["original", "abstract", "second-hand", "memory"] = Field(
+        description="How it was read; memory: to be checked before it carries an argument"
+    )
+    via: Text = Field(default="", description="Second-hand: the source it was read in")
+    note: FreeNote = ""
 
 
 #: messages for the kinds of pydantic error that can occur in strict mode
