@@ -136,7 +136,7 @@ class Comparison:
             self.widen(run, points.time[:, 0]),
             self.widen(run, points.area[:, 0]),
             self.widen(run, points.supply[:, 0]),
-            "" if found[0] or self.batch.rows > 1 else why_infeasible(policy, run, *_required(run, inputs)),
+            "" if found[0] or self.batch.rows > 1 else why_infeasible(policy, run, inputs),
         )
 
     def outcome(self, policy: str, *, enforce: bool = True) -> Outcome:
@@ -157,12 +157,6 @@ class Comparison:
         found = {f"candidate {outcome.candidate.id}": _choice(outcome.candidate)}
         found |= {f"contender {side.id}": _choice(side) for side in outcome.contenders}
         return found
-
-
-def _required(run: SideRun, inputs: PolicyInputs) -> tuple[float | None, float | None]:
-    """Required time and energy of a side at the best estimate."""
-    time = None if inputs.required_time is None else float(run.problem.batch.own(inputs.required_time)[0, 0])
-    return time, inputs.required_energy
 
 
 def _choice(side: SideOutcome) -> tuple[float, float]:

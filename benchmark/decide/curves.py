@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from benchmark.decide.compare import Comparison
-from benchmark.decide.requirements import FUNCTIONAL, margins_at
+from benchmark.decide.requirements import FUNCTIONAL, HardLimits, margins_at
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import Points, with_cycle
 from benchmark.evaluate.search import SideRun
@@ -47,6 +47,10 @@ def swept(run: SideRun, combination: tuple[float, float], functional: Mapping[st
     for reason, mask in points.infeasible.items():
         mark(np.asarray(mask[0]), reason)
     mark(~(np.isfinite(points.energy[0]) & np.isfinite(points.time[0])), "cannot be evaluated")
+    limits = HardLimits()
+    listed_limits = problem.study.requirements.get("device_limits")
+    if listed_limits is None or listed_limits.kind != "hard":
+        mark(~limits(run, points, points.able)[0], limits.label)
     for requirement in problem.study.requirements.values():
         if requirement.kind != "hard":
             continue
@@ -57,7 +61,7 @@ def swept(run: SideRun, combination: tuple[float, float], functional: Mapping[st
             if found is None:
                 continue
             margin = found
-        mark(~(np.broadcast_to(margin, points.energy.shape)[0] >= 1.0), f"requirement {requirement.name}")
+        mark(np.broadcast_to(margin, points.energy.shape)[0] < 1.0, f"requirement {requirement.name}")
     listed = tuple(tuple(item) for item in reasons)
     return Swept(problem.side.id, problem.role, points, np.array([not item for item in listed]), listed)
 

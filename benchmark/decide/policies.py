@@ -17,17 +17,19 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from benchmark.decide.requirements import cheap_condition, functional_condition, functional_mask
+from benchmark.decide.requirements import functional_condition, functional_mask, hard_conditions
 from benchmark.evaluate.points import Points, design_points
-from benchmark.evaluate.search import Condition, Objective, Optimum, SideRun, minimise
+from benchmark.evaluate.search import All, Condition, Objective, Optimum, SideRun, minimise
 from benchmark.evaluate.side import SideProblem
 
-__all__ = ["DIAGNOSTIC", "PolicyInputs", "metric_of", "optimum"]
+__all__ = ["DIAGNOSTIC", "PRESCRIBED", "PolicyInputs", "metric_of", "optimum", "own_limit", "prescribed"]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 #: policies that never give a verdict
 DIAGNOSTIC = frozenset({"same-supply"})
+#: policies that leave no supply to choose
+PRESCRIBED = frozenset({"declared-point", "same-supply"})
 
 
 @dataclass(frozen=True)
@@ -70,14 +72,31 @@ def _within(limit: Array, attribute: str) -> Condition:
     return condition
 
 
-def _all(*conditions: Condition) -> Condition:
-    def condition(run: SideRun, points: Points, among: Mask) -> Mask:
-        mask = conditions[0](run, points, among)
-        for other in conditions[1:]:
-            mask = mask & other(run, points, among)
-        return mask
+def _nowhere(run: SideRun, points: Points, among: Mask) -> Mask:
+    return np.zeros(points.energy.shape, dtype=bool)
 
-    return condition
+
+def own_limit(name: str, inputs: PolicyInputs) -> Condition:
+    """Return the condition that the policy itself puts on the supplies of a range; a prescribed supply admits none."""
+    if name in PRESCRIBED:
+        return _nowhere
+    if name in ("iso-delay", "minimum-energy") and inputs.required_time is not None:
+        return _within(inputs.required_time, "time")
+    if name == "iso-energy":
+        return _within(np.asarray([[inputs.required_energy]], dtype=np.float64), "energy")
+    return _anything
+
+
+def prescribed(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, float] | None = None) -> Points:
+    """Return the points of a policy that prescribes the supply; the first frozen choice unless one is given."""
+    problem = run.problem
+    supply = problem.declared_supply[:, 0, :]
+    if name == "same-supply":
+        if inputs.same_supply is None:
+            message = "same-supply needs the reference's declared supply"
+            raise ValueError(message)
+        supply = problem.batch.own(inputs.same_supply)
+    return design_points(problem, supply, *(frozen or run.combinations[0]))
 
 
 def _fixed(run: SideRun, points: Points, condition: Condition, costly: Condition | None) -> Optimum:
@@ -98,28 +117,15 @@ def optimum(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, 
 
     Rows without any permitted point have ``found`` False.
     """
-    problem = run.problem
-    hard: Condition = cheap_condition if inputs.enforce_requirements else _anything
+    hard: Condition = hard_conditions(run.problem.study) if inputs.enforce_requirements else _anything
     costly: Condition | None = (
-        functional_mask if inputs.enforce_requirements and functional_condition(problem.study) else None
+        functional_mask if inputs.enforce_requirements and functional_condition(run.problem.study) else None
     )
-    if name == "declared-point":
-        points = design_points(problem, problem.declared_supply[:, 0, :], *(frozen or run.combinations[0]))
-        return _fixed(run, points, hard, costly)
-    if name == "same-supply":
-        if inputs.same_supply is None:
-            message = "same-supply needs the reference's declared supply"
-            raise ValueError(message)
-        points = design_points(problem, problem.batch.own(inputs.same_supply), *(frozen or run.combinations[0]))
-        return _fixed(run, points, hard, costly)
+    if name in PRESCRIBED:
+        return _fixed(run, prescribed(name, run, inputs, frozen), hard, costly)
     objective: Objective = _energy
-    condition = hard
-    if name in ("iso-delay", "minimum-energy"):
-        if inputs.required_time is not None:
-            condition = _all(hard, _within(inputs.required_time, "time"))
-    elif name == "iso-energy":
+    if name == "iso-energy":
         objective = _time
-        condition = _all(hard, _within(np.asarray([[inputs.required_energy]], dtype=np.float64), "energy"))
     elif name == "minimum-energy-delay":
         objective = lambda problem, points: points.energy * points.time**inputs.exponent  # noqa: E731
-    return minimise(run, objective, condition, costly, frozen)
+    return minimise(run, objective, All.of(hard, own_limit(name, inputs)), costly, frozen)

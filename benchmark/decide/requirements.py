@@ -1,53 +1,51 @@
-"""Requirements: conditions of the search, and pass, fail or unknown with a margin (layer 7).
+"""Requirements: margins, and the conditions they put on a search (layer 7).
 
-A margin is a factor: above 1 passes, whatever the direction of the requirement. An unknown is not a pass.
+A margin is a factor: above 1 passes, whatever the direction of the requirement; nan: cannot be judged. A point whose
+margin is unknown stays in the search, for an unknown is no failure; it is no pass either, and the verdict says so.
+Hard limits that a device reports (field, strength, supply ceiling) bind every search, whether or not the study lists
+``device_limits``.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
-from typing import Literal
 
 import numpy as np
 from numpy.typing import NDArray
 
 from benchmark.evaluate.functional import functional_points
 from benchmark.evaluate.points import Points, cycle_time, cycles_demanded
-from benchmark.evaluate.search import Optimum, SideRun, take_columns
+from benchmark.evaluate.search import All, SideRun, take_columns
 from benchmark.evaluate.side import SideProblem
-from benchmark.sets.study import REQUIREMENTS, Requirement, Study
+from benchmark.sets.study import Requirement, Study
 
-__all__ = ["RequirementResult", "assess", "cheap_condition", "functional_condition", "margins_at"]
+__all__ = [
+    "FUNCTIONAL",
+    "STANDING",
+    "HardLimits",
+    "Meets",
+    "Standing",
+    "functional_condition",
+    "functional_margin",
+    "functional_margins",
+    "functional_mask",
+    "hard_conditions",
+    "margins_at",
+    "misses",
+    "standing",
+]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
+#: expensive: from the transfer curves of the gates
 FUNCTIONAL = ("noise_margin", "voltage_gain")
-#: requirements judged once per technology, not per design point
+#: judged once per technology, not per design point
 STANDING = ("endurance", "process_temperature", "retention", "area")
+_CAPABILITY = {"endurance": "endurance_cycles", "process_temperature": "process_temperature", "retention": "retention"}
 
 
-@dataclass(frozen=True)
-class RequirementResult:
-    """One row of the requirements table.
-
-    ``state`` is judged at the optimum of the primary policy, or, when there is none, at the best permitted point.
-    ``passes_somewhere``: some permitted point of the candidate meets it.
-    """
-
-    name: str
-    kind: str
-    state: Literal["pass", "fail", "unknown"]
-    demanded: float
-    offered: float
-    margin: float
-    unit: str
-    meaning: str
-    passes_somewhere: bool
-    note: str
-
-
-def _deadline(problem: SideProblem, requirement: Requirement) -> Array:
+def deadline(problem: SideProblem, requirement: Requirement) -> Array:
+    """Return the latest allowed time (row or 1, 1) [s]; infinite when there is none."""
     if requirement.limit is None:
         period = cycle_time(problem)
         return np.asarray([[np.inf]]) if period is None else period
@@ -59,7 +57,7 @@ def margins_at(problem: SideProblem, points: Points, requirement: Requirement) -
     limit = requirement.limit
     with np.errstate(divide="ignore", invalid="ignore"):
         if requirement.name == "deadline":
-            return np.asarray(_deadline(problem, requirement) / points.time)
+            return np.asarray(deadline(problem, requirement) / points.time)
         if limit is None:
             return None
         if requirement.name == "thermal_noise":
@@ -67,10 +65,7 @@ def margins_at(problem: SideProblem, points: Points, requirement: Requirement) -
         if requirement.name == "hysteresis_window":
             return np.asarray(np.where(points.hysteresis > 0.0, limit / points.hysteresis, np.inf))
         if requirement.name == "device_limits":
-            worst = np.full(points.energy.shape, np.inf)
-            for margin in points.margins.values():
-                worst = np.minimum(worst, margin)
-            return np.asarray(worst / limit)
+            return _worst(points, points.margins, limit)
         if requirement.name == "power_density":
             return np.asarray(limit / points.power_density)
         if requirement.name == "leakage_power":
@@ -78,28 +73,84 @@ def margins_at(problem: SideProblem, points: Points, requirement: Requirement) -
     return None
 
 
-def cheap_condition(run: SideRun, points: Points, among: Mask) -> Mask:
-    """Hard point-wise requirements, except the functional floor."""
-    problem = run.problem
-    mask = np.ones(points.energy.shape, dtype=bool)
-    for requirement in problem.study.requirements.values():
-        if requirement.kind == "hard":
-            margin = margins_at(problem, points, requirement)
-            if margin is not None:
-                mask &= margin >= 1.0
-    return mask
+def _worst(points: Points, names: object, limit: float) -> Array:
+    """Smallest of some device margins over the limit; unknown where an unknown one could be the smallest."""
+    worst = np.full(points.energy.shape, np.inf)
+    unknown = np.zeros(points.energy.shape, dtype=bool)
+    for name in names:  # type: ignore[attr-defined]
+        margin = points.margins[name]
+        worst = np.fmin(worst, margin)
+        unknown |= np.isnan(margin)
+    with np.errstate(divide="ignore"):
+        margin = np.asarray(worst / limit)
+    return np.where(unknown & ~(margin < 1.0), np.nan, margin)
 
 
-def _functional_margin(problem: SideProblem, points: Points, requirement: Requirement) -> Array:
-    found = functional_points(problem, points, requirement.fan_in)
-    offered = found.noise_margin if requirement.name == "noise_margin" else found.gain
-    limit = requirement.limit
-    return np.asarray(np.where(np.isfinite(offered), offered, -np.inf) / (limit or 1.0))
+@dataclass(frozen=True)
+class Meets:
+    """Condition: one hard point-wise requirement is not failed."""
+
+    requirement: Requirement
+
+    @property
+    def label(self) -> str:
+        """What is asked, for messages."""
+        return f"requirement {self.requirement.name}"
+
+    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+        """Return where the margin is not below 1."""
+        margin = margins_at(run.problem, points, self.requirement)
+        if margin is None:
+            return np.ones(points.energy.shape, dtype=bool)
+        return np.broadcast_to(~(margin < 1.0), points.energy.shape)
+
+
+@dataclass(frozen=True)
+class HardLimits:
+    """Condition: no hard limit that the device reports is passed."""
+
+    label: str = "hard limits of the device"
+
+    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+        """Return where no hard margin is below 1."""
+        return np.asarray(~(_worst(points, points.hard_limits, 1.0) < 1.0))
+
+
+def hard_conditions(study: Study) -> All:
+    """Hard point-wise requirements and hard limits of the device; without the functional floor."""
+    listed = [
+        Meets(requirement)
+        for requirement in study.requirements.values()
+        if requirement.kind == "hard" and requirement.name not in (*FUNCTIONAL, *STANDING)
+    ]
+    return All((HardLimits(), *listed))
+
+
+def functional_margin(offered: Array, limit: float | None) -> Array:
+    """Return noise margin or gain over the limit; a pair that does not switch (nan) misses it."""
+    return np.asarray(np.where(np.isnan(offered), -np.inf, offered) / (limit or 1.0))
 
 
 def functional_condition(study: Study) -> bool:
     """Tell whether the study has a hard functional floor."""
     return any(name in study.requirements and study.requirements[name].kind == "hard" for name in FUNCTIONAL)
+
+
+def functional_at(problem: SideProblem, points: Points, wanted: list[Requirement]) -> dict[str, Array]:
+    """Return the margins (row, supply) of functional requirements at some points (expensive)."""
+    margins: dict[str, Array] = {}
+    for fan_in in sorted({requirement.fan_in for requirement in wanted}):
+        found = functional_points(problem, points, fan_in)
+        for requirement in wanted:
+            if requirement.fan_in == fan_in:
+                offered = found.noise_margin if requirement.name == "noise_margin" else found.gain
+                margins[requirement.name] = functional_margin(offered, requirement.limit)
+    return margins
+
+
+def _functional(study: Study, kind: str = "") -> list[Requirement]:
+    listed = [study.requirements[name] for name in FUNCTIONAL if name in study.requirements]
+    return [requirement for requirement in listed if kind in ("", requirement.kind)]
 
 
 def functional_mask(run: SideRun, points: Points, among: Mask) -> Mask:
@@ -109,180 +160,69 @@ def functional_mask(run: SideRun, points: Points, among: Mask) -> Mask:
     if not asked.size:
         return mask
     some = take_columns(points, asked)
-    allowed = np.ones(some.energy.shape, dtype=bool)
-    wanted = [run.problem.study.requirements[name] for name in FUNCTIONAL if name in run.problem.study.requirements]
-    hard = [requirement for requirement in wanted if requirement.kind == "hard"]
-    for fan_in in sorted({requirement.fan_in for requirement in hard}):
-        found = functional_points(run.problem, some, fan_in)
-        for requirement in hard:
-            if requirement.fan_in == fan_in:
-                offered = found.noise_margin if requirement.name == "noise_margin" else found.gain
-                allowed &= np.where(np.isnan(offered), -np.inf, offered) >= (requirement.limit or 0.0)
-    mask[:, asked] = allowed
+    margins = functional_at(run.problem, some, _functional(run.problem.study, "hard"))
+    mask[:, asked] = np.all([margin >= 1.0 for margin in margins.values()], axis=0)
     return mask
 
 
-def _standing(
-    run: SideRun, requirement: Requirement, points: Points, area_ratio: float | None
-) -> tuple[float, float, float, str, str]:
-    """Return demanded, offered, margin, bound, note of a requirement judged once; nan offered means not stated."""
-    problem = run.problem
-    if requirement.name == "area":
-        limit = requirement.limit or np.nan
-        offered = np.nan if area_ratio is None else area_ratio
-        return limit, offered, limit / offered if np.isfinite(offered) else np.nan, "", ""
-    name = {"endurance": "endurance_cycles", "process_temperature": "process_temperature", "retention": "retention"}[
-        requirement.name
-    ]
-    capability = points.capability.get(name)
-    demanded = (
-        float(cycles_demanded(problem, points, requirement.life)[0, 0])
-        if requirement.name == "endurance"
-        else float(requirement.limit or 0.0)
-    )
+def functional_margins(run: SideRun) -> dict[tuple[float, float], dict[str, Array]]:
+    """Evaluate the functional requirements over every grid of a side: frozen choice -> name -> (row, supply)."""
+    wanted = _functional(run.problem.study)
+    return {choice: functional_at(run.problem, run.grid(choice), wanted) for choice in run.combinations}
+
+
+@dataclass(frozen=True)
+class Standing:
+    """A requirement judged on one stated number per technology; arrays (row,). nan: not stated."""
+
+    demanded: Array
+    offered: Array
+    margin: Array
+    bound: str
+    at_most: bool
+
+
+def standing(problem: SideProblem, points: Points, requirement: Requirement) -> Standing:
+    """Judge endurance, process temperature or retention at points of one supply per row.
+
+    The margin of a temperature is the ratio on the kelvin scale.
+    """
+    rows = points.energy.shape[0]
+    if requirement.name == "endurance":
+        demanded = cycles_demanded(problem, points, requirement.life)[:, 0]
+    else:
+        demanded = np.full(rows, requirement.limit or 0.0)
+    demanded = np.broadcast_to(demanded, (rows,))
+    at_most = requirement.name == "process_temperature"
+    capability = points.capability.get(_CAPABILITY[requirement.name])
     if capability is None:
-        return demanded, np.nan, np.nan, "", "not stated in the parameter set"
-    offered = float(capability[0].reshape(-1)[0])
-    if requirement.name == "process_temperature":
-        return demanded, offered, _temperature_margin(offered, demanded), capability[1], ""
-    return demanded, offered, offered / demanded if demanded > 0 else np.inf, capability[1], ""
+        unknown = np.full(rows, np.nan)
+        return Standing(demanded, unknown, unknown, "", at_most)
+    offered = np.broadcast_to(capability[0].reshape(-1), (rows,))
+    with np.errstate(divide="ignore", invalid="ignore"):
+        margin = demanded / offered if at_most else np.where(demanded > 0.0, offered / demanded, np.inf)
+    return Standing(demanded, offered, np.asarray(margin), capability[1], at_most)
 
 
-def _temperature_margin(offered: float, limit: float) -> float:
-    """A factor that is 1 at the limit, on the kelvin scale."""
-    return limit / offered
+def misses(run: SideRun, points: Points) -> Mask:
+    """Return the rows whose point fails a listed requirement that did not bound the search; an unknown is no failure.
 
-
-def _state(margin: float, bound: str, direction: str) -> tuple[Literal["pass", "fail", "unknown"], str]:
-    """Judge a margin; one-sided values can only pass or stay unknown (or only fail)."""
-    if np.isnan(margin):
-        return "unknown", ""
-    if bound == "at-least" and direction == "at-least" and margin < 1.0:
-        return "unknown", "shown only up to the stated number; more was not tested"
-    if bound == "at-most" and direction == "at-least" and margin >= 1.0:
-        return "unknown", "the stated number is an upper bound"
-    return ("pass" if margin >= 1.0 else "fail"), ""
-
-
-def assess(
-    run: SideRun,
-    optimum: Optimum | None,
-    area_ratio: float | None,
-    functional_grid: Mapping[tuple[float, float], Mapping[str, Array]],
-) -> list[RequirementResult]:
-    """Judge every requirement of the study for one side, at row 0.
-
-    Parameters
-    ----------
-    run : SideRun
-    optimum : Optimum or None
-        Of the primary policy; None when no permitted point meets the hard requirements.
-    area_ratio : float or None
-        Area over the strongest contender's area.
-    functional_grid : mapping
-        Frozen choice -> requirement name -> margins over the supply grid (row 0).
+    The area ratio is not among them: it needs the other side.
     """
     problem = run.problem
-    results = []
+    missed = np.zeros(points.energy.shape[0], dtype=bool)
     for requirement in problem.study.requirements.values():
-        if requirement.name in STANDING:
-            results.append(_assess_standing(run, requirement, optimum, area_ratio))
-        else:
-            results.append(_assess_pointwise(run, requirement, optimum, functional_grid))
-    return results
-
-
-def _assess_standing(
-    run: SideRun, requirement: Requirement, optimum: Optimum | None, area_ratio: float | None
-) -> RequirementResult:
-    unit, meaning = REQUIREMENTS[requirement.name]
-    points = optimum.points if optimum is not None else _middle(run)
-    demanded, offered, margin, bound, note = _standing(run, requirement, points, area_ratio)
-    state, why = _state(margin, bound, "at-least" if requirement.name in ("endurance", "retention") else "at-most")
-    return RequirementResult(
-        requirement.name,
-        requirement.kind,
-        state,
-        demanded,
-        offered,
-        margin,
-        unit,
-        meaning,
-        state != "fail",
-        note or why,
-    )
-
-
-def _middle(run: SideRun) -> Points:
-    grid = run.grid(run.combinations[0])
-    able = np.flatnonzero(grid.able[0])
-    column = int(able[len(able) // 2]) if len(able) else 0
-    return take_columns(grid, np.array([column]))
-
-
-def _assess_pointwise(
-    run: SideRun,
-    requirement: Requirement,
-    optimum: Optimum | None,
-    functional_grid: Mapping[tuple[float, float], Mapping[str, Array]],
-) -> RequirementResult:
-    problem = run.problem
-    best, able_anywhere = -np.inf, False
-    for combination in run.combinations:
-        grid = run.grid(combination)
-        margin = (
-            functional_grid[combination][requirement.name]
-            if requirement.name in FUNCTIONAL
-            else margins_at(problem, grid, requirement)
-        )
-        if margin is None:
+        if requirement.name == "area":
             continue
-        able = grid.able[0]
-        able_anywhere |= bool(able.any())
-        if able.any():
-            best = max(best, float(np.nanmax(np.where(able, margin[0], -np.inf))))
-    at = best
-    if optimum is not None:
-        found = (
-            _functional_margin(problem, optimum.points, requirement)
-            if requirement.name in FUNCTIONAL
-            else margins_at(problem, optimum.points, requirement)
-        )
-        at = float(found[0, 0]) if found is not None else np.nan
-    elif requirement.kind == "hard" and not able_anywhere:
-        at = np.nan
-    unit, meaning = REQUIREMENTS[requirement.name]
-    demanded = (
-        float(_deadline(problem, requirement)[0, 0])
-        if requirement.name == "deadline"
-        else float(requirement.limit or 0.0)
-    )
-    at_most = requirement.name in ("deadline", "hysteresis_window", "power_density", "leakage_power")
-    offered = demanded / at if at_most and at > 0 else demanded * at
-    state: Literal["pass", "fail", "unknown"] = "unknown" if np.isnan(at) else ("pass" if at >= 1.0 else "fail")
-    note = "" if optimum is not None else "at the most favourable permitted point"
-    if np.isnan(at):
-        note = "no point of the range can be evaluated"
-    return RequirementResult(
-        requirement.name, requirement.kind, state, demanded, offered, at, unit, meaning, best >= 1.0, note
-    )
-
-
-def functional_margins(run: SideRun) -> dict[tuple[float, float], dict[str, Array]]:
-    """Evaluate the functional requirements over every grid of a side (row 0 only)."""
-    study = run.problem.study
-    wanted: Sequence[Requirement] = [study.requirements[name] for name in FUNCTIONAL if name in study.requirements]
-    found: dict[tuple[float, float], dict[str, Array]] = {}
-    for combination in run.combinations:
-        grid = run.grid(combination)
-        margins: dict[str, Array] = {}
-        for fan_in in sorted({requirement.fan_in for requirement in wanted}):
-            points = functional_points(run.problem, grid, fan_in)
-            for requirement in wanted:
-                if requirement.fan_in == fan_in:
-                    offered = points.noise_margin if requirement.name == "noise_margin" else points.gain
-                    margins[requirement.name] = np.where(np.isnan(offered), -np.inf, offered) / (
-                        requirement.limit or 1.0
-                    )
-        found[combination] = margins
-    return found
+        if requirement.name in STANDING:
+            found = standing(problem, points, requirement)
+            short = found.margin < 1.0
+            # a one-sided number that falls short on its open side is unknown
+            missed |= short & (found.bound != ("at-most" if found.at_most else "at-least"))
+        elif requirement.kind == "report" and requirement.name not in FUNCTIONAL:
+            margin = margins_at(problem, points, requirement)
+            if margin is not None:
+                missed |= np.broadcast_to(margin < 1.0, points.energy.shape)[:, 0]
+    for margin in functional_at(problem, points, _functional(problem.study, "report")).values():
+        missed |= margin[:, 0] < 1.0
+    return missed

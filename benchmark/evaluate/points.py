@@ -54,6 +54,7 @@ class Points:
     hysteresis: Array
     busiest_rising: Array
     margins: Mapping[str, Array]  # device limit name -> smallest margin over temperatures
+    hard_limits: frozenset[str]  # names of the limits never to be passed; the others are flags
     infeasible: Mapping[str, Mask]  # reason -> mask, not counting the study's requirements
     capability: Mapping[str, tuple[Array, str]]  # name -> (value (row, 1), bound)
     efficiency: Array = field(default_factory=lambda: np.ones((1, 1)))
@@ -149,6 +150,9 @@ def _reduce(
         hysteresis=_hysteresis(problem, pair, shape),
         busiest_rising=at_hot(metrics.busiest_rising_per_operation),
         margins=_margins(problem, pair, shape),
+        hard_limits=frozenset(
+            limit.name for switch in (pair.down, pair.up) for limit in switch.limits if limit.kind == "hard"
+        ),
         infeasible=infeasible,
         capability=_capabilities(problem, pair, rows),
         efficiency=problem.overhead["supply_efficiency"][:, 0, :],
@@ -240,7 +244,9 @@ def _capabilities(problem: SideProblem, pair: SwitchPair, rows: int) -> dict[str
         found[name] = (np.broadcast_to(value.reshape(-1, 1), (rows, 1)), bound)
     retention = np.asarray(pair.down.retention, dtype=np.float64)
     if np.isfinite(retention).all() or np.isinf(retention).all():
-        found["retention"] = (np.broadcast_to(retention.reshape(-1, 1)[:rows], (rows, 1)), "")
+        stated = problem.side.technology.values.get("retention_time")
+        bound = stated.bound if stated is not None else ""
+        found["retention"] = (np.broadcast_to(retention.reshape(-1, 1)[:rows], (rows, 1)), bound)
     return found
 
 

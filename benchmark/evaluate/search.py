@@ -277,7 +277,7 @@ def _gap(run: SideRun, points: Points, condition: Condition, wanted: Mask) -> tu
         left = left & either(part(run, points, ends))
     column = np.argmax(left, axis=1)
     rows = np.arange(wanted.size)
-    return points.supply[rows, column], points.supply[rows, column + 1], left.any(axis=1)
+    return points.supply[rows, column], points.supply[rows, column + 1], np.asarray(left.any(axis=1))
 
 
 def minimise(

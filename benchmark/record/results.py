@@ -10,7 +10,7 @@ import numpy as np
 from benchmark.decide.compare import Outcome, SideOutcome
 from benchmark.decide.curves import Envelope, Swept
 from benchmark.decide.limiting import DELAY_GROUPS, ENERGY_GROUPS, groups_of, limiting
-from benchmark.decide.requirements import RequirementResult
+from benchmark.decide.assess import RequirementResult
 from benchmark.decide.verdict import InputMove, Verdict
 from benchmark.evaluate.points import Points
 

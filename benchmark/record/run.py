@@ -11,12 +11,13 @@ from typing import Any
 import numpy as np
 
 import benchmark
+from benchmark.decide.assess import RequirementResult, assess
 from benchmark.decide.closed_form import closed_form_differences, delay_factor
 from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
 from benchmark.decide.flips import with_flips
-from benchmark.decide.policies import DIAGNOSTIC
-from benchmark.decide.requirements import RequirementResult, assess, functional_margins
+from benchmark.decide.policies import DIAGNOSTIC, own_limit
+from benchmark.decide.requirements import functional_margins
 from benchmark.decide.self_checks import self_checks
 from benchmark.decide.verdict import InputMove, Verdict, judge, move_inputs
 from benchmark.evaluate.anchors import anchor_results
@@ -64,8 +65,9 @@ def _primary(study: Study) -> _Primary:
     optimum = outcome.candidate.optimum if outcome.candidate.found[0] else None
     if optimum is None:
         relaxed = comparison.outcome(study.policy.primary, enforce=False)
-        optimum = relaxed.candidate.optimum if relaxed.candidate.found[0] else None
-    requirements = assess(run, optimum, ratio, functional)
+    aside = relaxed.candidate.optimum if relaxed is not None and relaxed.candidate.found[0] else None
+    within = own_limit(study.policy.primary, comparison.policy_inputs())
+    requirements = assess(run, optimum, ratio, functional, within, aside)
     curves: dict[str, list[tuple[SideRun, Swept]]] = {}
     for key, side_run in {"candidate": run, **comparison.contenders}.items():
         margins = functional if key == "candidate" else functional_margins(side_run)
