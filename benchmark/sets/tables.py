@@ -8,7 +8,7 @@ import io
 from dataclasses import dataclass
 from decimal import Decimal, InvalidOperation
 from pathlib import Path
-from typing import Annotated, Literal
+from typing import Literal
 
 import numpy as np
 from pydantic import Field
@@ -17,7 +17,7 @@ from benchmark.errors import Problem, nearest
 from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile, read_bytes, read_toml
 from benchmark.sets.problems import Collector
-from benchmark.sets.schema import DefaultsTable, FileModel, Number, Text, validate
+from benchmark.sets.schema import DefaultsTable, FileModel, FreeNote, Number, Schema, Text, UnitText, validate
 from benchmark.sets.values import Place, read_provenance
 from benchmark.units import Unit, UnitError, parse_unit, to_si
 
@@ -51,46 +51,52 @@ _POSITIVE = {
 class ColumnTable(FileModel):
     """What one column of the CSV file means."""
 
-    meaning: Text
-    kind: Literal["label", "axis", "value"]
-    unit: Text | None = None
-    sign: Literal["positive", "negative"] = "positive"
-    allowed: list[Text] | None = None
+    meaning: Text = Field(description="What the column holds; for labels: a name of your own, such as sweep")
+    kind: Literal["label", "axis", "value"] = Field(
+        description="label: a word per row; axis: what was set; value: what was measured"
+    )
+    unit: Text | None = Field(default=None, description="Unit of the numbers; labels have none")
+    sign: Literal["positive", "negative"] = Field(
+        default="positive", description="negative: the numbers of the file are turned round when read"
+    )
+    allowed: list[Text] | None = Field(default=None, description="Words a label may have")
 
 
 class FloorTable(FileModel):
     """Instrument floor of a value column."""
 
-    column: Text
-    value: Number
-    unit: Text
+    column: Text = Field(description="Column of the CSV file")
+    value: Number = Field(description="A row at or below it is an upper bound; in the unit")
+    unit: UnitText
 
 
 class InterpolateTable(FileModel):
     """How to read between the points."""
 
-    column: Text
-    along: Text
-    scale: Literal["linear", "log"]
-    method: Literal["monotone", "charge"]
+    column: Text = Field(description="Value column of the CSV file")
+    along: Text = Field(description="Axis column it is read along")
+    scale: Literal["linear", "log"] = Field(description="Scale of the value column between the points")
+    method: Literal["monotone", "charge"] = Field(
+        description="monotone: a monotone cubic through the points; charge: a capacitance, integrated along the axis"
+    )
 
 
 class Sidecar(FileModel):
     """The sidecar of a measured table."""
 
-    schema_: Literal[1] = Field(alias="schema")
-    file: Text
-    delimiter: Literal[",", ";", "\t", " "] = ","
-    decimal: Literal[".", ","] = "."
-    evidence: Text
-    source: Text
-    where: Text = "-"
-    conditions: Text
-    note: Text = ""
-    owner: Text = ""
-    floor: FloorTable | None = None
-    interpolate: InterpolateTable
-    column: Annotated[dict[str, ColumnTable], Field(min_length=2)]
+    schema_: Schema
+    file: Text = Field(description="Name of the CSV file beside this file")
+    delimiter: Literal[",", ";", "\t", " "] = Field(default=",", description="What stands between two cells")
+    decimal: Literal[".", ","] = Field(default=".", description="Decimal sign of the numbers")
+    evidence: Text = Field(description="What the numbers are worth: their evidence class")
+    source: Text = Field(description="Where the numbers come from: a key of sources.toml")
+    where: Text = Field(default="-", description="Place in the source: table, figure, page")
+    conditions: Text = Field(description="What the numbers hold for: temperature, sample, geometry")
+    note: FreeNote = ""
+    owner: Text = Field(default="", description="Who decided, for choices and targets")
+    floor: FloorTable | None = Field(default=None, description="Instrument floor of a value column")
+    interpolate: InterpolateTable = Field(description="How to read between the points")
+    column: dict[str, ColumnTable] = Field(min_length=2, description="One table per column of the CSV file")
 
 
 @dataclass(frozen=True)
