@@ -17,7 +17,19 @@ from benchmark.sets.schema import AnchorTable, DefaultsTable, Measure, RowTable,
 from benchmark.sets.tables import TableFile, read_table
 from benchmark.sets.values import Place, convert_measure, read_provenance
 
-__all__ = ["Anchor", "ModelDeclaration", "read_anchors", "read_rows", "read_tables"]
+__all__ = ["ANCHOR_UNITS", "Anchor", "ModelDeclaration", "read_anchors", "read_rows", "read_tables"]
+
+#: name of an anchor, before any ``__`` -> unit that fixes its dimension
+ANCHOR_UNITS: dict[str, str] = {
+    "on_current": "A/m",
+    "on_current_p": "A/m",
+    "off_current": "A/m",
+    "off_current_p": "A/m",
+    "effective_current": "A/m",
+    "effective_current_p": "A/m",
+    "fan_out_4_delay": "s",
+    "fan_out_4_energy": "J",
+}
 
 
 class ModelDeclaration(Protocol):
@@ -58,16 +70,7 @@ def read_anchors(
     collector: Collector,
 ) -> tuple[Anchor, ...]:
     """Convert the anchors of a technology file."""
-    units = {
-        "on_current": "A/m",
-        "on_current_p": "A/m",
-        "off_current": "A/m",
-        "off_current_p": "A/m",
-        "effective_current": "A/m",
-        "effective_current_p": "A/m",
-        "fan_out_4_delay": "s",
-        "fan_out_4_energy": "J",
-    }
+    units = ANCHOR_UNITS
     found: list[Anchor] = []
     for name, table in tables.items():
         dotted = f"anchor.{name}"
