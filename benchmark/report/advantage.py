@@ -9,8 +9,8 @@ from benchmark.report.drawing import Canvas, Label, Words
 from benchmark.report.energy_delay import limits_of
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, Placer, hatch, wrapped
+from benchmark.report.rows import advantage_rows
 from benchmark.report.style import INK, LinearAxis, LogAxis, looks, positive, spec
-from benchmark.report.tables import advantage_rows
 from benchmark.report.words import amount, is_number, listed, number
 
 __all__ = ["advantage_against_time", "advantage_by_node", "crossing_words", "levels", "stretches"]
@@ -209,7 +209,7 @@ def advantage_by_node(record: Record) -> Chart:
     height = 240.0
     y = _advantage_axis(record, [row["advantage"] for row in known], height)
     ticks = tuple((float(row["order"]), " ") for row in rows)
-    x = LinearAxis(-0.6, len(rows) - 0.4, WIDTH, "node label, in order", ticks, title_gap=24.0)
+    x = LinearAxis(-0.6, len(rows) - 0.4, WIDTH, "node label, in order", ticks, title_gap=13.0)
     canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, WIDTH - 3.0, height - 3.0))
     look = looks(record)[_candidate_key(record)]
     canvas.frame()
@@ -234,7 +234,7 @@ def advantage_by_node(record: Record) -> Chart:
     ]
     names = _node_names(rows, x, height)
     canvas.words([*(words for label in labels for words in label.words()), *remarks, *names])
-    drawing = checked(spec(canvas.layers, WIDTH, height, (64.0, 10.0, 12.0, 64.0)))
+    drawing = checked(spec(canvas.layers, WIDTH, height, (64.0, 10.0, 12.0, 60.0)))
     summary = _node_words(record, rows)
     caption = f"Primary policy at every node pair. {summary} Labels are equally spaced: a label is not a length."
     return Chart(key, title, drawing, caption, f"Advantage by node. {summary}", tuple(rows))

@@ -8,8 +8,8 @@ from dataclasses import dataclass
 from typing import Any
 
 from benchmark.report.figure import Chart, Row, checked
+from benchmark.report.rows import curve_rows, envelope_rows, policy_rows
 from benchmark.report.style import LogAxis, positive, spec
-from benchmark.report.tables import curve_rows, envelope_rows, policy_rows
 from benchmark.report.words import amount, is_number, plural, state_word
 
 __all__ = ["FEASIBLE", "Limits", "Plane", "energy_delay", "envelope_path", "limits_of", "side_key", "side_name"]

@@ -9,8 +9,8 @@ from benchmark.report.drawing import Canvas, Words
 from benchmark.report.energy_delay import side_name
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, hatch, text_width, wrapped
+from benchmark.report.rows import part_rows
 from benchmark.report.style import INK, LinearAxis, spec
-from benchmark.report.tables import part_rows
 from benchmark.report.words import amount, number, policy_name, scaled
 
 __all__ = ["where_it_goes"]

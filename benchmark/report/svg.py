@@ -9,6 +9,8 @@ from __future__ import annotations
 import re
 from xml.etree import ElementTree
 
+from benchmark.report.words import visible
+
 __all__ = ["SVG_ATTRIBUTES", "SVG_ELEMENTS", "inline_svg"]
 
 _SVG = "{http://www.w3.org/2000/svg}"
@@ -62,6 +64,6 @@ def inline_svg(svg: str, key: str, alternative: str) -> str:
     root = ElementTree.fromstring(svg)
     _clean(root, f"{key}-")
     root.set("role", "img")
-    root.set("aria-label", alternative)
+    root.set("aria-label", visible(alternative))
     root.set("class", "chart")
     return ElementTree.tostring(root, encoding="unicode", short_empty_elements=True)

@@ -9,149 +9,25 @@ from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from benchmark.report.words import is_number, state_word
+from benchmark.report.rows import (
+    INFEASIBLE,
+    advantage_rows,
+    curve_rows,
+    envelope_rows,
+    part_rows,
+    policy_rows,
+    sides_of,
+    word,
+)
 
 if TYPE_CHECKING:
     import pandas
 
-__all__ = [
-    "INFEASIBLE",
-    "advantage_rows",
-    "curve_rows",
-    "envelope_rows",
-    "frames",
-    "part_rows",
-    "policy_rows",
-    "tables",
-    "write_csv",
-]
+__all__ = ["frames", "tables", "write_csv"]
 
 Record = Mapping[str, Any]
 Row = dict[str, Any]
-INFEASIBLE = "infeasible"
 NOT_STATED = "not stated"
-
-
-def _word(value: Any, word: str) -> Any:
-    return word if value is None else value
-
-
-def curve_rows(record: Record) -> list[Row]:
-    """Every swept point of every side."""
-    return [
-        {
-            "role": curve["role"],
-            "side": curve["side"],
-            "technology": curve["technology"],
-            "size": curve["size"],
-            "threshold_shift_V": curve["threshold_shift"],
-            "supply_V": point["supply"],
-            "time_s": _word(point["time"], "cannot be evaluated"),
-            "energy_J": _word(point["energy"], "cannot be evaluated"),
-            "state": state_word(point["feasible"]),
-            "reason": "; ".join(point["reasons"]),
-            "delay_limit": point["delay_limit"],
-            "energy_limit": point["energy_limit"],
-        }
-        for curve in record["curves"]
-        for point in curve["points"]
-    ]
-
-
-def envelope_rows(record: Record) -> list[Row]:
-    """Return the lower envelope of all contenders' feasible points: no other such point is as fast with less energy."""
-    rows = [row for row in curve_rows(record) if row["role"] == "contender" and row["state"] == state_word(True)]
-    rows = [row for row in rows if is_number(row["time_s"]) and is_number(row["energy_J"])]
-    rows.sort(key=lambda row: (row["time_s"], row["energy_J"], row["side"]))
-    kept: list[Row] = []
-    for row in rows:
-        if not kept or row["energy_J"] < kept[-1]["energy_J"]:
-            kept.append({key: row[key] for key in ("time_s", "energy_J", "side", "supply_V")})
-    return kept
-
-
-def _reach(row: Mapping[str, Any]) -> str:
-    candidate, reference = is_number(row["candidate_energy"]), is_number(row["reference_energy"])
-    if candidate and reference:
-        return ""
-    if candidate:
-        return "no contender reaches this time"
-    return "the candidate does not reach this time" if reference else "neither side reaches this time"
-
-
-def advantage_rows(record: Record) -> list[Row]:
-    """Advantage against required time."""
-    return [
-        {
-            "time_s": row["time"],
-            "advantage": _word(row["advantage"], INFEASIBLE),
-            "reason": _reach(row),
-            "strongest_contender": row["strongest"] or INFEASIBLE,
-            "candidate_energy_J": row["candidate_energy"] if is_number(row["candidate_energy"]) else INFEASIBLE,
-            "reference_energy_J": row["reference_energy"] if is_number(row["reference_energy"]) else INFEASIBLE,
-        }
-        for row in record["advantage_against_time"]
-    ]
-
-
-def _sides(policy: Mapping[str, Any]) -> list[tuple[str, Mapping[str, Any]]]:
-    return [("candidate", policy["candidate"]), *(("contender", side) for side in policy["contenders"])]
-
-
-def policy_rows(record: Record) -> list[Row]:
-    """One row per policy and side."""
-    rows = []
-    for policy in record["policies"]:
-        for role, side in _sides(policy):
-            point = side["point"]
-            rows.append(
-                {
-                    "policy": policy["policy"],
-                    "diagnostic": policy["diagnostic"],
-                    "role": role,
-                    "side": side["id"],
-                    "strongest": role == "contender" and side["id"] == policy["strongest"],
-                    "state": state_word(side["feasible"]),
-                    "reason": "" if side["feasible"] else side.get("why") or "no permitted point under this policy",
-                    "advantage": _word(policy["advantage"] if role == "candidate" else side["advantage"], INFEASIBLE),
-                    "supply_V": point["supply"] if point else INFEASIBLE,
-                    "size": point["size"] if point else INFEASIBLE,
-                    "threshold_shift_V": point["threshold_shift"] if point else INFEASIBLE,
-                    "time_s": point["time"] if point else INFEASIBLE,
-                    "cycle_s": point["cycle"] if point else INFEASIBLE,
-                    "energy_J": point["energy"] if point else INFEASIBLE,
-                    "leakage_power_W": point["leakage_power"] if point else INFEASIBLE,
-                    "area_m2": point["area"] if point else INFEASIBLE,
-                    "power_density_W_per_m2": point["power_density"] if point else INFEASIBLE,
-                    "place": side["at"],
-                }
-            )
-    return rows
-
-
-def part_rows(record: Record) -> list[Row]:
-    """Parts of time and energy of every side under every policy."""
-    rows = []
-    for policy in record["policies"]:
-        for role, side in _sides(policy):
-            point = side["point"]
-            for quantity, unit in (("time", "s"), ("energy", "J")):
-                parts = point[f"{quantity}_parts"] if point else {}
-                total = sum(parts.values())
-                rows += [
-                    {
-                        "policy": policy["policy"],
-                        "role": role,
-                        "side": side["id"],
-                        "quantity": quantity,
-                        "part": part,
-                        "value_SI": value,
-                        "unit": unit,
-                        "share": value / total if total > 0.0 else 0.0,
-                    }
-                    for part, value in parts.items()
-                ]
-    return rows
 
 
 def _limits(record: Record) -> list[Row]:
@@ -161,10 +37,10 @@ def _limits(record: Record) -> list[Row]:
             "role": role,
             "side": side["id"],
             "limit": name,
-            "margin": _word(margin, NOT_STATED),
+            "margin": word(margin, NOT_STATED),
         }
         for policy in record["policies"]
-        for role, side in _sides(policy)
+        for role, side in sides_of(policy)
         for name, margin in (side["point"]["device_margins"] if side["point"] else {}).items()
     ]
 
@@ -175,10 +51,10 @@ def _requirements(record: Record) -> list[Row]:
             "requirement": row["name"],
             "kind": row["kind"],
             "state": row["state"],
-            "demanded": _word(row["demanded"], NOT_STATED),
-            "offered": _word(row["offered"], NOT_STATED),
+            "demanded": word(row["demanded"], NOT_STATED),
+            "offered": word(row["offered"], NOT_STATED),
             "unit": row["unit"],
-            "margin_factor": _word(row["margin"], "unknown"),
+            "margin_factor": word(row["margin"], "unknown"),
             "met_somewhere": row["passes_somewhere"],
             "meaning": row["meaning"],
             "note": row["note"],
@@ -219,11 +95,11 @@ def _moves(record: Record) -> list[Row]:
                 "unit": row["unit"],
                 "evidence": row["evidence"],
                 "best": row["best"],
-                "low": _word(row["low"], "no range stated"),
-                "high": _word(row["high"], "no range stated"),
-                "advantage_at_low": _word(row["advantage_low"], INFEASIBLE) if ranged else "no range stated",
-                "advantage_at_high": _word(row["advantage_high"], INFEASIBLE) if ranged else "no range stated",
-                "flips_at": _word(row["flip"], "does not flip" if not row["straddles"] else "at an infeasible end"),
+                "low": word(row["low"], "no range stated"),
+                "high": word(row["high"], "no range stated"),
+                "advantage_at_low": word(row["advantage_low"], INFEASIBLE) if ranged else "no range stated",
+                "advantage_at_high": word(row["advantage_high"], INFEASIBLE) if ranged else "no range stated",
+                "flips_at": word(row["flip"], "does not flip" if not row["straddles"] else "at an infeasible end"),
                 "decisive": row["decisive"],
             }
         )
@@ -252,6 +128,10 @@ def _anchors(record: Record) -> list[Row]:
     ]
 
 
+def _crossings(record: Record) -> list[Row]:
+    return [{"advantage": row["level"], "time_s": row["time"]} for row in record["crossings"]]
+
+
 def _closed_form(record: Record) -> list[Row]:
     return [
         {
@@ -261,8 +141,8 @@ def _closed_form(record: Record) -> list[Row]:
             "temperature_K": row["temperature"],
             "delay_rule": row["rule"],
             "closed_form_delay_s": row["closed_delay"],
-            "transient_delay_s": _word(row["transient_delay"], "not solved"),
-            "relative_difference": _word(row["difference"], "not solved"),
+            "transient_delay_s": word(row["transient_delay"], "not solved"),
+            "relative_difference": word(row["difference"], "not solved"),
             "note": row["note"],
         }
         for row in record["closed_form"]
@@ -297,8 +177,8 @@ def _ledger(record: Record) -> list[Row]:
                     "date": row["date"],
                     "file": row["file"],
                     "line": row["line"],
-                    "moves_result": _word(row["matters"], "not moved"),
-                    "decisive": _word(row["decisive"], "not moved"),
+                    "moves_result": word(row["matters"], "not moved"),
+                    "decisive": word(row["decisive"], "not moved"),
                 }
             )
     return rows
@@ -338,7 +218,13 @@ def _joined(value: Any) -> Any:
 
 
 def _side_rows(record: Record) -> list[Row]:
-    return [{key: _joined(value) for key, value in side.items()} for side in record["sides"]]
+    rows = []
+    for side in record["sides"]:
+        named = {key: _joined(value) for key, value in side.items() if key not in ("supply", "threshold_shifts")}
+        low, high = side["supply"]
+        shifts = _joined(side["threshold_shifts"])
+        rows.append(named | {"supply_low_V": low, "supply_high_V": high, "threshold_shifts_V": shifts})
+    return rows
 
 
 def _files(record: Record) -> list[Row]:
@@ -349,7 +235,7 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "curves": curve_rows,
     "reference_envelope": envelope_rows,
     "advantage_against_time": advantage_rows,
-    "crossings": _plain("crossings"),
+    "crossings": _crossings,
     "policies": policy_rows,
     "parts": part_rows,
     "device_limits": _limits,
