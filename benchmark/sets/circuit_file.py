@@ -13,7 +13,7 @@ from benchmark.errors import nearest
 from benchmark.sets.files import TomlFile, read_toml
 from benchmark.sets.parameters import check_formulas
 from benchmark.sets.problems import Collector
-from benchmark.sets.schema import Measure, validate
+from benchmark.sets.schema import DefaultsTable, Measure, validate
 from benchmark.sets.study_schema import CircuitFile, NetTable
 from benchmark.sets.values import Place, Value, convert_measure, convert_value
 
@@ -125,7 +125,9 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
     def refuse(key: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> None:
         collector.add(file.problem(f"{dotted}.{key}", what, found, allowed, hint))
 
-    place = Place(file, dotted, None, frozenset())  # type: ignore[arg-type]
+    def place(key: str) -> Place:
+        return Place(file, f"{dotted}.{key}", DefaultsTable(), frozenset())
+
     if not _inputs(net.driver):
         refuse("driver", "is not a known cell", repr(net.driver), _CELLS)
     loads = []
@@ -140,17 +142,15 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
         loads.append(LoadSpec(load.cell, load.input, float(load.count)))
     fixed = 0.0
     if net.fixed_load is not None:
-        fixed = convert_measure(net.fixed_load, "F", 0.0, place, collector) or 0.0
+        fixed = convert_measure(net.fixed_load, "F", 0.0, place("fixed_load"), collector) or 0.0
     length, unit, layer = 0.0, "m", "local"
     if net.wire is not None:
         layer = net.wire.layer or "local"
         if net.wire.length_unit == "gate-pitch":
             length, unit = float(net.wire.length), "gate_pitch"
         else:
-            length = (
-                convert_measure(Measure(value=net.wire.length, unit=net.wire.length_unit), "m", 0.0, place, collector)
-                or 0.0
-            )
+            measure = Measure(value=net.wire.length, unit=net.wire.length_unit)
+            length = convert_measure(measure, "m", 0.0, place("wire"), collector, "length", "length_unit") or 0.0
         if length < 0.0:
             refuse("wire", "has a negative length", str(net.wire.length))
         if layer != "local" and layer not in layers:
@@ -163,8 +163,12 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
             )
     swing = None
     if net.swing is not None:
-        swing = convert_measure(Measure(value=net.swing.value, unit=net.swing.unit), "V", 1e-6, place, collector)
-    for key in ("rising_per_operation", "busiest_per_operation", "count", "on_critical_path"):
+        swing = convert_measure(
+            Measure(value=net.swing.value, unit=net.swing.unit), "V", 1e-6, place("swing"), collector
+        )
+    if net.count <= 0:
+        refuse("count", "must be above 0", str(net.count))
+    for key in ("rising_per_operation", "busiest_per_operation", "on_critical_path"):
         number = getattr(net, key)
         if number is not None and number < 0:
             refuse(key, "is negative", str(number), "0 or above")

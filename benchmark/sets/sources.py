@@ -46,6 +46,10 @@ def read_sources(path: Path, collector: Collector, name: str | None = None) -> d
     if file is None:
         return {}
     found: dict[str, Source] = {}
+    if file.data.get("schema") != 1:
+        version = shown(file.data.get("schema")) if "schema" in file.data else "none"
+        collector.add(file.problem("schema", "is not a file format this version reads", version, "1"))
+        return {}
     for key, table in file.data.items():
         if key == "schema":
             continue

@@ -394,24 +394,32 @@ def convert_value(
 
 
 def convert_measure(
-    measure: Measure, unit_like: str, domain_low: float | None, place: Place, collector: Collector, key: str = "value"
+    measure: Measure,
+    unit_like: str,
+    domain_low: float | None,
+    place: Place,
+    collector: Collector,
+    key: str = "value",
+    unit_key: str = "unit",
 ) -> float | None:
     """Convert a plain number with unit; ``unit_like`` fixes the dimension, ``domain_low`` the lowest value (SI).
 
-    ``key``: how the file calls the number.
+    ``key`` and ``unit_key``: how the file calls the number and its unit.
     """
     try:
         unit = parse_unit(measure.unit)
     except UnitError as error:
         collector.add(
-            place.file.problem(f"{place.dotted}.unit", f"unknown unit: {error}", "", f"a unit such as {unit_like}")
+            place.file.problem(
+                f"{place.dotted}.{unit_key}", f"unknown unit: {error}", "", f"a unit such as {unit_like}"
+            )
         )
         return None
     wanted = parse_unit(unit_like)
     if unit.dimension != wanted.dimension:
         collector.add(
             place.file.problem(
-                f"{place.dotted}.unit",
+                f"{place.dotted}.{unit_key}",
                 "has the wrong dimension",
                 f"{measure.unit!r} ({unit.dimension_text})",
                 f"a unit such as {unit_like} ({wanted.dimension_text})",
