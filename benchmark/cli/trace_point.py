@@ -234,7 +234,7 @@ class _Tracer:
         sheet.given("P_ov", one(problem.overhead["overhead_power"]), "W", "standing power of overheads")
         if study.timing == "clocked" and study.leakage_accounting == "period":
             sheet.given("f", one(problem.scenario["clock_frequency"]), "1/s", "clock frequency")
-            sheet.result("T", "1/f", "s", "leakage is charged over the clock period")
+            sheet.result("T", "max(1/f, T_path)", "s", "leakage is charged over the clock period, or a longer path")
         else:
             sheet.result("T", "T_path", "s", "leakage is charged over the path delay")
         sheet.result("E_leak", "P_leak*T", "J", "leakage energy")
@@ -259,7 +259,7 @@ class _Tracer:
         sheet.given("t_idle", one(scenario["idle_time"]), "s", "one idle period")
         sheet.given("n_act", one(scenario["active_cycles"]), "1", "clock cycles awake per idle period")
         if self.study.idle == "ungated":
-            sheet.result("E_idle", "P_leak*t_idle/n_act", "J", "the block keeps leaking while idle")
+            sheet.result("E_idle", "(P_leak + P_bias + P_ov)*t_idle/n_act", "J", "everything stays on while idle")
             return
         gating = self.problem.gating
         sheet.given("rho", one(gating["residual_leakage"]), "1", "share of the leakage left when power-gated")
@@ -268,7 +268,8 @@ class _Tracer:
             sheet.result(f"dC_{index}", f"n_{index}*C_net_{index}", "F")
         total = " + ".join(f"dC_{index}" for index in range(1, len(nets) + 1))
         sheet.result("C_all", total, "F", "capacitance of all nets")
-        sheet.result("E_idle", "(rho*P_leak*t_idle + k_w*C_all*V**2)/n_act", "J", "power-gated while idle")
+        formula = "((rho*(P_leak + P_bias) + P_ov)*t_idle + k_w*C_all*V**2)/n_act"
+        sheet.result("E_idle", formula, "J", "power-gated while idle; overheads lie outside the gated supply")
 
     def _compare(self) -> None:
         sheet, points = self.sheet, self.points

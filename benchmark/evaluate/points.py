@@ -7,9 +7,11 @@ Energy of one operation [J]::
 
     E = (E_dynamic + (P_leakage + P_bias + P_overhead) T + E_idle) / efficiency + E_level_shifter
 
-T is the cycle time under period accounting and the path delay under operation accounting. E_idle per operation is
-P_leakage t_idle / n_active when idle blocks leak, and (r P_leakage t_idle + k_wake sum(C V^2)) / n_active when they
-are power-gated.
+T is the clock period under period accounting and the path delay under operation accounting; where the path takes longer
+than the clock period (no deadline is required) an operation lasts as long as its path. Nothing that stands goes away
+while the block is idle: E_idle per operation is (P_leakage + P_bias + P_overhead) t_idle / n_active when the supply stays
+on, and ([r (P_leakage + P_bias) + P_overhead] t_idle + k_wake sum(C V^2)) / n_active when it is gated, with the residual
+share r. Overheads (pumps, converters, drivers) lie outside the gated supply.
 """
 
 from __future__ import annotations
@@ -127,8 +129,9 @@ def _reduce(
         time_parts["level_shifter"] = np.broadcast_to(shifter_delay[:, 0, :], shape)
     time = np.asarray(sum(time_parts.values()))
     leakage = at_hot(metrics.leakage_power)
-    overhead_power = problem.overhead["overhead_power"][:, 0, :]
-    standing = leakage + at_hot(metrics.bias_power) + overhead_power
+    bias = at_hot(metrics.bias_power)
+    overhead_power = np.broadcast_to(problem.overhead["overhead_power"][:, 0, :], shape)
+    standing = leakage + bias + overhead_power
     infeasible = _infeasible(problem, supply, shape, metrics)
     points = Points(
         supply=np.broadcast_to(supply, shape),
@@ -143,7 +146,9 @@ def _reduce(
         dynamic_parts={name: at_hot(part) for name, part in metrics.dynamic_energy_parts.items()},
         leakage_power=leakage,
         standing_power=standing,
-        idle_energy=_idle_energy(problem, leakage, at_hot(metrics.switched_capacitance) * supply**2),
+        idle_energy=_idle_energy(
+            problem, leakage + bias, overhead_power, at_hot(metrics.switched_capacitance) * supply**2
+        ),
         area=at_hot(metrics.area),
         power_density=time,
         noise_ratio=np.broadcast_to(_temperatures(problem, metrics.half_swing_over_noise).min(axis=1), shape),
@@ -171,7 +176,8 @@ def cycle_time(problem: SideProblem) -> Array | None:
 def with_cycle(problem: SideProblem, points: Points, period: Array | None) -> Points:
     """Return the points with their energy at another clock period [s] (None: self-timed)."""
     accounting = problem.study.leakage_accounting
-    cycle = points.time if period is None or accounting == "operation" else np.broadcast_to(period, points.time.shape)
+    lasts = points.time if period is None else np.maximum(period, points.time)
+    cycle = points.time if accounting == "operation" else lasts
     standing = points.standing_power * cycle
     parts: dict[str, Array] = dict(points.dynamic_parts)
     parts["leakage"] = points.leakage_power * cycle
@@ -181,24 +187,24 @@ def with_cycle(problem: SideProblem, points: Points, period: Array | None) -> Po
     parts["supply_loss"] = core * (1.0 / points.efficiency - 1.0)
     parts["level_shifters"] = np.broadcast_to(points.shifter, core.shape)
     energy = np.asarray(core / points.efficiency + points.shifter)
-    period_or_delay = points.time if period is None else np.broadcast_to(period, points.time.shape)
     with np.errstate(divide="ignore", invalid="ignore"):
-        density = (energy - points.idle_energy / points.efficiency) / period_or_delay / points.area
+        density = (energy - points.idle_energy / points.efficiency) / lasts / points.area
     return dataclasses.replace(
         points, cycle=cycle, energy=energy, energy_parts=parts, power_density=np.asarray(density)
     )
 
 
-def _idle_energy(problem: SideProblem, leakage: Array, full_swing_energy: Array) -> Array:
+def _idle_energy(problem: SideProblem, block: Array, outside: Array, full_swing_energy: Array) -> Array:
+    """Energy of one idle period per operation [J]: standing power of the block and of what lies outside its supply."""
     if problem.study.idle == "none":
-        return np.zeros(leakage.shape)
+        return np.zeros(block.shape)
     idle = problem.scenario["idle_time"][:, 0, :]
     active = problem.scenario["active_cycles"][:, 0, :]
     if problem.study.idle == "ungated":
-        return np.asarray(leakage * idle / active)
+        return np.asarray((block + outside) * idle / active)
     residual = problem.gating["residual_leakage"][:, 0, :]
     wake = problem.gating["wake_energy_cycles"][:, 0, :] * full_swing_energy
-    return np.asarray((residual * leakage * idle + wake) / active)
+    return np.asarray(((residual * block + outside) * idle + wake) / active)
 
 
 def _infeasible(
@@ -251,16 +257,20 @@ def _capabilities(problem: SideProblem, pair: SwitchPair, rows: int) -> dict[str
 
 
 def cycles_demanded(problem: SideProblem, points: Points, life: float) -> Array:
-    """Switching cycles of the busiest net over the life [1]: f a_max duty life (row, supply)."""
+    """Switching cycles of the busiest net over the life [1]: f a_max duty life (row, supply).
+
+    a_max is the activity stated for the busiest net, or that of a net of the circuit which is busier still (a clock net
+    rises once per cycle whatever the study says of its logic). f is the clock frequency; a self-timed block without one
+    runs all the time.
+    """
     scenario = problem.scenario
-    per_operation = scenario["busiest_activity"][:, 0, :] if "busiest_activity" in scenario else points.busiest_rising
-    if problem.study.timing == "clocked":
-        frequency = scenario["clock_frequency"][:, 0, :]
-    else:
-        frequency = 1.0 / points.time
+    busiest = points.busiest_rising
+    if "busiest_activity" in scenario:
+        busiest = np.maximum(busiest, scenario["busiest_activity"][:, 0, :])
+    frequency = scenario["clock_frequency"][:, 0, :] if "clock_frequency" in scenario else 1.0 / points.time
     if problem.study.idle == "none":
         duty = scenario["duty"][:, 0, :]
     else:
         awake = scenario["active_cycles"][:, 0, :] / frequency
         duty = awake / (awake + scenario["idle_time"][:, 0, :])
-    return np.asarray(frequency * per_operation * duty * life)
+    return np.asarray(frequency * busiest * duty * life)

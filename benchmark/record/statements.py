@@ -94,8 +94,8 @@ def conventions(study: Study, factors: dict[str, Any]) -> list[dict[str, str]]:
             "idle",
             {
                 "none": "not part of this study",
-                "ungated": "blocks keep leaking while idle",
-                "gated": "power-gated on both sides with stated residual leakage and wake cost",
+                "ungated": "the supply stays on: leakage, bias and overheads go on while idle",
+                "gated": "power-gated on both sides with stated residual leakage and wake cost; overheads go on",
             }[study.idle],
         ),
         ("supply", "each side at its own best supply inside its own range"),
