@@ -20,9 +20,10 @@ from benchmark.sets.values import Place, Value, convert_measure, convert_value
 if TYPE_CHECKING:
     from benchmark.sets.library import Library
 
-__all__ = ["CircuitSpec", "LoadSpec", "NetSpec", "read_circuit"]
+__all__ = ["CELL", "CircuitSpec", "LoadSpec", "NetSpec", "read_circuit"]
 
-_CELL = re.compile(r"(?:nand|nor)([2-8])|(?:aoi|oai)([1-4]{2,4})")
+#: cells beside the inverter, with the number of inputs
+CELL = re.compile(r"(?:nand|nor)([2-8])|(?:aoi|oai)([1-4]{2,4})")
 _CELLS = "inverter, nand2 to nand8, nor2 to nor8, aoi or oai with digits such as aoi21, at most 8 inputs"
 
 
@@ -30,7 +31,7 @@ def _inputs(cell: str) -> tuple[str, ...]:
     """Input names of a cell of the library; none when there is no such cell."""
     if cell == "inverter":
         return ("a",)
-    found = _CELL.fullmatch(cell)
+    found = CELL.fullmatch(cell)
     count = 0 if found is None else int(found[1]) if found[1] else sum(int(digit) for digit in found[2])
     return tuple("abcdefgh"[:count]) if count <= 8 else ()
 

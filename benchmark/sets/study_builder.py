@@ -20,14 +20,16 @@ from benchmark.sets.study_schema import NodePair as NodePairTable
 from benchmark.sets.values import Place, Value, convert_measure, convert_value
 from benchmark.units import UnitError, parse_unit, to_si
 
-__all__ = ["CircuitDeclaration", "build_study"]
+__all__ = ["GATING", "LENGTHS", "OPTIONAL_OVERHEADS", "OVERHEADS", "CircuitDeclaration", "build_study"]
 
-_OVERHEADS = ("level_shifter_energy", "supply_efficiency", "overhead_power")
-_OPTIONAL_OVERHEADS = ("level_shifter_delay",)
+#: values of a side's ledger of overheads, and of its power gating
+OVERHEADS = ("level_shifter_energy", "supply_efficiency", "overhead_power")
+OPTIONAL_OVERHEADS = ("level_shifter_delay",)
 #: supplies on the curves of a study that uses the transient rule
 TRANSIENT_POINTS = 9
-_LENGTHS = ("average_net_length", "average_net_pitches")
-_GATING = ("residual_leakage", "wake_energy_cycles")
+#: two ways to state a net length, of which a study takes one
+LENGTHS = ("average_net_length", "average_net_pitches")
+GATING = ("residual_leakage", "wake_energy_cycles")
 
 
 class CircuitDeclaration(Protocol):
@@ -94,7 +96,7 @@ class _Builder:
         must: set[str] = set(circuit.required) if circuit else set()
         may: set[str] = set(circuit.optional) - {"busiest_activity"} if circuit else set()
         if circuit is not None and circuit.length != "none":
-            may |= set(_LENGTHS)
+            may |= set(LENGTHS)
         if parsed.workload.timing == "clocked":
             must.add("clock_frequency")
         if parsed.workload.idle != "none":
@@ -136,9 +138,9 @@ class _Builder:
                 self.refuse(f"value.{name}.spread", "is not possible: the number shapes the netlist of the circuit")
         for name in sorted(must - set(self.parsed.value)):
             self.refuse(f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", QUANTITIES[name].example)
-        lengths = [name for name in _LENGTHS if name in self.parsed.value]
+        lengths = [name for name in LENGTHS if name in self.parsed.value]
         if len(lengths) > 1 or (circuit is not None and circuit.length == "required" and not lengths):
-            self.refuse("value", f"needs exactly one of {' and '.join(_LENGTHS)}", ", ".join(lengths) or "none")
+            self.refuse("value", f"needs exactly one of {' and '.join(LENGTHS)}", ", ".join(lengths) or "none")
         return found
 
     # -- sides ----------------------------------------------------------------------------------------------
@@ -169,9 +171,9 @@ class _Builder:
         if any(size <= 0 for size in sizes):
             self.refuse(f"{dotted}.knobs.size", "must be above 0")
         shifts = self.frozen(table.knobs.threshold_shift, "V", f"{dotted}.knobs.threshold_shift", 0.0)
-        overhead = self.ledger(table.overhead, (*_OVERHEADS,), _OPTIONAL_OVERHEADS, f"{dotted}.overhead")
+        overhead = self.ledger(table.overhead, (*OVERHEADS,), OPTIONAL_OVERHEADS, f"{dotted}.overhead")
         gated = self.parsed.workload.idle == "gated"
-        gating = self.ledger(table.gating, _GATING if gated else (), (), f"{dotted}.gating")
+        gating = self.ledger(table.gating, GATING if gated else (), (), f"{dotted}.gating")
         if technology is None or low is None or high is None:
             return None
         if technology.kind != "technology":
