@@ -23,7 +23,8 @@ def _number(value: Any) -> Any:
     if isinstance(value, Decimal) and not value.is_finite():
         msg = "finite"
         raise PydanticCustomError(msg, "a finite number is needed")
-    if abs(Decimal(value)) > Decimal("1e300") or (value != 0 and abs(Decimal(value)) < Decimal("1e-300")):
+    size = Decimal(value).copy_abs()  # copy_abs: exact, and never an overflow of its own
+    if size > Decimal("1e300") or (size and size < Decimal("1e-300")):
         msg = "finite"
         raise PydanticCustomError(msg, "the number is beyond the range of the program (1e-300 to 1e300)")
     return value

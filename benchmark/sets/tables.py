@@ -299,7 +299,7 @@ def _cell(text: str, decimal: str) -> Decimal | None:
         number = Decimal(text)
     except InvalidOperation:
         return None
-    if not number.is_finite() or "_" in text or (number and not LEAST <= abs(number) <= MOST):
+    if not number.is_finite() or "_" in text or (number and not LEAST <= number.copy_abs() <= MOST):
         return None
     return number
 
