@@ -23,7 +23,7 @@ def new_command(kind: str, path: Path, model_name: str) -> None:
         raise UsageError(message)
     stem = _stem(path, kind)
     texts = _texts(kind, stem, model_name)
-    files = {path.parent / name: text for name, text in texts.items()}
+    files = {path.parent / name: _hint(path.parent / name, kind, model_name) + text for name, text in texts.items()}
     for place in files:
         if place.exists() or place.is_symlink():
             message = f"{place} exists; nothing was written"
@@ -73,6 +73,17 @@ def _texts(kind: str, stem: str, model_name: str) -> dict[str, str]:
         message = f"there is no model {model_name!r}; known are {', '.join(MODEL_NAMES)}; {hint}".rstrip("; ")
         raise UsageError(message)
     return technology_template(model_name, stem)
+
+
+def _hint(place: Path, kind: str, model_name: str) -> str:
+    """First line of a new TOML file: where an editor finds what the file may say."""
+    from benchmark.cli.templates import schema_hint
+
+    if place.suffix != ".toml":
+        return ""
+    if place.parent.name == "tables":
+        return schema_hint("table", place)
+    return schema_hint(f"technology-{model_name}" if kind == "technology" else kind, place)
 
 
 def _write(files: dict[Path, str]) -> None:

@@ -6,8 +6,10 @@ invented and say so.
 
 from __future__ import annotations
 
+import os
 import textwrap
 from collections.abc import Mapping
+from pathlib import Path
 from typing import Any, get_args
 
 from benchmark.catalogue import EVIDENCE, QUANTITIES, Quantity
@@ -15,10 +17,11 @@ from benchmark.cli.describe import input_need, usual_range
 from benchmark.cli.template_numbers import SPREADS, TECHNOLOGY_NUMBERS
 from benchmark.devices import model
 from benchmark.devices.model import DeviceModel, Input
+from benchmark.sets.library import shipped_nodes
 from benchmark.sets.schema import RowTable, SpreadTable
 from benchmark.sets.tables import COLUMN_UNITS
 
-__all__ = ["circuit_template", "comment", "technology_template", "value_block"]
+__all__ = ["circuit_template", "comment", "schema_hint", "technology_template", "value_block"]
 
 #: widest comment line
 WIDTH = 110
@@ -28,6 +31,19 @@ NODE = "n1"
 def comment(text: str, indent: str = "") -> str:
     """Return text as TOML comment lines."""
     return "\n".join(textwrap.wrap(text, WIDTH, initial_indent="# " + indent, subsequent_indent="# " + indent))
+
+
+def schema_hint(name: str, place: Path) -> str:
+    """Return the line that tells an editor the JSON Schema of a file at ``place``, as a path from that file.
+
+    On another drive there is no such path, and the line holds an address.
+    """
+    schema = shipped_nodes().resolve() / "schema" / f"{name}.json"
+    try:
+        where = Path(os.path.relpath(schema, place.parent.resolve())).as_posix()
+    except ValueError:
+        where = schema.as_uri()
+    return f"#:schema {where}\n"
 
 
 def value_block(
