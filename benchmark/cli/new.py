@@ -23,7 +23,7 @@ def new_command(kind: str, path: Path, model_name: str) -> None:
         raise UsageError(message)
     stem = _stem(path, kind)
     texts = _texts(kind, stem, model_name)
-    files = {path.parent / name: _hint(path.parent / name, kind, model_name) + text for name, text in texts.items()}
+    files = {path.parent / name: _hint(name, path.parent, kind, model_name) + text for name, text in texts.items()}
     for place in files:
         if place.exists() or place.is_symlink():
             message = f"{place} exists; nothing was written"
@@ -75,15 +75,15 @@ def _texts(kind: str, stem: str, model_name: str) -> dict[str, str]:
     return technology_template(model_name, stem)
 
 
-def _hint(place: Path, kind: str, model_name: str) -> str:
+def _hint(name: str, folder: Path, kind: str, model_name: str) -> str:
     """First line of a new TOML file: where an editor finds what the file may say."""
     from benchmark.cli.templates import schema_hint
 
-    if place.suffix != ".toml":
+    if not name.endswith(".toml"):
         return ""
-    if place.parent.name == "tables":
-        return schema_hint("table", place)
-    return schema_hint(f"technology-{model_name}" if kind == "technology" else kind, place)
+    if name.startswith("tables/"):
+        return schema_hint("table", folder / name)
+    return schema_hint(f"technology-{model_name}" if kind == "technology" else kind, folder / name)
 
 
 def _write(files: dict[Path, str]) -> None:
