@@ -20,15 +20,15 @@ from benchmark.sets.values import Place, Value, convert_measure, convert_value
 if TYPE_CHECKING:
     from benchmark.sets.library import Library
 
-__all__ = ["CELL", "CircuitSpec", "LoadSpec", "NetSpec", "read_circuit"]
+__all__ = ["CELL", "CircuitSpec", "LoadSpec", "NetSpec", "cell_inputs", "read_circuit"]
 
 #: cells beside the inverter, with the number of inputs
 CELL = re.compile(r"(?:nand|nor)([2-8])|(?:aoi|oai)([1-4]{2,4})")
 _CELLS = "inverter, nand2 to nand8, nor2 to nor8, aoi or oai with digits such as aoi21, at most 8 inputs"
 
 
-def _inputs(cell: str) -> tuple[str, ...]:
-    """Input names of a cell of the library; none when there is no such cell."""
+def cell_inputs(cell: str) -> tuple[str, ...]:
+    """Return the input names of a cell of the library; none when there is no such cell."""
     if cell == "inverter":
         return ("a",)
     found = CELL.fullmatch(cell)
@@ -129,11 +129,11 @@ def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, obje
     def place(key: str) -> Place:
         return Place(file, f"{dotted}.{key}", DefaultsTable(), frozenset())
 
-    if not _inputs(net.driver):
+    if not cell_inputs(net.driver):
         refuse("driver", "is not a known cell", repr(net.driver), _CELLS)
     loads = []
     for load in net.loads:
-        inputs = _inputs(load.cell)
+        inputs = cell_inputs(load.cell)
         if not inputs:
             refuse("loads", "is not a known cell", repr(load.cell), _CELLS)
         elif load.input not in inputs:

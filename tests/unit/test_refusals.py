@@ -1,0 +1,114 @@
+"""Every message of the files layer, read whole: each case spoils one valid file at one place."""
+
+from __future__ import annotations
+
+import ast
+import re
+from pathlib import Path
+
+import pytest
+
+import benchmark.sets
+from tests import refusals
+from tests.refusals import Case, cases, check, files
+
+CASES = dict(cases())
+#: messages that need more than a spoiled file; the tests that read them are named
+ELSEWHERE = {
+    "is a folder, a file is needed": "test_files.py",
+    "is not a regular file": "test_files.py",
+    "is too large": "test_files.py",
+    "cannot be read (": "test_files.py",
+    "is not a usable path": "test_files.py",
+    "is not UTF-8 text": "test_files.py",
+    "starts with a byte order mark": "test_files.py",
+    "is not usable TOML (": "test_files.py",
+    "is nested too deeply": "test_files.py",
+    "is binary": "test_measured_tables.py",
+    "has too many rows": "test_measured_tables.py",
+    "there is no such set": "test_sets_library.py",
+    "is not a value of the set": "test_sets_library.py",
+    "compares two nodes of ": "test_study.py",
+    "leaves out the contender that sets the required time": "test_study.py",
+    " needs declared_supply in the set ": "test_study.py",
+    "must be true: a table of an input set is invented": "test_study.py",
+    "must be true: stage results of a set are invented": "test_study.py",
+    "is not a wires set": "test_study.py",
+    "is a wires set": "test_study.py",
+    "is not possible: the number shapes the netlist of the circuit": "test_study.py",
+    "there is no such circuit": "test_study.py",
+}
+
+
+@pytest.mark.parametrize("kind", ["technology", "stages", "wires", "circuit", "sources", "table", "study"])
+def test_the_files_the_cases_start_from_are_fine(kind: str, tmp_path: Path):
+    said = check(tmp_path, dict(files(kind)))
+    assert said.refused == []
+    assert said.warned == []
+
+
+@pytest.mark.parametrize("name", CASES)
+def test_a_spoiled_file_is_refused_with_exactly_these_words(name: str, tmp_path: Path):
+    case: Case = CASES[name]
+    said = check(tmp_path, case.spoiled())
+    assert said.refused == list(case.refused)
+    assert said.warned == list(case.warned)
+
+
+# -- no message without a case ---------------------------------------------------------------------------------
+
+
+def _constant_parts(node: ast.expr) -> list[str]:
+    """The fixed words of a message: a string, the fixed parts of an f-string, or of both branches of a choice."""
+    if isinstance(node, ast.Constant) and isinstance(node.value, str):
+        return [node.value]
+    if isinstance(node, ast.JoinedStr):
+        fixed = [part.value for part in node.values if isinstance(part, ast.Constant) and isinstance(part.value, str)]
+        return [part for part in fixed if len(part) > 3]
+    if isinstance(node, ast.IfExp):
+        return _constant_parts(node.body) + _constant_parts(node.orelse)
+    return []
+
+
+def _messages(path: Path) -> set[str]:
+    """Fixed words of the ``what`` of every problem a module can report."""
+    position = {"problem": 1, "refuse": 1, "Problem": 3}
+    found: set[str] = set()
+    tree = ast.parse(path.read_text(encoding="utf-8"))
+    for node in ast.walk(tree):
+        if not isinstance(node, ast.Call):
+            continue
+        name = node.func.attr if isinstance(node.func, ast.Attribute) else getattr(node.func, "id", "")
+        at = position.get(name)
+        if path.name == "values.py" and name == "refuse":
+            at = 0  # the local function of a spread, which knows its place
+        if at is not None and len(node.args) > at:
+            found.update(_constant_parts(node.args[at]))
+    return {part for part in found if part}
+
+
+MODULES = sorted(Path(benchmark.sets.__file__).parent.glob("*.py"))
+
+
+@pytest.mark.parametrize("path", MODULES, ids=lambda path: path.stem)
+def test_every_message_stands_in_a_case(path: Path):
+    read = "\n".join(line for case in CASES.values() for line in (*case.refused, *case.warned))
+    missing = {part for part in _messages(path) if part not in read and not _elsewhere(part)}
+    assert missing == set()
+
+
+def _elsewhere(part: str) -> bool:
+    return any(part.strip() and (part in known or known in part) for known in ELSEWHERE)
+
+
+def test_the_scan_for_messages_finds_them():
+    """The scan above can fail: it sees the messages of a module that is known to have some."""
+    found = _messages(Path(benchmark.sets.__file__).parent / "study_policy.py")
+    assert "must be above 0" in found
+    assert len(found) >= 12
+
+
+@pytest.mark.parametrize(("message", "module"), sorted(ELSEWHERE.items()))
+def test_messages_read_elsewhere_stand_in_the_test_that_is_named(message: str, module: str):
+    text = (Path(refusals.__file__).parent / "unit" / module).read_text(encoding="utf-8")
+    assert re.sub(r"\s+", " ", message).strip() in re.sub(r"\s+", " ", text)
