@@ -8,7 +8,7 @@ from typing import Any
 from benchmark.report.drawing import Canvas, Label, Words
 from benchmark.report.energy_delay import limits_of
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, Placer, hatch, wrapped
+from benchmark.report.placing import Box, Placer, fitted, hatch, wrapped
 from benchmark.report.rows import advantage_rows
 from benchmark.report.style import INK, LinearAxis, LogAxis, looks, positive, spec
 from benchmark.report.words import amount, is_number, listed, number
@@ -230,7 +230,9 @@ def advantage_by_node(record: Record) -> Chart:
     canvas.backs(labels)
     infeasible = [row for row in rows if not is_number(row["advantage"])]
     remarks = [
-        Words(row["note"] or "infeasible", x.pixel(float(row["order"])), height - 10.0, "center") for row in infeasible
+        Words(line, x.pixel(float(row["order"])), height - 36.0 + 13.0 * i, "center")
+        for row in infeasible
+        for i, line in enumerate(fitted(row["note"] or "infeasible", max(60.0, WIDTH / len(rows)), 3))
     ]
     names = _node_names(rows, x, height)
     canvas.words([*(words for label in labels for words in label.words()), *remarks, *names])
@@ -244,11 +246,10 @@ def _node_names(rows: Sequence[Row], x: LinearAxis, height: float) -> list[Words
     """Write labels under their ticks in at most two lines; of very many labels every second, third ... one."""
     room = x.size / len(rows)
     stride = max(1, -(-34 // int(room)))
-    columns = max(5, int(room * stride * 0.95 / 6.2))
     return [
         Words(line, x.pixel(float(row["order"])), height + 15.0 + 13.0 * i, "center")
         for row in rows[::stride]
-        for i, line in enumerate(wrapped(row["node"], columns, 2))
+        for i, line in enumerate(fitted(row["node"], room * stride - 4.0, 2))
     ]
 
 

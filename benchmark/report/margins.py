@@ -8,7 +8,7 @@ from typing import Any
 
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, hatch, text_width, wrapped
+from benchmark.report.placing import Box, fitted, hatch, text_width
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import amount, is_number, listed, number, requirement_name
 
@@ -53,7 +53,7 @@ def _order(row: Row) -> tuple[float, str]:
 
 def _offer(row: Row) -> str:
     offered, demanded = (amount(row[name], row["unit"], 2) for name in ("offered", "demanded"))
-    return wrapped(f"offered {offered}, demanded {demanded}", 46, 1)[0]
+    return fitted(f"offered {offered}, demanded {demanded}", 240.0)[0]
 
 
 def _axis(rows: Sequence[Row]) -> LinearAxis:
@@ -121,16 +121,17 @@ def requirement_margins(record: Record) -> Chart:
     for position, row in enumerate(rows):
         middle = 4.0 + ROW * (position + 0.5)
         _bar(canvas, axis, row, middle)
+        state = fitted(margin_words(row), RIGHT - 14.0, bold=True)[0]
         canvas.words(
             [
                 Words(
-                    wrapped(requirement_name(row["name"]), 24, 1)[0],
+                    fitted(requirement_name(row["name"]), LEFT - 14.0, bold=True)[0],
                     -10.0,
                     middle,
                     "right",
                     bold=row["state"] != "pass",
                 ),
-                Words(wrapped(margin_words(row), 42, 1)[0], WIDTH + 10.0, middle - 6.5, bold=row["state"] != "pass"),
+                Words(state, WIDTH + 10.0, middle - 6.5, bold=row["state"] != "pass"),
                 Words(_offer(row), WIDTH + 10.0, middle + 6.5),
             ]
         )

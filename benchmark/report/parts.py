@@ -8,7 +8,7 @@ from typing import Any
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.energy_delay import side_name
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, hatch, text_width, wrapped
+from benchmark.report.placing import Box, fitted, hatch, text_width
 from benchmark.report.rows import part_rows
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import amount, number, policy_name, scaled
@@ -74,7 +74,9 @@ def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, fact
         if lined and right - left > 3.0:
             canvas.rules(hatch(box, 6.0), color="#a8a8a8", strokeWidth=0.8)
         if row["share"] >= SMALL:
-            text = f"{row['part']} {number(100.0 * row['share'])} %".replace(" ", "\u00a0")
+            percent = f" {number(100.0 * row['share'])} %"
+            name = fitted(row["part"], 150.0)[0]
+            text = f"{name}{percent}".replace(" ", "\u00a0")
             every.append((0.5 * (left + right), text))
             if text_width(text) + 8.0 <= right - left:
                 half = 0.5 * text_width(text) + 2.0
@@ -90,7 +92,7 @@ def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, fact
     beside = left + 17.0 + text_width(said, bold=True)
     if len(below) > 1 and beside < 0.55 * canvas.x.size:  # a short bar: its parts in order, beside it
         listing = "from the left: " + ", ".join(text for _, text in every)
-        lines = wrapped(listing, int((canvas.x.size - beside) / 5.4), 3)
+        lines = fitted(listing, canvas.x.size - beside - 4.0, 3)
         words += [
             Words(line, beside, top + 0.5 * BAR + 13.0 * (i - 0.5 * (len(lines) - 1))) for i, line in enumerate(lines)
         ]
@@ -135,7 +137,7 @@ def _panel(record: Record, rows: Sequence[Row], quantity: str) -> tuple[list[Row
     words = []
     for position, (key, mine) in enumerate(sides):
         top = 8.0 + ROW * position
-        name = wrapped(side_name(record, key), 19, 2)
+        name = fitted(side_name(record, key), LEFT - 12.0, 2, bold=True)
         canvas.words(
             [
                 Words(line, -10.0, top + 0.5 * BAR + 13.0 * (i - 0.5 * (len(name) - 1)), "right", bold=True)

@@ -13,7 +13,7 @@ import textwrap
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 
-__all__ = ["Box", "Placed", "Placer", "hatch", "text_width", "wrapped"]
+__all__ = ["Box", "Placed", "Placer", "fitted", "hatch", "text_width", "wrapped"]
 
 LINE_HEIGHT = 13.0
 #: advance widths of Liberation Sans in thousandths of the size, by group (metric-compatible with Arial)
@@ -47,6 +47,15 @@ def wrapped(text: str, columns: int, lines: int = 3) -> list[str]:
         clean, columns, break_long_words=True, break_on_hyphens=True, max_lines=lines, placeholder="…"
     )
     return found or [""]
+
+
+def fitted(text: str, room: float, lines: int = 1, *, bold: bool = False) -> list[str]:
+    """Break text into lines that fit ``room`` pixels; what does not fit ends in an ellipsis."""
+    for columns in range(max(4, int(room / 3.0)), 3, -1):
+        found = wrapped(text, columns, lines)
+        if all(text_width(line, bold=bold) <= room for line in found):
+            return found
+    return ["…"]
 
 
 @dataclass(frozen=True)

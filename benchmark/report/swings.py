@@ -8,7 +8,7 @@ from typing import Any
 from benchmark.report.advantage import levels
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, text_width, wrapped
+from benchmark.report.placing import Box, fitted, text_width
 from benchmark.report.style import GREY, INK, LinearAxis, LogAxis, spec
 from benchmark.report.words import flat_powers, is_number, listed, number, plural, spaced
 
@@ -142,8 +142,8 @@ def input_swings(record: Record) -> Chart:
         name, owner = _name(row["key"])
         canvas.words(
             [
-                Words(wrapped(name, 33, 1)[0], -10.0, middle - 6.5, "right", bold=True),
-                Words(wrapped(f"{owner}; {row['evidence']}", 38, 1)[0], -10.0, middle + 6.5, "right"),
+                Words(fitted(name, LEFT - 12.0, bold=True)[0], -10.0, middle - 6.5, "right", bold=True),
+                Words(fitted(f"{owner}; {row['evidence']}", LEFT - 12.0)[0], -10.0, middle + 6.5, "right"),
             ]
         )
     drawing = checked(spec(canvas.layers, WIDTH, height, (LEFT, 6.0, RIGHT, 48.0)))
