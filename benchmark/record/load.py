@@ -150,9 +150,10 @@ def _line(technology: ParameterSet, dotted: str) -> int:
 
 def _number(text: str) -> Decimal | int | None:
     try:
-        value = tomllib.loads(f"x = {text}", parse_float=Decimal)["x"]
-    except (tomllib.TOMLDecodeError, KeyError, ValueError):
+        parsed = tomllib.loads(f"x = {text}", parse_float=Decimal)
+    except (tomllib.TOMLDecodeError, ValueError, ArithmeticError):
         return None
+    value = parsed["x"] if list(parsed) == ["x"] else None
     return value if isinstance(value, (Decimal, int)) and not isinstance(value, bool) else None
 
 
