@@ -7,46 +7,22 @@ never as both. Counts that shape a netlist (``stage_count``, ``word_length``) mu
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
-from dataclasses import dataclass, replace
+from collections.abc import Mapping
+from dataclasses import replace
 from types import MappingProxyType
-from typing import Any, Final
+from typing import Final
 
 import numpy as np
 
 from benchmark.circuits.adder import ripple_adder, ripple_adder_activity
+from benchmark.circuits.built_in import LENGTH_NAMES, BuiltIn, Scenario, netlist_nets, single, wire, wire_remark
 from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Circuit, Load, Net, Value
-from benchmark.circuits.netlist import Netlist, loads, longest_path
+from benchmark.circuits.netlist import loads, longest_path
 from benchmark.circuits.register import FLIP_FLOP, register_facts
 from benchmark.errors import UsageError, nearest
 
-__all__ = ["BUILT_IN", "BuiltIn", "build"]
-
-Scenario = Mapping[str, Value]
-LENGTH_NAMES: Final = ("average_net_length", "average_net_pitches")
-
-
-@dataclass(frozen=True)
-class BuiltIn:
-    """A built-in circuit. ``length`` tells whether it needs a net length, may have one, or has none.
-
-    ``whole``: counts that shape the netlist, so they have one value and no spread.
-    """
-
-    name: str
-    title: str
-    operation: str
-    builder: Callable[[BuiltIn, Scenario], Circuit]
-    required: tuple[str, ...]
-    optional: tuple[str, ...] = ()
-    length: str = "optional"
-    whole: tuple[str, ...] = ()
-
-    @property
-    def reads(self) -> frozenset[str]:
-        """Return every scenario name that can change this circuit."""
-        return frozenset((*self.required, *self.optional, *LENGTH_NAMES))
+__all__ = ["BUILT_IN", "BuiltIn", "build", "netlist_nets"]
 
 
 def build(name: str, scenario: Scenario) -> Circuit:
@@ -60,46 +36,13 @@ def build(name: str, scenario: Scenario) -> Circuit:
     if name not in BUILT_IN:
         message = f"no built-in circuit {name!r}; known are {', '.join(BUILT_IN)}; {nearest(name, BUILT_IN)}"
         raise UsageError(message)
-    which = BUILT_IN[name]
-    missing = [value for value in which.required if value not in scenario]
-    stated = [value for value in LENGTH_NAMES if value in scenario]
-    if missing:
-        message = f"circuit {name!r} needs the values {', '.join(missing)}"
-        raise UsageError(message)
-    if len(stated) > 1 or (which.length == "required" and not stated):
-        message = f"circuit {name!r} needs one of {' and '.join(LENGTH_NAMES)}, not {len(stated)} of them"
-        raise UsageError(message)
-    return which.builder(which, scenario)
-
-
-def _wire(scenario: Scenario) -> dict[str, Any]:
-    if "average_net_length" in scenario:
-        return {"wire_length": scenario["average_net_length"], "length_unit": "m"}
-    if "average_net_pitches" in scenario:
-        return {"wire_length": scenario["average_net_pitches"], "length_unit": "gate_pitch"}
-    return {}
-
-
-def _wire_remark(scenario: Scenario) -> tuple[str, ...]:
-    return () if _wire(scenario) else ("No wire on any net: an upper bound of what circuits reach.",)
-
-
-def _single(scenario: Scenario, name: str, least: int) -> int:
-    value = np.asarray(scenario[name])
-    if value.size != 1 or float(value.reshape(-1)[0]) != round(float(value.reshape(-1)[0])):
-        message = f"{name} must be one whole number for this circuit"
-        raise UsageError(message)
-    number = round(float(value.reshape(-1)[0]))
-    if number < least:
-        message = f"{name} must be at least {least}, not {number}"
-        raise UsageError(message)
-    return number
+    return BUILT_IN[name].build(scenario)
 
 
 def _stage_text(scenario: Scenario) -> str:
     """Return the text of the one stage; compared with that of a technology known at one stage only."""
     fan_out = np.asarray(scenario["fan_out"])
-    if fan_out.size != 1 or _wire(scenario):
+    if fan_out.size != 1 or wire(scenario):
         return ""
     return f"inverter, fan-out {float(fan_out.reshape(-1)[0]):g}, no wire"
 
@@ -114,21 +57,21 @@ def _inverter_chain(which: BuiltIn, scenario: Scenario) -> Circuit:
         busiest_per_operation=scenario.get("busiest_activity"),
         count=scenario["logic_depth"],
         on_critical_path=scenario["logic_depth"],
-        **_wire(scenario),
+        **wire(scenario),
     )
     return Circuit(
         which.name,
         which.title,
         which.operation,
         (net,),
-        assumptions=("Every stage is alike; the loads beyond the chain are inputs only.", *_wire_remark(scenario)),
+        assumptions=("Every stage is alike; the loads beyond the chain are inputs only.", *wire_remark(scenario)),
         stage=_stage_text(scenario),
     )
 
 
 def _ring(which: BuiltIn, scenario: Scenario) -> Circuit:
     inverter = cell("inverter")
-    count = _single(scenario, "stage_count", 3)
+    count = single(scenario, "stage_count", 3)
     if count % 2 == 0:
         message = f"a ring of inverters needs an odd stage_count, not {count}"
         raise UsageError(message)
@@ -139,14 +82,14 @@ def _ring(which: BuiltIn, scenario: Scenario) -> Circuit:
         rising_per_operation=1.0,
         count=float(count),
         on_critical_path=2.0 * count,
-        **_wire(scenario),
+        **wire(scenario),
     )
     return Circuit(
         which.name,
         which.title,
         which.operation,
         (net,),
-        assumptions=("Frequency = 1 / time per operation = 1 / (2 N t).", *_wire_remark(scenario)),
+        assumptions=("Frequency = 1 / time per operation = 1 / (2 N t).", *wire_remark(scenario)),
         stage=_stage_text(scenario),
     )
 
@@ -179,7 +122,7 @@ def _register_nets(scenario: Scenario, reader: Cell, count: Value) -> list[Net]:
             group="register",
         )
         if name == "q":
-            net = replace(net, loads=(*net.loads, Load(reader, "a", scenario["fan_out"])), **_wire(scenario))
+            net = replace(net, loads=(*net.loads, Load(reader, "a", scenario["fan_out"])), **wire(scenario))
         nets.append(net)
     clock = Net(
         "clock",
@@ -188,7 +131,7 @@ def _register_nets(scenario: Scenario, reader: Cell, count: Value) -> list[Net]:
         rising_per_operation=1.0,
         count=count,
         group="clock",
-        **_wire(scenario),
+        **wire(scenario),
     )
     return [*nets, clock]
 
@@ -211,14 +154,14 @@ def _register(which: BuiltIn, scenario: Scenario) -> Circuit:
         rising_per_operation=scenario["activity"],
         busiest_per_operation=scenario.get("busiest_activity"),
         group="logic",
-        **_wire(scenario),
+        **wire(scenario),
     )
     return Circuit(
         which.name,
         which.title,
         which.operation,
         (data, *_register_nets(scenario, inverter, 1.0)),
-        assumptions=(*REGISTER_ASSUMPTIONS, *_wire_remark(scenario)),
+        assumptions=(*REGISTER_ASSUMPTIONS, *wire_remark(scenario)),
     )
 
 
@@ -232,7 +175,7 @@ def _random_logic(which: BuiltIn, scenario: Scenario) -> Circuit:
         busiest_per_operation=scenario.get("busiest_activity"),
         count=scenario["gate_count"],
         on_critical_path=scenario["logic_depth"],
-        **_wire(scenario),
+        **wire(scenario),
     )
     nets = [logic]
     registers = scenario["register_count"]
@@ -249,7 +192,7 @@ def _random_logic(which: BuiltIn, scenario: Scenario) -> Circuit:
 
 
 def _ripple_adder(which: BuiltIn, scenario: Scenario) -> Circuit:
-    bits = _single(scenario, "word_length", 1)
+    bits = single(scenario, "word_length", 1)
     netlist, activity, inverter = ripple_adder(bits), ripple_adder_activity(bits), cell("inverter")
     operands = Net(
         "operand",
@@ -257,7 +200,7 @@ def _ripple_adder(which: BuiltIn, scenario: Scenario) -> Circuit:
         loads=loads(netlist, netlist.inputs[0]),
         rising_per_operation=activity[netlist.inputs[0]],
         count=float(len(netlist.inputs)),
-        **_wire(scenario),
+        **wire(scenario),
     )
     nets = (operands, *netlist_nets(netlist, activity, longest_path(netlist), inverter, scenario))
     return Circuit(
@@ -269,35 +212,9 @@ def _ripple_adder(which: BuiltIn, scenario: Scenario) -> Circuit:
             "Nine-NAND full adders; an inverter drives every operand bit, every sum bit and the last carry drive one; "
             "operands change once per operation, independent and uniform; hazards are not counted; the path starts "
             "where the operands have arrived.",
-            *_wire_remark(scenario),
+            *wire_remark(scenario),
         ),
     )
-
-
-def netlist_nets(
-    netlist: Netlist, activity: Mapping[str, float], path: tuple[str, ...], reader: Cell, scenario: Scenario
-) -> tuple[Net, ...]:
-    """Return the nets of a netlist, alike ones merged; outputs drive one input of ``reader`` each."""
-    merged: dict[tuple[Any, ...], Net] = {}
-    for gate in netlist.gates:
-        name = gate.output
-        driven = loads(netlist, name) + ((Load(reader, "a"),) if name in netlist.outputs else ())
-        key = (gate.cell, driven, round(activity[name], 12))
-        on_path = float(path.count(name))
-        if key in merged:
-            known = merged[key]
-            merged[key] = replace(known, count=known.count + 1.0, on_critical_path=known.on_critical_path + on_path)
-        else:
-            merged[key] = Net(
-                name,
-                cell(gate.cell),
-                loads=driven,
-                rising_per_operation=activity[name],
-                count=1.0,
-                on_critical_path=on_path,
-                **_wire(scenario),
-            )
-    return tuple(merged.values())
 
 
 BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
@@ -335,7 +252,8 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
                 _random_logic,
                 ("logic_depth", "fan_out", "activity", "gate_count", "register_count"),
                 ("busiest_activity",),
-                "required",
+                one_of=(LENGTH_NAMES,),
+                at_most_one_of=(),
             ),
             BuiltIn(
                 "ripple-adder",

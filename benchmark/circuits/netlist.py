@@ -11,21 +11,36 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from benchmark.circuits.cells import cell
+from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Load
 from benchmark.devices.record import Array
 from benchmark.errors import UsageError
 
-__all__ = ["Gate", "Netlist", "Settled", "loads", "longest_path", "rising_probability", "settle"]
+__all__ = [
+    "Gate",
+    "Netlist",
+    "Settled",
+    "all_loads",
+    "loads",
+    "longest_path",
+    "ordered",
+    "rising_probability",
+    "settle",
+]
 
 
 @dataclass(frozen=True)
 class Gate:
-    """A cell by name that drives the net ``output`` from the nets ``inputs`` (in the order of the cell's inputs)."""
+    """A cell, by name or itself, that drives ``output`` from the nets ``inputs`` (in the order of its inputs)."""
 
     output: str
-    cell: str
+    cell: str | Cell
     inputs: tuple[str, ...]
+
+    @property
+    def which(self) -> Cell:
+        """Return the cell itself."""
+        return cell(self.cell) if isinstance(self.cell, str) else self.cell
 
 
 @dataclass(frozen=True)
@@ -39,26 +54,31 @@ class Netlist:
 
     def __post_init__(self) -> None:
         nets = [*self.inputs, *(gate.output for gate in self.gates)]
-        if len(nets) != len(set(nets)):
+        known = set(nets)
+        if len(nets) != len(known):
             message = f"netlist {self.name!r}: a net is driven twice"
             raise UsageError(message)
         for gate in self.gates:
-            if len(gate.inputs) != len(cell(gate.cell).inputs) or not set(gate.inputs) <= set(nets):
+            if len(gate.inputs) != len(gate.which.inputs) or not known.issuperset(gate.inputs):
                 message = f"netlist {self.name!r}: inputs of the gate driving {gate.output!r} do not fit"
                 raise UsageError(message)
-        if not set(self.outputs) <= set(nets):
+        if not known.issuperset(self.outputs):
             message = f"netlist {self.name!r}: an output is not a net"
             raise UsageError(message)
 
 
 def loads(netlist: Netlist, net: str) -> tuple[Load, ...]:
     """Return the gate inputs that a net drives inside the netlist."""
-    return tuple(
-        Load(cell(gate.cell), pin)
-        for gate in netlist.gates
-        for pin, source in zip(cell(gate.cell).inputs, gate.inputs, strict=True)
-        if source == net
-    )
+    return all_loads(netlist).get(net, ())
+
+
+def all_loads(netlist: Netlist) -> dict[str, tuple[Load, ...]]:
+    """Return the gate inputs that each net drives inside the netlist; nets that drive none are left out."""
+    found: dict[str, list[Load]] = {}
+    for gate in netlist.gates:
+        for pin, source in zip(gate.which.inputs, gate.inputs, strict=True):
+            found.setdefault(source, []).append(Load(gate.which, pin))
+    return {net: tuple(driven) for net, driven in found.items()}
 
 
 @dataclass(frozen=True)
@@ -97,7 +117,7 @@ def settle(netlist: Netlist, values: Mapping[str, bool], stimulus: Mapping[str, 
             return Settled(state, rising, changed_at, cause)
         after: dict[str, bool] = {}
         for gate in netlist.gates:
-            which = cell(gate.cell)
+            which = gate.which
             value = which.output({pin: state[net] for pin, net in zip(which.inputs, gate.inputs, strict=True)})
             if value != state[gate.output]:
                 after[gate.output] = value
@@ -116,30 +136,43 @@ def settle(netlist: Netlist, values: Mapping[str, bool], stimulus: Mapping[str, 
 
 def ordered(netlist: Netlist) -> tuple[Gate, ...]:
     """Return the gates of a netlist without feedback, drivers before readers."""
-    known, waiting, order = set(netlist.inputs), list(netlist.gates), []
+    known, waiting, order = set(netlist.inputs), list(netlist.gates), list[Gate]()
     while waiting:
-        ready = [gate for gate in waiting if set(gate.inputs) <= known]
-        if not ready:
+        later = []
+        for gate in waiting:
+            if known.issuperset(gate.inputs):
+                order.append(gate)
+                known.add(gate.output)
+            else:
+                later.append(gate)
+        if len(later) == len(waiting):
             message = f"netlist {netlist.name!r} has feedback; it has no order"
             raise UsageError(message)
-        order += ready
-        known |= {gate.output for gate in ready}
-        waiting = [gate for gate in waiting if gate.output not in known]
+        waiting = later
     return tuple(order)
 
 
-def longest_path(netlist: Netlist, start: Iterable[str] | None = None) -> tuple[str, ...]:
+def longest_path(
+    netlist: Netlist, start: Iterable[str] | None = None, burden: Mapping[str, float] | None = None
+) -> tuple[str, ...]:
     """Return the driven nets of the longest path in gate stages from ``start`` (default: all inputs) to an output.
 
-    Structural, without regard to whether the path can be sensitised; the first of equally long ones.
+    Structural, without regard to whether the path can be sensitised. Among equally long paths the one with the
+    largest sum of ``burden`` over its nets, else the first.
     """
-    begin = set(netlist.inputs if start is None else start)
-    best: dict[str, tuple[str, ...]] = dict.fromkeys(begin, ())
+    reach: dict[str, tuple[int, float]] = dict.fromkeys(netlist.inputs if start is None else start, (0, 0.0))
+    before: dict[str, str] = {}
     for gate in ordered(netlist):
-        reaching = [best[net] for net in gate.inputs if net in best]
+        reaching = [net for net in gate.inputs if net in reach]
         if reaching:
-            best[gate.output] = (*max(reaching, key=len), gate.output)
-    return max((best[net] for net in netlist.outputs if net in best), key=len)
+            last = max(reaching, key=lambda net: reach[net])
+            stages, whole = reach[last]
+            reach[gate.output] = (stages + 1, whole + (burden[gate.output] if burden is not None else 0.0))
+            before[gate.output] = last
+    path = [max((net for net in netlist.outputs if net in reach), key=lambda net: reach[net])]
+    while path[-1] in before:
+        path.append(before[path[-1]])
+    return tuple(reversed(path[:-1]))
 
 
 def rising_probability(netlist: Netlist, high: Mapping[str, float] | None = None) -> dict[str, float]:
@@ -168,7 +201,7 @@ def rising_probability(netlist: Netlist, high: Mapping[str, float] | None = None
 
 def _output(gate: Gate, values: Mapping[str, Array]) -> Array:
     """Return the output of a gate for many states at once, from the truth table of its cell."""
-    which = cell(gate.cell)
+    which = gate.which
     index = np.zeros(values[gate.inputs[0]].shape, dtype=np.int64)
     for place, net in enumerate(gate.inputs):
         index += values[net].astype(np.int64) << place

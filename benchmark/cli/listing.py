@@ -6,7 +6,7 @@ from collections.abc import Callable, Sequence
 from typing import Any
 
 from benchmark.catalogue import EVIDENCE, PRODUCT_CLASSES, QUANTITIES
-from benchmark.circuits.library import BUILT_IN
+from benchmark.circuits.library import BUILT_IN, BuiltIn
 from benchmark.cli.describe import SUPPORT
 from benchmark.cli.layout import Block, Note, Table
 from benchmark.devices import MODEL_NAMES, model
@@ -15,7 +15,7 @@ from benchmark.sets.library import Library
 from benchmark.sets.problems import Collector
 from benchmark.sets.study import REQUIREMENTS
 
-__all__ = ["FOLDERS", "LISTS", "files_of", "length_words"]
+__all__ = ["FOLDERS", "LISTS", "choice_words", "files_of"]
 
 FOLDERS = {"technology": "technologies", "wires": "wires", "circuit": "circuits"}
 
@@ -66,10 +66,12 @@ def _wires(library: Library) -> list[Block]:
     return [Table("Wires", ("id", "title", "nodes"), _list_files(library, "wires", ("title", "nodes")))]
 
 
-def length_words(length: str) -> str:
-    """Say how a circuit takes its net length."""
-    lengths = "average_net_length or average_net_pitches"
-    return {"required": f"one of {lengths}", "optional": f"at most one of {lengths}", "none": ""}[length]
+def choice_words(which: BuiltIn) -> tuple[str, ...]:
+    """Say which values of a circuit state the same thing, so that only one may be given."""
+    return (
+        *(f"one of {' or '.join(group)}" for group in which.one_of),
+        *(f"at most one of {' or '.join(group)}" for group in which.at_most_one_of),
+    )
 
 
 def _circuits(library: Library) -> list[Block]:
@@ -79,7 +81,7 @@ def _circuits(library: Library) -> list[Block]:
             which.title,
             which.operation,
             ", ".join(which.required),
-            ", ".join(text for text in (*which.optional, length_words(which.length)) if text),
+            ", ".join((*which.optional, *choice_words(which))),
         )
         for name, which in BUILT_IN.items()
     ]

@@ -10,7 +10,7 @@ from benchmark.catalogue import EVIDENCE, QUANTITIES, STUDY_QUANTITIES, WIRE_QUA
 from benchmark.circuits.library import BUILT_IN
 from benchmark.cli.describe import SUPPORT, input_need, set_blocks, usual_range, value_blocks
 from benchmark.cli.layout import Block, Facts, Note, Table, show_blocks
-from benchmark.cli.listing import FOLDERS, LISTS, files_of, length_words
+from benchmark.cli.listing import FOLDERS, LISTS, choice_words, files_of
 from benchmark.devices import MODEL_NAMES, model
 from benchmark.errors import Problem, UsageError, nearest
 from benchmark.record.load import check_physics, open_library
@@ -89,12 +89,17 @@ def _circuit(library: Library, name: str) -> list[Block]:
 def _built_in(name: str) -> list[Block]:
     which = BUILT_IN[name]
     facts = [("title", which.title), ("one operation", which.operation)]
-    if length_words(which.length):
-        facts.append(("net length", f"{length_words(which.length)} (none: no wire)"))
+    if which.function:
+        facts.append(("function", which.function))
+    facts += [("stated", words) for words in choice_words(which)]
+    needs = (
+        ("needed", which.required),
+        ("when asked for", which.optional),
+        *(("one of these", group) for group in which.one_of),
+        *(("at most one of these", group) for group in which.at_most_one_of),
+    )
     rows = [
-        (value, need, QUANTITIES[value].meaning, QUANTITIES[value].unit)
-        for need, values in (("needed", which.required), ("when asked for", which.optional))
-        for value in values
+        (value, need, QUANTITIES[value].meaning, QUANTITIES[value].unit) for need, values in needs for value in values
     ]
     columns = ("scenario value", "need", "meaning", "unit")
     return [Facts(f"Built-in circuit {name}", facts), Table("", columns, rows)]

@@ -40,7 +40,9 @@ class CircuitDeclaration(Protocol):
     @property
     def optional(self) -> tuple[str, ...]: ...  # noqa: D102
     @property
-    def length(self) -> str: ...  # noqa: D102
+    def one_of(self) -> tuple[tuple[str, ...], ...]: ...  # noqa: D102
+    @property
+    def at_most_one_of(self) -> tuple[tuple[str, ...], ...]: ...  # noqa: D102
     @property
     def whole(self) -> tuple[str, ...]: ...  # noqa: D102
 
@@ -95,8 +97,8 @@ class _Builder:
         circuit = self.circuits.get(parsed.workload.circuit)
         must: set[str] = set(circuit.required) if circuit else set()
         may: set[str] = set(circuit.optional) - {"busiest_activity"} if circuit else set()
-        if circuit is not None and circuit.length != "none":
-            may |= set(LENGTHS)
+        if circuit is not None:
+            may |= {name for group in (*circuit.one_of, *circuit.at_most_one_of) for name in group}
         if parsed.workload.timing == "clocked":
             must.add("clock_frequency")
         if parsed.workload.idle != "none":
@@ -138,10 +140,16 @@ class _Builder:
                 self.refuse(f"value.{name}.spread", "is not possible: the number shapes the netlist of the circuit")
         for name in sorted(must - set(self.parsed.value)):
             self.refuse(f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", QUANTITIES[name].example)
-        lengths = [name for name in LENGTHS if name in self.parsed.value]
-        if len(lengths) > 1 or (circuit is not None and circuit.length == "required" and not lengths):
-            self.refuse("value", f"needs exactly one of {' and '.join(LENGTHS)}", ", ".join(lengths) or "none")
+        if circuit is not None:
+            self.one_statement(circuit)
         return found
+
+    def one_statement(self, circuit: CircuitDeclaration) -> None:
+        """Refuse values that state the same thing twice, or not at all where one is needed."""
+        for group in (*circuit.one_of, *circuit.at_most_one_of):
+            stated = [name for name in group if name in self.parsed.value]
+            if len(stated) > 1 or (group in circuit.one_of and not stated):
+                self.refuse("value", f"needs exactly one of {' and '.join(group)}", ", ".join(stated) or "none")
 
     # -- sides ----------------------------------------------------------------------------------------------
 
