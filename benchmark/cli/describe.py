@@ -2,21 +2,20 @@
 
 from __future__ import annotations
 
-import math
 from collections.abc import Mapping
-from fractions import Fraction
 
-from benchmark.catalogue import EVIDENCE, QUANTITIES, Quantity
+from benchmark.catalogue import EVIDENCE, QUANTITIES
 from benchmark.cli.layout import Block, Facts, Note, Table
 from benchmark.devices import model
 from benchmark.devices.model import DeviceModel, Input
 from benchmark.evaluate.anchors import AnchorResult, anchor_results
+from benchmark.record.value_text import amount, each_number, number, spread_text, usual_range, valid_text
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.sources import Source
-from benchmark.sets.values import NORMAL_95, Spread, Value
+from benchmark.sets.values import Value
 from benchmark.units import from_si, parse_unit
 
-__all__ = ["input_need", "number", "option_blocks", "set_blocks", "spread_text", "usual_range", "value_blocks"]
+__all__ = ["SUPPORT", "input_need", "option_blocks", "set_blocks", "value_blocks"]
 
 SUPPORT = {
     "go": "may carry any verdict",
@@ -26,51 +25,12 @@ SUPPORT = {
 }
 
 
-def number(value: float, digits: int = 6) -> str:
-    """Print a number with significant digits."""
-    return f"{value:.{digits}g}"
-
-
-def _amount(value: float, unit: str) -> str:
-    return number(value) if unit == "1" else f"{number(value)} {unit}"
-
-
-def usual_range(quantity: Quantity) -> str:
-    """Say the usual range of a catalogue entry."""
-    return f"{quantity.low:g} to {quantity.high:g} {quantity.unit}".removesuffix(" 1")
-
-
-def _each(value: Value) -> str:
-    """The number of every node in order, in the unit of the file."""
-    return " / ".join(number(value.in_unit(float(si))) for si in value.si)
-
-
-def spread_text(value: Value) -> str:
-    """Say a spread in words, in the unit of the file."""
-    spread = value.spread
-    if spread is None:
-        return "no range stated"
-    if spread.shape == "normal":
-        return f"normal, standard deviation {_deviation(value, spread)}"
-    if spread.shape == "lognormal" and spread.scale is not None:
-        factor = math.exp(NORMAL_95 * float(spread.scale[0]))
-        return f"lognormal, central 95 % within a factor {number(factor, 4)}"
-    low, high = value.in_unit(float(spread.low[0])), value.in_unit(float(spread.high[0]))
-    return f"{spread.shape}, {number(low)} to {number(high)} {value.unit}".removesuffix(" 1")
-
-
-def _deviation(value: Value, spread: Spread) -> str:
-    factor = parse_unit(value.unit).factor
-    scales = [] if spread.scale is None else [float(Fraction(float(scale)) / factor) for scale in spread.scale]
-    return f"{' / '.join(number(scale, 4) for scale in scales)} {value.unit}".removesuffix(" 1")
-
-
 def input_need(item: Input) -> str:
     """Say whether a model needs an input, and when."""
     when = "" if item.when is None else f" when {item.when[0]} = {' or '.join(item.when[1])}"
     if item.default is not None:
         unit = QUANTITIES[item.name].unit
-        shown = _amount(from_si(item.default.value, parse_unit(unit)), unit)
+        shown = amount(from_si(item.default.value, parse_unit(unit)), unit)
         return f"default {shown}{when} ({item.default.evidence}: {item.default.origin})"
     return f"{'required' if item.required else 'optional'}{when}"
 
@@ -84,7 +44,7 @@ def _value_table(item: ParameterSet) -> Table:
         (
             name,
             QUANTITIES[name].symbol,
-            _each(value),
+            " / ".join(each_number(value)),
             value.unit,
             spread_text(value),
             value.evidence,
@@ -193,16 +153,6 @@ def _not_stated(item: ParameterSet, device: DeviceModel) -> list[Block]:
     return [Note(f"Not stated and without a default, so unknown: {', '.join(absent)}.")]
 
 
-def _valid_text(item: ParameterSet) -> str:
-    parts = []
-    if "supply" in item.valid:
-        parts.append("supply {} to {} V".format(*(number(bound) for bound in item.valid["supply"])))
-    if "temperature" in item.valid:
-        low, high = (from_si(bound, parse_unit("degC")) for bound in item.valid["temperature"])
-        parts.append(f"temperature {number(low)} to {number(high)} degC")
-    return ", ".join(parts) or "no range stated"
-
-
 def set_blocks(item: ParameterSet) -> list[Block]:
     """Everything about one technology or wires set."""
     if item.kind == "wires":
@@ -215,7 +165,7 @@ def set_blocks(item: ParameterSet) -> list[Block]:
         ("nodes", ", ".join(item.nodes)),
         ("flavour", item.flavour or "-"),
         ("ambition", item.ambition),
-        ("valid for", _valid_text(item)),
+        ("valid for", valid_text(item)),
         ("file", item.file),
     ]
     if item.note:
@@ -269,7 +219,7 @@ def _numbers(item: ParameterSet, value: Value) -> list[tuple[str, str]]:
     return [
         (
             f"value at {node}" if node else "value",
-            f"{_amount(value.in_unit(float(si)), value.unit)} = {float(si)!r} in SI",
+            f"{amount(value.in_unit(float(si)), value.unit)} = {float(si)!r} in SI",
         )
         for node, si in zip(nodes, value.si, strict=True)
     ]

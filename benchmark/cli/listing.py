@@ -2,68 +2,27 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from typing import Any
+from collections.abc import Callable
 
 from benchmark.catalogue import EVIDENCE, PRODUCT_CLASSES, QUANTITIES
 from benchmark.circuits.library import BUILT_IN, BuiltIn
 from benchmark.cli.describe import SUPPORT
 from benchmark.cli.layout import Block, Note, Table
 from benchmark.devices import MODEL_NAMES, model
-from benchmark.sets.files import TomlFile, read_toml
+from benchmark.record.listing import TECHNOLOGY_COLUMNS, file_rows, technology_rows
 from benchmark.sets.library import Library
-from benchmark.sets.problems import Collector
 from benchmark.sets.study import REQUIREMENTS
 
-__all__ = ["FOLDERS", "LISTS", "choice_words", "files_of"]
-
-FOLDERS = {"technology": "technologies", "wires": "wires", "circuit": "circuits"}
-
-
-def _kind(data: dict[str, Any]) -> str:
-    if "workload" in data or "contender" in data:
-        return "study"
-    if "net" in data:
-        return "circuit"
-    return "wires" if data.get("kind") == "wires" else "technology"
-
-
-def files_of(library: Library, kind: str) -> dict[str, TomlFile | None]:
-    """Every file of a kind by id; the nearest folder wins. None: the file is not TOML."""
-    found: dict[str, TomlFile | None] = {}
-    for path in library.paths(FOLDERS[kind]):
-        if path.name == "sources.toml" or path.stem in found:
-            continue
-        file = read_toml(path, Collector(), library.shown(path))
-        if file is None and path.parent.name != FOLDERS[kind]:
-            continue
-        if file is None or _kind(file.data) == kind:
-            found[path.stem] = file
-    return dict(sorted(found.items()))
-
-
-def _words(value: Any) -> str:
-    return ", ".join(str(item) for item in value) if isinstance(value, list) else str(value)
-
-
-def _list_files(library: Library, kind: str, keys: Sequence[str]) -> list[tuple[str, ...]]:
-    rows = []
-    for name, file in files_of(library, kind).items():
-        if file is None:
-            rows.append((name, "not readable: evenload check says why", *("" for _ in keys[1:])))
-        else:
-            rows.append((name, *(_words(file.data.get(key, "-")) for key in keys)))
-    return rows
+__all__ = ["LISTS", "choice_words"]
 
 
 def _technologies(library: Library) -> list[Block]:
-    keys = ("title", "model", "nodes", "flavour", "ambition")
-    rows = [(*row[:-1], "today" if row[-1] == "-" else row[-1]) for row in _list_files(library, "technology", keys)]
-    return [Table("Technologies", ("id", *keys), rows), Note("evenload show ID: all its values and their sources.")]
+    table = Table("Technologies", ("id", *TECHNOLOGY_COLUMNS), technology_rows(library))
+    return [table, Note("evenload show ID: all its values and their sources.")]
 
 
 def _wires(library: Library) -> list[Block]:
-    return [Table("Wires", ("id", "title", "nodes"), _list_files(library, "wires", ("title", "nodes")))]
+    return [Table("Wires", ("id", "title", "nodes"), file_rows(library, "wires", ("title", "nodes")))]
 
 
 def choice_words(which: BuiltIn) -> tuple[str, ...]:
@@ -92,7 +51,7 @@ def _circuits(library: Library) -> list[Block]:
             built_in,
         )
     ]
-    files = _list_files(library, "circuit", ("title", "operation"))
+    files = file_rows(library, "circuit", ("title", "operation"))
     if files:
         blocks.append(Table("Circuit files", ("id", "title", "one operation"), files))
     return blocks

@@ -8,12 +8,14 @@ from typing import Any
 
 from benchmark.catalogue import EVIDENCE, QUANTITIES, STUDY_QUANTITIES, WIRE_QUANTITIES
 from benchmark.circuits.library import BUILT_IN
-from benchmark.cli.describe import SUPPORT, input_need, set_blocks, usual_range, value_blocks
+from benchmark.cli.describe import SUPPORT, input_need, set_blocks, value_blocks
 from benchmark.cli.layout import Block, Facts, Note, Table, show_blocks
-from benchmark.cli.listing import FOLDERS, LISTS, choice_words, files_of
+from benchmark.cli.listing import LISTS, choice_words
 from benchmark.devices import MODEL_NAMES, model
 from benchmark.errors import Problem, UsageError, nearest
+from benchmark.record.listing import FOLDERS, files_of
 from benchmark.record.load import check_physics, open_library
+from benchmark.record.value_text import usual_range
 from benchmark.sets.circuit_file import CircuitSpec, read_circuit
 from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet

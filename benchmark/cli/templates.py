@@ -13,10 +13,11 @@ from pathlib import Path
 from typing import Any, get_args
 
 from benchmark.catalogue import EVIDENCE, QUANTITIES, Quantity
-from benchmark.cli.describe import input_need, usual_range
+from benchmark.cli.describe import input_need
 from benchmark.cli.template_numbers import SPREADS, TECHNOLOGY_NUMBERS
 from benchmark.devices import model
 from benchmark.devices.model import DeviceModel, Input
+from benchmark.record.value_text import usual_range
 from benchmark.sets.library import shipped_nodes
 from benchmark.sets.schema import RowTable, SpreadTable
 from benchmark.sets.tables import COLUMN_UNITS

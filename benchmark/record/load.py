@@ -23,7 +23,7 @@ from benchmark.sets.problems import Collector
 from benchmark.sets.study import Study
 from benchmark.sets.study_builder import build_study
 
-__all__ = ["check_physics", "check_study", "load_study", "load_technology", "open_library"]
+__all__ = ["check_physics", "check_study", "load_study", "load_technology", "open_library", "open_set"]
 
 
 def open_library(*folders: Path, collector: Collector | None = None) -> Library:
@@ -32,8 +32,8 @@ def open_library(*folders: Path, collector: Collector | None = None) -> Library:
     return Library(model, MODEL_NAMES, roots, collector if collector is not None else Collector())
 
 
-def load_technology(name: str, *folders: Path) -> ParameterSet:
-    """Load one technology or wires set by id.
+def open_set(name: str, *folders: Path) -> tuple[ParameterSet, Library]:
+    """Load one technology or wires set by id, with the library it was found in.
 
     Raises
     ------
@@ -48,7 +48,18 @@ def load_technology(name: str, *folders: Path) -> ParameterSet:
     library.collector.raise_if_any()
     if found is None:
         raise InputRefused([Problem("", 0, name, "could not be loaded")])
-    return found
+    return found, library
+
+
+def load_technology(name: str, *folders: Path) -> ParameterSet:
+    """Load one technology or wires set by id.
+
+    Raises
+    ------
+    InputRefused
+        With every problem of the file.
+    """
+    return open_set(name, *folders)[0]
 
 
 def load_study(

@@ -12,7 +12,14 @@ from benchmark.report.figure import to_png, to_svg
 from benchmark.report.page import page
 from benchmark.report.tables import tables, write_csv
 
-__all__ = ["fill_folder"]
+__all__ = ["fill_folder", "report_page"]
+
+
+def report_page(record: Mapping[str, Any]) -> str:
+    """Return the page of a record alone, as ``fill_folder`` writes it."""
+    drawn = charts(record)
+    drawings = {key: to_svg(chart.spec) for key, chart in drawn.items() if chart.spec is not None}
+    return page(record, drawn, drawings)
 
 
 def fill_folder(place: Path, record: Mapping[str, Any]) -> None:

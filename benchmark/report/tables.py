@@ -23,7 +23,7 @@ from benchmark.report.rows import (
 if TYPE_CHECKING:
     import pandas
 
-__all__ = ["frames", "tables", "write_csv"]
+__all__ = ["frames", "ledger_table", "tables", "write_csv"]
 
 Record = Mapping[str, Any]
 Row = dict[str, Any]
@@ -149,7 +149,8 @@ def _closed_form(record: Record) -> list[Row]:
     ]
 
 
-def _ledger(record: Record) -> list[Row]:
+def ledger_table(record: Record) -> list[Row]:
+    """Every value used, one row per node."""
     rows = []
     for row in record["ledger"]:
         spread = row["spread"]
@@ -244,7 +245,7 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "nodes": _nodes,
     "anchors": _anchors,
     "closed_form": _closed_form,
-    "ledger": _ledger,
+    "ledger": ledger_table,
     "options": _plain("options"),
     "sides": _side_rows,
     "sources": _sources,
