@@ -16,7 +16,7 @@ from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile
 from benchmark.sets.formulas import FormulaError, evaluate_formula, names_in
 from benchmark.sets.problems import Collector
-from benchmark.sets.schema import TechnologyFile, WiresFile, validate
+from benchmark.sets.schema import TechnologyFile, WiresFile, validate_values
 from benchmark.sets.set_parts import Anchor, ModelDeclaration, read_anchors, read_rows, read_tables
 from benchmark.sets.tables import TableFile
 from benchmark.sets.values import Place, Value, amount, convert_measure, convert_range, convert_value
@@ -249,7 +249,7 @@ def build_technology(
         Receives every problem; when it received any from this file, None is returned.
     """
     before = len(collector.problems)
-    parsed = validate(TechnologyFile, file, collector)
+    parsed, spoiled = validate_values(TechnologyFile, file, collector)
     if parsed is None:
         return None
     _check_identity(parsed, file, collector)
@@ -285,9 +285,10 @@ def build_technology(
             file=file.name,
             line=file.line("reference_temperature"),
         )
-    stated = frozenset({*parsed.value, "reference_temperature"})
+    stated = frozenset({*parsed.value, *spoiled, "reference_temperature"})
     _resolve_defaults(declaration, options, values, stated, file, collector)
-    check_formulas({name: v for name, v in values.items() if not v.is_default}, file, parsed.value, collector)
+    tables_named = {**dict.fromkeys(spoiled), **parsed.value}
+    check_formulas({name: v for name, v in values.items() if not v.is_default}, file, tables_named, collector)
     tables = read_tables(parsed, declaration, file, sources, collector)
     rows, rows_rest_on = read_rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
     if "rows" in declaration.tables:
@@ -371,16 +372,16 @@ def _options(
 def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -> ParameterSet | None:
     """Validate and convert a wires file; all three wire values are required."""
     before = len(collector.problems)
-    parsed = validate(WiresFile, file, collector)
+    parsed, spoiled = validate_values(WiresFile, file, collector)
     if parsed is None:
         return None
     _check_identity(parsed, file, collector)
     names = _quantity_names("wires")
     values = _convert_values(parsed.value, names, parsed.nodes, file, parsed.default, sources, collector, "wires sets")
     for name in names:
-        if name not in parsed.value:
+        if name not in parsed.value and name not in spoiled:
             collector.add(file.problem(f"value.{name}", "is missing", "", QUANTITIES[name].example))
-    check_formulas(values, file, parsed.value, collector)
+    check_formulas(values, file, {**dict.fromkeys(spoiled), **parsed.value}, collector)
     if len(collector.problems) > before:
         return None
     return ParameterSet(

@@ -13,7 +13,16 @@ from benchmark.errors import Problem, nearest
 from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.problems import Collector
 
-__all__ = ["FileModel", "Measure", "Number", "SpreadTable", "ValueTable", "validate", "validate_part"]
+__all__ = [
+    "FileModel",
+    "Measure",
+    "Number",
+    "SpreadTable",
+    "ValueTable",
+    "validate",
+    "validate_part",
+    "validate_values",
+]
 
 
 def _number(value: Any) -> Any:
@@ -358,6 +367,42 @@ def validate(model: type[M], file: TomlFile, collector: Collector) -> M | None:
     except RecursionError:
         collector.add(file.problem("", "is nested too deeply"))
     return None
+
+
+def validate_values(model: type[M], file: TomlFile, collector: Collector) -> tuple[M | None, frozenset[str]]:
+    """Validate a whole file; faults inside single value tables and unknown names do not hide the rest of the file.
+
+    Returns
+    -------
+    tuple
+        The file without what is wrong in it (None when that is not enough to go on), and the names of the value
+        tables left out. Every problem has gone to the collector.
+    """
+    try:
+        return model.model_validate(file.data), frozenset()
+    except ValidationError as error:
+        validate_part(model, file, (), error, collector)
+        data, spoiled = _without_faults(file.data, error)
+    except RecursionError:
+        collector.add(file.problem("", "is nested too deeply"))
+        return None, frozenset()
+    try:
+        return model.model_validate(data), spoiled
+    except ValidationError:
+        return None, spoiled
+
+
+def _without_faults(data: dict[str, Any], error: ValidationError) -> tuple[dict[str, Any], frozenset[str]]:
+    """Leave out unknown names at the top and every value table that has a fault."""
+    kept, spoiled = dict(data), set()
+    for item in error.errors(include_url=False, include_input=False, include_context=False):
+        location = item["loc"]
+        if item["type"] == "extra_forbidden" and len(location) == 1:
+            kept.pop(str(location[0]), None)
+        elif location[0] == "value" and len(location) > 1 and isinstance(kept.get("value"), dict):
+            spoiled.add(str(location[1]))
+            kept["value"] = {key: table for key, table in kept["value"].items() if key not in spoiled}
+    return kept, frozenset(spoiled)
 
 
 def validate_part(

@@ -12,7 +12,7 @@ from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
-from benchmark.sets.schema import Measure, validate
+from benchmark.sets.schema import Measure, validate_values
 from benchmark.sets.study import NodePair, Side, Study
 from benchmark.sets.study_policy import check_declared_supplies, read_policy, read_requirements
 from benchmark.sets.study_schema import FrozenKnob, SideTable, StudyFile
@@ -51,12 +51,18 @@ class _Builder:
     """Walks a parsed study once, sending every problem to the collector."""
 
     def __init__(
-        self, parsed: StudyFile, file: TomlFile, library: Library, circuits: Mapping[str, CircuitDeclaration]
+        self,
+        parsed: StudyFile,
+        file: TomlFile,
+        library: Library,
+        circuits: Mapping[str, CircuitDeclaration],
+        spoiled: frozenset[str],
     ) -> None:
         self.parsed, self.file, self.library, self.circuits = parsed, file, library, circuits
         self.collector: Collector = library.collector
         self.sources = frozenset(library.sources)
         self.study_values: Mapping[str, Value] = {}
+        self.stated = spoiled | frozenset(parsed.value)  # also values that could not be read
 
     def refuse(self, dotted: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> None:
         self.collector.add(self.file.problem(dotted, what, found, allowed, hint))
@@ -132,13 +138,13 @@ class _Builder:
             value = convert_value(QUANTITIES[name], table, [""], self.place(dotted), self.collector)
             if value is not None:
                 found[name] = value
-        check_formulas(found, self.file, self.parsed.value, self.collector)
+        check_formulas(found, self.file, {**dict.fromkeys(self.stated), **self.parsed.value}, self.collector)
         self.study_values = found
         circuit = self.circuits.get(self.parsed.workload.circuit)
         for name in circuit.whole if circuit else ():
             if name in found and found[name].spread is not None:
                 self.refuse(f"value.{name}.spread", "is not possible: the number shapes the netlist of the circuit")
-        for name in sorted(must - set(self.parsed.value)):
+        for name in sorted(must - self.stated):
             self.refuse(f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", QUANTITIES[name].example)
         if circuit is not None:
             self.one_statement(circuit)
@@ -147,7 +153,7 @@ class _Builder:
     def one_statement(self, circuit: CircuitDeclaration) -> None:
         """Refuse values that state the same thing twice, or not at all where one is needed."""
         for group in (*circuit.one_of, *circuit.at_most_one_of):
-            stated = [name for name in group if name in self.parsed.value]
+            stated = [name for name in group if name in self.stated]
             if len(stated) > 1 or (group in circuit.one_of and not stated):
                 self.refuse("value", f"needs exactly one of {' and '.join(group)}", ", ".join(stated) or "none")
 
@@ -367,10 +373,10 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         Built-in circuit name -> what it declares.
     """
     before = len(library.collector.problems)
-    parsed = validate(StudyFile, file, library.collector)
+    parsed, spoiled = validate_values(StudyFile, file, library.collector)
     if parsed is None:
         return None
-    build = _Builder(parsed, file, library, circuits)
+    build = _Builder(parsed, file, library, circuits, spoiled)
     build.word("product.class", parsed.product.class_, list(PRODUCT_CLASSES))
     spec = build.circuit_spec()
     values = build.values(spec)
