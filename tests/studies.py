@@ -321,7 +321,7 @@ def _candidate() -> Table:
                 "unit": "fF",
                 "spread": {"shape": "normal", "percent": D("8")},
             },
-            "terminal_capacitance": v(D("0.02"), "fF"),
+            "terminal_capacitance": v(D("0.02"), "fF", evidence="target"),
             "closing_delay": v(D("0.05"), "ns"),
             "opening_delay": v(D("0.04"), "ns", spread={"shape": "normal", "sd": D("0.004")}),
             "declared_supply": v(D("0.4"), "V"),

@@ -45,13 +45,18 @@ class SideOutcome:
 
 @dataclass(frozen=True)
 class Outcome:
-    """All sides under one policy. ``strongest`` indexes ``contenders`` (-1: no contender has a permitted point)."""
+    """All sides under one policy. ``strongest`` indexes ``contenders`` (-1: no contender has a permitted point).
+
+    ``unknown``: why the best estimate cannot be compared, when a value that the metric or the required time needs is
+    not known.
+    """
 
     policy: str
     candidate: SideOutcome
     contenders: tuple[SideOutcome, ...]
     strongest: NDArray[np.intp]
     advantage: Array
+    unknown: tuple[str, ...] = ()
 
     @property
     def strongest_side(self) -> SideOutcome | None:
@@ -63,7 +68,7 @@ class Outcome:
         contender = self.contenders[position]
         if not (contender.found[0] and self.candidate.found[0]):
             return float("nan")
-        return float(contender.metric[0] / self.candidate.metric[0])
+        return float(_ratio(contender.metric[:1], self.candidate.metric[:1])[0])
 
 
 class Comparison:
@@ -144,19 +149,46 @@ class Comparison:
         inputs = dataclasses.replace(self.policy_inputs(), enforce_requirements=enforce)
         candidate = self.side_outcome(policy, self.candidate, inputs)
         contenders = tuple(self.side_outcome(policy, run, inputs) for run in self.contenders.values())
-        costs = np.stack([np.where(side.found, side.metric, np.inf) for side in contenders])
+        costs = np.stack([np.where(side.found & ~np.isnan(side.metric), side.metric, np.inf) for side in contenders])
         strongest = np.argmin(costs, axis=0)
         lowest = costs[strongest, np.arange(self.batch.rows)]
         defined = np.isfinite(lowest) & candidate.found
         advantage = np.full(self.batch.rows, np.nan)
-        advantage[defined] = lowest[defined] / candidate.metric[defined]
-        return Outcome(policy, candidate, contenders, np.where(np.isfinite(lowest), strongest, -1), advantage)
+        advantage[defined] = _ratio(lowest[defined], candidate.metric[defined])
+        return Outcome(
+            policy,
+            candidate,
+            contenders,
+            np.where(np.isfinite(lowest), strongest, -1),
+            advantage,
+            tuple(self._unknown(inputs, (candidate, *contenders))),
+        )
+
+    def _unknown(self, inputs: PolicyInputs, sides: tuple[SideOutcome, ...]) -> list[str]:
+        """Say what is missing for a comparison at the best estimate."""
+        metric = self.study.policy.metric.replace("-", " ")
+        found = [
+            f"{side.id}: its {metric} is not known (a value it needs is not stated)"
+            for side in sides
+            if side.found[0] and np.isnan(side.metric[0])
+        ]
+        if inputs.required_time is not None and np.isnan(inputs.required_time[0, 0]):
+            required = str(self.study.policy.required_time).removeprefix("contender:")
+            found.append(f"the required time is not known: {required} cannot be evaluated at its declared supply")
+        return found
 
     def frozen_choices(self, outcome: Outcome) -> dict[str, tuple[float, float]]:
         """Return the frozen choice (size, threshold shift) each side made at the best estimate."""
         found = {f"candidate {outcome.candidate.id}": _choice(outcome.candidate)}
         found |= {f"contender {side.id}": _choice(side) for side in outcome.contenders}
         return found
+
+
+def _ratio(reference: Array, candidate: Array) -> Array:
+    """Reference over candidate; nothing against nothing is a tie, something against nothing is infinite."""
+    with np.errstate(divide="ignore", invalid="ignore"):
+        ratio = reference / candidate
+    return np.asarray(np.where((reference == 0.0) & (candidate == 0.0), 1.0, ratio))
 
 
 def _choice(side: SideOutcome) -> tuple[float, float]:

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from benchmark.catalogue import QUANTITIES
 from benchmark.decide.compare import Comparison
-from benchmark.decide.verdict import InputMove
+from benchmark.decide.moves import InputMove, permitted_advantage, reaches
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
 from benchmark.sets.study import NodePair, Study
@@ -27,56 +27,62 @@ TOLERANCE = 1.0e-6
 def with_flips(
     study: Study, pair: NodePair, policy: str, frozen: Mapping[str, tuple[float, float]], moves: Sequence[InputMove]
 ) -> list[InputMove]:
-    """Fill in ``flip`` of every straddling input, all of them searched at once.
+    """Fill in the flips of every straddling input, all of them searched at once.
 
-    Each input is moved alone from its best estimate towards the end of its range that lies on the other side of
+    Each input is moved alone from its best estimate towards every end of its range that lies on the other side of
     the required advantage; both sides are re-optimised at every step. Bracketed root finding on the logarithm of the
     advantage (scipy.optimize.elementwise.find_root). Where the advantage jumps because a side becomes infeasible,
     the flip is the last value before the jump.
     """
     from scipy.optimize import elementwise
 
-    straddling = [move for move in moves if move.straddles]
-    if not straddling:
-        return list(moves)
     values = values_by_key(study, pair)
-    best = np.array([float(values[move.key].si[0]) for move in straddling])
-    ends = np.array([_far_end(move, values, study.required_advantage) for move in straddling])
+    wanted: list[tuple[str, str, float, float]] = []  # key, field, best, end
+    for move in moves:
+        if not move.straddles:
+            continue
+        value = values[move.key]
+        assert value.spread is not None  # noqa: S101 - only ranged inputs straddle
+        best = float(value.si[0])
+        for name, advantage, end in (
+            ("flip_low", move.advantage_low, value.spread.low),
+            ("flip_high", move.advantage_high, value.spread.high),
+        ):
+            if reaches(advantage, study.required_advantage) != move.best_reaches:
+                wanted.append((move.key, name, best, float(end[0])))
+    if not wanted:
+        return list(moves)
     target = float(np.log(study.required_advantage))
 
     def difference(x: NDArray[np.float64], index: NDArray[np.int64]) -> NDArray[np.float64]:
         x, index = np.broadcast_arrays(x, index)
         shape, flat, which = x.shape, x.ravel(), index.ravel().astype(int)
         batch = Batch.one_at_a_time(
-            (straddling[i].key, float(best[i]), float(moved)) for i, moved in zip(which, flat, strict=True)
+            (wanted[i][0], wanted[i][2], float(moved)) for i, moved in zip(which, flat, strict=True)
         )
-        advantage = Comparison(study, pair, batch, frozen=frozen).outcome(policy).advantage[1:]
-        with np.errstate(invalid="ignore"):
-            found = np.where(
-                np.isfinite(advantage), np.log(np.where(np.isfinite(advantage), advantage, 1.0)), INFEASIBLE
-            )
+        comparison = Comparison(study, pair, batch, frozen=frozen)
+        advantage = permitted_advantage(comparison, comparison.outcome(policy))[1:]
+        with np.errstate(divide="ignore"):
+            log = np.log(np.where(advantage > 0.0, advantage, 1.0))
+        found = np.where(advantage > 0.0, np.clip(log, INFEASIBLE, -INFEASIBLE), INFEASIBLE)
         return np.asarray(found - target).reshape(shape)
 
     result = elementwise.find_root(
         difference,
-        (best, ends),
-        args=(np.arange(len(straddling)),),
+        (np.array([item[2] for item in wanted]), np.array([item[3] for item in wanted])),
+        args=(np.arange(len(wanted)),),
         tolerances={"xrtol": TOLERANCE, "fatol": 1e-9},
         maxiter=60,
     )
-    flips = {
-        move.key: from_si(float(x), parse_unit(QUANTITIES[move.name].unit)) if ok else float("nan")
-        for move, x, ok in zip(straddling, result.x, result.success, strict=True)
-    }
-    return [dataclasses.replace(move, flip=flips.get(move.key, move.flip)) for move in moves]
-
-
-def _far_end(move: InputMove, values: Mapping[str, object], required: float) -> float:
-    """SI value of the end of the range on the other side of M than the best estimate."""
-    spread = values[move.key].spread  # type: ignore[attr-defined]
-    low_reaches = move.advantage_low >= required
-    high_reaches = move.advantage_high >= required
-    # one end differs from the best estimate, or both do: take the nearer one in advantage
-    if low_reaches == high_reaches:
-        return float(spread.low[0])
-    return float(spread.low[0] if low_reaches != move.best_reaches else spread.high[0])
+    flips: dict[str, dict[str, float]] = {}
+    for (key, name, _, _), x, ok in zip(wanted, result.x, result.success, strict=True):
+        unit = parse_unit(QUANTITIES[values[key].name].unit)
+        flips.setdefault(key, {})[name] = from_si(float(x), unit) if ok else float("nan")
+    return [
+        dataclasses.replace(
+            move,
+            flip_low=flips.get(move.key, {}).get("flip_low", move.flip_low),
+            flip_high=flips.get(move.key, {}).get("flip_high", move.flip_high),
+        )
+        for move in moves
+    ]

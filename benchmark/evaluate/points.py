@@ -7,11 +7,11 @@ Energy of one operation [J]::
 
     E = (E_dynamic + (P_leakage + P_bias + P_overhead) T + E_idle) / efficiency + E_level_shifter
 
-T is the clock period under period accounting and the path delay under operation accounting; where the path takes longer
-than the clock period (no deadline is required) an operation lasts as long as its path. Nothing that stands goes away
-while the block is idle: E_idle per operation is (P_leakage + P_bias + P_overhead) t_idle / n_active when the supply stays
-on, and ([r (P_leakage + P_bias) + P_overhead] t_idle + k_wake sum(C V^2)) / n_active when it is gated, with the residual
-share r. Overheads (pumps, converters, drivers) lie outside the gated supply.
+T is the clock period under period accounting and the path delay under operation accounting; where the path takes
+longer than the clock period (no deadline is required) an operation lasts as long as its path. Nothing that stands goes
+away while the block is idle: E_idle per operation is (P_leakage + P_bias + P_overhead) t_idle / n_active when the
+supply stays on, and ([r (P_leakage + P_bias) + P_overhead] t_idle + k_wake sum(C V^2)) / n_active when it is gated
+with the residual share r. Overheads (pumps, converters, drivers) lie outside the gated supply.
 """
 
 from __future__ import annotations

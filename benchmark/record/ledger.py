@@ -6,14 +6,14 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from benchmark.catalogue import QUANTITIES
-from benchmark.decide.verdict import InputMove
+from benchmark.decide.moves import InputMove
 from benchmark.evaluate.side import owner_of_overhead
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.sources import Source
 from benchmark.sets.study import Study
 from benchmark.sets.values import Value
 
-__all__ = ["ledger_rows", "option_rows", "technologies"]
+__all__ = ["ledger_rows", "option_rows", "set_rows", "technologies"]
 
 
 def technologies(study: Study) -> list[ParameterSet]:
@@ -69,6 +69,13 @@ def _row(
     }
 
 
+def set_rows(
+    item: ParameterSet, sources: Mapping[str, Source], moves: Mapping[str, InputMove] | None = None
+) -> list[dict[str, Any]]:
+    """Every value of one set in the order of their names; ``moves`` by key, where a run has moved its inputs."""
+    return [_row(item.id, value, item.nodes, moves or {}, sources) for _, value in sorted(item.values.items())]
+
+
 def ledger_rows(study: Study, moves: Sequence[InputMove], sources: Mapping[str, Source]) -> list[dict[str, Any]]:
     """Every value of the study, its circuit, its wires and its technologies, in a fixed order."""
     by_key = {move.key: move for move in moves}
@@ -81,7 +88,7 @@ def ledger_rows(study: Study, moves: Sequence[InputMove], sources: Mapping[str, 
         rows += [_row(f"{owner}.overhead", value, [], by_key, sources) for value in side.overhead.values()]
         rows += [_row(f"{owner}.gating", value, [], by_key, sources) for value in side.gating.values()]
     for item in (*study.wires_sets, *technologies(study)):
-        rows += [_row(item.id, value, item.nodes, by_key, sources) for _, value in sorted(item.values.items())]
+        rows += set_rows(item, sources, by_key)
     return rows
 
 

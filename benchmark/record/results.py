@@ -7,11 +7,12 @@ from typing import Any
 
 import numpy as np
 
+from benchmark.decide.assess import RequirementResult
 from benchmark.decide.compare import Outcome, SideOutcome
 from benchmark.decide.curves import Envelope, Swept
 from benchmark.decide.limiting import DELAY_GROUPS, ENERGY_GROUPS, groups_of, limiting
-from benchmark.decide.assess import RequirementResult
-from benchmark.decide.verdict import InputMove, Verdict
+from benchmark.decide.moves import InputMove
+from benchmark.decide.verdict import Verdict
 from benchmark.evaluate.points import Points
 
 __all__ = ["clean", "envelope_rows", "outcome_row", "point_row", "requirement_rows", "swept_rows", "verdict_row"]
@@ -132,6 +133,8 @@ def move_row(move: InputMove) -> dict[str, Any]:
         "matters": move.matters,
         "decisive": move.decisive,
         "flip": move.flip,
+        "flip_low": move.flip_low,
+        "flip_high": move.flip_high,
     }
 
 

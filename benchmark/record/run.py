@@ -16,10 +16,11 @@ from benchmark.decide.closed_form import closed_form_differences, delay_factor
 from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
 from benchmark.decide.flips import with_flips
+from benchmark.decide.moves import InputMove, move_inputs
 from benchmark.decide.policies import DIAGNOSTIC, own_limit
 from benchmark.decide.requirements import functional_margins
 from benchmark.decide.self_checks import self_checks
-from benchmark.decide.verdict import InputMove, Verdict, judge, move_inputs
+from benchmark.decide.verdict import Verdict, judge
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun

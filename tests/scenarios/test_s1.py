@@ -103,7 +103,8 @@ def test_a_missed_deadline_is_infeasible_not_worse(tmp_path: Path):
 def test_the_verdict_hangs_on_the_list_of_references(tmp_path: Path):
     both, textbook = run(hub(), tmp_path / "both"), run(hub(contenders=("fast",)), tmp_path / "textbook")
     assert both["verdict"]["word"] == "no-go, not better"
-    assert textbook["verdict"]["word"] == "conditional go"  # conditional, because every number is invented
+    assert textbook["verdict"]["word"] == "go"  # headed a demonstration, for every number is invented
+    assert textbook["study"]["demonstration"]
     assert textbook["verdict"]["advantage"] == pytest.approx(15.18, rel=EXACT)
     assert textbook["policies"][0]["strongest"] == "fast"
 
