@@ -36,24 +36,19 @@ def run_command(
     quiet: bool,
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
-    from benchmark.record.load import load_study
-    from benchmark.record.run import run_study
-    from benchmark.record.text import verdict_text
-    from benchmark.record.write import write_folder
-    from benchmark.report.folder import fill_folder
+    from benchmark import api
 
     check_folders(nodes)
-    study, library = load_study(study_path, nodes, overrides)
+    study = api.load_study(study_path, nodes, overrides)
     folder = out or Path(f"evenload-{study.id}")
-    record = run_study(study, library, created=freeze_time or None, progress=_Steps(quiet))
-    record["what_if"] = dict(overrides)
-    write_folder(folder, lambda place: fill_folder(place, record))
-    typer.echo(verdict_text(record))
+    result = api.run(study, created=freeze_time or None, progress=_Steps(quiet))
+    result.save(folder)
+    typer.echo(result.text)
     if not quiet:
         typer.echo("")
         typer.echo(f"Record:  {folder}")
         typer.echo(f"Report:  {folder / 'report.html'}")
-    return str(record["verdict"]["word"])
+    return result.verdict
 
 
 def check_folders(nodes: Sequence[Path]) -> None:
@@ -66,11 +61,11 @@ def check_folders(nodes: Sequence[Path]) -> None:
 
 def check_command(paths: Sequence[Path], nodes: Sequence[Path]) -> None:
     """Check every file; prints what is fine, then refuses with all problems."""
+    from benchmark import api
     from benchmark.errors import InputRefused
-    from benchmark.record.check import check_paths
 
     check_folders(nodes)
-    result = check_paths(paths, nodes)
+    result = api.check(paths, nodes)
     for warning in result.warnings:
         typer.echo(f"warning: {warning}", err=True)
     if result.problems:

@@ -1,0 +1,33 @@
+"""Python use, from scripts and notebooks (between report and cli): the numbers of the command line, to the last digit.
+
+>>> from benchmark import api
+>>> study = api.worked_study("always-on-hub")
+>>> study.title
+'Is an invented stress-gated switch worth it in an always-on hub?'
+
+``load_study`` checks a study and everything it refers to, ``run`` returns a ``Result`` with the verdict, the tables as
+pandas frames and the complete record, ``what_if`` changes numbers without a new file. ``load_set`` shows one parameter
+set, ``technologies`` lists them, ``check`` judges files. Objects show themselves as tables in a notebook.
+
+Importing this module loads no numeric package; the functions do.
+"""
+
+from __future__ import annotations
+
+from benchmark.api.result import Result
+from benchmark.api.session import check, load_result, load_set, load_study, run, technologies, what_if, worked_study
+from benchmark.api.views import SetView, StudyView
+
+__all__ = [
+    "Result",
+    "SetView",
+    "StudyView",
+    "check",
+    "load_result",
+    "load_set",
+    "load_study",
+    "run",
+    "technologies",
+    "what_if",
+    "worked_study",
+]
