@@ -1,0 +1,75 @@
+"""Help answers at once, because nothing heavy is imported for it."""
+
+from __future__ import annotations
+
+import json
+import subprocess
+import sys
+
+import pytest
+
+import benchmark
+from tests.cli.conftest import Run
+
+#: pydantic is not listed: the command-line library itself imports it (about 50 ms)
+HEAVY = ("numpy", "scipy", "pandas", "pint", "altair", "vl_convert", "jinja2", "rich", "tomllib")
+COMMANDS = ("run", "demo", "check", "show", "new", "trace")
+PROBE = """
+import json, sys
+sys.argv = ["evenload", *json.loads(sys.argv[1])]
+from benchmark.cli import main
+try:
+    main()
+except SystemExit as stopped:
+    print(json.dumps([stopped.code or 0, [name for name in json.loads('HEAVY') if name in sys.modules]]))
+"""
+
+
+def _probe(arguments: list[str]) -> tuple[str, int, list[str]]:
+    """Run in a fresh interpreter: what was printed, the exit status, heavy modules that were imported."""
+    code = PROBE.replace("HEAVY", json.dumps(HEAVY))
+    done = subprocess.run(
+        [sys.executable, "-c", code, json.dumps(arguments)], capture_output=True, text=True, check=True, timeout=60
+    )
+    *text, last = done.stdout.splitlines()
+    status, heavy = json.loads(last)
+    return "\n".join(text), status, heavy
+
+
+@pytest.mark.parametrize("arguments", [["--help"], ["--version"], *([command, "--help"] for command in COMMANDS)])
+def test_help_imports_nothing_heavy(arguments: list[str]):
+    text, status, heavy = _probe(arguments)
+    assert text
+    assert status == 0
+    assert heavy == []
+
+
+def test_without_a_command_the_help_goes_to_standard_error(evenload: Run):
+    ran = evenload()
+    assert (ran.status, ran.out) == (2, "")
+    assert "Commands:" in ran.err
+
+
+def test_the_probe_sees_heavy_modules():
+    _, status, heavy = _probe(["show", "classes"])
+    assert status == 0
+    assert "numpy" in heavy
+
+
+def test_help_names_every_command(evenload: Run):
+    ran = evenload("--help")
+    assert ran.status == 0
+    listed = {line.split()[0] for line in ran.out.splitlines() if line.startswith("  ") and line.strip()}
+    assert set(COMMANDS) <= listed
+
+
+def test_version(evenload: Run):
+    assert evenload("--version").out == f"{benchmark.__version__}\n"
+
+
+@pytest.mark.parametrize("arguments", [["rum"], ["run"], ["check", "--nods", "x"], ["trace", "x", "--supply", "low"]])
+def test_wrong_usage_is_status_2(arguments: list[str], evenload: Run):
+    ran = evenload(*arguments)
+    assert ran.status == 2
+    assert ran.out == ""
+    assert ran.err
