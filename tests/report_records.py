@@ -99,8 +99,8 @@ def crossing() -> Record:
         ranged = [row for row in record["verdict"]["moves"] if row["ranged"]]
         for row in ranged[:3]:
             row |= {"advantage_low": 1.0, "advantage_high": 4.0, "straddles": True, "decisive": True}
-            row["flip"] = 0.5 * (row["low"] + row["high"])
-        ranged[2] |= {"advantage_high": None, "flip": None}
+            row["flip"] = row["flip_low"] = 0.5 * (row["low"] + row["high"])
+        ranged[2] |= {"advantage_high": None, "flip": None, "flip_low": None, "flip_high": None}
         while len(record["verdict"]["moves"]) < 40:
             extra = dict(ranged[-1])
             extra["key"] = f"{extra['key']}_{len(record['verdict']['moves'])}"

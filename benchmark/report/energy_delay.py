@@ -181,6 +181,10 @@ def _caption(plane: Plane) -> str:
     if deadline is not None:
         here = plane.x.holds(deadline)
         words.append(f"{'Hatched: later than' if here else 'Outside the axes:'} the deadline {amount(deadline, 's')}.")
+    energy = plane.limits.energy
+    if energy is not None:
+        here = plane.y.holds(energy)
+        words.append(f"{'Hatched: above' if here else 'Outside the axes:'} the allowed energy {amount(energy, 'J')}.")
     if plane.outside:
         words.append(f"{plural(plane.outside, 'swept point')} outside the axes not shown.")
     if plane.dropped:

@@ -16,7 +16,7 @@ from benchmark.report import section_results as results
 from benchmark.report.blocks import Figure, Section, Table, plain
 from benchmark.report.figure import Chart
 from benchmark.report.svg import inline_svg
-from benchmark.report.words import plural
+from benchmark.report.words import plural, visible
 
 __all__ = ["digest_of", "embedded_record", "page", "sections"]
 
@@ -81,6 +81,11 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
     ]
 
 
+def _shown(value: Any) -> Any:
+    """Clean every text put into the page; what is marked as safe (drawings, script, record) passes as it is."""
+    return visible(value) if type(value) is str else value
+
+
 def _hash(script: str) -> str:
     return base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
 
@@ -103,6 +108,7 @@ def page(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str, str
         loader=jinja2.FunctionLoader(_text),
         autoescape=True,
         undefined=jinja2.StrictUndefined,
+        finalize=_shown,
         trim_blocks=True,
         lstrip_blocks=True,
         keep_trailing_newline=True,

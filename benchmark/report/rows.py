@@ -12,9 +12,11 @@ from benchmark.report.words import is_number, state_word
 
 __all__ = [
     "INFEASIBLE",
+    "NOT_PERMITTED",
     "advantage_rows",
     "curve_rows",
     "envelope_rows",
+    "flips_of",
     "part_rows",
     "policy_rows",
     "sides_of",
@@ -24,6 +26,8 @@ __all__ = [
 Record = Mapping[str, Any]
 Row = dict[str, Any]
 INFEASIBLE = "infeasible"
+#: where a moved input leaves a side without permitted point, or makes the candidate miss a requirement
+NOT_PERMITTED = "infeasible or a requirement missed"
 
 
 def word(value: Any, instead: str) -> Any:
@@ -87,6 +91,12 @@ def advantage_rows(record: Record) -> list[Row]:
         }
         for row in record["advantage_against_time"]
     ]
+
+
+def flips_of(move: Mapping[str, Any]) -> list[float]:
+    """Return the values at which an input moved alone changes the answer: none, one, or one on each side."""
+    named = [move.get("flip_low"), move.get("flip_high")]
+    return [value for value in (named if any(map(is_number, named)) else [move["flip"]]) if is_number(value)]
 
 
 def sides_of(policy: Mapping[str, Any]) -> list[tuple[str, Mapping[str, Any]]]:

@@ -65,10 +65,12 @@ def self_checks(record: Record) -> Section:
 
 
 def warnings(record: Record) -> Section:
-    """Return every warning of files and results."""
-    items = tuple(record["warnings"])
-    block: Block = Bullets(items) if items else Paragraph("None.")
-    return Section("warnings", "Warnings", (block,))
+    """Return every warning of files and results, and what was taken without being stated."""
+    items, notes = tuple(record["warnings"]), tuple(record.get("notes", ()))
+    blocks: list[Block] = [Bullets(items, "Warnings") if items else Paragraph("No warning.")]
+    if notes:
+        blocks.append(Bullets(notes, "Notes"))
+    return Section("warnings", "Warnings", tuple(blocks))
 
 
 def reproduce(record: Record, digest: str) -> Section:

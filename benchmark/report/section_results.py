@@ -7,6 +7,7 @@ from typing import Any
 
 from benchmark.report.advantage import crossing_words, levels
 from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Paragraph, Section, Table, plain
+from benchmark.report.rows import NOT_PERMITTED, flips_of
 from benchmark.report.words import amount, is_number, number, plural, policy_name, spaced, volts
 
 __all__ = ["curves", "energy_and_time", "moves", "nodes", "policies", "required_time"]
@@ -129,34 +130,26 @@ def policies(record: Record) -> Section:
     return Section("policies", "Other policies: robustness", tuple(blocks))
 
 
+def _moved(record: Record, row: Mapping[str, Any], end: str) -> str:
+    value = row[f"advantage_{end}"]
+    if value is None:
+        return NOT_PERMITTED
+    return number(value, 3, [level for level, _ in levels(record)])
+
+
 def _move_row(record: Record, row: Mapping[str, Any]) -> tuple[Any, ...]:
     owner, _, name = row["key"].rpartition(".")
-    limits = [level for level, _ in levels(record)]
     unit = row["unit"]
+    best = spaced(row["best"], unit) if is_number(row["best"]) else "as stated"
     if row["ranged"]:
-        ends = [spaced(row["low"], unit), spaced(row["high"], unit)]
-        moved = [
-            number(row[f"advantage_{end}"], 3, limits) if is_number(row[f"advantage_{end}"]) else INFEASIBLE
-            for end in ("low", "high")
-        ]
+        found = " and ".join(spaced(value, unit) for value in flips_of(row))
+        moved = [spaced(row["low"], unit), spaced(row["high"], unit)]
+        moved += [_moved(record, row, "low"), _moved(record, row, "high")]
+        moved.append(found or ("not found" if row["straddles"] else "does not flip"))
     else:
-        ends, moved = ["no range stated"] * 2, ["–"] * 2
-    flip = (
-        spaced(row["flip"], unit)
-        if is_number(row["flip"])
-        else "at an infeasible end"
-        if row["straddles"]
-        else "does not flip"
-    )
-    return (
-        Cell(name.replace("_", " "), small=owner),
-        row["evidence"],
-        spaced(row["best"], unit),
-        *ends,
-        *moved,
-        flip if row["ranged"] else "–",
-        "decisive" if row["decisive"] else "no",
-    )
+        moved = ["no range stated", "no range stated", "–", "–", "–"]
+    decisive = "decisive" if row["decisive"] else "no"
+    return (Cell(name.replace("_", " "), small=owner), row["evidence"], best, *moved, decisive)
 
 
 def moves(record: Record, figure: Figure) -> Section:
@@ -164,7 +157,7 @@ def moves(record: Record, figure: Figure) -> Section:
     verdict = record["verdict"]
     columns = (
         *("input", "evidence", "best estimate", "low", "high", "advantage at low", "advantage at high"),
-        *(f"advantage is {number(record['study']['required_advantage'], 3)} at", "decisive"),
+        *("answer flips at", "decisive"),
     )
     rows = [_move_row(record, row) for row in verdict["moves"]]
     caption = "Inputs that move the result, each alone, both sides re-optimised; largest swing first"

@@ -9,6 +9,7 @@ from benchmark.report.advantage import levels
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, fitted, text_width
+from benchmark.report.rows import NOT_PERMITTED, flips_of
 from benchmark.report.style import GREY, INK, LinearAxis, LogAxis, spec
 from benchmark.report.words import flat_powers, is_number, listed, number, plural, spaced
 
@@ -64,7 +65,7 @@ def _ends(axis: LogAxis, row: Row) -> dict[str, tuple[float, str, bool]]:
         value = row[f"advantage_{which}"]
         known = is_number(value) and value > 0.0
         place = axis.pixel(value) if known else axis.pixel(best)
-        found[which] = (place, _end(row, which) + ("" if known else ": infeasible"), not known)
+        found[which] = (place, _end(row, which) + ("" if known else ": not permitted"), not known)
     return found
 
 
@@ -91,11 +92,13 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
         words.append(Words(second[1], right + 5.0, middle))
     if text_width(flat_powers(first[1])) + 8.0 > left:
         words[0] = Words(first[1], left, middle - 12.0)
-    if row["straddles"] and is_number(row["flip"]) and axis.holds(required):
+    if row["straddles"] and flips_of(row):
         x = axis.pixel(required)
-        canvas.rules([(x, middle - 10.0, x, middle + 10.0)], color=INK, strokeWidth=3.0)
-        text = f"flips at {spaced(row['flip'], row['unit'], 2)}"
-        words.append(Words(text, x, middle + 15.0, "center", bold=True))
+        if places[0] <= x <= places[1]:
+            canvas.rules([(x, middle - 10.0, x, middle + 10.0)], color=INK, strokeWidth=3.0)
+        text = f"flips at {_flips(row)}"
+        half = 0.5 * text_width(text, bold=True)
+        words.append(Words(text, min(max(x, half), WIDTH - half), middle + 15.0, "center", bold=True))
     canvas.words(words, back=True)
 
 
@@ -150,10 +153,10 @@ def input_swings(record: Record) -> Chart:
     points = tuple(
         {name: row[name] for name in ("key", "unit", "evidence", "low", "best", "high", "straddles")}
         | {
-            "advantage_at_low": "infeasible" if row["advantage_low"] is None else row["advantage_low"],
+            "advantage_at_low": NOT_PERMITTED if row["advantage_low"] is None else row["advantage_low"],
             "advantage_at_best": best,
-            "advantage_at_high": "infeasible" if row["advantage_high"] is None else row["advantage_high"],
-            "flips_at": "does not flip" if row["flip"] is None else row["flip"],
+            "advantage_at_high": NOT_PERMITTED if row["advantage_high"] is None else row["advantage_high"],
+            "flips_at": _flips(row) or "does not flip",
         }
         for row in rows
     )
@@ -162,28 +165,29 @@ def input_swings(record: Record) -> Chart:
 
 
 def _summary(record: Record, rows: Sequence[Row], moves: Sequence[Row]) -> str:
-    flips = [
-        f"{_name(row['key'])[0]} at {spaced(row['flip'], row['unit'], 2)}"
-        for row in moves
-        if row["straddles"] and is_number(row["flip"])
-    ]
-    ends = [row for row in moves if row["straddles"] and not is_number(row["flip"])]
+    flips = [f"{_name(row['key'])[0]} at {_flips(row)}" for row in moves if row["straddles"] and flips_of(row)]
+    ends = [row for row in moves if row["straddles"] and not flips_of(row)]
     first = rows[0]
     parts = [f"Largest swing: {_name(first['key'])[0]} ({_range(first)})."]
     required = number(record["study"]["required_advantage"], 3)
     if flips:
-        parts.append(f"Alone, these carry the advantage across {required}: {listed(flips)}.")
+        parts.append(f"Alone, these change the answer against {required}: {'; '.join(flips)}.")
     if ends:
-        parts.append(f"At one end of {listed(_name(row['key'])[0] for row in ends)} a side is infeasible.")
+        names = listed(_name(row["key"])[0] for row in ends)
+        parts.append(f"At one end of {names} a side is infeasible or a requirement missed.")
     if not flips and not ends:
         parts.append(f"No input alone carries the advantage across {required}.")
     return " ".join(parts)
 
 
+def _flips(row: Row) -> str:
+    return " and ".join(spaced(value, row["unit"], 2) for value in flips_of(row))
+
+
 def _range(row: Row) -> str:
     known = [row[name] for name in ("advantage_low", "advantage_high") if is_number(row[name])]
     if len(known) < 2:
-        return "infeasible at one end"
+        return "infeasible or a requirement missed at one end"
     return f"advantage {number(min(known))} to {number(max(known))}"
 
 
@@ -191,7 +195,8 @@ def _caption(record: Record, words: str, moves: Sequence[Row]) -> str:
     unranged = sum(not row["ranged"] for row in record["verdict"]["moves"])
     parts = [
         "Each input moved alone over its stated range, both sides re-optimised; the symbol stands at the best estimate "
-        "and its shape tells the evidence class named at the left.",
+        "and its shape tells the evidence class named at the left. Not permitted: a side is infeasible there or a "
+        "requirement missed.",
         words,
     ]
     if len(moves) > MOST:

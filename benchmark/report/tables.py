@@ -11,9 +11,11 @@ from typing import TYPE_CHECKING, Any
 
 from benchmark.report.rows import (
     INFEASIBLE,
+    NOT_PERMITTED,
     advantage_rows,
     curve_rows,
     envelope_rows,
+    flips_of,
     part_rows,
     policy_rows,
     sides_of,
@@ -85,6 +87,16 @@ def _nodes(record: Record) -> list[Row]:
     return rows
 
 
+def _flips(row: Mapping[str, Any]) -> Row:
+    """Where moving down and moving up change the answer."""
+    found = flips_of(row)
+    instead = "not found" if row["straddles"] and not found else "does not flip"
+    best = row["best"]
+    below = [value for value in found if value <= best]
+    above = [value for value in found if value > best]
+    return {"flips_below": below[0] if below else instead, "flips_above": above[0] if above else instead}
+
+
 def _moves(record: Record) -> list[Row]:
     rows = []
     for row in record["verdict"]["moves"]:
@@ -94,12 +106,12 @@ def _moves(record: Record) -> list[Row]:
                 "input": row["key"],
                 "unit": row["unit"],
                 "evidence": row["evidence"],
-                "best": row["best"],
+                "best": word(row["best"], NOT_STATED),
                 "low": word(row["low"], "no range stated"),
                 "high": word(row["high"], "no range stated"),
-                "advantage_at_low": word(row["advantage_low"], INFEASIBLE) if ranged else "no range stated",
-                "advantage_at_high": word(row["advantage_high"], INFEASIBLE) if ranged else "no range stated",
-                "flips_at": word(row["flip"], "does not flip" if not row["straddles"] else "at an infeasible end"),
+                "advantage_at_low": word(row["advantage_low"], NOT_PERMITTED) if ranged else "no range stated",
+                "advantage_at_high": word(row["advantage_high"], NOT_PERMITTED) if ranged else "no range stated",
+                **_flips(row),
                 "decisive": row["decisive"],
             }
         )
@@ -198,7 +210,7 @@ def _plain(key: str) -> Callable[[Record], list[Row]]:
 
 def _named(key: str, column: str) -> Callable[[Record], list[Row]]:
     def rows(record: Record) -> list[Row]:
-        return [{column: text} for text in record[key]]
+        return [{column: text} for text in record.get(key, ())]
 
     return rows
 
@@ -254,6 +266,7 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "not_modelled": _plain("not_modelled"),
     "self_checks": _plain("self_checks"),
     "warnings": _named("warnings", "warning"),
+    "notes": _named("notes", "note"),
     "files": _files,
 }
 

@@ -52,8 +52,12 @@ _SHOWN = {"K": ("°C", 1.0, -273.15), "m^2": ("µm²", 1e12, 0.0), "W/m^2": ("W/
 
 
 def visible(text: str) -> str:
-    """Replace characters that cannot stand in a drawing (control characters, halves of pairs, non-characters)."""
-    return re.sub("[\x00-\x08\x0b-\x1f\x7f-\x9f\ud800-\udfff\ufdd0-\ufdef\ufffe\uffff]", "\ufffd", text)
+    """Replace characters that cannot be shown or that would turn what stands beside them.
+
+    Control characters, halves of pairs, non-characters, and marks that reverse the direction of writing (with them a
+    text of an input could make a number of the report read backwards).
+    """
+    return _UNSHOWN.sub("\ufffd", text)
 
 
 def flat_powers(text: str) -> str:
@@ -63,6 +67,11 @@ def flat_powers(text: str) -> str:
         return f"{match[1] or '1'}e{match[2].translate(_FLAT)}"
 
     return re.sub("(?:([0-9.]+)×)?10([⁻⁰¹²³⁴⁵⁶⁷⁸⁹]+)", flat, text)
+
+
+_UNSHOWN = re.compile(
+    "[\x00-\x08\x0b-\x1f\x7f-\x9f\u061c\u200e\u200f\u202a-\u202e\u2066-\u2069\ud800-\udfff\ufdd0-\ufdef\ufffe\uffff]"
+)
 
 
 def is_number(value: object) -> TypeGuard[float]:

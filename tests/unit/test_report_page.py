@@ -21,7 +21,7 @@ from benchmark.report.charts import charts
 from benchmark.report.figure import to_svg
 from benchmark.report.folder import fill_folder
 from benchmark.report.page import digest_of, page
-from benchmark.report.words import amount
+from benchmark.report.words import amount, visible
 from tests.report_records import HOSTILE, changed, crossing, hostile, hub, infeasible, mixed
 
 SECTIONS = [
@@ -169,11 +169,22 @@ def test_the_first_screen_answers():
     text = Outline(page_of(mixed)).text
     assert answer_sentence(record) in text
     assert "Demonstration: some inputs are invented" in text
-    for name in ("Decisive inputs:", "First thing to measure:", "Record: sha256", "Why", "Conditions:"):
+    for name in ("Decisive inputs:", "First thing to measure:", "Record: sha256", "Why"):
         assert name in text
     assert f"made {record['created']}" in text
     real = changed(record, lambda r: r["study"].update(demonstration=False))
     assert "some inputs are invented" not in Outline(render(real)).text
+
+
+def test_conditions_stand_on_the_first_screen_and_all_of_them_further_down():
+    conditions = [f"study.value_{i} at least {i} V (invented)" for i in range(11)]
+    record = changed(mixed(), lambda r: r["verdict"].update(word="conditional go", conditions=conditions))
+    source = render(record)
+    first = source[source.index('<section id="answer"') : source.index('<section id="question"')]
+    rest = source[source.index('<section id="moves"') : source.index('<section id="nodes"')]
+    assert "Conditions: each of these must hold" in first
+    assert "and 3 more, listed in the section What moves the answer" in first
+    assert all(text in rest for text in conditions)
 
 
 def test_all_slots_of_the_question_are_filled():
@@ -302,8 +313,9 @@ def test_hostile_text_stays_text():
     names = {name for _, attributes in outline.elements for name in attributes}
     assert not {name for name in names if name.startswith("on")}
     assert {name for name, _ in outline.elements} == {name for name, _ in Outline(page_of(mixed)).elements}
-    shown = " ".join(HOSTILE.split())
+    shown = " ".join(visible(HOSTILE).split())
     assert shown in outline.text  # whole and visible
+    assert "\u202e" not in outline.text  # nothing makes a number read backwards
     data = next(text for attributes, text in outline.scripts if attributes.get("id") == "record")
     assert json.loads(data) == json.loads(to_json(record))
 

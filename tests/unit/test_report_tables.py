@@ -28,8 +28,22 @@ PURE = {
         "year",
         "level",
     ),
-    *("low", "high", "best", "value", "flips_at", "advantage_at_low", "advantage_at_high", "demanded", "offered"),
+    *(
+        "low",
+        "high",
+        "best",
+        "value",
+        "flips_below",
+        "flips_above",
+        "advantage_at_low",
+        "advantage_at_high",
+        "demanded",
+        "offered",
+    ),
 }
+
+#: columns whose unit stands in a column of its own
+BESIDE = {"low", "high", "best", "value", "flips_below", "flips_above", "demanded", "offered", "value_SI"}
 
 
 @pytest.mark.parametrize("record", [mixed, hub, infeasible])
@@ -40,7 +54,17 @@ def test_every_number_has_its_unit_in_the_column_name_or_in_a_column_beside_it(r
                 if is_number(value):
                     known = column.endswith(UNITS) or column in PURE
                     assert known, f"{name}.{column} says no unit"
-                    if column in ("low", "high", "best", "value", "flips_at", "demanded", "offered", "value_SI"):
+                    if column in (
+                        "low",
+                        "high",
+                        "best",
+                        "value",
+                        "flips_below",
+                        "flips_above",
+                        "demanded",
+                        "offered",
+                        "value_SI",
+                    ):
                         assert "unit" in row, f"{name}.{column} has no unit beside it"
 
 

@@ -106,4 +106,5 @@ def test_truth_values_and_infinities_are_no_numbers():
 
 def test_characters_that_cannot_be_drawn_are_replaced():
     assert words.visible("a\x00\x1b\ud800b\ufffe") == "a\ufffd\ufffd\ufffdb\ufffd"
+    assert words.visible("2.4 \u202e4.2\u202c") == "2.4 \ufffd4.2\ufffd"
     assert words.visible("Ω µ 中 🙂\n") == "Ω µ 中 🙂\n"
