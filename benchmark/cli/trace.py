@@ -116,6 +116,8 @@ def _optimum(study: Study, run: SideRun, outcome: SideOutcome) -> str:
         place = "at the lower end of the supply range"
     elif outcome.optimum.at_upper[0]:
         place = "at the upper end of the supply range"
+    elif outcome.optimum.at_limit[0]:
+        place = "where a requirement or limit stops the search"
     else:
         place = "inside the supply range"
     return f"optimum under {study.policy.primary}, {place}"

@@ -9,7 +9,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from benchmark.decide.compare import Comparison
-from benchmark.decide.requirements import FUNCTIONAL, HardLimits, margins_at
+from benchmark.decide.requirements import FUNCTIONAL, HardLimits, Meets, margins_at
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import Points, with_cycle
 from benchmark.evaluate.search import SideRun
@@ -77,9 +77,13 @@ class Envelope:
     advantage: Array
 
 
-def _without_deadline(curve: Swept) -> Mask:
-    """Feasible points when the deadline itself is left out (the required time takes its place)."""
-    return np.array([all(reason == "requirement deadline" for reason in item) for item in curve.reasons])
+#: requirements whose margin depends on the required time: judged anew at every time
+_WITH_TIME = frozenset({"requirement deadline", "requirement power_density"})
+
+
+def _whatever_time(curve: Swept) -> Mask:
+    """Points that are feasible, or could be at another required time (which takes the place of the deadline)."""
+    return np.array([_WITH_TIME.issuperset(item) for item in curve.reasons])
 
 
 def advantage_against_time(study: Study, runs: Mapping[str, list[tuple[SideRun, Swept]]]) -> Envelope:
@@ -92,7 +96,7 @@ def advantage_against_time(study: Study, runs: Mapping[str, list[tuple[SideRun, 
     spans = []
     for curves in runs.values():
         for _, curve in curves:
-            mask = _without_deadline(curve)
+            mask = _whatever_time(curve)
             if mask.any():
                 spans.append((curve.points.time[0][mask].min(), curve.points.time[0][mask].max()))
     if not spans:
@@ -116,15 +120,19 @@ def advantage_against_time(study: Study, runs: Mapping[str, list[tuple[SideRun, 
 
 def _least_energy(study: Study, curves: list[tuple[SideRun, Swept]], times: Array) -> Array:
     least = np.full(times.shape, np.inf)
+    cap = study.requirements.get("power_density")
+    cap = cap if cap is not None and cap.kind == "hard" else None
     for run, curve in curves:
-        mask = _without_deadline(curve)
+        mask = _whatever_time(curve)
         delay = curve.points.time[0]
         for position, time in enumerate(times):  # a few hundred times, each vectorised over the supplies
             period = np.asarray([[time]]) if study.timing == "clocked" else None
-            energy = with_cycle(run.problem, curve.points, period).energy[0]
+            points = with_cycle(run.problem, curve.points, period)
             allowed = mask & (delay <= time)
+            if cap is not None:
+                allowed &= Meets(cap)(run, points, allowed[None, :])[0]
             if allowed.any():
-                least[position] = min(least[position], float(energy[allowed].min()))
+                least[position] = min(least[position], float(points.energy[0][allowed].min()))
     return least
 
 

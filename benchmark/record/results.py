@@ -76,6 +76,8 @@ def side_row(side: SideOutcome) -> dict[str, Any]:
             if side.optimum.at_lower[0]
             else "upper end of the supply range"
             if side.optimum.at_upper[0]
+            else "where a requirement or limit stops the search"
+            if side.optimum.at_limit[0]
             else "inside the supply range"
         )
     return row

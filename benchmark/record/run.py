@@ -17,6 +17,7 @@ from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
 from benchmark.decide.flips import with_flips
 from benchmark.decide.moves import InputMove, move_inputs
+from benchmark.decide.notices import result_warnings
 from benchmark.decide.policies import DIAGNOSTIC, own_limit
 from benchmark.decide.requirements import functional_margins
 from benchmark.decide.self_checks import self_checks
@@ -180,7 +181,7 @@ def run_study(
         "cautions": list(CAUTIONS),
         "notes": [str(note) for note in sorted(set(library.collector.notes))],
         "warnings": [str(warning) for warning in sorted(set(library.collector.warnings))]
-        + _result_warnings(primary, verdict),
+        + result_warnings(primary.comparison, primary.outcome, verdict),
         "files": _files(study, library),
     }
     progress("done", 1.0)
@@ -312,20 +313,3 @@ def _used_sources(study: Study) -> set[str]:
     if study.circuit_spec is not None:
         values += [value for table in study.circuit_spec.layers.values() for value in table.values()]
     return used | {value.source for value in values if value.source}
-
-
-def _result_warnings(primary: _Primary, verdict: Verdict) -> list[str]:
-    """Things to say loudly that are not problems of the files."""
-    found = []
-    outcome = primary.outcome
-    for side in (outcome.candidate, *outcome.contenders):
-        if side.found[0] and (side.optimum.at_lower[0] or side.optimum.at_upper[0]):
-            end = "lower" if side.optimum.at_lower[0] else "upper"
-            found.append(f"{side.id}: the optimum lies on the {end} end of its supply range")
-    if np.isfinite(verdict.advantage) and not 1e-3 <= verdict.advantage <= 1e3:
-        found.append(f"the advantage is {verdict.advantage:.3g}: check units first")
-    decisive = [move for move in verdict.moves if move.decisive]
-    weak = [move for move in decisive if move.evidence in ("target", "projected", "assumed")]
-    if decisive and len(weak) * 3 > len(decisive):
-        found.append(f"{len(weak)} of {len(decisive)} decisive inputs are targets, projections or assumptions")
-    return found
