@@ -160,6 +160,7 @@ def test_the_page_carries_its_record_to_the_last_digit():
     outline = Outline(page_of(mixed))
     text = next(text for attributes, text in outline.scripts if attributes.get("id") == "record")
     assert json.loads(text) == json.loads(to_json(record))
+    assert not set("<>&") & set(text)  # nothing in it can end the element or open a comment
     assert hashlib.sha256(to_json(json.loads(text)).encode()).hexdigest() == digest_of(record)
     assert digest_of(record) in outline.text
 
@@ -317,6 +318,7 @@ def test_hostile_text_stays_text():
     assert shown in outline.text  # whole and visible
     assert "\u202e" not in outline.text  # nothing makes a number read backwards
     data = next(text for attributes, text in outline.scripts if attributes.get("id") == "record")
+    assert not set("<>&") & set(data)
     assert json.loads(data) == json.loads(to_json(record))
 
 

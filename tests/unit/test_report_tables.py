@@ -54,17 +54,7 @@ def test_every_number_has_its_unit_in_the_column_name_or_in_a_column_beside_it(r
                 if is_number(value):
                     known = column.endswith(UNITS) or column in PURE
                     assert known, f"{name}.{column} says no unit"
-                    if column in (
-                        "low",
-                        "high",
-                        "best",
-                        "value",
-                        "flips_below",
-                        "flips_above",
-                        "demanded",
-                        "offered",
-                        "value_SI",
-                    ):
+                    if column in BESIDE:
                         assert "unit" in row, f"{name}.{column} has no unit beside it"
 
 
