@@ -8,6 +8,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from benchmark.circuits.library import BUILT_IN
 from benchmark.record.check import check_paths
 from benchmark.sets.library import shipped_nodes
 from tests.studies import mixed
@@ -269,12 +270,12 @@ class Case:
 
 
 def _expanded(line: str) -> str:
-    """Put in what depends on the sets that ship."""
+    """Put in what depends on the sets and circuits that ship."""
     for folder in ("technologies", "wires"):
         shipped = {path.stem for path in (shipped_nodes() / folder).glob("*.toml")}
         own = {"technologies": {"new-switch", "old-switch"}, "wires": {"wires"}}[folder]
         line = line.replace(f"<{folder}>", ", ".join(sorted(shipped | own)))
-    return line
+    return line.replace("<circuits>", ", ".join(BUILT_IN))
 
 
 def cases() -> Iterator[tuple[str, Case]]:

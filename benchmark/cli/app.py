@@ -1,7 +1,7 @@
 """The ``evenload`` command: one function per command, exit status in one place (layer 10).
 
-Exit status: 0 done, 1 internal fault, 2 wrong usage, 3 input refused; with ``--gate``: 0 go, 10 conditional,
-11 requirement failed, 12 not better, 13 not decidable.
+Exit status: 0 done, 1 internal fault, 2 wrong usage, 3 input refused, 130 interrupted; with ``--gate``: 0 go,
+10 conditional, 11 requirement failed, 12 not better, 13 not decidable.
 """
 
 from __future__ import annotations
@@ -36,6 +36,8 @@ GATE = {
     "not decidable on this evidence": 13,
 }
 MOST_PROBLEMS = 40
+#: status of a run that was interrupted from the keyboard
+STOPPED = 130
 
 Nodes = Annotated[
     list[Path] | None, typer.Option("--nodes", help="Further folder of sets, searched first (repeatable).")
@@ -67,9 +69,10 @@ def main() -> None:
     except BrokenPipeError:
         sys.stderr.close()
         sys.exit(1)
-    except KeyboardInterrupt:
-        print("evenload: stopped; nothing half-written", file=sys.stderr)  # noqa: T201
-        sys.exit(1)
+    except SystemExit as stopped:
+        if stopped.code == STOPPED:  # the command-line library has turned the interrupt into this status
+            print("evenload: stopped; nothing half-written", file=sys.stderr)  # noqa: T201
+        raise
 
 
 def _refuse(error: InputRefused) -> None:
