@@ -44,7 +44,20 @@ STUDY_QUANTITIES: tuple[Quantity, ...] = (
         1.0e3,
         "nonnegative",
     ),
+    Quantity(
+        "rent_exponent",
+        "p",
+        "Rent's exponent of the block: terminals of a part grow with the number of its gates to this power",
+        "1",
+        0.4,
+        0.8,
+        "share",
+    ),
     Quantity("word_length", "N_bit", "bits of a word", "1", 1.0, 128.0, "count"),
+    Quantity("bit_pitch", "L_bit", "width of one bit of a word, fixed by the floor plan", "um", 0.02, 100.0),
+    Quantity(
+        "bit_gate_pitches", "L_bp", "width of one bit of a word in gate pitches of each technology", "1", 0.5, 50.0
+    ),
     Quantity("stage_count", "N_ring", "stages of a ring", "1", 3.0, 101.0, "count"),
     Quantity("residual_leakage", "r", "share of the leakage left when power-gated", "1", 1.0e-4, 1.0, "fraction"),
     Quantity(

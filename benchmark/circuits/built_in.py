@@ -6,7 +6,9 @@ of values that exclude each other.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+import math
+from collections import Counter
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any, Final
 
@@ -14,20 +16,23 @@ import numpy as np
 
 from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Circuit, Load, Net, Value
-from benchmark.circuits.netlist import Netlist, all_loads
+from benchmark.circuits.netlist import Gate, Netlist, all_loads
 from benchmark.errors import UsageError
 
 __all__ = [
     "LENGTH_NAMES",
     "BuiltIn",
+    "Planned",
     "Scenario",
     "burden",
     "first",
     "netlist_nets",
-    "operand_nets",
+    "plan_nets",
+    "plan_operands",
     "single",
     "wire",
     "wire_remark",
+    "wired",
 ]
 
 Scenario = Mapping[str, Value]
@@ -146,60 +151,103 @@ def burden(netlist: Netlist, reach: Mapping[str, float] | None = None) -> dict[s
     return found
 
 
-def netlist_nets(
+@dataclass(frozen=True)
+class Planned:
+    """A net without its wire, and the bit pitches it spans beyond the average net; free of any scenario."""
+
+    net: Net
+    reach: float = 0.0
+
+
+def wired(plan: Sequence[Planned], scenario: Scenario) -> tuple[Net, ...]:
+    """Return the nets of a plan with the lengths of a scenario."""
+    return tuple(replace(planned.net, **wire(scenario, planned.reach)) for planned in plan)
+
+
+def plan_nets(
     netlist: Netlist,
     activity: Mapping[str, float],
     path: tuple[str, ...],
     reader: Cell,
-    scenario: Scenario,
     reach: Mapping[str, float] | None = None,
-) -> tuple[Net, ...]:
+    *,
+    average: bool = False,
+) -> tuple[Planned, ...]:
     """Return the nets of a netlist, alike ones merged; outputs drive one input of ``reader`` each.
 
-    ``reach``: bit pitches that a net spans beyond the average net, by net; 0 where it is not named.
+    Parameters
+    ----------
+    netlist, activity, path
+        Nets, rising transitions of each per operation, and the driven nets of the critical path.
+    reader
+        Cell behind every output.
+    reach
+        Bit pitches that a net spans, by net; 0 where it is not named.
+    average
+        Nets that differ in activity alone become one of the mean activity (the energy stays the same), whose busiest
+        is the busiest of them. Without it every activity keeps its own net.
     """
     driven_by, outputs = all_loads(netlist), set(netlist.outputs)
-    on_path = {name: float(path.count(name)) for name in path}
-    merged: dict[tuple[Any, ...], Net] = {}
+    on_path = Counter(path)
+    alike: dict[tuple[Any, ...], list[Gate]] = {}
     for gate in netlist.gates:
-        name = gate.output
-        driven = driven_by.get(name, ()) + ((Load(reader, "a"),) if name in outputs else ())
-        spans = (reach or {}).get(name, 0.0)
-        key = (gate.cell, driven, round(activity[name], 12), spans)
-        times = on_path.get(name, 0.0)
-        if key in merged:
-            known = merged[key]
-            merged[key] = replace(known, count=known.count + 1.0, on_critical_path=known.on_critical_path + times)
-        else:
-            merged[key] = Net(
-                name,
-                gate.which,
-                loads=driven,
-                rising_per_operation=activity[name],
-                count=1.0,
-                on_critical_path=times,
-                **wire(scenario, spans),
-            )
-    return tuple(merged.values())
+        driven = driven_by.get(gate.output, ()) + ((Load(reader, "a"),) if gate.output in outputs else ())
+        if average:
+            driven = _counted(driven)
+        apart = () if average else (round(activity[gate.output], 12),)
+        key = (gate.cell, driven, (reach or {}).get(gate.output, 0.0), apart)
+        alike.setdefault(key, []).append(gate)
+    plan = []
+    for key, gates in alike.items():
+        rising = [activity[gate.output] for gate in gates]
+        net = Net(
+            gates[0].output,
+            gates[0].which,
+            loads=key[1],
+            rising_per_operation=math.fsum(rising) / len(rising) if average else rising[0],
+            busiest_per_operation=max(rising) if average else None,
+            count=float(len(gates)),
+            on_critical_path=float(sum(on_path[gate.output] for gate in gates)),
+        )
+        plan.append(Planned(net, key[2]))
+    return tuple(plan)
 
 
-def operand_nets(
-    netlist: Netlist, activity: Mapping[str, float], scenario: Scenario, reach: Mapping[str, float] | None = None
+def netlist_nets(
+    netlist: Netlist, activity: Mapping[str, float], path: tuple[str, ...], reader: Cell, scenario: Scenario
 ) -> tuple[Net, ...]:
+    """Return the nets of a netlist with the average net of a scenario; see ``plan_nets``."""
+    return wired(plan_nets(netlist, activity, path, reader), scenario)
+
+
+def _counted(driven: tuple[Load, ...]) -> tuple[Load, ...]:
+    """Return alike loads as one with a count, in a fixed order."""
+    counts = Counter(driven)
+    return tuple(
+        replace(load, count=float(number))
+        for load, number in sorted(counts.items(), key=lambda item: (item[0].cell.name, item[0].input))
+    )
+
+
+def plan_operands(
+    netlist: Netlist, activity: Mapping[str, float], reach: Mapping[str, float] | None = None
+) -> tuple[Planned, ...]:
     """Return the nets of the primary inputs, each driven by an inverter, alike ones merged; none is on the path."""
     driven_by, inverter = all_loads(netlist), cell("inverter")
-    merged: dict[tuple[Any, ...], Net] = {}
+    alike: dict[tuple[Any, ...], list[str]] = {}
     for name in netlist.inputs:
-        driven, spans = driven_by.get(name, ()), (reach or {}).get(name, 0.0)
-        key = (driven, round(activity[name], 12), spans)
-        if key in merged:
-            merged[key] = replace(merged[key], count=merged[key].count + 1.0)
-        else:
-            merged[key] = Net(
-                f"operand {name}",
+        driven = _counted(driven_by.get(name, ()))
+        alike.setdefault((driven, (reach or {}).get(name, 0.0), round(activity[name], 12)), []).append(name)
+    return tuple(
+        Planned(
+            Net(
+                f"operand {names[0]}",
                 inverter,
-                loads=driven,
-                rising_per_operation=activity[name],
-                **wire(scenario, spans),
-            )
-    return tuple(merged.values())
+                loads=key[0],
+                rising_per_operation=activity[names[0]],
+                count=float(len(names)),
+            ),
+            key[1],
+        )
+        for key, names in alike.items()
+    )

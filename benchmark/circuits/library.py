@@ -18,7 +18,10 @@ from benchmark.circuits.adder import ripple_adder, ripple_adder_activity
 from benchmark.circuits.built_in import LENGTH_NAMES, BuiltIn, Scenario, netlist_nets, single, wire, wire_remark
 from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Circuit, Load, Net, Value
+from benchmark.circuits.multiplier import ARRAY_MULTIPLIER
+from benchmark.circuits.net_length import average_net_pitches, length_convention
 from benchmark.circuits.netlist import loads, longest_path
+from benchmark.circuits.prefix_adder import ADDITION, PREFIX_ADDERS
 from benchmark.circuits.register import FLIP_FLOP, register_facts
 from benchmark.errors import UsageError, nearest
 
@@ -166,6 +169,10 @@ def _register(which: BuiltIn, scenario: Scenario) -> Circuit:
 
 
 def _random_logic(which: BuiltIn, scenario: Scenario) -> Circuit:
+    convention: tuple[str, ...] = ()
+    if "rent_exponent" in scenario:
+        convention = (length_convention(scenario),)
+        scenario = {**scenario, "average_net_pitches": average_net_pitches(scenario)}
     gate = cell("nand2")
     logic = Net(
         "logic",
@@ -182,6 +189,7 @@ def _random_logic(which: BuiltIn, scenario: Scenario) -> Circuit:
     assumptions: tuple[str, ...] = (
         "Every logic gate is a NAND2 and drives fan_out NAND2 inputs over one average net; register data inputs are "
         "among them.",
+        *convention,
     )
     if np.any(np.asarray(registers) > 0.0):
         nets += _register_nets(scenario, gate, registers)
@@ -252,7 +260,7 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
                 _random_logic,
                 ("logic_depth", "fan_out", "activity", "gate_count", "register_count"),
                 ("busiest_activity",),
-                one_of=(LENGTH_NAMES,),
+                one_of=((*LENGTH_NAMES, "rent_exponent"),),
                 at_most_one_of=(),
             ),
             BuiltIn(
@@ -262,7 +270,10 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
                 _ripple_adder,
                 ("word_length",),
                 whole=("word_length",),
+                function=ADDITION,
             ),
+            *PREFIX_ADDERS,
+            ARRAY_MULTIPLIER,
         )
     }
 )

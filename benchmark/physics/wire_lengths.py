@@ -2,7 +2,7 @@
 
 The convention moves the answer by a factor of two: for 10^6 gates, p = 0.6, k = 4, fan-out 3 the exact pair sum gives
 a mean of 6.18 gate pitches, the continuous form 9.76, the hierarchical placement of Donath 13.2. Print which one.
-Scalars in, scalars out: these belong to a scenario, not to a draw.
+Scalars in, scalars out but for ``net_length``: these belong to a scenario, not to a draw.
 """
 
 from __future__ import annotations
@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 
 import numpy as np
+from numpy.typing import ArrayLike, NDArray
 
 from benchmark.errors import UsageError
 
@@ -21,6 +22,8 @@ __all__ = [
     "net_length",
     "rent_terminals",
 ]
+
+Array = NDArray[np.float64]
 
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(80)
 
@@ -73,18 +76,23 @@ def davis_discrete(gates: int, exponent: float, coefficient: float, fan_out: flo
     """Return (number of point-to-point wires, mean length [gate pitches]) summed over the exact pair counts.
 
     Expected wires per pair at distance l: (alpha k/N_C) [(1+N_B)^p + (N_B+N_C)^p - (1+N_B+N_C)^p - N_B^p], N_B =
-    l(l-1), N_C = 2l; pairs on a square array counted exactly. Edges are neglected in N_B and N_C: the number of wires
-    misses alpha k N (1 - N^(p-1)) by 0.6 % at 10^6 gates, 6 % at 10^3. ``gates`` must be a square number.
+    l(l-1), N_C = 2l; pairs on a square array of side s counted exactly: 2 l s (s - l) + l (l^2 - 1)/3 up to l = s,
+    m (m^2 - 1)/3 with m = 2 s - l beyond (derived). Edges are neglected in N_B and N_C: the number of wires misses
+    alpha k N (1 - N^(p-1)) by 0.6 % at 10^6 gates, 6 % at 10^3. ``gates`` must be a square number above 1. The mean
+    depends on neither k nor fan-out.
     """
     _check_exponent(exponent)
     side = math.isqrt(gates)
-    if side * side != gates:
-        message = f"the discrete distribution needs a square number of gates, not {gates}"
+    if side * side != gates or side < 2:
+        message = f"the discrete distribution needs a square number of gates, 4 or more, not {gates}"
         raise UsageError(message)
-    one_axis = 2.0 * (side - np.arange(side, dtype=np.float64))
-    one_axis[0] = side
-    pairs = 0.5 * np.convolve(one_axis, one_axis)[1:]
     distance = np.arange(1, 2 * side - 1, dtype=np.float64)
+    beyond = 2.0 * side - distance
+    pairs = np.where(
+        distance <= side,
+        2.0 * distance * side * (side - distance) + distance * (distance**2 - 1.0) / 3.0,
+        beyond * (beyond**2 - 1.0) / 3.0,
+    )
     near, at = distance * (distance - 1.0), 2.0 * distance
     p = exponent
     per_pair = ((1.0 + near) ** p + (near + at) ** p - (1.0 + near + at) ** p - near**p) / at
@@ -110,9 +118,10 @@ def donath_mean_length(gates: float, exponent: float) -> float:
     return float(2.0 / 9.0 * (first - second) * (1.0 - 4.0 ** (p - 1.0)) / (1.0 - n ** (p - 1.0)))
 
 
-def net_length(mean_length: float, fan_out: float) -> float:
+def net_length(mean_length: ArrayLike, fan_out: ArrayLike) -> Array:
     """Return the length of a net [same unit as ``mean_length``]: fo L chi with chi = 4/(fo + 3).
 
     From point-to-point to multi-terminal nets; Davis, De, Meindl 1998 (from memory).
     """
-    return fan_out * mean_length * 4.0 / (fan_out + 3.0)
+    fo = np.asarray(fan_out, dtype=np.float64)
+    return np.asarray(fo * mean_length * 4.0 / (fo + 3.0))

@@ -201,28 +201,47 @@ SCENARIO = {
     "word_length": 4.0,
     "average_net_length": 1e-6,
 }
+#: one way of stating each thing, and the other ways
+CHOICES = {"average_net_length": 1e-6, "bit_pitch": 2e-6}
+OTHER_CHOICES = {"average_net_pitches": 7.0, "bit_gate_pitches": 4.0, "rent_exponent": 0.6}
+
+
+def _bill(name, scenario):
+    found = estimate(build(name, scenario), ohmic_pair(terminal_capacitance=1e-16, area=1e-14), Wires(1e7, 1e-10))
+    return [float(found.path_delay), float(found.dynamic_energy), float(found.leakage_power)]
 
 
 @pytest.mark.parametrize("name", list(BUILT_IN))
 def test_every_circuit_needs_exactly_what_it_says_and_uses_it(name):
     which = BUILT_IN[name]
-    needed = {value: SCENARIO[value] for value in which.required} | {"average_net_length": 1e-6}
-    base = estimate(build(name, needed), ohmic_pair(terminal_capacitance=1e-16), Wires(1e7, 1e-10))
-
-    def bill(found):
-        return [float(found.path_delay), float(found.dynamic_energy), float(found.leakage_power)]
-
-    for value in (*which.required, "average_net_length"):
+    chosen = {value: CHOICES[value] for value in which.choices if value in CHOICES}
+    needed = {value: SCENARIO[value] for value in which.required} | chosen
+    base = _bill(name, needed)
+    for value in (*which.required, *chosen):
         step = 2.0 if value == "stage_count" else 1.0 if value == "word_length" else 0.5 * needed[value]
-        moved = estimate(
-            build(name, {**needed, value: needed[value] + step}),
-            ohmic_pair(terminal_capacitance=1e-16),
-            Wires(1e7, 1e-10),
-        )
-        assert bill(moved) != bill(base), value
+        assert _bill(name, {**needed, value: needed[value] + step}) != base, value
     for value in which.required:
         with pytest.raises(UsageError, match=value):
             build(name, {other: number for other, number in needed.items() if other != value})
+    assert _bill(name, {**needed, "duty": 0.5, "clock_frequency": 1e9}) == base  # what is not read changes nothing
+
+
+@pytest.mark.parametrize("name", list(BUILT_IN))
+def test_every_other_way_of_stating_a_length_is_used_and_excludes_the_first(name):
+    which = BUILT_IN[name]
+    needed = {value: SCENARIO[value] for value in which.required}
+    first = {value: CHOICES[value] for value in which.choices if value in CHOICES}
+    other = {value: OTHER_CHOICES[value] for value in which.choices if value in OTHER_CHOICES}
+    kept = dict(list(other.items())[:1]) if "rent_exponent" in other else other
+    assert _bill(name, needed | kept) != _bill(name, needed | first)
+    for value, number in other.items():
+        for rival in first:
+            if any({value, rival} <= set(group) for group in (*which.one_of, *which.at_most_one_of)):
+                with pytest.raises(UsageError, match="needs one of"):
+                    build(name, {**needed, **first, value: number})
+    for group in which.one_of:
+        with pytest.raises(UsageError, match="needs one of"):
+            build(name, needed | {value: number for value, number in first.items() if value not in group})
 
 
 @pytest.mark.parametrize(
