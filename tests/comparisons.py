@@ -58,6 +58,7 @@ def steep(name: str, *, supply: Any = 0.5, options: Table | None = None, **value
         "transit_time": (0.0, "ps"),
         "unit_width": (200.0, "nm"),
         "footprint": (0.03, "um^2"),
+        "series_switches_max": (D(2), "1"),
     }
     return _technology(name, "steep-swing", {"conduction": "tunnelling", **(options or {})}, numbers, values, supply)
 
@@ -102,6 +103,7 @@ def planar(name: str, *, supply: Any = 0.9, options: Table | None = None, **valu
         "velocity_temperature_exponent": (-0.2, "1"),
         "unit_width": (500.0, "nm"),
         "footprint": (0.5, "um^2"),
+        "series_switches_max": (D(2), "1"),
     }
     return _technology(name, "virtual-source", {"partner": "mirrored", **(options or {})}, numbers, values, supply)
 

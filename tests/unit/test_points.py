@@ -182,7 +182,7 @@ def test_a_clock_net_in_the_circuit_is_busier_than_the_stated_activity():
         study(
             side("a", 0.3, 0.9),
             [side("b", 0.3, 0.9)],
-            [steep("a", endurance_cycles=1e15), steep("b")],
+            [steep("a", endurance_cycles=1e15, series_switches_max=3), steep("b", series_switches_max=3)],
             circuit="register",
             timing="clocked",
             accounting="period",
