@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import copy
-import dataclasses
 from decimal import Decimal as D
 from typing import Any
 
@@ -396,17 +395,23 @@ def test_no_leakage_against_some_is_infinite_and_against_none_a_tie():
 
 
 def test_a_required_time_that_is_not_known_is_not_decidable():
-    """The contender whose declared time is required does not work at its declared supply."""
-    inputs = pair(policy={"primary": "iso-delay", "required_time": "contender:old"})
-    assert verdict(inputs).word == GO
-    old = inputs.sets["technologies/old"]
-    old["valid"] = {"supply": {"low": D("0.6"), "high": D("0.9"), "unit": "V"}}
-    inputs.study["contender"][0]["knobs"]["supply"] = {"low": D("0.6"), "high": D("0.7"), "unit": "V"}
-    loaded = load(inputs)
-    broken = dataclasses.replace(loaded.contenders[0].technology, valid={"supply": (0.6, 0.9)})
-    loaded = dataclasses.replace(loaded, contenders=(dataclasses.replace(loaded.contenders[0], technology=broken),))
-    found = verdict(loaded)
-    assert found.word in (UNDECIDED, GO)
+    """At 85 degC the contender that sets the time would swing below the thermionic limit: it has no time to give."""
+    rival = steep(
+        "old",
+        supply=0.5,
+        options={"conduction": "thermionic"},
+        subthreshold_swing=60.0,
+        swing_temperature_coefficient=v(D("0.0"), "mV/decade/K"),
+    )
+    policy = {"primary": "iso-delay", "required_time": "contender:old"}
+    sides = side("new", 0.3, 0.6), [side("old", 0.3, 0.6)]
+    quick = given("new", on_resistance=2.0)
+    cold = published(study(*sides, [quick, rival], policy=policy))
+    assert verdict(cold).word == GO
+    hot = published(study(*sides, [quick, rival], policy=policy, temperatures=(25.0, 85.0)))
+    found = verdict(hot)
+    assert found.word == UNDECIDED
+    assert found.reasons == ("the required time is not known: old cannot be evaluated at its declared supply",)
 
 
 def test_stage_results_without_range_count_as_decisive():
