@@ -102,7 +102,7 @@ class Comparison:
         return np.asarray(array[self._position[self._key(run.problem.side, run.problem.role)]])
 
     def required_time(self) -> Array | None:
-        """Return T* (1 or row, 1), or None when the study has none."""
+        """Return T* (1 or row, 1), nan where it is not known, or None when the study has none."""
         required = self.study.policy.required_time
         if required == "":
             return None
@@ -111,7 +111,9 @@ class Comparison:
         if required == "cycle":
             return None if (cycle := cycle_time(self.candidate.problem)) is None else self.widen(self.candidate, cycle)
         run = self.contenders[required.removeprefix("contender:")]
-        return self.widen(run, run.declared().time)
+        points = run.declared()
+        # where the declared point does not work its time means nothing
+        return self.widen(run, np.where(points.able, points.time, np.nan))
 
     def policy_inputs(self) -> PolicyInputs:
         """Collect what the study's policies need."""
