@@ -54,6 +54,7 @@ STUDY_QUANTITIES: tuple[Quantity, ...] = (
         "share",
     ),
     Quantity("word_length", "N_bit", "bits of a word", "1", 1.0, 128.0, "count"),
+    Quantity("group_bits", "m", "bits of a word that one group of complex gates adds at once", "1", 1.0, 5.0, "count"),
     Quantity("bit_pitch", "L_bit", "width of one bit of a word, fixed by the floor plan", "um", 0.02, 100.0),
     Quantity(
         "bit_gate_pitches", "L_bp", "width of one bit of a word in gate pitches of each technology", "1", 0.5, 50.0

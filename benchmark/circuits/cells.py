@@ -218,6 +218,9 @@ def _open(network: Network, closed: frozenset[str], sizing: Sizing, others: int 
 class Cell:
     """A complementary cell; see the module docstring.
 
+    ``complements``: pairs of inputs that carry a signal and its complement; states in which both are alike do not
+    occur, so they neither count in the mean leakage nor need exactly one conducting network.
+
     Raises
     ------
     UsageError
@@ -228,10 +231,15 @@ class Cell:
     inputs: tuple[str, ...]
     down: Network
     up: Network
+    complements: tuple[tuple[str, str], ...] = ()
 
     def __post_init__(self) -> None:
         if set(self.inputs) != _inputs(self.down) or set(self.inputs) != _inputs(self.up):
             message = f"cell {self.name!r}: inputs {self.inputs} are not the inputs of its networks"
+            raise UsageError(message)
+        paired = [name for pair in self.complements for name in pair]
+        if len(set(paired)) != len(paired) or not set(paired) <= set(self.inputs):
+            message = f"cell {self.name!r}: complements {self.complements} are not pairs of different inputs"
             raise UsageError(message)
         for high in self.states():
             low = frozenset(self.inputs) - high
@@ -243,9 +251,12 @@ class Cell:
                 raise UsageError(message)
 
     def states(self) -> Iterator[frozenset[str]]:
-        """Yield all 2^n input states, each as the set of inputs that are high."""
-        for flags in itertools.product((False, True), repeat=len(self.inputs)):
-            yield frozenset(name for name, flag in zip(self.inputs, flags, strict=True) if flag)
+        """Yield all input states, each as the set of inputs that are high: 2^n of n independent inputs."""
+        follows = {second: first for first, second in self.complements}
+        free = [name for name in self.inputs if name not in follows]
+        for flags in itertools.product((False, True), repeat=len(free)):
+            high = {name for name, flag in zip(free, flags, strict=True) if flag}
+            yield frozenset(high | {second for second, first in follows.items() if first not in high})
 
     def network(self, edge: Edge) -> Network:
         """Return the network that drives the edge: ``down`` for the falling output, ``up`` for the rising one."""
@@ -286,7 +297,7 @@ class Cell:
         return tuple(_internal(network, sizing, 0, 0, depth(network)))
 
     def open_networks(self, sizing: Sizing) -> tuple[tuple[Edge, SwitchedOff], ...]:
-        """Return for each of the 2^n input states which network is open, and its open switches."""
+        """Return for each input state which network is open, and its open switches."""
         return _cell_open(self, sizing)
 
 

@@ -18,6 +18,7 @@ from benchmark.circuits.adder import ripple_adder, ripple_adder_activity
 from benchmark.circuits.built_in import LENGTH_NAMES, BuiltIn, Scenario, netlist_nets, single, wire, wire_remark
 from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Circuit, Load, Net, Value
+from benchmark.circuits.complex_adder import COMPLEX_GATE_ADDER
 from benchmark.circuits.multiplier import ARRAY_MULTIPLIER
 from benchmark.circuits.net_length import average_net_pitches, length_convention
 from benchmark.circuits.netlist import loads, longest_path
@@ -273,6 +274,7 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
                 function=ADDITION,
             ),
             *PREFIX_ADDERS,
+            COMPLEX_GATE_ADDER,
             ARRAY_MULTIPLIER,
         )
     }

@@ -199,6 +199,7 @@ SCENARIO = {
     "register_count": 10.0,
     "stage_count": 5.0,
     "word_length": 4.0,
+    "group_bits": 2.0,
     "average_net_length": 1e-6,
 }
 #: one way of stating each thing, and the other ways
@@ -218,7 +219,7 @@ def test_every_circuit_needs_exactly_what_it_says_and_uses_it(name):
     needed = {value: SCENARIO[value] for value in which.required} | chosen
     base = _bill(name, needed)
     for value in (*which.required, *chosen):
-        step = 2.0 if value == "stage_count" else 1.0 if value == "word_length" else 0.5 * needed[value]
+        step = 2.0 if value == "stage_count" else 1.0 if value in ("word_length", "group_bits") else 0.5 * needed[value]
         assert _bill(name, {**needed, value: needed[value] + step}) != base, value
     for value in which.required:
         with pytest.raises(UsageError, match=value):
