@@ -16,8 +16,8 @@ needs both rails of everything, so operands and carry in come in both polarities
     sum_i is low when  M_i (a_i xor b_i) + not M_i not (a_i xor b_i)       (stack of i + 3 switches)
 
 The largest stack is m + 2. (Complementary mirror gates: common practice, no source. Relay adders share the switches of
-one pass network between all sums instead: fewer switches, the same mechanical delay; F. Chen and others, ICCAD 2008, from
-memory.)
+one pass network between all sums instead: fewer switches, the same mechanical delay; F. Chen and others, ICCAD 2008,
+from memory.)
 """
 
 from __future__ import annotations
