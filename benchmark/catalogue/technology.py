@@ -226,9 +226,6 @@ _STRESS_GATED = (
     Quantity("channel_strength", "p_max", "highest pressure the channel bears", "GPa", 0.05, 50.0),
     Quantity("curie_temperature", "T_C", "Curie temperature of the actuator", "degC", 50.0, 1200.0, "any"),
     Quantity(
-        "stack_transit_time", "t_ac", "acoustic transit of the whole stack, stated", "ps", 0.1, 1.0e5, "nonnegative"
-    ),
-    Quantity(
         "pressure_per_coefficient_voltage",
         "b",
         "pressure per coefficient and voltage, p = b d V",

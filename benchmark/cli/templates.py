@@ -31,7 +31,9 @@ NODE = "n1"
 
 def comment(text: str, indent: str = "") -> str:
     """Return text as TOML comment lines."""
-    return "\n".join(textwrap.wrap(text, WIDTH, initial_indent="# " + indent, subsequent_indent="# " + indent))
+    start = "# " + indent
+    lines = textwrap.wrap(text, WIDTH, initial_indent=start, subsequent_indent=start, break_on_hyphens=False)
+    return "\n".join(lines)
 
 
 def schema_hint(name: str, place: Path) -> str:
@@ -146,7 +148,10 @@ def technology_template(name: str, stem: str) -> dict[str, str]:
     ]
     if options:
         lines = ["# Choices; each word is one of those listed", "[option]"]
-        lines += [f'{item.name} = "{item.default}"    # {" | ".join(item.allowed)}' for item in device.options]
+        for item in device.options:
+            words = " | ".join(item.allowed)
+            line = f'{item.name} = "{item.default}"'
+            lines += [f"{line}    # {words}"] if len(line) + len(words) < WIDTH else [comment(words), line]
         parts.append("\n".join(lines))
     files: dict[str, str] = {}
     tables = [table for table, required in device.tables.items() if required and table != "rows"]

@@ -19,6 +19,7 @@ from __future__ import annotations
 import dataclasses
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -244,16 +245,22 @@ def _hysteresis(problem: SideProblem, pair: SwitchPair, shape: tuple[int, int]) 
 def _capabilities(problem: SideProblem, pair: SwitchPair, rows: int) -> dict[str, tuple[Array, str]]:
     found: dict[str, tuple[Array, str]] = {}
     for name, capability in pair.down.capabilities.items():
-        value = np.asarray(capability.value, dtype=np.float64).reshape(-1)[:rows]
         stated = problem.side.technology.values.get(capability.source)
         bound = stated.bound if stated is not None else capability.bound
-        found[name] = (np.broadcast_to(value.reshape(-1, 1), (rows, 1)), bound)
+        found[name] = (_least(capability.value, rows), bound)
     retention = np.asarray(pair.down.retention, dtype=np.float64)
     if np.isfinite(retention).all() or np.isinf(retention).all():
         stated = problem.side.technology.values.get("retention_time")
         bound = stated.bound if stated is not None else ""
-        found["retention"] = (np.broadcast_to(retention.reshape(-1, 1)[:rows], (rows, 1)), bound)
+        found["retention"] = (_least(retention, rows), bound)
     return found
+
+
+def _least(value: Any, rows: int) -> Array:
+    """Return the smallest value over temperatures and supplies, (row, 1)."""
+    array = np.atleast_1d(np.asarray(value, dtype=np.float64))
+    cube = array.reshape((1,) * (3 - array.ndim) + array.shape) if array.ndim < 3 else array
+    return np.broadcast_to(cube.min(axis=(1, 2))[:, None], (rows, 1))
 
 
 def cycles_demanded(problem: SideProblem, points: Points, life: float) -> Array:
