@@ -37,6 +37,11 @@ ELSEWHERE = {
     "is a wires set": "test_study.py",
     "is not possible: the number shapes the netlist of the circuit": "test_study.py",
     "there is no such circuit": "test_study.py",
+    "is used with workload.topology = own-best only": "test_study.py",
+    "is own-best, and no side names a circuit other than the common one": "test_study.py",
+    "does not say its function, so no other circuit can stand for it": "test_study.py",
+    "has another function than the common circuit": "test_study.py",
+    "states wire layers of its own; only the common circuit may": "test_study.py",
 }
 
 

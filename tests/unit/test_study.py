@@ -264,6 +264,56 @@ def test_a_circuit_file_is_found_beside_the_study(tmp_path: Path):
     assert _refused(inputs, tmp_path) == ["net.0.loads: has a negative count; found -2"]
 
 
+def _adders(own: str, topology: str = "own-best", **texts: str) -> Inputs:
+    """A ripple-carry adder for all, and a circuit of the candidate's own."""
+    inputs = _bare("ripple-adder", {"word_length": v(4)})
+    inputs.study["workload"]["topology"] = topology
+    inputs.study["candidate"]["circuit"] = own
+    inputs.texts |= {f"{name.replace('_', '-')}.toml": text for name, text in texts.items()}
+    return inputs
+
+
+def _stands_for_the_adder(text: str) -> str:
+    function = BUILT_IN["ripple-adder"].function
+    return text.replace('operation = "one row access"', f'operation = "one addition"\nfunction = "{function}"')
+
+
+def test_a_side_may_have_a_circuit_of_its_own_that_does_the_same(tmp_path: Path):
+    bare = CIRCUIT.partition("[layer.upper]")[0].replace(', layer = "upper"', "")
+    study = _load(_adders("word-line", word_line=_stands_for_the_adder(bare)), tmp_path)
+    assert study.candidate.id == "relay"
+
+
+@pytest.mark.parametrize(
+    ("inputs", "message"),
+    [
+        (
+            _adders("ripple-adder", topology="same-netlist"),
+            "candidate.circuit: is used with workload.topology = own-best only",
+        ),
+        (
+            _adders("ripple-adder"),
+            "workload.topology: is own-best, and no side names a circuit other than the common one",
+        ),
+        (
+            _adders("word-line", word_line=CIRCUIT.partition("[layer.upper]")[0].replace(', layer = "upper"', "")),
+            "candidate.circuit: does not say its function, so no other circuit can stand for it",
+        ),
+        (
+            _adders("array-multiplier"),
+            "candidate.circuit: has another function than the common circuit; found product of two unsigned words of "
+            f"word_length bits; allowed: {BUILT_IN['ripple-adder'].function}",
+        ),
+        (
+            _adders("word-line", word_line=_stands_for_the_adder(CIRCUIT)),
+            "candidate.circuit: states wire layers of its own; only the common circuit may; found 'word-line'",
+        ),
+    ],
+)
+def test_circuits_that_cannot_stand_against_each_other(inputs: Inputs, message: str, tmp_path: Path):
+    assert _refused(inputs, tmp_path) == [message]
+
+
 def test_every_model_declares_what_the_catalogue_knows():
     for name in MODEL_NAMES:
         declared = model(name)
