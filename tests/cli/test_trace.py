@@ -257,7 +257,7 @@ def _spoil(record: Path, **changes: Any) -> None:
     [
         ({"text": "schema = 1\n"}, "the record's copy of study.toml does not have the digest the record states"),
         ({"name": "../study.toml"}, "the record names an input file outside its folder: '../study.toml'"),
-        ({"name": "/elsewhere/study.toml"}, "the record names an input file outside its folder: '/elsewhere/study.toml'"),
+        ({"name": "/other/study.toml"}, "the record names an input file outside its folder: '/other/study.toml'"),
         ({"name": "C:study.toml"}, "the record names an input file outside its folder: 'C:study.toml'"),
         ({"name": ""}, "the record names an input file outside its folder: ''"),
         ({"kind": "wires"}, "the record holds no study file"),
