@@ -285,21 +285,6 @@ def _anchors(description: str) -> Schema:
     }
 
 
-def any_technology_schema() -> Schema:
-    """The schema that sends a technology set to the one of its model."""
-    return {
-        "$schema": DIALECT,
-        "title": "Technology set",
-        "description": "A parameter set of one technology; the rules are those of its device model.",
-        "type": "object",
-        "required": ["model"],
-        "properties": {"model": {"description": "Device model that reads the values", "enum": list(MODEL_NAMES)}},
-        "allOf": [
-            {"if": _when(["model"], [name]), "then": {"$ref": f"technology-{name}.json"}} for name in MODEL_NAMES
-        ],
-    }
-
-
 def wires_schema() -> Schema:
     """The schema of wires sets."""
     schema = _raw(WiresFile)
@@ -429,7 +414,6 @@ def circuit_schema() -> Schema:
 def schemas() -> dict[str, Schema]:
     """File name -> schema, for every kind of file."""
     made: dict[str, Callable[[], Schema]] = {
-        "technology.json": any_technology_schema,
         "wires.json": wires_schema,
         "sources.json": sources_schema,
         "table.json": table_schema,
