@@ -150,7 +150,8 @@ def described(quantity: Quantity) -> str:
 
 def _kind(quantity: Quantity, by_node: bool) -> str:
     """Name of the definition that a value follows."""
-    domain = "any" if parse_unit(quantity.unit).offset else quantity.domain
+    temperature = parse_unit(quantity.unit).dimension == parse_unit("K").dimension  # may be stated below zero, in degC
+    domain = "any" if temperature else quantity.domain
     what = "Number" if quantity.unit == "1" else "Amount"
     return f"{domain.capitalize()}{what}{'' if by_node else 'Alone'}"
 
