@@ -143,8 +143,9 @@ def move_inputs(
 ) -> tuple[Outcome, list[InputMove]]:
     """Move every input alone over its range, both sides re-optimised in each row (frozen choices kept)."""
     values = values_by_key(study, pair)
-    circuit = BUILT_IN.get(study.circuit)
-    moves = _moves_of(values, circuit.whole if circuit else ())
+    names = {study.circuit, *(study.circuit_of(side)[0] for side in study.sides)}
+    shaping = {name for circuit in names if circuit in BUILT_IN for name in BUILT_IN[circuit].whole}
+    moves = _moves_of(values, tuple(shaping))
     comparison = Comparison(study, pair, Batch.one_at_a_time(moves), frozen=frozen)
     outcome = comparison.outcome(policy)
     advantage = permitted_advantage(comparison, outcome)

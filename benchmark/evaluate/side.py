@@ -133,7 +133,7 @@ def build_side(study: Study, side: Side, role: str, pair: NodePair, batch: Batch
         batch,
         device,
         prepared,
-        build_circuit(study, scenario, batch),
+        build_circuit(study, scenario, batch, side),
         wires,
         scenario,
         resolve(f"{owner}.overhead", side.overhead, batch),
@@ -142,11 +142,12 @@ def build_side(study: Study, side: Side, role: str, pair: NodePair, batch: Batch
     )
 
 
-def build_circuit(study: Study, scenario: Mapping[str, Array], batch: Batch) -> Circuit:
-    """Build the study's circuit: a built-in one from scenario values, or the user's own nets."""
-    if study.circuit_spec is not None:
-        return _from_spec(study.circuit_spec, batch)
-    return dataclasses.replace(build_built_in(study.circuit, scenario), operation=study.operation)
+def build_circuit(study: Study, scenario: Mapping[str, Array], batch: Batch, side: Side | None = None) -> Circuit:
+    """Build a side's circuit, or the one all sides share: a built-in one from scenario values, or a user's nets."""
+    name, spec = (study.circuit, study.circuit_spec) if side is None else study.circuit_of(side)
+    if spec is not None:
+        return _from_spec(spec, batch)
+    return dataclasses.replace(build_built_in(name, scenario), operation=study.operation)
 
 
 def _from_spec(spec: CircuitSpec, batch: Batch) -> Circuit:

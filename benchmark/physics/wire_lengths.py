@@ -123,5 +123,5 @@ def net_length(mean_length: ArrayLike, fan_out: ArrayLike) -> Array:
 
     From point-to-point to multi-terminal nets; Davis, De, Meindl 1998 (from memory).
     """
-    fo = np.asarray(fan_out, dtype=np.float64)
-    return np.asarray(fo * mean_length * 4.0 / (fo + 3.0))
+    fo, mean = np.asarray(fan_out, dtype=np.float64), np.asarray(mean_length, dtype=np.float64)
+    return np.asarray(fo * mean * 4.0 / (fo + 3.0))

@@ -20,7 +20,7 @@ from benchmark.sets.files import TomlFile, read_toml
 from benchmark.sets.library import Library, shipped_nodes
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.problems import Collector
-from benchmark.sets.study import Study
+from benchmark.sets.study import Side, Study
 from benchmark.sets.study_builder import build_study
 
 __all__ = ["check_physics", "check_study", "load_study", "load_technology", "open_library", "open_set"]
@@ -102,8 +102,6 @@ def check_study(study: Study, file: TomlFile, collector: Collector) -> None:
     """Judge what a study alone cannot know: the physics of its sets, and whether its circuit can be made."""
     for technology in {side.technology.id: side.technology for side in (study.candidate, *study.contenders)}.values():
         check_physics(technology, collector)
-    if study.circuit_spec is not None:
-        return
     ends = [
         (name, float(end[0]))
         for name, value in study.values.items()
@@ -111,14 +109,28 @@ def check_study(study: Study, file: TomlFile, collector: Collector) -> None:
         for end in (value.spread.low, value.spread.high)
     ]
     scenario = {name: value.si.reshape(1, 1, 1) for name, value in study.values.items()}
-    for name, end in [("", 0.0), *ends]:
-        moved = {**scenario, name: np.full((1, 1, 1), end)} if name else scenario
-        try:
-            build_circuit(study, moved, Batch.best_estimate())
-        except UsageError as error:
-            dotted = f"value.{name}.spread" if name else "workload.circuit"
-            collector.add(file.problem(dotted, f"cannot be made with these values: {error}"))
-            return
+    for place, side in _own_circuits(study):
+        for name, end in [("", 0.0), *ends]:
+            moved = {**scenario, name: np.full((1, 1, 1), end)} if name else scenario
+            try:
+                build_circuit(study, moved, Batch.best_estimate(), side)
+            except UsageError as error:
+                dotted = f"value.{name}.spread" if name else place
+                collector.add(file.problem(dotted, f"cannot be made with these values: {error}"))
+                return
+
+
+def _own_circuits(study: Study) -> list[tuple[str, Side | None]]:
+    """Return the built-in circuits of a study, each once: its place in the file, and the side that has it."""
+    found: dict[str, tuple[str, Side | None]] = {}
+    if study.circuit_spec is None:
+        found[study.circuit] = ("workload.circuit", None)
+    places = ["candidate", *(f"contender.{position}" for position in range(len(study.contenders)))]
+    for place, side in zip(places, study.sides, strict=True):
+        name, spec = study.circuit_of(side)
+        if spec is None:
+            found.setdefault(name, (f"{place}.circuit", side))
+    return list(found.values())
 
 
 def check_physics(technology: ParameterSet, collector: Collector) -> None:

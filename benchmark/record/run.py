@@ -28,6 +28,7 @@ from benchmark.evaluate.search import SideRun
 from benchmark.record.ledger import ledger_rows, option_rows, technologies
 from benchmark.record.results import clean, envelope_rows, outcome_row, requirement_rows, swept_rows, verdict_row
 from benchmark.record.statements import CAUTIONS, NOT_MODELLED, conventions
+from benchmark.record.topology import circuit_assumptions, same_netlist_rows, side_circuit, topology_convention
 from benchmark.sets.library import Library
 from benchmark.sets.study import Study
 
@@ -104,9 +105,9 @@ def _software() -> dict[str, str]:
 def _files(study: Study, library: Library) -> list[dict[str, str]]:
     """Every input file with its text, so that the record alone can be run again."""
     rows = [{"name": study.file, "kind": "study", "sha256": study.sha256, "text": study.text}]
-    if study.circuit_spec is not None:
-        spec = study.circuit_spec
-        rows.append({"name": spec.file, "kind": "circuit", "sha256": spec.sha256, "text": spec.text})
+    rows += [
+        {"name": spec.file, "kind": "circuit", "sha256": spec.sha256, "text": spec.text} for spec in study.circuit_specs
+    ]
     for item in (*study.wires_sets, *technologies(study)):
         rows.append({"name": item.file, "kind": item.kind, "sha256": item.sha256, "text": item.text})
         for table in item.tables.values():
@@ -144,6 +145,7 @@ def run_study(
     progress("other policies", 0.6)
     policies = [outcome_row(primary.outcome, study.policy.primary in DIAGNOSTIC)]
     policies += [outcome_row(primary.comparison.outcome(name), name in DIAGNOSTIC) for name in study.policy.also]
+    policies += same_netlist_rows(study)
     progress("required times and nodes", 0.7)
     envelope = advantage_against_time(study, primary.curves)
     nodes = scan_nodes(study, study.policy.primary)
@@ -175,8 +177,8 @@ def run_study(
         "sources": {
             key: vars(sources[key]) | {"citation": sources[key].citation} for key in sorted(used) if key in sources
         },
-        "conventions": conventions(study, _factors(primary)),
-        "circuit_assumptions": list(primary.comparison.candidate.problem.circuit.assumptions),
+        "conventions": conventions(study, _factors(primary)) + topology_convention(study),
+        "circuit_assumptions": circuit_assumptions(primary.comparison),
         "not_modelled": list(NOT_MODELLED),
         "cautions": list(CAUTIONS),
         "notes": [str(note) for note in sorted(set(library.collector.notes))],
@@ -244,6 +246,7 @@ def _side_rows(study: Study) -> list[dict[str, Any]]:
                 "ambition": item.ambition,
                 "model": item.model,
                 "note": item.note,
+                **side_circuit(study, side),
                 "supply": list(side.supply),
                 "sizes": list(side.sizes),
                 "threshold_shifts": list(side.threshold_shifts),

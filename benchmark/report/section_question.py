@@ -133,8 +133,10 @@ def _slots(record: Record) -> list[tuple[str, str]]:
     strongest = record["policies"][0]["strongest"]
     hard = [requirement_name(row["name"]) for row in record["requirements"] if row["kind"] == "hard"]
     report = [requirement_name(row["name"]) for row in record["requirements"] if row["kind"] != "hard"]
+    own = [f"{side['id']} in {side['circuit']}" for side in sides if "circuit" in side]
+    circuit = f"circuit {study['circuit']}" + (f", own best: {listed(own)}" if own else "")
     workload = (
-        f"{study['operation']}; circuit {study['circuit']}, {study['timing']}, "
+        f"{study['operation']}; {circuit}, {study['timing']}, "
         f"leakage over the {study['leakage_accounting']}, idle: {study['idle']}; "
         f"at {listed(amount(t, 'K') for t in study['temperatures'])}"
     )

@@ -119,7 +119,14 @@ def policies(record: Record) -> Section:
         *("candidate energy", "candidate optimum lies", "reference supply", "reference time", "reference energy"),
     )
     blocks: list[Block] = []
-    if any(policy["diagnostic"] for policy in record["policies"]):
+    diagnostic = [policy for policy in record["policies"] if policy["diagnostic"]]
+    if any("topology" in policy for policy in diagnostic):
+        text = (
+            f"same netlist is the primary policy with the circuit {record['study']['circuit']} on every side; the "
+            "verdict rests on each side in the circuit of its own choice."
+        )
+        blocks.append(Notice(text, "Beside it:"))
+    if any("topology" not in policy for policy in diagnostic):
         text = "same supply for both sides is shown to compare with other texts; it never gives a verdict."
         blocks.append(Notice(text, "Diagnostic:"))
     held = [policy for policy in record["policies"] if not policy["diagnostic"]]

@@ -76,6 +76,7 @@ class CircuitSpec:
     file: str
     sha256: str
     text: str
+    function: str = ""
 
 
 def read_circuit(path: Path, library: Library, collector: Collector) -> CircuitSpec | None:
@@ -117,7 +118,9 @@ def read_circuit(path: Path, library: Library, collector: Collector) -> CircuitS
             collector.add(file.problem(f"layer.{name}", "is not used by any net"))
     if len(collector.problems) > before:
         return None
-    return CircuitSpec(parsed.id, parsed.title, parsed.operation, nets, layers, file.name, file.sha256, file.text)
+    return CircuitSpec(
+        parsed.id, parsed.title, parsed.operation, nets, layers, file.name, file.sha256, file.text, parsed.function
+    )
 
 
 def _net(net: NetTable, position: int, file: TomlFile, layers: Mapping[str, object], collector: Collector) -> NetSpec:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -31,7 +32,11 @@ REQUIREMENTS: dict[str, tuple[str, str]] = {
 
 @dataclass(frozen=True)
 class Side:
-    """One side of the comparison: a technology, what may be chosen for it, and its overheads."""
+    """One side of the comparison: a technology, what may be chosen for it, and its overheads.
+
+    ``circuit``: the circuit it has of its own under the topology own-best (``circuit_spec``: when that is a file);
+    empty: the study's.
+    """
 
     id: str
     technology: ParameterSet
@@ -40,6 +45,8 @@ class Side:
     threshold_shifts: tuple[float, ...]
     overhead: Mapping[str, Value]
     gating: Mapping[str, Value]
+    circuit: str = ""
+    circuit_spec: CircuitSpec | None = None
 
 
 @dataclass(frozen=True)
@@ -116,11 +123,34 @@ class Study:
     text: str
     path: Path
     default_fields: tuple[str, ...] = field(default=())
+    topology: str = "same-netlist"
 
     @property
     def wires_sets(self) -> tuple[ParameterSet, ...]:
         """Every wires set the study uses, once."""
         return tuple({pair.wires.id: pair.wires for pair in self.pairs}.values())
+
+    @property
+    def sides(self) -> tuple[Side, ...]:
+        """Every side, the candidate first."""
+        return (self.candidate, *self.contenders)
+
+    def circuit_of(self, side: Side) -> tuple[str, CircuitSpec | None]:
+        """Return the name of the circuit a side is judged in, and its file when it is one."""
+        if self.topology == "own-best" and side.circuit:
+            return side.circuit, side.circuit_spec
+        return self.circuit, self.circuit_spec
+
+    @property
+    def circuit_specs(self) -> tuple[CircuitSpec, ...]:
+        """Return every circuit file in use, the common one first, each once."""
+        own = [spec for _, spec in map(self.circuit_of, self.sides)]
+        return tuple({spec.id: spec for spec in (self.circuit_spec, *own) if spec is not None}.values())
+
+    @property
+    def same_netlist(self) -> Study:
+        """Return the study with the common circuit on every side."""
+        return dataclasses.replace(self, topology="same-netlist")
 
     def pair(self, label: str) -> NodePair:
         """Return a node pair by label."""

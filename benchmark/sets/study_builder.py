@@ -3,17 +3,18 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
-from typing import Any, Protocol
+from typing import Any
 
 from benchmark.catalogue import PRODUCT_CLASSES, QUANTITIES, STUDY_QUANTITIES
 from benchmark.errors import nearest
-from benchmark.sets.circuit_file import CircuitSpec, read_circuit
+from benchmark.sets.circuit_file import CircuitSpec
 from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate_values
 from benchmark.sets.study import NodePair, Side, Study
+from benchmark.sets.study_circuits import CircuitDeclaration, study_circuits
 from benchmark.sets.study_policy import check_declared_supplies, read_policy, read_requirements
 from benchmark.sets.study_schema import FrozenKnob, SideTable, StudyFile
 from benchmark.sets.study_schema import NodePair as NodePairTable
@@ -32,21 +33,6 @@ LENGTHS = ("average_net_length", "average_net_pitches")
 GATING = ("residual_leakage", "wake_energy_cycles")
 
 
-class CircuitDeclaration(Protocol):
-    """What this layer needs to know of a built-in circuit (``benchmark.circuits.library.BuiltIn`` has it)."""
-
-    @property
-    def required(self) -> tuple[str, ...]: ...  # noqa: D102
-    @property
-    def optional(self) -> tuple[str, ...]: ...  # noqa: D102
-    @property
-    def one_of(self) -> tuple[tuple[str, ...], ...]: ...  # noqa: D102
-    @property
-    def at_most_one_of(self) -> tuple[tuple[str, ...], ...]: ...  # noqa: D102
-    @property
-    def whole(self) -> tuple[str, ...]: ...  # noqa: D102
-
-
 class _Builder:
     """Walks a parsed study once, sending every problem to the collector."""
 
@@ -58,11 +44,12 @@ class _Builder:
         circuits: Mapping[str, CircuitDeclaration],
         spoiled: frozenset[str],
     ) -> None:
-        self.parsed, self.file, self.library, self.circuits = parsed, file, library, circuits
+        self.parsed, self.file, self.library = parsed, file, library
         self.collector: Collector = library.collector
         self.sources = frozenset(library.sources)
         self.study_values: Mapping[str, Value] = {}
         self.stated = spoiled | frozenset(parsed.value)  # also values that could not be read
+        self.circuits = study_circuits(parsed, library, circuits, self.refuse)
 
     def refuse(self, dotted: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> None:
         self.collector.add(self.file.problem(dotted, what, found, allowed, hint))
@@ -83,34 +70,16 @@ class _Builder:
 
     # -- values ---------------------------------------------------------------------------------------------
 
-    def circuit_spec(self) -> CircuitSpec | None:
-        name = self.parsed.workload.circuit
-        if name in self.circuits:
-            return None
-        stem = name.removesuffix(".toml")
-        path = self.library.find(stem, "circuits")
-        if path is None:
-            known = [*self.circuits, *self.library.ids("circuits")]
-            self.refuse(
-                "workload.circuit", "there is no such circuit", repr(name), ", ".join(known), nearest(stem, known)
-            )
-            return None
-        return read_circuit(path, self.library, self.collector)
-
     def needed_values(self) -> tuple[set[str], set[str]]:
         """Names the study must give, and names it may give."""
         parsed = self.parsed
-        circuit = self.circuits.get(parsed.workload.circuit)
-        must: set[str] = set(circuit.required) if circuit else set()
-        may: set[str] = set(circuit.optional) - {"busiest_activity"} if circuit else set()
-        if circuit is not None:
-            may |= {name for group in (*circuit.one_of, *circuit.at_most_one_of) for name in group}
+        must, may = self.circuits.required, self.circuits.usable - {"busiest_activity"}
         if parsed.workload.timing == "clocked":
             must.add("clock_frequency")
         if parsed.workload.idle != "none":
             must |= {"idle_time", "active_cycles"}
         if "endurance" in parsed.requirements:
-            if circuit is not None:
+            if self.circuits.declared:
                 must.add("busiest_activity")
             if parsed.workload.idle == "none":
                 must.add("duty")
@@ -118,11 +87,11 @@ class _Builder:
                 may.add("clock_frequency")
         return must, may
 
-    def values(self, spec: CircuitSpec | None) -> dict[str, Value]:
+    def values(self) -> dict[str, Value]:
         must, may = self.needed_values()
         names = {quantity.name for quantity in STUDY_QUANTITIES}
-        if spec is None and self.parsed.workload.circuit not in self.circuits:
-            may = names  # the circuit is refused: what it would need is not known
+        if self.circuits.unknown:
+            may = names  # a circuit is refused: what it would need is not known
         allowed = sorted(must | may)
         found: dict[str, Value] = {}
         for name, table in self.parsed.value.items():
@@ -140,22 +109,16 @@ class _Builder:
                 found[name] = value
         check_formulas(found, self.file, {**dict.fromkeys(self.stated), **self.parsed.value}, self.collector)
         self.study_values = found
-        circuit = self.circuits.get(self.parsed.workload.circuit)
-        for name in circuit.whole if circuit else ():
+        for name in self.circuits.whole:
             if name in found and found[name].spread is not None:
                 self.refuse(f"value.{name}.spread", "is not possible: the number shapes the netlist of the circuit")
         for name in sorted(must - self.stated):
             self.refuse(f"value.{name}", f"is missing ({QUANTITIES[name].meaning})", "", QUANTITIES[name].example)
-        if circuit is not None:
-            self.one_statement(circuit)
-        return found
-
-    def one_statement(self, circuit: CircuitDeclaration) -> None:
-        """Refuse values that state the same thing twice, or not at all where one is needed."""
-        for group in (*circuit.one_of, *circuit.at_most_one_of):
+        for group, needed in self.circuits.groups:
             stated = [name for name in group if name in self.stated]
-            if len(stated) > 1 or (group in circuit.one_of and not stated):
+            if len(stated) > 1 or (needed and not stated):
                 self.refuse("value", f"needs exactly one of {' and '.join(group)}", ", ".join(stated) or "none")
+        return found
 
     # -- sides ----------------------------------------------------------------------------------------------
 
@@ -196,7 +159,9 @@ class _Builder:
         knobs = getattr(self.library.declarations(technology.model), "knobs", ())
         if table.knobs.threshold_shift is not None and "threshold_shift" not in knobs and any(shifts):
             self.refuse(f"{dotted}.knobs.threshold_shift", f"has no effect with the model {technology.model}")
-        return Side(table.id or technology.id, technology, (low, high), sizes, shifts, overhead, gating)
+        circuit = self.circuits.own.get(dotted, "")
+        spec = self.circuits.specs.get(circuit)
+        return Side(table.id or technology.id, technology, (low, high), sizes, shifts, overhead, gating, circuit, spec)
 
     def ledger(
         self, tables: Mapping[str, Any], must: Sequence[str], may: Sequence[str], dotted: str
@@ -378,8 +343,9 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         return None
     build = _Builder(parsed, file, library, circuits, spoiled)
     build.word("product.class", parsed.product.class_, list(PRODUCT_CLASSES))
-    spec = build.circuit_spec()
-    values = build.values(spec)
+    circuit = parsed.workload.circuit
+    spec = build.circuits.specs.get(circuit)
+    values = build.values()
     temperatures = build.temperatures()
     wires = build.wires_set(parsed.conditions.wires, "conditions.wires")
     candidate, contenders = build.sides()
@@ -409,7 +375,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         parsed.product.class_,
         parsed.product.describe,
         parsed.workload.operation,
-        parsed.workload.circuit,
+        circuit,
         spec,
         parsed.workload.timing,
         parsed.workload.leakage_accounting,
@@ -434,6 +400,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         file.sha256,
         file.text,
         file.path,
+        topology=parsed.workload.topology,
     )
 
 

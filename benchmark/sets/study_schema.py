@@ -42,7 +42,11 @@ class WorkloadTable(FileModel):
 
     operation: Text = Field(description="What one operation is, in words; energy and time are per operation")
     circuit: Text = Field(description="A built-in circuit, or the id of a circuit file")
-    topology: Literal["same-netlist"] = Field(default="same-netlist", description="Both sides use the same netlist")
+    topology: Literal["same-netlist", "own-best"] = Field(
+        default="same-netlist",
+        description="same-netlist: all sides use this circuit; own-best: a side may name one of its own of the same "
+        "function, and the result with this circuit is reported beside it",
+    )
     timing: Literal["clocked", "self-timed"] = Field(
         description="clocked: one operation per clock cycle; self-timed: one per path delay"
     )
@@ -122,6 +126,9 @@ class SideTable(FileModel):
     technology: Text = Field(description="Technology set, by id")
     id: Text = Field(
         default="", description="Name in results; needed when one technology stands for several contenders"
+    )
+    circuit: Text = Field(
+        default="", description="Circuit of this side alone, with workload.topology = own-best; empty: workload.circuit"
     )
     knobs: KnobsTable = Field(description="What may be chosen for this side")
     overhead: dict[str, ValueTable] = Field(
@@ -285,6 +292,11 @@ class CircuitFile(FileModel):
     id: Identity
     title: Title
     operation: Text = Field(description="What one operation is, in words")
+    function: Text = Field(
+        default="",
+        description="What the circuit computes, with its interface; circuits of the same function may stand against "
+        "each other with workload.topology = own-best",
+    )
     default: DefaultsTable = Field(default=DefaultsTable(), description="What a value below does not say itself")
     net: list[NetTable] = Field(
         min_length=1, max_length=5000, description="Nets of the circuit: one table per kind of net"
