@@ -7,11 +7,11 @@ from numpy.typing import NDArray
 
 from benchmark.decide.policies import PRESCRIBED, PolicyInputs, prescribed
 from benchmark.decide.requirements import (
+    FunctionalFloor,
     HardLimits,
     Meets,
     functional_at,
     functional_condition,
-    functional_mask,
     hard_conditions,
 )
 from benchmark.decide.wording import apart
@@ -37,7 +37,7 @@ def why_infeasible(policy: str, run: SideRun, inputs: PolicyInputs) -> str:
     if policy in PRESCRIBED:
         return _prescribed(policy, run, inputs)
     study = run.problem.study
-    costly: Condition | None = functional_mask if functional_condition(study) else None
+    costly: Condition | None = FunctionalFloor() if functional_condition(study) else None
 
     def nearest(attribute: str) -> tuple[float, float] | None:
         def objective(problem: SideProblem, points: Points) -> np.ndarray:

@@ -17,7 +17,7 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from benchmark.decide.requirements import functional_condition, functional_mask, hard_conditions
+from benchmark.decide.requirements import FunctionalFloor, functional_condition, hard_conditions
 from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.search import All, Condition, Objective, Optimum, SideRun, minimise
 from benchmark.evaluate.side import SideProblem
@@ -51,10 +51,6 @@ def _time(problem: SideProblem, points: Points) -> Array:
     return points.time
 
 
-def _anything(run: SideRun, points: Points, among: Mask) -> Mask:
-    return np.ones(points.energy.shape, dtype=bool)
-
-
 def metric_of(name: str, points: Points) -> Array:
     """Return the metric X of the study (row, supply); all four are costs."""
     return {
@@ -65,26 +61,39 @@ def metric_of(name: str, points: Points) -> Array:
     }[name]
 
 
-def _within(limit: Array, attribute: str) -> Condition:
-    def condition(run: SideRun, points: Points, among: Mask) -> Mask:
-        return np.asarray(getattr(points, attribute) <= run.problem.batch.own(limit))
+@dataclass(frozen=True)
+class Within(Condition):
+    """The limit of a policy: ``attribute`` (time or energy) at most ``limit``, (1 or row of the whole batch, 1)."""
 
-    return condition
+    attribute: str
+    limit: Array
+
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return limit over value."""
+        return np.asarray(run.problem.batch.own(self.limit) / getattr(points, self.attribute))
+
+    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+        """Compare the numbers themselves, without the rounding of a quotient; an unknown limit admits nothing."""
+        return np.asarray(getattr(points, self.attribute) <= run.problem.batch.own(self.limit))
 
 
-def _nowhere(run: SideRun, points: Points, among: Mask) -> Mask:
-    return np.zeros(points.energy.shape, dtype=bool)
+class Nowhere(Condition):
+    """Admits no point of a range."""
+
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return minus infinity."""
+        return np.full(points.energy.shape, -np.inf)
 
 
 def own_limit(name: str, inputs: PolicyInputs) -> Condition:
     """Return the condition that the policy itself puts on the supplies of a range; a prescribed supply admits none."""
     if name in PRESCRIBED:
-        return _nowhere
+        return Nowhere()
     if name in ("iso-delay", "minimum-energy") and inputs.required_time is not None:
-        return _within(inputs.required_time, "time")
+        return Within("time", inputs.required_time)
     if name == "iso-energy":
-        return _within(np.asarray([[inputs.required_energy]], dtype=np.float64), "energy")
-    return _anything
+        return Within("energy", np.asarray([[inputs.required_energy]], dtype=np.float64))
+    return All()
 
 
 def prescribed(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, float] | None = None) -> Points:
@@ -117,9 +126,9 @@ def optimum(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, 
 
     Rows without any permitted point have ``found`` False.
     """
-    hard: Condition = hard_conditions(run.problem.study) if inputs.enforce_requirements else _anything
+    hard: Condition = hard_conditions(run.problem.study) if inputs.enforce_requirements else All()
     costly: Condition | None = (
-        functional_mask if inputs.enforce_requirements and functional_condition(run.problem.study) else None
+        FunctionalFloor() if inputs.enforce_requirements and functional_condition(run.problem.study) else None
     )
     if name in PRESCRIBED:
         return _fixed(run, prescribed(name, run, inputs, frozen), hard, costly)

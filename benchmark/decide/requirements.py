@@ -15,20 +15,20 @@ from numpy.typing import NDArray
 
 from benchmark.evaluate.functional import functional_points
 from benchmark.evaluate.points import Points, cycle_time, cycles_demanded
-from benchmark.evaluate.search import All, SideRun, take_columns
+from benchmark.evaluate.search import All, Condition, SideRun, take_columns
 from benchmark.evaluate.side import SideProblem
 from benchmark.sets.study import Requirement, Study
 
 __all__ = [
     "FUNCTIONAL",
     "STANDING",
+    "FunctionalFloor",
     "HardLimits",
     "Meets",
     "Standing",
     "functional_condition",
     "functional_margin",
     "functional_margins",
-    "functional_mask",
     "hard_conditions",
     "margins_at",
     "misses",
@@ -87,8 +87,8 @@ def _worst(points: Points, names: object, limit: float) -> Array:
 
 
 @dataclass(frozen=True)
-class Meets:
-    """Condition: one hard point-wise requirement is not failed."""
+class Meets(Condition):
+    """One hard point-wise requirement."""
 
     requirement: Requirement
 
@@ -97,23 +97,21 @@ class Meets:
         """What is asked, for messages."""
         return f"requirement {self.requirement.name}"
 
-    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
-        """Return where the margin is not below 1."""
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return the margin of the requirement."""
         margin = margins_at(run.problem, points, self.requirement)
-        if margin is None:
-            return np.ones(points.energy.shape, dtype=bool)
-        return np.broadcast_to(~(margin < 1.0), points.energy.shape)
+        return np.broadcast_to(np.inf if margin is None else margin, points.energy.shape)
 
 
 @dataclass(frozen=True)
-class HardLimits:
-    """Condition: no hard limit that the device reports is passed."""
+class HardLimits(Condition):
+    """The hard limits that the device reports."""
 
     label: str = "hard limits of the device"
 
-    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
-        """Return where no hard margin is below 1."""
-        return np.asarray(~(_worst(points, points.hard_limits, 1.0) < 1.0))
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return the smallest hard margin."""
+        return _worst(points, points.hard_limits, 1.0)
 
 
 def hard_conditions(study: Study) -> All:
@@ -153,16 +151,19 @@ def _functional(study: Study, kind: str = "") -> list[Requirement]:
     return [requirement for requirement in listed if kind in ("", requirement.kind)]
 
 
-def functional_mask(run: SideRun, points: Points, among: Mask) -> Mask:
-    """Hard functional requirements at the points asked about (expensive: other supplies are not evaluated)."""
-    asked = np.flatnonzero(among.any(axis=0))
-    mask = np.zeros(points.energy.shape, dtype=bool)
-    if not asked.size:
-        return mask
-    some = take_columns(points, asked)
-    margins = functional_at(run.problem, some, _functional(run.problem.study, "hard"))
-    mask[:, asked] = np.all([margin >= 1.0 for margin in margins.values()], axis=0)
-    return mask
+@dataclass(frozen=True)
+class FunctionalFloor(Condition):
+    """The hard functional requirements (expensive: supplies that are not asked about are not evaluated)."""
+
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return the smallest functional margin; minus infinity at supplies nobody asked about."""
+        asked = np.flatnonzero(among.any(axis=0))
+        worst = np.full(points.energy.shape, -np.inf)
+        if asked.size:
+            some = take_columns(points, asked)
+            margins = functional_at(run.problem, some, _functional(run.problem.study, "hard"))
+            worst[:, asked] = np.min([*margins.values()], axis=0)
+        return worst
 
 
 def functional_margins(run: SideRun) -> dict[tuple[float, float], dict[str, Array]]:

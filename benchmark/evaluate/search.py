@@ -2,14 +2,15 @@
 
 The supply is searched on a grid and then by repeated zooming into the interval around the best grid point; limits of
 the feasible region inside that interval are found to the same resolution. The result is never worse than the best
-grid point. Where no grid point is permitted, the permitted ones may lie between two neighbours that fail different
-conditions (too slow here, beyond a limit there); such intervals are divided further. An expensive condition (the
+grid point. Where no grid point is permitted, the permitted ones may lie between two of them (too slow here, beyond a
+limit there): then the smallest margin is made as large as it goes, which finds them. An expensive condition (the
 functional floor) is first checked at the optimum alone: an optimum of the larger set that also satisfies the condition
 is the optimum of the smaller set. Only rows that fail it are searched again with the condition applied at every point.
 """
 
 from __future__ import annotations
 
+import abc
 import dataclasses
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, fields
@@ -27,9 +28,6 @@ __all__ = ["All", "Condition", "Objective", "Optimum", "SideRun", "minimise", "s
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 Objective = Callable[[SideProblem, Points], Array]
-#: (run, points, points that need an answer) -> mask; may say anything about the other points
-Condition = Callable[["SideRun", Points, Mask], Mask]
-
 ZOOM_POINTS = 33
 #: relative distance at which an optimum counts as lying on a limit of the search
 ON_BOUND = 1.0e-9
@@ -47,14 +45,36 @@ class Optimum:
     at_limit: Mask  # inside the range, but the supplies next to it that would be better are not permitted
 
 
-@dataclass(frozen=True)
-class All:
-    """Conditions that must hold together; kept apart, so that a search can see which of them fails where."""
+class Condition(abc.ABC):
+    """What a point must meet, with a margin that tells how far it is from it."""
 
-    parts: tuple[Condition, ...]
+    @abc.abstractmethod
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return a factor that is below 1 where the condition is missed, nan where that is not known.
+
+        ``among``: points that need an answer; it may say anything about the others.
+        """
 
     def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
-        """Return where all hold, among the points asked about."""
+        """Return where the condition is not missed; an unknown is no failure."""
+        return np.broadcast_to(~(self.margin(run, points, among) < 1.0), points.energy.shape)
+
+
+@dataclass(frozen=True)
+class All(Condition):
+    """Conditions that must hold together, cheap ones first."""
+
+    parts: tuple[Condition, ...] = ()
+
+    def margin(self, run: SideRun, points: Points, among: Mask) -> Array:
+        """Return the smallest margin; what is unknown does not count."""
+        worst = np.full(points.energy.shape, np.inf)
+        for part in self.parts:
+            worst = np.fmin(worst, part.margin(run, points, among))
+        return worst
+
+    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+        """Return where all hold, among the points asked about; each is asked only where those before it hold."""
         mask = among
         for part in self.parts:
             mask = mask & part(run, points, mask)
@@ -186,11 +206,11 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
     low, high = _bracket(best.supply[:, 0], step, ends)
     missing = ~np.isfinite(value)
     if missing.any() and step > 0.0:
-        window, inside = _window(run, combination, objective, condition, missing)
-        if window is not None:
-            best, value = _merge(best, window.points, window.found), np.where(window.found, window.value, value)
-            near = _bracket(best.supply[:, 0], inside, ends)
-            low, high = np.where(window.found, near[0], low), np.where(window.found, near[1], high)
+        first = _feasible(run, combination, condition, missing)
+        best = _merge(best, first.points, first.found)
+        value = np.where(first.found, objective(problem, first.points)[:, 0], value)
+        near = _bracket(best.supply[:, 0], step, ends)
+        low, high = np.where(first.found, near[0], low), np.where(first.found, near[1], high)
     at_limit = np.zeros(value.shape, dtype=bool)
     active = np.isfinite(value) & (high - low > problem.study.refine_relative * high)
     while active.any():
@@ -219,65 +239,42 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
     return Optimum(best, value, found, at_lower, at_upper, found & at_limit & ~at_lower & ~at_upper)
 
 
-def _window(
-    run: SideRun, combination: tuple[float, float], objective: Objective, condition: Condition, missing: Mask
-) -> tuple[Optimum | None, Array]:
-    """Look for permitted supplies between two points of the grid, for rows without a permitted point on it.
+def _feasible(run: SideRun, combination: tuple[float, float], condition: Condition, wanted: Mask) -> Optimum:
+    """Look between the points of the grid for a permitted supply, where the grid has none.
 
-    Such a window can only lie between neighbours that fail different conditions. Returns the best point found, or
-    None, and the distance to its neighbours.
+    The smallest margin of all conditions is made as large as it goes, by the same zooming: a window of permitted
+    supplies, however narrow, holds the supply at which it is largest, if the margins have one peak there.
     """
     problem = run.problem
-    points = run.grid(combination)
-    low, high, looking = _gap(run, points, condition, missing)
-    found: Optimum | None = None
-    inside = np.zeros(missing.shape)
-    while looking.any():
+    ends = problem.side.supply
+
+    def shortest(points: Points) -> Array:
+        able = points.able & wanted[:, None]
+        return np.where(able, -np.fmin(condition.margin(run, points, able), np.finfo(float).max), np.inf)
+
+    grid = run.grid(combination)
+    everywhere = np.ones(grid.energy.shape, dtype=bool)
+    column, value = _best(shortest(grid), everywhere)
+    best = _take(grid, column)
+    step = (ends[1] - ends[0]) / max(problem.study.supply_points - 1, 1)
+    low, high = _bracket(best.supply[:, 0], step, ends)
+    found = np.zeros(wanted.shape, dtype=bool)
+    active = wanted & np.isfinite(value)
+    while active.any():
         fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
         points = design_points(problem, fine, *combination)
-        asked = points.able & looking[:, None]
-        column, value = _best(objective(problem, points), asked & condition(run, points, asked))
-        hit = np.isfinite(value)
-        nowhere = np.zeros(hit.shape, dtype=bool)
-        if hit.any():
-            taken = _take(points, column)
-            first = Optimum(taken, value, hit, nowhere, nowhere, nowhere)
-            found = first if found is None else _join(found, first)
-            inside = np.where(hit, (high - low) / (ZOOM_POINTS - 1), inside)
-        looking = looking & ~hit & (high - low > problem.study.refine_relative * high)
-        if looking.any():
-            low, high, looking = _gap(run, points, condition, looking)
-    return found, inside
-
-
-def _join(first: Optimum, second: Optimum) -> Optimum:
-    points = _merge(first.points, second.points, second.found)
-    value = np.where(second.found, second.value, first.value)
-    return dataclasses.replace(first, points=points, value=value, found=first.found | second.found)
-
-
-def _gap(run: SideRun, points: Points, condition: Condition, wanted: Mask) -> tuple[Array, Array, Mask]:
-    """Return the first interval of each row at one end of which every single condition is met, and where there is one.
-
-    An expensive condition is asked only at the ends of intervals that all conditions before it leave.
-    """
-
-    def either(mask: Mask) -> Mask:
-        return np.asarray(mask[:, :-1] | mask[:, 1:])
-
-    left = np.broadcast_to(wanted[:, None], (wanted.size, points.supply.shape[1] - 1))
-    for mask in (*points.infeasible.values(), ~np.isfinite(points.energy) | ~np.isfinite(points.time)):
-        left = left & either(~np.asarray(mask))
-    for part in condition.parts if isinstance(condition, All) else (condition,):
-        ends = np.zeros(points.supply.shape, dtype=bool)
-        ends[:, :-1] |= left
-        ends[:, 1:] |= left
-        if not ends.any():
-            break
-        left = left & either(part(run, points, ends))
-    column = np.argmax(left, axis=1)
-    rows = np.arange(wanted.size)
-    return points.supply[rows, column], points.supply[rows, column + 1], np.asarray(left.any(axis=1))
+        column, fine_value = _best(shortest(points), np.ones(fine.shape, dtype=bool))
+        better = active & (fine_value < value)
+        if better.any():
+            best = _merge(best, _take(points, column), better)
+            value = np.where(better, fine_value, value)
+        asked = (active & (value <= -1.0))[:, None]
+        found |= (asked & best.able & condition(run, best, asked))[:, 0]
+        near = _bracket(best.supply[:, 0], (high - low) / (ZOOM_POINTS - 1), ends)
+        low, high = np.where(active, near[0], low), np.where(active, near[1], high)
+        active &= ~found & (high - low > problem.study.refine_relative * high)
+    nowhere = np.zeros(wanted.shape, dtype=bool)
+    return Optimum(best, value, found, nowhere, nowhere, nowhere)
 
 
 def minimise(

@@ -10,7 +10,7 @@ import numpy as np
 import pytest
 
 from benchmark.decide.policies import own_limit
-from benchmark.decide.requirements import functional_condition, functional_mask, hard_conditions
+from benchmark.decide.requirements import FunctionalFloor, functional_condition, hard_conditions
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import design_points
 from benchmark.evaluate.search import All, supply_grid
@@ -30,7 +30,7 @@ def brute(loaded, run, policy, points=40001):
     found_inputs = found.policy_inputs()
     condition = All.of(hard_conditions(loaded), own_limit(policy, found_inputs))
     if functional_condition(loaded):
-        condition = All.of(condition, functional_mask)
+        condition = All.of(condition, FunctionalFloor())
     best, where = np.inf, np.nan
     for combination in run.combinations:
         dense = design_points(run.problem, np.linspace(low, high, points)[None, :], *combination)
