@@ -189,6 +189,22 @@ def new(
 
 
 @app.command()
+def export(
+    record: Annotated[Path, typer.Argument(help="Record folder of an earlier run, or its record.json.")],
+    figures: Annotated[
+        Path | None,
+        typer.Option("--figures", help="Folder for figures of 88 mm, 180 mm and one page: SVG, PDF, PNG, caption."),
+    ] = None,
+    tables: Annotated[Path | None, typer.Option("--tables", help="Folder for tables and numbered sources.")] = None,
+    form: Annotated[str, typer.Option("--format", help="Format of the tables: csv, md or latex.")] = "csv",
+) -> None:
+    """Write figures and tables for papers and boards from a record."""
+    from benchmark.cli.export import export_command
+
+    export_command(record, figures, tables, form)
+
+
+@app.command()
 def trace(
     study: Annotated[Path, typer.Argument(help="Study file, or a record folder.")],
     side: Annotated[str, typer.Option("--side", help="candidate, or the id of a contender.")] = "candidate",

@@ -97,7 +97,7 @@ def _runs(rows: Sequence[Row]) -> list[Row]:
     return found
 
 
-def advantage_against_time(record: Record) -> Chart:
+def advantage_against_time(record: Record, width: float = WIDTH, height: float = HEIGHT) -> Chart:
     """Draw the advantage for every required time; breaks where one side cannot reach it."""
     key, title = "advantage-against-time", "Advantage against required time"
     rows, lost = positive(advantage_rows(record), "time_s")
@@ -105,9 +105,9 @@ def advantage_against_time(record: Record) -> Chart:
     if not rows or not known:
         words = "Not drawn. " + " ".join(crossing_words(record))
         return Chart(key, title, None, words, words)
-    x = LogAxis.around([row["time_s"] for row in rows], WIDTH, "s", "required time per operation (s)", room=0.02)
-    y = _advantage_axis(record, [row["advantage"] for row in known], HEIGHT)
-    canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, WIDTH - 3.0, HEIGHT - 3.0))
+    x = LogAxis.around([row["time_s"] for row in rows], width, "s", "required time per operation (s)", room=0.02)
+    y = _advantage_axis(record, [row["advantage"] for row in known], height)
+    canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, width - 3.0, height - 3.0))
     look = looks(record)[_candidate_key(record)]
     canvas.frame()
     placer.avoid_line([(x.pixel(row["time_s"]), y.pixel(row["advantage"])) for row in known])
@@ -116,9 +116,9 @@ def advantage_against_time(record: Record) -> Chart:
     deadline = limits_of(record).deadline
     if deadline is not None and x.holds(deadline):
         edge = x.pixel(deadline)
-        canvas.rules([(edge, 0.0, edge, HEIGHT)], color=INK, strokeWidth=1.6)
-        placer.avoid_line([(edge, 0.0), (edge, HEIGHT)])
-        placed = placer.place([f"deadline {amount(deadline, 's')}"], [(edge, HEIGHT * s) for s in (0.95, 0.05, 0.5)])
+        canvas.rules([(edge, 0.0, edge, height)], color=INK, strokeWidth=1.6)
+        placer.avoid_line([(edge, 0.0), (edge, height)])
+        placed = placer.place([f"deadline {amount(deadline, 's')}"], [(edge, height * s) for s in (0.95, 0.05, 0.5)])
         labels += [Label(placed)] if placed else []
     canvas.path(known, "time_s", "advantage", color=look.colour, strokeWidth=2.6)
     singles = [group[0] for _, group in stretches(known, "run") if len(group) == 1]
@@ -141,7 +141,7 @@ def advantage_against_time(record: Record) -> Chart:
     span = f"from {number(min(row['advantage'] for row in known))} to {number(max(row['advantage'] for row in known))}"
     between = f"between {amount(known[0]['time_s'], 's')} and {amount(known[-1]['time_s'], 's')}"
     alternative = f"Advantage against required time: {span} {between}. {' '.join(crossing_words(record))}"
-    drawing = checked(spec(canvas.layers, WIDTH, HEIGHT, MARGINS))
+    drawing = checked(spec(canvas.layers, width, height, MARGINS))
     return Chart(key, title, drawing, " ".join(filter(None, caption)), alternative, tuple(rows))
 
 
@@ -194,7 +194,7 @@ def _crossings(canvas: Canvas, record: Record, x: LogAxis, y: LogAxis, placer: P
     return labels
 
 
-def advantage_by_node(record: Record) -> Chart:
+def advantage_by_node(record: Record, width: float = WIDTH) -> Chart:
     """Draw the advantage over node labels in order; equal spacing, because labels are not lengths."""
     key, title = "advantage-by-node", "Advantage by node"
     rows = [
@@ -209,8 +209,8 @@ def advantage_by_node(record: Record) -> Chart:
     height = 240.0
     y = _advantage_axis(record, [row["advantage"] for row in known], height)
     ticks = tuple((float(row["order"]), " ") for row in rows)
-    x = LinearAxis(-0.6, len(rows) - 0.4, WIDTH, "node label, in order", ticks, title_gap=13.0)
-    canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, WIDTH - 3.0, height - 3.0))
+    x = LinearAxis(-0.6, len(rows) - 0.4, width, "node label, in order", ticks, title_gap=13.0)
+    canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, width - 3.0, height - 3.0))
     look = looks(record)[_candidate_key(record)]
     canvas.frame()
     points = [{**row, "order": float(row["order"])} for row in _runs(rows)]
@@ -232,11 +232,11 @@ def advantage_by_node(record: Record) -> Chart:
     remarks = [
         Words(line, x.pixel(float(row["order"])), height - 36.0 + 13.0 * i, "center")
         for row in infeasible
-        for i, line in enumerate(fitted(row["note"] or "infeasible", max(60.0, WIDTH / len(rows)), 3))
+        for i, line in enumerate(fitted(row["note"] or "infeasible", max(60.0, width / len(rows)), 3))
     ]
     names = _node_names(rows, x, height)
     canvas.words([*(words for label in labels for words in label.words()), *remarks, *names])
-    drawing = checked(spec(canvas.layers, WIDTH, height, (64.0, 10.0, 12.0, 60.0)))
+    drawing = checked(spec(canvas.layers, width, height, (64.0, 10.0, 12.0, 60.0)))
     summary = _node_words(record, rows)
     caption = f"Primary policy at every node pair. {summary} Labels are equally spaced: a label is not a length."
     return Chart(key, title, drawing, caption, f"Advantage by node. {summary}", tuple(rows))

@@ -104,7 +104,7 @@ def _marks(record: Record) -> list[Row]:
     return positive(rows, "time_s", "energy_J")[0]
 
 
-def _plane(record: Record) -> Plane | None:
+def _plane(record: Record, width: float, height: float) -> Plane | None:
     drawn, left_out = _drawn(record)
     usable, dropped = {}, 0
     for key, rows in drawn.items():
@@ -120,9 +120,9 @@ def _plane(record: Record) -> Plane | None:
     times, energies = [row["time_s"] for row in core], [row["energy_J"] for row in core]
     if limits.deadline is not None and min(times) / 1e3 < limits.deadline < max(times) * 1e3:
         times.append(limits.deadline)
-    x = LogAxis.around([min(times) / BEYOND, max(times) * BEYOND], WIDTH, "s", "time per operation (s)", room=0.0)
+    x = LogAxis.around([min(times) / BEYOND, max(times) * BEYOND], width, "s", "time per operation (s)", room=0.0)
     span = [min(energies) / 2.0, max(energies) * BEYOND]
-    y = LogAxis.around(span, HEIGHT, "J", "energy per operation (J)", vertical=True, room=0.0)
+    y = LogAxis.around(span, height, "J", "energy per operation (J)", vertical=True, room=0.0)
     curves = {
         key: [row for row in rows if x.holds(row["time_s"]) and y.holds(row["energy_J"])]
         for key, rows in usable.items()
@@ -211,14 +211,14 @@ def _alternative(record: Record, plane: Plane) -> str:
     return "Energy per operation against time per operation. " + " ".join(words)
 
 
-def energy_delay(record: Record) -> Chart:
-    """Draw swept curves, the reference envelope and the design points of all policies."""
+def energy_delay(record: Record, width: float = WIDTH, height: float = HEIGHT) -> Chart:
+    """Draw swept curves, the reference envelope and the design points of all policies, on a plane of some size."""
     from benchmark.report.energy_delay_layers import layers
 
     title = "Energy against time per operation"
-    plane = _plane(record)
+    plane = _plane(record, width, height)
     if plane is None:
         words = "Not drawn: no design point of any side has a positive time and energy."
         return Chart("energy-delay", title, None, words, words)
-    drawing = checked(spec(layers(record, plane), WIDTH, HEIGHT, (74.0, 10.0, 12.0, 48.0)))
+    drawing = checked(spec(layers(record, plane), width, height, (74.0, 10.0, 12.0, 48.0)))
     return Chart("energy-delay", title, drawing, _caption(plane), _alternative(record, plane), _points(plane))

@@ -51,12 +51,12 @@ def _order(row: Row) -> tuple[float, str]:
     return (-1e-9 if place is None or row["state"] == "unknown" else min(place, 1e6), row["name"])
 
 
-def _offer(row: Row) -> str:
+def _offer(row: Row, room: float) -> str:
     offered, demanded = (amount(row[name], row["unit"], 2) for name in ("offered", "demanded"))
-    return fitted(f"offered {offered}, demanded {demanded}", 240.0)[0]
+    return fitted(f"offered {offered}, demanded {demanded}", room + 30.0)[0]
 
 
-def _axis(rows: Sequence[Row]) -> LinearAxis:
+def _axis(rows: Sequence[Row], width: float) -> LinearAxis:
     known = [row["decades"] for row in rows if row["decades"] is not None and math.isfinite(row["decades"])]
     low = max(-MOST, math.floor(min([*known, -0.5]) * 2.0) / 2.0 - 0.25)
     high = min(MOST, math.ceil(max([*known, 0.5]) * 2.0) / 2.0 + 0.25)
@@ -67,7 +67,7 @@ def _axis(rows: Sequence[Row]) -> LinearAxis:
     if len(ticks) < 3:
         halves = [(math.log10(2.0), "×2"), (-math.log10(2.0), "÷2"), (math.log10(5.0), "×5"), (-math.log10(5.0), "÷5")]
         ticks = sorted([*ticks, *(tick for tick in halves if low <= tick[0] <= high)])
-    return LinearAxis(low, high, WIDTH, "margin (factor beyond the limit, log scale)", tuple(ticks))
+    return LinearAxis(low, high, width, "margin (factor beyond the limit, log scale)", tuple(ticks))
 
 
 def _bar(canvas: Canvas, axis: LinearAxis, row: Row, middle: float) -> None:
@@ -94,7 +94,7 @@ def _bar(canvas: Canvas, axis: LinearAxis, row: Row, middle: float) -> None:
         )
 
 
-def requirement_margins(record: Record) -> Chart:
+def requirement_margins(record: Record, width: float = WIDTH, left: float = LEFT, right: float = RIGHT) -> Chart:
     """Draw every requirement, failures first."""
     key, title = "requirement-margins", "Requirement margins"
     rows: list[Row] = [
@@ -112,7 +112,7 @@ def requirement_margins(record: Record) -> Chart:
     if not rows:
         return Chart(key, title, None, "Not drawn: the study states no requirement.", "No requirement.")
     rows.sort(key=_order)
-    axis = _axis(rows)
+    axis = _axis(rows, width)
     height = ROW * len(rows) + 8.0
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
@@ -121,23 +121,23 @@ def requirement_margins(record: Record) -> Chart:
     for position, row in enumerate(rows):
         middle = 4.0 + ROW * (position + 0.5)
         _bar(canvas, axis, row, middle)
-        state = fitted(margin_words(row), RIGHT - 14.0, bold=True)[0]
+        state = fitted(margin_words(row), right - 14.0, bold=True)[0]
         canvas.words(
             [
                 Words(
-                    fitted(requirement_name(row["name"]), LEFT - 14.0, bold=True)[0],
+                    fitted(requirement_name(row["name"]), left - 14.0, bold=True)[0],
                     -10.0,
                     middle,
                     "right",
                     bold=row["state"] != "pass",
                 ),
-                Words(state, WIDTH + 10.0, middle - 6.5, bold=row["state"] != "pass"),
-                Words(_offer(row), WIDTH + 10.0, middle + 6.5),
+                Words(state, width + 10.0, middle - 6.5, bold=row["state"] != "pass"),
+                Words(_offer(row, right), width + 10.0, middle + 6.5),
             ]
         )
-    longest = max(text_width(_offer(row)) for row in rows)
-    right = max(RIGHT, longest + 14.0)
-    drawing = checked(spec(canvas.layers, WIDTH, height, (LEFT, 6.0, right, 48.0)))
+    longest = max(text_width(_offer(row, right)) for row in rows)
+    right = max(right, longest + 14.0)
+    drawing = checked(spec(canvas.layers, width, height, (left, 6.0, right, 48.0)))
     words = _summary(rows)
     points = tuple(
         {

@@ -114,7 +114,9 @@ def _below(canvas: Canvas, below: Sequence[tuple[float, str]], words: list[Words
         ends[line] = start + width
 
 
-def _panel(record: Record, rows: Sequence[Row], quantity: str) -> tuple[list[Row], float, str] | None:
+def _panel(
+    record: Record, rows: Sequence[Row], quantity: str, width: float, left: float
+) -> tuple[list[Row], float, str] | None:
     """Return layers, height and words of one quantity."""
     rows = [row for row in rows if row["quantity"] == quantity]
     sides = _sides(record, rows)
@@ -127,9 +129,9 @@ def _panel(record: Record, rows: Sequence[Row], quantity: str) -> tuple[list[Row
     factor = largest / shown
     ticks, end = _nice(shown)
     label = {"time": "time per operation", "energy": "energy per operation"}[quantity]
-    room = WIDTH / (1.0 - 86.0 / WIDTH)
+    room = width / (1.0 - 86.0 / width)
     axis = LinearAxis(
-        0.0, end * room / WIDTH, WIDTH, f"{label} ({shown_unit})", tuple((tick, number(tick, 3)) for tick in ticks)
+        0.0, end * room / width, width, f"{label} ({shown_unit})", tuple((tick, number(tick, 3)) for tick in ticks)
     )
     height = ROW * len(sides) + 8.0
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
@@ -137,7 +139,7 @@ def _panel(record: Record, rows: Sequence[Row], quantity: str) -> tuple[list[Row
     words = []
     for position, (key, mine) in enumerate(sides):
         top = 8.0 + ROW * position
-        name = fitted(side_name(record, key), LEFT - 12.0, 2, bold=True)
+        name = fitted(side_name(record, key), left - 12.0, 2, bold=True)
         canvas.words(
             [
                 Words(line, -10.0, top + 0.5 * BAR + 13.0 * (i - 0.5 * (len(name) - 1)), "right", bold=True)
@@ -150,20 +152,20 @@ def _panel(record: Record, rows: Sequence[Row], quantity: str) -> tuple[list[Row
     return canvas.layers, height, f"{label.capitalize()}: {'; '.join(words)}."
 
 
-def where_it_goes(record: Record) -> tuple[Chart, Chart]:
+def where_it_goes(record: Record, width: float = WIDTH, left: float = LEFT) -> tuple[Chart, Chart]:
     """Draw time and energy, one chart each, at the primary design points."""
     policy = record["policies"][0]["policy"]
     rows = [row for row in part_rows(record) if row["policy"] == policy]
     charts = []
     for quantity in ("time", "energy"):
         key, title = f"{quantity}-parts", f"Where the {quantity} goes"
-        panel = _panel(record, rows, quantity)
+        panel = _panel(record, rows, quantity, width, left)
         if panel is None:
             words = "Not drawn: no side has a permitted design point under the primary policy."
             charts.append(Chart(key, title, None, words, words))
             continue
         layers, height, words = panel
-        drawing = checked(spec(layers, WIDTH, height, (LEFT, 6.0, 12.0, 48.0)))
+        drawing = checked(spec(layers, width, height, (left, 6.0, 12.0, 48.0)))
         caption = (
             f"At the design points of the primary policy ({policy_name(policy)}), both bars on one scale from zero. "
             f"{words} Parts below 5 % are in the table."

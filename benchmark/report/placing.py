@@ -13,7 +13,7 @@ import textwrap
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 
-__all__ = ["Box", "Placed", "Placer", "fitted", "hatch", "text_width", "wrapped"]
+__all__ = ["Box", "Placed", "Placer", "cut", "fitted", "hatch", "text_width", "wrapped"]
 
 LINE_HEIGHT = 13.0
 #: advance widths of Liberation Sans in thousandths of the size, by group (metric-compatible with Arial)
@@ -56,6 +56,16 @@ def fitted(text: str, room: float, lines: int = 1, *, bold: bool = False) -> lis
         if all(text_width(line, bold=bold) <= room for line in found):
             return found
     return ["…"]
+
+
+def cut(text: str, room: float, *, bold: bool = False) -> str:
+    """Return one line cut to ``room`` pixels, within a word if need be; what is cut ends in an ellipsis."""
+    clean = re.sub(r"[\s\x00-\x1f]+", " ", text).strip()
+    if text_width(clean, bold=bold) <= room:
+        return clean
+    while clean and text_width(clean + "…", bold=bold) > room:
+        clean = clean[:-1]
+    return clean + "…"
 
 
 @dataclass(frozen=True)

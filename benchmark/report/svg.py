@@ -11,7 +11,7 @@ from xml.etree import ElementTree
 
 from benchmark.report.words import visible
 
-__all__ = ["SVG_ATTRIBUTES", "SVG_ELEMENTS", "inline_svg"]
+__all__ = ["SVG_ATTRIBUTES", "SVG_ELEMENTS", "cleaned", "inline_svg"]
 
 _SVG = "{http://www.w3.org/2000/svg}"
 SVG_ELEMENTS = frozenset({"svg", "g", "path", "line", "rect", "text", "tspan", "defs", "clipPath"})
@@ -53,6 +53,19 @@ def _clean(element: ElementTree.Element, prefix: str) -> None:
         _clean(child, prefix)
 
 
+def cleaned(svg: str, prefix: str) -> ElementTree.Element:
+    """Return the root of a drawing with only what the closed list allows, its ids beginning with ``prefix``.
+
+    Raises
+    ------
+    ValueError
+        Not well-formed, or something outside the closed list.
+    """
+    root = ElementTree.fromstring(svg)
+    _clean(root, prefix)
+    return root
+
+
 def inline_svg(svg: str, key: str, alternative: str) -> str:
     """Return the drawing as one element with role and label, to be put into the page as it is.
 
@@ -61,8 +74,7 @@ def inline_svg(svg: str, key: str, alternative: str) -> str:
     ValueError
         Not well-formed, or something outside the closed list.
     """
-    root = ElementTree.fromstring(svg)
-    _clean(root, f"{key}-")
+    root = cleaned(svg, f"{key}-")
     root.set("role", "img")
     root.set("aria-label", visible(alternative))
     root.set("class", "chart")

@@ -8,7 +8,7 @@ from typing import Any
 from benchmark.report.advantage import levels
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, fitted, text_width
+from benchmark.report.placing import Box, cut, fitted, text_width
 from benchmark.report.rows import NOT_PERMITTED, flips_of
 from benchmark.report.style import GREY, INK, LinearAxis, LogAxis, spec
 from benchmark.report.words import flat_powers, is_number, listed, number, plural, spaced
@@ -49,12 +49,17 @@ def _end(row: Row, which: str) -> str:
     return f"{which} {spaced(row[which], row['unit'], 2)}"
 
 
-def _axis(record: Record, rows: Sequence[Row], height: float) -> LogAxis:
+def _provenance(evidence: str, owner: str, room: float) -> str:
+    """Return evidence class and owner in the room there is; the owner may be cut, the class may not."""
+    return f"{evidence}; {cut(owner, room - text_width(f'{evidence}; '))}"
+
+
+def _axis(record: Record, rows: Sequence[Row], width: float) -> LogAxis:
     best = record["verdict"]["advantage"]
     ends = [row[name] for row in rows for name in ("advantage_low", "advantage_high")]
     values = [value for value in [*ends, best] if is_number(value) and value > 0.0]
     values += [level for level, _ in levels(record) if min(values) / 30.0 < level < max(values) * 30.0]
-    return LogAxis.around(values, WIDTH, "1", "advantage (reference / candidate)", room=0.26)
+    return LogAxis.around(values, width, "1", "advantage (reference / candidate)", room=0.26)
 
 
 def _ends(axis: LogAxis, row: Row) -> dict[str, tuple[float, str, bool]]:
@@ -74,7 +79,7 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
     places = sorted(place for place, _, _ in ends.values())
     left, right = places[0], max(places[1], places[0] + 1.0)
     if any(gone for _, _, gone in ends.values()):  # towards an end where a side is infeasible, the bar has no known end
-        canvas.rules([(right, middle, WIDTH, middle)], color=GREY, strokeWidth=1.6, strokeDash=[2, 3])
+        canvas.rules([(right, middle, canvas.x.size, middle)], color=GREY, strokeWidth=1.6, strokeDash=[2, 3])
     canvas.boxes(
         [Box(left, middle - BAR / 2, right, middle + BAR / 2)], color="#bcd7ea", stroke="#0072B2", strokeWidth=1.0
     )
@@ -87,7 +92,7 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
     left, right = min(left, best - 5.0), max(right, best + 5.0)  # clear of the symbol
     words.append(Words(first[1], left - 5.0, middle, "right"))
     if second[2]:
-        words.append(Words(second[1], WIDTH - 6.0, middle, "right"))
+        words.append(Words(second[1], canvas.x.size - 6.0, middle, "right"))
     else:
         words.append(Words(second[1], right + 5.0, middle))
     if text_width(flat_powers(first[1])) + 8.0 > left:
@@ -98,7 +103,7 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
             canvas.rules([(x, middle - 10.0, x, middle + 10.0)], color=INK, strokeWidth=3.0)
         text = f"flips at {_flips(row)}"
         half = 0.5 * text_width(text, bold=True)
-        words.append(Words(text, min(max(x, half), WIDTH - half), middle + 15.0, "center", bold=True))
+        words.append(Words(text, min(max(x, half), canvas.x.size - half), middle + 15.0, "center", bold=True))
     canvas.words(words, back=True)
 
 
@@ -118,12 +123,14 @@ def _lines(canvas: Canvas, record: Record, axis: LogAxis, height: float) -> None
             strokeDash=[1, 0] if estimate else [6, 3],
         )
         half = 0.5 * text_width(name, bold=True)
-        words.append(Words(name, min(max(x, half + 3.0), WIDTH - half - 3.0), y, "center", bold=True))
+        words.append(Words(name, min(max(x, half + 3.0), axis.size - half - 3.0), y, "center", bold=True))
     canvas.words(words, back=True)
 
 
-def input_swings(record: Record) -> Chart:
-    """Draw at most twelve inputs, largest swing first."""
+def input_swings(
+    record: Record, width: float = WIDTH, left: float = LEFT, right: float = RIGHT, most: int = MOST
+) -> Chart:
+    """Draw at most ``most`` inputs, largest swing first."""
     key, title = "input-swings", "What moves the answer"
     moves, best = ranged_moves(record), record["verdict"]["advantage"]
     if not moves or not is_number(best):
@@ -132,9 +139,9 @@ def input_swings(record: Record) -> Chart:
         )
         words = f"Not drawn: {why}."
         return Chart(key, title, None, words, words)
-    rows: list[Row] = [{**row, "best_advantage": best} for row in moves[:MOST]]
+    rows: list[Row] = [{**row, "best_advantage": best} for row in moves[:most]]
     height = ROW * len(rows) + TOP + 4.0
-    axis = _axis(record, rows, height)
+    axis = _axis(record, rows, width)
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
     _lines(canvas, record, axis, height)
@@ -145,11 +152,11 @@ def input_swings(record: Record) -> Chart:
         name, owner = _name(row["key"])
         canvas.words(
             [
-                Words(fitted(name, LEFT - 12.0, bold=True)[0], -10.0, middle - 6.5, "right", bold=True),
-                Words(fitted(f"{owner}; {row['evidence']}", LEFT - 12.0)[0], -10.0, middle + 6.5, "right"),
+                Words(fitted(name, left - 12.0, bold=True)[0], -10.0, middle - 6.5, "right", bold=True),
+                Words(_provenance(row["evidence"], owner, left - 12.0), -10.0, middle + 6.5, "right"),
             ]
         )
-    drawing = checked(spec(canvas.layers, WIDTH, height, (LEFT, 6.0, RIGHT, 48.0)))
+    drawing = checked(spec(canvas.layers, width, height, (left, 6.0, right, 48.0)))
     points = tuple(
         {name: row[name] for name in ("key", "unit", "evidence", "low", "best", "high", "straddles")}
         | {
@@ -161,7 +168,7 @@ def input_swings(record: Record) -> Chart:
         for row in rows
     )
     words = _summary(record, rows, moves)
-    return Chart(key, title, drawing, _caption(record, words, moves), f"What moves the answer. {words}", points)
+    return Chart(key, title, drawing, _caption(record, words, moves, most), f"What moves the answer. {words}", points)
 
 
 def _summary(record: Record, rows: Sequence[Row], moves: Sequence[Row]) -> str:
@@ -191,7 +198,7 @@ def _range(row: Row) -> str:
     return f"advantage {number(min(known))} to {number(max(known))}"
 
 
-def _caption(record: Record, words: str, moves: Sequence[Row]) -> str:
+def _caption(record: Record, words: str, moves: Sequence[Row], most: int) -> str:
     unranged = sum(not row["ranged"] for row in record["verdict"]["moves"])
     parts = [
         "Each input moved alone over its stated range, both sides re-optimised; the symbol stands at the best estimate "
@@ -199,8 +206,8 @@ def _caption(record: Record, words: str, moves: Sequence[Row]) -> str:
         "requirement missed.",
         words,
     ]
-    if len(moves) > MOST:
-        parts.append(f"{plural(len(moves) - MOST, 'further input')} with smaller swing in the table.")
+    if len(moves) > most:
+        parts.append(f"{plural(len(moves) - most, 'further input')} with smaller swing in the table.")
     if unranged:
         parts.append(f"{plural(unranged, 'input')} that move the result have no stated range and no bar.")
     return " ".join(parts)
