@@ -205,8 +205,9 @@ def _circuit(which: BuiltIn, scenario: Scenario) -> Circuit:
         which.operation,
         wired(_plan(kind, bits), scenario),
         assumptions=(
-            f"Prefix graph of {bits} bits: {counts.cells} cells in {counts.levels} levels, {counts.tracks} tracks, "
-            f"{counts.wire} bit pitches of wire; cells alternate polarity (NAND, NOR, AOI21, OAI21, inverters).",
+            f"Prefix graph of {bits} bits: {counts.cells} cells in {counts.levels} levels, {counts.wire} bit pitches "
+            f"of wire, at most {counts.tracks} side by side.",
+            "Cells alternate polarity (NAND2, NOR2, AOI21, OAI21), with inverters where a signal is needed in both.",
             "A net runs along the word from its driver to its farthest reader, once for all its readers; bits stand "
             "one bit pitch apart.",
             "An inverter drives every operand bit, every sum bit and the carry out drive one; operands change once per "
