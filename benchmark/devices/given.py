@@ -27,6 +27,8 @@ from collections.abc import Mapping
 import numpy as np
 
 from benchmark.devices.model import Default, DeviceModel, Finding, Input, ModelInputs, Option, Prepared
+from benchmark.devices.netlist.ohmic import ohmic_text
+from benchmark.devices.netlist.parts import Polarity, SubCircuits, SwitchText
 from benchmark.devices.ohmic_law import OhmicLaw
 from benchmark.devices.record import Array, BoolArray, Switch, SwitchPair
 from benchmark.devices.standing import (
@@ -124,6 +126,16 @@ def _off_current(values: Mapping[str, Array], supply: Array, open_resistance: Ar
     return supply / open_resistance
 
 
+def _netlist(prepared: Prepared, pair: SwitchPair, knobs: Mapping[str, Array]) -> SubCircuits:
+    values, off_state = prepared["values"], prepared["options"]["off_state"]
+
+    def one(switch: Switch, polarity: Polarity) -> SwitchText:
+        opened = _open_resistance(values, off_state)
+        return ohmic_text(switch, polarity, pair.supply, switch.resistance, opened, switch.switching_level)
+
+    return SubCircuits(one(pair.down, "down"), one(pair.up, "up"), ("Hysteresis is not in it: the closing branch.",))
+
+
 def _check(inputs: ModelInputs) -> list[Finding]:
     values = values_of(MODEL, inputs)
     found: list[Finding] = []
@@ -211,6 +223,7 @@ MODEL = DeviceModel(
     ),
     prepare=_prepare,
     switch=_switch,
+    netlist=_netlist,
     check=_check,
     references=(
         "R(open) = R_on + R_off; I_off = V / (R_on + R_off), or I_off V / V_declared, or exactly 0",

@@ -21,6 +21,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
+from benchmark.devices.netlist.parts import SubCircuits
 from benchmark.devices.record import Array, SwitchPair
 from benchmark.measured import MeasuredTable
 
@@ -107,5 +108,8 @@ class DeviceModel:
     calibrated_on: tuple[str, ...] = ()
     #: knobs beyond supply and size that this model honours
     knobs: tuple[str, ...] = ()
+    #: text of both switches at ONE point for a circuit simulator, from what ``prepare`` returned, the records of
+    #: ``switch`` at that point, and the knobs; None: no closed form, the current law is written as a table
+    netlist: Callable[[Prepared, SwitchPair, Mapping[str, Array]], SubCircuits] | None = None
     #: equation numbers, validity and references, printed by ``evenload show model``
     references: tuple[str, ...] = ()

@@ -35,6 +35,8 @@ from typing import Any
 import numpy as np
 
 from benchmark.devices.model import DeviceModel, Finding, Input, ModelInputs, Option, Prepared
+from benchmark.devices.netlist.parts import SubCircuits
+from benchmark.devices.netlist.steep_swing import blend_text
 from benchmark.devices.record import Array, BoolArray, Switch, SwitchPair
 from benchmark.devices.standing import (
     STANDING_INPUTS,
@@ -95,8 +97,7 @@ def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mappin
         outside["swing below the thermionic limit at this temperature"] = stated < boltzmann_swing(kelvin) * (
             1.0 - AT_LIMIT
         )
-    floor = off_current_at_swing(prepared["floor"], prepared["ceiling"], reference, swing)
-    parts = (swing, prepared["ceiling"], floor, values["saturation_voltage"], shift)
+    parts = _parts(prepared, swing, shift)
     law = _law(*parts)
     whole = np.broadcast_arrays(v, *parts)[0]
     high, low = law(whole, 0.5 * whole)[0], law(0.5 * whole, whole)[0]
@@ -134,6 +135,23 @@ def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mappin
         **standing_fields(values),
     )
     return mirrored(down, v, kelvin)
+
+
+def _parts(prepared: Prepared, swing: Array, shift: Array) -> tuple[Array, Array, Array, Array, Array]:
+    """Return swing, ceiling, floor, saturation voltage and threshold shift of the unit switch at one temperature."""
+    values: Mapping[str, Array] = prepared["values"]
+    floor = off_current_at_swing(prepared["floor"], prepared["ceiling"], values["subthreshold_swing"], swing)
+    return swing, prepared["ceiling"], floor, values["saturation_voltage"], shift
+
+
+def _netlist(prepared: Prepared, pair: SwitchPair, knobs: Mapping[str, Array]) -> SubCircuits:
+    parts = _parts(prepared, pair.down.intermediates["swing"][0], array(knobs["threshold_shift"]))
+    coupled = prepared["gate"] * prepared["values"]["drain_capacitance_share"]
+    gate = (prepared["gate"] - coupled, coupled)
+    return SubCircuits(
+        blend_text(pair.down, "down", parts, gate, prepared["terminal"]),
+        blend_text(pair.up, "up", parts, gate, prepared["terminal"]),
+    )
 
 
 def _law(swing: Array, ceiling: Array, floor: Array, saturation_voltage: Array, shift: Array) -> Law:
@@ -223,6 +241,7 @@ MODEL = DeviceModel(
     ),
     prepare=_prepare,
     switch=_switch,
+    netlist=_netlist,
     check=_check,
     knobs=("threshold_shift",),
     references=(

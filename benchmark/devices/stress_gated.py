@@ -38,6 +38,8 @@ import numpy as np
 
 from benchmark.constants import VACUUM_PERMITTIVITY
 from benchmark.devices.model import DeviceModel, ModelInputs, Prepared
+from benchmark.devices.netlist.parts import SubCircuits, scalar
+from benchmark.devices.netlist.stress_gated import Gate, switch_text
 from benchmark.devices.record import Array, BoolArray, Capability, Limit, Switch, SwitchPair
 from benchmark.devices.stress_gated_channel import Channel, channel_at, prepare_channel
 from benchmark.devices.stress_gated_inputs import INPUTS, OPTIONS, REFERENCES, check
@@ -276,6 +278,26 @@ def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mappin
     return SwitchPair(Switch(polarity="down", **fields), Switch(polarity="up", **fields), supply, temperature)
 
 
+def _netlist(prepared: Prepared, pair: SwitchPair, knobs: Mapping[str, Array]) -> SubCircuits:
+    v, stated = prepared["values"], prepared["options"]["mechanics"] == "stated-pressure"
+    notes = ["The loss of the actuator beyond charge times voltage (extra energy of the record) is not in it."]
+    if stated:
+        slope, offset = scalar(_pressure(prepared, np.ones(1))), 0.0
+        gate = Gate(slope, offset, None, None)
+    else:
+        column = prepared["column"]
+        slope = scalar(column["pressure_per_volt"])
+        offset = scalar(v["built_in_interference"] / (column["total_compliance"] * v["channel_area"]))
+        gate = Gate(slope, offset, scalar(column["blocked_capacitance"]), scalar(v["actuator_leakage_resistance"]))
+        notes.append("Leakage of the film is in it only together with the charges of the device.")
+    channel = channel_at(prepared["channel"], np.asarray(pair.temperature))
+    return SubCircuits(
+        switch_text(pair.down, "down", channel, gate, pair.supply),
+        switch_text(pair.up, "up", channel, gate, pair.supply),
+        tuple(notes),
+    )
+
+
 def _capabilities(v: Mapping[str, Array]) -> dict[str, Capability]:
     """What the file states; one-sided bounds are marked in the ledger under the same name."""
     units = {"endurance_cycles": "1", "process_temperature": "K"}
@@ -289,6 +311,7 @@ MODEL = DeviceModel(
     options=OPTIONS,
     prepare=_prepare,
     switch=_switch,
+    netlist=_netlist,
     check=check,
     references=REFERENCES,
 )

@@ -33,6 +33,8 @@ from typing import Literal
 import numpy as np
 
 from benchmark.devices.model import DeviceModel, Finding, ModelInputs, Option, Prepared
+from benchmark.devices.netlist.parts import Polarity, SubCircuits, SwitchText
+from benchmark.devices.netlist.virtual_source import transistor_text
 from benchmark.devices.record import Array, BoolArray, Switch, SwitchPair
 from benchmark.devices.standing import (
     array,
@@ -198,6 +200,18 @@ def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mappin
     return SwitchPair(down=down, up=_one(prepared, "p", v, kelvin, shift, depth), supply=v, temperature=kelvin)
 
 
+def _netlist(prepared: Prepared, pair: SwitchPair, knobs: Mapping[str, Array]) -> SubCircuits:
+    values: Mapping[str, Array] = prepared["values"]
+    terminal = values["terminal_capacitance_per_width"] * values["unit_width"]
+
+    def one(polarity: Polarity) -> SwitchText:
+        own = "p" if polarity == "up" and prepared["partner"] == "own" else "n"
+        t = _at(prepared["transistors"][own][0], values, array(pair.temperature), array(knobs["threshold_shift"]))
+        return transistor_text(t, polarity, values["overlap_capacitance"], terminal)
+
+    return SubCircuits(one("down"), one("up"))
+
+
 def _check(inputs: ModelInputs) -> list[Finding]:
     return findings(values_of(MODEL, inputs), option(MODEL, inputs, "partner") == "own")
 
@@ -209,6 +223,7 @@ MODEL = DeviceModel(
     options=(Option("partner", ("own", "mirrored"), "own"),),
     prepare=_prepare,
     switch=_switch,
+    netlist=_netlist,
     check=_check,
     calibrated_on=(
         "on_current",
