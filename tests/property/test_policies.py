@@ -499,7 +499,7 @@ def test_a_leakage_free_switch_gains_as_one_over_the_activity(b: Any):
 def test_a_very_long_wire_leaves_only_the_supplies(a: Any, b: Any, first: float, second: float):
     a["value"]["declared_supply"]["value"], b["value"]["declared_supply"]["value"] = number(first), number(second)
     for resistance in ("0.0", "100.0"):
-        values = {"average_net_length": v(D("1.0e5"), "um", unusual=True), "activity": v(D("0.5"))}
+        values = {"average_net_length": v(D("1.0e6"), "um", unusual=True), "activity": v(D("0.5"))}
         inputs = study(
             side("a", 0.2, 0.9),
             [side("b", 0.2, 0.9)],
