@@ -82,6 +82,18 @@ class Result:
 
         return verdict_text(self.record)
 
+    def ratio_only(self) -> Result:
+        """Return the result with ratios only: no absolute value of any side, no text of an input file.
+
+        Returns
+        -------
+        Result
+            Everything can be made from it as usual; it cannot be run again.
+        """
+        from benchmark.record.ratio_only import ratio_only
+
+        return Result(ratio_only(self.record))
+
     def save(self, folder: str | Path) -> Path:
         """Write the record folder: record, summary, tables, figures and report.
 

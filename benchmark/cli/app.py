@@ -121,6 +121,9 @@ def run(
     ] = None,
     nodes: Nodes = None,
     set_: Set = None,
+    ratio_only: Annotated[
+        bool, typer.Option("--ratio-only", help="Write ratios only: no absolute value of any side, no input texts.")
+    ] = False,
     gate: Annotated[bool, typer.Option("--gate", help="Exit status tells the verdict.")] = False,
     freeze_time: Annotated[str, typer.Option("--freeze-time", help="Time stamp to write instead of the clock.")] = "",
     quiet: Annotated[bool, typer.Option("--quiet", help="Print the verdict only.")] = False,
@@ -128,7 +131,7 @@ def run(
     """Run a study: verdict on the terminal, record folder with report, tables and figures."""
     from benchmark.cli.commands import run_command
 
-    word = run_command(study, out, nodes or [], _overrides(set_), freeze_time, quiet)
+    word = run_command(study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only)
     if gate:
         raise typer.Exit(GATE[word])
 
@@ -190,18 +193,51 @@ def new(
 
 @app.command()
 def export(
-    record: Annotated[Path, typer.Argument(help="Record folder of an earlier run, or its record.json.")],
+    record: Annotated[
+        Path, typer.Argument(help="Record folder of an earlier run, or its record.json; with --netlist also a study.")
+    ],
     figures: Annotated[
         Path | None,
         typer.Option("--figures", help="Folder for figures of 88 mm, 180 mm and one page: SVG, PDF, PNG, caption."),
     ] = None,
     tables: Annotated[Path | None, typer.Option("--tables", help="Folder for tables and numbered sources.")] = None,
     form: Annotated[str, typer.Option("--format", help="Format of the tables: csv, md or latex.")] = "csv",
+    ratio_only: Annotated[
+        bool, typer.Option("--ratio-only", help="Ratios only: no absolute value of any side.")
+    ] = False,
+    netlist: Annotated[Path | None, typer.Option("--netlist", help="File for a deck that runs in ngspice.")] = None,
+    side: Annotated[str, typer.Option("--side", help="Netlist: candidate, or the id of a contender.")] = "candidate",
+    supply: Annotated[
+        float | None, typer.Option("--supply", help="Netlist: supply in volt; default: the optimum of the policy.")
+    ] = None,
+    node: Annotated[str, typer.Option("--node", help="Netlist: label of a node pair; default: the headline.")] = "",
+    net: Annotated[str, typer.Option("--net", help="Netlist: net to repeat; default: the largest of the path.")] = "",
+    capacitances: Annotated[
+        str, typer.Option("--capacitances", help="Netlist: constants (delay, energy) or charges of the device.")
+    ] = "delay",
+    nodes: Nodes = None,
+    set_: Set = None,
 ) -> None:
-    """Write figures and tables for papers and boards from a record."""
+    """Write figures and tables for papers and boards from a record, or one design point as a deck for ngspice."""
+    if netlist is not None:
+        from benchmark.cli.netlist import netlist_command
+
+        netlist_command(
+            record,
+            netlist,
+            side=side,
+            supply=supply,
+            node=node,
+            net=net,
+            capacitances=capacitances,
+            nodes=nodes or [],
+            overrides=_overrides(set_),
+        )
+        if figures is None and tables is None:
+            return
     from benchmark.cli.export import export_command
 
-    export_command(record, figures, tables, form)
+    export_command(record, figures, tables, form, ratio_only)
 
 
 @app.command()

@@ -34,6 +34,7 @@ def run_command(
     overrides: Mapping[str, str],
     freeze_time: str,
     quiet: bool,
+    ratio_only: bool = False,
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
     from benchmark import api
@@ -42,6 +43,8 @@ def run_command(
     study = api.load_study(study_path, nodes, overrides)
     folder = out or Path(f"evenload-{study.id}")
     result = api.run(study, created=freeze_time or None, progress=_Steps(quiet))
+    if ratio_only:
+        result = result.ratio_only()
     result.save(folder)
     typer.echo(result.text)
     if not quiet:

@@ -14,7 +14,7 @@ from benchmark.errors import EvenloadError, UsageError
 __all__ = ["export_command"]
 
 
-def export_command(record_folder: Path, figures: Path | None, tables: Path | None, form: str) -> None:
+def export_command(record_folder: Path, figures: Path | None, tables: Path | None, form: str, ratio_only: bool) -> None:
     """Write what was asked for, from the record alone."""
     from benchmark.record.write import read_record
     from benchmark.report.publish import write_figures
@@ -27,6 +27,10 @@ def export_command(record_folder: Path, figures: Path | None, tables: Path | Non
         message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
         raise UsageError(message)
     record = read_record(record_folder)
+    if ratio_only:
+        from benchmark.record.ratio_only import ratio_only as without_absolutes
+
+        record = without_absolutes(record)
     if figures is not None:
         names = _fill(figures, lambda inside: write_figures(record, inside))
         typer.echo(f"{len(names)} figures, each as SVG, PDF and PNG with its caption, in {figures}")

@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from typing import Any
 
+from benchmark.record.shown_units import in_units_of_record, normalised
 from benchmark.units import format_si
 
 __all__ = ["answer_sentence", "engineering", "factor", "verdict_text"]
@@ -34,6 +35,8 @@ def engineering(value: float | str | None, unit: str, digits: int = 3) -> str:
         return value
     if unit == "1":
         return f"{value:.{digits}g}"
+    if (symbol := normalised(unit)) is not None:
+        return f"{value:.{digits}g} {symbol}"
     if unit in ("K", "m^2", "W/m^2"):
         shown = {"K": "degC", "m^2": "um^2", "W/m^2": "W/cm^2"}[unit]
         return format_si(value, shown, max(digits, 4) if unit == "K" else digits)
@@ -83,6 +86,7 @@ def _side_line(name: str, point: Mapping[str, Any]) -> str:
     )
 
 
+@in_units_of_record
 def verdict_text(record: Mapping[str, Any]) -> str:
     """Return the verdict as a few plain lines."""
     verdict, primary = record["verdict"], record["policies"][0]

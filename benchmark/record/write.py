@@ -36,6 +36,7 @@ def summary(record: Mapping[str, Any]) -> dict[str, Any]:
 
     return {
         "schema": record["schema"],
+        **({"ratio_only": record["ratio_only"]} if record.get("ratio_only") else {}),
         "study": study["id"],
         "demonstration": study["demonstration"],
         "verdict": verdict["word"],

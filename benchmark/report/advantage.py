@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from benchmark.record.shown_units import unit_words
 from benchmark.report.drawing import Canvas, Label, Words
 from benchmark.report.energy_delay import limits_of
 from benchmark.report.figure import Chart, Row, checked
@@ -105,7 +106,8 @@ def advantage_against_time(record: Record, width: float = WIDTH, height: float =
     if not rows or not known:
         words = "Not drawn. " + " ".join(crossing_words(record))
         return Chart(key, title, None, words, words)
-    x = LogAxis.around([row["time_s"] for row in rows], width, "s", "required time per operation (s)", room=0.02)
+    words = f"required time per operation ({unit_words('s')})"
+    x = LogAxis.around([row["time_s"] for row in rows], width, "s", words, room=0.02)
     y = _advantage_axis(record, [row["advantage"] for row in known], height)
     canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, width - 3.0, height - 3.0))
     look = looks(record)[_candidate_key(record)]

@@ -2,19 +2,23 @@
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Mapping
 from typing import Any
 
+from benchmark.record.shown_units import in_units_of_record
 from benchmark.report.advantage import advantage_against_time, advantage_by_node
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart
 from benchmark.report.margins import requirement_margins
 from benchmark.report.parts import where_it_goes
+from benchmark.report.rows import ratio_columns
 from benchmark.report.swings import input_swings
 
 __all__ = ["charts"]
 
 
+@in_units_of_record
 def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
     """Return key -> chart; a chart with nothing to draw has no specification and says why in its caption."""
     found = [
@@ -25,4 +29,6 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         input_swings(record),
         advantage_by_node(record),
     ]
+    if record.get("ratio_only"):
+        found = [dataclasses.replace(chart, points=tuple(ratio_columns(chart.points))) for chart in found]
     return {chart.key: chart for chart in found}

@@ -7,6 +7,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from benchmark.record.shown_units import unit_words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.rows import curve_rows, envelope_rows, policy_rows
 from benchmark.report.style import LogAxis, positive, spec
@@ -120,9 +121,10 @@ def _plane(record: Record, width: float, height: float) -> Plane | None:
     times, energies = [row["time_s"] for row in core], [row["energy_J"] for row in core]
     if limits.deadline is not None and min(times) / 1e3 < limits.deadline < max(times) * 1e3:
         times.append(limits.deadline)
-    x = LogAxis.around([min(times) / BEYOND, max(times) * BEYOND], width, "s", "time per operation (s)", room=0.0)
+    ends = [min(times) / BEYOND, max(times) * BEYOND]
+    x = LogAxis.around(ends, width, "s", f"time per operation ({unit_words('s')})", room=0.0)
     span = [min(energies) / 2.0, max(energies) * BEYOND]
-    y = LogAxis.around(span, height, "J", "energy per operation (J)", vertical=True, room=0.0)
+    y = LogAxis.around(span, height, "J", f"energy per operation ({unit_words('J')})", vertical=True, room=0.0)
     curves = {
         key: [row for row in rows if x.holds(row["time_s"]) and y.holds(row["energy_J"])]
         for key, rows in usable.items()

@@ -8,6 +8,7 @@ from collections.abc import Mapping
 from importlib.resources import files
 from typing import Any
 
+from benchmark.record.shown_units import in_units_of_record
 from benchmark.record.write import to_json
 from benchmark.report import section_evidence as evidence
 from benchmark.report import section_method as method
@@ -90,6 +91,7 @@ def _hash(script: str) -> str:
     return base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
 
 
+@in_units_of_record
 def page(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str, str]) -> str:
     """Return the whole page.
 

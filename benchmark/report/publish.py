@@ -11,6 +11,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
+from benchmark.record.shown_units import in_units_of_record
 from benchmark.report.advantage import advantage_against_time, advantage_by_node
 from benchmark.report.charts import charts
 from benchmark.report.compose import printed, to_bitmap, to_pdf
@@ -66,6 +67,7 @@ def _column(record: Record) -> list[Chart]:
     ]
 
 
+@in_units_of_record
 def figures_for_print(record: Record) -> list[Published]:
     """Return every figure that has something to draw: full width, then one column, then the page."""
     digest = digest_of(record)

@@ -12,9 +12,10 @@ from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
+from benchmark.record.shown_units import NORMALISED
 from benchmark.report.rows import policy_rows
 from benchmark.report.section_evidence import source_numbers
-from benchmark.report.tables import tables
+from benchmark.report.tables import plain_tables
 from benchmark.report.words import is_number, visible
 
 __all__ = ["DIGITS", "FORMATS", "publication_tables", "sources_text", "write_tables"]
@@ -67,10 +68,13 @@ _TABLES: dict[str, tuple[tuple[str, ...], str]] = {
 _UNITS = ("SI", "V", "s", "J", "W", "m2")
 
 
-def _heading(column: str) -> str:
-    """Turn a column name into words with its unit in brackets."""
+def _heading(column: str, ratios: bool) -> str:
+    """Turn a column name into words with its unit, or the symbol that stands for it, in brackets."""
     head, _, tail = column.rpartition("_")
     if head and tail in _UNITS:
+        if ratios:
+            symbol = NORMALISED["m^2" if tail == "m2" else tail] if tail != "SI" else "published = 1"
+            return f"{head.replace('_', ' ')} ({symbol})"
         return f"{head.replace('_', ' ')} ({'m^2' if tail == 'm2' else tail})"
     return column.replace("_", " ")
 
@@ -78,13 +82,14 @@ def _heading(column: str) -> str:
 def publication_tables(record: Record) -> dict[str, list[Row]]:
     """Return table name -> rows with words as headings; sources by their number in ``sources.md``."""
     numbers = source_numbers(record)
-    every = tables(record)
+    ratios = bool(record.get("ratio_only"))
+    every = plain_tables(record)
     every["policies"] = policy_rows(record)
     found = {}
     for name, (columns, _) in _TABLES.items():
         rows = []
         for row in every[name]:
-            cells = {_heading(column): row[column] for column in columns if column in row}
+            cells = {_heading(column, ratios): row[column] for column in columns if column in row}
             if row.get("source"):
                 key = row["source"]
                 cells["source"] = f"[{numbers[key]}]" if key in numbers else key

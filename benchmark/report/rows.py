@@ -5,9 +5,10 @@ Units stand in the column names. Where there is no number the cell holds a word 
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
+from benchmark.record.shown_units import NORMALISED
 from benchmark.report.words import is_number, state_word
 
 __all__ = [
@@ -19,15 +20,33 @@ __all__ = [
     "flips_of",
     "part_rows",
     "policy_rows",
+    "ratio_columns",
     "sides_of",
     "word",
 ]
 
 Record = Mapping[str, Any]
 Row = dict[str, Any]
+#: end of a column name -> its unit; longer ends first
+_ENDS = {"_W_per_m2": "W/m^2", "_m2": "m^2", "_s": "s", "_J": "J", "_V": "V", "_W": "W"}
 INFEASIBLE = "infeasible"
 #: where a moved input leaves a side without permitted point, or makes the candidate miss a requirement
 NOT_PERMITTED = "infeasible or a requirement missed"
+
+
+def ratio_columns(rows: Sequence[Mapping[str, Any]]) -> list[Row]:
+    """Name the columns of a ratio-only record: ``time_over_T0`` in place of ``time_s``; units of rows likewise."""
+
+    def name(column: str) -> str:
+        for end, unit in _ENDS.items():
+            if column.endswith(end):
+                return f"{column.removesuffix(end)}_over_{NORMALISED[unit]}"
+        return column.removesuffix("_SI") + "_ratio" if column.endswith("_SI") else column
+
+    def cell(column: str, value: Any) -> Any:
+        return NORMALISED.get(value, value) if column == "unit" else value
+
+    return [{name(column): cell(column, value) for column, value in row.items()} for row in rows]
 
 
 def word(value: Any, instead: str) -> Any:

@@ -81,8 +81,11 @@ def reproduce(record: Record, digest: str) -> Section:
     versions = tuple((name, version) for name, version in record["software"].items())
     rows = [(item["name"], item["kind"], item["sha256"]) for item in record["files"]]
     text = (
-        "Every input file stands with its full text in the record, and the record is embedded in this page (element "
-        "with the id record), so the page carries all it was made from."
+        "A ratio-only record cannot be run again: the input files are named by their digests, their texts are not "
+        "here. The record itself is embedded in this page (element with the id record)."
+        if record.get("ratio_only")
+        else "Every input file stands with its full text in the record, and the record is embedded in this page "
+        "(element with the id record), so the page carries all it was made from."
     )
     return Section(
         "reproduce",

@@ -71,6 +71,8 @@ def answer(record: Record, digest: str) -> Section:
         blocks.append(
             Notice("some inputs are invented. The verdict says nothing about any real switch.", "Demonstration:")
         )
+    if record.get("ratio_only"):
+        blocks.append(Notice(f"no absolute value of any side is given. {record['ratio_only']}.", "Ratios only:"))
     failed = [check["name"] for check in record["self_checks"] if not check["passed"]]
     if failed:
         blocks.append(Notice(f"{listed(failed)}. Do not use these results.", "Self-check failed:"))

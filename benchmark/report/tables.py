@@ -18,6 +18,7 @@ from benchmark.report.rows import (
     flips_of,
     part_rows,
     policy_rows,
+    ratio_columns,
     sides_of,
     word,
 )
@@ -25,7 +26,7 @@ from benchmark.report.rows import (
 if TYPE_CHECKING:
     import pandas
 
-__all__ = ["frames", "ledger_table", "tables", "write_csv"]
+__all__ = ["frames", "ledger_table", "plain_tables", "tables", "write_csv"]
 
 Record = Mapping[str, Any]
 Row = dict[str, Any]
@@ -271,9 +272,17 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
 }
 
 
-def tables(record: Record) -> dict[str, list[Row]]:
-    """Return table name -> rows, in a fixed order."""
+def plain_tables(record: Record) -> dict[str, list[Row]]:
+    """Return table name -> rows, in a fixed order, with the column names of an ordinary record."""
     return {name: build(record) for name, build in _BUILDERS.items()}
+
+
+def tables(record: Record) -> dict[str, list[Row]]:
+    """Return table name -> rows, in a fixed order; the columns of a ratio-only record say so."""
+    found = plain_tables(record)
+    if record.get("ratio_only"):
+        found = {name: rows if name == "ledger" else ratio_columns(rows) for name, rows in found.items()}
+    return found
 
 
 def frames(record: Record) -> dict[str, pandas.DataFrame]:

@@ -11,6 +11,8 @@ import re
 from collections.abc import Iterable
 from typing import Any, TypeGuard
 
+from benchmark.record.shown_units import normalised
+
 __all__ = [
     "amount",
     "flat_powers",
@@ -129,6 +131,8 @@ def _side(value: float, limit: float) -> int:
 
 def scaled(value: float, unit: str) -> tuple[float, str]:
     """Return number and unit with a prefix, for example 2.5e-13 J -> (250.0, "fJ")."""
+    if (symbol := normalised(unit)) is not None:
+        return value, symbol
     if unit in _SHOWN:
         shown, factor, offset = _SHOWN[unit]
         return value * factor + offset, shown
@@ -190,7 +194,7 @@ def policy_name(name: str) -> str:
 
 def volts(value: Any, digits: int = 2) -> str:
     """Print a supply in volt, without prefix from 10 mV up: 0.35 V."""
-    if is_number(value) and abs(value) >= 0.01:
+    if is_number(value) and abs(value) >= 0.01 and normalised("V") is None:
         return f"{number(value, digits)}{GAP}V"
     return amount(value, "V", digits)
 

@@ -41,3 +41,12 @@ def test_what_is_no_record_is_refused(evenload, tmp_path: Path):
     ran = evenload("export", tmp_path, "--tables", "out")
     assert ran.status == 3
     assert "not a readable record" in ran.err
+
+
+def test_ratios_only_from_an_ordinary_record(evenload, tmp_path: Path):
+    folder = _record(tmp_path / "record")
+    ran = evenload("export", folder, "--tables", "out", "--ratio-only")
+    assert ran.status == 0, ran.err
+    head = (tmp_path / "out" / "policies.csv").read_text(encoding="utf-8").splitlines()[0]
+    assert "energy (E0)" in head
+    assert "(J)" not in head
