@@ -7,11 +7,13 @@ from collections.abc import Iterator
 from pathlib import Path
 from typing import Any
 
+import axe_core_python
 import pytest
 from playwright.sync_api import Browser, BrowserContext, Page, sync_playwright
 
 from benchmark.report.charts import charts
 from benchmark.report.folder import fill_folder
+from benchmark.report.one_page import one_page
 from tests.report_records import crossing, hostile, infeasible, mixed
 
 pytestmark = pytest.mark.browser
@@ -344,3 +346,56 @@ def test_controls_are_large_enough_to_hit(visit: Any):
     )
     assert sizes
     assert [item for item in sizes if item[1] < 24] == []
+
+
+def _axe() -> str:
+    """The checking script as its package ships it; it is put into the page by this test only."""
+    return (Path(axe_core_python.__file__).parent / "axe.min.js").read_text(encoding="utf-8")
+
+
+@pytest.mark.parametrize("width", [1280, 390])
+@pytest.mark.parametrize("name", RECORDS)
+def test_no_rule_of_accessibility_is_broken(visit: Any, name: str, width: int):
+    seen = visit(name, width=width)
+    seen.page.evaluate("document.querySelectorAll('details').forEach((box) => { box.open = true; })")
+    seen.page.evaluate(_axe())
+    result = seen.page.evaluate("axe.run(document, { resultTypes: ['violations'] })")
+    found = [(rule["id"], len(rule["nodes"]), rule["nodes"][0]["html"][:120]) for rule in result["violations"]]
+    assert found == []
+    assert len(result["passes"]) >= 15
+
+
+def test_the_rules_can_be_broken(visit: Any):
+    seen = visit("mixed")
+    seen.page.evaluate("document.querySelector('th[scope]').closest('div').insertAdjacentHTML('beforebegin', '<img>')")
+    seen.page.evaluate("document.querySelector('p').style.color = '#bbbbbb'")
+    seen.page.evaluate(_axe())
+    result = seen.page.evaluate("axe.run(document, { resultTypes: ['violations'] })")
+    assert {"image-alt", "color-contrast"} <= {rule["id"] for rule in result["violations"]}
+
+
+@pytest.mark.parametrize("name", ["mixed", "crossing", "long-words"])
+def test_twice_the_size_has_no_sideways_scroll(visit: Any, name: str):
+    seen = visit(name, width=640, height=450, device_scale_factor=2)
+    seen.page.evaluate("document.querySelectorAll('details').forEach((box) => { box.open = true; })")
+    assert seen.page.evaluate("document.documentElement.scrollWidth") <= 640
+    seen.page.evaluate("document.documentElement.style.fontSize = '200%'")  # larger words in an unchanged window
+    assert seen.page.evaluate("document.documentElement.scrollWidth") <= 640
+
+
+def test_no_words_of_the_one_page_figure_leave_the_page(browser: Browser, tmp_path: Path):
+    """Measured by the browser, not by the estimate the drawing uses."""
+    place = tmp_path / "page.svg"
+    svg, _, _ = one_page(crossing(), "ab" * 32)
+    place.write_text(svg, encoding="utf-8")
+    context = browser.new_context(viewport={"width": 900, "height": 1200})
+    page = context.new_page()
+    page.goto(place.as_uri())
+    boxes = page.evaluate(
+        """() => { const all = document.documentElement.getBoundingClientRect();
+        return [...document.querySelectorAll("text")].map((item) => { const box = item.getBoundingClientRect();
+            return [item.textContent, box.left - all.left, all.right - box.right, all.bottom - box.bottom]; }); }"""
+    )
+    context.close()
+    assert len(boxes) > 60
+    assert [box for box in boxes if min(box[1:]) < 20] == []

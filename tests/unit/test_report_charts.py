@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import csv
 import functools
+import itertools
 import json
 import math
 import re
@@ -15,8 +16,10 @@ from xml.etree import ElementTree
 import pytest
 
 from benchmark.report.charts import charts
-from benchmark.report.energy_delay import energy_delay, envelope_path
+from benchmark.report.contrast import contrast, grey
+from benchmark.report.energy_delay import energy_delay, envelope_path, side_name
 from benchmark.report.figure import Chart, checked, to_png, to_svg
+from benchmark.report.parts import _FILLS
 from benchmark.report.rows import NOT_PERMITTED, curve_rows, envelope_rows, policy_rows
 from benchmark.report.style import LogAxis, looks, positive
 from benchmark.report.svg import SVG_ELEMENTS, inline_svg
@@ -98,26 +101,13 @@ def test_nothing_that_was_ruled_out_is_drawn(record):
         assert chart.spec["config"]["axis"]["labelFontSize"] * 0.75 >= 7.0
 
 
-def _contrast(colour: str) -> float:
-    channels = [int(colour[i : i + 2], 16) / 255 for i in (1, 3, 5)]
-    linear = [c / 12.92 if c <= 0.04045 else ((c + 0.055) / 1.055) ** 2.4 for c in channels]
-    luminance = 0.2126 * linear[0] + 0.7152 * linear[1] + 0.0722 * linear[2]
-    return 1.05 / (luminance + 0.05)
-
-
-def test_contrast_formula_against_the_definition():
-    assert _contrast("#000000") == pytest.approx(21.0)
-    assert _contrast("#0072B2") == pytest.approx(5.19, abs=0.005)  # Okabe-Ito blue on white
-    assert _contrast("#D55E00") == pytest.approx(3.87, abs=0.005)
-
-
 def test_lines_and_words_stand_out_from_white():
     record = changed(mixed(), lambda r: r["sides"].extend({**r["sides"][1], "id": f"further {i}"} for i in range(22)))
     found = looks(record)
     assert len(found) == len(record["sides"])
     for look in found.values():
-        assert _contrast(look.colour) >= 3.0
-        assert _contrast(look.ink) >= 4.5
+        assert contrast(look.colour) >= 3.0
+        assert contrast(look.ink) >= 4.5
 
 
 def test_each_technology_has_a_style_of_its_own_that_does_not_depend_on_the_chart_or_on_what_is_feasible():
@@ -126,6 +116,31 @@ def test_each_technology_has_a_style_of_its_own_that_does_not_depend_on_the_char
     styles = [(look.colour, look.dash, look.marker) for look in found.values()]
     assert len(set(styles)) == len(styles)
     assert looks(infeasible()) == looks(mixed())
+
+
+def test_in_grey_print_every_pair_is_told_apart_by_more_than_its_shade():
+    record = changed(mixed(), lambda r: r["sides"].extend({**r["sides"][1], "id": f"further {i}"} for i in range(10)))
+    found = list(looks(record).values())
+    alike = []
+    for one, other in itertools.combinations(found, 2):
+        assert (one.dash, one.marker) != (other.dash, other.marker), "dash and marker alike: only colour is left"
+        if contrast(grey(one.colour), grey(other.colour)) < 1.5:
+            alike.append((one, other))
+    assert alike, "some shades do come out alike, so dash, marker and name are needed"
+
+
+def test_every_side_is_named_beside_its_curve():
+    record = mixed()
+    written = re.sub(r"\s+", " ", json.dumps(charts(record)["energy-delay"].spec, ensure_ascii=False))
+    for side in record["sides"]:
+        assert side_name(record, f"{side['role']} {side['id']}") in written
+
+
+def test_parts_with_one_fill_differ_in_hatching_or_mean_the_same():
+    """Device and device RC share a look: one stands in bars of energy, the other in bars of time."""
+    for one, other in itertools.combinations(_FILLS, 2):
+        if {one, other} not in ({"device", "device RC"}, {"level shifter", "level shifters"}):
+            assert _FILLS[one] != _FILLS[other], (one, other)
 
 
 # -- energy against time -----------------------------------------------------------------------------------------
