@@ -12,6 +12,7 @@ from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart
 from benchmark.report.margins import requirement_margins
 from benchmark.report.parts import where_it_goes
+from benchmark.report.ribbons import limits_along_supply
 from benchmark.report.rows import ratio_columns
 from benchmark.report.swings import input_swings
 
@@ -24,6 +25,7 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
     found = [
         requirement_margins(record),
         energy_delay(record),
+        limits_along_supply(record),
         advantage_against_time(record),
         *where_it_goes(record),
         input_swings(record),

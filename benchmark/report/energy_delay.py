@@ -13,7 +13,17 @@ from benchmark.report.rows import curve_rows, envelope_rows, policy_rows
 from benchmark.report.style import LogAxis, positive, spec
 from benchmark.report.words import amount, is_number, plural, state_word
 
-__all__ = ["FEASIBLE", "Limits", "Plane", "energy_delay", "envelope_path", "limits_of", "side_key", "side_name"]
+__all__ = [
+    "FEASIBLE",
+    "Limits",
+    "Plane",
+    "chosen_curves",
+    "energy_delay",
+    "envelope_path",
+    "limits_of",
+    "side_key",
+    "side_name",
+]
 
 Record = Mapping[str, Any]
 WIDTH, HEIGHT = 610.0, 420.0
@@ -52,6 +62,11 @@ def side_name(record: Record, key: str) -> str:
     """Return the words for a side: the title of the candidate, the name the study gives a contender."""
     side = next(side for side in record["sides"] if f"{side['role']} {side['id']}" == key)
     return str(side["title"] if side["role"] == "candidate" else side["id"])
+
+
+def chosen_curves(record: Record) -> dict[str, list[Row]]:
+    """Return side key -> swept points of the choice that is drawn."""
+    return _drawn(record)[0]
 
 
 def _drawn(record: Record) -> tuple[dict[str, list[Row]], int]:
@@ -98,7 +113,7 @@ def _marks(record: Record) -> list[Row]:
     columns = ("policy", "role", "side", "supply_V", "time_s", "energy_J")
     rows = [
         {name: row[name] for name in columns}
-        | {"shape": shapes[row["policy"]], "hollow": ambition.get(side_key(row), "today") != "today"}
+        | {"shape": shapes[row["policy"]], "ambition": ambition.get(side_key(row), "today")}
         for row in policy_rows(record)
         if row["state"] == FEASIBLE and (row["role"] == "candidate" or row["strongest"])
     ]
@@ -177,8 +192,13 @@ def _caption(plane: Plane) -> str:
         words.append("No contender has a feasible point, so there is no reference line.")
     if plane.marks:
         words.append("Larger symbols are the design points of the policies, one shape per policy.")
-        if any(mark["hollow"] for mark in plane.marks):
-            words.append("Hollow: the technology is a target or a limit, not one of today.")
+        stand = [word for word in ("today", "target", "limit") if any(m["ambition"] == word for m in plane.marks)]
+        looks = {
+            "today": "filled: today's",
+            "target": "hollow: a target",
+            "limit": "outlined, broken: a physical limit",
+        }
+        words.append(f"What the technology stands for: {'; '.join(looks[word] for word in stand)}.")
     deadline = plane.limits.deadline
     if deadline is not None:
         here = plane.x.holds(deadline)

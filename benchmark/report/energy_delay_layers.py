@@ -20,6 +20,14 @@ FAILING_DASH = [1.5, 3.5]
 ENVELOPE = ({"color": "#8a8a8a", "strokeWidth": 9.5}, {"color": "#dedede", "strokeWidth": 6.5})
 
 
+#: how a design point looks by what its technology stands for: filled, hollow, outlined
+_AMBITION: dict[str, Row] = {
+    "today": {},
+    "target": {"fill": "white"},
+    "limit": {"fill": "transparent", "strokeDash": [2.5, 1.5]},
+}
+
+
 def _segments(rows: Sequence[Row], key: str) -> list[Row]:
     """Split a curve into runs of one state; a change of state is drawn in the failing style."""
     pieces: list[Row] = []
@@ -141,7 +149,8 @@ def _labels(
         spots = _spots(plane, plane.envelope, (0.2, 0.4, 0.6, 0.8))
         put(["reference: lower envelope", "of the feasible contenders"], spots, "#4d4d4d", bold=True)
     for mark, names in _policy_groups(plane):
-        put(wrapped(", ".join(policy_name(name) for name in names), 34), [plane.pixel(mark)], INK)
+        stands = "" if mark["ambition"] == "today" else f" ({mark['ambition']})"
+        put(wrapped(", ".join(policy_name(name) for name in names) + stands, 34), [plane.pixel(mark)], INK)
     for key in order:
         for row in supplies[key]:
             put([volts(row["supply_V"])], [plane.pixel(row)], styles[key].ink, distances=(6.0, 9.0, 12.0), most=20.0)
@@ -176,10 +185,8 @@ def layers(record: Mapping[str, Any], plane: Plane) -> list[Row]:
         canvas.path(good, "time_s", "energy_J", color=look.colour, strokeWidth=look.width, strokeDash=dash)
         canvas.marks(supplies[key], "time_s", "energy_J", shape=look.marker, size=34, color=look.colour)
     for mark, _ in _policy_groups(plane):
-        fill = "white" if mark["hollow"] else styles[side_key(mark)].colour
-        canvas.marks(
-            [mark], "time_s", "energy_J", shape=mark["shape"], size=110, fill=fill, stroke=INK, strokeWidth=1.3
-        )
+        look = _AMBITION[mark["ambition"]] | {"shape": mark["shape"], "size": 110, "stroke": INK, "strokeWidth": 1.3}
+        canvas.marks([mark], "time_s", "energy_J", **({"fill": styles[side_key(mark)].colour} | look))
     canvas.backs(labels)
     canvas.words([words for label in labels for words in label.words()])
     return canvas.layers

@@ -13,13 +13,13 @@ from benchmark.report.rows import part_rows
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import amount, number, policy_name, scaled
 
-__all__ = ["where_it_goes"]
+__all__ = ["FILLS", "where_it_goes"]
 
 Record = Mapping[str, Any]
 WIDTH = 560.0
 BAR, ROW, LEFT = 26.0, 64.0, 124.0
 #: fill of each part: pale, so that words on it can be read; hatched ones differ in grey print too
-_FILLS = {
+FILLS = {
     "transit": ("#d5e6f3", True),
     "device RC": ("#d5e6f3", False),
     "device": ("#d5e6f3", False),
@@ -69,7 +69,7 @@ def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, fact
             continue
         right = left + axis.pixel(row["value_SI"] / factor)
         box = Box(left, top, right, top + BAR)
-        fill, lined = _FILLS.get(row["part"], ("#ffffff", False))
+        fill, lined = FILLS.get(row["part"], ("#ffffff", False))
         canvas.boxes([box], color=fill, stroke=INK, strokeWidth=0.8)
         if lined and right - left > 3.0:
             canvas.rules(hatch(box, 6.0), color="#a8a8a8", strokeWidth=0.8)

@@ -29,9 +29,9 @@ def _advantage(record: Record, value: Any, reason: str = "") -> str:
     return f"▼ {shown}, not better"
 
 
-def curves(figure: Figure) -> Section:
-    """Return the swept curves."""
-    return Section("curves", "Energy against time", (figure,))
+def curves(figure: Figure, ribbons: Figure) -> Section:
+    """Return the swept curves and what limits them."""
+    return Section("curves", "Energy against time", (figure, ribbons))
 
 
 def required_time(record: Record, figure: Figure) -> Section:

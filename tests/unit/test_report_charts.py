@@ -19,7 +19,7 @@ from benchmark.report.charts import charts
 from benchmark.report.contrast import contrast, grey
 from benchmark.report.energy_delay import energy_delay, envelope_path, side_name
 from benchmark.report.figure import Chart, checked, to_png, to_svg
-from benchmark.report.parts import _FILLS
+from benchmark.report.parts import FILLS
 from benchmark.report.rows import NOT_PERMITTED, curve_rows, envelope_rows, policy_rows
 from benchmark.report.style import LogAxis, looks, positive
 from benchmark.report.svg import SVG_ELEMENTS, inline_svg
@@ -29,7 +29,15 @@ from tests.report_records import changed, crossing, hostile, hub, infeasible, mi
 
 RECORDS = [mixed, hub, infeasible, crossing]
 KEYS = [
-    *("requirement-margins", "energy-delay", "advantage-against-time", "time-parts", "energy-parts", "input-swings"),
+    *(
+        "requirement-margins",
+        "energy-delay",
+        "limits-along-supply",
+        "advantage-against-time",
+        "time-parts",
+        "energy-parts",
+        "input-swings",
+    ),
     "advantage-by-node",
 ]
 
@@ -136,11 +144,46 @@ def test_every_side_is_named_beside_its_curve():
         assert side_name(record, f"{side['role']} {side['id']}") in written
 
 
+def test_strips_tell_the_mechanisms_of_the_swept_points_over_the_whole_supply_range():
+    record = mixed()
+    chart = drawn(mixed)["limits-along-supply"]
+    for curve in record["curves"]:
+        mine = [row for row in chart.points if (row["role"], row["side"]) == (curve["role"], curve["side"])]
+        for of, field in (("delay", "delay_limit"), ("energy", "energy_limit")):
+            runs = [row for row in mine if row["of"] == of]
+            usable = [point for point in curve["points"] if point["time"] is not None]
+            assert runs[0]["from_V"] == min(point["supply"] for point in usable)
+            assert runs[-1]["to_V"] == max(point["supply"] for point in usable)
+            for one, other in itertools.pairwise(runs):
+                assert one["to_V"] == other["from_V"]
+                assert one["mostly"] != other["mostly"]
+            for point in usable:
+                inside = [row["mostly"] for row in runs if row["from_V"] <= point["supply"] <= row["to_V"]]
+                assert point[field] in inside
+
+
+@pytest.mark.parametrize(("ambition", "said"), [("today", "filled"), ("target", "hollow"), ("limit", "outlined")])
+def test_design_points_tell_what_their_technology_stands_for(ambition: str, said: str):
+    def change(record: dict[str, Any]) -> None:
+        for side in record["sides"]:
+            side["ambition"] = ambition
+
+    chart = energy_delay(changed(mixed(), change))
+    marks = [layer["mark"] for layer in _layers(chart.spec) if layer["mark"].get("size") == 110]
+    assert marks
+    for mark in marks:
+        look = "outlined" if mark["fill"] == "transparent" else "hollow" if mark["fill"] == "white" else "filled"
+        assert look == said
+        assert bool(mark.get("strokeDash")) == (said == "outlined")
+    assert said in chart.caption
+    assert (f"({ambition})" in json.dumps(chart.spec)) == (ambition != "today")
+
+
 def test_parts_with_one_fill_differ_in_hatching_or_mean_the_same():
     """Device and device RC share a look: one stands in bars of energy, the other in bars of time."""
-    for one, other in itertools.combinations(_FILLS, 2):
+    for one, other in itertools.combinations(FILLS, 2):
         if {one, other} not in ({"device", "device RC"}, {"level shifter", "level shifters"}):
-            assert _FILLS[one] != _FILLS[other], (one, other)
+            assert FILLS[one] != FILLS[other], (one, other)
 
 
 # -- energy against time -----------------------------------------------------------------------------------------
