@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from benchmark.catalogue import QUANTITIES
 from benchmark.decide.compare import Comparison
-from benchmark.decide.moves import InputMove, permitted_advantage, reaches
+from benchmark.decide.moves import InputMove, permitted_advantage, range_of, reaches
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
 from benchmark.sets.study import NodePair, Study
@@ -41,15 +41,13 @@ def with_flips(
     for move in moves:
         if not move.straddles:
             continue
-        value = values[move.key]
-        assert value.spread is not None  # noqa: S101 - only ranged inputs straddle
-        best = float(value.si[0])
-        for name, advantage, end in (
-            ("flip_low", move.advantage_low, value.spread.low),
-            ("flip_high", move.advantage_high, value.spread.high),
+        best = float(values[move.key].si[0])
+        ends = range_of(values[move.key]) or (best, best)
+        for name, advantage, end in zip(
+            ("flip_low", "flip_high"), (move.advantage_low, move.advantage_high), ends, strict=True
         ):
             if reaches(advantage, study.required_advantage) != move.best_reaches:
-                wanted.append((move.key, name, best, float(end[0])))
+                wanted.append((move.key, name, best, end))
     if not wanted:
         return list(moves)
     target = float(np.log(study.required_advantage))

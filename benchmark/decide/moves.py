@@ -1,7 +1,9 @@
 """Each input moved alone over its range, both sides re-optimised, and what that does to the answer (layer 7).
 
-An input without a range is moved a little both ways, only to see whether anything rests on it. Where a moved input
-makes the candidate miss a listed requirement, the advantage there counts as none, as where it has no permitted point.
+An input without a range is moved a little both ways, only to see whether anything rests on it. A number stated as a
+bound (instrument floor, no failure so far) is moved far to its open side, so that the answer is had at both ends.
+Where a moved input makes the candidate miss a listed requirement, the advantage there counts as none, as where it has
+no permitted point.
 """
 
 from __future__ import annotations
@@ -23,13 +25,15 @@ from benchmark.sets.study import NodePair, Study
 from benchmark.sets.values import Value
 from benchmark.units import from_si, parse_unit
 
-__all__ = ["InputMove", "move_inputs", "permitted_advantage", "reaches"]
+__all__ = ["InputMove", "move_inputs", "permitted_advantage", "range_of", "reaches"]
 
 Array = NDArray[np.float64]
 #: relative step by which an input without a range is moved to see whether it matters at all
 PROBE = 0.01
 #: a smaller relative change of the advantage than this counts as none (rounding)
 NO_EFFECT = 1.0e-9
+#: factor by which a one-sided number is moved to its open side: three decades stand for "much less" or "much more"
+OPEN = 1000.0
 #: however coarse the search, a larger change than this counts
 COARSEST = 1.0e-5
 
@@ -90,14 +94,26 @@ def _probes(value: Value) -> list[float]:
     return sorted([si * (1.0 - PROBE), si * (1.0 + PROBE)])
 
 
+def range_of(value: Value) -> tuple[float, float] | None:
+    """Return the range (SI) over which an input is moved: the stated one, or the open side of a bound; else None."""
+    if value.spread is not None:
+        return float(value.spread.low[0]), float(value.spread.high[0])
+    si = float(value.si[0])
+    if not value.bound or si == 0.0:
+        return None
+    if value.bound == "at-most":
+        return (max(1.0, si / OPEN) if QUANTITIES[value.name].domain == "count" else si / OPEN), si
+    share = QUANTITIES[value.name].domain in ("fraction", "share")
+    return si, (1.0 if share else si * OPEN)
+
+
 def _moves_of(values: Mapping[str, Value], shaping: Sequence[str]) -> list[tuple[str, float, float]]:
     """List what is moved; counts that shape the netlist stay, for another netlist is another study."""
     moves: list[tuple[str, float, float]] = []
     for key, value in values.items():
         if value.name in shaping:
             continue
-        spread = value.spread
-        ends = [float(spread.low[0]), float(spread.high[0])] if spread is not None else _probes(value)
+        ends = range_of(value) or _probes(value)
         moves += [(key, float(value.si[0]), end) for end in ends]
     return moves
 
@@ -167,9 +183,9 @@ def move_inputs(
 
 def _move(study: Study, key: str, value: Value, best: float, ends: Sequence[float], matters: bool) -> InputMove:
     unit = parse_unit(QUANTITIES[value.name].unit)
-    ranged = value.spread is not None
-    low = from_si(float(value.spread.low[0]), unit) if value.spread else float("nan")
-    high = from_si(float(value.spread.high[0]), unit) if value.spread else float("nan")
+    span = range_of(value)
+    ranged = span is not None
+    low, high = (from_si(end, unit) for end in span) if span is not None else (float("nan"), float("nan"))
     required = study.required_advantage
     best_reaches = reaches(best, required)
     straddles = ranged and any(reaches(end, required) != best_reaches for end in ends)

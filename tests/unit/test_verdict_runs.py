@@ -181,6 +181,32 @@ def test_flip_values_put_back_give_the_required_advantage(policy: str):
                 assert np.isnan(compare(moved(loaded, move.key, to_si(number(past), unit))).advantage[0])
 
 
+def test_a_bound_is_used_at_both_ends():
+    """A leakage at the instrument floor is an upper bound: much less of it helps its side, so both ends must agree."""
+    options: dict[str, Any] = {
+        "timing": "clocked",
+        "accounting": "period",
+        "values": {"clock_frequency": v(D("10.0"), "kHz")},
+    }
+    leaks = {"options": {"off_state": "current"}, "off_resistance": None}
+    floor = v(D("1.0"), "pA", bound="at-most", evidence="measured", conditions="instrument floor")
+    # 14 with the leakage as stated, 4 without
+    found = verdict(pair({"off_resistance": 1e12}, leaks | {"open_state_current": floor}, required=8.0, **options))
+    assert found.advantage > 8.0
+    assert found.word == UNDECIDED
+    assert found.measure_next[0].startswith("old.open_state_current at least")
+    move = next(item for item in found.moves if item.key == "old.open_state_current")
+    assert (move.low, move.high) == (near(0.001, rel=1e-12), near(1.0, rel=1e-12))
+    assert move.advantage_low < 8.0 < move.advantage_high
+    # on the candidate's side an upper bound is the worse end already
+    new = verdict(pair(leaks | {"open_state_current": floor}, {"off_resistance": 1e6}, required=3.0, **options))
+    assert (new.word, new.advantage_low) == (GO, new.advantage)
+    # stated as a number, the same leakage is believed
+    plain = v(D("1.0"), "pA")
+    sure = verdict(pair({"off_resistance": 1e12}, leaks | {"open_state_current": plain}, required=8.0, **options))
+    assert sure.word == GO
+
+
 # -- requirements --------------------------------------------------------------------------------------------------
 
 
