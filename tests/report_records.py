@@ -5,6 +5,7 @@ from __future__ import annotations
 import copy
 import functools
 import itertools
+import math
 import tempfile
 from collections.abc import Callable
 from pathlib import Path
@@ -63,6 +64,8 @@ def infeasible() -> Record:
                     row[key] = None
             row["strongest"], row["note"] = "", "candidate infeasible"
         record["crossings"], record["node_crossings"], record["closed_form"] = [], [], []
+        for step in record["node_steps"]:
+            step |= {"total": None, "parts": {}, "note": "one of the nodes has no advantage"}
         record["verdict"] |= {
             "word": "no-go, requirement failed",
             "reasons": ["requirement deadline failed (margin 0.01, needs 1)"],
@@ -95,6 +98,8 @@ def crossing() -> Record:
             if (a["advantage"] >= level) != (b["advantage"] >= level)
         ]
         record["nodes"][0]["advantage"], record["nodes"][1]["advantage"] = 1.9, 2.1
+        record["node_steps"][0] |= {"total": math.log(2.1 / 1.9), "parts": {"wires": -0.2, "reference values": 0.3}}
+        record["node_steps"][0]["parts"]["not carried by values"] = math.log(2.1 / 1.9) - 0.1
         record["node_crossings"] = [{"level": 2.0, "between": ["g1", "g2"], "advantages": [1.9, 2.1]}]
         ranged = [row for row in record["verdict"]["moves"] if row["ranged"]]
         for row in ranged[:3]:
@@ -128,7 +133,15 @@ def hostile(record: Record, payload: str = HOSTILE) -> Record:
 
     def walk(value: Any, key: str) -> Any:
         if isinstance(value, dict):
-            if key in ("sources", "device_margins", "time_parts", "energy_parts", "delay_shares", "energy_shares"):
+            if key in (
+                "sources",
+                "device_margins",
+                "time_parts",
+                "energy_parts",
+                "delay_shares",
+                "energy_shares",
+                "parts",
+            ):
                 return {payload + name: walk(item, "") for name, item in value.items()}
             if key == "reference":
                 return {payload + name: walk(item, "") for name, item in value.items()}

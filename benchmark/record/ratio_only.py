@@ -327,6 +327,7 @@ def _parts(make: _Maker, record: Record, words: str) -> Row:
         "advantage_against_time": make.advantages(),
         "crossings": [{"level": row["level"], "time": make.by(row["time"], "s")} for row in record["crossings"]],
         "nodes": make.nodes(),
+        "node_steps": list(record.get("node_steps", ())),
         "node_crossings": record["node_crossings"],
         "anchors": make.anchors(),
         "closed_form": make.closed_form(),

@@ -21,6 +21,7 @@ from benchmark.decide.notices import result_warnings
 from benchmark.decide.policies import DIAGNOSTIC, own_limit
 from benchmark.decide.requirements import functional_margins
 from benchmark.decide.self_checks import self_checks
+from benchmark.decide.steps import node_steps
 from benchmark.decide.verdict import Verdict, judge
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
@@ -149,6 +150,7 @@ def run_study(
     progress("required times and nodes", 0.7)
     envelope = advantage_against_time(study, primary.curves)
     nodes = scan_nodes(study, study.policy.primary)
+    steps = node_steps(study, study.policy.primary, nodes)
     progress("checking the reference and the method", 0.8)
     anchors = [result for item in technologies(study) if item.model for result in anchor_results(item)]
     checks = self_checks(study, primary.outcome)
@@ -168,6 +170,7 @@ def run_study(
         "advantage_against_time": envelope_rows(envelope),
         "crossings": _crossings(study, envelope),
         "nodes": [vars(row) for row in nodes],
+        "node_steps": [vars(step) for step in steps],
         "node_crossings": _node_crossings(study, [row.advantage for row in nodes]),
         "anchors": [vars(row) for row in anchors],
         "closed_form": closed_form_differences(primary.comparison, primary.outcome),

@@ -14,6 +14,7 @@ from benchmark.report.margins import requirement_margins
 from benchmark.report.parts import where_it_goes
 from benchmark.report.ribbons import limits_along_supply
 from benchmark.report.rows import ratio_columns
+from benchmark.report.steps import node_steps
 from benchmark.report.swings import input_swings
 
 __all__ = ["charts"]
@@ -30,6 +31,7 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         *where_it_goes(record),
         input_swings(record),
         advantage_by_node(record),
+        node_steps(record),
     ]
     if record.get("ratio_only"):
         found = [dataclasses.replace(chart, points=tuple(ratio_columns(chart.points))) for chart in found]

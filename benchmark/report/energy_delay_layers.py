@@ -185,8 +185,13 @@ def layers(record: Mapping[str, Any], plane: Plane) -> list[Row]:
         canvas.path(good, "time_s", "energy_J", color=look.colour, strokeWidth=look.width, strokeDash=dash)
         canvas.marks(supplies[key], "time_s", "energy_J", shape=look.marker, size=34, color=look.colour)
     for mark, _ in _policy_groups(plane):
-        look = _AMBITION[mark["ambition"]] | {"shape": mark["shape"], "size": 110, "stroke": INK, "strokeWidth": 1.3}
-        canvas.marks([mark], "time_s", "energy_J", **({"fill": styles[side_key(mark)].colour} | look))
+        look_of_mark: Row = _AMBITION[mark["ambition"]] | {
+            "shape": mark["shape"],
+            "size": 110,
+            "stroke": INK,
+            "strokeWidth": 1.3,
+        }
+        canvas.marks([mark], "time_s", "energy_J", **{"fill": styles[side_key(mark)].colour, **look_of_mark})
     canvas.backs(labels)
     canvas.words([words for label in labels for words in label.words()])
     return canvas.layers

@@ -188,7 +188,7 @@ def _node_side(row: Mapping[str, Any], side: str) -> list[str]:
     return shown if is_number(energy) else [INFEASIBLE] * 3
 
 
-def nodes(record: Record, figure: Figure) -> Section:
+def nodes(record: Record, figure: Figure, steps: Figure) -> Section:
     """Return the primary policy at every node pair."""
     rows = [
         (
@@ -204,6 +204,5 @@ def nodes(record: Record, figure: Figure) -> Section:
         *("node", "advantage", "strongest contender", "candidate supply", "candidate time", "candidate energy"),
         *("reference supply", "reference time", "reference energy"),
     )
-    return Section(
-        "nodes", "Nodes", (figure, plain("nodes", "Primary policy at every node pair", columns, rows, wide=True))
-    )
+    table = plain("nodes", "Primary policy at every node pair", columns, rows, wide=True)
+    return Section("nodes", "Nodes", (figure, table, steps))

@@ -22,6 +22,7 @@ from benchmark.report.rows import (
     sides_of,
     word,
 )
+from benchmark.report.steps import step_rows
 
 if TYPE_CHECKING:
     import pandas
@@ -256,6 +257,7 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "requirements": _requirements,
     "moves": _moves,
     "nodes": _nodes,
+    "node_steps": step_rows,
     "anchors": _anchors,
     "closed_form": _closed_form,
     "ledger": ledger_table,

@@ -42,7 +42,7 @@ NAMES = [
     "what_if",
     "worked_study",
 ]
-RESULT = ["advantage", "conditions", "frames", "measure_next", "reasons", "record", "report", "save", "summary", "text"]
+RESULT = ["advantage", "conditions", "frames", "measure_next", "reasons", "record", "report", "save", "ratio_only", "summary", "text"]
 MEMBERS = {
     "Result": [*RESULT, "verdict"],
     "SetView": ["frame", "id", "nodes", "parameters", "sources", "title"],

@@ -176,7 +176,7 @@ KEPT = {
     *("schema", "advantage", "advantage_low", "advantage_high", "margin", "difference", "size", "level", "value"),
     *("inputs_with_effect", "inputs_without_range", "inputs_of_judgement", "required_advantage", "exponent", "line"),
     *("guard_band_delay", "guard_band_leakage", "temperatures", "temperature", "supply_points", "refine_relative"),
-    *("delay_shares", "energy_shares", "device_margins", "sizes", "advantages", "year"),
+    *("delay_shares", "energy_shares", "device_margins", "sizes", "advantages", "year", "parts", "total"),
 }
 
 
@@ -184,7 +184,7 @@ def _same(old: Any, new: Any, key: str) -> Iterator[str]:
     """Keys under which a number came through unchanged."""
     if isinstance(old, dict) and isinstance(new, dict):
         for name in old.keys() & new.keys():
-            inner = key if key in ("delay_shares", "energy_shares", "device_margins") else name
+            inner = key if key in ("delay_shares", "energy_shares", "device_margins", "parts") else name
             yield from _same(old[name], new[name], inner)
     elif isinstance(old, list) and isinstance(new, list):
         for a, b in zip(old, new, strict=False):

@@ -38,7 +38,7 @@ KEYS = [
         "energy-parts",
         "input-swings",
     ),
-    "advantage-by-node",
+    *("advantage-by-node", "node-steps"),
 ]
 
 

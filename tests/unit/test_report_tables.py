@@ -16,6 +16,7 @@ from tests.report_records import hub, infeasible, mixed
 #: endings that say the unit, and columns that are counts, factors or shares
 UNITS = ("_s", "_J", "_V", "_W", "_m2", "_W_per_m2", "_K", "_SI")
 PURE = {
+    *("ln_factor", "factor"),  # on the advantage
     *(
         "advantage",
         "size",
