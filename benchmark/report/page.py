@@ -16,6 +16,7 @@ from benchmark.report import section_question as asked
 from benchmark.report import section_results as results
 from benchmark.report.blocks import Figure, Section, Table, plain
 from benchmark.report.figure import Chart
+from benchmark.report.section_points import points
 from benchmark.report.svg import inline_svg
 from benchmark.report.words import plural, visible
 
@@ -63,6 +64,7 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
         results.curves(shown["energy-delay"], shown["limits-along-supply"]),
         results.required_time(record, shown["advantage-against-time"]),
         results.energy_and_time(record, shown["time-parts"], shown["energy-parts"]),
+        points(record),
         results.policies(record),
         results.moves(record, shown["input-swings"]),
         results.nodes(record, shown["advantage-by-node"], shown["node-steps"]),

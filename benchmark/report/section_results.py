@@ -8,6 +8,7 @@ from typing import Any
 from benchmark.report.advantage import crossing_words, levels
 from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Paragraph, Section, Table, plain
 from benchmark.report.rows import NOT_PERMITTED, flips_of
+from benchmark.report.section_points import anchor_of
 from benchmark.report.words import amount, is_number, number, plural, policy_name, spaced, volts
 
 __all__ = ["curves", "energy_and_time", "moves", "nodes", "policies", "required_time"]
@@ -53,7 +54,7 @@ def _limits(record: Record) -> Table:
         energy = f"{point['energy_limit']}, {number(100 * point['energy_shares'].get(point['energy_limit'], 0.0))} %"
         rows.append(
             (
-                side["id"],
+                Cell(side["id"], anchor_of(record, role, side["id"])),
                 role,
                 volts(point["supply"], 3),
                 amount(point["time"], "s", 3),

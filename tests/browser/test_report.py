@@ -399,3 +399,40 @@ def test_no_words_of_the_one_page_figure_leave_the_page(browser: Browser, tmp_pa
     context.close()
     assert len(boxes) > 60
     assert [box for box in boxes if min(box[1:]) < 20] == []
+
+
+def test_values_of_a_chart_can_be_read_by_keyboard(visit: Any):
+    seen = visit("mixed")
+    page = seen.page
+    field = page.locator("#read-energy-delay")
+    said = page.locator("#chart-energy-delay output")
+    first = said.inner_text()
+    field.focus()
+    page.keyboard.press("ArrowRight")
+    second = said.inner_text()
+    assert second != first
+    cells = page.locator("#data-energy-delay-table tbody tr").nth(1).locator("th, td").all_text_contents()
+    for text in filter(None, (cell.strip() for cell in cells)):
+        assert text in second
+    assert field.get_attribute("aria-valuetext") == second
+    page.keyboard.press("End")
+    assert "design point" in said.inner_text()
+    assert seen.complaints == []
+
+
+def test_without_scripts_there_is_no_reader_of_values(visit: Any):
+    seen = visit("mixed", java_script_enabled=False)
+    assert not seen.page.locator(".read").first.is_visible()
+
+
+def test_design_points_lead_to_their_arithmetic_and_on_to_the_ledger(visit: Any):
+    page = visit("mixed").page
+    page.locator("#design-points-table tbody a").first.click()
+    assert page.evaluate("location.hash") == "#point-candidate-table"
+    rows = page.locator("#point-candidate-table tbody tr")
+    assert rows.count() >= 2
+    assert rows.locator("td:last-child").all_text_contents() == ["agrees"] * rows.count()
+    page.locator("#point-candidate-inputs-table tbody a").first.click()
+    target = page.evaluate("location.hash")
+    assert page.locator(target).is_visible()
+    assert target.startswith("#value-")

@@ -1,4 +1,19 @@
 "use strict";
+for (const box of document.querySelectorAll(".read")) {
+  const table = document.getElementById(box.dataset.for + "-table");
+  const heads = [...table.tHead.rows[0].cells].map((cell) => cell.textContent.replaceAll("_", " "));
+  const field = box.querySelector("input");
+  const shown = box.querySelector("output");
+  const read = () => {
+    const cells = [...table.tBodies[0].rows[field.value].cells].map((cell) => cell.textContent.trim());
+    const words = heads.map((head, i) => (cells[i] ? head + " " + cells[i] : "")).filter(Boolean).join("; ");
+    shown.textContent = words;
+    field.setAttribute("aria-valuetext", words);
+  };
+  field.addEventListener("input", read);
+  read();
+  box.hidden = false;
+}
 for (const box of document.querySelectorAll(".filter")) {
   const key = box.dataset.for;
   const rows = [...document.querySelectorAll("#" + key + "-table tbody tr")];
