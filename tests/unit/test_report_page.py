@@ -32,6 +32,7 @@ SECTIONS = [
         "curves",
         "required-time",
         "parts",
+        "points",
         "policies",
         "moves",
         "nodes",
