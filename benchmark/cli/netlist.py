@@ -8,6 +8,7 @@ from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import get_args
 
+import numpy as np
 import typer
 
 import benchmark
@@ -16,7 +17,7 @@ from benchmark.cli.chosen import ChosenPoint, choose_point, node_pair, study_inp
 from benchmark.cli.commands import check_folders
 from benchmark.errors import EvenloadError, UsageError
 from benchmark.evaluate.deck import side_deck
-from benchmark.evaluate.points import design_points
+from benchmark.evaluate.points import Points, design_points
 from benchmark.record.load import load_study
 from benchmark.sets.study import Study
 
@@ -45,14 +46,15 @@ def netlist_command(
     with study_inputs(study_path, overrides or {}) as (path, numbers):
         study, _ = load_study(path, nodes, numbers)
         chosen = choose_point(study, node_pair(study, node), side, supply)
-        kelvin = _slowest_temperature(study, chosen)
+        points = design_points(chosen.run.problem, np.array([[chosen.supply]]), *chosen.frozen)
+        kelvin = study.temperatures[int(points.slowest_temperature[0, 0])]
         text = side_deck(
             chosen.run.problem,
             (chosen.supply, *chosen.frozen),
             kelvin,
             net=net,
             capacitances=chosen_capacitances,
-            comments=_comments(study, chosen, kelvin, numbers),
+            comments=[*_comments(study, chosen, kelvin, numbers), *_reservations(points)],
         )
     _write(target, text)
     typer.echo(f"{target}: {chosen.name} at {chosen.supply:g} V; run it with: ngspice -b {target}")
@@ -66,11 +68,10 @@ def _capacitances(name: str) -> Capacitances:
     raise UsageError(message)
 
 
-def _slowest_temperature(study: Study, chosen: ChosenPoint) -> float:
-    import numpy as np
-
-    points = design_points(chosen.run.problem, np.array([[chosen.supply]]), *chosen.frozen)
-    return study.temperatures[int(points.slowest_temperature[0, 0])]
+def _reservations(points: Points) -> list[str]:
+    """Say why the study would not use this point; what no switch can do at all is refused later."""
+    reasons = [reason for reason, mask in points.infeasible.items() if mask[0, 0]]
+    return [f"The study does not permit this point: {'; '.join(reasons)}"] if reasons else []
 
 
 def _comments(study: Study, chosen: ChosenPoint, kelvin: float, numbers: Mapping[str, str]) -> list[str]:

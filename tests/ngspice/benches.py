@@ -12,6 +12,7 @@ import numpy as np
 from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Circuit, Load, Net, Wires
 from benchmark.circuits.deck import Capacitances, DeckStage, Pace, chain_deck, deck_stage, ring_deck
+from benchmark.circuits.deck_cells import cell_lines, inner_levels, switch_lines
 from benchmark.circuits.deck_control import CHAIN_RESULTS, RING_RESULTS, STATIC_RESULTS
 from benchmark.circuits.operation import OperationMetrics, estimate
 from benchmark.circuits.sized import Sized
@@ -25,7 +26,7 @@ from benchmark.evaluate.deck import pace_of, switch_texts
 from benchmark.record.load import load_technology
 from tests.ngspice.runner import run_deck
 
-__all__ = ["NO_WIRES", "Bench", "bench", "current_grid", "quasi_static"]
+__all__ = ["NO_WIRES", "Bench", "bench", "current_grid", "four_states", "quasi_static"]
 
 NO_WIRES = Wires(0.0, 0.0)
 _KNOBS: Mapping[str, Array] = {"threshold_shift": np.zeros((1, 1, 1))}
@@ -50,17 +51,18 @@ def quasi_static(pair: SwitchPair) -> SwitchPair:
 
 @dataclass(frozen=True)
 class Bench:
-    """One pair of switches at one design point, in stages of one cell."""
+    """One pair of switches at one design point, in stages of one cell that drive input ``pin`` of the next."""
 
     pair: SwitchPair
     texts: SubCircuits
     cell: Cell
     fan_out: float
+    pin: str
 
     @property
     def net(self) -> Net:
         """A stage that drives its own kind, no wire."""
-        loads = (Load(self.cell, self.cell.inputs[0], self.fan_out),)
+        loads = (Load(self.cell, self.pin, self.fan_out),)
         return Net("stage", self.cell, loads=loads, rising_per_operation=1.0, on_critical_path=1.0)
 
     def estimate(self, rule: str = "chain") -> OperationMetrics:
@@ -96,9 +98,7 @@ class Bench:
 
     def ring(self, stages: int, capacitances: Capacitances = "delay") -> dict[str, float]:
         """Every number the deck of a ring prints."""
-        deck = ring_deck(
-            ["ring of a test"], self.stage(capacitances), self.texts, self.supply, self.pace, stages
-        )
+        deck = ring_deck(["ring of a test"], self.stage(capacitances), self.texts, self.supply, self.pace, stages)
         return run_deck(deck, RING_RESULTS).numbers
 
 
@@ -109,6 +109,7 @@ def bench(
     *,
     cell_name: str = "inverter",
     fan_out: float = 4.0,
+    pin: str = "a",
     kelvin: float | None = None,
     actuator: bool = True,
 ) -> Bench:
@@ -121,7 +122,34 @@ def bench(
     pair = device.switch(prepared, volts, temperature, _KNOBS)
     if not actuator:
         pair = quasi_static(pair)
-    return Bench(pair, switch_texts(device, prepared, pair, _KNOBS), cell(cell_name), fan_out)
+    return Bench(pair, switch_texts(device, prepared, pair, _KNOBS), cell(cell_name), fan_out, pin)
+
+
+def four_states(one: Bench) -> list[float]:
+    """Return the leakage power of a two-input cell [W] with (a, b) low-low, high-low, low-high, high-high."""
+    supply = one.supply
+    lines = ["* leakage of a cell", *switch_lines(one.texts, "delay")]
+    lines += cell_lines(one.cell, "unit", {"down": 0.0, "up": 0.0})
+    for state in range(4):
+        high = {"a": bool(state & 1), "b": bool(state & 2)}
+        level = {name: supply if on else 0.0 for name, on in high.items()}
+        lines += [f"v{pin}{state} {pin}{state} 0 {volts!r}" for pin, volts in level.items()]
+        lines += [f"vr{state} r{state} 0 {supply!r}", f"x{state} o{state} r{state} a{state} b{state} {one.cell.name}"]
+        guesses = {f"o{state}": one.cell.output(high)}
+        guesses |= {f"x{state}.{node}": on for node, on in inner_levels(one.cell, high).items()}
+        lines.append(".nodeset " + " ".join(f"v({n})={supply if on else 0.0!r}" for n, on in guesses.items()))
+    lines += [
+        ".options reltol=1e-6 abstol=1e-18 vntol=1e-12 gmin=1e-20 pivtol=1e-30 itl1=1000",
+        ".control",
+        "set numdgt=10",
+        "op",
+        *(f"let p{state} = -i(vr{state})*{supply!r}\nprint p{state}" for state in range(4)),
+        "quit 0",
+        ".endc",
+        ".end",
+    ]
+    numbers = run_deck("\n".join(lines), [f"p{state}" for state in range(4)]).numbers
+    return [numbers[f"p{state}"] for state in range(4)]
 
 
 def current_grid(text: tuple[str, ...], gates: Array, paths: Array, *, up: bool = False, lift: float = 0.0) -> Array:

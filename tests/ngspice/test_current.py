@@ -72,7 +72,7 @@ def test_virtual_source_carries_nothing_at_zero_and_is_odd_in_its_ends():
 
 
 def test_virtual_source_agrees_with_the_physics_function_itself():
-    """The record's law is ``physics.virtual_source.drain_current`` of the calibrated transistor; said once more here."""
+    """A transistor of our own, one access resistance left out, against ``drain_current``."""
     t = vs.Transistor(
         width=1e-6, length=25e-9, inversion_capacitance=0.024, source_resistance=90e-6, drain_resistance=0.0,
         velocity=1.1e5, mobility=0.02, threshold=0.4, slope_factor=1.2, barrier_lowering=0.08, fermi_width=3.5,

@@ -43,7 +43,7 @@ class Gate:
     slope [Pa/V], offset [Pa]
         Pressure on the channel = slope x control + offset, not below zero.
     blocked [F]
-        C_0, capacitance before the column has moved; None: the input is a plain capacitor.
+        C_0, capacitance before the column has moved; None, or no actuator in the record: a plain capacitor.
     leakage_resistance [ohm]
         Of the film; None: not part of the model.
     """
@@ -61,7 +61,7 @@ def switch_text(switch: Switch, polarity: Polarity, channel: Channel, gate: Gate
     driven = lines + _channel(channel, gate, held(control, volts))
     capacitance = scalar(switch.input_charge) / volts
     leak = () if gate.leakage_resistance is None else (f"Rfilm g p r={{{number(gate.leakage_resistance)}/size}}",)
-    if gate.blocked is None:
+    if gate.blocked is None or not math.isfinite(scalar(switch.natural_frequency)):
         own = (f"Cgate g p {{{number(capacitance)}*size}}", *leak)
         charged = driven + named(own, "input capacitance")
     else:
