@@ -116,7 +116,8 @@ def crossing() -> Record:
 
 #: one text with everything that may run, load, end an element or confuse a parser
 HOSTILE = (
-    "</script></style></title>--><!--<script><script>document.title='owned'</script><img src=x onerror=\"document.title='owned'\">"
+    "</script></style></title>--><!--<script><script>document.title='owned'</script>"
+    "<img src=x onerror=\"document.title='owned'\">"
     "<svg/onload=document.title='owned'>{{7*7}}{% raw %}${7*7}]]>&lt;b&gt;'\"`\\u003cb\\u003e"
     "<a href=\"javascript:document.title='owned'\">url(http://example.invalid/x)</a>\x01\u202edatum['x']"
 )

@@ -70,7 +70,9 @@ def matching_digits(expected: float, obtained: float) -> float:
 def failures(binding: Binding, row: dict[str, str]) -> list[str]:
     """Compare; an empty list means the row holds."""
     raw = binding.obtain()
-    obtained = [float(raw)] if isinstance(raw, (int, float)) or getattr(raw, "ndim", 1) == 0 else [float(x) for x in raw]
+    obtained = (
+        [float(raw)] if isinstance(raw, (int, float)) or getattr(raw, "ndim", 1) == 0 else [float(x) for x in raw]
+    )
     printed = expected_numbers(row)
     picked = [printed[i] for i in binding.picks] if binding.picks else printed[: len(obtained)]
     if len(picked) != len(obtained):

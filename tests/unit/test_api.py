@@ -42,7 +42,19 @@ NAMES = [
     "what_if",
     "worked_study",
 ]
-RESULT = ["advantage", "conditions", "frames", "measure_next", "reasons", "record", "report", "save", "ratio_only", "summary", "text"]
+RESULT = [
+    "advantage",
+    "conditions",
+    "frames",
+    "measure_next",
+    "reasons",
+    "record",
+    "report",
+    "save",
+    "ratio_only",
+    "summary",
+    "text",
+]
 MEMBERS = {
     "Result": [*RESULT, "verdict"],
     "SetView": ["frame", "id", "nodes", "parameters", "sources", "title"],

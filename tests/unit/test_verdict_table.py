@@ -41,7 +41,7 @@ def requirement(state: str, name: str = "endurance", margin: float = 2.0, **more
     fields = {"kind": "report", "passes_somewhere": False, "note": "", **more}
     return RequirementResult(
         name, fields["kind"], state, 1.0, 1.0, margin, "1", "", fields["passes_somewhere"], fields["note"]
-    )  # type: ignore[arg-type]  # noqa: E501
+    )  # type: ignore[arg-type]
 
 
 def move(
