@@ -298,11 +298,12 @@ def test_width_of_one_side_divides_or_multiplies_the_advantage(a: Any, b: Any, k
         knobs["knobs"]["size"] = {"values": [number(k)]}
         other = compare(load(inputs))
         assert other.advantage[0] == near(expected * one.advantage[0], rel=EXACT)
-        assert other.candidate.time[0] == near(one.candidate.time[0], rel=EXACT)
+        # the supply of a flat optimum is known to the resolution of the search only
+        assert other.candidate.time[0] == near(one.candidate.time[0], rel=1e-5)
     wide = copy.deepcopy(base)
     wide.study["candidate"]["knobs"]["size"] = {"values": [number(k)]}
     before, after = (compare(load(x)).candidate.optimum.points for x in (base, wide))
-    assert after.leakage_power[0, 0] == near(k * before.leakage_power[0, 0], rel=EXACT)
+    assert after.leakage_power[0, 0] == near(k * before.leakage_power[0, 0], rel=1e-5)
     assert after.area[0, 0] == near(k * before.area[0, 0], rel=EXACT)
 
 
