@@ -59,6 +59,43 @@ STUDY_QUANTITIES: tuple[Quantity, ...] = (
     Quantity(
         "bit_gate_pitches", "L_bp", "width of one bit of a word in gate pitches of each technology", "1", 0.5, 50.0
     ),
+    Quantity("row_count", "N_row", "cells on a bit line of a memory", "1", 2.0, 4096.0, "count"),
+    Quantity("column_count", "N_col", "cells on a word line of a memory", "1", 1.0, 4096.0, "count"),
+    Quantity("memory_cell_width", "w_mem", "width of a memory cell, along the word line", "um", 0.05, 10.0),
+    Quantity("memory_cell_height", "h_mem", "height of a memory cell, along the bit line", "um", 0.05, 10.0),
+    Quantity(
+        "memory_cell_word_line_load",
+        "C_wl",
+        "load of one memory cell on its word line, wire not included",
+        "fF",
+        0.01,
+        10.0,
+        "nonnegative",
+    ),
+    Quantity(
+        "memory_cell_bit_line_load",
+        "C_bl",
+        "load of one memory cell on a bit line, wire not included",
+        "fF",
+        0.01,
+        10.0,
+        "nonnegative",
+    ),
+    Quantity(
+        "memory_cell_read_current",
+        "I_read",
+        "current with which a memory cell discharges its bit line",
+        "uA",
+        0.1,
+        500.0,
+    ),
+    Quantity("memory_cell_supply", "V_cell", "supply of the memory cells, word lines and precharge", "V", 0.1, 5.0),
+    Quantity(
+        "bit_line_swing", "dV_bl", "difference on the bit lines at which the sense amplifier starts", "V", 0.01, 1.0
+    ),
+    Quantity("line_length", "L_line", "length of a repeated line, fixed by the floor plan", "um", 10.0, 5.0e4),
+    Quantity("repeater_count", "k_rep", "repeaters of a line, the driver included", "1", 1.0, 1000.0, "count"),
+    Quantity("driver_copies", "h_drv", "parallel copies of an inverter in one line driver", "1", 1.0, 1000.0, "count"),
     Quantity("stage_count", "N_ring", "stages of a ring", "1", 3.0, 101.0, "count"),
     Quantity("residual_leakage", "r", "share of the leakage left when power-gated", "1", 1.0e-4, 1.0, "fraction"),
     Quantity(

@@ -6,17 +6,23 @@ random have the shape (draw, 1, 1)). Everything is SI.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 from benchmark.circuits.cells import Cell
 from benchmark.devices.record import Array
 from benchmark.errors import UsageError
 
-__all__ = ["Circuit", "Layer", "LengthUnit", "Load", "Net", "SwingFrom", "Value", "Wires"]
+if TYPE_CHECKING:
+    from benchmark.circuits.rules import StageRule
+    from benchmark.circuits.sized import Sized
+
+__all__ = ["Circuit", "Discharge", "Fit", "Layer", "LengthUnit", "Load", "Net", "SwingFrom", "Value", "Wires"]
 
 Value = float | Array
+#: shapes a circuit to a technology, from its sized switches, the wires and the delay rule
+Fit = Callable[["Sized", "Wires", "StageRule"], "Circuit"]
 LengthUnit = Literal["m", "gate_pitch"]
 SwingFrom = Literal["own-rail", "supply"]
 
@@ -63,13 +69,32 @@ class Load:
 
 
 @dataclass(frozen=True)
+class Discharge:
+    """Something outside the technology that discharges a net at the far end of its wire: a memory cell.
+
+    current [A]
+        Constant while the net falls by its swing.
+    rail [V]
+        From which the driver restores the net; energy C rail swing.
+    """
+
+    current: Value
+    rail: Value
+
+
+@dataclass(frozen=True)
 class Net:
     """One net, or ``count`` alike nets, with the cell that drives each of them.
 
     driver
         The cell whose output the net is. Its switches, leakage and area belong to this net.
+    copies [1]
+        Parallel copies of the driver: so many times its drive, terminals, leakage and area.
     loads, fixed_load [F]
         Driven inputs and a fixed capacitance, both at the far end of the wire.
+    load_per_length [F/m]
+        Fixed loads spread evenly along the wire (memory cells); it counts as fixed load in energy and, for the wire's
+        resistance, as part of the distributed line.
     wire_length [m or gate pitches]
         ``length_unit`` says which; a gate pitch is the square root of the mean cell area of the circuit in the
         technology at hand, so a larger cell pays with longer wires.
@@ -80,6 +105,12 @@ class Net:
     swing_from
         ``own-rail``: the net is charged from a rail of the voltage ``swing``, energy C swing^2.
         ``supply``: it is charged from the logic supply V through part of the swing, energy C V swing.
+    discharge
+        The net falls by ``swing``, pulled by something outside the technology; loads stand at the near end of the wire,
+        with the driver, which only restores it. See ``stage``.
+    latch_from [V]
+        The driver is one of two cross-coupled inverters; the net starts as far apart from its partner and regenerates
+        to half the supply. See ``latch``.
     rising_per_operation [1]
         Activity: rising transitions of one such net per operation.
     busiest_per_operation [1]
@@ -107,6 +138,31 @@ class Net:
     count: Value = 1.0
     on_critical_path: Value = 0.0
     group: str = "logic"
+    copies: Value = 1.0
+    load_per_length: Value = 0.0
+    discharge: Discharge | None = None
+    latch_from: Value | None = None
+
+    def __post_init__(self) -> None:
+        if self.discharge is not None and (self.swing is None or self.latch_from is not None):
+            message = f"net {self.name!r}: a net that is discharged from outside needs a swing and is no latch"
+            raise UsageError(message)
+
+    @property
+    def gated(self) -> bool:
+        """Tell whether the net is driven by a complementary gate on both edges."""
+        return self.discharge is None and self.latch_from is None
+
+    @property
+    def plain(self) -> bool:
+        """Tell whether one copy of a complementary gate with loads at the end of a wire describes the net."""
+        return (
+            self.gated
+            and isinstance(self.copies, float)
+            and self.copies == 1.0
+            and isinstance(self.load_per_length, float)
+            and self.load_per_length == 0.0
+        )
 
     @property
     def busiest(self) -> Value:
@@ -127,6 +183,8 @@ class Circuit:
     stage
         Text of the one kind of stage the circuit is made of ("inverter, fan-out 4, no wire"); empty when it has
         several. A technology known only at one stage can be used in a circuit of just that stage.
+    fit
+        Shapes the circuit to a technology (repeaters: how many, how wide); ``nets`` are then an example of it.
     """
 
     name: str
@@ -136,6 +194,7 @@ class Circuit:
     layers: Mapping[str, Layer] = field(default_factory=dict)
     assumptions: tuple[str, ...] = ()
     stage: str = ""
+    fit: Fit | None = None
 
     def __post_init__(self) -> None:
         if not self.nets:

@@ -19,11 +19,13 @@ from benchmark.circuits.built_in import LENGTH_NAMES, BuiltIn, Scenario, netlist
 from benchmark.circuits.cells import Cell, cell
 from benchmark.circuits.circuit import Circuit, Load, Net, Value
 from benchmark.circuits.complex_adder import COMPLEX_GATE_ADDER
+from benchmark.circuits.memory import SRAM_READ, SRAM_WORD_LINE
 from benchmark.circuits.multiplier import ARRAY_MULTIPLIER
 from benchmark.circuits.net_length import average_net_pitches, length_convention
 from benchmark.circuits.netlist import loads, longest_path
 from benchmark.circuits.prefix_adder import ADDITION, PREFIX_ADDERS
 from benchmark.circuits.register import FLIP_FLOP, register_facts
+from benchmark.circuits.repeaters import REPEATED_LINE
 from benchmark.errors import UsageError, nearest
 
 __all__ = ["BUILT_IN", "BuiltIn", "build", "netlist_nets"]
@@ -276,6 +278,9 @@ BUILT_IN: Final[Mapping[str, BuiltIn]] = MappingProxyType(
             *PREFIX_ADDERS,
             COMPLEX_GATE_ADDER,
             ARRAY_MULTIPLIER,
+            SRAM_WORD_LINE,
+            SRAM_READ,
+            REPEATED_LINE,
         )
     }
 )

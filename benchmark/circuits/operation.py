@@ -112,7 +112,8 @@ def estimate(
     Parameters
     ----------
     circuit, pair, wires
-        Nets, switch records (any broadcast shape) and the wire set shared by both sides of a study.
+        Nets, switch records (any broadcast shape) and the wire set shared by both sides of a study. A circuit that
+        fits itself to a technology is fitted at every point of the arrays on its own.
     rule
         ``chain``, ``step``, or a function with the signature of ``rules.StageRule``.
     size, size_as, sizing, internal_nodes
@@ -123,14 +124,17 @@ def estimate(
         False leaves the short-circuit energy out, as the hand equations do.
     """
     sized = Sized(pair, size, size_as, sizing, internal_nodes)
+    stage_rule = rule_by_name(rule) if isinstance(rule, str) else rule
+    if circuit.fit is not None:
+        circuit = circuit.fit(sized, wires, stage_rule)
     cells = _total(net.count for net in circuit.nets)
-    area = _total(net.count * sized.area(net.driver) for net in circuit.nets)
+    area = _total(net.count * net.copies * sized.area(net.driver) for net in circuit.nets)
     pitch = np.asarray(np.sqrt(area / cells))
     settings = StageSettings(
         sized=sized,
         wires=wires,
         layers=circuit.layers,
-        rule=rule_by_name(rule) if isinstance(rule, str) else rule,
+        rule=stage_rule,
         gate_pitch=pitch,
         short_circuit=short_circuit_currents(pair) if short_circuit else None,
     )
@@ -151,7 +155,7 @@ def estimate(
         name: _total(s.net.count * s.leakage_power_parts[name] * guard_leakage for s in stages)
         for name in LEAKAGE_PARTS
     }
-    switches = _total(net.count * net.driver.switch_count for net in circuit.nets)
+    switches = _total(net.count * net.copies * net.driver.switch_count for net in circuit.nets)
     results: dict[str, Any] = {
         "supply": pair.supply,
         "path_delay": _total(path.values()),
@@ -172,7 +176,7 @@ def estimate(
         "busiest_rising_per_operation": _extreme(np.maximum, [net.busiest for net in circuit.nets]),
         "quietest_rising_per_operation": _extreme(np.minimum, [net.rising_per_operation for net in circuit.nets]),
         "half_swing_over_noise": _extreme(np.minimum, [_noise_ratio(s, pair) for s in stages]),
-        "unable": _unable(circuit, sized),
+        "unable": _unable(circuit, sized, stages),
     }
     shape = np.broadcast_shapes(*(array.shape for value in results.values() for array in _arrays(value)))
     return OperationMetrics(
@@ -215,7 +219,7 @@ def _noise_ratio(detail: StageDetail, pair: SwitchPair) -> Array:
         )
 
 
-def _unable(circuit: Circuit, sized: Sized) -> dict[str, BoolArray]:
+def _unable(circuit: Circuit, sized: Sized, stages: tuple[StageDetail, ...]) -> dict[str, BoolArray]:
     """Return reason -> mask of the points where the estimate means nothing."""
     pair = sized.pair
     shape = np.broadcast_shapes(np.shape(pair.supply), np.shape(pair.down.resistance), np.shape(pair.up.resistance))
@@ -238,5 +242,8 @@ def _unable(circuit: Circuit, sized: Sized) -> dict[str, BoolArray]:
         if deepest > switch.stack_on.shape[-1]:
             add(f"{deepest} switches in series are more than the technology states", everywhere)
         for reason, mask in switch.outside.items():
+            add(reason, mask)
+    for detail in stages:
+        for reason, mask in detail.unable.items():
             add(reason, mask)
     return {reason: mask for reason, mask in found.items() if mask.any()}

@@ -24,20 +24,33 @@ in the second half of the ramp::
 
 The second part is the overlap of a switch that opens later than its partner closes (V^2 / 2R for equal resistances).
 Range: alike stages, ramps no slower than about 10 R C; beyond, the transient rule is the reference.
+
+Two kinds of net are no complementary gate:
+
+Discharged from outside (``Net.discharge``): a current I at the far end pulls the near end, where the loads C_near
+stand, down by V_swing. On the steady ramp (exact once the line's own R C has passed; derived from the diffusion
+equation)::
+
+    t = (C_line + C_near) V_swing / I + r L C_line (C_line / 6 + C_near / 2) / (C_line + C_near)
+
+That is its delay; restoring it costs energy but no time on the path. No short circuit.
+
+Latch (``Net.latch_from``): see ``latch.py``; no short circuit beyond the charge of its nodes.
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 
 import numpy as np
 
 from benchmark.circuits.cells import Edge
-from benchmark.circuits.circuit import Layer, Net, Wires
+from benchmark.circuits.circuit import Discharge, Layer, Net, Value, Wires
+from benchmark.circuits.latch import latch
 from benchmark.circuits.rules import EdgeInputs, StageRule
 from benchmark.circuits.sized import EDGES, OTHER, Sized
-from benchmark.devices.record import Array, SwitchPair
+from benchmark.devices.record import Array, BoolArray, SwitchPair
 
 __all__ = [
     "DELAY_PARTS",
@@ -84,7 +97,7 @@ class StageDetail:
     delay [s] is the mean of the edges, worst_delay the slower of the two; energy [J] per rising transition;
     node_capacitance [F] energy-averaged, without extra and short circuit; swing [V]; wire_length [m];
     input_capacitance [F] of the driven inputs (energy); leakage_power [W] of the driver in parts; area [m^2] and
-    bias_power [W] of the driver.
+    bias_power [W] of the driver. ``unable``: reason -> mask of the points where the delay means nothing.
     """
 
     net: Net
@@ -103,6 +116,7 @@ class StageDetail:
     leakage_power_parts: Mapping[str, Array]
     bias_power: Array
     area: Array
+    unable: Mapping[str, BoolArray] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -137,15 +151,29 @@ def short_circuit_currents(pair: SwitchPair) -> dict[Edge, Array]:
 
 @dataclass(frozen=True)
 class _Burden:
-    """Capacitances [F] at one net; ``far_pins`` of the driven inputs, ``near_pin`` of the driver; wire r L [ohm]."""
+    """Capacitances [F] at one net; ``far_pins`` of the driven inputs, ``near_pin`` of the driver; wire r L [ohm].
+
+    ``spread``: fixed loads along the wire.
+    """
 
     inputs: Array
     far_pins: Array
     near_pin: Array
     fixed: Array
+    spread: Array
     wire: Array
     wire_resistance: Array
     length: Array
+
+    @property
+    def line(self) -> Array:
+        """Return the capacitance along the wire, its own and that of what stands along it."""
+        return np.asarray(self.wire + self.spread)
+
+    @property
+    def far(self) -> Array:
+        """Return the capacitance at the end where the loads stand."""
+        return np.asarray(self.inputs + self.far_pins + self.fixed)
 
 
 def _burden(net: Net, settings: StageSettings) -> _Burden:
@@ -162,8 +190,9 @@ def _burden(net: Net, settings: StageSettings) -> _Burden:
     return _Burden(
         inputs=np.asarray(inputs),
         far_pins=np.asarray(pins),
-        near_pin=pin,
+        near_pin=np.asarray(pin * net.copies),
         fixed=np.asarray(net.fixed_load, dtype=np.float64),
+        spread=np.asarray(net.load_per_length * length),
         wire=np.asarray(layer.capacitance_per_length * length),
         wire_resistance=np.asarray(layer.resistance_per_length * length),
         length=np.asarray(length),
@@ -172,16 +201,16 @@ def _burden(net: Net, settings: StageSettings) -> _Burden:
 
 def _edge(net: Net, edge: Edge, burden: _Burden, settings: StageSettings) -> EdgeDetail:
     sized = settings.sized
-    resistance = sized.path_resistance(net.driver, edge)
-    own = sized.output_capacitance(net.driver, "delay", edge)
-    far = burden.inputs + burden.far_pins + burden.fixed
+    resistance = np.asarray(sized.path_resistance(net.driver, edge) / net.copies)
+    own = sized.output_capacitance(net.driver, "delay", edge) * net.copies
+    far = burden.far
     answer = settings.rule(
         EdgeInputs(
             closing=sized.switch(edge),
             opening=sized.switch(OTHER[edge]),
             supply=sized.pair.supply,
             resistance=resistance,
-            capacitance=np.asarray(own + burden.near_pin + burden.wire + far),
+            capacitance=np.asarray(own + burden.near_pin + burden.line + far),
             transit=sized.transit(net.driver, edge),
         )
     )
@@ -191,11 +220,53 @@ def _edge(net: Net, edge: Edge, burden: _Burden, settings: StageSettings) -> Edg
         "transit": answer.transit,
         "self": charging * own,
         "input": charging * burden.inputs,
-        "fixed_load": charging * burden.fixed,
+        "fixed_load": charging * (burden.fixed + burden.spread),
         "layout": charging * (burden.near_pin + burden.far_pins),
-        "wire": charging * burden.wire + through_wire + answer.wire_factor * burden.wire_resistance * burden.wire,
+        "wire": charging * burden.wire + through_wire + answer.wire_factor * burden.wire_resistance * burden.line,
     }
     return EdgeDetail(resistance, answer.factor, answer.wire_factor, _total(parts), parts)
+
+
+def _discharged(net: Net, discharge: Discharge, burden: _Burden, settings: StageSettings) -> EdgeDetail:
+    """Return the falling edge of a net that a constant current discharges; see the module docstring."""
+    own = settings.sized.output_capacitance(net.driver, "delay", "down") * net.copies
+    near = own + burden.near_pin + burden.far
+    swing = np.asarray(net.swing, dtype=np.float64)
+    slope = np.asarray(swing / np.asarray(discharge.current, dtype=np.float64))  # seconds per farad
+    whole = burden.line + near
+    lag = np.asarray((burden.line / 6.0 + near / 2.0) / np.where(whole > 0.0, whole, 1.0))
+    parts = {
+        "transit": np.asarray(0.0),
+        "self": slope * own,
+        "input": slope * burden.inputs,
+        "fixed_load": slope * (burden.fixed + burden.spread),
+        "layout": slope * (burden.near_pin + burden.far_pins),
+        "wire": slope * burden.wire + lag * burden.wire_resistance * burden.line,
+    }
+    return EdgeDetail(slope, np.asarray(1.0), lag, _total(parts), parts)
+
+
+def _latched(
+    net: Net, start: Value, burden: _Burden, settings: StageSettings
+) -> tuple[EdgeDetail, Mapping[str, BoolArray]]:
+    """Return the edge of a cross-coupled inverter that regenerates, and why it cannot."""
+    sized = settings.sized
+    own = 0.5 * sum(sized.output_capacitance(net.driver, "delay", edge) for edge in EDGES) * net.copies
+    pins = burden.near_pin + burden.far_pins
+    whole = np.asarray(own + burden.near_pin + burden.line + burden.far)
+    transit = np.maximum(sized.transit(net.driver, "down"), sized.transit(net.driver, "up"))
+    found = latch(sized.pair, start, whole / (net.copies * sized.size), transit)
+    each = np.asarray(found.charging / np.where(whole > 0.0, whole, 1.0))  # seconds per farad
+    parts = {
+        "transit": found.waiting,
+        "self": each * own,
+        "input": each * burden.inputs,
+        "fixed_load": each * (burden.fixed + burden.spread),
+        "layout": each * pins,
+        "wire": each * burden.wire,
+    }
+    one = np.asarray(1.0)
+    return EdgeDetail(each, one, one, _total(parts), parts), found.unable
 
 
 def _total(parts: Mapping[str, Array]) -> Array:
@@ -228,14 +299,22 @@ def stage(net: Net, settings: StageSettings) -> StageDetail:
     sized = settings.sized
     supply = np.asarray(sized.pair.supply)
     burden = _burden(net, settings)
-    edges = {edge: _edge(net, edge, burden, settings) for edge in EDGES}
-    delay_parts = {
-        name: np.asarray(0.5 * (edges["down"].parts[name] + edges["up"].parts[name])) for name in DELAY_PARTS
-    }
+    unable: Mapping[str, BoolArray] = {}
+    edges: dict[Edge, EdgeDetail] = {"up": _edge(net, "up", burden, settings)}
+    if net.discharge is not None:
+        edges["down"] = _discharged(net, net.discharge, burden, settings)
+    elif net.latch_from is not None:
+        edges["down"], unable = _latched(net, net.latch_from, burden, settings)
+    else:
+        edges["down"] = _edge(net, "down", burden, settings)
+    timed = (edges["down"], edges["up"]) if net.gated else (edges["down"], edges["down"])
+    delay_parts = {name: np.asarray(0.5 * (timed[0].parts[name] + timed[1].parts[name])) for name in DELAY_PARTS}
 
     swing = supply if net.swing is None else np.asarray(net.swing, dtype=np.float64)
     rail = swing if net.swing_from == "own-rail" else supply
-    own = sized.output_capacitance(net.driver, "energy", "down")
+    if net.discharge is not None:
+        rail = np.asarray(net.discharge.rail, dtype=np.float64)
+    own = sized.output_capacitance(net.driver, "energy", "down") * net.copies
     charge: Array = np.asarray(0.0)
     extra: Array = np.asarray(0.0)
     for load in net.loads:
@@ -248,27 +327,30 @@ def stage(net: Net, settings: StageSettings) -> StageDetail:
         "input": np.asarray(per_farad * inputs),
         "self": np.asarray(per_farad * own),
         "wire": np.asarray(per_farad * burden.wire),
-        "fixed_load": np.asarray(per_farad * burden.fixed),
+        "fixed_load": np.asarray(per_farad * (burden.fixed + burden.spread)),
         "layout": np.asarray(per_farad * pins),
         "extra": np.asarray(extra),
-        "short_circuit": _short_circuit(net, edges, settings),
+        "short_circuit": _short_circuit(net, edges, settings) if net.gated else np.asarray(0.0),
     }
-    leakage = {name: np.asarray(supply * value) for name, value in sized.leakage_current(net.driver).items()}
+    leakage = {
+        name: np.asarray(supply * value * net.copies) for name, value in sized.leakage_current(net.driver).items()
+    }
     return StageDetail(
         net=net,
         falling=edges["down"],
         rising=edges["up"],
         delay=_total(delay_parts),
         delay_parts=delay_parts,
-        worst_delay=np.asarray(np.maximum(edges["down"].delay, edges["up"].delay)),
+        worst_delay=np.asarray(np.maximum(timed[0].delay, timed[1].delay)),
         energy=_total(energy_parts),
         energy_parts=energy_parts,
-        node_capacitance=np.asarray(inputs + own + burden.wire + burden.fixed + pins),
+        node_capacitance=np.asarray(inputs + own + burden.wire + (burden.fixed + burden.spread) + pins),
         input_capacitance=inputs,
         swing=np.asarray(swing),
         wire_length=burden.length,
         leakage_power=_total(leakage),
         leakage_power_parts=leakage,
-        bias_power=sized.bias_power(net.driver),
-        area=sized.area(net.driver),
+        bias_power=np.asarray(sized.bias_power(net.driver) * net.copies),
+        area=np.asarray(sized.area(net.driver) * net.copies),
+        unable=unable,
     )

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from benchmark.circuits.cells import Cell, Edge
-from benchmark.circuits.circuit import Net
+from benchmark.circuits.circuit import Circuit, Net
 from benchmark.circuits.sized import EDGES, OTHER, Sized, stack_ratio
 from benchmark.circuits.stage import StageDetail
 from benchmark.cli.arithmetic import Sheet
@@ -43,13 +43,14 @@ class NetArithmetic:
 
     sheet: Sheet
     problem: SideProblem
+    circuit: Circuit
     size: float
     copies: bool
 
     def burden(self, net: Net) -> None:
         """Write the wire, the fixed load and the layout parasitic of the driven inputs."""
         sheet = self.sheet
-        layer = self.problem.wires.layer(net.layer, self.problem.circuit.layers)
+        layer = self.problem.wires.layer(net.layer, self.circuit.layers)
         if net.layer != "local":
             sheet.given("r_layer", one(layer.resistance_per_length), "ohm/m", f"layer {net.layer}")
             sheet.given("c_layer", one(layer.capacitance_per_length), "F/m", f"layer {net.layer}")
@@ -64,6 +65,11 @@ class NetArithmetic:
         sheet.given("C_fixed", one(net.fixed_load), "F", "fixed load")
         pins = " + ".join(f"{one(load.count):.6g}*C_pin" for load in net.loads) or "0*C_pin"
         sheet.result("C_pins", pins, "F", "layout parasitic of the driven inputs")
+        if not net.plain:
+            sheet.given("h", one(net.copies), "1", "parallel copies of the driver")
+            sheet.given("c_load", one(net.load_per_length), "F/m", "fixed loads along the wire, per length")
+            sheet.result("C_spread", "c_load*L", "F", "fixed loads along the wire")
+            sheet.result("C_near", "h*C_pin", "F", "layout parasitic of the driver")
 
     def _inputs(self, net: Net, pair: SwitchPair, symbol: str, each: str, unit: str) -> None:
         """Sum over the driven inputs of a quantity of the record, ``each`` per switch."""
@@ -82,21 +88,27 @@ class NetArithmetic:
         else:
             self.sheet.given(symbol, 0.0, unit, "no driven inputs")
 
-    def _own(self, cell: Cell, symbol: str, each: str, driving: Edge, share: bool) -> None:
-        """Capacitance of the cell's own terminals: ends at the output plus internal nodes."""
+    def _own(self, net: Net, symbol: str, each: str, driving: Edge, share: bool) -> None:
+        """Capacitance of the driver's own terminals: ends at the output plus internal nodes."""
+        cell = net.driver
         parts = []
         for edge in EDGES:
             width = cell.output_width(edge, "unit")
             for node in cell.internal_nodes(edge, "unit"):
                 width += node.width * (node.share if share and edge == driving else 1.0)
             parts.append(f"{each}_{edge}*{width:.6g}")
-        self.sheet.result(symbol, f"({' + '.join(parts)})*size", "F", "own terminals")
+        copies = "" if net.plain else "*h"
+        self.sheet.result(symbol, f"({' + '.join(parts)})*size{copies}", "F", "own terminals")
 
     def delay(self, net: Net, pair: SwitchPair, program: StageDetail, symbol: str) -> None:
         """Write both edges and their mean; ``program``: the estimator's stage, for factors a rule has to solve."""
         sheet = self.sheet
         self.burden(net)
         self._inputs(net, pair, "C_load", "C_in", "F")
+        if not net.gated:
+            self._other(net, program, symbol)
+            return
+        copies, near, line = ("", "C_pin", "C_wire") if net.plain else ("/h", "C_near", "(C_wire + C_spread)")
         sized = Sized(pair, self.size, "copies" if self.copies else "width")
         for edge in EDGES:
             closing, opening, tag = sized.switch(edge), OTHER[edge], edge
@@ -105,8 +117,8 @@ class NetArithmetic:
             ]
             ratio = float(np.max(ratios))
             sheet.text(f"  {_EDGE_NAME[edge]} output edge: the pull-{edge} network drives")
-            sheet.result(f"Rp_{tag}", f"R_{tag}*{ratio:.10g}/size", "ohm", "worst path")
-            self._own(net.driver, f"C_self_{tag}", "C_td", edge, share=True)
+            sheet.result(f"Rp_{tag}", f"R_{tag}*{ratio:.10g}/size{copies}", "ohm", "worst path")
+            self._own(net, f"C_self_{tag}", "C_td", edge, share=True)
             depth = net.driver.depth(edge) if closing.stack_time == "sequential" else 1
             sheet.result(f"t_int_{tag}", f"max({depth}*t_on_{tag}, t_off_{opening})", "s", "load-independent")
             detail = program.falling if edge == "down" else program.rising
@@ -114,11 +126,35 @@ class NetArithmetic:
             far = "(C_load + C_pins + C_fixed)"
             sheet.result(
                 f"t_rc_{tag}",
-                f"F_{tag}*(Rp_{tag}*(C_self_{tag} + C_pin + C_wire + {far}) + R_wire*{far}) + W_{tag}*R_wire*C_wire",
+                f"F_{tag}*(Rp_{tag}*(C_self_{tag} + {near} + {line} + {far}) + R_wire*{far}) + W_{tag}*R_wire*{line}",
                 "s",
             )
             sheet.result(f"t_{tag}", f"t_int_{tag} + t_rc_{tag}", "s", f"{_EDGE_NAME[edge]} edge")
         sheet.result(symbol, "(t_down + t_up)/2", "s", "delay of one stage, mean of both edges")
+
+    def _other(self, net: Net, program: StageDetail, symbol: str) -> None:
+        """Write the delay of a net that no gate drives on both edges: discharged from outside, or a latch."""
+        sheet = self.sheet
+        if net.discharge is None:
+            sheet.given(
+                "t_latch", one(program.delay) - one(program.delay_parts["transit"]), "s", "regeneration, solved"
+            )
+            sheet.given(
+                "t_wait", one(program.delay_parts["transit"]), "s", "longer by switches that answer late, solved"
+            )
+            sheet.result(symbol, "t_latch + t_wait", "s", "delay of the latch")
+            return
+        self._own(net, "C_self_down", "C_td", "down", share=True)
+        sheet.given("I_cell", one(net.discharge.current), "A", "current that discharges the net at its far end")
+        sheet.given("V_swing", one(net.swing), "V", "swing of this net")
+        sheet.result("C_line", "C_wire + C_spread", "F", "along the wire")
+        sheet.result("C_end", "C_self_down + C_near + C_load + C_pins + C_fixed", "F", "at the near end")
+        sheet.result(
+            symbol,
+            "(C_line + C_end)*V_swing/I_cell + R_wire*C_line*(C_line/6 + C_end/2)/(C_line + C_end)",
+            "s",
+            "delay of the falling edge",
+        )
 
     def _factors(self, tag: str, opening: str, factor: float, wire: float) -> None:
         sheet, rule = self.sheet, self.problem.study.delay_rule
@@ -137,16 +173,20 @@ class NetArithmetic:
         sheet = self.sheet
         self._inputs(net, pair, "Q_load", "Q_in", "C")
         self._inputs(net, pair, "E_loss", "E_x", "J")
-        self._own(net.driver, "C_self", "C_t", "down", share=False)
+        self._own(net, "C_self", "C_t", "down", share=False)
         if net.swing is None:
             swing = rail = "V"
         else:
             sheet.given("V_swing", one(net.swing), "V", "swing of this net")
             swing, rail = "V_swing", "V_swing" if net.swing_from == "own-rail" else "V"
-        total = "Q_load/V + C_self + C_wire + C_fixed + C_pin + C_pins"
+        if net.discharge is not None:
+            sheet.given("V_rail", one(net.discharge.rail), "V", "rail that restores this net")
+            rail = "V_rail"
+        near = "C_pin" if net.plain else "C_spread + C_near"
+        total = f"Q_load/V + C_self + C_wire + C_fixed + {near} + C_pins"
         sheet.result(f"C_net_{index}", total, "F", "average over the swing")
         parts = f"{rail}*{swing}*C_net_{index} + E_loss"
-        if self.problem.study.short_circuit == "estimated":
+        if self.problem.study.short_circuit == "estimated" and net.gated:
             sheet.result("t_ramp", "t_rc_down + t_rc_up", "s", "RC part of both edges")
             terms = []
             for edge, opening in OTHER.items():
@@ -164,6 +204,7 @@ class NetArithmetic:
     def leakage(self, net: Net, pair: SwitchPair, index: int) -> None:
         """Write leakage and bias power of the driving cell as ``P_<index>`` and ``P_b_<index>``."""
         sheet, cell = self.sheet, net.driver
+        copies = "" if net.plain else f"*{one(net.copies):g}"
         weights = _state_weights(pair, cell)
         sheet.result(
             "I_path",
@@ -181,8 +222,9 @@ class NetArithmetic:
             bias.append(f"{count}*P_bias_{edge}")
         sheet.result("I_input", " + ".join(inputs), "A", "through the inputs, high half of the time")
         sheet.result("I_bulk", " + ".join(body), "A", "into the body")
-        sheet.result(f"P_{index}", "V*(I_path + I_input + I_bulk)", "W", "leakage of one cell")
-        sheet.result(f"P_b_{index}", " + ".join(bias), "W", "bias of one cell")
+        sheet.result(f"P_{index}", f"V*(I_path + I_input + I_bulk){copies}", "W", "leakage of one cell")
+        total = " + ".join(bias)
+        sheet.result(f"P_b_{index}", f"({total}){copies}" if copies else total, "W", "bias of one cell")
 
 
 def _state_weights(pair: SwitchPair, cell: Cell) -> dict[Edge, float]:

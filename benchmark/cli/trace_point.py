@@ -60,8 +60,9 @@ class _Tracer:
         self.hot = temperatures[-1]
         self.pairs = {kelvin: self._switches(supply, shift, kelvin) for kelvin in (self.slow, self.hot)}
         self.copies = problem.side.technology.options.get("size_scaling") == "copies"
+        self.circuit = problem.circuit_at(np.array([[supply]]), size, shift)
         self.sheet = Sheet()
-        self.net = NetArithmetic(self.sheet, problem, size, self.copies)
+        self.net = NetArithmetic(self.sheet, problem, self.circuit, size, self.copies)
         self.supply, self.shift = supply, shift
         self._estimates: dict[float, OperationMetrics] = {}
 
@@ -77,7 +78,7 @@ class _Tracer:
 
     def _estimate(self, kelvin: float) -> OperationMetrics:
         return estimate(
-            self.problem.circuit,
+            self.circuit,
             self.pairs[kelvin],
             self.problem.wires,
             self.study.delay_rule,
@@ -106,7 +107,7 @@ class _Tracer:
         if self.shift:
             sheet.given("V_shift", self.shift, "V", "threshold shift")
         self._shared()
-        nets = self.problem.circuit.nets
+        nets = self.circuit.nets
         self._areas(nets)
         hot = self.pairs[self.hot]
         title = f"delay at {engineering(self.slow, 'K')}, the slowest of the study"
@@ -187,7 +188,8 @@ class _Tracer:
         for index, net in enumerate(nets, start=1):
             down, up = sum(net.driver.widths("down", "unit")), sum(net.driver.widths("up", "unit"))
             sheet.given(f"n_{index}", one(net.count), "1", f"cells {net.driver.name} of net {net.name}")
-            sheet.result(f"A_{index}", f"n_{index}*(A_down*{down:g} + A_up*{up:g})*size", "m^2")
+            copies = "" if net.plain else f"*{one(net.copies):g}"
+            sheet.result(f"A_{index}", f"n_{index}*(A_down*{down:g} + A_up*{up:g})*size{copies}", "m^2")
         total = " + ".join(f"A_{index}" for index in range(1, len(nets) + 1))
         count = " + ".join(f"n_{index}" for index in range(1, len(nets) + 1))
         sheet.result("pitch", f"(({total})/({count}))**0.5", "m")
@@ -195,7 +197,8 @@ class _Tracer:
     def _net_title(self, index: int, net: Net) -> None:
         loads = ", ".join(f"{one(load.count):g} x {load.cell.name}.{load.input}" for load in net.loads) or "no inputs"
         self.sheet.text("")
-        self.sheet.text(f"Net {index} {net.name!r}: driven by {net.driver.name}, drives {loads}")
+        copies = "" if net.plain or one(net.copies) == 1.0 else f"{one(net.copies):g} parallel copies of "
+        self.sheet.text(f"Net {index} {net.name!r}: driven by {copies}{net.driver.name}, drives {loads}")
 
     def _path(self, nets: tuple[Net, ...]) -> None:
         sheet = self.sheet

@@ -30,17 +30,24 @@ def _metrics(run: SideRun, side: SideOutcome, circuit: Circuit, rule: str) -> Op
     return estimate(circuit, pair, problem.wires, rule, size=points.size, size_as=problem.size_as, short_circuit=False)
 
 
+def _circuit(run: SideRun, side: SideOutcome) -> Circuit:
+    """Return the circuit at a side's optimum."""
+    points = side.optimum.points
+    return run.problem.circuit_at(points.supply[:1], points.size, points.threshold_shift)
+
+
 def delay_factor(run: SideRun, side: SideOutcome) -> float:
     """Return the factor F of the delay rule at a side's optimum (mean of both edges of the first critical net)."""
-    stage = _metrics(run, side, run.problem.circuit, run.problem.study.delay_rule).stages[0]
+    stage = _metrics(run, side, _circuit(run, side), run.problem.study.delay_rule).stages[0]
     return float(0.5 * (stage.falling.factor.ravel()[0] + stage.rising.factor.ravel()[0]))
 
 
 def closed_form_differences(comparison: Comparison, outcome: Outcome) -> list[dict[str, Any]]:
     """Compare the delay rule with the transient for the candidate and the strongest contender.
 
-    The stage that takes the largest part of the critical path is solved as a chain of alike stages (both edges, at the
-    temperature that sets the delay). ``difference`` = closed over transient, minus 1.
+    The gate that takes the largest part of the critical path is solved as a chain of alike stages (both edges, at the
+    temperature that sets the delay). ``difference`` = closed over transient, minus 1. Nets that no gate drives on both
+    edges have no such chain.
     """
     rows = []
     sides = [(outcome.candidate, comparison.candidate)]
@@ -51,14 +58,15 @@ def closed_form_differences(comparison: Comparison, outcome: Outcome) -> list[di
     for side, run in sides:
         if not side.found[0] or rule == "transient":
             continue
-        whole = _metrics(run, side, run.problem.circuit, rule)
-        share = [float(np.max(s.net.on_critical_path * s.delay)) for s in whole.stages]
-        stage = whole.stages[int(np.argmax(share))]
+        circuit = _circuit(run, side)
+        stages = [stage for stage in _metrics(run, side, circuit, rule).stages if stage.net.gated]
+        share = [float(np.max(s.net.on_critical_path * s.delay)) for s in stages]
+        stage = stages[int(np.argmax(share))]
         # the stage alone, with the wire length it has in the whole circuit
         net = dataclasses.replace(
             stage.net, wire_length=stage.wire_length, length_unit="m", count=1.0, on_critical_path=1.0
         )
-        alone = dataclasses.replace(run.problem.circuit, nets=(net,))
+        alone = dataclasses.replace(circuit, nets=(net,))
         closed = float(_metrics(run, side, alone, rule).path_delay.ravel()[0])
         row: dict[str, Any] = {
             "side": side.id,

@@ -96,7 +96,7 @@ def design_points(problem: SideProblem, supply: Array, size: float = 1.0, thresh
     """
     pair = problem.switches(supply, threshold_shift)
     metrics = estimate(
-        problem.circuit,
+        problem.circuit_at(supply, size, threshold_shift),
         pair,
         problem.wires,
         problem.study.delay_rule,

@@ -13,7 +13,8 @@ from numpy.typing import NDArray
 from benchmark.circuits.cells import cell
 from benchmark.circuits.circuit import Circuit, Layer, Load, Net, Wires
 from benchmark.circuits.library import build as build_built_in
-from benchmark.circuits.sized import EDGES
+from benchmark.circuits.rules import rule_by_name
+from benchmark.circuits.sized import EDGES, Sized
 from benchmark.devices import model
 from benchmark.devices.model import DeviceModel, ModelInputs, Prepared
 from benchmark.devices.record import SwitchPair
@@ -59,11 +60,25 @@ class SideProblem:
         circuit = max(net.driver.depth(edge) for net in self.circuit.nets for edge in EDGES)
         return max(circuit, *(requirement.fan_in for requirement in self.study.requirements.values()), 1)
 
-    def switches(self, supply: Array, threshold_shift: float) -> SwitchPair:
-        """Switch records at supplies of shape (row or 1, supply), all temperatures of the study."""
-        temperature = np.asarray(self.study.temperatures)[None, :, None]
+    def switches(
+        self, supply: Array, threshold_shift: float, temperatures: tuple[float, ...] | None = None
+    ) -> SwitchPair:
+        """Switch records at supplies of shape (row or 1, supply), at all temperatures of the study unless given."""
+        temperature = np.asarray(self.study.temperatures if temperatures is None else temperatures)[None, :, None]
         knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift), "stack_depth": np.asarray(self.stack_depth)}
         return self.device.switch(self.prepared, np.atleast_2d(supply)[:, None, :], temperature, knobs)
+
+    def circuit_at(self, supply: Array, size: float, threshold_shift: float) -> Circuit:
+        """The circuit at supplies of shape (row or 1, supply): as built, or fitted to the technology there.
+
+        A fitted circuit is one design for all temperatures, made at the highest.
+        """
+        fit = self.circuit.fit
+        if fit is None:
+            return self.circuit
+        pair = self.switches(supply, threshold_shift, self.study.temperatures[-1:])
+        made = fit(Sized(pair, size, self.size_as), self.wires, rule_by_name(self.study.delay_rule))
+        return dataclasses.replace(made, operation=self.circuit.operation)
 
 
 def owner_of_overhead(side: Side, role: str) -> str:

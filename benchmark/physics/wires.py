@@ -46,6 +46,7 @@ COPPER_MEAN_FREE_PATH: Final = 39.9e-9
 _DISTRIBUTED: Final = 0.4
 _LUMPED: Final = 0.7
 _SERIES_TERMS: Final = 40
+_LN2: Final = math.log(2.0)
 _NODES, _WEIGHTS = np.polynomial.legendre.leggauss(64)
 
 
@@ -161,17 +162,20 @@ def repeated_line_delay_per_length(
     gate: ArrayLike,
     self_share: ArrayLike,
     transit: ArrayLike,
+    factor: ArrayLike = _LN2,
+    wire_factor: ArrayLike = 0.377,
 ) -> Array:
     """Return the least delay per length [s/m] of a line with repeaters that have a transit time.
 
-    2 sqrt(0.377 r c [t_tr + ln2 R_0 C_0 (1 + s)]) + 2 ln2 sqrt(R_0 C_0 r c); r [ohm/m], c [F/m], repeater R_0 [ohm],
-    C_0 [F], own capacitance s C_0, load-independent time t_tr [s]. Piece length and size both optimal, not rounded.
-    Derived; as R_0 C_0 -> 0 a transit-limited repeater still leaves 2 sqrt(0.377 r c t_tr).
+    2 sqrt(W r c [t_tr + F R_0 C_0 (1 + s)]) + 2 F sqrt(R_0 C_0 r c); r [ohm/m], c [F/m], repeater R_0 [ohm], C_0 [F],
+    own capacitance s C_0, load-independent time t_tr [s]; factors F of every R C and W of the line's own r c L^2 [1],
+    those of a step unless given (1 and 1/2: Elmore). Piece length and size both optimal, not rounded. Derived; as
+    R_0 C_0 -> 0 a transit-limited repeater still leaves 2 sqrt(W r c t_tr).
     """
     rc = _array(resistance_per_length) * _array(capacitance_per_length)
-    r_0_c_0 = _array(driver) * _array(gate)
-    stage = _array(transit) + math.log(2.0) * r_0_c_0 * (1.0 + _array(self_share))
-    return np.asarray(2.0 * np.sqrt(0.377 * rc * stage) + 2.0 * math.log(2.0) * np.sqrt(r_0_c_0 * rc))
+    r_0_c_0, f = _array(driver) * _array(gate), _array(factor)
+    stage = _array(transit) + f * r_0_c_0 * (1.0 + _array(self_share))
+    return np.asarray(2.0 * np.sqrt(_array(wire_factor) * rc * stage) + 2.0 * f * np.sqrt(r_0_c_0 * rc))
 
 
 def time_of_flight(relative_permittivity: ArrayLike) -> Array:
