@@ -48,15 +48,15 @@ class DeckStage:
     driver, pin
         Cell and its driven input.
     size, sizing
-        Size knob and sizing rule of the cell's switches.
+        Size of the cell's switches, parallel copies included, and the sizing rule.
     near, far [F]
         Capacitance at the output and at the far end of the wire, beside what the sub-circuits hold themselves.
     wire_resistance [ohm], wire_capacitance [F]
-        Of the whole wire.
+        Of the whole wire, loads along it included.
     inner [F]
         One terminal of unit width at an internal node, by network.
     fan_out [1]
-        Driven inputs of the driver's own kind; only ``device`` uses it, the constants are in ``far``.
+        Driven inputs over copies of the driver; only ``device`` uses it, the constants are in ``far``.
     """
 
     driver: Cell
@@ -114,10 +114,11 @@ def deck_stage(
     Raises
     ------
     UsageError
-        If the net has a swing of its own, or ``device`` is asked for and it drives another cell than its own kind.
+        If the net has a swing of its own or is no gate's output, or ``device`` is asked for and it drives another cell
+        than its own kind.
     """
-    if net.swing is not None:
-        message = f"net {net.name!r} has a swing of its own: a chain of such stages would not restore it"
+    if net.swing is not None or not net.gated:
+        message = f"net {net.name!r} does not swing from rail to rail by a gate: there is no chain of such stages"
         raise UsageError(message)
     own = [load for load in net.loads if load.cell == net.driver]
     pin = own[0].input if own else net.driver.inputs[0]
@@ -126,7 +127,8 @@ def deck_stage(
         message = f"net {net.name!r} drives other cells or inputs than its own: only the capacitances delay or energy"
         raise UsageError(message)
     inner = {edge: _terminal(sized, texts, edge, capacitances) for edge in EDGES}
-    near = sum(inner[edge] * net.driver.output_width(edge, sized.sizing) for edge in EDGES) * scalar(sized.size)
+    size = scalar(sized.size) * scalar(net.copies)
+    near = sum(inner[edge] * net.driver.output_width(edge, sized.sizing) for edge in EDGES) * size
     per_pin = scalar(wires.layout_capacitance_per_pin)
     pins = sum(scalar(load.count) for load in net.loads)
     far = per_pin * pins + scalar(net.fixed_load)
@@ -137,14 +139,14 @@ def deck_stage(
     return DeckStage(
         driver=net.driver,
         pin=pin,
-        size=scalar(sized.size),
+        size=size,
         sizing=sized.sizing,
-        near=near + per_pin,
+        near=near + per_pin * scalar(net.copies),
         far=far,
         wire_resistance=scalar(layer.resistance_per_length) * length,
-        wire_capacitance=scalar(layer.capacitance_per_length) * length,
+        wire_capacitance=(scalar(layer.capacitance_per_length) + scalar(net.load_per_length)) * length,
         inner=inner,
-        fan_out=pins,
+        fan_out=pins / scalar(net.copies),
         capacitances=capacitances,
     )
 

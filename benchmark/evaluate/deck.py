@@ -46,14 +46,16 @@ def pace_of(pair: SwitchPair, delay: float) -> Pace:
 
 
 def _chosen(metrics: OperationMetrics, name: str) -> StageDetail:
-    """Return the named stage, else the one that takes the largest part of the critical path."""
+    """Return the named stage, else the gate's that takes the largest part of the critical path."""
     stages = {stage.net.name: stage for stage in metrics.stages}
     if name and name not in stages:
         message = f"there is no net {name!r}; known are {', '.join(stages)}; {nearest(name, stages)}"
         raise UsageError(message.removesuffix("; "))
     if name:
         return stages[name]
-    return max(metrics.stages, key=lambda stage: scalar(stage.net.on_critical_path) * scalar(stage.delay))
+    # nets that no gate drives from rail to rail (bit lines, latches) are refused by name; by themselves never chosen
+    chains = [stage for stage in metrics.stages if stage.net.gated and stage.net.swing is None] or metrics.stages
+    return max(chains, key=lambda stage: scalar(stage.net.on_critical_path) * scalar(stage.delay))
 
 
 def _refuse_unusable(metrics: OperationMetrics) -> None:
@@ -118,17 +120,19 @@ def side_deck(
     deck = deck_stage(stage.net, sized, texts, problem.wires, problem.circuit.layers, metrics.gate_pitch, capacitances)
     pace = pace_of(pair, scalar(stage.worst_delay))
     ring = problem.circuit.name == "ring"
-    head = [*comments, *_facts(problem, stage, capacitances, ring)]
+    head = [*comments, *_facts(problem, metrics, stage, capacitances)]
     if ring:
         return ring_deck(head, deck, texts, supply, pace, round(scalar(stage.net.count)))
     return chain_deck(head, deck, texts, supply, pace)
 
 
-def _facts(problem: SideProblem, stage: StageDetail, capacitances: Capacitances, ring: bool) -> list[str]:
+def _facts(
+    problem: SideProblem, metrics: OperationMetrics, stage: StageDetail, capacitances: Capacitances
+) -> list[str]:
     """Return what the deck is and what this program finds for the same stage, for comparison."""
     net = stage.net
     loads = ", ".join(f"{scalar(load.count):g} x {load.cell.name}.{load.input}" for load in net.loads) or "no inputs"
-    what = "a ring" if ring else "a chain of stages like"
+    what = "a ring of stages like" if problem.circuit.name == "ring" else "a chain of stages like"
     lines = [
         f"Circuit {problem.circuit.name}: {what} net {net.name}: {net.driver.name} drives {loads}, "
         f"wire {scalar(stage.wire_length):.6g} m",
@@ -139,7 +143,7 @@ def _facts(problem: SideProblem, stage: StageDetail, capacitances: Capacitances,
         f"  energy of one cycle without leakage {scalar(stage.energy):.6g} J, "
         f"leakage_power {scalar(stage.leakage_power):.6g} W over all input states",
     ]
-    others = [other.name for other in problem.circuit.nets if other is not net]
+    others = [other.net.name for other in metrics.stages if other is not stage]
     if others:
         lines.append(f"Not in this deck: the nets {', '.join(others)}")
     return lines

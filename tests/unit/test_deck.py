@@ -89,7 +89,8 @@ def test_no_text_becomes_a_command():
         assert lines[-1] == ".end"
 
 
-def test_capacitances_of_a_stage_are_those_of_the_estimate():
+@pytest.mark.parametrize("copies", [1.0, 5.0])
+def test_capacitances_of_a_stage_are_those_of_the_estimate(copies):
     """The delay rule with everything lumped at the node, and the energy C V^2, from what the deck places."""
     from benchmark.circuits.circuit import Circuit
     from benchmark.circuits.operation import estimate
@@ -101,22 +102,24 @@ def test_capacitances_of_a_stage_are_those_of_the_estimate():
     inverter = cell("inverter")
     wires = Wires(1e8, 2e-10, 0.05e-15)
     net = Net(
-        "stage", inverter, loads=(Load(inverter, "a", 3.0),), fixed_load=0.4e-15, wire_length=1e-5,
-        rising_per_operation=1.0, on_critical_path=1.0,
+        "stage", inverter, loads=(Load(inverter, "a", 3.0),), fixed_load=0.4e-15, wire_length=1e-5, copies=copies,
+        load_per_length=1e-11, rising_per_operation=1.0, on_critical_path=1.0,
     )  # fmt: skip
     metrics = estimate(Circuit("c", "c", "c", (net,)), pair, wires, "step", size=2.0, short_circuit=False)
     delay, energy = (
         deck_stage(net, Sized(pair, 2.0), _texts(pair), wires, {}, 1.0, which) for which in ("delay", "energy")
     )
+    assert delay.size == 2.0 * copies
+    assert delay.fan_out == 3.0 / copies
     assert energy.near + energy.far + energy.wire_capacitance == pytest.approx(metrics.dynamic_energy.item(), rel=1e-12)
-    resistance = pair.down.resistance.item() / 2.0
+    resistance = pair.down.resistance.item() / (2.0 * copies)
     lumped = resistance * (delay.near + delay.far + delay.wire_capacitance) + delay.wire_resistance * delay.far
     wire = 0.377 * delay.wire_resistance * delay.wire_capacitance
     assert np.log(2.0) * lumped + wire == pytest.approx(metrics.path_delay.item(), rel=1e-12)
 
 
 def test_what_cannot_be_a_chain_is_refused():
-    with pytest.raises(UsageError, match="swing of its own"):
+    with pytest.raises(UsageError, match="from rail to rail"):
         _stage(swing=0.2)
     inverter, nand = cell("inverter"), cell("nand2")
     pair = ohmic_pair()
