@@ -156,6 +156,7 @@ def study_template(stem: str) -> str:
                 "[workload]",
                 f'operation = "{which.operation}"',
                 f'circuit = "{CIRCUIT}"',
+                '# topology = "own-best"             # a side may then name a circuit = "..." of the same function',
                 'timing = "clocked"                  # clocked: one operation per clock cycle | self-timed',
                 'leakage_accounting = "period"       # period: over the clock cycle | operation: over the path delay',
                 'idle = "none"                       # none | ungated | gated (with idle_time and active_cycles)',
