@@ -90,6 +90,7 @@ class _Maker:
     def policies(self) -> list[Row]:
         return [
             {name: row[name] for name in ("policy", "diagnostic", "advantage", "strongest")}
+            | {name: row[name] for name in ("topology", "circuit") if name in row}
             | {"candidate": self.side(row["candidate"], "candidate")}
             | {"contenders": [self.side(side, "contender") for side in row["contenders"]]}
             for row in self.record["policies"]
@@ -207,7 +208,7 @@ class _Maker:
     def sides(self) -> list[Row]:
         kept = ("id", "role", "technology", "ambition", "model", "sizes", "sha256")
         return [
-            {name: side[name] for name in kept}
+            {name: side[name] for name in (*kept, "circuit") if name in side}
             | {name: self.say(side[name]) for name in ("title", "flavour", "note")}
             | {name: [LEFT_OUT] * len(side[name]) for name in ("supply", "threshold_shifts")}
             for side in self.record["sides"]

@@ -78,3 +78,12 @@ def test_the_verdict_rests_on_the_own_circuits_and_says_so(record):
     assert "hand-adder-relay: complex-gate-adder" in topology
     assert "ripple-adder on every side" in topology
     assert all(check["passed"] for check in record["self_checks"])
+
+
+def test_the_record_without_absolute_values_still_says_the_topologies(record):
+    from benchmark.record.ratio_only import ratio_only
+
+    kept = ratio_only(record)
+    assert kept["policies"][1]["topology"] == "same-netlist"
+    assert kept["policies"][1]["circuit"] == "ripple-adder"
+    assert [side["circuit"] for side in kept["sides"]] == ["complex-gate-adder", "sklansky-adder"]
