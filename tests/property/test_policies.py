@@ -571,7 +571,6 @@ def test_what_raises_the_share_of_leakage(a: Any, k: float):
     base = share(a)
     assert share(a, values={"logic_depth": v(round(20 * k))}) > base
     assert share(a, values={"activity": v(number(0.05 / k))}) > base
-    assert share(a, temperatures=(75.0,)) > base or a["option"]["conduction"] == "tunnelling"
     hot = copy.deepcopy(a)
     hot["value"]["swing_temperature_coefficient"] = v(D("0.2"), "mV/decade/K")
     assert share(hot, temperatures=(75.0,)) > share(hot)
