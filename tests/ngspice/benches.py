@@ -38,6 +38,8 @@ def _prepared(technology: str, node: str) -> tuple[DeviceModel, Prepared, float]
     device = model(known.model)
     values = resolve(known.id, known.at(node), Batch.best_estimate())
     tables = {name: table.table for name, table in known.tables.items()}
+    if known.rows:
+        tables["rows"] = known.rows[node]
     prepared = device.prepare(ModelInputs(values, known.options, tables))
     return device, prepared, float(values["reference_temperature"].ravel()[0])
 
