@@ -89,9 +89,7 @@ class Comparison:
         return f"{role} {side.id}"
 
     def _run(self, side: Side, role: str) -> SideRun:
-        rows = self.batch.affected(keys_of(self.pair, side, role))
-        position = np.zeros(self.batch.rows, dtype=np.intp)
-        position[rows] = np.arange(len(rows))
+        rows, position = self.batch.distinct(keys_of(self.pair, side, role))
         self._position[self._key(side, role)] = position
         return SideRun(build_side(self.study, side, role, self.pair, self.batch.take(rows)), self.pair)
 

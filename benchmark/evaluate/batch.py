@@ -57,14 +57,19 @@ class Batch:
         """Return the batch of some rows, in the order given."""
         return Batch(len(rows), {key: column[rows] for key, column in self.columns.items()}, self.origin[rows])
 
-    def affected(self, concerns: Callable[[str], bool]) -> NDArray[np.intp]:
-        """Rows in which any key that ``concerns`` accepts differs from row 0 (row 0 itself always included)."""
-        moved = np.zeros(self.rows, dtype=bool)
-        moved[0] = True
-        for key, column in self.columns.items():
-            if concerns(key):
-                moved |= column != column[0]
-        return np.flatnonzero(moved)
+    def distinct(self, concerns: Callable[[str], bool]) -> tuple[NDArray[np.intp], NDArray[np.intp]]:
+        """Return the rows that differ in a key which ``concerns`` accepts, and for every row its place among them.
+
+        Of equal rows the first stands for all; row 0 comes first.
+        """
+        columns = [column for key, column in self.columns.items() if concerns(key)]
+        if not columns:
+            return np.zeros(1, dtype=np.intp), np.zeros(self.rows, dtype=np.intp)
+        _, first, place = np.unique(np.stack(columns, axis=1), axis=0, return_index=True, return_inverse=True)
+        order = np.argsort(first)
+        rank = np.empty_like(order)
+        rank[order] = np.arange(order.size)
+        return first[order], rank[place.reshape(-1)]
 
 
 def resolve(owner: str, values: Mapping[str, Value], batch: Batch) -> dict[str, NDArray[np.float64]]:

@@ -94,7 +94,7 @@ def design_points(problem: SideProblem, supply: Array, size: float = 1.0, thresh
         Units of width (or copies) of every switch.
     threshold_shift : float [V]
     """
-    pair = problem.switches(supply, threshold_shift)
+    pair = problem.switches(supply, threshold_shift, depth=problem.circuit_depth)
     metrics = estimate(
         problem.circuit_at(supply, size, threshold_shift),
         pair,

@@ -28,7 +28,8 @@ __all__ = ["All", "Condition", "Objective", "Optimum", "SideRun", "minimise", "s
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 Objective = Callable[[SideProblem, Points], Array]
-ZOOM_POINTS = 33
+#: points of which a costly condition is asked in one call: enough to be worth the call
+ASKED_TOGETHER = 16
 #: relative distance at which an optimum counts as lying on a limit of the search
 ON_BOUND = 1.0e-9
 
@@ -134,12 +135,13 @@ def supply_grid(problem: SideProblem) -> Array:
 
 
 def _take(points: Points, column: NDArray[np.intp]) -> Points:
-    """Pick one supply per row; every (row, supply) array becomes (row, 1)."""
+    """Pick supplies row by row, (row,) or (row, k); every (row, supply) array becomes (row, 1) or (row, k)."""
     shape = points.energy.shape
+    columns = column.reshape(shape[0], -1)
 
     def pick(value: Any) -> Any:
         if isinstance(value, np.ndarray) and value.shape == shape:
-            return np.take_along_axis(value, column[:, None], axis=1)
+            return np.take_along_axis(value, columns, axis=1)
         if isinstance(value, Mapping):
             return {key: pick(item) for key, item in value.items()}
         return value
@@ -194,12 +196,42 @@ def _bracket(centre: Array, reach: float | Array, ends: tuple[float, float]) -> 
     return np.asarray(np.maximum(centre - reach, ends[0])), np.asarray(np.minimum(centre + reach, ends[1]))
 
 
-def _search(run: SideRun, combination: tuple[float, float], objective: Objective, condition: Condition) -> Optimum:
+def _best_on_grid(
+    run: SideRun, grid: Points, objective: Objective, cheap: Condition, costly: Condition | None
+) -> tuple[NDArray[np.intp], Array]:
+    """Best permitted supply of the grid for every row; the costly condition is asked of the best supplies first."""
+    score = objective(run.problem, grid)
+    open_to = grid.able & cheap(run, grid, grid.able)
+    column, value = _best(score, open_to)
+    if costly is None:
+        return column, value
+    together = max(1, ASKED_TOGETHER // score.shape[0])
+    permitted = np.zeros(score.shape, dtype=bool)
+    while (unsettled := np.isfinite(value) & ~np.take_along_axis(permitted, column[:, None], axis=1)[:, 0]).any():
+        order = np.argsort(np.where(open_to & ~permitted, score, np.inf), axis=1, kind="stable")[:, :together]
+        wanted = np.take_along_axis(open_to, order, axis=1) & unsettled[:, None]
+        answer = costly(run, _take(grid, order), wanted) & wanted
+        np.put_along_axis(permitted, order, answer, axis=1)
+        refused = np.zeros(score.shape, dtype=bool)
+        np.put_along_axis(refused, order, wanted & ~answer, axis=1)
+        open_to &= ~refused
+        column, value = _best(score, open_to)
+    return column, value
+
+
+def _search(
+    run: SideRun,
+    combination: tuple[float, float],
+    objective: Objective,
+    cheap: Condition,
+    costly: Condition | None = None,
+) -> Optimum:
     """Grid, then zoom. What a row gets does not depend on the other rows of the batch."""
     problem = run.problem
     grid = run.grid(combination)
     ends = problem.side.supply
-    column, value = _best(objective(problem, grid), grid.able & condition(run, grid, grid.able))
+    condition = cheap if costly is None else All.of(cheap, costly)
+    column, value = _best_on_grid(run, grid, objective, cheap, costly)
     best = _take(grid, column)
     step = (ends[1] - ends[0]) / max(problem.study.supply_points - 1, 1)
     # the step of the grid, not its neighbours: a declared supply may lie beside a point of the grid, or on it
@@ -214,7 +246,7 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
     at_limit = np.zeros(value.shape, dtype=bool)
     active = np.isfinite(value) & (high - low > problem.study.refine_relative * high)
     while active.any():
-        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
+        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, problem.study.zoom_points)
         points = design_points(problem, fine, *combination)
         score = objective(problem, points)
         # only points that would improve on the best so far need to be judged
@@ -229,7 +261,7 @@ def _search(run: SideRun, combination: tuple[float, float], objective: Objective
         refused = ((score < value[:, None]) | ~points.able) & ~permitted
         at_limit = np.where(active, refused.any(axis=1), at_limit)
         # where nothing in the interval was better, zoom around the best point so far
-        near = _bracket(best.supply[:, 0], (high - low) / (ZOOM_POINTS - 1), ends)
+        near = _bracket(best.supply[:, 0], (high - low) / (problem.study.zoom_points - 1), ends)
         low, high = np.where(active, near[0], low), np.where(active, near[1], high)
         active &= high - low > problem.study.refine_relative * high
     found = np.isfinite(value)
@@ -261,7 +293,7 @@ def _feasible(run: SideRun, combination: tuple[float, float], condition: Conditi
     found = np.zeros(wanted.shape, dtype=bool)
     active = wanted & np.isfinite(value)
     while active.any():
-        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, ZOOM_POINTS)
+        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, problem.study.zoom_points)
         points = design_points(problem, fine, *combination)
         column, fine_value = _best(shortest(points), np.ones(fine.shape, dtype=bool))
         better = active & (fine_value < value)
@@ -270,7 +302,7 @@ def _feasible(run: SideRun, combination: tuple[float, float], condition: Conditi
             value = np.where(better, fine_value, value)
         asked = (active & (value <= -1.0))[:, None]
         found |= (asked & best.able & condition(run, best, asked))[:, 0]
-        near = _bracket(best.supply[:, 0], (high - low) / (ZOOM_POINTS - 1), ends)
+        near = _bracket(best.supply[:, 0], (high - low) / (problem.study.zoom_points - 1), ends)
         low, high = np.where(active, near[0], low), np.where(active, near[1], high)
         active &= ~found & (high - low > problem.study.refine_relative * high)
     nowhere = np.zeros(wanted.shape, dtype=bool)
@@ -313,7 +345,7 @@ def _with_costly(
         return optimum
     rows = np.flatnonzero(~allowed)
     smaller = run.subset(rows)
-    again = _search(smaller, combination, objective, All.of(cheap, costly))
+    again = _search(smaller, combination, objective, cheap, costly)
     return _put_rows(optimum, again, rows)
 
 

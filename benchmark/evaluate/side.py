@@ -55,17 +55,29 @@ class SideProblem:
         return "copies" if self.side.technology.options.get("size_scaling") == "copies" else "width"
 
     @property
+    def circuit_depth(self) -> int:
+        """Longest series stack of the circuit."""
+        return max(1, *(net.driver.depth(edge) for net in self.circuit.nets for edge in EDGES))
+
+    @property
     def stack_depth(self) -> int:
         """Longest series stack of the circuit and of the functional requirements."""
-        circuit = max(net.driver.depth(edge) for net in self.circuit.nets for edge in EDGES)
-        return max(circuit, *(requirement.fan_in for requirement in self.study.requirements.values()), 1)
+        return max(self.circuit_depth, *(requirement.fan_in for requirement in self.study.requirements.values()), 1)
 
     def switches(
-        self, supply: Array, threshold_shift: float, temperatures: tuple[float, ...] | None = None
+        self,
+        supply: Array,
+        threshold_shift: float,
+        temperatures: tuple[float, ...] | None = None,
+        depth: int | None = None,
     ) -> SwitchPair:
-        """Switch records at supplies of shape (row or 1, supply), at all temperatures of the study unless given."""
+        """Switch records at supplies of shape (row or 1, supply), at all temperatures of the study unless given.
+
+        ``depth``: longest series stack wanted; that of circuit and functional requirements unless given.
+        """
         temperature = np.asarray(self.study.temperatures if temperatures is None else temperatures)[None, :, None]
-        knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift), "stack_depth": np.asarray(self.stack_depth)}
+        stack = np.asarray(self.stack_depth if depth is None else depth)
+        knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift), "stack_depth": stack}
         return self.device.switch(self.prepared, np.atleast_2d(supply)[:, None, :], temperature, knobs)
 
     def circuit_at(self, supply: Array, size: float, threshold_shift: float) -> Circuit:
@@ -76,7 +88,7 @@ class SideProblem:
         fit = self.circuit.fit
         if fit is None:
             return self.circuit
-        pair = self.switches(supply, threshold_shift, self.study.temperatures[-1:])
+        pair = self.switches(supply, threshold_shift, self.study.temperatures[-1:], self.circuit_depth)
         made = fit(Sized(pair, size, self.size_as), self.wires, rule_by_name(self.study.delay_rule))
         return dataclasses.replace(made, operation=self.circuit.operation)
 

@@ -124,6 +124,8 @@ class Study:
     path: Path
     default_fields: tuple[str, ...] = field(default=())
     topology: str = "same-netlist"
+    #: supplies per zoom of the search
+    zoom_points: int = 33
 
     @property
     def wires_sets(self) -> tuple[ParameterSet, ...]:
