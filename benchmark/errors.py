@@ -14,9 +14,17 @@ from dataclasses import dataclass
 __all__ = ["EvenloadError", "InputRefused", "Problem", "UsageError", "nearest"]
 
 
+def _short(text: str, most: int) -> str:
+    """Cut a text that nobody would read to its end; what a file says may be megabytes long."""
+    return text if len(text) <= most else f"{text[:most]}... ({len(text)} characters)"
+
+
 @dataclass(frozen=True, order=True)
 class Problem:
-    """One thing wrong in a user's file: where, what, what was found, what is allowed, what to do next."""
+    """One thing wrong in a user's file: where, what, what was found, what is allowed, what to do next.
+
+    The fields hold everything; as text, each is cut to a length that can be read.
+    """
 
     file: str
     line: int
@@ -28,13 +36,14 @@ class Problem:
 
     def __str__(self) -> str:
         place = f"{self.file}:{self.line}" if self.line else self.file
-        text = f"{place}: {self.name}: {self.what}" if self.name else f"{place}: {self.what}"
+        name, what = _short(self.name, 200), _short(self.what, 600)
+        text = f"{place}: {name}: {what}" if name else f"{place}: {what}"
         if self.found:
-            text += f"; found {self.found}"
+            text += f"; found {_short(self.found, 600)}"
         if self.allowed:
-            text += f"; allowed: {self.allowed}"
+            text += f"; allowed: {_short(self.allowed, 3000)}"
         if self.hint:
-            text += f"; {self.hint}"
+            text += f"; {_short(self.hint, 600)}"
         return text
 
 

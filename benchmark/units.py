@@ -8,6 +8,7 @@ A decade is a counting unit of its own: a swing is volt per decade and never mix
 from __future__ import annotations
 
 import functools
+import re
 from dataclasses import dataclass
 from decimal import Decimal
 from fractions import Fraction
@@ -20,6 +21,24 @@ _CELSIUS = frozenset({"degC", "°C", "celsius", "degree_Celsius"})
 _DIMENSIONLESS = frozenset({"1", "", "dimensionless"})
 #: symbols that pint reads as something an engineer would not mean in these files
 _MISLEADING = {"a": "year", "c": "speed of light", "h": "hour", "u": "atomic mass unit", "mil": "milli-inch"}
+#: units that pint knows and that would change a number unseen: a cycle is a turn of 2 pi to it, a decibel a plain one
+_MISREAD = {
+    "turn": "a turn of 2 pi; plain counts have the unit 1",
+    "revolution": "turns of 2 pi; plain counts have the unit 1",
+    "decibel": "a plain number; write the ratio itself",
+    "neper": "a plain number; write the ratio itself",
+    "octave": "a plain number; write the ratio itself",
+    "byte": "8 bit; plain counts have the unit 1",
+}
+_LONGEST = 100
+_RAISED = "⁰¹²³⁴⁵⁶⁷⁸⁹"
+_EXPONENT = r"[+-]?\d{1,2}(?:\.\d{1,2})?"
+#: what a unit is made of; pint would drop signs it does not know, and compute a tower of powers of any height
+_TOKEN = re.compile(
+    rf"\s+|[^\W\d{_RAISED}][^\W{_RAISED}]*|°\w|[%‰](?!\w)|\d{{1,9}}(?:\.\d{{1,9}})?(?:[eE][+-]?\d{{1,2}})?(?![\w.])"
+    rf"|[/.·×()](?!/)|\*(?!\*)|(?P<power>(?:\^|\*\*)\s*(?:{_EXPONENT}|\({_EXPONENT}\))(?!\s*[\w.^{_RAISED}]|\s*\*\*)"
+    rf"|[⁻⁺]?[{_RAISED}]{{1,2}}(?!\s*[\^{_RAISED}]|\s*\*\*))"
+)
 
 
 class UnitError(ValueError):
@@ -76,6 +95,9 @@ def parse_unit(text: str) -> Unit:
     if stripped in _MISLEADING:
         message = f"{stripped!r} would be read as {_MISLEADING[stripped]}"
         raise UnitError(message)
+    if len(stripped) > _LONGEST or not _is_shaped(stripped):
+        message = f"{stripped[:_LONGEST]!r} is not a unit"
+        raise UnitError(message)
     registry = _registry()
     try:
         unit = registry.parse_units(stripped)
@@ -87,12 +109,29 @@ def parse_unit(text: str) -> Unit:
     if any("delta" in str(part) or "degree" in str(part) for part in unit._units):
         message = f"{stripped!r} mixes an offset temperature with other units; write K"
         raise UnitError(message)
+    for part in map(str, unit._units):
+        for name, reading in _MISREAD.items():
+            if name in part:
+                message = f"{stripped!r} would be read as {reading}"
+                raise UnitError(message)
     return Unit(
         stripped,
         Fraction(factor),
         Fraction(0),
         tuple(sorted((str(name), Fraction(power)) for name, power in dimension.items())),
     )
+
+
+def _is_shaped(text: str) -> bool:
+    """Tell whether a text is made of what units are made of, with plain powers."""
+    at, brackets_raised = 0, 0
+    while at < len(text):
+        token = _TOKEN.match(text, at)
+        if token is None:
+            return False
+        brackets_raised += token["power"] is not None and text[:at].rstrip().endswith(")")
+        at = token.end()
+    return brackets_raised <= 1
 
 
 def to_si(number: Decimal | int, unit: Unit) -> float:

@@ -6,7 +6,9 @@ line; it is used for messages only, never for values.
 
 from __future__ import annotations
 
+import bisect
 import codecs
+import functools
 import hashlib
 import re
 import stat
@@ -23,6 +25,10 @@ __all__ = ["TomlFile", "read_bytes", "read_toml", "shown"]
 
 #: a parameter file is written by hand; anything larger is not one
 MAX_BYTES = 4_000_000
+#: longer dotted names are looked up by their beginning
+MAX_NAME = 2_000
+#: a whole number of more bits is shown by its size, for Python refuses to write out thousands of digits
+MAX_BITS = 1_000
 _HEADER = re.compile(r"^\s*(\[\[?)\s*([^\[\]]+?)\s*\]\]?\s*(?:#.*)?$")
 _OPENS = re.compile(r"\s*(\"\"\"|''')")
 _KEY = re.compile(r"^\s*([A-Za-z0-9_\-]+|\"[^\"]*\")(?:\s*\.\s*([A-Za-z0-9_\-.]+))?\s*=")
@@ -44,17 +50,22 @@ class TomlFile:
 
         0 if the name stands nowhere.
         """
+        dotted = dotted[:MAX_NAME]
         if dotted not in self.lines:
-            inside = [line for key, line in self.lines.items() if key.startswith(f"{dotted}.")]
-            if inside:
-                return min(inside)
-        parts = dotted.split(".")
-        while parts:
-            found = self.lines.get(".".join(parts))
+            names = self._sorted_names
+            start, end = (bisect.bisect_left(names, f"{dotted}{sign}") for sign in "./")  # "/" follows "."
+            if start < end:
+                return min(self.lines[name] for name in names[start:end])
+        while dotted:
+            found = self.lines.get(dotted)
             if found:
                 return found
-            parts.pop()
+            dotted = dotted.rpartition(".")[0]
         return 0
+
+    @functools.cached_property
+    def _sorted_names(self) -> list[str]:
+        return sorted(self.lines)
 
     def problem(self, dotted: str, what: str, found: str = "", allowed: str = "", hint: str = "") -> Problem:
         """Build a problem at the line of ``dotted``."""
@@ -65,6 +76,8 @@ def shown(value: Any) -> str:
     """Print a value of the file the way the user wrote it, at most 60 characters."""
     if isinstance(value, bool):
         text = "true" if value else "false"
+    elif isinstance(value, int) and value.bit_length() > MAX_BITS:
+        text = f"a whole number of about {value.bit_length() * 0.30103:.0f} digits"
     elif isinstance(value, (Decimal, int)):
         text = str(value)
     elif isinstance(value, str):
@@ -82,7 +95,7 @@ def _index(text: str) -> dict[str, int]:
     lines: dict[str, int] = {}
     counts: dict[str, int] = {}
     prefix, quotes = "", ""
-    for number, line in enumerate(text.splitlines(), start=1):
+    for number, line in enumerate(text.split("\n"), start=1):  # TOML has no other line ends
         if quotes:  # inside a string of several lines
             quotes = "" if quotes in line else quotes
             continue
@@ -157,7 +170,7 @@ def read_toml(path: Path, collector: Collector, name: str | None = None) -> Toml
     except tomllib.TOMLDecodeError as error:
         message = str(error)
         match = re.search(r"at line (\d+)", message)
-        line = int(match.group(1)) if match else len(text.splitlines())
+        line = int(match.group(1)) if match else text.removesuffix("\n").count("\n") + 1
         collector.add(Problem(name, line, "", f"is not TOML: {message}"))
         return None
     except (RecursionError, ValueError, ArithmeticError) as error:

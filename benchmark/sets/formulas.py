@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import ast
+import warnings
 from collections.abc import Mapping
 
 import numpy as np
@@ -29,9 +30,9 @@ def evaluate_formula(text: str, values: Mapping[str, NDArray[np.float64]]) -> ND
         message = f"is longer than {_MAX_LENGTH} characters"
         raise FormulaError(message)
     try:
-        tree = ast.parse(text, mode="eval")
+        tree = _parsed(text)
         with np.errstate(all="raise"):
-            return np.atleast_1d(np.asarray(_walk(tree.body, values), dtype=np.float64))
+            found = np.atleast_1d(np.asarray(_walk(tree.body, values), dtype=np.float64))
     except (SyntaxError, ValueError, RecursionError, MemoryError) as error:
         if isinstance(error, FormulaError):
             raise
@@ -40,12 +41,23 @@ def evaluate_formula(text: str, values: Mapping[str, NDArray[np.float64]]) -> ND
     except (ArithmeticError, FloatingPointError) as error:
         message = "cannot be computed with these values"
         raise FormulaError(message) from error
+    if not np.all(np.isfinite(found)):  # a number too large to be one
+        message = "cannot be computed with these values"
+        raise FormulaError(message)
+    return found
+
+
+def _parsed(text: str) -> ast.Expression:
+    """Read an expression; what Python only warns about is no arithmetic either."""
+    with warnings.catch_warnings():
+        warnings.simplefilter("error")
+        return ast.parse(text, mode="eval")
 
 
 def names_in(text: str) -> frozenset[str]:
     """Return the names a formula uses; none when it cannot be read."""
     try:
-        tree = ast.parse(text[:_MAX_LENGTH], mode="eval")
+        tree = _parsed(text[:_MAX_LENGTH])
     except (SyntaxError, ValueError, RecursionError, MemoryError):
         return frozenset()
     return frozenset(node.id for node in ast.walk(tree) if isinstance(node, ast.Name))

@@ -10,7 +10,7 @@ from pydantic import BaseModel, BeforeValidator, ConfigDict, Field, ValidationEr
 from pydantic_core import PydanticCustomError
 
 from benchmark.errors import Problem, nearest
-from benchmark.sets.files import TomlFile, shown
+from benchmark.sets.files import MAX_BITS, TomlFile, shown
 from benchmark.sets.problems import Collector
 
 __all__ = [
@@ -32,15 +32,28 @@ def _number(value: Any) -> Any:
     if isinstance(value, Decimal) and not value.is_finite():
         msg = "finite"
         raise PydanticCustomError(msg, "a finite number is needed")
-    size = Decimal(value).copy_abs()  # copy_abs: exact, and never an overflow of its own
+    if isinstance(value, int) and value.bit_length() > MAX_BITS:
+        size = Decimal("Infinity")
+    else:
+        size = Decimal(value).copy_abs()  # copy_abs: exact, and never an overflow of its own
     if size > Decimal("1e300") or (size and size < Decimal("1e-300")):
         msg = "finite"
         raise PydanticCustomError(msg, "the number is beyond the range of the program (1e-300 to 1e300)")
     return value
 
 
+def _whole(value: Any) -> Any:
+    if isinstance(value, int) and abs(value) > MOST_WHOLE:
+        msg = "finite"
+        raise PydanticCustomError(msg, "the number is beyond the range of the program (1e9)")
+    return value
+
+
+#: largest whole number of a key that is not a physical value
+MOST_WHOLE = 10**9
 M = TypeVar("M", bound="FileModel")
 Number = Annotated[Decimal | int, BeforeValidator(_number)]
+Whole = Annotated[int, BeforeValidator(_whole)]
 Text = Annotated[str, Field(max_length=20_000)]
 _LABEL = r"^[A-Za-z0-9][A-Za-z0-9_.\-]{0,80}$"
 _NODE_LABEL = r"^[A-Za-z][A-Za-z0-9_\-]{0,40}$"
@@ -287,7 +300,7 @@ class SourceEntry(FileModel):
         "patent",
     ] = Field(description="What it is")
     authors: list[Text] = Field(description="Who wrote, measured or decided")
-    year: int = Field(description="Year of publication")
+    year: Whole = Field(description="Year of publication")
     title: Title
     venue: Text = Field(default="", description="Journal, volume and pages; publisher; conference")
     doi: Text = Field(default="", description="Digital object identifier, without a prefix")

@@ -22,6 +22,7 @@ from benchmark.sets.schema import (
     Title,
     UnitText,
     ValueTable,
+    Whole,
 )
 
 __all__ = ["CircuitFile", "StudyFile"]
@@ -171,7 +172,7 @@ class RequirementTable(FileModel):
     kind: Literal["hard", "report"] = Field(
         description="hard: bounds the search of both sides; report: judged at the optimum"
     )
-    fan_in: int | None = Field(
+    fan_in: Whole | None = Field(
         default=None, description="Inputs of the gates judged: noise_margin and voltage_gain only"
     )
     life: Measure | None = Field(default=None, description="Life in use: endurance only")
@@ -207,7 +208,7 @@ class VerdictTable(FileModel):
 class SearchTable(FileModel):
     """Resolution of the supply search."""
 
-    supply_points: int = Field(default=121, description="Points of the supply grid")
+    supply_points: Whole = Field(default=121, description="Points of the supply grid")
     refine_relative: Number = Field(default=1, description="Relative step to which the best grid point is refined")
 
 

@@ -153,15 +153,13 @@ def check_range(
     if not quantity.allows(si):
         collector.add(place.file.problem(dotted, "is out of its domain", as_found, quantity.domain_text))
         return False
-    unit_of_range = parse_unit(quantity.unit)
-    low, high = (to_si(Decimal(repr(bound)), unit_of_range) for bound in (quantity.low, quantity.high))
+    low, high = _usual(quantity)
     if low <= si <= high or (si == 0.0 and quantity.domain != "positive"):
         return True
-    allowed = amount(f"usually {quantity.low:g} to {quantity.high:g}", quantity.unit)
-    far = (low > 0.0 and abs(si) < low / 1000.0) or abs(si) > 1000.0 * max(abs(low), abs(high))
+    allowed = _usually(quantity)
     if unusual:
         return True
-    if far:
+    if _is_far(quantity, si):
         collector.add(
             place.file.problem(
                 dotted,
@@ -176,22 +174,67 @@ def check_range(
     return True
 
 
+def _usual(quantity: Quantity) -> tuple[float, float]:
+    """Return the usual range in SI."""
+    unit = parse_unit(quantity.unit)
+    return to_si(Decimal(repr(quantity.low)), unit), to_si(Decimal(repr(quantity.high)), unit)
+
+
+def _usually(quantity: Quantity) -> str:
+    return amount(f"usually {quantity.low:g} to {quantity.high:g}", quantity.unit)
+
+
+def _is_far(quantity: Quantity, si: float) -> bool:
+    """Tell whether a number is more than a factor 1000 outside the usual range; a zero may be meant."""
+    low, high = _usual(quantity)
+    if si == 0.0 and quantity.domain != "positive":
+        return False
+    return (low > 0.0 and abs(si) < low / 1000.0) or abs(si) > 1000.0 * max(abs(low), abs(high))
+
+
 def _may_reach(quantity: Quantity, si: float) -> bool:
     """Tell whether a range may reach a number; a range of whole numbers passes between them."""
     return si >= 1.0 if quantity.domain == "count" else quantity.allows(si)
 
 
 def _convert_spread(
-    table: Any,
-    quantity: Quantity,
-    unit: Unit,
-    si: NDArray[np.float64],
-    raw: Sequence[Decimal | int],
-    by_node: bool,
-    place: Place,
-    collector: Collector,
+    table: ValueTable, quantity: Quantity, unit: Unit, si: NDArray[np.float64], place: Place, collector: Collector
 ) -> Spread | None:
-    file, dotted = place.file, f"{place.dotted}.spread"
+    """Convert a spread; its ends must be numbers of the program and, unless said otherwise, plausible."""
+    dotted = f"{place.dotted}.spread"
+    before = len(collector.problems)
+    try:
+        with np.errstate(over="ignore"):
+            spread = _read_spread(table, quantity, unit, si, place, collector)
+    except OverflowError:
+        spread = None
+    if len(collector.problems) > before:
+        return None
+    ends = [] if spread is None else [*spread.low.tolist(), *spread.high.tolist()]
+    lost = spread is not None and "log" in spread.shape and min(ends) == 0.0  # a positive end that became zero
+    if spread is None or lost or not np.all(np.isfinite(ends)):
+        collector.add(place.file.problem(dotted, "reaches beyond the range of the program"))
+        return None
+    far = [end for end in ends if _is_far(quantity, end)]
+    if far and not table.unusual:
+        collector.add(
+            place.file.problem(
+                dotted,
+                "reaches more than a factor 1000 outside the usual range",
+                amount(f"{from_si(far[0], unit):.6g}", unit.text),
+                _usually(quantity),
+                "check the spread, or state unusual = true",
+            )
+        )
+        return None
+    return spread
+
+
+def _read_spread(
+    values: ValueTable, quantity: Quantity, unit: Unit, si: NDArray[np.float64], place: Place, collector: Collector
+) -> Spread | None:
+    file, dotted, table = place.file, f"{place.dotted}.spread", values.spread
+    by_node = values.by_node is not None
 
     def refuse(what: str, found: str = "", allowed: str = "", hint: str = "") -> None:
         collector.add(file.problem(dotted, what, found, allowed, hint))
@@ -209,10 +252,10 @@ def _convert_spread(
         if table.low > table.high:
             refuse("has low above high", f"low {table.low}, high {table.high}", "low <= value <= high")
             return None
-        if not table.low <= raw[0] <= table.high:
+        if values.value is None or not table.low <= values.value <= table.high:
             refuse(
                 "does not contain the value",
-                f"value {raw[0]}, low {table.low}, high {table.high}",
+                f"value {values.value}, low {table.low}, high {table.high}",
                 "low <= value <= high",
             )
             return None
@@ -252,7 +295,7 @@ def _convert_spread(
             )
             return None
         return Spread("normal", low_95, high_95, sd)
-    return _convert_lognormal(table, quantity, si, refuse)
+    return None if table is None else _convert_lognormal(table, quantity, si, refuse)
 
 
 def _convert_lognormal(table: LogNormal, quantity: Quantity, si: NDArray[np.float64], refuse: Any) -> Spread | None:
@@ -374,9 +417,7 @@ def convert_value(
     array = np.array(si, dtype=np.float64)
     spread = None
     if table.spread is not None:
-        spread = _convert_spread(
-            table.spread, quantity, unit, array, list(numbers.values()), table.by_node is not None, place, collector
-        )
+        spread = _convert_spread(table, quantity, unit, array, place, collector)
         if spread is None:
             return None
     return Value(
