@@ -1,0 +1,63 @@
+"""A set extracted from cards that nobody here wrote, against the same cards in a circuit simulator."""
+
+from __future__ import annotations
+
+import tomllib
+
+import pytest
+
+from tests.near import near
+from tests.open_cards import card, open_45nm
+from tests.open_cards.freepdk45 import PLACE, text
+from tests.open_cards.row import Row
+
+pytestmark = pytest.mark.spice
+
+
+def _hold(rows: list[Row]) -> None:
+    assert rows
+    wrong = [f"{row.quantity}: {row.obtained:.5g}, expected {row.expected:.5g}" for row in rows if not row.holds]
+    assert not wrong, "\n".join(wrong)
+
+
+def test_the_cards_run_on_the_stated_model():
+    assert card.model_version() == "BSIM4v5 models (Berkeley Short Channel IGFET Model-4)"
+
+
+def test_decks_repeat_the_stored_series():
+    _hold(open_45nm.deck_rows())
+
+
+def test_stored_set_is_what_extraction_gives():
+    """Targets and capacitances to print; fitted values, which trade against each other, to 1 %."""
+    stored, now = tomllib.loads(PLACE.read_text(encoding="utf-8")), tomllib.loads(text())
+    assert stored.keys() == now.keys()
+    assert stored["value"].keys() == now["value"].keys()
+    for name, value in stored["value"].items():
+        allowed = 1e-2 if value["evidence"] == "extracted" else 1e-5
+        assert now["value"][name]["value"] == near(value["value"], rel=allowed), name
+    for name, anchor in stored["anchor"].items():
+        assert now["anchor"][name]["value"] == near(anchor["value"], rel=1e-4), name
+
+
+def test_currents_are_met():
+    _hold(open_45nm.current_rows())
+
+
+def test_delay_and_energy_are_predicted():
+    """0.3 to 1.0 V: delay within 5 %, energy within 10 %; measured -4.0 to +2.3 % and -7.6 to -0.4 %."""
+    _hold(open_45nm.prediction_rows())
+
+
+@pytest.mark.parametrize("supply", open_45nm.APART)
+def test_where_the_differences_come_from(supply: float):
+    _hold(open_45nm.apart(supply))
+
+
+def test_other_readings_of_the_edge_capacitance(tmp_path):
+    """The reading matters: the mean over the drain's swing misses 10 % at 0.4 V, a reading below threshold does not."""
+    rows = open_45nm.edge_rows(tmp_path)
+    _hold(rows)
+    weak = [row for row in rows if "swing below" in row.note]
+    assert all(abs(row.difference) < 0.10 for row in weak)
+    assert any(abs(row.difference) > 0.20 for row in rows if row not in weak)
