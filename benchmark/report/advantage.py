@@ -11,6 +11,7 @@ from benchmark.report.energy_delay import limits_of
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, Placer, fitted, hatch, wrapped
 from benchmark.report.rows import advantage_rows
+from benchmark.report.spots import Spot, Spots
 from benchmark.report.style import INK, LinearAxis, LogAxis, looks, positive, spec
 from benchmark.report.words import amount, is_number, listed, number
 
@@ -19,6 +20,8 @@ __all__ = ["advantage_against_time", "advantage_by_node", "crossing_words", "lev
 Record = Mapping[str, Any]
 WIDTH, HEIGHT = 610.0, 330.0
 MARGINS = (64.0, 10.0, 12.0, 48.0)
+#: least distance of marks along the line [pixel]
+SPACING = 34.0
 
 
 def levels(record: Record) -> list[tuple[float, str]]:
@@ -126,6 +129,7 @@ def advantage_against_time(record: Record, width: float = WIDTH, height: float =
     singles = [group[0] for _, group in stretches(known, "run") if len(group) == 1]
     canvas.marks(singles, "time_s", "advantage", shape=look.marker, size=40, color=look.colour)
     labels += _crossings(canvas, record, x, y, placer)
+    spots = _time_spots(canvas, rows, x, y, [row["time"] for row in record["crossings"]], look.colour)
     canvas.leaders(labels)
     canvas.backs(labels)
     canvas.words([words for label in labels for words in label.words()])
@@ -144,7 +148,29 @@ def advantage_against_time(record: Record, width: float = WIDTH, height: float =
     between = f"between {amount(known[0]['time_s'], 's')} and {amount(known[-1]['time_s'], 's')}"
     alternative = f"Advantage against required time: {span} {between}. {' '.join(crossing_words(record))}"
     drawing = checked(spec(canvas.layers, width, height, MARGINS))
-    return Chart(key, title, drawing, " ".join(filter(None, caption)), alternative, tuple(rows))
+    return Chart(key, title, drawing, " ".join(filter(None, caption)), alternative, tuple(rows), spots)
+
+
+def _time_spots(
+    canvas: Canvas, rows: Sequence[Row], x: LogAxis, y: LogAxis, wanted: Sequence[float], colour: str
+) -> tuple[Spot, ...]:
+    """Mark points along the line, not crowded and always next to the times ``wanted`` [s], and return their places."""
+    known = [index for index, row in enumerate(rows) if is_number(row["advantage"]) and row["advantage"] > 0.0]
+    chosen = {min(known, key=lambda index: abs(x.pixel(rows[index]["time_s"]) - x.pixel(time))) for time in wanted}
+    for index in known:
+        if all(abs(x.pixel(rows[index]["time_s"]) - x.pixel(rows[other]["time_s"])) >= SPACING for other in chosen):
+            chosen.add(index)
+    spots = Spots(*MARGINS[:2])
+    for index in sorted(chosen):
+        row = rows[index]
+        said = f"required time {amount(row['time_s'], 's', 3)}: advantage {number(row['advantage'], 3)}"
+        energies = " and ".join(amount(row[f"{side}_energy_J"], "J", 3) for side in ("candidate", "reference"))
+        name = f"{said}, candidate and reference energy {energies}, strongest contender {row['strongest_contender']}"
+        spots.mark(x.pixel(row["time_s"]), y.pixel(row["advantage"]), index, name)
+    canvas.marks(
+        [rows[index] for index in sorted(chosen)], "time_s", "advantage", shape="circle", size=22, color=colour
+    )
+    return spots.found()
 
 
 def _candidate_key(record: Record) -> str:
@@ -237,11 +263,15 @@ def advantage_by_node(record: Record, width: float = WIDTH) -> Chart:
         for i, line in enumerate(fitted(row["note"] or "infeasible", max(60.0, width / len(rows)), 3))
     ]
     names = _node_names(rows, x, height)
+    spots = Spots(*MARGINS[:2])
+    for row in points:
+        said = f"node {row['node']}: advantage {number(row['advantage'], 3, limits)}"
+        spots.mark(x.pixel(row["order"]), y.pixel(row["advantage"]), int(row["order"]), said)
     canvas.words([*(words for label in labels for words in label.words()), *remarks, *names])
     drawing = checked(spec(canvas.layers, width, height, (64.0, 10.0, 12.0, 60.0)))
     summary = _node_words(record, rows)
     caption = f"Primary policy at every node pair. {summary} Labels are equally spaced: a label is not a length."
-    return Chart(key, title, drawing, caption, f"Advantage by node. {summary}", tuple(rows))
+    return Chart(key, title, drawing, caption, f"Advantage by node. {summary}", tuple(rows), spots.found())
 
 
 def _node_names(rows: Sequence[Row], x: LinearAxis, height: float) -> list[Words]:

@@ -9,8 +9,10 @@ from typing import Any
 from benchmark.report.figure import Chart
 from benchmark.report.words import is_number, number
 
-__all__ = ["Block", "Bullets", "Cell", "Code", "Figure", "Notice", "Pairs", "Paragraph", "Section", "Table", "plain"]
-
+__all__ = [
+    *("Block", "Bullets", "Cell", "Code", "Figure", "Group", "Groups", "Notice", "Pairs", "Paragraph", "Section"),
+    *("Table", "plain"),
+]
 
 #: characters of a word that still fits a column
 LONGEST = 22
@@ -18,12 +20,14 @@ LONGEST = 22
 
 @dataclass(frozen=True)
 class Cell:
-    """Text of one cell, with what else it says: a link to a place on the page, a small second line."""
+    """Text of one cell, with what else it says: a link to a place on the page, a small second line, further links."""
 
     text: str
     href: str = ""
     small: str = ""
     number: bool = False
+    #: words and places of further links
+    links: tuple[tuple[str, str], ...] = ()
 
     @property
     def style(self) -> str:
@@ -88,6 +92,8 @@ class Table:
     #: words of each row a filter looks at: evidence class, set by
     tags: tuple[Mapping[str, str], ...] = ()
     empty: str = "none"
+    #: id of each row, where rows can be led to
+    anchors: tuple[str, ...] = ()
     kind: str = "table"
 
 
@@ -101,7 +107,26 @@ class Figure:
     kind: str = "figure"
 
 
-Block = Paragraph | Notice | Bullets | Pairs | Code | Table | Figure
+@dataclass(frozen=True)
+class Group:
+    """Blocks under a heading of their own."""
+
+    key: str
+    title: str
+    blocks: tuple[Paragraph | Table | Figure, ...]
+
+
+@dataclass(frozen=True)
+class Groups:
+    """Groups of one kind, all shown; a small script offers to show one at a time."""
+
+    key: str
+    label: str
+    groups: tuple[Group, ...]
+    kind: str = "groups"
+
+
+Block = Paragraph | Notice | Bullets | Pairs | Code | Table | Figure | Groups
 
 
 @dataclass(frozen=True)

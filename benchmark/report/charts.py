@@ -31,7 +31,7 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         *where_it_goes(record),
         input_swings(record),
         advantage_by_node(record),
-        node_steps(record),
+        *node_steps(record),
     ]
     if record.get("ratio_only"):
         found = [dataclasses.replace(chart, points=tuple(ratio_columns(chart.points))) for chart in found]

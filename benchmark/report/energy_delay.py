@@ -21,12 +21,14 @@ __all__ = [
     "energy_delay",
     "envelope_path",
     "limits_of",
+    "plane_of",
     "side_key",
     "side_name",
 ]
 
 Record = Mapping[str, Any]
 WIDTH, HEIGHT = 610.0, 420.0
+MARGINS = (74.0, 10.0, 12.0, 48.0)
 POLICY_SHAPES = ("circle", "square", "diamond", "triangle-up", "cross", "triangle-down")
 FEASIBLE = state_word(True)
 #: how far beyond the feasible points the chart looks
@@ -120,7 +122,8 @@ def _marks(record: Record) -> list[Row]:
     return positive(rows, "time_s", "energy_J")[0]
 
 
-def _plane(record: Record, width: float, height: float) -> Plane | None:
+def plane_of(record: Record, width: float, height: float) -> Plane | None:
+    """Return the plane of the chart of some size; None when no side has a point with positive time and energy."""
     drawn, left_out = _drawn(record)
     usable, dropped = {}, 0
     for key, rows in drawn.items():
@@ -235,12 +238,15 @@ def _alternative(record: Record, plane: Plane) -> str:
 
 def energy_delay(record: Record, width: float = WIDTH, height: float = HEIGHT) -> Chart:
     """Draw swept curves, the reference envelope and the design points of all policies, on a plane of some size."""
-    from benchmark.report.energy_delay_layers import layers
+    from benchmark.report.energy_delay_layers import layers, supplies_of
+    from benchmark.report.energy_delay_spots import spots
 
     title = "Energy against time per operation"
-    plane = _plane(record, width, height)
+    plane = plane_of(record, width, height)
     if plane is None:
         words = "Not drawn: no design point of any side has a positive time and energy."
         return Chart("energy-delay", title, None, words, words)
-    drawing = checked(spec(layers(record, plane), width, height, (74.0, 10.0, 12.0, 48.0)))
-    return Chart("energy-delay", title, drawing, _caption(plane), _alternative(record, plane), _points(plane))
+    supplies = supplies_of(plane)
+    drawing = checked(spec(layers(record, plane, supplies), width, height, MARGINS))
+    found = spots(record, plane, supplies, MARGINS[:2])
+    return Chart("energy-delay", title, drawing, _caption(plane), _alternative(record, plane), _points(plane), found)

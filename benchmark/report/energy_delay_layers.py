@@ -13,7 +13,7 @@ from benchmark.report.placing import Box, Placer, hatch, wrapped
 from benchmark.report.style import INK, looks
 from benchmark.report.words import amount, policy_name, volts
 
-__all__ = ["layers"]
+__all__ = ["layers", "policy_groups", "supplies_of"]
 
 FAILING_DASH = [1.5, 3.5]
 #: the reference is a band: a pale line on a darker, broader one
@@ -82,8 +82,8 @@ def _regions(plane: Plane) -> list[tuple[Box, tuple[float, float, float, float],
     return found
 
 
-def _policy_groups(plane: Plane) -> list[tuple[Row, list[str]]]:
-    """Marks that coincide share one symbol and one label."""
+def policy_groups(plane: Plane) -> list[tuple[Row, list[str]]]:
+    """Return first mark and policies of each group: marks that coincide share one symbol and one label."""
     groups: list[tuple[Row, list[str]]] = []
     for mark in plane.marks:
         x, y = plane.pixel(mark)
@@ -148,7 +148,7 @@ def _labels(
     if plane.envelope:
         spots = _spots(plane, plane.envelope, (0.2, 0.4, 0.6, 0.8))
         put(["reference: lower envelope", "of the feasible contenders"], spots, "#4d4d4d", bold=True)
-    for mark, names in _policy_groups(plane):
+    for mark, names in policy_groups(plane):
         stands = "" if mark["ambition"] == "today" else f" ({mark['ambition']})"
         put(wrapped(", ".join(policy_name(name) for name in names) + stands, 34), [plane.pixel(mark)], INK)
     for key in order:
@@ -157,13 +157,18 @@ def _labels(
     return found
 
 
-def layers(record: Mapping[str, Any], plane: Plane) -> list[Row]:
-    """Return the layers, from the ground up."""
-    styles = looks(record)
+def supplies_of(plane: Plane) -> dict[str, list[Row]]:
+    """Return side key -> points of its curve that carry a supply mark, the candidate first."""
     order = sorted(
         (key for key, rows in plane.curves.items() if rows), key=lambda key: not key.startswith("candidate ")
     )
-    supplies = {key: _supply_marks(plane, plane.curves[key]) for key in order}
+    return {key: _supply_marks(plane, plane.curves[key]) for key in order}
+
+
+def layers(record: Mapping[str, Any], plane: Plane, supplies: Mapping[str, Sequence[Row]]) -> list[Row]:
+    """Return the layers, from the ground up; ``supplies`` as ``supplies_of`` chooses them."""
+    styles = looks(record)
+    order = list(supplies)
     labels = _labels(record, plane, order, supplies)
     canvas = Canvas(plane.x, plane.y)
     canvas.frame()
@@ -184,7 +189,7 @@ def layers(record: Mapping[str, Any], plane: Plane) -> list[Row]:
         dash = list(look.dash) or [1, 0]
         canvas.path(good, "time_s", "energy_J", color=look.colour, strokeWidth=look.width, strokeDash=dash)
         canvas.marks(supplies[key], "time_s", "energy_J", shape=look.marker, size=34, color=look.colour)
-    for mark, _ in _policy_groups(plane):
+    for mark, _ in policy_groups(plane):
         look_of_mark: Row = _AMBITION[mark["ambition"]] | {
             "shape": mark["shape"],
             "size": 110,

@@ -6,6 +6,8 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 from typing import Any
 
+from benchmark.report.spots import Spot
+
 __all__ = ["Chart", "checked", "to_png", "to_svg"]
 
 Row = dict[str, Any]
@@ -15,7 +17,8 @@ Row = dict[str, Any]
 class Chart:
     """One figure. ``spec`` is None when there is nothing to draw, and the caption says why.
 
-    ``points`` are exactly the plotted data, with units in their names.
+    ``points`` are exactly the plotted data, with units in their names; ``spots`` are the places of the drawing that
+    lead to rows of them.
     """
 
     key: str
@@ -24,6 +27,7 @@ class Chart:
     caption: str
     alternative: str
     points: tuple[Row, ...] = ()
+    spots: tuple[Spot, ...] = ()
 
 
 def checked(spec: Mapping[str, Any]) -> dict[str, Any]:

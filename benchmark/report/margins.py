@@ -9,6 +9,7 @@ from typing import Any
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, fitted, hatch, text_width
+from benchmark.report.spots import Spots
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import amount, is_number, listed, number, requirement_name
 
@@ -16,7 +17,7 @@ __all__ = ["decades", "margin_words", "requirement_margins"]
 
 Record = Mapping[str, Any]
 WIDTH, LEFT, RIGHT = 330.0, 170.0, 210.0
-ROW, BAR = 34.0, 16.0
+ROW, BAR, TOP = 34.0, 16.0, 6.0
 #: bars are drawn at most this far; what lies beyond says so in words
 MOST = 4.0
 FAIL, PASS = "#D55E00", "#0072B2"
@@ -54,6 +55,11 @@ def _order(row: Row) -> tuple[float, str]:
 def _offer(row: Row, room: float) -> str:
     offered, demanded = (amount(row[name], row["unit"], 2) for name in ("offered", "demanded"))
     return fitted(f"offered {offered}, demanded {demanded}", room + 30.0)[0]
+
+
+def _name(row: Row) -> str:
+    offered, demanded = (amount(row[name], row["unit"], 3) for name in ("offered", "demanded"))
+    return f"{requirement_name(row['name'])}: {margin_words(row)}; offered {offered}, demanded {demanded}"
 
 
 def _axis(rows: Sequence[Row], width: float) -> LinearAxis:
@@ -118,9 +124,11 @@ def requirement_margins(record: Record, width: float = WIDTH, left: float = LEFT
     canvas.frame()
     zero = axis.pixel(0.0)
     canvas.rules([(zero, 0.0, zero, height)], color=INK, strokeWidth=1.6)
+    spots = Spots(left, TOP)
     for position, row in enumerate(rows):
         middle = 4.0 + ROW * (position + 0.5)
         _bar(canvas, axis, row, middle)
+        spots.bar(Box(0.0, middle - 0.5 * ROW, width, middle + 0.5 * ROW), position, _name(row))
         state = fitted(margin_words(row), right - 14.0, bold=True)[0]
         canvas.words(
             [
@@ -137,7 +145,7 @@ def requirement_margins(record: Record, width: float = WIDTH, left: float = LEFT
         )
     longest = max(text_width(_offer(row, right)) for row in rows)
     right = max(right, longest + 14.0)
-    drawing = checked(spec(canvas.layers, width, height, (left, 6.0, right, 48.0)))
+    drawing = checked(spec(canvas.layers, width, height, (left, TOP, right, 48.0)))
     words = _summary(rows)
     points = tuple(
         {
@@ -155,7 +163,7 @@ def requirement_margins(record: Record, width: float = WIDTH, left: float = LEFT
         f"Margin of the candidate as a factor, on a log scale: pass to the right of the limit, fail (hatched) to the "
         f"left, unknown as an open bar with a question mark. {words}"
     )
-    return Chart(key, title, drawing, caption, f"Requirement margins. {words}", points)
+    return Chart(key, title, drawing, caption, f"Requirement margins. {words}", points, spots.found())
 
 
 def _decade_word(value: float | None) -> Any:

@@ -18,6 +18,7 @@ from benchmark.report.blocks import Figure, Section, Table, plain
 from benchmark.report.figure import Chart
 from benchmark.report.section_points import points
 from benchmark.report.svg import inline_svg
+from benchmark.report.trails import data_id, trail
 from benchmark.report.words import plural, visible
 
 __all__ = ["digest_of", "embedded_record", "page", "sections"]
@@ -39,24 +40,32 @@ def _text(name: str) -> str:
     return files("benchmark.report").joinpath("templates", name).read_text(encoding="utf-8")
 
 
-def _data(chart: Chart) -> Table | None:
+def _data(record: Record, chart: Chart) -> Table | None:
+    """Return the table of what is drawn: every row has an id and leads to its mark, formulas, arithmetic and values."""
     if not chart.points:
         return None
     columns = list(dict.fromkeys(name for row in chart.points for name in row))
-    rows = [[row.get(name, "") for name in columns] for row in chart.points]
-    key = f"data-{chart.key}"
-    return plain(key, f"Data of the chart: {chart.title}", columns, rows, digits=5, wide=True)
+    rows = [
+        [*(row.get(name, "") for name in columns), trail(record, chart, index, row)]
+        for index, row in enumerate(chart.points)
+    ]
+    anchors = tuple(data_id(chart.key, index) for index in range(len(rows)))
+    caption = f"Data of the chart: {chart.title}"
+    return plain(f"data-{chart.key}", caption, [*columns, "leads to"], rows, digits=5, wide=True, anchors=anchors)
 
 
-def _figure(chart: Chart, drawings: Mapping[str, str]) -> Figure:
-    svg = inline_svg(drawings[chart.key], chart.key, chart.alternative) if chart.spec is not None else ""
-    return Figure(chart, svg, _data(chart))
+def _figure(record: Record, chart: Chart, drawings: Mapping[str, str]) -> Figure:
+    if chart.spec is None:
+        return Figure(chart, "", _data(record, chart))
+    svg = inline_svg(drawings[chart.key], chart.key, chart.alternative, chart.title, chart.spots)
+    return Figure(chart, svg, _data(record, chart))
 
 
 def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str, str]) -> list[Section]:
     """Return every section in the order of the report."""
     digest = digest_of(record)
-    shown = {key: _figure(chart, drawings) for key, chart in charts.items()}
+    shown = {key: _figure(record, chart, drawings) for key, chart in charts.items()}
+    steps = [figure for key, figure in shown.items() if key.startswith("node-steps")]
     return [
         asked.answer(record, digest),
         asked.question(record),
@@ -67,7 +76,7 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
         points(record),
         results.policies(record),
         results.moves(record, shown["input-swings"]),
-        results.nodes(record, shown["advantage-by-node"], shown["node-steps"]),
+        results.nodes(record, shown["advantage-by-node"], steps),
         evidence.anchors(record),
         evidence.closed_form(record),
         evidence.ledger(record),

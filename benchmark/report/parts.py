@@ -10,6 +10,8 @@ from benchmark.report.energy_delay import side_name
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, fitted, hatch, text_width
 from benchmark.report.rows import part_rows
+from benchmark.report.section_points import anchor_of
+from benchmark.report.spots import Spot, Spots
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import amount, number, policy_name, scaled
 
@@ -17,7 +19,7 @@ __all__ = ["FILLS", "where_it_goes"]
 
 Record = Mapping[str, Any]
 WIDTH = 560.0
-BAR, ROW, LEFT = 26.0, 64.0, 124.0
+BAR, ROW, LEFT, PAD = 26.0, 64.0, 124.0, 6.0
 #: fill of each part: pale, so that words on it can be read; hatched ones differ in grey print too
 FILLS = {
     "transit": ("#d5e6f3", True),
@@ -57,18 +59,26 @@ def _nice(total: float) -> tuple[list[float], float]:
     return [step * k for k in range(count + 1)], step * count
 
 
-def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, factor: float, unit: str) -> None:
-    """Draw one stacked bar with its words inside, or below it where a segment is narrow."""
+def _segments(rows: Sequence[Row], top: float, axis: LinearAxis, factor: float) -> list[tuple[Row, Box]]:
+    """Return the parts above zero with the rectangle of each."""
+    found: list[tuple[Row, Box]] = []
     left = 0.0
+    for row in rows:
+        if row["value_SI"] > 0.0:
+            right = left + axis.pixel(row["value_SI"] / factor)
+            found.append((row, Box(left, top, right, top + BAR)))
+            left = right
+    return found
+
+
+def _bar(canvas: Canvas, segments: Sequence[tuple[Row, Box]], top: float, unit: str) -> None:
+    """Draw one stacked bar with its words inside, or below it where a segment is narrow."""
     words: list[Words] = []
     below: list[tuple[float, str]] = []
     every: list[tuple[float, str]] = []
-    total = sum(row["value_SI"] for row in rows)
-    for row in rows:
-        if row["value_SI"] <= 0.0:
-            continue
-        right = left + axis.pixel(row["value_SI"] / factor)
-        box = Box(left, top, right, top + BAR)
+    total = sum(row["value_SI"] for row, _ in segments)
+    for row, box in segments:
+        left, right = box.left, box.right
         fill, lined = FILLS.get(row["part"], ("#ffffff", False))
         canvas.boxes([box], color=fill, stroke=INK, strokeWidth=0.8)
         if lined and right - left > 3.0:
@@ -86,7 +96,7 @@ def _bar(canvas: Canvas, rows: Sequence[Row], top: float, axis: LinearAxis, fact
                 words.append(Words(text, middle, top + 0.5 * BAR, "center"))
             else:
                 below.append((0.5 * (left + right), text))
-        left = right
+    left = segments[-1][1].right if segments else 0.0
     said = amount(total, unit, 3)
     words.append(Words(said, left + 5.0, top + 0.5 * BAR, bold=True))
     beside = left + 17.0 + text_width(said, bold=True)
@@ -116,8 +126,8 @@ def _below(canvas: Canvas, below: Sequence[tuple[float, str]], words: list[Words
 
 def _panel(
     record: Record, rows: Sequence[Row], quantity: str, width: float, left: float
-) -> tuple[list[Row], float, str] | None:
-    """Return layers, height and words of one quantity."""
+) -> tuple[list[Row], float, str, tuple[Spot, ...]] | None:
+    """Return layers, height, words and places of one quantity."""
     rows = [row for row in rows if row["quantity"] == quantity]
     sides = _sides(record, rows)
     if not sides:
@@ -136,7 +146,7 @@ def _panel(
     height = ROW * len(sides) + 8.0
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
-    words = []
+    words, first, spots = [], 0, Spots(left, PAD)
     for position, (key, mine) in enumerate(sides):
         top = 8.0 + ROW * position
         name = fitted(side_name(record, key), left - 12.0, 2, bold=True)
@@ -146,10 +156,18 @@ def _panel(
                 for i, line in enumerate(name)
             ]
         )
-        _bar(canvas, mine, top, axis, factor, unit)
+        segments = _segments(mine, top, axis, factor)
+        _bar(canvas, segments, top, unit)
+        places = {row["part"]: first + index for index, row in enumerate(mine)}
+        first += len(mine)
+        for row, box in segments:
+            said = f"{side_name(record, key)}, {quantity}, {row['part']}: {amount(row['value_SI'], unit, 3)}"
+            share = f"{number(100.0 * row['share'])} % of {amount(totals[key], unit, 3)}"
+            place = anchor_of(record, row["role"], row["side"], quantity)
+            spots.bar(box, places[row["part"]], f"{said}, {share}", place)
         big = [f"{row['part']} {number(100 * row['share'])} %" for row in mine if row["share"] >= SMALL]
         words.append(f"{side_name(record, key)} {amount(totals[key], unit)} ({', '.join(big)})")
-    return canvas.layers, height, f"{label.capitalize()}: {'; '.join(words)}."
+    return canvas.layers, height, f"{label.capitalize()}: {'; '.join(words)}.", spots.found()
 
 
 def where_it_goes(record: Record, width: float = WIDTH, left: float = LEFT) -> tuple[Chart, Chart]:
@@ -164,8 +182,8 @@ def where_it_goes(record: Record, width: float = WIDTH, left: float = LEFT) -> t
             words = "Not drawn: no side has a permitted design point under the primary policy."
             charts.append(Chart(key, title, None, words, words))
             continue
-        layers, height, words = panel
-        drawing = checked(spec(layers, width, height, (left, 6.0, 12.0, 48.0)))
+        layers, height, words, spots = panel
+        drawing = checked(spec(layers, width, height, (left, PAD, 12.0, 48.0)))
         caption = (
             f"At the design points of the primary policy ({policy_name(policy)}), both bars on one scale from zero. "
             f"{words} Parts below 5 % are in the table."
@@ -175,5 +193,5 @@ def where_it_goes(record: Record, width: float = WIDTH, left: float = LEFT) -> t
             for _, mine in _sides(record, [row for row in rows if row["quantity"] == quantity])
             for row in mine
         )
-        charts.append(Chart(key, title, drawing, caption, words, points))
+        charts.append(Chart(key, title, drawing, caption, words, points, spots))
     return charts[0], charts[1]

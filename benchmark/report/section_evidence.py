@@ -186,7 +186,9 @@ def ledger(record: Record) -> Section:
         f"(values and options), the rest by the user's files. No range stated: {without}. Evidence: "
         f"{listed(f'{name} {count}' for name, count in sorted(counts.items()))}."
     )
-    table = plain("ledger", "Every value used", columns, rows, wide=True, filterable=True, tags=tuple(tags))
+    anchors = tuple(f"value-{position}" for position in range(1, len(rows) + 1))
+    caption = "Every value used"
+    table = plain("ledger", caption, columns, rows, wide=True, filterable=True, tags=tuple(tags), anchors=anchors)
     return Section("ledger", "Assumptions: every value used", (Paragraph(text), table))
 
 
@@ -228,4 +230,6 @@ def sources(record: Record) -> Table:
         doi = f"doi {source['doi']}" if source["doi"] else ""
         small = "; ".join(part for part in (source["kind"], doi, source["note"]) if part)
         rows.append((Cell(f"[{position}]"), key, Cell(source["citation"], small=small)))
-    return plain("sources", "Sources, as read", ("number", "key", "source"), rows, empty="No source is named.")
+    anchors = tuple(f"source-{position}" for position in range(1, len(rows) + 1))
+    columns, empty = ("number", "key", "source"), "No source is named."
+    return plain("sources", "Sources, as read", columns, rows, empty=empty, anchors=anchors)

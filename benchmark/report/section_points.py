@@ -8,6 +8,7 @@ from typing import Any
 
 from benchmark.report.blocks import Block, Cell, Code, Paragraph, Section, plain
 from benchmark.report.energy_delay import side_name
+from benchmark.report.formulas import formulas
 from benchmark.report.words import amount, is_number, number, policy_name, spaced, volts
 
 __all__ = ["anchor_of", "points"]
@@ -25,10 +26,10 @@ def _sides(record: Record) -> list[tuple[str, Mapping[str, Any]]]:
     return [(role, side) for role, side in (("candidate", primary["candidate"]), *rivals) if side["point"]]
 
 
-def anchor_of(record: Record, role: str, side_id: str) -> str:
-    """Return the place on the page where a side's design point is worked out, or nothing."""
+def anchor_of(record: Record, role: str, side_id: str, quantity: str = "table") -> str:
+    """Return the place on the page where a side's design point (time or energy of it) is worked out, or nothing."""
     shown = any(role == found and side["id"] == side_id for found, side in _sides(record))
-    return f"#point-{role}-table" if shown else ""
+    return f"#point-{role}-{quantity}" if shown else ""
 
 
 def _sum(name: str, symbol: str, parts: Mapping[str, float], total: float, unit: str) -> tuple[Any, ...]:
@@ -38,7 +39,13 @@ def _sum(name: str, symbol: str, parts: Mapping[str, float], total: float, unit:
     found = math.fsum(parts.values())
     agrees = abs(found - total) <= AGREEMENT * abs(total)
     check = "agrees" if agrees else f"recorded {amount(total, unit, 6)}: DIFFERS"
-    return (name, f"{symbol} = sum of its parts", put_in or "nothing", amount(found, unit, 4), check)
+    quantity = "time" if unit == "s" else "energy"
+    links = (
+        ("formula", f"#formula-{quantity}"),
+        ("parts", f"#chart-{quantity}-parts"),
+        ("curve", "#chart-energy-delay"),
+    )
+    return (Cell(name, links=links), f"{symbol} = sum of its parts", put_in or "nothing", amount(found, unit, 4), check)
 
 
 def _ratio(record: Record) -> tuple[Any, ...] | None:
@@ -53,7 +60,14 @@ def _ratio(record: Record) -> tuple[Any, ...] | None:
     agrees = abs(other / mine - recorded) <= AGREEMENT * abs(recorded)
     put_in = f"{amount(other, 'J', 4)} / {amount(mine, 'J', 4)}"
     check = "agrees" if agrees else f"recorded {number(recorded, 6)}: DIFFERS"
-    return ("advantage", "A = E of the reference / E of the candidate", put_in, number(other / mine, 4), check)
+    links = (("formula", "#formula-advantage"), ("chart", "#chart-advantage-against-time"))
+    return (
+        Cell("advantage", links=links),
+        "A = E of the reference / E of the candidate",
+        put_in,
+        number(other / mine, 4),
+        check,
+    )
 
 
 def _inputs(record: Record, side: Mapping[str, Any], role: str) -> list[tuple[Any, ...]]:
@@ -87,7 +101,8 @@ def points(record: Record) -> Section:
         name = side_name(record, f"{role} {side['id']}")
         caption = f"{name} at {at}, {policy_name(record['policies'][0]['policy'])}"
         columns = ("quantity", "formula", "numbers put in", "result", "against the record")
-        blocks.append(plain(f"point-{role}", caption, columns, rows, wide=True))
+        anchors = tuple(f"point-{role}-{quantity}" for quantity in ("time", "energy", "advantage")[: len(rows)])
+        blocks.append(plain(f"point-{role}", caption, columns, rows, wide=True, anchors=anchors))
         inputs = _inputs(record, side, role)
         heads = ("input", "best estimate", "evidence", "decisive")
         blocks.append(plain(f"point-{role}-inputs", f"Inputs of {name} that move the advantage most", heads, inputs))
@@ -98,4 +113,5 @@ def points(record: Record) -> Section:
             Paragraph("Every stage, from the switch to the sums above, is printed from the record folder by:")
         )
         blocks.append(Code("evenload trace RECORD_FOLDER\nevenload trace RECORD_FOLDER --side CONTENDER"))
+    blocks.append(formulas(record))
     return Section("points", "Design points worked out", tuple(blocks))

@@ -2,11 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from benchmark.report.advantage import crossing_words, levels
-from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Paragraph, Section, Table, plain
+from benchmark.report.blocks import (
+    Block,
+    Bullets,
+    Cell,
+    Figure,
+    Group,
+    Groups,
+    Notice,
+    Paragraph,
+    Section,
+    Table,
+    plain,
+)
 from benchmark.report.rows import NOT_PERMITTED, flips_of
 from benchmark.report.section_points import anchor_of
 from benchmark.report.words import amount, is_number, number, plural, policy_name, spaced, volts
@@ -189,21 +201,43 @@ def _node_side(row: Mapping[str, Any], side: str) -> list[str]:
     return shown if is_number(energy) else [INFEASIBLE] * 3
 
 
-def nodes(record: Record, figure: Figure, steps: Figure) -> Section:
-    """Return the primary policy at every node pair."""
+def _pair(record: Record, position: int, steps: Sequence[Figure]) -> Group:
+    """Return one node pair: both sides, and the step into it."""
+    row = record["nodes"][position]
+    sides = [
+        ("candidate", f"node {row['candidate_node']}", *_node_side(row, "candidate")),
+        ("reference", row["strongest"] or INFEASIBLE, *_node_side(row, "reference")),
+    ]
+    columns = ("side", "node or strongest contender", "supply", "time", "energy")
+    caption = f"{row['label']}: advantage {_advantage(record, row['advantage'], row['note'])}"
+    table = plain(f"pair-{position + 1}-sides", caption, columns, sides)
+    into = [
+        figure
+        for step, figure in zip(record.get("node_steps", ()), steps, strict=False)
+        if step["after"] == row["label"]
+    ]
+    return Group(f"pair-{position + 1}", row["label"], (table, *into))
+
+
+def nodes(record: Record, figure: Figure, steps: Sequence[Figure]) -> Section:
+    """Return the primary policy at every node pair, and each pair by itself with the step into it."""
     rows = [
         (
-            Cell(row["label"], small=f"candidate node {row['candidate_node']}"),
+            Cell(row["label"], f"#pair-{position}", small=f"candidate node {row['candidate_node']}"),
             _advantage(record, row["advantage"], row["note"]),
             row["strongest"] or INFEASIBLE,
             *_node_side(row, "candidate"),
             *_node_side(row, "reference"),
         )
-        for row in record["nodes"]
+        for position, row in enumerate(record["nodes"], start=1)
     ]
     columns = (
         *("node", "advantage", "strongest contender", "candidate supply", "candidate time", "candidate energy"),
         *("reference supply", "reference time", "reference energy"),
     )
     table = plain("nodes", "Primary policy at every node pair", columns, rows, wide=True)
-    return Section("nodes", "Nodes", (figure, table, steps))
+    groups = tuple(_pair(record, position, steps) for position in range(len(record["nodes"])))
+    blocks: list[Block] = [figure, table]
+    if len(groups) < 2:  # nothing between nodes: the one chart says so
+        blocks += steps
+    return Section("nodes", "Nodes", (*blocks, Groups("pair", "Node pair shown", groups)))

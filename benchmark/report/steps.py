@@ -9,6 +9,7 @@ from typing import Any
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, cut, hatch, text_width
+from benchmark.report.spots import Spots
 from benchmark.report.style import INK, LinearAxis, spec
 from benchmark.report.words import is_number, listed, number
 
@@ -16,7 +17,7 @@ __all__ = ["node_steps", "step_rows"]
 
 Record = Mapping[str, Any]
 WIDTH, LEFT = 470.0, 216.0
-ROW, BAR, HEAD = 22.0, 13.0, 24.0
+ROW, BAR, TOP = 22.0, 13.0, 6.0
 #: parts smaller than this in ln units are not drawn and stand in the table
 SMALL = 5e-4
 
@@ -31,8 +32,8 @@ def step_rows(record: Record) -> list[Row]:
     ]
 
 
-def _axis(rows: list[Row]) -> LinearAxis:
-    reach = max(0.1, *(abs(row["ln_factor"]) for row in rows))
+def _axis(rows: list[Row], width: float) -> LinearAxis:
+    reach = max(0.1, 0.1, *(abs(row["ln_factor"]) for row in rows))
     low = min([0.0, *(row["ln_factor"] for row in rows)]) - 0.35 * reach
     high = max([0.0, *(row["ln_factor"] for row in rows)]) + 0.35 * reach
     near = (0.001, 0.01, 0.1, 0.2, 0.5, 0.7, 0.8, 0.9, 0.95, 1, 1.05, 1.1, 1.2, 1.5, 2, 5, 10, 100, 1000)
@@ -41,65 +42,76 @@ def _axis(rows: list[Row]) -> LinearAxis:
         place = math.log(factor)
         if low <= place <= high and all(abs(place - other) > 0.1 * (high - low) for other, _ in ticks):
             ticks.append((place, f"×{number(factor, 3)}"))
-    return LinearAxis(low, high, WIDTH, "factor on the advantage (log scale)", tuple(sorted(ticks)))
+    return LinearAxis(low, high, width, "factor on the advantage (log scale)", tuple(sorted(ticks)))
 
 
-def _words(record: Record) -> list[str]:
-    said = []
-    for step in record.get("node_steps", ()):
-        if step["note"]:
-            said.append(f"{step['before']} to {step['after']}: not split, {step['note']}.")
-            continue
-        largest = sorted(step["parts"].items(), key=lambda item: -abs(item[1]))[:3]
-        parts = [f"{cause} ×{number(math.exp(value), 3)}" for cause, value in largest if abs(value) >= SMALL]
-        total = f"{step['before']} to {step['after']}: advantage ×{number(math.exp(step['total']), 3)}"
-        said.append(f"{total}, most by {listed(parts)}." if parts else f"{total}.")
-    return said
+def _words(step: Mapping[str, Any]) -> str:
+    if step["note"]:
+        return f"{step['before']} to {step['after']}: not split, {step['note']}."
+    largest = sorted(step["parts"].items(), key=lambda item: -abs(item[1]))[:3]
+    parts = [f"{cause} ×{number(math.exp(value), 3)}" for cause, value in largest if abs(value) >= SMALL]
+    total = f"{step['before']} to {step['after']}: advantage ×{number(math.exp(step['total']), 3)}"
+    return f"{total}, most by {listed(parts)}." if parts else f"{total}."
 
 
-def node_steps(record: Record) -> Chart:
-    """Draw every step between neighbouring nodes as bars of its causes and its total."""
-    key, title = "node-steps", "Steps between nodes by cause"
-    rows = step_rows(record)
-    said = " ".join(_words(record))
-    if not rows or all(step["note"] for step in record["node_steps"]):
-        words = f"Not drawn: {said or 'there is no step between two nodes.'}"
-        return Chart(key, title, None, words, words)
-    axis = _axis(rows)
-    blocks = []
-    for step in record["node_steps"]:
-        if not step["note"]:
-            shown = [(cause, value) for cause, value in step["parts"].items() if abs(value) >= SMALL]
-            shown.sort(key=lambda item: -abs(item[1]))
-            blocks.append((f"{step['before']} to {step['after']}", [*shown, ("total", step["total"])]))
-    height = sum(HEAD + ROW * len(bars) for _, bars in blocks) + 8.0
+def node_steps(record: Record, width: float = WIDTH, left: float = LEFT) -> tuple[Chart, ...]:
+    """Draw each step between neighbouring nodes as bars of its causes and its total, all on one scale.
+
+    The first has the key ``node-steps``, the others ``node-steps-2``, ``node-steps-3`` ...
+    """
+    steps = record.get("node_steps", ())
+    if not steps:
+        words = "Not drawn: there is no step between two nodes."
+        return (Chart("node-steps", "Step between nodes by cause", None, words, words),)
+    axis = _axis(step_rows(record), width)
+    return tuple(
+        _chart(record, step, axis, left, "node-steps" if position == 1 else f"node-steps-{position}")
+        for position, step in enumerate(steps, start=1)
+    )
+
+
+def _chart(record: Record, step: Mapping[str, Any], axis: LinearAxis, left: float, key: str) -> Chart:
+    """Draw one step."""
+    head = f"{step['before']} to {step['after']}"
+    title, said = f"Step from {head} by cause", _words(step)
+    if step["note"]:
+        return Chart(key, title, None, f"Not drawn: {said}", f"Not drawn: {said}")
+    points = tuple(row for row in step_rows(record) if (row["from"], row["to"]) == (step["before"], step["after"]))
+    shown = [(cause, value) for cause, value in step["parts"].items() if abs(value) >= SMALL]
+    bars = [*sorted(shown, key=lambda item: -abs(item[1])), ("total", step["total"])]
+    height = ROW * len(bars) + 8.0
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
-    zero, y = axis.pixel(0.0), 4.0
+    zero = axis.pixel(0.0)
     canvas.rules([(zero, 0.0, zero, height)], color=INK, strokeWidth=1.2)
-    for head, bars in blocks:
-        canvas.words([Words(cut(head, LEFT - 12.0, bold=True), -10.0, y + 0.5 * HEAD, "right", bold=True)])
-        y += HEAD
-        for cause, value in bars:
-            end, middle = axis.pixel(value), y + 0.5 * ROW
-            box = Box(min(zero, end), middle - 0.5 * BAR, max(zero, end, min(zero, end) + 1.0), middle + 0.5 * BAR)
-            total = cause == "total"
-            canvas.boxes(
-                [box], color="#8a8a8a" if total else "#bcd7ea" if value >= 0.0 else "white", stroke=INK, strokeWidth=0.8
-            )
-            if value < 0.0 and not total:
-                canvas.rules(hatch(box, 5.0), color="#a34800", strokeWidth=0.8)
-            text = f"×{number(math.exp(value), 3)}"
-            left = end < zero
-            place = end - 5.0 - (0.0 if left else -10.0)
-            if not left and place + text_width(text) > axis.size:
-                place = axis.size - text_width(text)
-            canvas.words([Words(text, place, middle, "right" if left else "left", bold=total)], back=True)
-            canvas.words([Words(cut(cause, LEFT - 12.0, bold=total), -10.0, middle, "right", bold=total)])
-            y += ROW
-    drawing = checked(spec(canvas.layers, WIDTH, height, (LEFT, 6.0, 20.0, 48.0)))
+    places = {row["cause"]: position for position, row in enumerate(points)}
+    spots = Spots(left, TOP)
+    for position, (cause, value) in enumerate(bars):
+        y = 4.0 + ROW * position
+        _bar(canvas, axis, cause, value, y + 0.5 * ROW)
+        name = cut(cause, left - 12.0, bold=cause == "total")
+        canvas.words([Words(name, -10.0, y + 0.5 * ROW, "right", bold=cause == "total")])
+        words = f"{head}, {cause}: factor {number(math.exp(value), 3)} on the advantage"
+        spots.bar(Box(0.0, y, axis.size, y + ROW), places[cause], words)
+    drawing = checked(spec(canvas.layers, axis.size, height, (left, TOP, 20.0, 48.0)))
     caption = (
         "What the values of the next node do to the advantage, group by group, both sides re-optimised: mean of "
         f"putting the groups in place in one order and in the opposite one. The factors multiply to the total. {said}"
     )
-    return Chart(key, title, drawing, caption, f"{title}. {said}", tuple(rows))
+    return Chart(key, title, drawing, caption, f"{title}. {said}", points, spots.found())
+
+
+def _bar(canvas: Canvas, axis: LinearAxis, cause: str, value: float, middle: float) -> None:
+    """Draw one cause, or the total, with its factor beside it."""
+    zero, end, total = axis.pixel(0.0), axis.pixel(value), cause == "total"
+    box = Box(min(zero, end), middle - 0.5 * BAR, max(zero, end, min(zero, end) + 1.0), middle + 0.5 * BAR)
+    colour = "#8a8a8a" if total else "#bcd7ea" if value >= 0.0 else "white"
+    canvas.boxes([box], color=colour, stroke=INK, strokeWidth=0.8)
+    if value < 0.0 and not total:
+        canvas.rules(hatch(box, 5.0), color="#a34800", strokeWidth=0.8)
+    text = f"×{number(math.exp(value), 3)}"
+    before = end < zero
+    place = end - 5.0 if before else end + 5.0
+    if not before and place + text_width(text) > axis.size:
+        place = axis.size - text_width(text)
+    canvas.words([Words(text, place, middle, "right" if before else "left", bold=total)], back=True)

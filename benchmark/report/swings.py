@@ -10,6 +10,7 @@ from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, cut, fitted, text_width
 from benchmark.report.rows import NOT_PERMITTED, flips_of
+from benchmark.report.spots import TARGET, Spots
 from benchmark.report.style import GREY, INK, LinearAxis, LogAxis, spec
 from benchmark.report.words import flat_powers, is_number, listed, number, plural, spaced
 
@@ -17,7 +18,7 @@ __all__ = ["input_swings", "ranged_moves"]
 
 Record = Mapping[str, Any]
 WIDTH, LEFT, RIGHT = 440.0, 216.0, 34.0
-ROW, BAR, TOP = 40.0, 11.0, 48.0
+ROW, BAR, TOP, PAD = 40.0, 11.0, 48.0, 6.0
 MOST = 12
 #: marker and word of the evidence class, at the best estimate of each bar
 _MARKERS = {
@@ -74,7 +75,8 @@ def _ends(axis: LogAxis, row: Row) -> dict[str, tuple[float, str, bool]]:
     return found
 
 
-def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float) -> None:
+def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float) -> tuple[float, float]:
+    """Draw one bar with its words; returns where it begins and ends."""
     ends = _ends(axis, row)
     places = sorted(place for place, _, _ in ends.values())
     left, right = places[0], max(places[1], places[0] + 1.0)
@@ -105,6 +107,7 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
         half = 0.5 * text_width(text, bold=True)
         words.append(Words(text, min(max(x, half), canvas.x.size - half), middle + 15.0, "center", bold=True))
     canvas.words(words, back=True)
+    return left, right
 
 
 def _lines(canvas: Canvas, record: Record, axis: LogAxis, height: float) -> None:
@@ -146,17 +149,21 @@ def input_swings(
     canvas.frame()
     _lines(canvas, record, axis, height)
     required = float(record["study"]["required_advantage"])
+    spots = Spots(left, PAD)
     for position, row in enumerate(rows):
         middle = TOP + ROW * (position + 0.45)
-        _bar(canvas, axis, row, middle, required)
+        begin, end = _bar(canvas, axis, row, middle, required)
         name, owner = _name(row["key"])
+        grown = 0.5 * max(0.0, TARGET - (end - begin))
+        box = Box(begin - grown, middle - 0.5 * TARGET, end + grown, middle + 0.5 * TARGET)
+        spots.bar(box, position, f"{name} of {owner}: {_end(row, 'low')}, {_end(row, 'high')}; {_range(row)}")
         canvas.words(
             [
                 Words(fitted(name, left - 12.0, bold=True)[0], -10.0, middle - 6.5, "right", bold=True),
                 Words(_provenance(row["evidence"], owner, left - 12.0), -10.0, middle + 6.5, "right"),
             ]
         )
-    drawing = checked(spec(canvas.layers, width, height, (left, 6.0, right, 48.0)))
+    drawing = checked(spec(canvas.layers, width, height, (left, PAD, right, 48.0)))
     points = tuple(
         {name: row[name] for name in ("key", "unit", "evidence", "low", "best", "high", "straddles")}
         | {
@@ -168,7 +175,8 @@ def input_swings(
         for row in rows
     )
     words = _summary(record, rows, moves)
-    return Chart(key, title, drawing, _caption(record, words, moves, most), f"What moves the answer. {words}", points)
+    caption = _caption(record, words, moves, most)
+    return Chart(key, title, drawing, caption, f"What moves the answer. {words}", points, spots.found())
 
 
 def _summary(record: Record, rows: Sequence[Row], moves: Sequence[Row]) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import shutil
 from collections.abc import Iterator
 from pathlib import Path
@@ -401,28 +402,126 @@ def test_no_words_of_the_one_page_figure_leave_the_page(browser: Browser, tmp_pa
     assert [box for box in boxes if min(box[1:]) < 20] == []
 
 
+def _readout(page: Page) -> str:
+    return page.locator("#readout").inner_text() if page.locator("#readout").is_visible() else ""
+
+
 def test_values_of_a_chart_can_be_read_by_keyboard(visit: Any):
     seen = visit("mixed")
     page = seen.page
-    field = page.locator("#read-energy-delay")
-    said = page.locator("#chart-energy-delay output")
-    first = said.inner_text()
-    field.focus()
+    marks = page.locator("#chart-energy-delay .chart a")
+    assert page.locator("#chart-energy-delay .chart a[tabindex='0']").count() == 1
+    marks.first.focus()
+    said = [_readout(page)]
+    for _ in range(marks.count() - 1):
+        page.keyboard.press("ArrowRight")
+        said.append(_readout(page))
+    assert all(re.search(r"supply .*V, time .*s, energy .*J", words) for words in said)
+    assert len(set(said)) > 0.8 * len(said)
+    assert any("design point" in words for words in said)
+    assert page.evaluate("document.activeElement.getAttribute('aria-label')") == said[-1]
+    page.keyboard.press("Home")
+    assert _readout(page) == said[0]
+    page.keyboard.press("Escape")
+    assert _readout(page) == ""
     page.keyboard.press("ArrowRight")
-    second = said.inner_text()
-    assert second != first
-    cells = page.locator("#data-energy-delay-table tbody tr").nth(1).locator("th, td").all_text_contents()
-    for text in filter(None, (cell.strip() for cell in cells)):
-        assert text in second
-    assert field.get_attribute("aria-valuetext") == second
-    page.keyboard.press("End")
-    assert "design point" in said.inner_text()
+    assert _readout(page) == said[1]
+    page.keyboard.press("Tab")
+    assert _readout(page) == ""
     assert seen.complaints == []
 
 
-def test_without_scripts_there_is_no_reader_of_values(visit: Any):
-    seen = visit("mixed", java_script_enabled=False)
-    assert not seen.page.locator(".read").first.is_visible()
+def test_what_is_read_by_pointer_stays_can_be_pointed_at_and_be_dismissed(visit: Any):
+    """WCAG 2.2, 1.4.13: dismissible, hoverable, persistent."""
+    seen = visit("mixed")
+    page = seen.page
+    mark = page.locator("#chart-energy-delay .chart a").last
+    mark.scroll_into_view_if_needed()
+    mark.hover()
+    words = _readout(page)
+    assert words == mark.get_attribute("aria-label")
+    page.wait_for_timeout(1500)
+    assert _readout(page) == words
+    page.locator("#readout").hover()
+    assert _readout(page) == words
+    page.keyboard.press("Escape")
+    assert _readout(page) == ""
+    page.mouse.move(2, 2)
+    mark.hover()
+    assert _readout(page) == words
+    page.mouse.move(2, 2)
+    assert _readout(page) == ""
+    box = page.locator("body").evaluate("document.documentElement.scrollWidth - innerWidth")
+    assert box <= 0
+    assert seen.complaints == []
+
+
+@pytest.mark.parametrize("width", [320, 1280])
+def test_the_read_out_stays_on_the_screen(visit: Any, width: int):
+    page = visit("long-words", width=width).page
+    for chart in page.locator("figure .chart").all():
+        for mark in (chart.locator("a").first, chart.locator("a").last):
+            mark.focus()
+            box = page.locator("#readout").bounding_box()
+            assert box is not None
+            assert box["x"] >= 0
+            assert box["x"] + box["width"] <= width
+            assert page.evaluate("document.documentElement.scrollWidth") <= width
+
+
+@pytest.mark.parametrize("scripts", [True, False])
+def test_a_mark_leads_to_its_row_and_the_row_back_and_on(visit: Any, scripts: bool):
+    page = visit("crossing", java_script_enabled=scripts).page
+    mark = page.locator("#chart-advantage-by-node .chart a").first
+    row = page.locator(str(mark.get_attribute("href")))
+    assert not row.is_visible()
+    mark.click()
+    assert row.is_visible()
+    for words, place in (("mark", "#advantage-by-node-mark-1"), ("formula", "#formula-advantage")):
+        link = row.get_by_role("link", name=words, exact=True)
+        assert link.get_attribute("href") == place
+    row.get_by_role("link", name="values", exact=True).click()
+    value = re.sub(".*#", "#", page.url)
+    assert value.startswith("#value-")
+    assert page.locator(value).is_visible()
+    page.go_back()
+    row.get_by_role("link", name="mark", exact=True).click()
+    assert page.url.endswith("#advantage-by-node-mark-1")
+
+
+def test_a_filtered_row_that_is_led_to_shows(visit: Any):
+    page = visit("mixed").page
+    page.fill("#ledger-text", "nothing has these words")
+    page.evaluate("location.hash = '#value-3'")
+    page.wait_for_timeout(50)
+    assert page.locator("#value-3").is_visible()
+
+
+def test_one_node_pair_can_be_shown_at_a_time_and_all_are_printed(visit: Any):
+    seen = visit("crossing")
+    page = seen.page
+    pairs = page.locator(".group")
+    count = pairs.count()
+    assert count == len(crossing()["nodes"]) >= 2
+    assert pairs.locator("visible=true").count() >= count
+    page.select_option("#pair-choice", "pair-2")
+    shown = [pairs.nth(k).is_visible() for k in range(count)]
+    assert shown == [k == 1 for k in range(count)]
+    page.locator("#nodes-table a[href='#pair-1']").click()
+    assert all(pairs.nth(k).is_visible() for k in range(count))
+    page.select_option("#pair-choice", "pair-2")
+    page.emulate_media(media="print")
+    assert all(pairs.nth(k).is_visible() for k in range(count))
+    assert not page.locator(".choose").is_visible()
+    assert seen.complaints == []
+
+
+def test_without_scripts_all_node_pairs_show_and_there_is_no_reader_of_values(visit: Any):
+    page = visit("crossing", java_script_enabled=False).page
+    assert all(page.locator(".group").nth(k).is_visible() for k in range(page.locator(".group").count()))
+    assert not page.locator(".choose").is_visible()
+    assert page.locator("#readout").count() == 0
+    assert page.locator(".chart a title").count() > 20, "the browser shows these by itself"
 
 
 def test_design_points_lead_to_their_arithmetic_and_on_to_the_ledger(visit: Any):

@@ -130,8 +130,11 @@ def test_structure_is_accessible(record):
     for tag in ("input", "select"):
         assert {attributes["id"] for attributes in outline.all(tag)} <= labels
     for attributes in outline.all("svg"):
-        assert attributes["role"] == "img"
+        assert attributes["role"] == "group", "the drawing inside is the image, links stand beside it"
         assert attributes["aria-label"]
+    images = [attributes for attributes in outline.all("g") if attributes.get("role") == "img"]
+    assert len(images) == len(outline.all("svg"))
+    assert all(attributes["aria-label"] for attributes in images)
     for attributes in outline.all("div"):
         if "scroll" in str(attributes.get("class")):
             assert attributes["tabindex"] == "0"
