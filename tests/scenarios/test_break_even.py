@@ -1,0 +1,195 @@
+"""Break-evens and required values of the hand scenarios: every number by hand arithmetic, all inputs invented."""
+
+from __future__ import annotations
+
+import dataclasses
+import math
+from pathlib import Path
+from typing import Any
+
+import pytest
+
+from benchmark.decide.axes import find_axis, known_axes
+from benchmark.decide.break_even import Need, find_needs
+from benchmark.decide.need_words import need_rows, need_text
+from benchmark.decide.profile import Line, label_changes
+from benchmark.decide.trials import Trials
+from benchmark.record.load import load_study
+from tests.near import near
+from tests.studies import hub
+
+DATA = Path(__file__).parent.parent / "data"
+
+
+def needs_of(trials: Trials, name: str, *levels: float, **options: Any) -> list[Need]:
+    return find_needs(trials.study, trials.pair, [find_axis(trials, name)], levels, trials=trials, **options)
+
+
+def hub_trials(folder: Path, **choices: Any) -> Trials:
+    study, _ = load_study(hub(**choices).write(folder))
+    return Trials(study, study.pair("n1"))
+
+
+def hand_trials(name: str, overrides: dict[str, str] | None = None, **policy: Any) -> Trials:
+    study, _ = load_study(DATA / name / "study.toml", overrides=overrides or {})
+    study = dataclasses.replace(study, policy=dataclasses.replace(study.policy, **policy))
+    return Trials(study, study.pair("hand"))
+
+
+# -- always-on hub: fJ per gate and cycle, fast 0.36 a + 0.600, low-leakage 0.49 a + 0.007, relay 2 a ----------------
+
+
+@pytest.mark.parametrize(
+    ("contender", "by_hand", "digits"),
+    [("fast", 0.600 / (2.0 - 0.36), 0.3659), ("low-leakage", 0.007 / (2.0 - 0.49), 0.004636)],
+)
+def test_the_break_even_activity_of_each_flavour(contender, by_hand, digits, tmp_path):
+    trials = hub_trials(tmp_path, contenders=(contender,))
+    (need,) = needs_of(trials, "activity", 1.0)
+    (crossing,) = need.crossings
+    assert crossing.x == near(by_hand, rel=1e-12)
+    assert crossing.x == near(digits, rel=1.5e-4)
+    assert crossing.kind == "root"
+    assert crossing.above_below
+    (row,) = need_rows([need])
+    assert row["factor"] == near(by_hand / 0.02, rel=1e-12)
+    assert "the candidate is better below" in row["words"]
+
+
+def test_idle_break_even_against_the_sleep_switch(tmp_path):
+    trials = hub_trials(tmp_path, activity="0.05", idle="gated", contenders=("low-leakage",))
+    (need,) = needs_of(trials, "idle_time", 1.0)
+    by_hand = (100.0 - 24.5 - 7.0 - 1.47) / 0.035 * 1e-3
+    assert [crossing.x for crossing in need.crossings] == near([by_hand], rel=1e-12)
+    assert by_hand == near(1.915, rel=1e-4)
+    assert not need.crossings[0].above_below  # the candidate is better above
+    # the same as a share of the time: 10 ms awake
+    (share,) = needs_of(trials, "idle_share", 1.0)
+    assert share.crossings[0].x == near(by_hand / (by_hand + 0.01), rel=1e-12)
+
+
+def test_against_a_perfect_sleep_switch_there_is_none(tmp_path):
+    trials = hub_trials(
+        tmp_path, activity="0.05", idle="gated", residual="0.0", wake="0.0", contenders=("low-leakage",)
+    )
+    (need,) = needs_of(trials, "idle_time", 1.0)
+    assert need.kind == "no effect"
+    assert need.crossings == ()
+    assert need.highest == near(31.5 / 100.0, rel=1e-12)
+    assert "none" in need_text(need)
+
+
+def test_a_deadline_is_an_edge_and_no_root(tmp_path):
+    # twenty stages of 100 ns and ln 2 x 1 kohm x 0.5 fF each
+    trials = hub_trials(tmp_path)
+    (need,) = needs_of(trials, "clock_frequency", 1.0)
+    (edge,) = need.edges
+    assert edge.x == near(1.0 / (20 * (100e-9 + math.log(2.0) * 0.5e-12)), rel=2e-9)
+    assert edge.defined_below
+    assert "relay" in edge.why
+    assert "deadline" in edge.why
+    # 0.007 fJ at 10 us: 1.51 a fJ are 0.7 pW x T
+    assert [crossing.x for crossing in need.crossings] == near([0.7e-12 / (1.51e-15 * 0.02)], rel=1e-12)
+
+
+# -- stress-gated switch: p = b d V, R = 1e9 ohm x 10^(-2 p/GPa), t = 15 ps + ln 2 R C ------------------------------
+
+COEFFICIENT = "hand-stress-gated.actuator_coefficient"
+SUPPLY = "hand-stress-gated.declared_supply"
+#: d V [m] at which a stage takes 25 ps: R = 10 ps / (ln 2 x 0.1 fF)
+D_V_25 = math.log10(1e9 / (10e-12 / (math.log(2.0) * 0.1e-15))) / 2.0 * 1e9 / (2.0e9 / (300e-12 * 0.25))
+
+
+def level_of(trials: Trials, stage: float) -> float:
+    """Advantage in time at which one of the twenty stages takes so long."""
+    return float(trials.outcome.contenders[0].time[0]) / (20 * stage)
+
+
+def test_transit_equals_resistance_times_capacitance_at_274_9():
+    trials = hand_trials("stress-hand")
+    changes = label_changes(trials, Line(find_axis(trials, COEFFICIENT)))
+    delay = [change for change in changes if change.of == "delay"]
+    by_hand = math.log10(1e9 / (15e-12 / (math.log(2.0) * 0.1e-15))) / 2.0 * 1e9 / (2.0e9 / 300e-12)
+    assert [change.x for change in delay] == near([by_hand], rel=1e-9)
+    assert by_hand == near(274.9e-12, rel=2e-4)
+    assert (delay[0].below, delay[0].above) == ("device RC", "transit")
+
+
+@pytest.mark.parametrize(("supply", "digits"), [("0.25", 288.1e-12), ("0.40", 180.0e-12)])
+def test_coefficient_for_25_ps_per_stage(supply, digits):
+    trials = hand_trials("stress-hand", {SUPPLY: supply}, metric="time-per-operation")
+    (need,) = needs_of(trials, COEFFICIENT, level_of(trials, 25e-12))
+    assert [crossing.x for crossing in need.crossings] == near([D_V_25 / float(supply)], rel=1e-9)
+    assert need.crossings[0].x == near(digits, rel=3e-4)
+    assert near(72.02e-12, rel=1e-4) == D_V_25
+
+
+# -- word line: reference 0.6931 x 2 kohm x 100 fF + 0.377 ns; new 15 ps + 0.6931 R 100 fF + 0.377 ns ----------------
+
+RESISTANCE = "hand-line-new.on_resistance"
+REFERENCE_TIME = math.log(2.0) * 2e3 * 100e-15 + 0.377e-9
+
+
+@pytest.mark.parametrize(("level", "digits"), [(1.2, 543.8), (1.3, 66.9)])
+def test_required_on_resistance(level, digits):
+    trials = hand_trials("word-line")
+    (need,) = needs_of(trials, RESISTANCE, level)
+    by_hand = (REFERENCE_TIME / level - 0.377e-9 - 15e-12) / (math.log(2.0) * 100e-15)
+    assert [crossing.x for crossing in need.crossings] == near([by_hand], rel=1e-9)
+    assert by_hand == near(digits, rel=5e-4)
+
+
+def test_an_advantage_of_1_5_is_unreachable():
+    trials = hand_trials("word-line")
+    (need,) = needs_of(trials, RESISTANCE, 1.5)
+    assert need.kind == "unreachable"
+    assert need.reach is not None
+    assert need.reach.advantage == near(REFERENCE_TIME / 392e-12, rel=1e-9)
+    assert need.reach.advantage == near(1.315, rel=5e-4)
+    assert need.reach.end == "towards 0"
+    assert need.reach.settled
+    assert need.reach.limit == "wire"
+    text = need_text(need)
+    assert "unreachable: even at the ideal limit (towards 0) the advantage is 1.315, limited by wire" in text
+
+
+# -- property 60: put a value back; property 61: stricter level, stricter value -------------------------------------
+
+
+@pytest.mark.parametrize("level", [0.9, 1.0, 1.1, 1.25])
+def test_a_value_put_back_gives_the_level_and_parts_the_sides(level):
+    trials = hand_trials("word-line")
+    axes = [axis for name, axis in known_axes(trials).items() if name != "temperature"]
+    solved = 0
+    for need in find_needs(trials.study, trials.pair, axes, [level], trials=trials, ideal=False):
+        line = Line(need.axis)
+        for crossing in need.crossings:
+            at, below, above = trials(
+                [line.trial(crossing.x * factor) for factor in (1.0, 1.0 - 1e-6, 1.0 + 1e-6)]
+            ).advantage
+            assert at == near(level, rel=1e-9)
+            assert (below > level) == crossing.above_below
+            assert (above < level) == crossing.above_below
+            solved += 1
+    assert solved >= 4
+
+
+def test_no_answer_without_a_change_of_sign_and_none_with_one():
+    trials = hand_trials("word-line")
+    axes = list(known_axes(trials).values())
+    for need in find_needs(trials.study, trials.pair, axes, [1.0, 1.25], trials=trials, ideal=False):
+        sides = need.lowest >= need.level, need.highest >= need.level
+        assert bool(need.crossings) == (sides[0] != sides[1])
+        assert (need.kind == "crossings") == bool(need.crossings)
+
+
+def test_a_stricter_level_asks_for_a_stricter_value_until_it_is_unreachable():
+    trials = hand_trials("word-line")
+    levels = [1.0, 1.1, 1.2, 1.3, 1.315, 1.316, 1.4]
+    needs = needs_of(trials, RESISTANCE, *levels)
+    kinds = [need.kind for need in needs]
+    limit = REFERENCE_TIME / 392e-12
+    assert [kind == "unreachable" for kind in kinds] == [level > limit for level in levels]
+    values = [need.crossings[0].x for need in needs if need.crossings]
+    assert values == sorted(values, reverse=True)
+    assert len(values) == 5
