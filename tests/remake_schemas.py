@@ -31,7 +31,7 @@ from benchmark.sets.circuit_file import CELL
 from benchmark.sets.schema import SourceEntry, TechnologyFile, WiresFile
 from benchmark.sets.set_parts import ANCHOR_UNITS
 from benchmark.sets.study import REQUIREMENTS
-from benchmark.sets.study_builder import GATING, LENGTHS, OPTIONAL_OVERHEADS, OVERHEADS
+from benchmark.sets.study_builder import GATING, LENGTHS, MITIGATION, OPTIONAL_OVERHEADS, OVERHEADS
 from benchmark.sets.study_schema import CircuitFile, StudyFile
 from benchmark.sets.tables import COLUMN_UNITS, Sidecar
 from benchmark.units import parse_unit
@@ -365,7 +365,8 @@ def study_schema() -> Schema:
     """The schema of studies."""
     schema = _raw(StudyFile)
     tables, own = schema["$defs"], schema["properties"]
-    ledger = {*OVERHEADS, *OPTIONAL_OVERHEADS, *GATING}
+    costs = [name for names in MITIGATION.values() for name in names]
+    ledger = {*OVERHEADS, *OPTIONAL_OVERHEADS, *GATING, *costs}
     names = [quantity.name for quantity in STUDY_QUANTITIES if quantity.name not in ledger]
     own["value"] = _closed(_values(names, False), description=own["value"]["description"])
     own["value"]["not"] = {"required": list(LENGTHS)}
@@ -378,6 +379,11 @@ def study_schema() -> Schema:
         _values([*OVERHEADS, *OPTIONAL_OVERHEADS], False), OVERHEADS, description=side["overhead"]["description"]
     )
     side["gating"] = _closed(_values(GATING, False), description=side["gating"]["description"])
+    side["mitigation"] = _closed(_values(costs, False), description=side["mitigation"]["description"])
+    tables["SideTable"]["allOf"] = [
+        {"if": _when(["knobs"], [knob]), "then": {"properties": {"mitigation": {"required": list(names)}}}}
+        for knob, names in MITIGATION.items()
+    ]
     usual = "; ".join(f"{name}: {text}" for name, text in PRODUCT_CLASSES.items())
     tables["ProductTable"]["properties"]["class"] = {
         "description": f"Product class and what usually decides. {usual}",

@@ -22,11 +22,15 @@ def _largest(*numbers: float) -> float:
     return math.nan if any(math.isnan(number) for number in numbers) else max(numbers)
 
 
+def _smallest(*numbers: float) -> float:
+    return math.nan if any(math.isnan(number) for number in numbers) else min(numbers)
+
+
 def _logarithm(number: float) -> float:
     return math.log(number) if number > 0.0 else math.nan
 
 
-_FUNCTIONS: dict[str, Callable[..., float]] = {"max": _largest, "ln": _logarithm}
+_FUNCTIONS: dict[str, Callable[..., float]] = {"max": _largest, "min": _smallest, "ln": _logarithm}
 
 
 def shown(value: float, digits: int = 6) -> str:

@@ -9,13 +9,13 @@ from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
 
-from benchmark.decide.compare import Comparison, SideOutcome
+from benchmark.decide.compare import Comparison, SideOutcome, choice_of
 from benchmark.errors import UsageError, nearest
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
 from benchmark.record.rerun import recreate
 from benchmark.record.write import read_record
-from benchmark.sets.study import NodePair, Study
+from benchmark.sets.study import Choice, NodePair, Study
 
 __all__ = ["ChosenPoint", "choose_point", "node_pair", "study_inputs"]
 
@@ -43,13 +43,13 @@ def node_pair(study: Study, label: str) -> NodePair:
 
 @dataclass(frozen=True)
 class ChosenPoint:
-    """A side at one design point; ``frozen``: size and threshold shift; ``why`` in words."""
+    """A side at one design point; ``choice``: all but the supply; ``why`` in words."""
 
     name: str
     pair: NodePair
     run: SideRun
     supply: float
-    frozen: tuple[float, float]
+    choice: Choice
     why: str
 
 
@@ -67,18 +67,18 @@ def choose_point(study: Study, pair: NodePair, side: str, supply: float | None) 
         raise UsageError(message.removesuffix("; "))
     run = comparison.candidate if side == "candidate" else comparison.contenders[side]
     outcome = comparison.side_outcome(study.policy.primary, run, comparison.policy_inputs())
-    frozen = (outcome.optimum.points.size, outcome.optimum.points.threshold_shift)
+    choice = choice_of(outcome)
     found = bool(outcome.found[0])
     if supply is None and not found:
         message = f"{side} has no permitted design point under {study.policy.primary}; name one with --supply"
         raise UsageError(message)
     if supply is None:
-        return ChosenPoint(side, pair, run, float(outcome.supply[0]), frozen, _optimum(study, run, outcome))
+        return ChosenPoint(side, pair, run, float(outcome.supply[0]), choice, _optimum(study, run, outcome))
     why = f"supply {supply:g} V as asked for, frozen choices of the optimum under {study.policy.primary}"
     if not found:
-        frozen = run.combinations[0]
+        choice = run.combinations[0]
         why = f"supply {supply:g} V as asked for, first of the frozen choices"
-    return ChosenPoint(side, pair, run, supply, frozen, why)
+    return ChosenPoint(side, pair, run, supply, choice, why)
 
 
 def _optimum(study: Study, run: SideRun, outcome: SideOutcome) -> str:

@@ -46,11 +46,11 @@ def netlist_command(
     with study_inputs(study_path, overrides or {}) as (path, numbers):
         study, _ = load_study(path, nodes, numbers)
         chosen = choose_point(study, node_pair(study, node), side, supply)
-        points = design_points(chosen.run.problem, np.array([[chosen.supply]]), *chosen.frozen)
+        points = design_points(chosen.run.problem, np.array([[chosen.supply]]), *chosen.choice)
         kelvin = study.temperatures[int(points.slowest_temperature[0, 0])]
         text = side_deck(
             chosen.run.problem,
-            (chosen.supply, *chosen.frozen),
+            (chosen.supply, chosen.choice.size, _shift(chosen)),
             kelvin,
             net=net,
             capacitances=chosen_capacitances,
@@ -74,9 +74,15 @@ def _reservations(points: Points) -> list[str]:
     return [f"The study does not permit this point: {'; '.join(reasons)}"] if reasons else []
 
 
+def _shift(chosen: ChosenPoint) -> float:
+    """Threshold shift of the devices, back bias included [V]."""
+    shift = chosen.run.problem.device_shift(chosen.choice.threshold_shift, chosen.choice.back_bias)
+    return float(np.ravel(shift)[0])
+
+
 def _comments(study: Study, chosen: ChosenPoint, kelvin: float, numbers: Mapping[str, str]) -> list[str]:
     problem = chosen.run.problem
-    size, shift = chosen.frozen
+    size, shift = chosen.choice.size, _shift(chosen)
     return [
         f"{_TITLE.removeprefix('* ')} {benchmark.__version__}; run it with: ngspice -b FILE",
         f"Study {study.id}: {study.title}",

@@ -55,12 +55,16 @@ def _side(kind: str, item: ParameterSet) -> str:
         f"[{kind}.knobs]",
         f'supply = {{ low = {low:g}, high = {high:g}, unit = "V" }}',
         "# size = { values = [1, 2] }         # units of width or copies, frozen in silicon",
+        "# copies = { values = [1, 2, 4] }    # parallel copies, where operations do not depend on each other",
         f"[{kind}.overhead]                # a ledger: a zero is an entry, not an omission",
     ]
     for name in ("level_shifter_energy", "supply_efficiency", "overhead_power"):
         lines.append(f'{name} = {{ value = {STUDY_NUMBERS[name]}, unit = "{QUANTITIES[name].unit}" }}')
     lines.append(f'# with workload.idle = "gated":\n# [{kind}.gating]')
     for name in ("residual_leakage", "wake_energy_cycles"):
+        lines.append(f'# {name} = {{ value = {STUDY_NUMBERS[name]}, unit = "{QUANTITIES[name].unit}" }}')
+    lines.append(f"# with the knob copies:\n# [{kind}.mitigation]")
+    for name in ("routing_overhead", "repeated_share"):
         lines.append(f'# {name} = {{ value = {STUDY_NUMBERS[name]}, unit = "{QUANTITIES[name].unit}" }}')
     return "\n".join(lines)
 

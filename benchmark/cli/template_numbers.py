@@ -145,6 +145,8 @@ STUDY_NUMBERS: Final[Mapping[str, str]] = {
     "overhead_power": "0",
     "residual_leakage": "0.05",
     "wake_energy_cycles": "3",
+    "routing_overhead": "0.1",
+    "repeated_share": "1",
     "idle_time": "1",
     "active_cycles": "1000",
     "word_length": "16",

@@ -35,6 +35,6 @@ def trace_command(
             f"Side: {chosen.name}, technology {chosen.run.problem.side.technology.id}, "
             f"node {chosen.run.problem.node} of pair {chosen.pair.label}",
             f"Point: {chosen.why}",
-            *trace_point(chosen.run.problem, chosen.supply, *chosen.frozen),
+            *trace_point(chosen.run.problem, chosen.supply, *chosen.choice),
         ]
     typer.echo("\n".join(printable(line) for line in lines))

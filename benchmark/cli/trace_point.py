@@ -20,6 +20,7 @@ from benchmark.devices.record import SwitchPair
 from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.side import SideProblem
 from benchmark.record.text import engineering
+from benchmark.sets.study import Choice
 
 __all__ = ["AGREEMENT", "trace_point"]
 
@@ -46,15 +47,19 @@ _FIELDS: dict[str, tuple[str, str, str]] = {
 }
 
 
-def trace_point(problem: SideProblem, supply: float, size: float, shift: float) -> list[str]:
+def trace_point(
+    problem: SideProblem, supply: float, size: float, shift: float, copies: float = 1.0, back_bias: float = 0.0
+) -> list[str]:
     """Return the lines of one design point."""
-    return _Tracer(problem, supply, size, shift).lines()
+    return _Tracer(problem, supply, Choice(size, shift, copies, back_bias)).lines()
 
 
 class _Tracer:
-    def __init__(self, problem: SideProblem, supply: float, size: float, shift: float) -> None:
+    def __init__(self, problem: SideProblem, supply: float, choice: Choice) -> None:
+        size, self.choice = choice.size, choice
         self.problem, self.study, self.size = problem, problem.study, size
-        self.points: Points = design_points(problem, np.array([[supply]]), size, shift)
+        self.points: Points = design_points(problem, np.array([[supply]]), *choice)
+        shift = float(np.ravel(problem.device_shift(choice.threshold_shift, choice.back_bias))[0])
         temperatures = self.study.temperatures
         self.slow = temperatures[int(self.points.slowest_temperature[0, 0])]
         self.hot = temperatures[-1]
@@ -63,7 +68,7 @@ class _Tracer:
         self.circuit = problem.circuit_at(np.array([[supply]]), size, shift)
         self.sheet = Sheet()
         self.net = NetArithmetic(self.sheet, problem, self.circuit, size, self.copies)
-        self.supply, self.shift = supply, shift
+        self.supply = supply
         self._estimates: dict[float, OperationMetrics] = {}
 
     def _switches(self, supply: float, shift: float, kelvin: float) -> SwitchPair:
@@ -104,8 +109,7 @@ class _Tracer:
         sheet.given(
             "size", self.size, "1", "copies of every switch" if self.copies else "units of width of every switch"
         )
-        if self.shift:
-            sheet.given("V_shift", self.shift, "V", "threshold shift")
+        self._choices()
         self._shared()
         nets = self.circuit.nets
         self._areas(nets)
@@ -137,6 +141,22 @@ class _Tracer:
         self._operation(nets)
         self._compare()
         return sheet.lines
+
+    def _choices(self) -> None:
+        """Threshold shift, back bias and parallel copies, where there are any."""
+        sheet, costs, choice = self.sheet, self.problem.mitigation, self.choice
+        if choice.back_bias:
+            sheet.given("V_frozen", choice.threshold_shift, "V", "threshold shift frozen in silicon")
+            sheet.given("V_bb", choice.back_bias, "V", "back bias, above 0 forward")
+            sheet.given("gamma_b", one(costs["body_factor"]), "1", "threshold shift per volt of back bias")
+            sheet.result("V_shift", "V_frozen - gamma_b*V_bb", "V", "threshold shift of the devices")
+        elif choice.threshold_shift:
+            sheet.given("V_shift", choice.threshold_shift, "V", "threshold shift")
+        if choice.copies != 1.0:
+            sheet.given("n_copy", choice.copies, "1", "parallel copies, which take turns")
+            sheet.given("k_copy", one(costs["routing_overhead"]), "1", "dynamic energy added by each further copy")
+            sheet.given("g_copy", one(costs["repeated_share"]), "1", "share of the block each further copy repeats")
+            sheet.result("s_copy", "1 + g_copy*(n_copy - 1)", "1", "leakage, area and wake-up energy against one copy")
 
     # -- what all nets share ------------------------------------------------------------------------------------
 
@@ -231,15 +251,22 @@ class _Tracer:
             sheet.result(f"dP_{index}", f"n_{index}*P_{index}", "W")
             sheet.result(f"dB_{index}", f"n_{index}*P_b_{index}", "W")
         every = range(1, len(nets) + 1)
-        sheet.result("E_dyn", " + ".join(f"dE_{index}" for index in every), "J", "dynamic energy")
-        sheet.result("P_leak", f"g_P*({' + '.join(f'dP_{index}' for index in every)})", "W", "leakage power")
-        sheet.result("P_bias", " + ".join(f"dB_{index}" for index in every), "W", "bias power")
-        sheet.given("P_ov", one(problem.overhead["overhead_power"]), "W", "standing power of overheads")
+        several = self.choice.copies != 1.0
+        dynamic = " + ".join(f"dE_{index}" for index in every)
+        if several:
+            dynamic = f"({dynamic})*(1 + k_copy*(n_copy - 1))"
+        times = "*s_copy" if several else ""
+        sheet.result("E_dyn", dynamic, "J", "dynamic energy")
+        sheet.result("P_leak", f"g_P*({' + '.join(f'dP_{index}' for index in every)}){times}", "W", "leakage power")
+        bias = " + ".join(f"dB_{index}" for index in every)
+        sheet.result("P_bias", f"({bias})*s_copy" if several else bias, "W", "bias power")
+        self._overheads(several)
+        path = "T_path/n_copy" if several else "T_path"
         if study.timing == "clocked" and study.leakage_accounting == "period":
             sheet.given("f", one(problem.scenario["clock_frequency"]), "1/s", "clock frequency")
-            sheet.result("T", "max(1/f, T_path)", "s", "leakage is charged over the clock period, or a longer path")
+            sheet.result("T", f"max(1/f, {path})", "s", "leakage is charged over the clock period, or a longer path")
         else:
-            sheet.result("T", "T_path", "s", "leakage is charged over the path delay")
+            sheet.result("T", path, "s", "leakage is charged over the path delay")
         sheet.result("E_leak", "P_leak*T", "J", "leakage energy")
         sheet.result("E_stand", "(P_bias + P_ov)*T", "J", "bias and overheads")
         self._idle(nets)
@@ -253,6 +280,20 @@ class _Tracer:
         for title, found in (("Delay", shares.delay_shares), ("Energy", shares.energy_shares)):
             listed = ", ".join(f"{name} {100.0 * share:.4g} %" for name, share in found.items() if share > 0.0)
             sheet.text(f"  {title} shares: {listed}")
+
+    def _overheads(self, several: bool) -> None:
+        """Standing power outside the gated supply: overheads of every copy, and the back bias."""
+        sheet, problem = self.sheet, self.problem
+        one_block = one(problem.overhead["overhead_power"])
+        if not (several or self.choice.back_bias):
+            sheet.given("P_ov", one_block, "W", "standing power of overheads")
+            return
+        sheet.given("P_ov1", one_block, "W", "standing power of overheads of one copy")
+        formula = "P_ov1*n_copy" if several else "P_ov1"
+        if self.choice.back_bias:
+            sheet.given("P_bb", one(problem.mitigation["back_bias_power"]), "W", "standing power of the back bias")
+            formula += " + P_bb*s_copy" if several else " + P_bb"
+        sheet.result("P_ov", formula, "W", "standing power of overheads")
 
     def _idle(self, nets: tuple[Net, ...]) -> None:
         sheet, scenario = self.sheet, self.problem.scenario
@@ -271,8 +312,15 @@ class _Tracer:
             sheet.result(f"dC_{index}", f"n_{index}*C_net_{index}", "F")
         total = " + ".join(f"dC_{index}" for index in range(1, len(nets) + 1))
         sheet.result("C_all", total, "F", "capacitance of all nets")
-        formula = "((rho*(P_leak + P_bias) + P_ov)*t_idle + k_w*C_all*V**2)/n_act"
-        sheet.result("E_idle", formula, "J", "power-gated while idle; overheads lie outside the gated supply")
+        times = "*s_copy" if self.choice.copies != 1.0 else ""
+        formula = f"((rho*(P_leak + P_bias) + P_ov)*t_idle + k_w*C_all*V**2{times})/n_act"
+        meaning = "power-gated while idle; overheads lie outside the gated supply"
+        if one(self.points.gated):
+            sheet.result("E_idle", formula, "J", meaning)
+            return
+        sheet.result("E_asleep", formula, "J", meaning)
+        sheet.result("E_on", "(P_leak + P_bias + P_ov)*t_idle/n_act", "J", "everything stays on while idle")
+        sheet.result("E_idle", "min(E_asleep, E_on)", "J", "gating would not pay, so the supply stays on")
 
     def _compare(self) -> None:
         sheet, points = self.sheet, self.points

@@ -20,7 +20,7 @@ from benchmark.decide.requirements import (
 )
 from benchmark.evaluate.points import Points
 from benchmark.evaluate.search import Condition, Optimum, SideRun, take_columns
-from benchmark.sets.study import REQUIREMENTS, Requirement
+from benchmark.sets.study import REQUIREMENTS, Choice, Requirement
 
 __all__ = ["RequirementResult", "assess", "state_of"]
 
@@ -91,7 +91,7 @@ class _Scope:
     optimum: Optimum | None
     relaxed: Optimum | None
     within: Condition
-    functional: Mapping[tuple[float, float], Mapping[str, Array]]
+    functional: Mapping[Choice, Mapping[str, Array]]
 
     def margin_at(self, points: Points, requirement: Requirement) -> float:
         """Margin of row 0 at points of one supply."""
@@ -145,7 +145,7 @@ def assess(
     run: SideRun,
     optimum: Optimum | None,
     area_ratio: float | None,
-    functional: Mapping[tuple[float, float], Mapping[str, Array]],
+    functional: Mapping[Choice, Mapping[str, Array]],
     within: Condition,
     relaxed: Optimum | None = None,
 ) -> list[RequirementResult]:

@@ -25,7 +25,7 @@ from benchmark.decide.profile import Crossing, Edge, Line, Profile, profiles
 from benchmark.decide.trials import REQUIRED_TIME, TEMPERATURE, Trials
 from benchmark.sets.study import NodePair, Study
 
-__all__ = ["Need", "Reach", "find_needs"]
+__all__ = ["Need", "Reach", "find_needs", "side_of"]
 
 #: decades beyond the range at which the way to an ideal limit is looked at
 OUTWARD = (1.0, 2.0, 3.0, 4.0, 6.0, 8.0, 10.0, 12.0)
@@ -71,12 +71,11 @@ class Need:
     reach: Reach | None = None
 
 
-def _kind(profile: Profile, level: float, crossings: Sequence[Crossing]) -> str:
+def side_of(profile: Profile, level: float) -> str:
+    """Say on which side of a level a profile without crossings lies: always, never, no effect or undefined."""
     known = profile.defined
     if not known.size:
         return "undefined"
-    if crossings:
-        return "crossings"
     low, high = float(known.min()), float(known.max())
     if high - low <= NO_EFFECT * abs(high) or low == high:
         return "no effect"
@@ -127,7 +126,7 @@ def find_needs(
                 profile.line.axis,
                 level,
                 today,
-                _kind(profile, level, crossings),
+                "crossings" if crossings else side_of(profile, level),
                 tuple(crossings),
                 profile.edges,
                 float(known.min()) if known.size else float("nan"),

@@ -25,7 +25,7 @@ def _metrics(run: SideRun, side: SideOutcome, circuit: Circuit, rule: str) -> Op
         problem.prepared,
         points.supply[:1, :, None],
         np.full((1, 1, 1), kelvin),
-        {"threshold_shift": np.full((1, 1, 1), points.threshold_shift)},
+        {"threshold_shift": np.full((1, 1, 1), _shift(run, side))},
     )
     return estimate(circuit, pair, problem.wires, rule, size=points.size, size_as=problem.size_as, short_circuit=False)
 
@@ -33,7 +33,13 @@ def _metrics(run: SideRun, side: SideOutcome, circuit: Circuit, rule: str) -> Op
 def _circuit(run: SideRun, side: SideOutcome) -> Circuit:
     """Return the circuit at a side's optimum."""
     points = side.optimum.points
-    return run.problem.circuit_at(points.supply[:1], points.size, points.threshold_shift)
+    return run.problem.circuit_at(points.supply[:1], points.size, _shift(run, side))
+
+
+def _shift(run: SideRun, side: SideOutcome) -> float:
+    """Return the threshold shift of the devices at a side's optimum."""
+    points = side.optimum.points
+    return float(np.ravel(run.problem.device_shift(points.threshold_shift, points.back_bias))[0])
 
 
 def delay_factor(run: SideRun, side: SideOutcome) -> float:

@@ -8,7 +8,7 @@ requirements: the lower envelope. Where a side has no permitted point the advant
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,9 +20,9 @@ from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import cycle_time
 from benchmark.evaluate.search import Optimum, SideRun
 from benchmark.evaluate.side import build_side, keys_of
-from benchmark.sets.study import NodePair, Side, Study
+from benchmark.sets.study import Choice, NodePair, Side, Study
 
-__all__ = ["Comparison", "Outcome", "SideOutcome"]
+__all__ = ["Comparison", "Outcome", "SideOutcome", "choice_of"]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -75,7 +75,7 @@ class Comparison:
     """A study at one node pair over a batch. Each side evaluates only the rows that can change it."""
 
     def __init__(
-        self, study: Study, pair: NodePair, batch: Batch, *, frozen: Mapping[str, tuple[float, float]] | None = None
+        self, study: Study, pair: NodePair, batch: Batch, *, frozen: Mapping[str, Choice] | None = None
     ) -> None:
         self.study, self.pair, self.batch = study, pair, batch
         self.frozen = dict(frozen or {})
@@ -93,11 +93,21 @@ class Comparison:
         self._position[self._key(side, role)] = position
         return SideRun(build_side(self.study, side, role, self.pair, self.batch.take(rows)), self.pair)
 
+    def key(self, run: SideRun) -> str:
+        """Return the key of a side among the frozen choices."""
+        return self._key(run.problem.side, run.problem.role)
+
+    def own_rows(self, run: SideRun, mask: Mask) -> Mask:
+        """Return which of a side's own rows a mask over all rows of the batch asks for."""
+        own = np.zeros(run.problem.batch.rows, dtype=bool)
+        own[self._position[self.key(run)][mask]] = True
+        return own
+
     def widen(self, run: SideRun, array: Array) -> Array:
         """Spread an array over a side's own rows (or one row) to all rows of the batch."""
         if array.shape[0] == 1:
             return np.broadcast_to(array, (self.batch.rows, *array.shape[1:]))
-        return np.asarray(array[self._position[self._key(run.problem.side, run.problem.role)]])
+        return np.asarray(array[self._position[self.key(run)]])
 
     def required_time(self) -> Array | None:
         """Return T* (1 or row, 1), nan where it is not known, or None when the study has none."""
@@ -111,7 +121,7 @@ class Comparison:
         run = self.contenders[required.removeprefix("contender:")]
         points = run.declared()
         # where the declared point does not work its time means nothing
-        return self.widen(run, np.where(points.able, points.time, np.nan))
+        return self.widen(run, np.where(points.able, points.interval, np.nan))
 
     def policy_inputs(self) -> PolicyInputs:
         """Collect what the study's policies need."""
@@ -124,24 +134,27 @@ class Comparison:
             same_supply=self.widen(first, first.problem.declared_supply[:, 0, :]),
         )
 
-    def side_outcome(self, policy: str, run: SideRun, inputs: PolicyInputs) -> SideOutcome:
-        """Optimise one side."""
-        side = run.problem.side
-        frozen = self.frozen.get(self._key(side, run.problem.role))
-        best = optimum(policy, run, inputs, frozen)
+    def side_outcome(self, policy: str, run: SideRun, inputs: PolicyInputs, *, floor: bool = True) -> SideOutcome:
+        """Optimise one side; ``floor=False`` leaves the functional floor aside."""
+        frozen = self.frozen.get(self.key(run))
+        found = self.widened(run, optimum(policy, run, inputs, frozen, floor=floor))
+        why = "" if found.found[0] or self.batch.rows > 1 else why_infeasible(policy, run, inputs)
+        return dataclasses.replace(found, why=why)
+
+    def widened(self, run: SideRun, best: Optimum) -> SideOutcome:
+        """Spread an optimum over a side's own rows to all rows of the batch."""
         points = best.points
-        metric = metric_of(self.study.policy.metric, points)[:, 0]
         found = self.widen(run, best.found.astype(np.float64)) > 0.0
         return SideOutcome(
-            side.id,
+            run.problem.side.id,
             best,
-            self.widen(run, metric),
+            self.widen(run, metric_of(self.study.policy.metric, points)[:, 0]),
             np.asarray(found),
             self.widen(run, points.energy[:, 0]),
             self.widen(run, points.time[:, 0]),
             self.widen(run, points.area[:, 0]),
             self.widen(run, points.supply[:, 0]),
-            "" if found[0] or self.batch.rows > 1 else why_infeasible(policy, run, inputs),
+            "",
         )
 
     def outcome(self, policy: str, *, enforce: bool = True) -> Outcome:
@@ -149,7 +162,13 @@ class Comparison:
         inputs = dataclasses.replace(self.policy_inputs(), enforce_requirements=enforce)
         candidate = self.side_outcome(policy, self.candidate, inputs)
         contenders = tuple(self.side_outcome(policy, run, inputs) for run in self.contenders.values())
-        costs = np.stack([np.where(side.found & ~np.isnan(side.metric), side.metric, np.inf) for side in contenders])
+        return self.compared(policy, inputs, candidate, contenders)
+
+    def compared(
+        self, policy: str, inputs: PolicyInputs, candidate: SideOutcome, contenders: tuple[SideOutcome, ...]
+    ) -> Outcome:
+        """Find the strongest contender of every row and the advantage over it."""
+        costs = costs_of(contenders)
         strongest = np.argmin(costs, axis=0)
         lowest = costs[strongest, np.arange(self.batch.rows)]
         defined = np.isfinite(lowest) & candidate.found
@@ -177,11 +196,16 @@ class Comparison:
             found.append(f"the required time is not known: {required} cannot be evaluated at its declared supply")
         return found
 
-    def frozen_choices(self, outcome: Outcome) -> dict[str, tuple[float, float]]:
-        """Return the frozen choice (size, threshold shift) each side made at the best estimate."""
-        found = {f"candidate {outcome.candidate.id}": _choice(outcome.candidate)}
-        found |= {f"contender {side.id}": _choice(side) for side in outcome.contenders}
+    def frozen_choices(self, outcome: Outcome) -> dict[str, Choice]:
+        """Return what each side chose at the best estimate; its frozen parts are meant to be kept."""
+        found = {f"candidate {outcome.candidate.id}": choice_of(outcome.candidate)}
+        found |= {f"contender {side.id}": choice_of(side) for side in outcome.contenders}
         return found
+
+
+def costs_of(contenders: Sequence[SideOutcome]) -> Array:
+    """Return the metric of every contender (contender, row), infinite where it has no permitted point."""
+    return np.stack([np.where(side.found & ~np.isnan(side.metric), side.metric, np.inf) for side in contenders])
 
 
 def _ratio(reference: Array, candidate: Array) -> Array:
@@ -191,5 +215,7 @@ def _ratio(reference: Array, candidate: Array) -> Array:
     return np.asarray(np.where((reference == 0.0) & (candidate == 0.0), 1.0, ratio))
 
 
-def _choice(side: SideOutcome) -> tuple[float, float]:
-    return side.optimum.points.size, side.optimum.points.threshold_shift
+def choice_of(side: SideOutcome) -> Choice:
+    """Return what a side chose at the best estimate, besides its supply."""
+    points = side.optimum.points
+    return Choice(points.size, points.threshold_shift, points.copies, float(points.back_bias[0, 0]))

@@ -13,7 +13,7 @@ from benchmark.decide.requirements import FUNCTIONAL, HardLimits, Meets, margins
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import Points, with_cycle
 from benchmark.evaluate.search import SideRun
-from benchmark.sets.study import Study
+from benchmark.sets.study import Choice, Study
 
 __all__ = ["Envelope", "Swept", "advantage_against_time", "crossings", "scan_nodes", "swept"]
 
@@ -34,7 +34,7 @@ class Swept:
     reasons: tuple[tuple[str, ...], ...]  # why each point is not feasible
 
 
-def swept(run: SideRun, combination: tuple[float, float], functional: Mapping[str, Array]) -> Swept:
+def swept(run: SideRun, combination: Choice, functional: Mapping[str, Array]) -> Swept:
     """Judge every grid point of one frozen choice, with all reasons."""
     points = run.grid(combination)
     problem = run.problem
@@ -98,7 +98,7 @@ def advantage_against_time(study: Study, runs: Mapping[str, list[tuple[SideRun, 
         for _, curve in curves:
             mask = _whatever_time(curve)
             if mask.any():
-                spans.append((curve.points.time[0][mask].min(), curve.points.time[0][mask].max()))
+                spans.append((curve.points.interval[0][mask].min(), curve.points.interval[0][mask].max()))
     if not spans:
         empty = np.zeros(0)
         return Envelope(empty, empty, empty, (), empty)
@@ -124,7 +124,7 @@ def _least_energy(study: Study, curves: list[tuple[SideRun, Swept]], times: Arra
     cap = cap if cap is not None and cap.kind == "hard" else None
     for run, curve in curves:
         mask = _whatever_time(curve)
-        delay = curve.points.time[0]
+        delay = curve.points.interval[0]
         for position, time in enumerate(times):  # a few hundred times, each vectorised over the supplies
             period = np.asarray([[time]]) if study.timing == "clocked" else None
             points = with_cycle(run.problem, curve.points, period)

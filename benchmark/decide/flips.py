@@ -13,7 +13,7 @@ from benchmark.decide.compare import Comparison
 from benchmark.decide.moves import InputMove, permitted_advantage, range_of, reaches
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
-from benchmark.sets.study import NodePair, Study
+from benchmark.sets.study import Choice, NodePair, Study
 from benchmark.units import from_si, parse_unit
 
 __all__ = ["with_flips"]
@@ -25,7 +25,7 @@ TOLERANCE = 1.0e-6
 
 
 def with_flips(
-    study: Study, pair: NodePair, policy: str, frozen: Mapping[str, tuple[float, float]], moves: Sequence[InputMove]
+    study: Study, pair: NodePair, policy: str, frozen: Mapping[str, Choice], moves: Sequence[InputMove]
 ) -> list[InputMove]:
     """Fill in the flips of every straddling input, all of them searched at once.
 

@@ -46,7 +46,7 @@ def why_infeasible(policy: str, run: SideRun, inputs: PolicyInputs) -> str:
         best = minimise(run, objective, hard_conditions(study), costly)
         return (float(best.value[0]), float(best.points.supply[0, 0])) if best.found[0] else None
 
-    fastest = nearest("time")
+    fastest = nearest("interval")
     if fastest is None:
         return _nothing_permitted(run)
     if policy in ("iso-delay", "minimum-energy") and inputs.required_time is not None:

@@ -26,6 +26,7 @@ ENERGY_GROUPS: dict[str, tuple[str, ...]] = {
     "layout and fixed load": ("layout", "fixed_load"),
     "losses beyond charge": ("extra",),
     "short circuit": ("short_circuit",),
+    "parallel copies": ("copies",),
     "leakage": ("leakage",),
     "idle": ("idle",),
     "bias and overheads": ("bias_and_overheads",),

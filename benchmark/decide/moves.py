@@ -21,7 +21,7 @@ from benchmark.decide.policies import PRESCRIBED
 from benchmark.decide.requirements import STANDING, misses, standing
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
-from benchmark.sets.study import NodePair, Study
+from benchmark.sets.study import Choice, NodePair, Study
 from benchmark.sets.values import Value
 from benchmark.units import from_si, parse_unit
 
@@ -155,7 +155,7 @@ def _tolerance(study: Study, policy: str, name: str) -> float:
 
 
 def move_inputs(
-    study: Study, pair: NodePair, policy: str, frozen: Mapping[str, tuple[float, float]]
+    study: Study, pair: NodePair, policy: str, frozen: Mapping[str, Choice]
 ) -> tuple[Outcome, list[InputMove]]:
     """Move every input alone over its range, both sides re-optimised in each row (frozen choices kept)."""
     values = values_by_key(study, pair)

@@ -1,11 +1,14 @@
 """Comparison policies: what each side is allowed to choose, and what it is judged by (layer 7).
 
 declared-point         x = the declared supply; nothing is optimised
-iso-delay              min E subject to T <= T*
+iso-delay              min E subject to T <= n T*
 iso-energy             min T subject to E <= E*
-minimum-energy         min E subject to T <= T_max (when a required time is given)
+minimum-energy         min E subject to T <= n T_max (when a required time is given)
 minimum-energy-delay   min E T^m
 same-supply            the reference's declared supply for both sides (diagnostic, not a verdict)
+
+T is the path delay; n parallel copies take turns, so each may take n times the required time. Where T itself is made
+small, copies do not help.
 
 A side that cannot reach T* or E* is infeasible; it is never given a number.
 """
@@ -19,10 +22,22 @@ from numpy.typing import NDArray
 
 from benchmark.decide.requirements import FunctionalFloor, functional_condition, hard_conditions
 from benchmark.evaluate.points import Points, design_points
-from benchmark.evaluate.search import All, Condition, Objective, Optimum, SideRun, minimise
+from benchmark.evaluate.search import All, Condition, Objective, Optimum, SideRun, hold_to, minimise, on_grid
 from benchmark.evaluate.side import SideProblem
+from benchmark.sets.study import Choice
 
-__all__ = ["DIAGNOSTIC", "PRESCRIBED", "PolicyInputs", "metric_of", "optimum", "own_limit", "prescribed"]
+__all__ = [
+    "DIAGNOSTIC",
+    "PRESCRIBED",
+    "PolicyInputs",
+    "floor_only_raises",
+    "hold_to_floor",
+    "metric_of",
+    "optimum",
+    "own_limit",
+    "prescribed",
+    "roughly",
+]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -63,7 +78,7 @@ def metric_of(name: str, points: Points) -> Array:
 
 @dataclass(frozen=True)
 class Within(Condition):
-    """The limit of a policy: ``attribute`` (time or energy) at most ``limit``, (1 or row of the whole batch, 1)."""
+    """The limit of a policy: ``attribute`` (interval or energy) at most ``limit``, (1 or row of the whole batch, 1)."""
 
     attribute: str
     limit: Array
@@ -90,13 +105,13 @@ def own_limit(name: str, inputs: PolicyInputs) -> Condition:
     if name in PRESCRIBED:
         return Nowhere()
     if name in ("iso-delay", "minimum-energy") and inputs.required_time is not None:
-        return Within("time", inputs.required_time)
+        return Within("interval", inputs.required_time)
     if name == "iso-energy":
         return Within("energy", np.asarray([[inputs.required_energy]], dtype=np.float64))
     return All()
 
 
-def prescribed(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, float] | None = None) -> Points:
+def prescribed(name: str, run: SideRun, inputs: PolicyInputs, frozen: Choice | None = None) -> Points:
     """Return the points of a policy that prescribes the supply; the first frozen choice unless one is given."""
     problem = run.problem
     supply = problem.declared_supply[:, 0, :]
@@ -121,20 +136,63 @@ def _fixed(run: SideRun, points: Points, condition: Condition, costly: Condition
     return Optimum(points, points.energy[:, 0], found, nothing, nothing, nothing)
 
 
-def optimum(name: str, run: SideRun, inputs: PolicyInputs, frozen: tuple[float, float] | None = None) -> Optimum:
-    """Return each row's choice under a policy.
-
-    Rows without any permitted point have ``found`` False.
-    """
+def _parts(name: str, run: SideRun, inputs: PolicyInputs) -> tuple[Objective, Condition, Condition | None]:
+    """What a policy makes small, and the cheap and the costly conditions on it."""
     hard: Condition = hard_conditions(run.problem.study) if inputs.enforce_requirements else All()
     costly: Condition | None = (
         FunctionalFloor() if inputs.enforce_requirements and functional_condition(run.problem.study) else None
     )
-    if name in PRESCRIBED:
-        return _fixed(run, prescribed(name, run, inputs, frozen), hard, costly)
     objective: Objective = _energy
     if name == "iso-energy":
         objective = _time
     elif name == "minimum-energy-delay":
         objective = lambda problem, points: points.energy * points.time**inputs.exponent  # noqa: E731
-    return minimise(run, objective, All.of(hard, own_limit(name, inputs)), costly, frozen)
+    return objective, All.of(hard, own_limit(name, inputs)) if name not in PRESCRIBED else hard, costly
+
+
+def optimum(
+    name: str,
+    run: SideRun,
+    inputs: PolicyInputs,
+    frozen: Choice | None = None,
+    *,
+    floor: bool = True,
+) -> Optimum:
+    """Return each row's choice under a policy.
+
+    Rows without any permitted point have ``found`` False. ``floor=False`` leaves the functional floor for
+    ``hold_to_floor``: what is found then is at least as good.
+    """
+    objective, cheap, costly = _parts(name, run, inputs)
+    if not floor:
+        costly = None
+    if name in PRESCRIBED:
+        return _fixed(run, prescribed(name, run, inputs, frozen), cheap, costly)
+    return minimise(run, objective, cheap, costly, frozen)
+
+
+def roughly(name: str, run: SideRun, inputs: PolicyInputs, choice: Choice) -> Optimum:
+    """Return the best supply of the grid alone, without the functional floor; prescribed supplies are exact."""
+    objective, cheap, _ = _parts(name, run, inputs)
+    if name in PRESCRIBED:
+        return _fixed(run, prescribed(name, run, inputs, choice), cheap, None)
+    return on_grid(run, choice, objective, cheap)
+
+
+def hold_to_floor(name: str, run: SideRun, inputs: PolicyInputs, frozen: Choice, without: Optimum) -> Optimum:
+    """Return the choice that meets the functional floor too, from the ``optimum`` found with ``floor=False``."""
+    objective, cheap, costly = _parts(name, run, inputs)
+    if costly is None:
+        return without
+    if name in PRESCRIBED:
+        return _fixed(run, without.points, cheap, costly)
+    return hold_to(run, frozen, objective, cheap, costly, without)
+
+
+def floor_only_raises(name: str, metric: str) -> bool:
+    """Tell whether a metric can only rise when the functional floor is added: it is what the policy makes small."""
+    return name in PRESCRIBED or (name, metric) in (
+        ("iso-delay", "energy-per-operation"),
+        ("minimum-energy", "energy-per-operation"),
+        ("iso-energy", "time-per-operation"),
+    )

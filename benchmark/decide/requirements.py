@@ -17,7 +17,7 @@ from benchmark.evaluate.functional import functional_points
 from benchmark.evaluate.points import Points, cycle_time, cycles_demanded
 from benchmark.evaluate.search import All, Condition, SideRun, take_columns
 from benchmark.evaluate.side import SideProblem
-from benchmark.sets.study import Requirement, Study
+from benchmark.sets.study import Choice, Requirement, Study
 
 __all__ = [
     "FUNCTIONAL",
@@ -57,7 +57,9 @@ def margins_at(problem: SideProblem, points: Points, requirement: Requirement) -
     limit = requirement.limit
     with np.errstate(divide="ignore", invalid="ignore"):
         if requirement.name == "deadline":
-            return np.asarray(deadline(problem, requirement) / points.time)
+            # a clock cycle is the time between operations, which copies share; a stated limit is a latency
+            lasts = points.interval if limit is None else points.time
+            return np.asarray(deadline(problem, requirement) / lasts)
         if limit is None:
             return None
         if requirement.name == "thermal_noise":
@@ -166,7 +168,7 @@ class FunctionalFloor(Condition):
         return worst
 
 
-def functional_margins(run: SideRun) -> dict[tuple[float, float], dict[str, Array]]:
+def functional_margins(run: SideRun) -> dict[Choice, dict[str, Array]]:
     """Evaluate the functional requirements over every grid of a side: frozen choice -> name -> (row, supply)."""
     wanted = _functional(run.problem.study)
     return {choice: functional_at(run.problem, run.grid(choice), wanted) for choice in run.combinations}

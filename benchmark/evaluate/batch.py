@@ -12,9 +12,12 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from benchmark.sets.formulas import evaluate_formula, names_in
 from benchmark.sets.values import Value
 
 __all__ = ["Batch", "resolve"]
+
+Array = NDArray[np.float64]
 
 
 @dataclass(frozen=True)
@@ -72,11 +75,47 @@ class Batch:
         return first[order], rank[place.reshape(-1)]
 
 
-def resolve(owner: str, values: Mapping[str, Value], batch: Batch) -> dict[str, NDArray[np.float64]]:
-    """Return the values of one owner as arrays of shape (row or 1, 1, 1)."""
-    found: dict[str, NDArray[np.float64]] = {}
-    for name, value in values.items():
-        column = batch.columns.get(f"{owner}.{name}")
-        array = value.si[:1] if column is None else column
-        found[name] = np.asarray(array, dtype=np.float64).reshape(-1, 1, 1)
-    return found
+def resolve(
+    owner: str, values: Mapping[str, Value], batch: Batch, outer: Mapping[str, Value] | None = None
+) -> dict[str, Array]:
+    """Return the values of one owner as arrays of shape (row or 1, 1, 1).
+
+    A derived value follows the values its formula names, in the rows in which they are moved and it is not moved
+    itself: it is multiplied by the factor by which its formula moves. ``outer``: values of the study that formulas of
+    an overhead may name.
+    """
+    links = _Links(owner, values, batch, outer or {})
+    return {name: links.array(name) for name in values}
+
+
+class _Links:
+    """Values of one owner with those of the study behind them, and what follows from what."""
+
+    def __init__(self, owner: str, values: Mapping[str, Value], batch: Batch, outer: Mapping[str, Value]) -> None:
+        self.values = {**outer, **values}
+        self.keys = {name: f"{owner if name in values else 'study'}.{name}" for name in self.values}
+        self.batch = batch
+        self._arrays: dict[str, Array] = {}
+
+    def array(self, name: str) -> Array:
+        """The value in every row (row or 1, 1, 1)."""
+        if name not in self._arrays:
+            self._arrays[name] = self._made(name)
+        return self._arrays[name]
+
+    def _made(self, name: str) -> Array:
+        value = self.values[name]
+        column = self.batch.columns.get(self.keys[name])
+        if column is not None:
+            return column.reshape(-1, 1, 1)
+        stated = np.asarray(value.si[:1], dtype=np.float64).reshape(1, 1, 1)
+        used = names_in(value.formula) & self.values.keys() if value.formula else frozenset()
+        moved = {other: self.array(other) for other in sorted(used)}
+        still = {other: self.values[other].si[:1].reshape(1, 1, 1) for other in moved}
+        if all(np.array_equal(moved[other], still[other]) for other in moved):
+            return stated
+        before, after = evaluate_formula(value.formula, still), evaluate_formula(value.formula, moved)
+        if np.any(before == 0.0):
+            return np.asarray(after)
+        # where nothing is moved the factor is 1 to the bit, so the row stays that of the files
+        return np.asarray(stated * (after / before))

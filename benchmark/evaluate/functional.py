@@ -37,10 +37,11 @@ def functional_points(problem: SideProblem, points: Points, fan_in: int) -> Func
     """
     rows, supplies = points.supply.shape
     step = max(1, BLOCK_POINTS // (max(rows, problem.batch.rows) * len(problem.study.temperatures)))
+    shift = problem.device_shift(points.threshold_shift, points.back_bias)
     pieces = []
     for start in range(0, supplies, step):
         part = points.supply[:, start : start + step]
-        pair = problem.switches(part, points.threshold_shift)
+        pair = problem.switches(part, shift if np.ndim(shift) == 0 else np.asarray(shift)[:, start : start + step])
         shape = (rows, len(problem.study.temperatures), part.shape[1])
         if fan_in > min(pair.down.stack_on.shape[-1], pair.up.stack_on.shape[-1]):
             pieces.append([np.full(shape, np.nan)] * 5)

@@ -11,7 +11,18 @@ T is the clock period under period accounting and the path delay under operation
 longer than the clock period (no deadline is required) an operation lasts as long as its path. Nothing that stands goes
 away while the block is idle: E_idle per operation is (P_leakage + P_bias + P_overhead) t_idle / n_active when the
 supply stays on, and ([r (P_leakage + P_bias) + P_overhead] t_idle + k_wake sum(C V^2)) / n_active when it is gated
-with the residual share r. Overheads (pumps, converters, drivers) lie outside the gated supply.
+with the residual share r. Overheads (pumps, converters, drivers) lie outside the gated supply. Gating is chosen at run
+time: a block that may be gated is gated where that costs less.
+
+Parallel copies: n copies take turns, so each may take n times the time between two operations, which is then the path
+delay over n; one operation takes as long as before. Every further copy adds the share k to the dynamic energy of an
+operation (routing, merging) and repeats the share g of the block (g = 1: all of it; less when stages are pipelined)::
+
+    E_dynamic -> E_dynamic (1 + k (n - 1));   P, area, sum(C V^2) -> (1 + g (n - 1)) times
+
+(arithmetic of Chandrakasan, Sheng, Brodersen, JSSC 27 (1992) 473, from memory). The overhead power is repeated in
+whole, the level shifters are not. Not modelled: the delay of merging. Back bias: see ``SideProblem.device_shift``; any
+bias other than 0 adds its stated standing power, also while idle and gated, once per repeated share.
 """
 
 from __future__ import annotations
@@ -27,6 +38,7 @@ from numpy.typing import NDArray
 from benchmark.circuits.operation import OperationMetrics, estimate
 from benchmark.devices.record import SwitchPair
 from benchmark.evaluate.side import SideProblem
+from benchmark.sets.study import Choice
 
 __all__ = ["Points", "design_points", "with_cycle"]
 
@@ -62,6 +74,14 @@ class Points:
     capability: Mapping[str, tuple[Array, str]]  # name -> (value (row, 1), bound)
     efficiency: Array = field(default_factory=lambda: np.ones((1, 1)))
     shifter: Array = field(default_factory=lambda: np.zeros((1, 1)))
+    copies: float = 1.0
+    back_bias: Array = field(default_factory=lambda: np.zeros((1, 1)))  # [V], of the shape of energy
+    gated: Mask = field(default_factory=lambda: np.zeros((1, 1), dtype=bool))  # power-gated while idle
+
+    @property
+    def interval(self) -> Array:
+        """Shortest time between two operations [s]: the path delay shared by the copies."""
+        return np.asarray(self.time / self.copies)
 
     @property
     def able(self) -> Mask:
@@ -83,7 +103,14 @@ def _pick(array: Array, index: NDArray[np.intp]) -> Array:
     return np.take_along_axis(array, index[:, None, :], axis=1)[:, 0, :]
 
 
-def design_points(problem: SideProblem, supply: Array, size: float = 1.0, threshold_shift: float = 0.0) -> Points:
+def design_points(
+    problem: SideProblem,
+    supply: Array,
+    size: float = 1.0,
+    threshold_shift: float = 0.0,
+    copies: float = 1.0,
+    back_bias: float = 0.0,
+) -> Points:
     """Evaluate supplies of shape (row or 1, supply) for every row of the batch.
 
     Parameters
@@ -93,10 +120,16 @@ def design_points(problem: SideProblem, supply: Array, size: float = 1.0, thresh
     size : float
         Units of width (or copies) of every switch.
     threshold_shift : float [V]
+        Frozen in silicon.
+    copies : float [1]
+        Parallel copies.
+    back_bias : float [V]
+        Above 0 it is forward and lowers the threshold.
     """
-    pair = problem.switches(supply, threshold_shift, depth=problem.circuit_depth)
+    shift = problem.device_shift(threshold_shift, back_bias)
+    pair = problem.switches(supply, shift, depth=problem.circuit_depth)
     metrics = estimate(
-        problem.circuit_at(supply, size, threshold_shift),
+        problem.circuit_at(supply, size, shift),
         pair,
         problem.wires,
         problem.study.delay_rule,
@@ -106,12 +139,17 @@ def design_points(problem: SideProblem, supply: Array, size: float = 1.0, thresh
         guard_leakage=problem.study.guard_band_leakage,
         short_circuit=problem.study.short_circuit == "estimated",
     )
-    return _reduce(problem, np.atleast_2d(supply), size, threshold_shift, pair, metrics)
+    return _reduce(problem, np.atleast_2d(supply), Choice(size, threshold_shift, copies, back_bias), pair, metrics)
 
 
-def _reduce(
-    problem: SideProblem, supply: Array, size: float, shift: float, pair: SwitchPair, metrics: OperationMetrics
-) -> Points:
+def _repeated(problem: SideProblem, copies: float, name: str) -> Array:
+    """Return 1 + share (n - 1), (row or 1, 1)."""
+    if copies == 1.0:
+        return np.ones((1, 1))
+    return np.asarray(1.0 + problem.mitigation[name][:, 0, :] * (copies - 1.0))
+
+
+def _reduce(problem: SideProblem, supply: Array, choice: Choice, pair: SwitchPair, metrics: OperationMetrics) -> Points:
     study = problem.study
     delay = _temperatures(problem, metrics.path_delay)
     rows = max(problem.batch.rows, supply.shape[0])
@@ -129,28 +167,35 @@ def _reduce(
     if shifter_delay is not None:
         time_parts["level_shifter"] = np.broadcast_to(shifter_delay[:, 0, :], shape)
     time = np.asarray(sum(time_parts.values()))
-    leakage = at_hot(metrics.leakage_power)
-    bias = at_hot(metrics.bias_power)
-    overhead_power = np.broadcast_to(problem.overhead["overhead_power"][:, 0, :], shape)
+    repeated = _repeated(problem, choice.copies, "repeated_share")
+    leakage = at_hot(metrics.leakage_power) * repeated
+    bias = at_hot(metrics.bias_power) * repeated
+    overhead_power = np.broadcast_to(problem.overhead["overhead_power"][:, 0, :] * choice.copies, shape)
+    if choice.back_bias != 0.0:
+        overhead_power = overhead_power + problem.mitigation["back_bias_power"][:, 0, :] * repeated
     standing = leakage + bias + overhead_power
+    dynamic = {name: at_hot(part) for name, part in metrics.dynamic_energy_parts.items()}
+    if choice.copies != 1.0:
+        extra = _repeated(problem, choice.copies, "routing_overhead") - 1.0
+        dynamic["copies"] = np.asarray(sum(dynamic.values())) * extra
+    full_swing = at_hot(metrics.switched_capacitance) * supply**2 * repeated
+    idle_energy, gated = _idle_energy(problem, leakage + bias, overhead_power, full_swing)
     infeasible = _infeasible(problem, supply, shape, metrics)
     points = Points(
         supply=np.broadcast_to(supply, shape),
-        size=size,
-        threshold_shift=shift,
+        size=choice.size,
+        threshold_shift=choice.threshold_shift,
         time=time,
         time_parts=time_parts,
         slowest_temperature=slowest,
         cycle=time,
         energy=time,
         energy_parts={},
-        dynamic_parts={name: at_hot(part) for name, part in metrics.dynamic_energy_parts.items()},
+        dynamic_parts=dynamic,
         leakage_power=leakage,
         standing_power=standing,
-        idle_energy=_idle_energy(
-            problem, leakage + bias, overhead_power, at_hot(metrics.switched_capacitance) * supply**2
-        ),
-        area=at_hot(metrics.area),
+        idle_energy=idle_energy,
+        area=at_hot(metrics.area) * repeated,
         power_density=time,
         noise_ratio=np.broadcast_to(_temperatures(problem, metrics.half_swing_over_noise).min(axis=1), shape),
         hysteresis=_hysteresis(problem, pair, shape),
@@ -163,6 +208,9 @@ def _reduce(
         capability=_capabilities(problem, pair, rows),
         efficiency=problem.overhead["supply_efficiency"][:, 0, :],
         shifter=problem.overhead["level_shifter_energy"][:, 0, :],
+        copies=choice.copies,
+        back_bias=np.full(shape, choice.back_bias),
+        gated=gated,
     )
     return with_cycle(problem, points, cycle_time(problem))
 
@@ -177,8 +225,8 @@ def cycle_time(problem: SideProblem) -> Array | None:
 def with_cycle(problem: SideProblem, points: Points, period: Array | None) -> Points:
     """Return the points with their energy at another clock period [s] (None: self-timed)."""
     accounting = problem.study.leakage_accounting
-    lasts = points.time if period is None else np.maximum(period, points.time)
-    cycle = points.time if accounting == "operation" else lasts
+    lasts = points.interval if period is None else np.maximum(period, points.interval)
+    cycle = points.interval if accounting == "operation" else lasts
     standing = points.standing_power * cycle
     parts: dict[str, Array] = dict(points.dynamic_parts)
     parts["leakage"] = points.leakage_power * cycle
@@ -195,17 +243,24 @@ def with_cycle(problem: SideProblem, points: Points, period: Array | None) -> Po
     )
 
 
-def _idle_energy(problem: SideProblem, block: Array, outside: Array, full_swing_energy: Array) -> Array:
-    """Energy of one idle period per operation [J]: standing power of the block and of what lies outside its supply."""
+def _idle_energy(problem: SideProblem, block: Array, outside: Array, full_swing_energy: Array) -> tuple[Array, Mask]:
+    """Energy of one idle period per operation [J], and where the block is gated for it.
+
+    ``block``, ``outside``: standing power of the block and of what lies outside its supply.
+    """
+    never = np.zeros(block.shape, dtype=bool)
     if problem.study.idle == "none":
-        return np.zeros(block.shape)
+        return np.zeros(block.shape), never
     idle = problem.scenario["idle_time"][:, 0, :]
     active = problem.scenario["active_cycles"][:, 0, :]
-    if problem.study.idle == "ungated":
-        return np.asarray((block + outside) * idle / active)
+    stays_on = np.asarray((block + outside) * idle / active)
+    if problem.study.idle == "ungated" or not problem.side.may_gate:
+        return stays_on, never
     residual = problem.gating["residual_leakage"][:, 0, :]
     wake = problem.gating["wake_energy_cycles"][:, 0, :] * full_swing_energy
-    return np.asarray(((residual * block + outside) * idle + wake) / active)
+    asleep = np.asarray(((residual * block + outside) * idle + wake) / active)
+    gated = ~(stays_on <= asleep)
+    return np.where(gated, asleep, stays_on), gated
 
 
 def _infeasible(

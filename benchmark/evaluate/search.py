@@ -21,9 +21,22 @@ from numpy.typing import NDArray
 
 from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.side import SideProblem, build_side
-from benchmark.sets.study import NodePair
+from benchmark.sets.study import Choice, NodePair
 
-__all__ = ["All", "Condition", "Objective", "Optimum", "SideRun", "minimise", "supply_grid", "take_columns"]
+__all__ = [
+    "All",
+    "Condition",
+    "Objective",
+    "Optimum",
+    "SideRun",
+    "hold_to",
+    "minimise",
+    "on_grid",
+    "put_rows",
+    "supply_grid",
+    "take_columns",
+    "take_rows",
+]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -96,15 +109,14 @@ class SideRun:
     def __init__(self, problem: SideProblem, pair: NodePair) -> None:
         self.problem = problem
         self.pair = pair
-        self._grids: dict[tuple[float, float], Points] = {}
+        self._grids: dict[Choice, Points] = {}
 
     @property
-    def combinations(self) -> list[tuple[float, float]]:
-        """Frozen choices: (size, threshold shift)."""
-        side = self.problem.side
-        return [(size, shift) for size in side.sizes for shift in side.threshold_shifts]
+    def combinations(self) -> list[Choice]:
+        """Everything that may be chosen besides the supply."""
+        return self.problem.side.choices
 
-    def grid(self, combination: tuple[float, float]) -> Points:
+    def grid(self, combination: Choice) -> Points:
         """Design points over the supply grid."""
         if combination not in self._grids:
             self._grids[combination] = design_points(self.problem, supply_grid(self.problem), *combination)
@@ -115,10 +127,13 @@ class SideRun:
         return design_points(self.problem, self.problem.declared_supply[:, 0, :], *self.combinations[0])
 
     def subset(self, rows: NDArray[np.intp]) -> SideRun:
-        """The same side for some rows only."""
+        """The same side for some rows only; what is known of them is kept."""
         problem = self.problem
         smaller = build_side(problem.study, problem.side, problem.role, self.pair, problem.batch.take(rows))
-        return SideRun(smaller, self.pair)
+        made = SideRun(smaller, self.pair)
+        if problem.batch.rows > 1:
+            made._grids = {choice: _points_of(points, rows) for choice, points in self._grids.items()}
+        return made
 
 
 def supply_grid(problem: SideProblem) -> Array:
@@ -148,6 +163,35 @@ def _take(points: Points, column: NDArray[np.intp]) -> Points:
 
     changes = {item.name: pick(getattr(points, item.name)) for item in fields(points)}
     return dataclasses.replace(points, **changes)
+
+
+def take_rows(optimum: Optimum, rows: NDArray[np.intp]) -> Optimum:
+    """Return some rows of an optimum."""
+    return Optimum(
+        _points_of(optimum.points, rows), *(getattr(optimum, item.name)[rows] for item in fields(optimum)[1:])
+    )
+
+
+def _points_of(points: Points, rows: NDArray[np.intp]) -> Points:
+    """Return some rows of design points."""
+    size = points.energy.shape[0]
+
+    def pick(value: Any) -> Any:
+        if isinstance(value, np.ndarray):
+            return value[rows] if value.ndim and value.shape[0] == size else value
+        if isinstance(value, Mapping):
+            return {key: pick(item) for key, item in value.items()}
+        return tuple(pick(item) for item in value) if isinstance(value, tuple) else value
+
+    return dataclasses.replace(points, **{item.name: pick(getattr(points, item.name)) for item in fields(points)})
+
+
+def on_grid(run: SideRun, choice: Choice, objective: Objective, cheap: Condition) -> Optimum:
+    """Return the best supply of the grid, not refined; rows without a permitted one have ``found`` False."""
+    grid = run.grid(choice)
+    column, value = _best(objective(run.problem, grid), grid.able & cheap(run, grid, grid.able))
+    nowhere = np.zeros(value.shape, dtype=bool)
+    return Optimum(_take(grid, column), value, np.isfinite(value), nowhere, nowhere, nowhere)
 
 
 def take_columns(points: Points, columns: NDArray[np.intp]) -> Points:
@@ -221,7 +265,7 @@ def _best_on_grid(
 
 def _search(
     run: SideRun,
-    combination: tuple[float, float],
+    combination: Choice,
     objective: Objective,
     cheap: Condition,
     costly: Condition | None = None,
@@ -271,7 +315,7 @@ def _search(
     return Optimum(best, value, found, at_lower, at_upper, found & at_limit & ~at_lower & ~at_upper)
 
 
-def _feasible(run: SideRun, combination: tuple[float, float], condition: Condition, wanted: Mask) -> Optimum:
+def _feasible(run: SideRun, combination: Choice, condition: Condition, wanted: Mask) -> Optimum:
     """Look between the points of the grid for a permitted supply, where the grid has none.
 
     The smallest margin of all conditions is made as large as it goes, by the same zooming: a window of permitted
@@ -314,7 +358,7 @@ def minimise(
     objective: Objective,
     cheap: Condition,
     costly: Condition | None = None,
-    frozen: tuple[float, float] | None = None,
+    frozen: Choice | None = None,
 ) -> Optimum:
     """Return the best feasible point of every row.
 
@@ -325,20 +369,46 @@ def minimise(
         (problem, points) -> array (row, supply) to be made small.
     cheap, costly : callable
         Conditions; ``costly`` is asked about as few points as possible.
-    frozen : (size, threshold shift), optional
-        Frozen choice to keep; by default the one that is best for row 0.
+    frozen : Choice, optional
+        Choice whose frozen parts are kept; by default those that are best for row 0. What may be chosen at run time is
+        chosen row by row.
     """
-    combinations = run.combinations if frozen is None else [frozen]
-    candidates = [_with_costly(run, combination, objective, cheap, costly) for combination in combinations]
-    values = [optimum.value[0] for optimum in candidates]
-    return candidates[int(np.argmin(values))]
+    combinations = [choice for choice in run.combinations if frozen is None or choice.frozen == frozen.frozen]
+    candidates: dict[tuple[float, ...], Optimum] = {}
+    for combination in combinations:
+        found = _with_costly(run, combination, objective, cheap, costly)
+        key = combination.frozen
+        candidates[key] = _better_of(candidates[key], found) if key in candidates else found
+    return min(candidates.values(), key=lambda optimum: float(optimum.value[0]))
+
+
+def _better_of(first: Optimum, second: Optimum) -> Optimum:
+    """Take the better of two run-time choices, row by row."""
+    use = second.value < first.value
+    chosen = [
+        np.where(use, getattr(second, name), getattr(first, name))
+        for name in ("value", "found", "at_lower", "at_upper", "at_limit")
+    ]
+    return Optimum(_merge(first.points, second.points, use), *chosen)
 
 
 def _with_costly(
-    run: SideRun, combination: tuple[float, float], objective: Objective, cheap: Condition, costly: Condition | None
+    run: SideRun, combination: Choice, objective: Objective, cheap: Condition, costly: Condition | None
 ) -> Optimum:
     optimum = _search(run, combination, objective, cheap)
-    if costly is None or not optimum.found.any():
+    return optimum if costly is None else hold_to(run, combination, objective, cheap, costly, optimum)
+
+
+def hold_to(
+    run: SideRun,
+    combination: Choice,
+    objective: Objective,
+    cheap: Condition,
+    costly: Condition,
+    optimum: Optimum,
+) -> Optimum:
+    """Return the optimum of the points that meet a costly condition too, from the optimum without it."""
+    if not optimum.found.any():
         return optimum
     allowed = costly(run, optimum.points, optimum.found[:, None])[:, 0] | ~optimum.found
     if allowed.all():
@@ -346,10 +416,10 @@ def _with_costly(
     rows = np.flatnonzero(~allowed)
     smaller = run.subset(rows)
     again = _search(smaller, combination, objective, cheap, costly)
-    return _put_rows(optimum, again, rows)
+    return put_rows(optimum, again, rows)
 
 
-def _put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
+def put_rows(whole: Optimum, part: Optimum, rows: NDArray[np.intp]) -> Optimum:
     """Write the rows of a subset back."""
     size = whole.value.shape[0]
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import dataclasses
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any, Literal
 
 import numpy as np
@@ -48,6 +48,7 @@ class SideProblem:
     overhead: Mapping[str, Array]
     gating: Mapping[str, Array]
     declared_supply: Array
+    mitigation: Mapping[str, Array] = field(default_factory=dict)
 
     @property
     def size_as(self) -> Literal["width", "copies"]:
@@ -67,20 +68,31 @@ class SideProblem:
     def switches(
         self,
         supply: Array,
-        threshold_shift: float,
+        threshold_shift: float | Array,
         temperatures: tuple[float, ...] | None = None,
         depth: int | None = None,
     ) -> SwitchPair:
         """Switch records at supplies of shape (row or 1, supply), at all temperatures of the study unless given.
 
+        ``threshold_shift`` [V]: of the device, back bias included; one number, or an array (row or 1, 1 or supply).
         ``depth``: longest series stack wanted; that of circuit and functional requirements unless given.
         """
         temperature = np.asarray(self.study.temperatures if temperatures is None else temperatures)[None, :, None]
         stack = np.asarray(self.stack_depth if depth is None else depth)
-        knobs = {"threshold_shift": np.full((1, 1, 1), threshold_shift), "stack_depth": stack}
+        knobs = {"threshold_shift": np.atleast_2d(threshold_shift)[:, None, :], "stack_depth": stack}
         return self.device.switch(self.prepared, np.atleast_2d(supply)[:, None, :], temperature, knobs)
 
-    def circuit_at(self, supply: Array, size: float, threshold_shift: float) -> Circuit:
+    def device_shift(self, threshold_shift: float, back_bias: float | Array) -> float | Array:
+        """Threshold shift of the device [V]: the frozen one, less body factor times back bias.
+
+        Linear in the bias, the same for both polarities (common practice for back gates, no source). Without a back
+        bias it is the frozen shift itself; a bias (row, supply) gives a shift of that shape.
+        """
+        if not np.any(back_bias):
+            return threshold_shift
+        return np.asarray(threshold_shift - self.mitigation["body_factor"][:, 0, :] * back_bias)
+
+    def circuit_at(self, supply: Array, size: float, threshold_shift: float | Array) -> Circuit:
         """The circuit at supplies of shape (row or 1, supply): as built, or fitted to the technology there.
 
         A fitted circuit is one design for all temperatures, made at the highest.
@@ -110,6 +122,7 @@ def values_by_key(study: Study, pair: NodePair) -> dict[str, Value]:
         found |= {f"{side.technology.id}.{name}": value for name, value in sorted(side.technology.at(node).items())}
         found |= {f"{owner}.overhead.{name}": value for name, value in sorted(side.overhead.items())}
         found |= {f"{owner}.gating.{name}": value for name, value in sorted(side.gating.items())}
+        found |= {f"{owner}.mitigation.{name}": value for name, value in sorted(side.mitigation.items())}
     return found
 
 
@@ -129,6 +142,7 @@ def keys_of(pair: NodePair, side: Side, role: str) -> Callable[[str], bool]:
         f"{side.technology.id}.",
         f"{owner}.overhead.",
         f"{owner}.gating.",
+        f"{owner}.mitigation.",
     )
     return lambda key: key.startswith(prefixes)
 
@@ -163,9 +177,10 @@ def build_side(study: Study, side: Side, role: str, pair: NodePair, batch: Batch
         build_circuit(study, scenario, batch, side),
         wires,
         scenario,
-        resolve(f"{owner}.overhead", side.overhead, batch),
-        resolve(f"{owner}.gating", side.gating, batch),
+        resolve(f"{owner}.overhead", side.overhead, batch, study.values),
+        resolve(f"{owner}.gating", side.gating, batch, study.values),
         declared,
+        resolve(f"{owner}.mitigation", side.mitigation, batch, study.values),
     )
 
 

@@ -87,6 +87,7 @@ def ledger_rows(study: Study, moves: Sequence[InputMove], sources: Mapping[str, 
         owner = owner_of_overhead(side, role)
         rows += [_row(f"{owner}.overhead", value, [], by_key, sources) for value in side.overhead.values()]
         rows += [_row(f"{owner}.gating", value, [], by_key, sources) for value in side.gating.values()]
+        rows += [_row(f"{owner}.mitigation", value, [], by_key, sources) for value in side.mitigation.values()]
     for item in (*study.wires_sets, *technologies(study)):
         rows += set_rows(item, sources, by_key)
     return rows

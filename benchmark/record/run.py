@@ -313,7 +313,7 @@ def _used_sources(study: Study) -> set[str]:
     used: set[str] = set()
     for side in (study.candidate, *study.contenders):
         item = side.technology
-        values += [*item.values.values(), *side.overhead.values(), *side.gating.values()]
+        values += [*item.values.values(), *side.overhead.values(), *side.gating.values(), *side.mitigation.values()]
         used |= {table.source for table in item.tables.values()} | {anchor.source for anchor in item.anchors}
         used |= {source for _, source in item.rows_rest_on}
     if study.circuit_spec is not None:

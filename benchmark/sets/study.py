@@ -6,12 +6,13 @@ import dataclasses
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import NamedTuple
 
 from benchmark.sets.circuit_file import CircuitSpec
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.values import Value
 
-__all__ = ["REQUIREMENTS", "NodePair", "Policy", "Requirement", "Side", "Study"]
+__all__ = ["REQUIREMENTS", "Choice", "NodePair", "Policy", "Requirement", "Side", "Study"]
 
 #: requirement -> (unit of its limit, what it demands)
 REQUIREMENTS: dict[str, tuple[str, str]] = {
@@ -30,12 +31,31 @@ REQUIREMENTS: dict[str, tuple[str, str]] = {
 }
 
 
+class Choice(NamedTuple):
+    """Everything chosen for a side but its supply: size [1], threshold shift [V], parallel copies, back bias [V].
+
+    Size, threshold shift and copies are frozen in silicon: one for all rows of a batch. The back bias may be chosen at
+    run time, row by row.
+    """
+
+    size: float
+    threshold_shift: float
+    copies: float = 1.0
+    back_bias: float = 0.0
+
+    @property
+    def frozen(self) -> tuple[float, float, float]:
+        """What is frozen in silicon."""
+        return self.size, self.threshold_shift, self.copies
+
+
 @dataclass(frozen=True)
 class Side:
     """One side of the comparison: a technology, what may be chosen for it, and its overheads.
 
     ``circuit``: the circuit it has of its own under the topology own-best (``circuit_spec``: when that is a file);
-    empty: the study's.
+    empty: the study's. ``mitigation``: what its copies and back biases cost. ``may_gate``: False keeps the supply on
+    while idle although the study allows power gating (a rung of the ladder, never a study).
     """
 
     id: str
@@ -47,6 +67,21 @@ class Side:
     gating: Mapping[str, Value]
     circuit: str = ""
     circuit_spec: CircuitSpec | None = None
+    copies: tuple[float, ...] = (1.0,)
+    back_biases: tuple[float, ...] = (0.0,)
+    mitigation: Mapping[str, Value] = field(default_factory=dict)
+    may_gate: bool = True
+
+    @property
+    def choices(self) -> list[Choice]:
+        """Every choice, in the order of the study."""
+        return [
+            Choice(size, shift, copies, bias)
+            for size in self.sizes
+            for shift in self.threshold_shifts
+            for copies in self.copies
+            for bias in self.back_biases
+        ]
 
 
 @dataclass(frozen=True)

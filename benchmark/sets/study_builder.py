@@ -16,12 +16,12 @@ from benchmark.sets.schema import Measure, validate_values
 from benchmark.sets.study import NodePair, Side, Study
 from benchmark.sets.study_circuits import CircuitDeclaration, study_circuits
 from benchmark.sets.study_policy import check_declared_supplies, read_policy, read_requirements
-from benchmark.sets.study_schema import FrozenKnob, SideTable, StudyFile
+from benchmark.sets.study_schema import BackBiasKnob, FrozenKnob, KnobsTable, SideTable, StudyFile
 from benchmark.sets.study_schema import NodePair as NodePairTable
 from benchmark.sets.values import Place, Value, convert_measure, convert_value
 from benchmark.units import UnitError, parse_unit, to_si
 
-__all__ = ["GATING", "LENGTHS", "OPTIONAL_OVERHEADS", "OVERHEADS", "CircuitDeclaration", "build_study"]
+__all__ = ["GATING", "LENGTHS", "MITIGATION", "OPTIONAL_OVERHEADS", "OVERHEADS", "CircuitDeclaration", "build_study"]
 
 #: values of a side's ledger of overheads, and of its power gating
 OVERHEADS = ("level_shifter_energy", "supply_efficiency", "overhead_power")
@@ -31,6 +31,11 @@ TRANSIENT_POINTS = 9
 #: two ways to state a net length, of which a study takes one
 LENGTHS = ("average_net_length", "average_net_pitches")
 GATING = ("residual_leakage", "wake_energy_cycles")
+#: knob -> values that a side with it states
+MITIGATION = {
+    "copies": ("routing_overhead", "repeated_share"),
+    "back_bias": ("body_factor", "back_bias_power"),
+}
 
 
 class _Builder:
@@ -122,7 +127,9 @@ class _Builder:
 
     # -- sides ----------------------------------------------------------------------------------------------
 
-    def frozen(self, knob: FrozenKnob | None, unit_like: str, dotted: str, neutral: float) -> tuple[float, ...]:
+    def frozen(
+        self, knob: FrozenKnob | BackBiasKnob | None, unit_like: str, dotted: str, neutral: float
+    ) -> tuple[float, ...]:
         if knob is None:
             return (neutral,)
         found = []
@@ -151,6 +158,7 @@ class _Builder:
         overhead = self.ledger(table.overhead, (*OVERHEADS,), OPTIONAL_OVERHEADS, f"{dotted}.overhead")
         gated = self.parsed.workload.idle == "gated"
         gating = self.ledger(table.gating, GATING if gated else (), (), f"{dotted}.gating")
+        copies, biases, mitigation = self.mitigations(table, dotted)
         if technology is None or low is None or high is None:
             return None
         if technology.kind != "technology":
@@ -159,9 +167,37 @@ class _Builder:
         knobs = getattr(self.library.declarations(technology.model), "knobs", ())
         if table.knobs.threshold_shift is not None and "threshold_shift" not in knobs and any(shifts):
             self.refuse(f"{dotted}.knobs.threshold_shift", f"has no effect with the model {technology.model}")
+        if table.knobs.back_bias is not None and "threshold_shift" not in knobs:
+            self.refuse(f"{dotted}.knobs.back_bias", f"has no effect with the model {technology.model}")
         circuit = self.circuits.own.get(dotted, "")
         spec = self.circuits.specs.get(circuit)
-        return Side(table.id or technology.id, technology, (low, high), sizes, shifts, overhead, gating, circuit, spec)
+        return Side(
+            table.id or technology.id,
+            technology,
+            (low, high),
+            sizes,
+            shifts,
+            overhead,
+            gating,
+            circuit,
+            spec,
+            copies,
+            biases,
+            mitigation,
+        )
+
+    def mitigations(
+        self, table: SideTable, dotted: str
+    ) -> tuple[tuple[float, ...], tuple[float, ...], dict[str, Value]]:
+        """Read parallel copies and back bias with what they cost; neutral without their knobs."""
+        knobs: KnobsTable = table.knobs
+        copies = self.frozen(knobs.copies, "1", f"{dotted}.knobs.copies", 1.0)
+        if any(number < 1.0 or number != round(number) for number in copies):
+            found = ", ".join(f"{number:g}" for number in copies)
+            self.refuse(f"{dotted}.knobs.copies", "must be whole numbers from 1", found, "such as 1, 2, 4")
+        biases = self.frozen(knobs.back_bias, "V", f"{dotted}.knobs.back_bias", 0.0)
+        must = [name for knob, names in MITIGATION.items() if getattr(knobs, knob) is not None for name in names]
+        return copies, biases, self.ledger(table.mitigation, must, (), f"{dotted}.mitigation")
 
     def ledger(
         self, tables: Mapping[str, Any], must: Sequence[str], may: Sequence[str], dotted: str
@@ -465,7 +501,9 @@ def _check_invented(
     groups: list[list[Value]] = [list(values.values()), *(list(item.values.values()) for item in wires)]
     groups += [list(layer.values()) for layer in circuit.layers.values()] if circuit is not None else []
     for side in [*contenders, *([candidate] if candidate else [])]:
-        groups += [list(table.values()) for table in (side.technology.values, side.overhead, side.gating)]
+        groups += [
+            list(table.values()) for table in (side.technology.values, side.overhead, side.gating, side.mitigation)
+        ]
         for table in side.technology.tables.values():
             if table.evidence == "invented" and not build.parsed.demonstration:
                 build.refuse("demonstration", "must be true: a table of an input set is invented", table.file)

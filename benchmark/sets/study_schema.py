@@ -56,7 +56,8 @@ class WorkloadTable(FileModel):
     )
     idle: Literal["none", "ungated", "gated"] = Field(
         default="none",
-        description="What the block does between its tasks; ungated and gated need idle_time and active_cycles",
+        description="What the block does between its tasks; ungated and gated need idle_time and active_cycles; "
+        "gated: power-gated where that costs less",
     )
 
 
@@ -111,6 +112,16 @@ class FrozenKnob(FileModel):
     scope: Literal["frozen"] = Field(default="frozen", description="Frozen in silicon")
 
 
+class BackBiasKnob(FileModel):
+    """Back biases to choose from."""
+
+    values: list[Number] = Field(
+        min_length=1, max_length=16, description="The biases, in the unit; above 0 is forward and lowers the threshold"
+    )
+    unit: UnitText
+    scope: Literal["run-time"] = Field(default="run-time", description="The bias may be chosen at run time")
+
+
 class KnobsTable(FileModel):
     """What may be chosen for one side."""
 
@@ -118,6 +129,14 @@ class KnobsTable(FileModel):
     size: FrozenKnob | None = Field(default=None, description="Sizes to choose from: units of width, or copies")
     threshold_shift: FrozenKnob | None = Field(
         default=None, description="Threshold shifts to choose from [V]; for models that honour it"
+    )
+    copies: FrozenKnob | None = Field(
+        default=None,
+        description="Numbers of parallel copies to choose from; n copies may take n times the required time each, "
+        "where operations do not depend on each other",
+    )
+    back_bias: BackBiasKnob | None = Field(
+        default=None, description="Back biases to choose from [V]; for models that honour a threshold shift"
     )
 
 
@@ -136,6 +155,10 @@ class SideTable(FileModel):
         description="What this side needs around its logic: a ledger, so a zero is an entry"
     )
     gating: dict[str, ValueTable] = Field(default={}, description="Power gating, with workload.idle = gated")
+    mitigation: dict[str, ValueTable] = Field(
+        default={},
+        description="What parallel copies cost, what a back bias does and costs; with the knobs copies, back_bias",
+    )
 
 
 class WiresAt(FileModel):

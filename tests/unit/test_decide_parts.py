@@ -17,7 +17,7 @@ from benchmark.decide.requirements import HardLimits, functional_margins, hard_c
 from benchmark.decide.self_checks import self_checks
 from benchmark.evaluate.anchors import fan_out_4
 from benchmark.evaluate.points import design_points
-from benchmark.sets.study import Requirement
+from benchmark.sets.study import Choice, Requirement
 from tests.comparisons import compare, comparison, given, load, planar, pressed, record, side, steep, study
 from tests.near import near
 from tests.studies import mixed, v
@@ -81,8 +81,8 @@ def test_functional_margins_are_those_of_the_gates():
         steep("a"), 0.2, 0.6, points=3, requirements={"noise_margin": table, "voltage_gain": gain},
         temperatures=(0.0, 80.0),
     )  # fmt: skip
-    found = functional_margins(run)[1.0, 0.0]
-    supply = run.grid((1.0, 0.0)).supply
+    found = functional_margins(run)[Choice(1.0, 0.0)]
+    supply = run.grid(Choice(1.0, 0.0)).supply
     pair = run.problem.switches(supply, 0.0)
     assert found["noise_margin"][0] == near(functional(pair, 2).noise_margin.min(axis=1)[0] / 0.1, rel=1e-12)
     assert found["voltage_gain"][0] == near(functional(pair, 1).gain.min(axis=1)[0] / 2.0, rel=1e-12)
@@ -200,7 +200,7 @@ def test_swept_points_carry_every_reason():
         points=5,
         requirements={"deadline": {"limit": {"value": D("0.35"), "unit": "ns"}, "kind": "hard"}},
     )
-    curve = swept(run, (1.0, 0.0), {})
+    curve = swept(run, Choice(1.0, 0.0), {})
     assert curve.points.supply[0][[0, -1]] == near(np.array([0.1, 0.5]), rel=1e-12)
     assert curve.reasons[0] == ("requirement deadline",)
     assert curve.reasons[-1] == ("hard limits of the device",)

@@ -14,6 +14,7 @@ from benchmark.decide.requirements import FunctionalFloor, functional_condition,
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import design_points
 from benchmark.evaluate.search import All, supply_grid
+from benchmark.sets.study import Choice
 from tests.comparisons import compare, comparison, given, load, moved, planar, pressed, side, steep, study
 from tests.near import near
 from tests.studies import v
@@ -317,8 +318,8 @@ def test_part_of_a_batch_gives_its_rows():
     run = comparison(loaded, Batch.one_at_a_time(moves)).candidate
     some = run.subset(np.array([3, 1]))
     assert list(some.problem.batch.origin) == [3, 1]
-    whole = run.grid((1.0, 0.0))
-    part = some.grid((1.0, 0.0))
+    whole = run.grid(Choice(1.0, 0.0))
+    part = some.grid(Choice(1.0, 0.0))
     assert np.array_equal(part.energy, whole.energy[[3, 1]])
     assert np.array_equal(part.time, whole.time[[3, 1]])
     again = some.subset(np.array([1]))
