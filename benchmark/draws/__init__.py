@@ -1,0 +1,1 @@
+"""Layer 3: random draws of uncertain values, keyed by name."""
