@@ -20,7 +20,7 @@ from benchmark.physics import drive
 from benchmark.physics import virtual_source as vs
 from benchmark.physics.calibration import Targets, calibrate
 
-__all__ = ["Capacitance", "Curves", "fit"]
+__all__ = ["UNITS", "Capacitance", "Curves", "fit", "transistor"]
 
 Array = NDArray[np.float64]
 #: values of a set by name, in SI
@@ -54,6 +54,13 @@ _BY_POLARITY = (
     ("channel_mobility", 0.015, 0.002, 0.200, 0.005),
 )
 _SHARED = (("fermi_width", 3.0, 1.0, 5.0, 0.5), ("access_resistance", 100e-6, 1e-6, 400e-6, 30e-6))
+#: factor from SI and unit as written; others are plain numbers
+UNITS = {
+    "subthreshold_swing": (1e3, "mV/decade"),
+    "drain_barrier_lowering": (1e3, "mV/V"),
+    "channel_mobility": (1e4, "cm^2/V/s"),
+    "access_resistance": (1e6, "ohm um"),
+}
 _NAMES = (
     *(name for name, *_ in _BY_POLARITY),
     *(f"{name}_p" for name, *_ in _BY_POLARITY),
@@ -62,9 +69,10 @@ _NAMES = (
 _TABLE = np.array([row[1:] for row in (*_BY_POLARITY, *_BY_POLARITY, *_SHARED)])
 
 
-def _transistor(
+def transistor(
     values: Mapping[str, float], polarity: str, known: Curves, length: float, kelvin: float, c: Capacitance
 ) -> vs.Transistor:
+    """Return the transistor per mean width, threshold and velocity solved at the declared supply."""
     suffix = "" if polarity == "n" else "_p"
     template = vs.Transistor(
         width=1.0,
@@ -118,7 +126,7 @@ def fit(
     def misfit(x: Array) -> Array:
         values = dict(zip(_NAMES, x.tolist(), strict=True))
         c = capacitance(values)
-        parts = [_misfit(_transistor(values, p, curves[p], length, kelvin, c), curves[p]) for p in ("n", "p")]
+        parts = [_misfit(transistor(values, p, curves[p], length, kelvin, c), curves[p]) for p in ("n", "p")]
         # currents that no velocity can carry are nan: far off, so that the search turns back
         return np.nan_to_num(np.concatenate(parts), nan=3.0)
 

@@ -22,7 +22,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from tests.open_cards import card
-from tests.open_cards.fit import Capacitance, Curves, fit
+from tests.open_cards.fit import UNITS, Capacitance, Curves, fit
 from tests.open_cards.set_text import AnchorLine, Line, set_text
 
 __all__ = ["EDGES", "PLACE", "ROOT", "SET", "SUPPLIES", "capacitance", "curves", "main", "measured_chain", "text"]
@@ -115,10 +115,8 @@ def _lines(measured: Capacitance) -> dict[str, Line]:
         ),
     }
     note = f"least squares of on-, off- and effective current, 0.3 to 1.0 V, both polarities; rms {spread * 100:.2g} %"
-    scales = {"subthreshold_swing": (1e3, "mV/decade"), "drain_barrier_lowering": (1e3, "mV/V")}
-    scales |= {"channel_mobility": (1e4, "cm^2/V/s"), "access_resistance": (1e6, "ohm um")}
     for name, value in values.items():
-        factor, unit = scales.get(name.removesuffix("_p"), (1.0, "1"))
+        factor, unit = UNITS.get(name.removesuffix("_p"), (1.0, "1"))
         lines[name] = Line(value * factor, unit, "extracted", card_source, "currents of the cards", note=note)
     # A/m is uA/um
     return lines

@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import csv
+from collections.abc import Iterable
 from dataclasses import dataclass
 from pathlib import Path
 
-__all__ = ["DATA", "Row", "read_csv"]
+__all__ = ["DATA", "Row", "failures", "read_csv"]
 
 DATA = Path(__file__).parent.parent / "data"
 
@@ -44,3 +45,15 @@ def read_csv(name: str) -> list[dict[str, str]]:
     """Rows of a stored table."""
     with (DATA / name).open(newline="", encoding="utf-8") as stream:
         return list(csv.DictReader(stream))
+
+
+def failures(rows: Iterable[Row]) -> list[str]:
+    """What does not hold, in words; no rows at all is a failure too."""
+    listed = list(rows)
+    if not listed:
+        return ["no rows"]
+    return [
+        f"{row.quantity}: {row.obtained:.5g}, expected {row.expected:.5g}, {row.difference:+.2%} of {row.tolerance:.2%}"
+        for row in listed
+        if not row.holds
+    ]

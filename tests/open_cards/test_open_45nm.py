@@ -9,15 +9,9 @@ import pytest
 from tests.near import near
 from tests.open_cards import card, open_45nm
 from tests.open_cards.freepdk45 import PLACE, text
-from tests.open_cards.row import Row
+from tests.open_cards.row import failures
 
 pytestmark = pytest.mark.spice
-
-
-def _hold(rows: list[Row]) -> None:
-    assert rows
-    wrong = [f"{row.quantity}: {row.obtained:.5g}, expected {row.expected:.5g}" for row in rows if not row.holds]
-    assert not wrong, "\n".join(wrong)
 
 
 def test_the_cards_run_on_the_stated_model():
@@ -25,7 +19,7 @@ def test_the_cards_run_on_the_stated_model():
 
 
 def test_decks_repeat_the_stored_series():
-    _hold(open_45nm.deck_rows())
+    assert not failures(open_45nm.deck_rows())
 
 
 def test_stored_set_is_what_extraction_gives():
@@ -41,23 +35,23 @@ def test_stored_set_is_what_extraction_gives():
 
 
 def test_currents_are_met():
-    _hold(open_45nm.current_rows())
+    assert not failures(open_45nm.current_rows())
 
 
 def test_delay_and_energy_are_predicted():
     """0.3 to 1.0 V: delay within 5 %, energy within 10 %; measured -4.0 to +2.3 % and -7.6 to -0.4 %."""
-    _hold(open_45nm.prediction_rows())
+    assert not failures(open_45nm.prediction_rows())
 
 
 @pytest.mark.parametrize("supply", open_45nm.APART)
 def test_where_the_differences_come_from(supply: float):
-    _hold(open_45nm.apart(supply))
+    assert not failures(open_45nm.apart(supply))
 
 
 def test_other_readings_of_the_edge_capacitance(tmp_path):
     """The reading matters: the mean over the drain's swing misses 10 % at 0.4 V, a reading below threshold does not."""
     rows = open_45nm.edge_rows(tmp_path)
-    _hold(rows)
+    assert not failures(rows)
     weak = [row for row in rows if "swing below" in row.note]
     assert all(abs(row.difference) < 0.10 for row in weak)
     assert any(abs(row.difference) > 0.20 for row in rows if row not in weak)
