@@ -22,7 +22,7 @@ from benchmark.evaluate.search import Optimum, SideRun
 from benchmark.evaluate.side import build_side, keys_of
 from benchmark.sets.study import Choice, NodePair, Side, Study
 
-__all__ = ["Comparison", "Outcome", "SideOutcome", "choice_of"]
+__all__ = ["Comparison", "Outcome", "SideOutcome", "choice_of", "ratio"]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -68,7 +68,7 @@ class Outcome:
         contender = self.contenders[position]
         if not (contender.found[0] and self.candidate.found[0]):
             return float("nan")
-        return float(_ratio(contender.metric[:1], self.candidate.metric[:1])[0])
+        return float(ratio(contender.metric[:1], self.candidate.metric[:1])[0])
 
 
 class Comparison:
@@ -173,7 +173,7 @@ class Comparison:
         lowest = costs[strongest, np.arange(self.batch.rows)]
         defined = np.isfinite(lowest) & candidate.found
         advantage = np.full(self.batch.rows, np.nan)
-        advantage[defined] = _ratio(lowest[defined], candidate.metric[defined])
+        advantage[defined] = ratio(lowest[defined], candidate.metric[defined])
         return Outcome(
             policy,
             candidate,
@@ -208,7 +208,7 @@ def costs_of(contenders: Sequence[SideOutcome]) -> Array:
     return np.stack([np.where(side.found & ~np.isnan(side.metric), side.metric, np.inf) for side in contenders])
 
 
-def _ratio(reference: Array, candidate: Array) -> Array:
+def ratio(reference: Array, candidate: Array) -> Array:
     """Reference over candidate; nothing against nothing is a tie, something against nothing is infinite."""
     with np.errstate(divide="ignore", invalid="ignore"):
         ratio = reference / candidate
