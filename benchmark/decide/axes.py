@@ -3,9 +3,10 @@
 An axis is any value of any set or of the study by its ledger key, or one of
 
 required_time    the required time of the policy, where it is one number
+deadline         time per operation: the clock period of a clocked study, else the required time
 temperature      the highest temperature of the study
 on_off_ratio     current of the closed over current of the open switch, by moving the open state alone
-idle_share       share of the time in which the block is idle, by moving the idle time
+awake_share      share of the time in which the block is clocked, by moving the idle time
 
 The plausible range is the spread the file states (the open side of a bound), else the usual range of the catalogue,
 which catches slips of units and is no evidence; an answer says which of them it rests on.
@@ -30,10 +31,11 @@ from benchmark.sets.study import Study
 from benchmark.sets.values import Value
 from benchmark.units import from_si, parse_unit, to_si
 
-__all__ = ["Axis", "deviations", "find_axis", "known_axes", "usual_axes"]
+__all__ = ["DEADLINE", "Axis", "deviations", "find_axis", "known_axes", "usual_axes"]
 
 Array = NDArray[np.float64]
 Placing = Callable[[float, Mapping[str, float]], dict[str, float]]
+DEADLINE = "deadline"
 STATED, OPEN_SIDE, USUAL, ASKED = "stated range", "open side of a bound", "usual range of the catalogue", "as asked for"
 #: a range whose ends lie further apart than this factor is scanned on a logarithmic scale
 LOGARITHMIC = 4.0
@@ -224,7 +226,7 @@ def _on_off(trials: Trials) -> Axis | None:
     return Axis("on_off_ratio", meaning, "1", "positive", best, low, max(ends[1], best), source.origin, place)
 
 
-def _idle_share(trials: Trials) -> Axis | None:
+def _awake_share(trials: Trials) -> Axis | None:
     needed = ("study.idle_time", "study.active_cycles", "study.clock_frequency")
     if not all(key in trials.best_values for key in needed):
         return None
@@ -234,12 +236,26 @@ def _idle_share(trials: Trials) -> Axis | None:
         return active / clock
 
     def place(share: float, other: Mapping[str, float]) -> dict[str, float]:
-        return {"study.idle_time": awake(other) * share / (1.0 - share)}
+        return {"study.idle_time": awake(other) * (1.0 - share) / share}
 
     idle = trials.best_values["study.idle_time"]
-    best = idle / (idle + awake({}))
-    meaning = "share of the time in which the block is idle, moving the idle time"
-    return Axis("idle_share", meaning, "1", "fraction", best, min(best, 0.01), max(best, 1.0 - 1e-5), USUAL, place)
+    best = awake({}) / (idle + awake({}))
+    meaning = "share of the time in which the block is clocked, moving the idle time"
+    return Axis("awake_share", meaning, "1", "share", best, min(best, 1e-6), 1.0, USUAL, place)
+
+
+def _deadline(trials: Trials, required: Axis | None) -> Axis | None:
+    clock = "study.clock_frequency"
+    if trials.study.timing != "clocked" or clock not in trials.values:
+        return None if required is None else dataclasses.replace(required, name=DEADLINE)
+    source = _from_value(clock, trials.values[clock])
+
+    def place(x: float, other: Mapping[str, float]) -> dict[str, float]:
+        return {clock: 1.0 / x}
+
+    meaning = "time per operation, moving the clock frequency"
+    best, low, high = 1.0 / source.best, 1.0 / source.high, 1.0 / source.low
+    return Axis(DEADLINE, meaning, "ns", "positive", best, low, high, source.origin, place)
 
 
 def _special(trials: Trials) -> dict[str, Axis]:
@@ -270,7 +286,7 @@ def _special(trials: Trials) -> dict[str, Axis]:
         found[TEMPERATURE] = Axis(
             TEMPERATURE, meaning, "degC", "any", hottest, low, high, origin, _as_it_is(TEMPERATURE)
         )
-    for axis in (_on_off(trials), _idle_share(trials)):
+    for axis in (_on_off(trials), _awake_share(trials), _deadline(trials, found.get(REQUIRED_TIME))):
         if axis is not None:
             found[axis.name] = axis
     return found
@@ -314,7 +330,7 @@ def usual_axes(trials: Trials) -> list[Axis]:
     """Return the axes asked about when none is named: workload, wires, timing, supplies, temperature, on/off ratio."""
     known = known_axes(trials)
     keys: Iterable[str] = [f"study.{name}" for name in _USUAL]
-    keys = [*keys, "idle_share", REQUIRED_TIME, TEMPERATURE, "on_off_ratio"]
+    keys = [*keys, "awake_share", REQUIRED_TIME, TEMPERATURE, "on_off_ratio"]
     keys += [
         f"{problem.side.technology.id}.declared_supply"
         for problem in trials.problems.values()

@@ -7,13 +7,18 @@ import math
 from pathlib import Path
 from typing import Any
 
+import numpy as np
 import pytest
 
 from benchmark.decide.axes import find_axis, known_axes
 from benchmark.decide.break_even import Need, find_needs
 from benchmark.decide.need_words import need_rows, need_text
+from benchmark.decide.opportunity import map_rows, opportunity_map
 from benchmark.decide.profile import Line, label_changes
+from benchmark.decide.specification import sheet_rows, specification
+from benchmark.decide.trade import trade_curve, trade_rows
 from benchmark.decide.trials import Trials
+from benchmark.errors import UsageError
 from benchmark.record.load import load_study
 from tests.near import near
 from tests.studies import hub
@@ -64,8 +69,8 @@ def test_idle_break_even_against_the_sleep_switch(tmp_path):
     assert by_hand == near(1.915, rel=1e-4)
     assert not need.crossings[0].above_below  # the candidate is better above
     # the same as a share of the time: 10 ms awake
-    (share,) = needs_of(trials, "idle_share", 1.0)
-    assert share.crossings[0].x == near(by_hand / (by_hand + 0.01), rel=1e-12)
+    (share,) = needs_of(trials, "awake_share", 1.0)
+    assert share.crossings[0].x == near(0.01 / (by_hand + 0.01), rel=1e-12)
 
 
 def test_against_a_perfect_sleep_switch_there_is_none(tmp_path):
@@ -151,6 +156,96 @@ def test_an_advantage_of_1_5_is_unreachable():
     assert need.reach.limit == "wire"
     text = need_text(need)
     assert "unreachable: even at the ideal limit (towards 0) the advantage is 1.315, limited by wire" in text
+
+
+# -- trade curve, specification sheet, map ---------------------------------------------------------------------------
+
+
+def test_coefficient_against_supply_is_a_hyperbola_cut_at_the_field_limit():
+    trials = hand_trials("stress-hand", metric="time-per-operation")
+    first = find_axis(trials, COEFFICIENT).over(100e-12, 1000e-12)
+    second = find_axis(trials, SUPPLY).over(0.05, 1.0)
+    curve = trade_curve(trials, first, second, level_of(trials, 25e-12), 9)
+    today, *rows = trade_rows(curve)
+    assert (today["answer"], today["first_value"], today["second_value"]) == ("today", near(300.0), near(0.25))
+    on_curve = [row for row in rows if row["answer"] == "root"]
+    assert len(on_curve) == 7
+    for row in on_curve:
+        assert row["first_value"] * row["second_value"] == near(72.02, rel=1e-4)
+        assert row["second_value"] < 0.4002
+        assert row["at_or_above_level"] == "above"
+    # below 180 pm/V the supply would have to lie above the field limit: 6.67 MV/m over 60 nm
+    cut = [row for row in rows if row["answer"] == "never"]
+    assert [row["first_value"] < 180.0 for row in cut] == [True] * 3
+    for row in cut:
+        assert row["second_high"] == near(0.4002, rel=1e-8)
+        assert "above 0.4002 V" in row["cut_by"]
+        assert "device_limits" in row["cut_by"]
+
+
+def test_a_trade_needs_two_different_values():
+    trials = hand_trials("stress-hand")
+    axis = find_axis(trials, COEFFICIENT)
+    with pytest.raises(UsageError, match="two different values"):
+        trade_curve(trials, axis, axis, 2.0)
+
+
+def test_values_of_the_sheet_put_back_give_the_required_advantage():
+    trials = hand_trials("stress-hand")
+    sheet = specification(trials, 2.0)
+    assert sheet.advantage > 2.0
+    rows = {row["name"].rpartition(".")[2]: row for row in sheet_rows(sheet)}
+    assert rows["actuator_coefficient"]["bound"] == "at least"
+    assert rows["input_capacitance"]["bound"] == "at most"
+    assert rows["stack_sound_speed"]["reachable"] == "met over the whole range"
+    solved = 0
+    for need in sheet.needs:
+        for crossing in need.crossings:
+            put_back = trials([need.axis.place(crossing.x, {})]).advantage[0]
+            assert put_back == near(2.0, rel=1e-9)
+            solved += 1
+    assert solved >= 6
+
+
+def test_the_sheet_of_the_word_line_says_what_is_out_of_reach():
+    rows = {row["name"]: row for row in sheet_rows(specification(hand_trials("word-line"), 1.5))}
+    assert rows[RESISTANCE]["reachable"] == "no"
+    assert "1.315" in rows[RESISTANCE]["words"]
+    assert "hand-line-new.endurance_cycles" not in rows  # moves a requirement, not the advantage
+
+
+def test_the_map_passes_through_the_exact_break_evens(tmp_path):
+    trials = hub_trials(tmp_path)
+    found = opportunity_map(trials, "activity", (1.0, 2.0), 7)
+    assert found.advantage.shape == (len(found.values), len(found.deadlines))
+    for level in (1.0, 2.0):
+        points = found.boundary[level]
+        assert len(points) >= 6
+        for deadline, activity in points:  # low-leakage: 0.49 a + 0.7 pW x T against 2 a
+            assert activity == near(0.7e3 * deadline / (2.0 * level - 0.49), rel=1e-9)
+    assert [activity for deadline, activity in found.boundary[1.0] if deadline == 1e-5] == near([0.004636], rel=1e-4)
+    # the relay needs 2 us; every other point has a number
+    for k, i in np.ndindex(*found.advantage.shape):
+        missed = found.deadlines[i] < 2e-6
+        assert np.isnan(found.advantage[k, i]) == missed
+        assert found.states[k][i] == ("the candidate has no permitted point" if missed else "")
+    rows = map_rows(found)
+    assert {row["kind"] for row in rows} == {"today", "point", "boundary", "class"}
+    boxes = {row["product_class"]: row for row in rows if row["kind"] == "class"}
+    assert boxes["always-on hub"]["deadline_to_s"] == near(1.0 / 32e3)
+    assert boxes["always-on hub"]["state"] == "common practice, no source"
+
+
+def test_the_map_over_duty_passes_through_the_idle_break_even(tmp_path):
+    trials = hub_trials(tmp_path, activity="0.05", idle="gated", contenders=("low-leakage",))
+    found = opportunity_map(trials, "duty", (1.0,), 5)
+    idle = (100.0 - 24.5 - 7.0 - 1.47) / 0.035 * 1e-3
+    at_study = [share for deadline, share in found.boundary[1.0] if deadline == 1e-5]
+    assert at_study == near([0.01 / (0.01 + idle)], rel=1e-9)
+    with pytest.raises(UsageError, match="idle scheme"):
+        opportunity_map(hub_trials(tmp_path / "none"), "duty")
+    with pytest.raises(UsageError, match="clocked study"):
+        opportunity_map(hand_trials("stress-hand", required_time=""), "activity")
 
 
 # -- property 60: put a value back; property 61: stricter level, stricter value -------------------------------------

@@ -1,0 +1,193 @@
+"""Opportunity map: where the candidate would be worth it, over the deadline and the activity or the duty (layer 7).
+
+At every point both sides are optimised anew and the advantage is taken against the strongest contender there. The
+boundary of a level consists of exact crossings: along the second axis at every deadline, and along the deadline at
+every value of the second axis. Boxes of product classes are usual figures, common practice, no source.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any, Literal
+
+import numpy as np
+from numpy.typing import NDArray
+
+from benchmark.catalogue.product_boxes import PRODUCT_BOXES
+from benchmark.decide.axes import DEADLINE, Axis, find_axis, known_axes
+from benchmark.decide.profile import Line, profiles
+from benchmark.decide.trials import Trials
+from benchmark.errors import UsageError
+
+__all__ = ["MAP_COLUMNS", "ClassBox", "OpportunityMap", "map_rows", "opportunity_map"]
+
+Array = NDArray[np.float64]
+#: columns of the rows, in order
+MAP_COLUMNS = (
+    "kind",
+    "deadline_s",
+    "with",
+    "value",
+    "advantage",
+    "level",
+    "strongest",
+    "meets_requirements",
+    "state",
+    "product_class",
+    "deadline_to_s",
+    "value_to",
+)
+#: what the second axis of a map is called -> name of the axis
+SECOND = {"activity": "activity", "duty": "awake_share"}
+
+
+@dataclass(frozen=True)
+class ClassBox:
+    """Usual place of a product class on a map: deadlines [s] and values of the second axis, low and high."""
+
+    name: str
+    deadline: tuple[float, float]
+    value: tuple[float, float]
+    origin: str
+
+
+@dataclass(frozen=True)
+class OpportunityMap:
+    """Advantages over (value of the second axis, deadline); nan where ``states`` says who has no permitted point.
+
+    ``boundary``: level -> (deadline, value) of every crossing found. ``today``: deadline, value and advantage of the
+    study itself.
+    """
+
+    deadline: Axis
+    second: Axis
+    deadlines: tuple[float, ...]
+    values: tuple[float, ...]
+    advantage: Array
+    strongest: tuple[tuple[str, ...], ...]
+    meets: NDArray[np.bool_]
+    states: tuple[tuple[str, ...], ...]
+    boundary: dict[float, tuple[tuple[float, float], ...]]
+    boxes: tuple[ClassBox, ...]
+    today: tuple[float, float, float]
+
+
+def opportunity_map(
+    trials: Trials, kind: Literal["activity", "duty"], levels: tuple[float, ...] = (), count: int = 13
+) -> OpportunityMap:
+    """Evaluate the map.
+
+    Parameters
+    ----------
+    trials : Trials
+    kind : "activity" or "duty"
+        Second axis: rising transitions per cycle, or the share of the time in which the block is clocked.
+    levels : tuple of float
+        Levels of the boundary; by default 1 and the required advantage.
+    count : int
+        Values of each axis.
+
+    Raises
+    ------
+    UsageError
+        When the study has no deadline to move, or no such second axis.
+    """
+    known = known_axes(trials)
+    if DEADLINE not in known:
+        message = "a map needs a clocked study, or a required time that is one number"
+        raise UsageError(message)
+    if SECOND[kind] not in known and f"study.{SECOND[kind]}" not in known:
+        wanted = "an idle scheme with idle_time, active_cycles and a clock" if kind == "duty" else "activity"
+        message = f"a map over {kind} needs a study that states {wanted}"
+        raise UsageError(message)
+    deadline, second = known[DEADLINE], find_axis(trials, SECOND[kind])
+    wanted_levels = levels or tuple(dict.fromkeys((1.0, trials.study.required_advantage)))
+    across, along = deadline.grid(count), second.grid(count)
+    up = profiles(trials, [Line(second, {deadline: float(x)}) for x in across], wanted_levels, count, name_edges=False)
+    over = profiles(trials, [Line(deadline, {second: float(y)}) for y in along], wanted_levels, count, name_edges=False)
+    answers = trials([Line(deadline, {second: float(y)}).trial(float(x)) for y in along for x in across])
+    size = (len(along), len(across))
+    names = [answers.names[position] if position >= 0 else "" for position in answers.strongest]
+    states = [answers.state(row) for row in range(len(names))]
+    boundary = {
+        level: tuple(
+            sorted(
+                [
+                    (float(x), crossing.x)
+                    for x, profile in zip(across, up, strict=True)
+                    for crossing in profile.crossings_of(level)
+                    if crossing.kind == "root"
+                ]
+                + [
+                    (crossing.x, float(y))
+                    for y, profile in zip(along, over, strict=True)
+                    for crossing in profile.crossings_of(level)
+                    if crossing.kind == "root"
+                ]
+            )
+        )
+        for level in wanted_levels
+    }
+    return OpportunityMap(
+        deadline,
+        second,
+        tuple(map(float, across)),
+        tuple(map(float, along)),
+        answers.advantage.reshape(size),
+        _rows(names, size[1]),
+        answers.meets.reshape(size),
+        _rows(states, size[1]),
+        boundary,
+        _boxes(kind),
+        (deadline.best, second.best, float(trials.best.advantage[0])),
+    )
+
+
+def _rows(texts: list[str], width: int) -> tuple[tuple[str, ...], ...]:
+    return tuple(tuple(texts[start : start + width]) for start in range(0, len(texts), width))
+
+
+def _boxes(kind: str) -> tuple[ClassBox, ...]:
+    found = []
+    for name, box in PRODUCT_BOXES.items():
+        value = box.activity if kind == "activity" else box.duty
+        found.append(ClassBox(name, box.cycle, value, box.origin))
+    return tuple(found)
+
+
+def map_rows(found: OpportunityMap) -> list[dict[str, Any]]:
+    """Return rows ready for drawing: kind "today", "point", "boundary" or "class"."""
+
+    def row(kind: str, deadline: float, value: float, **more: Any) -> dict[str, Any]:
+        blank = dict.fromkeys(MAP_COLUMNS, "")
+        return blank | {"kind": kind, "deadline_s": deadline, "with": found.second.name, "value": value} | more
+
+    rows = [row("today", found.today[0], found.today[1], advantage=found.today[2])]
+    for k, y in enumerate(found.values):
+        rows += [
+            row(
+                "point",
+                x,
+                y,
+                advantage=float(found.advantage[k, i]),
+                strongest=found.strongest[k][i],
+                meets_requirements="yes" if found.meets[k, i] else "no",
+                state=found.states[k][i],
+            )
+            for i, x in enumerate(found.deadlines)
+        ]
+    for level, points in found.boundary.items():
+        rows += [row("boundary", x, y, advantage=level, level=level) for x, y in points]
+    for box in found.boxes:
+        rows.append(
+            row(
+                "class",
+                box.deadline[0],
+                box.value[0],
+                product_class=box.name,
+                deadline_to_s=box.deadline[1],
+                value_to=box.value[1],
+                state=box.origin,
+            )
+        )
+    return rows

@@ -1,0 +1,148 @@
+"""Specification sheet: what the decisive values of the candidate must be for the required advantage (layer 7).
+
+Each value alone, the rest at the best estimate. A value is decisive when moving it over its range changes on which side
+of the required advantage the answer lies, or when it has no range and moves the advantage.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from benchmark.decide.axes import Axis, known_axes
+from benchmark.decide.break_even import NO_EFFECT, Need, find_needs
+from benchmark.decide.moves import range_of
+from benchmark.decide.need_words import need_text, range_text
+from benchmark.decide.trials import Trials
+from benchmark.errors import UsageError
+
+__all__ = ["SHEET_COLUMNS", "Sheet", "sheet_rows", "specification"]
+
+#: relative step by which a value without range is moved to see whether anything rests on it
+PROBE = 0.01
+SHEET_COLUMNS = (
+    "name",
+    "unit",
+    "today",
+    "evidence",
+    "required",
+    "bound",
+    "factor",
+    "reachable",
+    "advantage_with_it",
+    "range",
+    "words",
+)
+
+
+@dataclass(frozen=True)
+class Sheet:
+    """``needs``: one per decisive value, at the required advantage; ``advantage``: today's."""
+
+    level: float
+    advantage: float
+    needs: tuple[Need, ...]
+
+
+def specification(trials: Trials, level: float, count: int = 17) -> Sheet:
+    """Return the required value of every decisive value of the candidate.
+
+    Parameters
+    ----------
+    trials : Trials
+    level : float
+        Required advantage.
+    count : int
+        Grid points per value.
+
+    Raises
+    ------
+    UsageError
+        When the best estimate has no advantage, so that nothing can be called decisive.
+    """
+    today = float(trials.best.advantage[0])
+    if np.isnan(today):
+        message = f"no specification sheet: {trials.best.state(0)} at the best estimate ({trials.why({})})"
+        raise UsageError(message)
+    axes = _decisive(trials, level)
+    needs = find_needs(trials.study, trials.pair, axes, [level], trials=trials, count=count)
+    return Sheet(level, today, tuple(need for need in needs if need.kind != "no effect"))
+
+
+def _decisive(trials: Trials, level: float) -> list[Axis]:
+    """Return the decisive values that belong to the candidate alone; see the module docstring."""
+    candidate = trials.study.candidate.technology.id
+    own = (
+        ("candidate.",)
+        if candidate in {s.technology.id for s in trials.study.contenders}
+        else (
+            "candidate.",
+            f"{candidate}.",
+        )
+    )
+    axes = [axis for name, axis in known_axes(trials).items() if name.startswith(own) and axis.value is not None]
+    ends = [_ends(axis) for axis in axes]
+    answers = trials([{}, *(axis.place(x, {}) for axis, pair in zip(axes, ends, strict=True) for x in pair)])
+    today, moved = answers.advantage[0], answers.advantage[1:].reshape(-1, 2)
+    found = []
+    for axis, pair in zip(axes, moved, strict=True):
+        ranged = axis.value is not None and range_of(axis.value) is not None
+        # what makes the candidate lose its last permitted point is on the other side too
+        crosses = bool(np.any((pair >= level) != (today >= level)))
+        changes = bool(np.any(~(np.abs(pair / today - 1.0) <= NO_EFFECT)))
+        if crosses if ranged else changes:
+            found.append(axis)
+    return found
+
+
+def _ends(axis: Axis) -> tuple[float, float]:
+    """Return the ends of a stated range; without one, the best estimate moved a little both ways inside its domain."""
+    if axis.value is not None and (stated := range_of(axis.value)) is not None:
+        return stated
+    if axis.domain == "count":
+        return max(axis.best - 1.0, 1.0), axis.best + 1.0
+    above = 1.0 if axis.domain in ("fraction", "share") else 1.0 + PROBE
+    # a value of 0 is moved to where its usual range starts
+    return (axis.best * (1.0 - PROBE), axis.best * above) if axis.best != 0.0 else (0.0, axis.smallest)
+
+
+def _reachable(need: Need) -> str:
+    if need.kind == "crossings":
+        return "yes, inside the range" if all(crossing.kind == "root" for crossing in need.crossings) else "only a jump"
+    return {
+        "beyond": "only beyond the range",
+        "unreachable": "no",
+        "never": "no",
+        "always": "met over the whole range",
+        "no effect": "does not matter over the range",
+        "undefined": "cannot be judged",
+    }[need.kind]
+
+
+def sheet_rows(sheet: Sheet) -> list[dict[str, Any]]:
+    """Return one row per required value, and one where there is none."""
+    rows = []
+    for need in sheet.needs:
+        axis = need.axis
+        listed: Sequence[Any] = need.crossings or (None,)
+        for crossing in listed:
+            x = float("nan") if crossing is None else crossing.x
+            rows.append(
+                {
+                    "name": axis.name,
+                    "unit": axis.unit,
+                    "today": axis.shown(axis.best),
+                    "evidence": "" if axis.value is None else axis.value.evidence,
+                    "required": axis.shown(x),
+                    "bound": "" if crossing is None else ("at most" if crossing.above_below else "at least"),
+                    "factor": x / axis.best if axis.best > 0.0 and axis.unit != "degC" else float("nan"),
+                    "reachable": _reachable(need),
+                    "advantage_with_it": float("nan") if crossing is None else crossing.advantage,
+                    "range": range_text(axis),
+                    "words": need_text(need),
+                }
+            )
+    return rows
