@@ -20,7 +20,7 @@ __all__ = ["LARGEST_BLOCK", "LEAST_BLOCKS", "Plan", "net", "plan_of"]
 
 Array = NDArray[np.float64]
 #: draws of a block at most: memory does not grow with the number of draws
-LARGEST_BLOCK = 4096
+LARGEST_BLOCK = 1024
 #: independent scrambles that an error is taken from, at least
 LEAST_BLOCKS = 8
 #: bits of a coordinate of a net
