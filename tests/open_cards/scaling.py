@@ -1,9 +1,9 @@
 """Published scaling factors against supply: A. Stillmaker and B. Baas, Integration 58 (2017) 74.
 
 Delay factor: cubic in the supply, energy factor: square, by node. Only ratios at one node are used (the units of the
-factors were not seen), from the supply ``base`` down to three quarters of it: the cubics turn up at high supplies (45 nm
-above 0.95 V, 32 nm above 0.85 V) and are no longer a transistor's near threshold. The coefficients are a restatement;
-the authors' erratum page prints two energy factors and their ratio, which the restated coefficients must give.
+factors were not seen), from the supply ``base`` down to three quarters of it: the cubics turn up at high supplies
+(45 nm above 0.95 V, 32 nm above 0.85 V) and are no longer a transistor's near threshold. The coefficients are a
+restatement; the authors' erratum page prints two energy factors and their ratio, which the restated ones must give.
 """
 
 from __future__ import annotations
