@@ -11,6 +11,7 @@ import re
 from dataclasses import dataclass, field
 from xml.etree import ElementTree
 
+from benchmark.report.pdf_order import in_one_order
 from benchmark.report.style import FONT, INK
 from benchmark.report.svg import cleaned
 from benchmark.report.words import flat_powers, visible
@@ -83,13 +84,17 @@ def printed(svg: str, key: str, width_mm: float, title: str, alternative: str) -
 
 
 def to_pdf(svg: str) -> bytes:
-    """Return a drawing made by ``Sheet.svg`` as a PDF page of its own size: words stay words, fonts are embedded."""
+    """Return a drawing made by ``Sheet.svg`` as a PDF page of its own size: words stay words, fonts are embedded.
+
+    The same drawing gives the same bytes.
+    """
     import vl_convert
 
     def points(match: re.Match[str]) -> str:  # the library counts a pixel as one point
         return f'{match[1]}="{float(match[2]) * POINTS_PER_MM:.4f}"'
 
-    return bytes(vl_convert.svg_to_pdf(re.sub(r'\b(width|height)="([\d.]+)mm"', points, svg, count=2)))
+    sized = re.sub(r'\b(width|height)="([\d.]+)mm"', points, svg, count=2)
+    return in_one_order(bytes(vl_convert.svg_to_pdf(sized)))
 
 
 def to_bitmap(svg: str, dots_per_inch: float = 300.0) -> bytes:

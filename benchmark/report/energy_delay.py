@@ -194,7 +194,7 @@ def _caption(plane: Plane) -> str:
     else:
         words.append("No contender has a feasible point, so there is no reference line.")
     if plane.marks:
-        words.append("Larger symbols are the design points of the policies, one shape per policy.")
+        words.append("Larger symbols are the design points of the policies, one shape per policy on either side.")
         stand = [word for word in ("today", "target", "limit") if any(m["ambition"] == word for m in plane.marks)]
         looks = {
             "today": "filled: today's",

@@ -15,6 +15,8 @@ from benchmark.report.words import amount, policy_name, volts
 
 __all__ = ["layers", "policy_groups", "supplies_of"]
 
+#: width [pixel] below which there is no room to name a shape twice
+NARROW = 330.0
 FAILING_DASH = [1.5, 3.5]
 #: the reference is a band: a pale line on a darker, broader one
 ENVELOPE = ({"color": "#8a8a8a", "strokeWidth": 9.5}, {"color": "#dedede", "strokeWidth": 6.5})
@@ -97,6 +99,15 @@ def policy_groups(plane: Plane) -> list[tuple[Row, list[str]]]:
     return groups
 
 
+def _named_groups(plane: Plane) -> list[tuple[Row, list[str]]]:
+    """Return the groups to be named; on a narrow plane a symbol of the reference like the candidate's is not."""
+    groups = policy_groups(plane)
+    if plane.x.size >= NARROW:
+        return groups
+    mine = [names for mark, names in groups if mark["role"] == "candidate"]
+    return [(mark, names) for mark, names in groups if mark["role"] == "candidate" or names not in mine]
+
+
 def _obstacles(plane: Plane, supplies: Mapping[str, Sequence[Row]]) -> Placer:
     placer = Placer(Box(3.0, 3.0, plane.x.size - 3.0, plane.y.size - 3.0))
     for rows in plane.curves.values():
@@ -148,9 +159,10 @@ def _labels(
     if plane.envelope:
         spots = _spots(plane, plane.envelope, (0.2, 0.4, 0.6, 0.8))
         put(["reference: lower envelope", "of the feasible contenders"], spots, "#4d4d4d", bold=True)
-    for mark, names in policy_groups(plane):
+    columns = 34 if plane.x.size >= NARROW else 20
+    for mark, names in _named_groups(plane):
         stands = "" if mark["ambition"] == "today" else f" ({mark['ambition']})"
-        put(wrapped(", ".join(policy_name(name) for name in names) + stands, 34), [plane.pixel(mark)], INK)
+        put(wrapped(", ".join(policy_name(name) for name in names) + stands, columns), [plane.pixel(mark)], INK)
     for key in order:
         for row in supplies[key]:
             put([volts(row["supply_V"])], [plane.pixel(row)], styles[key].ink, distances=(6.0, 9.0, 12.0), most=20.0)

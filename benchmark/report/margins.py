@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from collections.abc import Mapping, Sequence
 from typing import Any
@@ -16,8 +17,8 @@ from benchmark.report.words import amount, is_number, listed, number, requiremen
 __all__ = ["decades", "margin_words", "requirement_margins"]
 
 Record = Mapping[str, Any]
-WIDTH, LEFT, RIGHT = 330.0, 170.0, 210.0
-ROW, BAR, TOP = 34.0, 16.0, 6.0
+WIDTH, LEFT, RIGHT = 316.0, 150.0, 240.0
+LINE, BAR, TOP = 13.0, 16.0, 6.0
 #: bars are drawn at most this far; what lies beyond says so in words
 MOST = 4.0
 FAIL, PASS = "#D55E00", "#0072B2"
@@ -52,9 +53,14 @@ def _order(row: Row) -> tuple[float, str]:
     return (-1e-9 if place is None or row["state"] == "unknown" else min(place, 1e6), row["name"])
 
 
-def _offer(row: Row, room: float) -> str:
+def _beside(row: Row, room: float) -> list[tuple[str, bool]]:
+    """Return the lines written beside a bar, and whether each is bold: state and margin, what is offered, demanded."""
+    bold = row["state"] != "pass"
     offered, demanded = (amount(row[name], row["unit"], 2) for name in ("offered", "demanded"))
-    return fitted(f"offered {offered}, demanded {demanded}", room + 30.0)[0]
+    offer = [f"offered {offered}, demanded {demanded}"]
+    if text_width(offer[0]) > room:
+        offer = [fitted(f"offered {offered}", room)[0], fitted(f"demanded {demanded}", room)[0]]
+    return [(line, bold) for line in fitted(margin_words(row), room, 2, bold=bold)] + [(line, False) for line in offer]
 
 
 def _name(row: Row) -> str:
@@ -73,6 +79,11 @@ def _axis(rows: Sequence[Row], width: float) -> LinearAxis:
     if len(ticks) < 3:
         halves = [(math.log10(2.0), "×2"), (-math.log10(2.0), "÷2"), (math.log10(5.0), "×5"), (-math.log10(5.0), "÷5")]
         ticks = sorted([*ticks, *(tick for tick in halves if low <= tick[0] <= high)])
+    apart = width / (high - low) * min((b[0] - a[0] for a, b in itertools.pairwise(ticks)), default=high - low)
+    stride = math.ceil(34.0 / apart)
+    if stride > 1:  # the limit stays
+        zero = next((position for position, tick in enumerate(ticks) if tick[0] == 0.0), 0)
+        ticks = [tick for position, tick in enumerate(ticks) if (position - zero) % stride == 0]
     return LinearAxis(low, high, width, "margin (factor beyond the limit, log scale)", tuple(ticks))
 
 
@@ -119,32 +130,28 @@ def requirement_margins(record: Record, width: float = WIDTH, left: float = LEFT
         return Chart(key, title, None, "Not drawn: the study states no requirement.", "No requirement.")
     rows.sort(key=_order)
     axis = _axis(rows, width)
-    height = ROW * len(rows) + 8.0
+    beside = [_beside(row, right - 14.0) for row in rows]
+    pitches = [LINE * len(lines) + 8.0 for lines in beside]
+    height = sum(pitches) + 8.0
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
     zero = axis.pixel(0.0)
     canvas.rules([(zero, 0.0, zero, height)], color=INK, strokeWidth=1.6)
     spots = Spots(left, TOP)
     for position, row in enumerate(rows):
-        middle = 4.0 + ROW * (position + 0.5)
+        pitch = pitches[position]
+        middle = 4.0 + sum(pitches[:position]) + 0.5 * pitch
         _bar(canvas, axis, row, middle)
-        spots.bar(Box(0.0, middle - 0.5 * ROW, width, middle + 0.5 * ROW), position, _name(row))
-        state = fitted(margin_words(row), right - 14.0, bold=True)[0]
-        canvas.words(
-            [
-                Words(
-                    fitted(requirement_name(row["name"]), left - 14.0, bold=True)[0],
-                    -10.0,
-                    middle,
-                    "right",
-                    bold=row["state"] != "pass",
-                ),
-                Words(state, width + 10.0, middle - 6.5, bold=row["state"] != "pass"),
-                Words(_offer(row, right), width + 10.0, middle + 6.5),
-            ]
-        )
-    longest = max(text_width(_offer(row, right)) for row in rows)
-    right = max(right, longest + 14.0)
+        spots.bar(Box(0.0, middle - 0.5 * pitch, width, middle + 0.5 * pitch), position, _name(row))
+        name = fitted(requirement_name(row["name"]), left - 14.0, 2, bold=True)
+        texts = [
+            (line, -10.0, "right", k - 0.5 * (len(name) - 1), row["state"] != "pass") for k, line in enumerate(name)
+        ]
+        lines = beside[position]
+        texts += [
+            (line, width + 10.0, "left", k - 0.5 * (len(lines) - 1), bold) for k, (line, bold) in enumerate(lines)
+        ]
+        canvas.words([Words(text, x, middle + LINE * k, align, bold=bold) for text, x, align, k, bold in texts])
     drawing = checked(spec(canvas.layers, width, height, (left, TOP, right, 48.0)))
     words = _summary(rows)
     points = tuple(

@@ -17,13 +17,25 @@ from benchmark.report.charts import charts
 from benchmark.report.compose import printed, to_bitmap, to_pdf
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart, to_svg
+from benchmark.report.margins import requirement_margins
 from benchmark.report.one_page import one_page
 from benchmark.report.page import digest_of
 from benchmark.report.parts import where_it_goes
+from benchmark.report.ribbons import limits_along_supply
+from benchmark.report.steps import node_steps
 from benchmark.report.swings import input_swings
 from benchmark.report.words import visible
 
-__all__ = ["COLUMN_MM", "FULL_MM", "MOST_WORDS", "Published", "figures_for_print", "short_caption", "write_figures"]
+__all__ = [
+    "COLUMN",
+    "COLUMN_MM",
+    "FULL_MM",
+    "MOST_WORDS",
+    "Published",
+    "figures_for_print",
+    "short_caption",
+    "write_figures",
+]
 
 Record = Mapping[str, Any]
 COLUMN_MM, FULL_MM = 88.0, 180.0
@@ -59,11 +71,14 @@ def short_caption(text: str, digest: str) -> str:
 def _column(record: Record) -> list[Chart]:
     """Return the charts drawn anew for one column."""
     return [
+        requirement_margins(record, COLUMN - 250.0, 100.0, 150.0),
         energy_delay(record, COLUMN - 86.0, 330.0),
+        limits_along_supply(record, COLUMN - 86.0),
         advantage_against_time(record, COLUMN - 76.0, 260.0),
         *where_it_goes(record, COLUMN - 112.0, 100.0),
         input_swings(record, COLUMN - 164.0, 144.0, 20.0, 8),
         advantage_by_node(record, COLUMN - 76.0),
+        *node_steps(record, COLUMN - 170.0, 150.0),
     ]
 
 

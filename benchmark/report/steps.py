@@ -37,10 +37,11 @@ def _axis(rows: list[Row], width: float) -> LinearAxis:
     low = min([0.0, *(row["ln_factor"] for row in rows)]) - 0.35 * reach
     high = max([0.0, *(row["ln_factor"] for row in rows)]) + 0.35 * reach
     near = (0.001, 0.01, 0.1, 0.2, 0.5, 0.7, 0.8, 0.9, 0.95, 1, 1.05, 1.1, 1.2, 1.5, 2, 5, 10, 100, 1000)
+    apart = max(0.1, 36.0 / width) * (high - low)
     ticks: list[tuple[float, str]] = [(0.0, "×1")]
     for factor in sorted(near, key=lambda value: abs(math.log(value))):
         place = math.log(factor)
-        if low <= place <= high and all(abs(place - other) > 0.1 * (high - low) for other, _ in ticks):
+        if low <= place <= high and all(abs(place - other) > apart for other, _ in ticks):
             ticks.append((place, f"×{number(factor, 3)}"))
     return LinearAxis(low, high, width, "factor on the advantage (log scale)", tuple(sorted(ticks)))
 

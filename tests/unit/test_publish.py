@@ -6,18 +6,33 @@ import csv
 import io
 import math
 import re
+import subprocess
+import sys
+from collections.abc import Sequence
 from pathlib import Path
 from xml.etree import ElementTree
 
 import pypdf
 import pytest
+import vl_convert
 
+from benchmark.report.charts import charts
 from benchmark.report.compose import POINTS_PER_MM, to_pdf
-from benchmark.report.publish import COLUMN_MM, FULL_MM, MOST_WORDS, Published, figures_for_print, short_caption
+from benchmark.report.pdf_order import in_one_order
+from benchmark.report.publish import (
+    COLUMN,
+    COLUMN_MM,
+    FULL_MM,
+    MOST_WORDS,
+    Published,
+    figures_for_print,
+    short_caption,
+)
 from benchmark.report.publish_tables import DIGITS, FORMATS, publication_tables, write_tables
 from benchmark.report.words import is_number
 from tests.report_records import crossing, hostile, infeasible, mixed
 
+ROOT = Path(__file__).parents[2]
 SVG = "{http://www.w3.org/2000/svg}"
 
 
@@ -48,9 +63,9 @@ def _smallest(svg: str) -> tuple[float, float]:
 
 def test_every_size_is_there(figures: dict[str, Published]):
     names = set(figures)
-    for key in ("energy-delay", "advantage-against-time", "time-parts", "energy-parts", "input-swings"):
-        assert {f"{key}-88mm", f"{key}-180mm"} <= names
-    assert "one-page-a4" in names
+    drawn = [key for key, chart in charts(crossing()).items() if chart.spec is not None]
+    assert {"requirement-margins", "limits-along-supply", "node-steps"} <= set(drawn)
+    assert names == {f"{key}-{width}mm" for key in drawn for width in (88, 180)} | {"one-page-a4"}
 
 
 def test_drawings_have_the_width_they_state(figures: dict[str, Published]):
@@ -96,7 +111,9 @@ def test_the_page_says_verdict_panels_conventions_and_digest(figures: dict[str, 
         assert any(text.startswith(wanted) for text in said)
 
 
-@pytest.mark.parametrize("name", ["one-page-a4", "energy-delay-88mm", "input-swings-180mm"])
+@pytest.mark.parametrize(
+    "name", ["one-page-a4", "energy-delay-88mm", "requirement-margins-88mm", "node-steps-88mm", "input-swings-180mm"]
+)
 def test_words_of_a_pdf_are_words_and_its_fonts_are_embedded(figures: dict[str, Published], name: str):
     reader = pypdf.PdfReader(io.BytesIO(to_pdf(figures[name].svg)))
     assert len(reader.pages) == 1
@@ -129,6 +146,91 @@ def _fonts(page: pypdf.PageObject) -> dict[str, bool]:
 
     walk(page["/Resources"].get_object())
     return found
+
+
+def test_charts_for_one_column_are_as_wide_as_one_column(figures: dict[str, Published]):
+    for name, figure in figures.items():
+        if name.endswith("-88mm"):
+            assert float(ElementTree.fromstring(figure.svg).attrib["viewBox"].split()[2]) <= COLUMN
+
+
+def test_the_same_drawing_gives_the_same_pdf_in_another_process(figures: dict[str, Published], tmp_path: Path):
+    """The library orders fonts by chance of the process; ten names make an agreement by chance unlikely."""
+    names = [name for name in figures if name.endswith("-88mm")]
+    for name in names:
+        (tmp_path / f"{name}.svg").write_text(figures[name].svg, encoding="utf-8")
+    code = (
+        "import pathlib, sys\nfrom benchmark.report.compose import to_pdf\n"
+        "for file in sorted(pathlib.Path(sys.argv[1]).glob('*.svg')):\n"
+        "    file.with_suffix('.pdf').write_bytes(to_pdf(file.read_text(encoding='utf-8')))\n"
+    )
+    subprocess.run([sys.executable, "-c", code, str(tmp_path)], cwd=ROOT, check=True, timeout=120)
+    for name in names:
+        assert (tmp_path / f"{name}.pdf").read_bytes() == to_pdf(figures[name].svg), name
+
+
+def _raw(figure: Published) -> bytes:
+    return bytes(vl_convert.svg_to_pdf(figure.svg.replace("mm", "", 2)))
+
+
+def _said(data: bytes) -> tuple[object, ...]:
+    page = pypdf.PdfReader(io.BytesIO(data), strict=True).pages[0]
+    return page.extract_text(), _fonts(page), page.mediabox, page.get_contents().get_data()  # type: ignore[union-attr]
+
+
+def test_putting_a_pdf_in_order_changes_nothing_it_says(figures: dict[str, Published]):
+    for name in ("one-page-a4", "energy-delay-180mm"):
+        raw = _raw(figures[name])
+        ordered = in_one_order(raw)
+        assert _said(ordered) == _said(raw)
+        assert len(pypdf.PdfReader(io.BytesIO(ordered)).get_object(1)) > 0  # type: ignore[arg-type]
+        assert in_one_order(ordered) == ordered
+
+
+SMALL = (
+    b"%PDF-1.7\n",
+    b"1 0 obj\n<< /Type /Catalog /Pages 2 0 R /Note (a \\) (b) << ) >>\nendobj\n",
+    b"2 0 obj\n<< /Kids [ 3 0 R ] /Count 1 /Hex <0aFF> >>\nendobj\n",
+    b"3 0 obj\n<< /Length 5 >>\nstream\n1 0 R\nendstream\nendobj\n",
+)
+
+
+def _file(parts: Sequence[bytes], root: bytes = b"/Root 1 0 R") -> bytes:
+    offsets = [sum(map(len, parts[:k])) for k in range(1, len(parts))]
+    rows = b"".join(b"%010d 00000 n \n" % offset for offset in offsets)
+    table = b"xref\n0 %d\n0000000000 65535 f \n" % len(parts) + rows
+    body = b"".join(parts)
+    return body + table + b"trailer\n<< " + root + b" >>\nstartxref\n%d\n%%%%EOF\n" % len(body)
+
+
+def test_order_of_objects_and_of_names_does_not_matter():
+    def swapped(text: bytes) -> bytes:
+        return re.sub(rb"[23](?= 0 )", lambda found: b"3" if found[0] == b"2" else b"2", text)
+
+    other = (SMALL[0], SMALL[1].replace(b"2 0 R", b"3 0 R"), swapped(SMALL[3]), swapped(SMALL[2]))
+    mixed_up = (*other[:1], other[1].replace(b"/Type /Catalog ", b"").replace(b"<< ) >>", b"<< )/Type /Catalog>>"))
+    found = in_one_order(_file(SMALL))
+    assert in_one_order(_file((*mixed_up, *other[2:]))) == found
+    assert b"(a \\) (b) << )" in found
+    assert b"stream\n1 0 R\nendstream" in found, "what a stream holds is not touched"
+    assert b"<0aFF>" in found
+
+
+@pytest.mark.parametrize(
+    ("data", "said"),
+    [
+        (b"%PDF-1.7\n", "no cross-reference table"),
+        (_file(SMALL).replace(b"1 0 obj", b"1 0 jbo"), "no object at byte"),
+        (_file(SMALL, b"/Size 4"), "no root"),
+        (_file((*SMALL[:3], SMALL[3].replace(b"/Length 5", b"/Length 3 0 R"))), "not stated beside it"),
+        (_file((*SMALL[:3], SMALL[3].replace(b"/Length 5", b"/Length 3"))), "not as long as it says"),
+        (_file((*SMALL[:2], b"2 0 obj\n<< /Kids >>\nendobj\n", SMALL[3])), "do not pair"),
+        (_file((*SMALL[:2], b"2 0 obj\n(open\nendobj\n", SMALL[3]))[:-99].replace(b")", b"x"), "cross-reference"),
+    ],
+)
+def test_a_pdf_of_another_structure_is_refused(data: bytes, said: str):
+    with pytest.raises(ValueError, match=said):
+        in_one_order(data)
 
 
 def test_captions_are_short_and_name_the_record(figures: dict[str, Published]):
