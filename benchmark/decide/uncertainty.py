@@ -57,12 +57,14 @@ class InputShare:
     """What one drawn input carries.
 
     ``share``: first-order share of the variance of ln(advantage) [1]. ``worth``: value of knowing it perfectly, in
-    ln(advantage).
+    ln(advantage). ``coefficients``: of E[ln(advantage) | value] in the basis that suits ``shape``, without the mean.
     """
 
     key: str
+    shape: str
     share: Estimate
     worth: Estimate
+    coefficients: Array
 
 
 @dataclass(frozen=True)
@@ -154,12 +156,13 @@ def summarise(task: DrawTask, blocks: Sequence[BlockSum]) -> Uncertainty:
     shares = []
     for key, shape in shapes.items():
         if key.startswith(idle):
-            shares.append(InputShare(key, Estimate(0.0, 0.0), Estimate(0.0, 0.0)))
+            shares.append(InputShare(key, shape, Estimate(0.0, 0.0), Estimate(0.0, 0.0), np.zeros(degree)))
             continue
         noise = _noise(key, degree, total, without)
         share = estimate(functools.partial(_share, key=key, degree=degree))
         worth = estimate(functools.partial(_worth, key=key, basis=bases[shape][1 : degree + 1], required=log_required))
-        shares.append(InputShare(key, Estimate(share.value - noise, share.error), worth))
+        coefficients = _coefficients(total, key, degree)
+        shares.append(InputShare(key, shape, Estimate(share.value - noise, share.error), worth, coefficients))
     return Uncertainty(
         draws=total.draws,
         blocks=len(blocks),

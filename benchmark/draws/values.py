@@ -26,7 +26,7 @@ from benchmark.catalogue import QUANTITIES
 from benchmark.draws.plan import Plan, net
 from benchmark.sets.values import Value
 
-__all__ = ["draw_values", "drawn_keys", "value_at"]
+__all__ = ["draw_twice", "draw_values", "drawn_keys", "value_at"]
 
 Array = NDArray[np.float64]
 #: ends of the domains that a tail may not cross
@@ -131,3 +131,23 @@ def draw_values(
                 points[key] = table[:, position]
                 columns[key] = value_at(values[key], table[:, position])
     return points, columns
+
+
+def draw_twice(
+    values: Mapping[str, Value], plan: Plan, held: Sequence[str] = ()
+) -> tuple[dict[str, Array], dict[str, Array]]:
+    """Return two independent sets of draws of one block, of nets that hold both.
+
+    Returns
+    -------
+    first, second : dict
+        Ledger key -> values in SI (draw,).
+    """
+    sets: tuple[dict[str, Array], dict[str, Array]] = ({}, {})
+    for owner, keys in drawn_keys(values).items():
+        table = net(f"{owner}, two sets", 2 * len(keys), plan, 0)
+        for position, key in enumerate(keys):
+            if key not in held:
+                for half in (0, 1):
+                    sets[half][key] = value_at(values[key], table[:, position + half * len(keys)])
+    return sets
