@@ -21,15 +21,14 @@ from benchmark.decide.moves import permitted_advantage
 from benchmark.devices.model import ModelInputs
 from benchmark.errors import EvenloadError, UsageError
 from benchmark.evaluate.batch import Batch, resolve
-from benchmark.evaluate.side import SideProblem, values_by_key
+from benchmark.evaluate.side import values_by_key
 from benchmark.measured import MeasuredTable
-from benchmark.sets.study import NodePair, Study
+from benchmark.sets.study import Choice, NodePair, Study
 
-__all__ = ["REQUIRED_TIME", "TEMPERATURE", "Answers", "Trial", "Trials", "study_at"]
+__all__ = ["REQUIRED_TIME", "TEMPERATURE", "Answers", "Timed", "Trial", "Trials", "study_at"]
 
 Array = NDArray[np.float64]
 Trial = Mapping[str, float]
-Alter = Callable[[SideProblem], SideProblem]
 REQUIRED_TIME = "required_time"
 TEMPERATURE = "temperature"
 #: rows evaluated at once: bounds the memory, changes no number
@@ -37,7 +36,7 @@ ROWS_AT_ONCE = 300
 _TIME_COLUMN = f"study.{REQUIRED_TIME}"
 
 
-class _Timed(Comparison):
+class Timed(Comparison):
     """A comparison in which the required time may differ from row to row."""
 
     def required_time(self) -> Array | None:
@@ -106,6 +105,10 @@ class Trials:
         By default the study's primary policy.
     comparison : callable
         Makes the comparison; another class may alter the sides.
+    frozen : mapping, optional
+        Frozen choice of every side to keep; by default those of the best estimate.
+    told : callable
+        Told how many trials have been evaluated.
     """
 
     def __init__(
@@ -114,7 +117,8 @@ class Trials:
         pair: NodePair,
         policy: str = "",
         *,
-        comparison: Callable[..., Comparison] = _Timed,
+        comparison: Callable[..., Comparison] = Timed,
+        frozen: Mapping[str, Choice] | None = None,
         told: Callable[[int], None] = lambda rows: None,
     ) -> None:
         self.study, self.pair = study, pair
@@ -126,7 +130,7 @@ class Trials:
         self.policy = policy or study.policy.primary
         self._comparison = comparison
         self._told = told
-        first = comparison(study, pair, Batch.best_estimate())
+        first = comparison(study, pair, Batch.best_estimate(), frozen=frozen)
         self.outcome: Outcome = first.outcome(self.policy)
         self.frozen = first.frozen_choices(self.outcome)
         self.problems = {"candidate": first.candidate.problem} | {

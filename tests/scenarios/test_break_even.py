@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import functools
 import math
 from pathlib import Path
 from typing import Any
@@ -12,6 +13,7 @@ import pytest
 
 from benchmark.decide.axes import find_axis, known_axes
 from benchmark.decide.break_even import Need, find_needs
+from benchmark.decide.gap import AlteredComparison, Perfected, gap_rows, improvements
 from benchmark.decide.need_words import need_rows, need_text
 from benchmark.decide.opportunity import map_rows, opportunity_map
 from benchmark.decide.profile import Line, label_changes
@@ -21,7 +23,7 @@ from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 from benchmark.record.load import load_study
 from tests.near import near
-from tests.studies import hub
+from tests.studies import hub, mixed
 
 DATA = Path(__file__).parent.parent / "data"
 
@@ -246,6 +248,59 @@ def test_the_map_over_duty_passes_through_the_idle_break_even(tmp_path):
         opportunity_map(hub_trials(tmp_path / "none"), "duty")
     with pytest.raises(UsageError, match="clocked study"):
         opportunity_map(hand_trials("stress-hand", required_time=""), "activity")
+
+
+# -- who must improve -----------------------------------------------------------------------------------------------
+
+
+def test_a_perfect_driver_of_the_word_line_gives_at_most_1_368():
+    trials = hand_trials("word-line")
+    rows = {row["perfected"]: row for row in gap_rows(improvements(trials), 1.5)}
+    assert rows["resistance and transit"]["advantage"] == near(REFERENCE_TIME / 0.377e-9, rel=1e-9)
+    assert rows["resistance and transit"]["advantage"] == near(1.368, rel=5e-4)
+    assert rows["device resistance"]["advantage"] == near(REFERENCE_TIME / 392e-12, rel=1e-9)
+    assert rows["device resistance"]["advantage"] == near(1.315, rel=5e-4)
+    without_transit = math.log(2.0) * 200 * 100e-15 + 0.377e-9
+    assert rows["transit"]["advantage"] == near(REFERENCE_TIME / without_transit, rel=1e-9)
+    assert rows["level shifters"]["advantage"] == near(trials.best.advantage[0], rel=1e-15)  # the metric is time
+    assert {row["reaches"] for row in rows.values()} == {"no"}
+    assert rows["everything of the candidate"]["share_of_gap"] == near(1.0)
+    # without the line the reference would be at once, the candidate has its transit time
+    assert rows["wire"]["advantage"] == 0.0
+    assert math.isnan(rows["wire"]["share_of_gap"])
+
+
+def test_perfecting_leakage_leaves_the_charges_and_perfect_charges_leave_the_leakage():
+    trials = hand_trials("stress-hand")
+    rows = {row["perfected"]: row for row in gap_rows(improvements(trials), 2.0)}
+    assert rows["leakage and bias"]["advantage"] == near(36.0 / 6.25, rel=1e-9)
+    # leakage of one pass at the transit time alone: N V^2/(R_0 + R_on) x N t_tr, against 36 aJ x N a
+    leakage = 20 * 0.25**2 / (1e9 + 1e5) * 20 * 15e-12
+    assert rows["device capacitance"]["advantage"] == near(36e-18 * 20 * 0.05 / leakage, rel=1e-4)
+    assert rows["device capacitance"]["limit"] == "leakage"
+    # the supply is prescribed, so without resistance only the leakage of the transit time is left
+    assert rows["the whole switch"]["advantage"] == math.inf
+    assert rows["the whole switch"]["state"] == "grows without limit"
+    assert math.isnan(rows["transit"]["share_of_gap"])
+
+
+def test_perfecting_nothing_changes_no_bit(tmp_path):
+    study, _ = load_study(mixed().write(tmp_path))
+    trials = Trials(study, study.pair(study.headline))
+    changed = functools.partial(AlteredComparison, Perfected((), 1.0))
+    again = Trials(study, trials.pair, comparison=changed)
+    assert again.best.advantage[0] == trials.best.advantage[0]
+    assert again.best.energy_shares.keys() == trials.best.energy_shares.keys()
+
+
+def test_a_perfect_term_never_hurts(tmp_path):
+    study, _ = load_study(mixed().write(tmp_path))
+    trials = Trials(study, study.pair(study.headline))
+    found = improvements(trials)
+    assert len(found) > 8
+    for item in found:
+        if item.name != "wire":
+            assert item.advantage >= found[0].advantage * (1.0 - 1e-6)
 
 
 # -- property 60: put a value back; property 61: stricter level, stricter value -------------------------------------
