@@ -84,7 +84,9 @@ def _indices(a: Array, b: Array, mixed: Array) -> Array:
     """First-order and total shares, (2, input)."""
     from scipy.stats import sobol_indices
 
-    found = sobol_indices(func={"f_A": a[None, :], "f_B": b[None, :], "f_AB": mixed[:, None, :]}, n=a.size)
+    mean = 0.5 * (a.mean() + b.mean())  # shares do not depend on it, their errors do
+    sets = {"f_A": (a - mean)[None, :], "f_B": (b - mean)[None, :], "f_AB": (mixed - mean)[:, None, :]}
+    found = sobol_indices(func=sets, n=a.size)
     return np.stack([np.ravel(found.first_order), np.ravel(found.total_order)])
 
 
