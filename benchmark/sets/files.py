@@ -29,6 +29,8 @@ MAX_BYTES = 4_000_000
 MAX_NAME = 2_000
 #: a whole number of more bits is shown by its size, for Python refuses to write out thousands of digits
 MAX_BITS = 1_000
+#: a name of so many parts is no name; the reader of TOML would take minutes over it
+_ENDLESS = re.compile(r"(?<![\w\-])(?:[\w\-]++[ \t]*+\.[ \t]*+){200}")
 _HEADER = re.compile(r"^\s*(\[\[?)\s*([^\[\]]+?)\s*\]\]?\s*(?:#.*)?$")
 _OPENS = re.compile(r"\s*(\"\"\"|''')")
 _KEY = re.compile(r"^\s*([A-Za-z0-9_\-]+|\"[^\"]*\")(?:\s*\.\s*([A-Za-z0-9_\-.]+))?\s*=")
@@ -164,6 +166,10 @@ def read_toml(path: Path, collector: Collector, name: str | None = None) -> Toml
         text = raw.decode("utf-8")
     except UnicodeDecodeError as error:
         collector.add(Problem(name, 0, "", "is not UTF-8 text", f"byte {raw[error.start]:#04x} at {error.start}"))
+        return None
+    endless = _ENDLESS.search(text)
+    if endless is not None:
+        collector.add(Problem(name, text.count("\n", 0, endless.start()) + 1, "", "is nested too deeply"))
         return None
     try:
         data = tomllib.loads(text, parse_float=Decimal)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+from collections import Counter
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -335,7 +336,7 @@ def build_technology(
 def _check_identity(parsed: Any, file: TomlFile, collector: Collector) -> None:
     if parsed.id != file.path.stem:
         collector.add(file.problem("id", "differs from the file name", repr(parsed.id), repr(file.path.stem)))
-    repeated = sorted({node for node in parsed.nodes if parsed.nodes.count(node) > 1})
+    repeated = sorted(node for node, times in Counter(parsed.nodes).items() if times > 1)
     for node in repeated:
         collector.add(file.problem("nodes", "names a node twice", repr(node)))
 

@@ -32,6 +32,9 @@ def _number(value: Any) -> Any:
     if isinstance(value, Decimal) and not value.is_finite():
         msg = "finite"
         raise PydanticCustomError(msg, "a finite number is needed")
+    if isinstance(value, Decimal) and len(str(value)) > MOST_DIGITS:
+        msg = "finite"  # exact conversion of a million digits would take minutes
+        raise PydanticCustomError(msg, f"the number has more than {MOST_DIGITS} digits")
     if isinstance(value, int) and value.bit_length() > MAX_BITS:
         size = Decimal("Infinity")
     else:
@@ -49,6 +52,8 @@ def _whole(value: Any) -> Any:
     return value
 
 
+#: digits a number may have; the exact value of a float has up to 767
+MOST_DIGITS = 1000
 #: largest whole number of a key that is not a physical value
 MOST_WHOLE = 10**9
 M = TypeVar("M", bound="FileModel")

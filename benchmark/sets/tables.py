@@ -17,13 +17,24 @@ from benchmark.errors import Problem, nearest
 from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile, read_bytes, read_toml
 from benchmark.sets.problems import Collector
-from benchmark.sets.schema import DefaultsTable, FileModel, FreeNote, Number, Schema, Text, UnitText, validate
+from benchmark.sets.schema import (
+    MOST_DIGITS,
+    DefaultsTable,
+    FileModel,
+    FreeNote,
+    Number,
+    Schema,
+    Text,
+    UnitText,
+    validate,
+)
 from benchmark.sets.values import Place, read_provenance
 from benchmark.units import Unit, UnitError, parse_unit, to_si
 
 __all__ = ["COLUMN_UNITS", "TableFile", "read_table"]
 
 MAX_ROWS = 200_000
+MAX_COLUMNS = 200
 #: range of the numbers a cell may hold, as in every other file
 LEAST, MOST = Decimal("1e-300"), Decimal("1e300")
 
@@ -254,6 +265,11 @@ def _rows(raw: bytes, sidecar: Sidecar, name: str, collector: Collector) -> list
         collector.add(Problem(name, 0, "", "has no data rows" if rows else "is empty"))
         return None
     header_line, header = rows[0]
+    if len(header) > MAX_COLUMNS:
+        collector.add(
+            Problem(name, header_line, "", "has too many columns", str(len(header)), f"at most {MAX_COLUMNS}")
+        )
+        return None
     for column in sorted({column for column in header if header.count(column) > 1}):
         collector.add(Problem(name, header_line, column, "column name appears twice"))
     for column in header:
@@ -291,6 +307,8 @@ def _rows(raw: bytes, sidecar: Sidecar, name: str, collector: Collector) -> list
 
 
 def _cell(text: str, decimal: str) -> Decimal | None:
+    if len(text) > MOST_DIGITS:
+        return None
     if decimal == ",":
         if "." in text:
             return None

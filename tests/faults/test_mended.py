@@ -100,6 +100,40 @@ def test_a_message_can_be_read_whatever_the_file_says(old: str, new: str, tmp_pa
 
 
 def test_a_key_of_half_a_million_parts_is_looked_up_at_once(tmp_path: Path):
-    said = _spoiled(tmp_path, 'title = "Switch"', '"' + "a." * 500_000 + '" = 1\ntitle = "Switch"')
+    said = _spoiled(tmp_path, 'title = "Switch"', '"' + "a: " * 300_000 + "." * 500_000 + '" = 1\ntitle = "Switch"')
     (message,) = said.refused
     assert "is not a known name here" in message
+
+
+@pytest.mark.parametrize(
+    ("text", "line"),
+    [("\n[" + "a." * 1_900_000 + "a]\n", 37), ("\n\n" + "a . " * 900_000 + "a = 1\n", 38)],
+)
+def test_a_name_of_endless_parts(text: str, line: int, tmp_path: Path):
+    said = check(tmp_path, {"switch.toml": refusals.TECHNOLOGY + text})
+    assert said.refused == [f"switch.toml:{line}: is nested too deeply"]
+
+
+def test_a_table_of_endless_columns(tmp_path: Path):
+    columns = [f"c{number}" for number in range(300_000)]
+    files = {**refusals.files("table"), "tables/curve.csv": ",".join(columns) + "\n1\n"}
+    assert check(tmp_path, dict(files)).refused == [
+        "tables/curve.csv:1: has too many columns; found 300000; allowed: at most 200"
+    ]
+
+
+def test_endless_nodes(tmp_path: Path):
+    many = ", ".join('"g1"' for _ in range(100_000))
+    said = _spoiled(tmp_path, 'nodes = ["g1", "g2"]', f'nodes = ["g1", "g2", {many}]')
+    assert "switch.toml:5: nodes: names a node twice; found 'g1'" in said.refused
+
+
+@pytest.mark.parametrize("digits", [1_001, 3_900_000])
+def test_a_number_of_endless_digits(digits: int, tmp_path: Path):
+    old = "[value.declared_supply]\nvalue = 0.5"
+    said = _spoiled(tmp_path, old, f"{old[:-1]}{'5' * digits}")
+    (message,) = said.refused
+    assert "value.declared_supply.value: the number has more than 1000 digits" in message
+    files = {**refusals.files("table"), "tables/curve.csv": refusals.CURVE.replace("1e-12", "0." + "1" * digits)}
+    (message,) = check(tmp_path, dict(files)).refused
+    assert message.startswith("tables/curve.csv:2: ")
