@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import sys
+import time
 from collections.abc import Mapping, Sequence
 from pathlib import Path
 
@@ -35,6 +36,9 @@ def run_command(
     freeze_time: str,
     quiet: bool,
     ratio_only: bool = False,
+    draws: int | None = None,
+    seed: int | None = None,
+    jobs: int = 1,
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
     from benchmark import api
@@ -42,15 +46,18 @@ def run_command(
     check_folders(nodes)
     study = api.load_study(study_path, nodes, overrides)
     folder = out or Path(f"evenload-{study.id}")
-    result = api.run(study, created=freeze_time or None, progress=_Steps(quiet))
+    result = api.run(study, created=freeze_time or None, progress=_Steps(quiet), draws=draws, seed=seed, jobs=jobs)
     if ratio_only:
         result = result.ratio_only()
+    started = time.perf_counter()
     result.save(folder)
+    seconds = time.perf_counter() - started
     typer.echo(result.text)
     if not quiet:
+        size = (folder / "report.html").stat().st_size / 1e6
         typer.echo("")
-        typer.echo(f"Record:  {folder}")
-        typer.echo(f"Report:  {folder / 'report.html'}")
+        typer.echo(f"Record:  {folder} (written in {seconds:.1f} s)")
+        typer.echo(f"Report:  {folder / 'report.html'} ({size:.1f} MB)")
     return result.verdict
 
 

@@ -51,6 +51,7 @@ def _small_folder(place: Path, record: dict[str, Any]) -> None:
 
     (place / "record.json").write_text(to_json(record), encoding="utf-8")
     (place / "summary.json").write_text(to_json(summary(record)), encoding="utf-8")
+    (place / "report.html").write_text("not made here\n", encoding="utf-8")
 
 
 @pytest.fixture

@@ -5,6 +5,7 @@ from __future__ import annotations
 import errno
 import filecmp
 import os
+import re
 import signal
 import subprocess
 import sys
@@ -151,7 +152,7 @@ def test_a_record_replaces_a_record_and_nothing_else(tmp_path: Path, evenload: R
     assert evenload("run", "study.toml", "--out", "empty").status == 0
     (tmp_path / "empty" / "left over").write_text("from the old record")
     assert evenload("run", "study.toml", "--out", "empty").status == 0
-    assert sorted(_tree(tmp_path / "empty")) == ["record.json", "summary.json"]
+    assert sorted(_tree(tmp_path / "empty")) == ["record.json", "report.html", "summary.json"]
     assert not [path for path in tmp_path.iterdir() if path.name.startswith(".")]
 
 
@@ -235,24 +236,34 @@ def test_the_default_folder_is_named_after_the_study(tmp_path: Path, evenload: R
     hub().write(tmp_path / "deep")
     ran = evenload("run", "deep/study.toml")
     assert (tmp_path / "evenload-hub" / "record.json").exists()
-    assert ran.out.endswith("\nRecord:  evenload-hub\nReport:  evenload-hub/report.html\n")
+    said = r"\nRecord:  evenload-hub \(written in \d+\.\d s\)\nReport:  evenload-hub/report\.html \((\d+\.\d) MB\)\n"
+    assert re.search(f"{said}\\Z", ran.out)
     quiet = evenload("run", "deep/study.toml", "--quiet")
     assert "Record:" not in quiet.out
     assert ran.out.startswith(quiet.out)
 
 
-def test_the_same_inputs_write_the_same_folder_byte_for_byte(tmp_path: Path):
-    """Two processes, two places, two time zones, charts and report included; only the time stamp is given."""
+def _in_both(tmp_path: Path, *arguments: str) -> None:
+    """Run a command in two processes, two places and two time zones at once."""
     running = []
     for name, zone in (("one", "UTC"), ("two", "Asia/Tokyo")):
-        hub().write(tmp_path / name)
-        command = [sys.executable, "-m", "benchmark", "run", "study.toml", "--out", "record", "--freeze-time", "then"]
         environment = {**os.environ, "PYTHONPATH": str(ROOT), "TZ": zone, "PYTHONHASHSEED": str(len(running))}
+        command = [sys.executable, "-m", "benchmark", *arguments]
         running.append(subprocess.Popen(command, cwd=tmp_path / name, env=environment, stdout=subprocess.DEVNULL))
     assert [process.wait(timeout=120) for process in running] == [0, 0]
-    one, two = tmp_path / "one" / "record", tmp_path / "two" / "record"
-    assert _tree(one).keys() == _tree(two).keys()
-    assert len(_tree(one)) > 20
-    _, different, odd = filecmp.cmpfiles(one, two, list(_tree(one)), shallow=False)
+
+
+def test_the_same_inputs_write_the_same_folders_byte_for_byte(tmp_path: Path):
+    """Record folder with charts and report, figures for print in every format, tables; only the time stamp is given."""
+    for name in ("one", "two"):
+        hub().write(tmp_path / name)
+    _in_both(tmp_path, "run", "study.toml", "--out", "record", "--freeze-time", "then")
+    _in_both(tmp_path, "export", "record", "--figures", "figures", "--tables", "tables", "--format", "latex")
+    one, two = tmp_path / "one", tmp_path / "two"
+    names = _tree(one).keys()
+    assert names == _tree(two).keys()
+    assert len(names) > 80
+    assert {Path(name).suffix for name in names} >= {".html", ".json", ".csv", ".svg", ".png", ".pdf", ".tex", ".txt"}
+    _, different, odd = filecmp.cmpfiles(one, two, list(names), shallow=False)
     assert (different, odd) == ([], [])
-    assert read(one, "record.json")["created"] == "then"
+    assert read(one / "record", "record.json")["created"] == "then"
