@@ -10,7 +10,7 @@ Two crossings between neighbouring grid points are not seen.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -19,7 +19,7 @@ from numpy.typing import NDArray
 from benchmark.decide.axes import Axis
 from benchmark.decide.trials import Answers, Trials
 
-__all__ = ["Crossing", "Edge", "LabelChange", "Line", "Profile", "label_changes", "profiles"]
+__all__ = ["Crossing", "Edge", "LabelChange", "Line", "Profile", "Shares", "find_shares", "label_changes", "profiles"]
 
 Array = NDArray[np.float64]
 #: ln(advantage) that stands for "none" or "infinite" in the search
@@ -136,6 +136,8 @@ def profiles(
     name_edges : bool
         Say why a side has no permitted point beyond an edge (one more evaluation each).
     """
+    if not lines:
+        return []
     grids = [line.axis.grid(count) for line in lines]
     flat = [line.trial(x) for line, grid in zip(lines, grids, strict=True) for x in grid]
     answers = trials(flat)
@@ -247,28 +249,56 @@ def _crossings(
 
 def _solve(trials: Trials, lines: Sequence[Line], brackets: Sequence[_Bracket]) -> Array:
     """Return the share of the way through each bracket at which the level is met."""
-    from scipy.optimize import elementwise
-
     level = np.log(np.array([bracket.level for bracket in brackets]))
 
-    def difference(share: Array, index: NDArray[np.int64]) -> Array:
-        share, index = np.broadcast_arrays(share, index)
-        which = index.ravel().astype(int)
+    def difference(share: Array, which: NDArray[np.intp]) -> Array:
         rows = []
-        for s, i in zip(share.ravel(), which, strict=True):
+        for s, i in zip(share, which, strict=True):
             line = lines[brackets[i].line]
             rows.append(line.trial(line.between(brackets[i].low, brackets[i].high, float(s))))
-        log = np.nan_to_num(trials(rows).log, nan=-FAR, posinf=FAR, neginf=-FAR)
-        return np.asarray(log - level[which]).reshape(share.shape)
+        return np.asarray(trials(rows).log - level[which])
+
+    return find_shares(difference, len(brackets)).x
+
+
+@dataclass(frozen=True)
+class Shares:
+    """Solutions of ``find_shares``: ``x``, and the shares just before and just after it with their function values."""
+
+    x: Array
+    bracket: tuple[Array, Array]
+    at_bracket: tuple[Array, Array]
+
+
+def find_shares(
+    difference: Callable[[Array, NDArray[np.intp]], Array], count: int, *, xtol: float = 1e-16, ftol: float = CLOSE
+) -> Shares:
+    """Solve ``difference(share, which) = 0`` for ``count`` problems at once, each between the shares 0 and 1.
+
+    Parameters
+    ----------
+    difference : callable
+        Of shares and the numbers of the problems they belong to, both (n,). What is not a number counts as far below 0.
+    count : int
+        Problems; the signs at 0 and 1 must differ in each.
+    xtol, ftol : float
+        Absolute tolerances of the share and of the function.
+    """
+    from scipy.optimize import elementwise
+
+    def wide(share: Array, index: NDArray[np.int64]) -> Array:
+        share, index = np.broadcast_arrays(share, index)
+        found = difference(share.ravel(), index.ravel().astype(np.intp))
+        return np.asarray(np.nan_to_num(found, nan=-FAR, posinf=FAR, neginf=-FAR)).reshape(share.shape)
 
     result = elementwise.find_root(
-        difference,
-        (np.zeros(len(brackets)), np.ones(len(brackets))),
-        args=(np.arange(len(brackets)),),
-        tolerances={"xatol": 1e-16, "xrtol": 1e-15, "fatol": CLOSE, "frtol": 0.0},
+        wide,
+        (np.zeros(count), np.ones(count)),
+        args=(np.arange(count),),
+        tolerances={"xatol": xtol, "xrtol": 1e-15, "fatol": ftol, "frtol": 0.0},
         maxiter=MOST,
     )
-    return np.asarray(result.x, dtype=np.float64)
+    return Shares(np.asarray(result.x, dtype=np.float64), tuple(result.bracket), tuple(result.f_bracket))
 
 
 def _jump(trials: Trials, line: Line, x: float) -> str:
@@ -296,8 +326,6 @@ class LabelChange:
 
 def label_changes(trials: Trials, line: Line, count: int = 17) -> list[LabelChange]:
     """Find where the largest share of the candidate's delay or energy passes from one term to another."""
-    from scipy.optimize import elementwise
-
     grid = line.axis.grid(count)
     answers = trials([line.trial(x) for x in grid])
     listed: list[tuple[str, float, float, str, str]] = []
@@ -313,30 +341,19 @@ def label_changes(trials: Trials, line: Line, count: int = 17) -> list[LabelChan
     if not listed:
         return []
 
-    def difference(share: Array, index: NDArray[np.int64]) -> Array:
-        share, index = np.broadcast_arrays(share, index)
-        which = index.ravel().astype(int)
+    def difference(share: Array, which: NDArray[np.intp]) -> Array:
         found = trials(
-            [
-                line.trial(line.between(listed[i][1], listed[i][2], float(s)))
-                for s, i in zip(share.ravel(), which, strict=True)
-            ]
+            [line.trial(line.between(listed[i][1], listed[i][2], float(s))) for s, i in zip(share, which, strict=True)]
         )
         values = []
         for row, i in enumerate(which):
             of, _, _, below, above = listed[i]
             shares = found.delay_shares if of == "delay" else found.energy_shares
             values.append(float(shares[below][row] - shares[above][row]))
-        return np.asarray(values).reshape(share.shape)
+        return np.asarray(values)
 
-    result = elementwise.find_root(
-        difference,
-        (np.zeros(len(listed)), np.ones(len(listed))),
-        args=(np.arange(len(listed)),),
-        tolerances={"xatol": 1e-16, "xrtol": 1e-14, "fatol": 1e-14, "frtol": 0.0},
-        maxiter=MOST,
-    )
+    solved = find_shares(difference, len(listed), ftol=1e-14)
     return [
         LabelChange(line.between(low, high, float(share)), of, below, above)
-        for (of, low, high, below, above), share in zip(listed, result.x, strict=True)
+        for (of, low, high, below, above), share in zip(listed, solved.x, strict=True)
     ]

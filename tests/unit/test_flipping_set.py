@@ -1,0 +1,125 @@
+"""The smallest set of inputs that changes the side: constructed cases, where energy is activity times C V^2 alone."""
+
+from __future__ import annotations
+
+import math
+from decimal import Decimal as D
+from typing import Any
+
+import pytest
+from scipy.optimize import minimize
+
+from benchmark.decide.flipping_set import FlippingSets, flip_rows, flipping_sets
+from benchmark.decide.trials import Trials
+from benchmark.errors import UsageError
+from tests.comparisons import given, load, side, study
+from tests.near import near
+from tests.studies import Table, v
+
+
+def capacitance(best: str, share: str | None, shape: str = "uniform") -> Table:
+    """A capacitance in fF with a range of so much on either side."""
+    if share is None:
+        return v(D(best), "fF", unusual=True)
+    if shape == "lognormal":
+        return v(D(best), "fF", unusual=True, spread={"shape": shape, "factor": 1 + D(share)})
+    low, high = D(best) * (1 - D(share)), D(best) * (1 + D(share))
+    return v(D(best), "fF", unusual=True, spread={"shape": shape, "low": low, "high": high})
+
+
+def trials(candidate: Table, reference: Table, required: str = "1.0", **values: Any) -> Trials:
+    """Both sides at 0.5 V, without leakage: the advantage is the ratio of the capacitances."""
+    free = {"options": {"off_state": "none"}, "off_resistance": None}
+    sets = [
+        given("a", input_capacitance=candidate, **free, **values),
+        given("b", input_capacitance=reference, **free),
+    ]
+    loaded = load(study(side("a", 0.5, 0.5), [side("b", 0.5, 0.5)], sets, required=D(required)))
+    return Trials(loaded, loaded.pair(loaded.headline))
+
+
+def names(found: FlippingSets) -> list[set[str]]:
+    return [{axis.name for axis in flip.axes} for flip in found.flips]
+
+
+def test_one_input_is_enough():
+    found = flipping_sets(trials(capacitance("0.10", "0.5"), capacitance("0.13", "0.05")), 1.0)
+    assert names(found) == [{"a.input_capacitance"}]
+    (flip,) = found.flips
+    assert flip.values == (near(0.13e-15, rel=1e-6),)
+    # uniform over 0.10 fF: standard deviation 0.10/sqrt(12)
+    assert flip.implausibility == near(0.03 / (0.10 / math.sqrt(12.0)), rel=1e-5)
+    assert flip.advantage == near(1.0, rel=1e-6)
+
+
+def test_no_single_input_but_exactly_one_pair():
+    # 1.35 today; a alone gives 1.125, b alone 1.08, together 0.9; the delay moves no energy
+    delay = v(D("0.01"), "ns", spread={"shape": "uniform", "low": D("0.005"), "high": D("0.02")})
+    footprint = v(D("0.02"), "um^2", spread={"shape": "lognormal", "factor": D("2.0")})
+    found = flipping_sets(
+        trials(capacitance("0.100", "0.2"), capacitance("0.135", "0.2"), closing_delay=delay, footprint=footprint),
+        1.0,
+    )
+    assert names(found) == [{"a.input_capacitance", "b.input_capacitance"}]
+    assert set(found.left_out) == {"a.closing_delay", "a.footprint"}
+    (flip,) = found.flips
+    a, b = flip.values
+    assert b / a == near(1.0, rel=1e-6)
+    sd = 0.040e-15 / math.sqrt(12.0), 0.054e-15 / math.sqrt(12.0)
+    assert flip.implausibility == near(math.hypot((a - 0.1e-15) / sd[0], (b - 0.135e-15) / sd[1]), rel=1e-6)
+    # the nearest point of the line a = b, by a general minimiser
+    nearest = minimize(lambda x: ((x[0] - 100.0) / 40.0) ** 2 * 12.0 + ((x[0] - 135.0) / 54.0) ** 2 * 12.0, [115.0])
+    assert math.sqrt(nearest.fun) <= flip.implausibility <= 1.05 * math.sqrt(nearest.fun)
+    assert "two inputs together" in found.text
+    rows = flip_rows(found)
+    assert [row["set"] for row in rows] == [1, 1]
+    assert {row["evidence"] for row in rows} == {"invented"}
+
+
+def test_the_less_implausible_pair_comes_first():
+    wide = {"closing_delay": v(D("0.0"), "ns")}
+    sets = trials(capacitance("0.100", "0.2"), capacitance("0.135", "0.2"), terminal_capacitance=v(
+        D("0.02"), "fF", spread={"shape": "uniform", "low": D("0.0"), "high": D("0.06")}), **wide)  # fmt: skip
+    found = flipping_sets(sets, 1.0)
+    assert all(len(flip.axes) == len(found.flips[0].axes) for flip in found.flips)
+    order = [flip.implausibility for flip in found.flips]
+    assert order == sorted(order)
+    for flip in found.flips:
+        moved: dict[str, float] = {}
+        for axis, value in zip(flip.axes, flip.values, strict=True):
+            moved |= axis.place(value, moved)
+        assert sets([moved]).advantage[0] < 1.0 + 1e-6
+
+
+def test_none_up_to_pairs_is_said_and_a_triple_is_found_on_request():
+    # each of three inputs gives a factor 1.15 at most; 1.45 today needs all three (1.521)
+    third = v(D("1.0"), spread={"shape": "loguniform", "low": D("0.86956522"), "high": D("1.0")})
+    free = {"options": {"off_state": "none"}, "off_resistance": None}
+    sets = [
+        given("a", input_capacitance=capacitance("0.100", "0.15", "lognormal"), **free),
+        given("b", input_capacitance=capacitance("0.145", "0.15", "lognormal"), **free),
+    ]
+    loaded = load(study(side("a", 0.5, 0.5, costs={"supply_efficiency": third}), [side("b", 0.5, 0.5)], sets))
+    made = Trials(loaded, loaded.pair(loaded.headline))
+    pairs = flipping_sets(made, 1.0, 2)
+    assert pairs.flips == ()
+    assert "no pair of inputs changes that inside the 3 ranges" in pairs.text
+    triple = flipping_sets(made, 1.0, 3)
+    assert names(triple) == [{"a.input_capacitance", "b.input_capacitance", "candidate.overhead.supply_efficiency"}]
+
+
+def test_without_ranges_there_is_nothing_to_move():
+    found = flipping_sets(trials(capacitance("0.100", None), capacitance("0.080", None)), 1.0)
+    assert found.flips == ()
+    assert found.inputs == 0
+    assert "no pair of inputs changes that inside the 0 ranges" in found.text
+
+
+def test_a_loss_can_be_turned_too_and_other_sizes_are_refused():
+    # 0.8 today
+    made = trials(capacitance("0.100", "0.3"), capacitance("0.080", "0.1"))
+    found = flipping_sets(made, 1.0)
+    assert names(found) == [{"a.input_capacitance"}]
+    assert "missed today (0.8)" in found.text
+    with pytest.raises(UsageError, match="1, 2 or 3 inputs"):
+        flipping_sets(made, 1.0, 4)
