@@ -25,9 +25,9 @@ from tests.open_cards.fit import Capacitance, Curves, fit
 from tests.open_cards.row import DATA, Row, read_csv
 from tests.open_cards.set_text import AnchorLine, Line, set_text
 
-__all__ = ["CARDS", "Cards", "main", "place", "predictive_rows", "seven_nanometre_rows", "text"]
+__all__ = ["CARDS", "SUPPLIED", "Cards", "main", "place", "predictive_rows", "seven_nanometre_rows", "text"]
 
-ROOT = DATA / "open-cards"
+SUPPLIED = DATA / "open-cards"
 CELSIUS = 27.0
 LOWEST = 0.3
 SOURCE = (
@@ -112,7 +112,7 @@ def _extract(cards: Cards) -> tuple[dict[str, float], Capacitance, float]:
 
 def place(cards: Cards) -> Path:
     """File of a set."""
-    return ROOT / "technologies" / f"{cards.name}.toml"
+    return SUPPLIED / "technologies" / f"{cards.name}.toml"
 
 
 def text(cards: Cards) -> str:
@@ -196,13 +196,13 @@ def predictive_rows(cards: Cards) -> list[Row]:
     drain edge that does not see the barrier lowering a third to two thirds of the difference goes.
     """
     rows = []
-    values = load_technology(cards.name, ROOT).at(cards.node)
+    values = load_technology(cards.name, SUPPLIED).at(cards.node)
     edge = float(values["overlap_capacitance"].si[0] * values["unit_width"].si[0])
     allowed = 0.26 if cards.node == "n16" else 0.10
     for supply, known in _series(cards).items():
         if supply < LOWEST:
             continue
-        pair, at = pair_at(cards.name, supply, ROOT), f"{cards.title}, {supply:.2f} V"
+        pair, at = pair_at(cards.name, supply, SUPPLIED), f"{cards.title}, {supply:.2f} V"
         here, delay = stage(pair), known["delay_ps"] * 1e-12
         energy = known["energy_per_cycle_without_leakage_fJ"] * 1e-15
         name = f"fan-out-of-four delay, {at} [s]"

@@ -115,9 +115,9 @@ def ratio_rows() -> list[Row]:
                 found = stored[supply] / stored[pair.base]
                 note = "simulation of such cards against the cubic: the cubic is what differs"
                 rows += [
-                    Row(f"simulated {name}", SOURCE, "published", delay, found, pair.delay, note, name),
+                    Row(f"simulated: {name}", SOURCE, "published", delay, found, pair.delay, note, name),
                     Row(
-                        f"{name} against the simulation",
+                        f"against the simulation: {name}",
                         "stored simulation of the predictive cards, ngspice 39, BSIM4, 27 degC",
                         "simulated",
                         found,

@@ -21,8 +21,8 @@ def test_the_planar_misses_are_those_of_the_cubic():
     rows = {row.quantity: row for row in scaling.ratio_rows()}
     name = "delay over that at 0.8 V, HP32 by predictive-32nm-card, 0.6 V [1]"
     assert rows[name].difference < -0.40
-    assert rows[f"simulated {name}"].difference < -0.40
-    assert abs(rows[f"{name} against the simulation"].difference) < 0.10
+    assert rows[f"simulated: {name}"].difference < -0.40
+    assert abs(rows[f"against the simulation: {name}"].difference) < 0.10
 
 
 def test_the_cubic_is_not_used_where_it_rises():
