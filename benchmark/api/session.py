@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 import numbers
 from collections.abc import Callable, Iterable, Mapping
 from decimal import Decimal
@@ -16,6 +17,7 @@ if TYPE_CHECKING:
     import pandas
 
     from benchmark.record.check import CheckResult
+    from benchmark.sets.study import DrawSettings
 
 __all__ = ["check", "load_result", "load_set", "load_study", "run", "technologies", "what_if", "worked_study"]
 
@@ -163,7 +165,13 @@ def what_if(study: StudyView, changes: Mapping[str, WhatIf] | None = None, /, **
 
 
 def run(
-    study: StudyView | Place, *, created: str | None = None, progress: Callable[[str, float], None] | None = None
+    study: StudyView | Place,
+    *,
+    created: str | None = None,
+    progress: Callable[[str, float], None] | None = None,
+    draws: int | None = None,
+    seed: int | None = None,
+    jobs: int = 1,
 ) -> Result:
     """Run a study.
 
@@ -175,6 +183,10 @@ def run(
         Time stamp to write into the record instead of the clock, for records that are equal byte by byte.
     progress : callable, optional
         Told the name of each step and the share done [1].
+    draws, seed : int, optional
+        Draws of all ranges together (0: none, else a power of two from 16) and their seed, instead of the study's.
+    jobs : int
+        Processes for the draws; no digit depends on their number.
 
     Returns
     -------
@@ -185,14 +197,36 @@ def run(
     ------
     InputRefused
         When the study is a file with problems.
+    UsageError
+        When a number of draws, a seed or a number of processes cannot be one.
     """
     from benchmark.record.run import run_study
 
     loaded = study if isinstance(study, StudyView) else load_study(study)
     told = {} if progress is None else {"progress": progress}
-    record = run_study(loaded.study, loaded.library, created=created, **told)
+    settings = _draw_settings(loaded.study.draws, draws, seed, jobs)
+    record = run_study(loaded.study, loaded.library, created=created, draws=settings, jobs=jobs, **told)
     record["what_if"] = dict(loaded.what_if)
     return Result(record)
+
+
+def _draw_settings(stated: DrawSettings, draws: int | None, seed: int | None, jobs: int) -> DrawSettings:
+    from benchmark.sets.study import draws_allowed
+
+    if draws is not None and draws != 0 and (allowed := draws_allowed(draws)):
+        message = f"draws: {draws} is no number of draws; allowed: 0 for none, or {allowed}"
+        raise UsageError(message)
+    if seed is not None and seed < 0:
+        message = f"seed: {seed} is negative; allowed: 0 or above"
+        raise UsageError(message)
+    if jobs < 1:
+        message = f"jobs: {jobs} processes cannot work; allowed: 1 or more"
+        raise UsageError(message)
+    return dataclasses.replace(
+        stated,
+        number=stated.number if draws is None else draws,
+        seed=stated.seed if seed is None else seed,
+    )
 
 
 def load_result(path: Place) -> Result:

@@ -46,6 +46,11 @@ Set = Annotated[
     list[str] | None,
     typer.Option("--set", help="What-if: NAME=NUMBER or TECHNOLOGY.NAME=NUMBER, in the unit of the file."),
 ]
+Draws = Annotated[
+    int | None, typer.Option("--draws", help="Draws of all ranges together: 0 for none, else a power of two from 16.")
+]
+Seed = Annotated[int | None, typer.Option("--seed", help="Seed of the draws; default: that of the study.")]
+Jobs = Annotated[int, typer.Option("--jobs", help="Processes for the draws; no digit depends on their number.")]
 
 
 def main() -> None:
@@ -69,10 +74,21 @@ def main() -> None:
     except BrokenPipeError:
         sys.stderr.close()
         sys.exit(1)
+    except OSError as error:
+        _cannot(error)
+        sys.exit(3)
     except SystemExit as stopped:
         if stopped.code == STOPPED:  # the command-line library has turned the interrupt into this status
             print("evenload: stopped; nothing half-written", file=sys.stderr)  # noqa: T201
         raise
+
+
+def _cannot(error: OSError) -> None:
+    """Say which file the system does not let us read or write; a standard output that takes no more is let go."""
+    place = error.filename if isinstance(error.filename, str) else "standard output"
+    if error.filename is None:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    print(f"evenload: {place}: cannot be used ({error.strerror or error})", file=sys.stderr)  # noqa: T201
 
 
 def _refuse(error: InputRefused) -> None:
@@ -127,11 +143,14 @@ def run(
     gate: Annotated[bool, typer.Option("--gate", help="Exit status tells the verdict.")] = False,
     freeze_time: Annotated[str, typer.Option("--freeze-time", help="Time stamp to write instead of the clock.")] = "",
     quiet: Annotated[bool, typer.Option("--quiet", help="Print the verdict only.")] = False,
+    draws: Draws = None,
+    seed: Seed = None,
+    jobs: Jobs = 1,
 ) -> None:
     """Run a study: verdict on the terminal, record folder with report, tables and figures."""
     from benchmark.cli.commands import run_command
 
-    word = run_command(study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only)
+    word = run_command(study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only, draws, seed, jobs)
     if gate:
         raise typer.Exit(GATE[word])
 
@@ -141,14 +160,16 @@ def demo(
     out: Annotated[Path | None, typer.Option("--out", help="Record folder to write.")] = None,
     freeze_time: Annotated[str, typer.Option("--freeze-time", help="Time stamp to write instead of the clock.")] = "",
     quiet: Annotated[bool, typer.Option("--quiet", help="Print the verdict only.")] = False,
+    draws: Draws = None,
+    seed: Seed = None,
+    jobs: Jobs = 1,
 ) -> None:
     """Run the worked study that comes with the program (invented switch, published CMOS)."""
     from benchmark.cli.commands import run_command
     from benchmark.sets.library import shipped_reports
 
-    run_command(
-        shipped_reports() / "always-on-hub" / "study.toml", out or Path("evenload-demo"), [], {}, freeze_time, quiet
-    )
+    study = shipped_reports() / "always-on-hub" / "study.toml"
+    run_command(study, out or Path("evenload-demo"), [], {}, freeze_time, quiet, draws=draws, seed=seed, jobs=jobs)
 
 
 @app.command()
@@ -255,3 +276,55 @@ def trace(
     from benchmark.cli.trace import trace_command
 
     trace_command(study, side, supply, node, nodes or [], _overrides(set_))
+
+
+@app.command()
+def need(
+    study: Annotated[Path, typer.Argument(help="Study file, or a record folder.")],
+    names: Annotated[
+        list[str] | None,
+        typer.Argument(help="Values by ledger key or name; also temperature, deadline, on_off_ratio. Default: usual."),
+    ] = None,
+    advantage: Annotated[
+        float | None, typer.Option("--advantage", help="Level instead of the required advantage of the study.")
+    ] = None,
+    pair: Annotated[str, typer.Option("--pair", help="Label of a node pair; default: the headline pair.")] = "",
+    over: Annotated[
+        list[str] | None,
+        typer.Option("--over", help="Range LOW..HIGH in the unit of the value; repeatable, in the order of the names."),
+    ] = None,
+    trade: Annotated[bool, typer.Option("--trade", help="Required second value for each value of the first.")] = False,
+    sheet: Annotated[
+        bool, typer.Option("--sheet", help="Required value of every decisive value of the candidate.")
+    ] = False,
+    map_: Annotated[str, typer.Option("--map", help="Advantage over the deadline and activity, or duty.")] = "",
+    improve: Annotated[
+        bool, typer.Option("--improve", help="What perfecting each physical term alone could give at most.")
+    ] = False,
+    flips: Annotated[
+        int, typer.Option("--flips", help="Smallest set of up to so many inputs (1 to 3) that changes the answer.")
+    ] = 0,
+    points: Annotated[int | None, typer.Option("--points", help="Grid points of each scan.")] = None,
+    form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
+    nodes: Nodes = None,
+    set_: Set = None,
+) -> None:
+    """Find break-even and required values: where the answer changes, and what would be needed."""
+    from benchmark.cli.need import need_command
+
+    need_command(
+        study,
+        names or [],
+        advantage=advantage,
+        pair=pair,
+        over=over or [],
+        points=points,
+        trade=trade,
+        sheet=sheet,
+        map_=map_,
+        improve=improve,
+        flips=flips,
+        form=form,
+        nodes=nodes or [],
+        overrides=_overrides(set_),
+    )

@@ -63,7 +63,8 @@ def imperfect_worth(mean: float, share: InputShare, ratio: float) -> float:
         coefficients = hermite_coefficients(conditional)[1:]
     rho = 1.0 / np.sqrt(1.0 + ratio**2)
     orders = np.arange(1, coefficients.size + 1)
-    shifted = mean + (coefficients * rho**orders) @ hermite(QUADRATURE)[1 : coefficients.size + 1]
+    basis = hermite(QUADRATURE)[1 : coefficients.size + 1]
+    shifted = mean + (coefficients * rho**orders) @ (basis - basis.mean(axis=1, keepdims=True))
     return max(float(np.maximum(shifted, 0.0).mean() - max(mean, 0.0)), 0.0)
 
 

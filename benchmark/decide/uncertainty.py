@@ -243,7 +243,8 @@ def _noise(key: str, degree: int, total: BlockSum, without: Sequence[BlockSum]) 
 
 def _worth(block: BlockSum, key: str, basis: Array, required: float) -> float:
     mean = _mean(block) - required
-    conditional = mean + _coefficients(block, key, basis.shape[0]) @ basis
+    # the points stand for the whole distribution: without this their own small mean would count as information
+    conditional = mean + _coefficients(block, key, basis.shape[0]) @ (basis - basis.mean(axis=1, keepdims=True))
     return max(float(np.maximum(conditional, 0.0).mean() - max(mean, 0.0)), 0.0)
 
 

@@ -16,6 +16,8 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from benchmark.sets.study import draws_allowed
+
 __all__ = ["LARGEST_BLOCK", "LEAST_BLOCKS", "Plan", "net", "plan_of"]
 
 Array = NDArray[np.float64]
@@ -56,11 +58,8 @@ def plan_of(draws: int, seed: int = 0) -> Plan:
     ValueError
         When the number is not a power of two (nets have that many points), too small, or the seed negative.
     """
-    if draws < 2 * LEAST_BLOCKS or draws & (draws - 1):
-        lower = max(2 * LEAST_BLOCKS, 1 << max(draws, 1).bit_length() - 1)
-        message = (
-            f"draws must be a power of two from {2 * LEAST_BLOCKS} on, found {draws}; near it: {lower}, {2 * lower}"
-        )
+    if allowed := draws_allowed(draws):
+        message = f"draws must be {allowed}; found {draws}"
         raise ValueError(message)
     if seed < 0:
         message = f"the seed must not be negative, found {seed}"

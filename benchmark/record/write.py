@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 import contextlib
+import glob
 import json
 import os
 import shutil
 import tempfile
-from collections.abc import Callable, Mapping
+import time
+from collections.abc import Callable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
 
@@ -15,10 +17,22 @@ from benchmark.errors import EvenloadError
 
 __all__ = ["read_record", "summary", "to_json", "write_folder"]
 
+#: end of the name under which the old folder waits where two folders cannot be exchanged in one step
+_OLD = ".old"
+#: seconds to wait for another run that is looking for left-overs beside the same folder
+PATIENCE = 2.0
+
 
 def to_json(data: Any) -> str:
     """Serialise with stable key order and shortest exact numbers."""
     return json.dumps(data, indent=1, ensure_ascii=False, allow_nan=False, sort_keys=False) + "\n"
+
+
+def _probability(found: Any) -> Any:
+    """Probabilities of the draws with their sampling errors; null without draws."""
+    if found is None:
+        return None
+    return {key: found[key] for key in ("draws", "seed", "word", "reaches", "above_one", "without_candidate")}
 
 
 def summary(record: Mapping[str, Any]) -> dict[str, Any]:
@@ -47,6 +61,7 @@ def summary(record: Mapping[str, Any]) -> dict[str, Any]:
         "advantage_low": verdict["advantage_low"],
         "advantage_high": verdict["advantage_high"],
         "required_advantage": study["required_advantage"],
+        "probability": _probability(record.get("uncertainty")),
         "metric": study["metric"],
         "policy": study["primary_policy"],
         "strongest_contender": primary["strongest"],
@@ -66,39 +81,113 @@ def summary(record: Mapping[str, Any]) -> dict[str, Any]:
 
 
 def write_folder(folder: Path, fill: Callable[[Path], None]) -> None:
-    """Fill a new folder beside ``folder`` and swap it in; a killed or failed run leaves the old folder or none.
+    """Fill a new folder beside ``folder`` and swap it in; whenever a run ends, there is the old folder or the new one.
+
+    What killed runs left beside the folder is cleared away; the folder of a run that is still going is not.
 
     Raises
     ------
     EvenloadError
         When the place cannot be written.
     """
-    folder = folder.absolute()
-    try:
-        folder.parent.mkdir(parents=True, exist_ok=True)
+    folder = folder.resolve() if folder.is_symlink() else folder.absolute()
+    with contextlib.ExitStack() as until_the_end:
+        try:
+            temporary = _made_beside(folder, until_the_end)
+            # half a new folder, or after the swap the old one
+            until_the_end.callback(shutil.rmtree, temporary, ignore_errors=True)
+            fill(temporary)
+            temporary.chmod(0o755)
+            _swap_in(temporary, folder)
+        except OSError as error:
+            message = f"{folder}: cannot be written ({error.strerror or error}); nothing was written"
+            raise EvenloadError(message) from error
+
+
+def _made_beside(folder: Path, held: contextlib.ExitStack) -> Path:
+    """Make an empty folder beside ``folder``, held until the end, so that no other run takes it for a left-over."""
+    folder.parent.mkdir(parents=True, exist_ok=True)
+    with _held(folder.parent, PATIENCE) as alone:
+        if alone:
+            _clear_left_over(folder)
         if folder.exists() and not _is_record(folder):
             message = f"{folder.name}: exists and is not a record folder; nothing was written"
             raise EvenloadError(message)
-        temporary = Path(tempfile.mkdtemp(prefix=f".{folder.name}.", dir=folder.parent))
-    except OSError as error:
-        message = f"{folder}: cannot be written ({error.strerror or error}); nothing was written"
-        raise EvenloadError(message) from error
-    old = temporary.with_name(temporary.name + ".old")
+        temporary = Path(tempfile.mkdtemp(prefix=_prefix(folder), dir=folder.parent))
+        held.enter_context(_held(temporary))
+    return temporary
+
+
+def _prefix(folder: Path) -> str:
+    """How the folders beside ``folder`` begin in which it is made."""
+    return f".{folder.name[:100]}.evenload-"
+
+
+@contextlib.contextmanager
+def _held(folder: Path, patience: float = 0.0) -> Iterator[bool]:
+    """Hold a folder for this process alone until the end, however that comes; tells whether that is certain.
+
+    ``patience``: seconds to wait for another process. Where the system has no such locks the answer is False.
+    """
     try:
-        fill(temporary)
-        temporary.chmod(0o755)
-        if folder.exists():
-            os.replace(folder, old)  # noqa: PTH105 - both names must be swapped the same way
-        os.replace(temporary, folder)  # noqa: PTH105
-    except OSError as error:
-        if old.exists() and not folder.exists():
-            os.replace(old, folder)  # noqa: PTH105
-        message = f"{folder}: cannot be written ({error.strerror or error}); nothing was written"
-        raise EvenloadError(message) from error
+        import fcntl
+    except ImportError:
+        yield False
+        return
+    place, latest, certain = os.open(folder, os.O_RDONLY), time.monotonic() + patience, False
+    try:
+        while not certain:
+            try:
+                fcntl.flock(place, fcntl.LOCK_EX | fcntl.LOCK_NB)
+                certain = True
+            except OSError:
+                if time.monotonic() >= latest:
+                    break
+                time.sleep(0.01)
+        yield certain
     finally:
-        with contextlib.suppress(OSError):
-            shutil.rmtree(temporary, ignore_errors=True)
-            shutil.rmtree(old, ignore_errors=True)
+        os.close(place)
+
+
+def _clear_left_over(folder: Path) -> None:
+    """Clear away what killed runs left; put the old folder back if one was killed between two renames."""
+    for left in sorted(folder.parent.glob(f"{glob.escape(_prefix(folder))}*")):
+        with contextlib.suppress(OSError), _held(left) as free:
+            if not free:
+                continue
+            if left.suffix == _OLD and not folder.exists():
+                os.replace(left, folder)  # noqa: PTH105
+            else:
+                shutil.rmtree(left, ignore_errors=True)
+
+
+def _swap_in(new: Path, folder: Path) -> None:
+    """Put ``new`` at ``folder``; what was there is at ``new`` afterwards."""
+    if not folder.exists():
+        os.replace(new, folder)  # noqa: PTH105
+        return
+    if _exchange(new, folder):
+        return
+    old = new.with_name(new.name + _OLD)
+    os.replace(folder, old)  # noqa: PTH105 - killed from here on, the next run puts it back
+    try:
+        os.replace(new, folder)  # noqa: PTH105
+    except BaseException:
+        os.replace(old, folder)  # noqa: PTH105
+        raise
+    os.replace(old, new)  # noqa: PTH105
+
+
+def _exchange(one: Path, two: Path) -> bool:
+    """Exchange two folders in one step, where the system can (Linux: renameat2); tells whether it did."""
+    import ctypes
+
+    try:
+        rename = ctypes.CDLL(None, use_errno=True).renameat2
+    except (OSError, AttributeError, TypeError):
+        return False
+    here, exchange = -100, 2  # AT_FDCWD, RENAME_EXCHANGE of <linux/fs.h>
+    return bool(rename(here, os.fsencode(one), here, os.fsencode(two), exchange) == 0)
 
 
 def _is_record(folder: Path) -> bool:
@@ -113,8 +202,9 @@ def read_record(path: Path) -> dict[str, Any]:
     EvenloadError
         Missing, unreadable or of another schema.
     """
-    file = path / "record.json" if path.is_dir() else path
+    file = path
     try:
+        file = path / "record.json" if path.is_dir() else path
         record = json.loads(file.read_text(encoding="utf-8"))
     except (OSError, ValueError, RecursionError) as error:
         message = f"{file}: is not a readable record ({type(error).__name__})"

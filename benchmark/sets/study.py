@@ -12,7 +12,17 @@ from benchmark.sets.circuit_file import CircuitSpec
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.values import Value
 
-__all__ = ["REQUIREMENTS", "Choice", "NodePair", "Policy", "Requirement", "Side", "Study"]
+__all__ = [
+    "REQUIREMENTS",
+    "Choice",
+    "DrawSettings",
+    "NodePair",
+    "Policy",
+    "Requirement",
+    "Side",
+    "Study",
+    "draws_allowed",
+]
 
 #: requirement -> (unit of its limit, what it demands)
 REQUIREMENTS: dict[str, tuple[str, str]] = {
@@ -119,6 +129,29 @@ class Policy:
     metric: str
 
 
+#: draws at least (eight independent nets of two) and at most
+LEAST_DRAWS, MOST_DRAWS = 16, 2**30
+
+
+def draws_allowed(number: int) -> str:
+    """Return what a number of draws must be, in words; empty when it may be this one."""
+    if LEAST_DRAWS <= number <= MOST_DRAWS and number & (number - 1) == 0:
+        return ""
+    near = min(max(number, LEAST_DRAWS), MOST_DRAWS).bit_length() - 1
+    nearest_two = dict.fromkeys([1 << near, min(2 << near, MOST_DRAWS)])
+    return f"a power of two from {LEAST_DRAWS} to {MOST_DRAWS}, such as {' or '.join(map(str, nearest_two))}"
+
+
+@dataclass(frozen=True)
+class DrawSettings:
+    """How many draws of all ranges together (0: none), from which seed, and when a probability is called likely."""
+
+    number: int = 0
+    seed: int = 0
+    likely: float = 0.9
+    unlikely: float = 0.1
+
+
 @dataclass(frozen=True)
 class Study:
     """A checked study in SI."""
@@ -159,6 +192,7 @@ class Study:
     path: Path
     default_fields: tuple[str, ...] = field(default=())
     topology: str = "same-netlist"
+    draws: DrawSettings = field(default_factory=DrawSettings)
     #: supplies per zoom of the search
     zoom_points: int = 33
 

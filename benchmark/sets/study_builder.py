@@ -13,7 +13,7 @@ from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate_values
-from benchmark.sets.study import NodePair, Side, Study
+from benchmark.sets.study import DrawSettings, NodePair, Side, Study, draws_allowed
 from benchmark.sets.study_circuits import CircuitDeclaration, study_circuits
 from benchmark.sets.study_policy import check_declared_supplies, read_policy, read_requirements
 from benchmark.sets.study_schema import BackBiasKnob, FrozenKnob, KnobsTable, SideTable, StudyFile
@@ -33,7 +33,7 @@ LENGTHS = ("average_net_length", "average_net_pitches")
 GATING = ("residual_leakage", "wake_energy_cycles")
 #: knob -> values that a side with it states
 MITIGATION = {
-    "copies": ("routing_overhead", "repeated_share"),
+    "copies": ("routing_overhead", "repeated_share", "area_share"),
     "back_bias": ("body_factor", "back_bias_power"),
 }
 
@@ -393,6 +393,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     leakage_band = build.number("conditions.guard_band.leakage", parsed.conditions.guard_band.leakage, 1.0, 1e6)
     points = int(build.number("search.supply_points", parsed.search.supply_points, 3, 5001))
     refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
+    draws = _draws(build)
     _check_transient(build, points)
     _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
     _check_self_comparison(build, candidate, contenders)
@@ -437,7 +438,19 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         file.text,
         file.path,
         topology=parsed.workload.topology,
+        draws=draws,
     )
+
+
+def _draws(build: _Builder) -> DrawSettings:
+    table = build.parsed.uncertainty
+    if table.draws != 0 and (allowed := draws_allowed(table.draws)):
+        build.refuse("uncertainty.draws", "is no number of draws", str(table.draws), f"0 for none, or {allowed}")
+    if table.seed < 0:
+        build.refuse("uncertainty.seed", "is negative", str(table.seed), "0 or above")
+    likely = build.number("uncertainty.likely", table.likely, 0.5, 1.0)
+    unlikely = build.number("uncertainty.unlikely", table.unlikely, 0.0, 0.5)
+    return DrawSettings(table.draws, table.seed, likely, unlikely)
 
 
 def _check_transient(build: _Builder, points: int) -> None:

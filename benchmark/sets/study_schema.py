@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import datetime
+from decimal import Decimal
 from typing import Literal
 
 from pydantic import Field
@@ -228,6 +229,19 @@ class VerdictTable(FileModel):
     )
 
 
+class UncertaintyTable(FileModel):
+    """Draws of all stated ranges together, and when their probability is called likely."""
+
+    draws: Whole = Field(default=0, description="Draws of all ranges together: 0 for none, else a power of two from 16")
+    seed: Whole = Field(default=0, description="Another seed gives other draws; results differ within the stated error")
+    likely: Number = Field(
+        default=Decimal("0.9"), description="From this probability of reaching M on, reaching it is called likely"
+    )
+    unlikely: Number = Field(
+        default=Decimal("0.1"), description="Up to this probability of reaching M, reaching it is called unlikely"
+    )
+
+
 class SearchTable(FileModel):
     """Resolution of the supply search."""
 
@@ -258,6 +272,9 @@ class StudyFile(FileModel):
     requirements: dict[str, RequirementTable] = Field(description="Q: what the block must reach")
     policy: PolicyTable = Field(description="P and X: how design points are chosen and what is compared")
     verdict: VerdictTable = Field(description="M: the required advantage")
+    uncertainty: UncertaintyTable = Field(
+        default=UncertaintyTable(), description="Draws of all stated ranges together, fixed before the run"
+    )
     search: SearchTable = Field(description="Resolution of the supply search")
 
 

@@ -12,8 +12,8 @@ from tests.near import near
 DRAWS = 2**14
 
 
-def shares(function, dimension: int):
-    both = net("function", 2 * dimension, Plan(1, DRAWS, 0), 0)
+def shares(function, dimension: int, seed: int = 0):
+    both = net("function", 2 * dimension, Plan(1, DRAWS, seed), 0)
     a, b = both[:, :dimension], both[:, dimension:]
     mixed = []
     for i in range(dimension):
@@ -57,7 +57,10 @@ def test_g_function():
     assert exact[0] / variance == near(0.7162, rel=0, abs=5e-5)
     assert exact[1] / variance == near(0.1790, rel=0, abs=5e-5)
     for item, part in zip(found, exact / variance, strict=True):
-        assert item.first == near(part, rel=0, abs=0.006)
+        assert abs(item.first - part) <= 5.0 * item.first_error
+    # single scrambles may be off by 0.01; the middle one of seven is not
+    first = np.median([[item.first for item in shares(g_function, 8, seed)] for seed in range(7)], axis=0)
+    assert first == near(exact / variance, rel=0, abs=1e-3)
 
 
 def test_a_constant_output_is_refused_in_words():

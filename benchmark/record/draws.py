@@ -1,0 +1,157 @@
+"""The draws of a study in its record: probabilities, shares, what to measure next (layer 8)."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Any
+
+import numpy as np
+
+from benchmark.catalogue import QUANTITIES
+from benchmark.decide.compare import Comparison
+from benchmark.decide.draw_block import DrawTask, resolution
+from benchmark.decide.next_measurement import NEGLIGIBLE, next_measurements, nothing_to_measure
+from benchmark.decide.uncertainty import Estimate, Told, Uncertainty, uncertainty
+from benchmark.decide.variance_shares import variance_shares
+from benchmark.draws.plan import plan_of
+from benchmark.draws.values import drawn_keys
+from benchmark.evaluate.batch import Batch
+from benchmark.evaluate.search import supply_grid
+from benchmark.evaluate.side import values_by_key
+from benchmark.sets.study import Choice, DrawSettings, Study
+from benchmark.sets.values import Value
+
+__all__ = ["draw_rows"]
+
+#: inputs whose total share of the variance is worked out: those with the largest first-order share
+MOST_TOTALS = 8
+#: draws behind each total share
+TOTAL_DRAWS = 128
+
+
+def draw_rows(
+    study: Study, frozen: Mapping[str, Choice], settings: DrawSettings, jobs: int, told: Told
+) -> dict[str, Any] | None:
+    """Draw the headline pair under the primary policy; None when no draws are asked for or nothing has a range.
+
+    Parameters
+    ----------
+    study : Study
+    frozen : mapping
+        What each side chose at the best estimate; its frozen parts are kept in every draw.
+    settings : DrawSettings
+    jobs : int
+        Processes; they change no digit.
+    told : callable
+        Told the share done.
+    """
+    pair = study.pair(study.headline)
+    values = values_by_key(study, pair)
+    if settings.number == 0 or not drawn_keys(values):
+        return None
+    task = DrawTask(study, pair, study.policy.primary, frozen, plan_of(settings.number, settings.seed))
+    found = uncertainty(task, jobs, told)
+    return {
+        "draws": found.draws,
+        "blocks": found.blocks,
+        "seed": found.seed,
+        "word": _word(found, settings),
+        "likely": settings.likely,
+        "unlikely": settings.unlikely,
+        "inputs": found.inputs,
+        "judgement": sum(values[share.key].evidence in ("assumed", "invented") for share in found.shares),
+        "reaches": vars(found.reaches),
+        "above_one": vars(found.above_one),
+        "without_candidate": found.without_candidate,
+        "without_contender": found.without_contender,
+        "unbounded": found.unbounded,
+        "quantiles": [{"share": q, **vars(estimate)} for q, estimate in found.quantiles.items()],
+        "mean_log": vars(found.mean_log),
+        "sd_log": vars(found.sd_log),
+        "constant": found.constant,
+        "worth_of_all": vars(found.worth_of_all),
+        "negligible": NEGLIGIBLE,
+        "stop": nothing_to_measure(found),
+        "shares": _share_rows(found, values, study.required_advantage),
+        "totals": _totals(task, found),
+        "strongest": dict(found.strongest),
+        "bands": _band_rows(study, frozen, found),
+    }
+
+
+def _word(found: Uncertainty, settings: DrawSettings) -> str:
+    """The word for the probability, with the thresholds of the study; an error that straddles one says so."""
+    low, high = _two_errors(found.reaches)
+    if low >= settings.likely:
+        return "likely reached"
+    if high <= settings.unlikely:
+        return "unlikely to be reached"
+    if found.reaches.value >= settings.likely or found.reaches.value <= settings.unlikely:
+        return "within the sampling error of a threshold: draw more"
+    return "open"
+
+
+def _two_errors(estimate: Estimate) -> tuple[float, float]:
+    return estimate.value - 2.0 * estimate.error, estimate.value + 2.0 * estimate.error
+
+
+def _share_rows(found: Uncertainty, values: Mapping[str, Value], required: float) -> list[dict[str, Any]]:
+    measured = {item.key: item for item in next_measurements(found, required)}
+    rows = []
+    for share in found.shares:
+        item, value = measured[share.key], values[share.key]
+        rows.append(
+            {
+                "key": share.key,
+                "name": value.name,
+                "unit": QUANTITIES[value.name].unit,
+                "evidence": value.evidence,
+                "shape": share.shape,
+                "share": share.share.value,
+                "share_error": share.share.error,
+                "worth": item.worth,
+                "worth_error": item.error,
+                "worth_halved": item.worth_halved,
+                "enough": item.enough,
+            }
+        )
+    return rows
+
+
+def _totals(task: DrawTask, found: Uncertainty) -> list[dict[str, Any]]:
+    """Total shares of the inputs with the largest first-order shares; empty when they cannot be told."""
+    if found.constant or found.without_candidate or found.without_contender or found.unbounded:
+        return []
+    keys = [share.key for share in found.shares if share.share.value > 2.0 * share.share.error][:MOST_TOTALS]
+    if not keys:
+        return []
+    try:
+        return [vars(item) for item in variance_shares(task, keys, TOTAL_DRAWS)]
+    except ValueError:  # a draw of these sets without an advantage
+        return []
+
+
+def _band_rows(study: Study, frozen: Mapping[str, Choice], found: Uncertainty) -> list[dict[str, Any]]:
+    """What 80 % of the draws hold of energy and time, at every supply of the coarse grid."""
+    pair = study.pair(study.headline)
+    comparison = Comparison(resolution(study), pair, Batch.best_estimate(), frozen=frozen)
+    rows = []
+    for side, run in {"candidate": comparison.candidate, **comparison.contenders}.items():
+        grid = run.grid(frozen[comparison.key(run)])
+        supplies = supply_grid(run.problem)[0]
+        band = found.bands[side]
+        for column, supply in enumerate(supplies):
+            energy, time = band["energy"][column], band["time"][column]
+            if np.isfinite(energy).all() and np.isfinite(time).all():
+                rows.append(
+                    {
+                        "side": run.problem.side.id,
+                        "role": run.problem.role,
+                        "supply": float(supply),
+                        "energy_low": float(grid.energy[0, column] * energy[0]),
+                        "energy_high": float(grid.energy[0, column] * energy[1]),
+                        "time_low": float(grid.time[0, column] * time[0]),
+                        "time_high": float(grid.time[0, column] * time[1]),
+                    }
+                )
+    return rows
