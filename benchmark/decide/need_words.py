@@ -108,13 +108,14 @@ def _answer(need: Need) -> str:
     )
 
 
-def need_text(need: Need) -> str:
-    """Return the whole answer for one axis and one level as one sentence, edges named."""
-    parts = [_answer(need)]
-    for edge in need.edges:
+def need_text(*needs: Need) -> str:
+    """Return the answers for one axis, one or several levels, as sentences; what cuts the axis is said once."""
+    parts = [_answer(need) for need in needs]
+    for edge in needs[0].edges:
         side = "above" if edge.defined_below else "below"
-        parts.append(f"no advantage {side} {need.axis.text(edge.x)} ({edge.why or 'a side has no permitted point'})")
-    return ". ".join(parts)
+        why = edge.why or "a side has no permitted point"
+        parts.append(f"No advantage {side} {needs[0].axis.text(edge.x)} ({why})")
+    return ". ".join(text[0].upper() + text[1:] for text in parts)
 
 
 def _row(need: Need, crossing: Crossing | None) -> dict[str, Any]:

@@ -8,7 +8,7 @@ every value of the second axis. Boxes of product classes are usual figures, comm
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -72,9 +72,7 @@ class OpportunityMap:
     today: tuple[float, float, float]
 
 
-def opportunity_map(
-    trials: Trials, kind: Literal["activity", "duty"], levels: tuple[float, ...] = (), count: int = 13
-) -> OpportunityMap:
+def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), count: int = 13) -> OpportunityMap:
     """Evaluate the map.
 
     Parameters
@@ -92,6 +90,9 @@ def opportunity_map(
     UsageError
         When the study has no deadline to move, or no such second axis.
     """
+    if kind not in SECOND:
+        message = f"a map over {kind!r} is not known; known are {', '.join(SECOND)}"
+        raise UsageError(message)
     known = known_axes(trials)
     if DEADLINE not in known:
         message = "a map needs a clocked study, or a required time that is one number"

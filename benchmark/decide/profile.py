@@ -29,7 +29,9 @@ CLOSE = 1.0e-13
 #: more than this beside the level at the converged place is a jump, not a root
 JUMP = 1.0e-6
 #: relative width to which an edge is found
-EDGE = 1.0e-9
+EDGE = 1.0e-6
+#: relative distance at which both sides of a jump are looked at
+ASIDE = 1.0e-8
 #: halvings of a bracket, at most
 MOST = 100
 
@@ -303,7 +305,7 @@ def find_shares(
 
 def _jump(trials: Trials, line: Line, x: float) -> str:
     """Say what differs just below and just above a jump."""
-    step = max(abs(x), np.finfo(float).tiny) * 10.0 * EDGE
+    step = max(abs(x), np.finfo(float).tiny) * ASIDE
     answers = trials([line.trial(x - step), line.trial(x + step)])
     texts = []
     for position, name in enumerate(answers.names):

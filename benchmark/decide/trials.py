@@ -119,7 +119,7 @@ class Trials:
         *,
         comparison: Callable[..., Comparison] = Timed,
         frozen: Mapping[str, Choice] | None = None,
-        told: Callable[[int], None] = lambda rows: None,
+        told: Callable[[int], None] | None = None,
     ) -> None:
         self.study, self.pair = study, pair
         self.values = values_by_key(study, pair)
@@ -149,7 +149,8 @@ class Trials:
             for start in range(0, len(rows), ROWS_AT_ONCE):
                 chunk = rows[start : start + ROWS_AT_ONCE]
                 parts.append((chunk, self._evaluate(study, [trials[row] for row in chunk])))
-                self._told(len(chunk))
+                if self._told is not None:
+                    self._told(len(chunk))
         return _in_order(parts, len(trials))
 
     def why(self, trial: Trial) -> str:

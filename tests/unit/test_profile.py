@@ -73,7 +73,7 @@ def test_edges_are_found_and_the_stretch_up_to_them_is_searched():
     # the root lies between the last grid point with an advantage and the edge at 2.9
     found = profile(lambda x: 4.0 / x**1.5 if x < 2.9 else math.nan, 1.0, 10.0, 4.0 / 2.85**1.5)
     (edge,) = found.edges
-    assert edge.x == near(2.9, rel=1e-9)
+    assert edge.x == near(2.9, rel=1e-6)
     assert edge.defined_below
     assert edge.why == "nothing at 2.9"
     assert [c.x for c in found.crossings] == near([2.85], rel=1e-9)
@@ -82,7 +82,7 @@ def test_edges_are_found_and_the_stretch_up_to_them_is_searched():
 def test_a_window_of_advantages_has_two_edges_and_nowhere_is_no_error():
     found = profile(lambda x: 2.0 if 1.0 < x < 10.0 else math.nan, 0.1, 100.0)
     assert [edge.defined_below for edge in found.edges] == [False, True]
-    assert [edge.x for edge in found.edges] == near([1.0, 10.0], rel=1e-8)
+    assert [edge.x for edge in found.edges] == near([1.0, 10.0], rel=1e-6)
     assert found.crossings == ()
     nowhere = profile(lambda x: math.nan, 0.1, 100.0)
     assert nowhere.edges == nowhere.crossings == ()

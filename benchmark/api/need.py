@@ -1,0 +1,358 @@
+"""What would be needed: break-evens, required values, trade curves, maps, who must improve, what flips the answer."""
+
+from __future__ import annotations
+
+import itertools
+import math
+from collections.abc import Callable, Iterable, Mapping, Sequence
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from benchmark.api.session import Place, load_study
+from benchmark.api.views import StudyView
+from benchmark.errors import UsageError, nearest
+
+if TYPE_CHECKING:
+    import pandas
+
+    from benchmark.decide.axes import Axis
+    from benchmark.decide.trials import Trials
+
+__all__ = ["Needed", "flips", "improve", "need", "opportunity", "sheet", "trade"]
+
+Told = Callable[[int], None]
+#: ends of a range, in the unit of the value
+Range = tuple[float | str, float | str]
+REQUIRED_ADVANTAGE = "required_advantage"
+
+
+@dataclass(frozen=True, eq=False, repr=False)
+class Needed:
+    """An answer in words and as rows.
+
+    Attributes
+    ----------
+    heading : tuple of str
+        Study, node pair, policy, and the advantage as it is today.
+    facts : tuple of (str, str)
+        Name and sentence.
+    columns : tuple of str
+        Of the rows, in order; values are in the unit a column names, or the one of the column ``unit``.
+    rows : tuple of mapping
+        Numbers and words; nan where there is no number.
+    """
+
+    heading: tuple[str, ...]
+    facts: tuple[tuple[str, str], ...]
+    columns: tuple[str, ...]
+    rows: tuple[Mapping[str, Any], ...]
+
+    @property
+    def text(self) -> str:
+        """Return heading and sentences as plain lines."""
+        return "\n".join([*self.heading, *(f"{name}: {text}" for name, text in self.facts)])
+
+    @property
+    def frame(self) -> pandas.DataFrame:
+        """Return the rows as a tidy frame."""
+        import pandas
+
+        return pandas.DataFrame([dict(row) for row in self.rows], columns=list(self.columns))
+
+    def __repr__(self) -> str:
+        return f"Needed({len(self.facts)} answers, {len(self.rows)} rows)"
+
+
+def _level(view: StudyView, advantage: float | None) -> float:
+    level = view.study.required_advantage if advantage is None else float(advantage)
+    if not (math.isfinite(level) and level > 0.0):
+        message = f"an advantage above 0 is needed, found {level:g}"
+        raise UsageError(message)
+    return level
+
+
+def _trials(study: StudyView | Place, pair: str, told: Told | None) -> tuple[StudyView, Trials]:
+    from benchmark.decide.trials import Trials
+
+    view = study if isinstance(study, StudyView) else load_study(study)
+    labels = [item.label for item in view.study.pairs]
+    label = pair or view.study.headline
+    if label not in labels:
+        message = f"there is no node pair {label!r}; known are {', '.join(labels)}; {nearest(label, labels)}"
+        raise UsageError(message.rstrip("; "))
+    return view, Trials(view.study, view.study.pair(label), told=told)
+
+
+def _heading(view: StudyView, trials: Trials) -> tuple[str, ...]:
+    study = trials.study
+    best = trials.best
+    if best.state(0):
+        today = f"no advantage today: {best.state(0)} ({trials.why({})})"
+    else:
+        strongest = best.names[int(best.strongest[0])]
+        today = f"advantage today {best.advantage[0]:.4g} in {study.policy.metric} against {strongest}"
+        today += "" if best.meets[0] else "; a listed requirement is missed"
+    return (
+        f"Study {study.id}: {study.title}",
+        *(f"What-if: {name} = {text}" for name, text in view.what_if.items()),
+        f"Node pair {trials.pair.label}, policy {trials.policy}, both sides optimised at every value; {today}",
+    )
+
+
+def _ranged(axes: Sequence[Axis], over: Sequence[Range]) -> list[Axis]:
+    """Give axes the ranges asked for, in order."""
+    if len(over) > len(axes):
+        message = f"{len(over)} ranges for {len(axes)} value(s)"
+        raise UsageError(message)
+    ends = [tuple(axis.si(str(end)) for end in pair) for axis, pair in zip(axes, over, strict=False)]
+    found = [axis.over(low, high) for axis, (low, high) in zip(axes, ends, strict=False)]
+    return [*found, *axes[len(found) :]]
+
+
+def need(
+    study: StudyView | Place,
+    names: Iterable[str] = (),
+    *,
+    advantage: float | None = None,
+    pair: str = "",
+    over: Sequence[Range] = (),
+    points: int = 17,
+    told: Told | None = None,
+) -> Needed:
+    """Find where the advantage is 1 (break-even) and where it is the required one, axis by axis.
+
+    Parameters
+    ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
+    names : iterable of str, optional
+        Values by ledger key (``technology.name``) or by name; also ``temperature``, ``required_time``, ``deadline``,
+        ``on_off_ratio``, ``awake_share``, ``required_advantage``. By default the usual axes of a workload.
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    over : sequence of (low, high), optional
+        Ranges for the names, in order, in the units of the values.
+    points : int
+        Grid points on which each range is scanned before crossings are solved for.
+    told : callable, optional
+        Told how many comparisons have been made.
+
+    Returns
+    -------
+    Needed
+        One row per crossing.
+
+    Raises
+    ------
+    UsageError
+        For an unknown name, pair, range or level.
+    """
+    from benchmark.decide.axes import find_axis, usual_axes
+    from benchmark.decide.break_even import find_needs
+    from benchmark.decide.need_words import NEED_COLUMNS, need_rows, need_text
+
+    view, trials = _trials(study, pair, told)
+    asked = list(names)
+    level = _level(view, advantage)
+    axes = [find_axis(trials, name) for name in asked if name != REQUIRED_ADVANTAGE] if asked else usual_axes(trials)
+    if points < 2:
+        message = f"a scan needs at least 2 points, found {points}"
+        raise UsageError(message)
+    found = find_needs(trials.study, trials.pair, _ranged(axes, over), (1.0, level), trials=trials, count=points)
+    facts = []
+    for axis, group in itertools.groupby(found, key=lambda item: item.axis):
+        facts.append((axis.name, f"{axis.meaning}, today {axis.text(axis.best)}. {need_text(*group)}"))
+    rows = need_rows(found)
+    if not asked or REQUIRED_ADVANTAGE in asked:
+        text, row = _required_advantage(trials, level)
+        facts.append((REQUIRED_ADVANTAGE, text))
+        rows.append({column: row.get(column, "") for column in NEED_COLUMNS})
+    return Needed(_heading(view, trials), tuple(facts), NEED_COLUMNS, tuple(rows))
+
+
+def _required_advantage(trials: Trials, level: float) -> tuple[str, dict[str, Any]]:
+    """Where the answer changes with the required advantage itself: at the advantage there is."""
+    today = float(trials.best.advantage[0])
+    if math.isnan(today):
+        text = f"no value of it is met: {trials.best.state(0)}"
+    else:
+        text = f"met up to {today:.4g} ({today / level:.4g} times the {level:.4g} asked for), missed above"
+    row = {
+        "name": REQUIRED_ADVANTAGE,
+        "unit": "1",
+        "today": level,
+        "advantage_today": today,
+        "level": today,
+        "answer": "undefined" if math.isnan(today) else "crossings",
+        "value": today,
+        "factor": today / level,
+        "difference": today - level,
+        "standard_deviations": math.nan,
+        "advantage_at_or_above_level": "below",
+        "low": math.nan,
+        "high": math.nan,
+        "words": text,
+    }
+    return text, row
+
+
+def trade(
+    study: StudyView | Place,
+    first: str,
+    second: str,
+    *,
+    advantage: float | None = None,
+    pair: str = "",
+    over: Sequence[Range] = (),
+    points: int = 17,
+    told: Told | None = None,
+) -> Needed:
+    """Find the value of ``second`` that each value of ``first`` asks for; parameters as in ``need``.
+
+    Returns
+    -------
+    Needed
+        Rows ready for drawing; the first one is today's point.
+
+    Raises
+    ------
+    UsageError
+        For an unknown name, pair, range or level, or when both names move the same value.
+    """
+    from benchmark.decide.axes import find_axis
+    from benchmark.decide.trade import TRADE_COLUMNS, trade_curve, trade_rows
+
+    view, trials = _trials(study, pair, told)
+    level = _level(view, advantage)
+    one, other = _ranged([find_axis(trials, first), find_axis(trials, second)], over)
+    rows = trade_rows(trade_curve(trials, one, other, level, points, points))
+    facts = []
+    for row in rows:
+        place = f"{one.name} {row['first_value']:.4g} {one.unit}".removesuffix(" 1")
+        if row["answer"] in ("root", "jump", "today"):
+            words = f"{other.name} {row['second_value']:.4g} {other.unit}".removesuffix(" 1")
+            words += f" ({row['answer']})" if row["answer"] != "root" else ""
+            words += f", {level:.4g} or more {row['at_or_above_level']}" if row["at_or_above_level"] else ""
+        else:
+            words = {"always": "any value will do", "never": "no value will do"}.get(row["answer"], "no advantage")
+        facts.append((place, words + (f"; cut {row['cut_by']}" if row["cut_by"] else "")))
+    return Needed(_heading(view, trials), tuple(facts), TRADE_COLUMNS, tuple(rows))
+
+
+def sheet(
+    study: StudyView | Place,
+    *,
+    advantage: float | None = None,
+    pair: str = "",
+    points: int = 17,
+    told: Told | None = None,
+) -> Needed:
+    """Return what each decisive value of the candidate must be, alone; parameters as in ``need``.
+
+    Raises
+    ------
+    UsageError
+        For an unknown pair or level, or when there is no advantage today.
+    """
+    from benchmark.decide.specification import SHEET_COLUMNS, sheet_rows, specification
+
+    view, trials = _trials(study, pair, told)
+    found = specification(trials, _level(view, advantage), points)
+    rows = sheet_rows(found)
+    facts = [(row["name"], f"{row['reachable']}. {row['words']}") for row in rows]
+    if not facts:
+        facts = [("nothing is decisive", "no value of the candidate alone changes on which side the answer lies")]
+    return Needed(_heading(view, trials), tuple(facts), SHEET_COLUMNS, tuple(rows))
+
+
+def opportunity(
+    study: StudyView | Place,
+    kind: str = "activity",
+    *,
+    advantage: float | None = None,
+    pair: str = "",
+    points: int = 13,
+    told: Told | None = None,
+) -> Needed:
+    """Return the map of the advantage over the deadline and ``kind``: "activity" or "duty"; parameters as in ``need``.
+
+    Returns
+    -------
+    Needed
+        Rows of kind "today", "point", "boundary" (exact crossings of 1 and of the level) and "class" (usual place of
+        product classes, common practice, no source).
+
+    Raises
+    ------
+    UsageError
+        For another kind, or a study without a deadline or without that axis.
+    """
+    from benchmark.decide.opportunity import MAP_COLUMNS, map_rows, opportunity_map
+
+    view, trials = _trials(study, pair, told)
+    level = _level(view, advantage)
+    found = opportunity_map(trials, kind, tuple(dict.fromkeys((1.0, level))), points)
+    facts = []
+    for value, points_on in found.boundary.items():
+        listed = ", ".join(f"{found.second.text(y)} at {x:.4g} s" for x, y in points_on)
+        facts.append((f"boundary of advantage {value:.4g}", listed or "none on the map"))
+    won = float((found.advantage >= level).mean())
+    facts.append((f"share of the map with {level:.4g} or more", f"{won:.0%} of {found.advantage.size} points"))
+    return Needed(_heading(view, trials), tuple(facts), MAP_COLUMNS, tuple(map_rows(found)))
+
+
+def improve(
+    study: StudyView | Place, *, advantage: float | None = None, pair: str = "", told: Told | None = None
+) -> Needed:
+    """Return the largest advantage that perfecting one physical term could give; parameters as in ``need``.
+
+    Raises
+    ------
+    UsageError
+        For an unknown pair or level.
+    """
+    from benchmark.decide.gap import GAP_COLUMNS, gap_rows, improvements
+
+    view, trials = _trials(study, pair, told)
+    level = _level(view, advantage)
+    rows = gap_rows(improvements(trials), level)
+    facts = []
+    for row in rows:
+        words = row["state"] or f"at most {row['advantage']:.4g}, then limited by {row['limit']}"
+        words += f"; {level:.4g} {'reached' if row['reaches'] == 'yes' else 'not reached'}"
+        facts.append((row["perfected"], words + (f" ({row['side']})" if row["side"] not in ("", "candidate") else "")))
+    return Needed(_heading(view, trials), tuple(facts), GAP_COLUMNS, tuple(rows))
+
+
+def flips(
+    study: StudyView | Place,
+    *,
+    up_to: int = 2,
+    advantage: float | None = None,
+    pair: str = "",
+    told: Told | None = None,
+) -> Needed:
+    """Return the smallest sets of inputs that, inside their ranges, change the side of the level.
+
+    ``up_to``: largest set looked for, 1 to 3; other parameters as in ``need``.
+
+    Raises
+    ------
+    UsageError
+        For an unknown pair or level, another ``up_to``, or a size that would need too many comparisons.
+    """
+    from benchmark.decide.flipping_set import FLIP_COLUMNS, flip_rows, flipping_sets
+
+    view, trials = _trials(study, pair, told)
+    found = flipping_sets(trials, _level(view, advantage), up_to)
+    facts = [("smallest set", found.text)]
+    for number, flip in enumerate(found.flips, start=1):
+        moved = "; ".join(
+            f"{axis.name} from {axis.text(axis.best)} to {axis.text(value)} "
+            f"({distance:+.3g} standard deviations, {axis.value.evidence if axis.value else ''})"
+            for axis, value, distance in zip(flip.axes, flip.values, flip.distances, strict=True)
+        )
+        facts.append((f"set {number}, distance {flip.implausibility:.3g}", moved))
+    return Needed(_heading(view, trials), tuple(facts), FLIP_COLUMNS, tuple(flip_rows(found)))

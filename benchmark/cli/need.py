@@ -1,0 +1,153 @@
+"""The command ``need``: where the answer changes, and what would be needed (layer 10)."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import math
+import sys
+from collections.abc import Mapping, Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import typer
+
+from benchmark.cli.chosen import study_inputs
+from benchmark.cli.commands import check_folders
+from benchmark.errors import UsageError
+
+if TYPE_CHECKING:
+    from benchmark.api.need import Needed
+
+__all__ = ["need_command"]
+
+FORMATS = ("text", "csv", "json")
+#: longest name that stands beside its sentence in one table
+SHORT = 32
+
+
+def _range(text: str) -> tuple[str, str]:
+    low, dots, high = text.partition("..")
+    if not dots or not low.strip() or not high.strip():
+        message = f"--over needs LOW..HIGH in the unit of the value, found {text!r}"
+        raise UsageError(message)
+    return low.strip(), high.strip()
+
+
+class _Count:
+    """Comparisons made so far, on standard error of a terminal."""
+
+    def __init__(self) -> None:
+        self.active, self.made = sys.stderr.isatty(), 0
+
+    def __call__(self, rows: int) -> None:
+        self.made += rows
+        if self.active:
+            sys.stderr.write(f"\r\x1b[K{self.made} comparisons")
+            sys.stderr.flush()
+
+    def done(self) -> None:
+        """Wipe the line."""
+        if self.active:
+            sys.stderr.write("\r\x1b[K")
+            sys.stderr.flush()
+
+
+def _one_of(chosen: Mapping[str, bool]) -> str:
+    asked = [name for name, wanted in chosen.items() if wanted]
+    if len(asked) > 1:
+        message = f"{' and '.join(asked)} are different questions; ask one at a time"
+        raise UsageError(message)
+    return asked[0] if asked else ""
+
+
+def need_command(
+    study_path: Path,
+    names: Sequence[str],
+    *,
+    advantage: float | None,
+    pair: str,
+    over: Sequence[str],
+    points: int | None,
+    trade: bool,
+    sheet: bool,
+    map_: str,
+    improve: bool,
+    flips: int,
+    form: str,
+    nodes: Sequence[Path],
+    overrides: Mapping[str, str],
+) -> None:
+    """Answer one question about a study and print it."""
+    from benchmark import api
+
+    check_folders(nodes)
+    if form not in FORMATS:
+        message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
+        raise UsageError(message)
+    question = _one_of(
+        {"--trade": trade, "--sheet": sheet, "--map": bool(map_), "--improve": improve, "--flips": flips > 0}
+    )
+    if trade and len(names) != 2:
+        message = f"--trade needs exactly two names, found {len(names)}"
+        raise UsageError(message)
+    if question not in ("", "--trade") and (names or over):
+        message = f"{question} takes no names and no --over"
+        raise UsageError(message)
+    ranges = [_range(text) for text in over]
+    if points is not None and (points < 2 or question in ("--improve", "--flips")):
+        message = f"--points needs 2 or more, and a question that scans a range; found {points}"
+        raise UsageError(message)
+    told = _Count()
+    more: dict[str, Any] = {"advantage": advantage, "pair": pair, "told": told}
+    scan: dict[str, Any] = {} if points is None else {"points": points}
+    with study_inputs(study_path, overrides) as (path, numbers):
+        view = api.load_study(path, nodes, numbers)
+        if trade:
+            found = api.trade(view, names[0], names[1], over=ranges, **more, **scan)
+        elif sheet:
+            found = api.sheet(view, **more, **scan)
+        elif map_:
+            found = api.opportunity(view, map_, **more, **scan)
+        elif improve:
+            found = api.improve(view, **more)
+        elif flips:
+            found = api.flips(view, up_to=flips, **more)
+        else:
+            found = api.need(view, names, over=ranges, **more, **scan)
+    told.done()
+    _print(found, form)
+
+
+def _print(found: Needed, form: str) -> None:
+    if form == "text":
+        from benchmark.cli.layout import Facts, Note, show_blocks
+
+        # short names make one table; long ones would leave no room for the sentences
+        short = max(len(name) for name, _ in found.facts) <= SHORT
+        facts = [Facts("", found.facts)] if short else [Facts("", [fact]) for fact in found.facts]
+        show_blocks([*map(Note, found.heading), *facts])
+    elif form == "csv":
+        written = io.StringIO()
+        writer = csv.writer(written, lineterminator="\n")
+        writer.writerow(found.columns)
+        writer.writerows([_cell(row[column]) for column in found.columns] for row in found.rows)
+        typer.echo(written.getvalue(), nl=False)
+    else:
+        rows = [{column: _plain(row[column]) for column in found.columns} for row in found.rows]
+        typer.echo(json.dumps({"heading": list(found.heading), "rows": rows}, ensure_ascii=False, indent=1))
+
+
+def _cell(value: Any) -> str:
+    """A number with all its digits; nothing where there is none."""
+    if isinstance(value, float):
+        return "" if math.isnan(value) else repr(float(value))
+    return str(value)
+
+
+def _plain(value: Any) -> Any:
+    """A value that JSON knows: null where there is no number, a word for infinity."""
+    if isinstance(value, float) and not math.isfinite(value):
+        return None if math.isnan(value) else ("infinite" if value > 0.0 else "-infinite")
+    return value
