@@ -36,6 +36,8 @@ __all__ = ["Estimate", "InputShare", "Uncertainty", "draw_blocks", "summarise", 
 Array = NDArray[np.float64]
 #: quantiles of the advantage that are stated
 QUANTILES = (0.05, 0.10, 0.25, 0.50, 0.75, 0.90, 0.95)
+#: shares at which the whole distribution is stated
+SHARES = tuple(i / 100.0 for i in range(1, 100))
 #: groups of blocks that are left out in turn
 MOST_GROUPS = 16
 #: draws from which on an expansion goes to the next degree: every term adds noise
@@ -72,8 +74,9 @@ class Uncertainty:
     """Result of a set of draws.
 
     ``reaches``: probability that the advantage is at least M; ``above_one``: that it exceeds 1. Draws in which the
-    candidate has no permitted point count as neither. ``bands``: side -> quantity -> (supply, [low, high]) factors of
-    the best estimate that hold 80 % of the draws.
+    candidate has no permitted point count as neither. ``distribution``: share of the draws -> advantage that it
+    does not exceed, nan where draws without an advantage lie. ``bands``: side -> quantity -> (supply, [low, high])
+    factors of the best estimate that hold 80 % of the draws.
     """
 
     draws: int
@@ -86,6 +89,7 @@ class Uncertainty:
     without_contender: float
     unbounded: float
     quantiles: Mapping[float, Estimate]
+    distribution: Mapping[float, float]
     mean_log: Estimate
     sd_log: Estimate
     worth_of_all: Estimate
@@ -174,6 +178,7 @@ def summarise(task: DrawTask, blocks: Sequence[BlockSum]) -> Uncertainty:
         without_contender=total.without_contender / total.draws,
         unbounded=total.unbounded / total.draws,
         quantiles={q: estimate(functools.partial(_quantile, q=q)) for q in QUANTILES},
+        distribution={q: _quantile(total, q=q) for q in SHARES},
         mean_log=estimate(_mean),
         sd_log=estimate(lambda block: float(np.sqrt(_variance(block)))),
         worth_of_all=estimate(functools.partial(_worth_of_all, required=log_required)),

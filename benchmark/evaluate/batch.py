@@ -105,10 +105,15 @@ class _Links:
 
     def _made(self, name: str) -> Array:
         value = self.values[name]
-        column = self.batch.columns.get(self.keys[name])
-        if column is not None:
-            return column.reshape(-1, 1, 1)
         stated = np.asarray(value.si[:1], dtype=np.float64).reshape(1, 1, 1)
+        column = self.batch.columns.get(self.keys[name])
+        if column is None:
+            return self._linked(value, stated)
+        own = column.reshape(-1, 1, 1)
+        return np.where(own == stated, self._linked(value, stated), own) if value.formula else own
+
+    def _linked(self, value: Value, stated: Array) -> Array:
+        """The value as its formula moves it."""
         used = names_in(value.formula) & self.values.keys() if value.formula else frozenset()
         moved = {other: self.array(other) for other in sorted(used)}
         still = {other: self.values[other].si[:1].reshape(1, 1, 1) for other in moved}

@@ -66,6 +66,7 @@ def draw_rows(
         "without_contender": found.without_contender,
         "unbounded": found.unbounded,
         "quantiles": [{"share": q, **vars(estimate)} for q, estimate in found.quantiles.items()],
+        "distribution": [{"share": q, "advantage": x} for q, x in found.distribution.items()],
         "mean_log": vars(found.mean_log),
         "sd_log": vars(found.sd_log),
         "constant": found.constant,

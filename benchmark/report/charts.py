@@ -8,6 +8,7 @@ from typing import Any
 
 from benchmark.record.shown_units import in_units_of_record
 from benchmark.report.advantage import advantage_against_time, advantage_by_node
+from benchmark.report.distribution import advantage_distribution
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart
 from benchmark.report.margins import requirement_margins
@@ -29,6 +30,7 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         limits_along_supply(record),
         advantage_against_time(record),
         *where_it_goes(record),
+        advantage_distribution(record),
         input_swings(record),
         advantage_by_node(record),
         *node_steps(record),

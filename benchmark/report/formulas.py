@@ -51,6 +51,11 @@ FORMULAS: dict[str, tuple[str, str, str]] = {
         "A at the low and at the high end of its range",
         "everything else at its best estimate, both sides re-optimised",
     ),
+    "draws": (
+        "distribution of the advantage",
+        "share of draws with A at most this",
+        "every input with a stated range drawn from it, both sides re-optimised in every draw",
+    ),
     "step": (
         "step between nodes",
         "factor = exp(mean of the changes of ln A)",

@@ -14,6 +14,8 @@ from benchmark.report import section_evidence as evidence
 from benchmark.report import section_method as method
 from benchmark.report import section_question as asked
 from benchmark.report import section_results as results
+from benchmark.report import section_strength as strength
+from benchmark.report import section_uncertainty as sure
 from benchmark.report.blocks import Figure, Section, Table, plain
 from benchmark.report.figure import Chart
 from benchmark.report.section_points import points
@@ -75,7 +77,11 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
         results.energy_and_time(record, shown["time-parts"], shown["energy-parts"]),
         points(record),
         results.policies(record),
+        strength.ladder(record),
+        strength.robustness(record),
+        sure.uncertainty(record, shown["advantage-distribution"]),
         results.moves(record, shown["input-swings"]),
+        sure.next_measurement(record),
         results.nodes(record, shown["advantage-by-node"], steps),
         evidence.anchors(record),
         evidence.closed_form(record),
