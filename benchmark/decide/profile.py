@@ -230,7 +230,8 @@ def _crossings(
         return found
     share = _solve(trials, lines, brackets)
     met = [lines[b.line].between(b.low, b.high, float(s)) for b, s in zip(brackets, share, strict=True)]
-    answers = trials([lines[b.line].trial(value) for b, value in zip(brackets, met, strict=True)])
+    # held against every contender in full, where the search evaluates the strongest alone
+    answers = trials.whole([lines[b.line].trial(value) for b, value in zip(brackets, met, strict=True)])
     for k, bracket in enumerate(brackets):
         off = float(answers.log[k]) - float(np.log(bracket.level))
         root = abs(off) <= JUMP
@@ -306,7 +307,7 @@ def find_shares(
 def _jump(trials: Trials, line: Line, x: float) -> str:
     """Say what differs just below and just above a jump."""
     step = max(abs(x), np.finfo(float).tiny) * ASIDE
-    answers = trials([line.trial(x - step), line.trial(x + step)])
+    answers = trials.whole([line.trial(x - step), line.trial(x + step)])
     texts = []
     for position, name in enumerate(answers.names):
         below, above = (bool(has) for has in answers.contenders[position])

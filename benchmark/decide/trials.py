@@ -18,6 +18,7 @@ from numpy.typing import NDArray
 from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.limiting import DELAY_GROUPS, ENERGY_GROUPS, groups_of
 from benchmark.decide.moves import permitted_advantage
+from benchmark.decide.strongest import strongest_outcome
 from benchmark.devices.model import ModelInputs
 from benchmark.errors import EvenloadError, UsageError
 from benchmark.evaluate.batch import Batch, resolve
@@ -50,7 +51,8 @@ class Answers:
     """Answers to trials, arrays over them.
 
     ``advantage`` is nan where a side has no permitted point; ``meets``: the candidate misses none of the listed
-    requirements there; ``contenders``: (contender, trial) which of them have a permitted point. ``delay_shares`` and
+    requirements there. ``strongest``: which contender counts, -1 where none has a permitted point; ``contenders``:
+    (contender, trial) which of them have one, certain only in answers of ``Trials.whole``. ``delay_shares`` and
     ``energy_shares`` belong to the candidate's optimum, nan without one. ``refused``: why a trial cannot be evaluated
     at all, empty where it can.
     """
@@ -77,7 +79,7 @@ class Answers:
             return self.refused[row]
         if not self.candidate[row]:
             return "the candidate has no permitted point"
-        if not self.contenders[:, row].any():
+        if self.strongest[row] < 0:
             return "no contender has a permitted point"
         return "" if np.isfinite(self.advantage[row]) else "the advantage is not a number"
 
@@ -130,6 +132,7 @@ class Trials:
         self.policy = policy or study.policy.primary
         self._comparison = comparison
         self._told = told
+        self._whole = False
         first = comparison(study, pair, Batch.best_estimate(), frozen=frozen)
         self.outcome: Outcome = first.outcome(self.policy)
         self.frozen = first.frozen_choices(self.outcome)
@@ -152,6 +155,14 @@ class Trials:
                 if self._told is not None:
                     self._told(len(chunk))
         return _in_order(parts, len(trials))
+
+    def whole(self, trials: Sequence[Trial]) -> Answers:
+        """Evaluate trials with every contender held to all conditions, not only the strongest."""
+        self._whole = True
+        try:
+            return self(trials)
+        finally:
+            self._whole = False
 
     def why(self, trial: Trial) -> str:
         """Say why a side has no permitted point in one trial, with the nearest it can reach."""
@@ -176,7 +187,9 @@ class Trials:
                 batch = _batch(trials, self.best_values)
                 self._judge(batch)
                 comparison = self._comparison(study, self.pair, batch, frozen=self.frozen)
-                return _answers(comparison, comparison.outcome(self.policy))
+                if self._whole:
+                    return _answers(comparison, comparison.outcome(self.policy))
+                return _answers(comparison, strongest_outcome(comparison, self.policy))
         except EvenloadError as error:
             if len(trials) == 1:
                 return _nothing(self.best, str(error))
