@@ -22,6 +22,7 @@ import numpy as np
 
 from benchmark.circuits.cells import Sizing
 from benchmark.circuits.circuit import Circuit, Value, Wires
+from benchmark.circuits.motion import motion_charges
 from benchmark.circuits.rules import StageRule, rule_by_name
 from benchmark.circuits.sized import EDGES, SizeAs, Sized
 from benchmark.circuits.stage import (
@@ -137,6 +138,7 @@ def estimate(
         rule=stage_rule,
         gate_pitch=pitch,
         short_circuit=short_circuit_currents(pair) if short_circuit else None,
+        motion=motion_charges(pair) if short_circuit else {},
     )
     stages = tuple(stage(net, settings) for net in circuit.nets)
 

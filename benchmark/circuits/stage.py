@@ -23,7 +23,8 @@ in the second half of the ramp::
     E_short = V (Q_falling + Q_rising) + sum over edges V^2 / (R_closing + R_opening) max(0, t_opening - t_closing)
 
 The second part is the overlap of a switch that opens later than its partner closes (V^2 / 2R for equal resistances).
-Range: alike stages, ramps no slower than about 10 R C; beyond, the transient rule is the reference.
+Range: alike stages, ramps no slower than about 10 R C; beyond, the transient rule is the reference. Switches with
+actuators that are slow against R C add the charge of ``motion.py``, both edges.
 
 Two kinds of net are no complementary gate:
 
@@ -48,6 +49,7 @@ import numpy as np
 from benchmark.circuits.cells import Edge
 from benchmark.circuits.circuit import Discharge, Layer, Net, Value, Wires
 from benchmark.circuits.latch import latch
+from benchmark.circuits.motion import lagging
 from benchmark.circuits.rules import EdgeInputs, StageRule
 from benchmark.circuits.sized import EDGES, OTHER, Sized
 from benchmark.devices.record import Array, BoolArray, SwitchPair
@@ -125,6 +127,7 @@ class StageSettings:
 
     ``gate_pitch`` [m]: unit of net lengths stated in gate pitches. ``short_circuit``: the current integrals of
     ``short_circuit_currents`` by opening edge, or None to leave the short-circuit energy out (hand equations).
+    ``motion``: the charges of ``motion_charges`` by closing edge; empty with it.
     """
 
     sized: Sized
@@ -133,6 +136,7 @@ class StageSettings:
     rule: StageRule
     gate_pitch: Array
     short_circuit: Mapping[Edge, Array] | None
+    motion: Mapping[Edge, Array] = field(default_factory=dict)
 
 
 def short_circuit_currents(pair: SwitchPair) -> dict[Edge, Array]:
@@ -276,8 +280,8 @@ def _total(parts: Mapping[str, Array]) -> Array:
     return np.asarray(total)
 
 
-def _short_circuit(net: Net, edges: Mapping[Edge, EdgeDetail], settings: StageSettings) -> Array:
-    """Return the short-circuit energy of one full output cycle [J]; see the module docstring."""
+def _short_circuit(net: Net, edges: Mapping[Edge, EdgeDetail], settings: StageSettings, node: Array) -> Array:
+    """Return the short-circuit energy of one full output cycle [J]; ``node``: C V [C]. See the module docstring."""
     if settings.short_circuit is None:
         return np.asarray(0.0)
     sized = settings.sized
@@ -290,7 +294,12 @@ def _short_circuit(net: Net, edges: Mapping[Edge, EdgeDetail], settings: StageSe
         scale = opening.resistance / edges[OTHER[edge]].resistance
         energy = energy + supply * ramp * scale * settings.short_circuit[OTHER[edge]]
         overlap = np.maximum(0.0, opening.opening_time - closing.closing_time)
-        energy = energy + supply**2 / (edges[edge].resistance + edges[OTHER[edge]].resistance) * overlap
+        paths = edges[edge].resistance + edges[OTHER[edge]].resistance
+        energy = energy + supply**2 / paths * overlap
+        if settings.motion:
+            with np.errstate(invalid="ignore"):  # a switch that never conducts carries no charge
+                share = np.where(np.isfinite(paths), (closing.resistance + opening.resistance) / paths, 0.0)
+            energy = energy + supply * lagging(settings.motion[edge] * share, node)
     return np.asarray(energy)
 
 
@@ -330,8 +339,9 @@ def stage(net: Net, settings: StageSettings) -> StageDetail:
         "fixed_load": np.asarray(per_farad * (burden.fixed + burden.spread)),
         "layout": np.asarray(per_farad * pins),
         "extra": np.asarray(extra),
-        "short_circuit": _short_circuit(net, edges, settings) if net.gated else np.asarray(0.0),
     }
+    node = np.asarray(_total(energy_parts) / np.where(supply > 0.0, supply, np.nan))
+    energy_parts["short_circuit"] = _short_circuit(net, edges, settings, node) if net.gated else np.asarray(0.0)
     leakage = {
         name: np.asarray(supply * value * net.copies) for name, value in sized.leakage_current(net.driver).items()
     }

@@ -9,6 +9,7 @@ import numpy as np
 
 from benchmark.circuits.cells import Cell, Edge
 from benchmark.circuits.circuit import Circuit, Net
+from benchmark.circuits.motion import HALF, motion_charges
 from benchmark.circuits.sized import EDGES, OTHER, Sized, stack_ratio
 from benchmark.circuits.stage import StageDetail
 from benchmark.cli.arithmetic import Sheet
@@ -198,8 +199,24 @@ class NetArithmetic:
                     "J",
                 )
                 terms.append(name)
-            parts += f" + {' + '.join(terms)}"
+            parts += f" + {' + '.join([*terms, *self._motion(pair, f'({parts})/V')])}"
         sheet.result(f"E_{index}", parts, "J", "one rising transition (one full cycle)")
+
+    def _motion(self, pair: SwitchPair, node: str) -> list[str]:
+        """Write the charge that runs through while actuators move; return the names of its energies, if any."""
+        charges = {edge: one(charge) for edge, charge in motion_charges(pair).items()}
+        if not any(charges.values()):
+            return []
+        sheet, names = self.sheet, []
+        sheet.result("Q_node", node, "C", "charge of the node, losses included")
+        for edge, opening in OTHER.items():
+            tag = _EDGE_NAME[edge]
+            sheet.given(f"Q_way_{tag}", charges[edge], "C", "through unit switches on the way of their actuators")
+            sheet.result(f"Q_motion_{tag}", f"Q_way_{tag}*(R_{edge} + R_{opening})/(Rp_{edge} + Rp_{opening})", "C")
+            name = f"E_motion_{tag}"
+            sheet.result(name, f"V*Q_motion_{tag}**2/(Q_motion_{tag} + {HALF:g}*Q_node)", "J", "output lags behind")
+            names.append(name)
+        return names
 
     def leakage(self, net: Net, pair: SwitchPair, index: int) -> None:
         """Write leakage and bias power of the driving cell as ``P_<index>`` and ``P_b_<index>``."""
