@@ -22,7 +22,18 @@ from numpy.typing import NDArray
 
 from tests.ngspice.runner import run_deck
 
-__all__ = ["CELSIUS", "LENGTH", "WIDTHS", "Chain", "Polarity", "capacitances", "chain", "currents", "model_version"]
+__all__ = [
+    "CELSIUS",
+    "LENGTH",
+    "WIDTHS",
+    "Chain",
+    "Polarity",
+    "capacitances",
+    "card_text",
+    "chain",
+    "currents",
+    "model_version",
+]
 
 Array = NDArray[np.float64]
 Polarity = Literal["n", "p"]
@@ -36,7 +47,8 @@ _SIGN: dict[Polarity, float] = {"n": 1.0, "p": -1.0}
 
 
 @lru_cache(maxsize=1)
-def _card_text() -> str:
+def card_text() -> str:
+    """Return the file of the cards as it is in the package."""
     place = distribution("c4m-pdk-freepdk45").locate_file("c4m/pdk/freepdk45/freepdk45_nom.spi")
     return Path(str(place)).read_text(encoding="ascii")
 
@@ -60,7 +72,7 @@ def _deck(title: str, lines: list[str], control: list[str], tunnelling: bool = T
     return "\n".join(
         [
             f"* {title}",
-            _card_text() if tunnelling else _without_tunnelling(_card_text()),
+            card_text() if tunnelling else _without_tunnelling(card_text()),
             f".temp {CELSIUS!r}",
             *lines,
             ".control",

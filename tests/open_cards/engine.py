@@ -51,8 +51,8 @@ class Stage:
     leakage: float
 
 
-def stage(pair: SwitchPair, added: float = 0.0) -> Stage:
-    """Estimate the stage; ``added`` [F]: linear capacitance at its output."""
+def stage(pair: SwitchPair, added: float = 0.0, rule: str = "chain") -> Stage:
+    """Estimate the stage; ``added`` [F]: linear capacitance at its output; ``rule``: delay rule."""
     inverter = cell("inverter")
     net = Net(
         "stage",
@@ -62,5 +62,5 @@ def stage(pair: SwitchPair, added: float = 0.0) -> Stage:
         rising_per_operation=1.0,
         on_critical_path=1.0,
     )
-    found = estimate(Circuit("fan-out-4", "fan-out 4", "one full cycle", (net,)), pair, Wires(0.0, 0.0))
+    found = estimate(Circuit("fan-out-4", "fan-out 4", "one full cycle", (net,)), pair, Wires(0.0, 0.0), rule)
     return Stage(found.path_delay.item(), found.dynamic_energy.item(), found.leakage_power.item())

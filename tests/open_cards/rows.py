@@ -9,7 +9,7 @@ import tempfile
 from collections.abc import Callable, Mapping
 from pathlib import Path
 
-from tests.open_cards import minimum_energy, open_45nm, predictive, scaling
+from tests.open_cards import minimum_energy, open_45nm, predictive, proposed_rule, scaling
 from tests.open_cards.row import Row
 
 __all__ = ["COMPARISONS", "Row"]
@@ -27,6 +27,7 @@ COMPARISONS: Mapping[str, Callable[[], list[Row]]] = {
     "Open 45 nm cards: where the differences come from": lambda: [
         row for supply in open_45nm.APART for row in open_45nm.apart(supply)
     ],
+    "Open 45 nm cards: solved as differential equations": lambda: list(open_45nm.solved_rows()),
     "Open 45 nm cards: other readings of the edge capacitance": _edges,
     "Predictive planar cards: delay and energy over supply": lambda: [
         row for cards in predictive.CARDS for row in predictive.predictive_rows(cards)
@@ -43,4 +44,5 @@ COMPARISONS: Mapping[str, Callable[[], list[Row]]] = {
         for row in minimum_energy.exponential_rows(drive, activity)
     ],
     "Minimum energy: simulated series": minimum_energy.series_rows,
+    "Delay by a proposed rule, not in use": proposed_rule.rule_rows,
 }

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import tomllib
 
 import pytest
@@ -55,3 +56,23 @@ def test_other_readings_of_the_edge_capacitance(tmp_path):
     weak = [row for row in rows if "swing below" in row.note]
     assert all(abs(row.difference) < 0.10 for row in weak)
     assert any(abs(row.difference) > 0.20 for row in rows if row not in weak)
+
+
+def test_the_solved_chain_shows_that_the_closed_form_is_slow_under_a_constant_load():
+    load, delay = open_45nm.solved_rows()
+    closed = next(row for row in open_45nm.apart(0.8) if row.quantity == load.isolates)
+    assert load.holds
+    assert closed.difference - load.difference > 0.08
+    assert delay.holds
+    assert delay.difference < -0.08
+
+
+def test_facts_of_the_card_file():
+    words = card.card_text()
+    assert "SPDX-License-Identifier: Apache-2.0" in words
+    for name in ("NMOS_VTG", "PMOS_VTG"):
+        own = words.split(f".model  {name} ")[1].split(".model")[0]
+        assert re.search(r"level = 54\b", own)
+        assert re.search(r"\+version = 4\.0\b", own)
+        assert re.search(r"xl\s*=\s*-2e-0?8|xl\s*=\s*-20e-9", own)
+        assert re.search(r"lint\s*=\s*3\.75e-0?09", own)
