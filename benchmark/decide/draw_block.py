@@ -21,7 +21,7 @@ from benchmark.draws.plan import Plan
 from benchmark.draws.values import draw_values
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
-from benchmark.evaluate.side import values_by_key
+from benchmark.evaluate.side import joints_by_owner, values_by_key
 from benchmark.sets.study import Choice, NodePair, Study
 
 __all__ = ["BIN", "CURVE_BIN", "BlockSum", "DrawTask", "basis_of", "drawn", "resolution", "sum_block"]
@@ -108,7 +108,8 @@ def resolution(study: Study) -> Study:
 def _batch(task: DrawTask, block: int) -> tuple[Batch, dict[str, Array]]:
     """Return the draws of a block after the best estimate, and their points in (0, 1)."""
     values = values_by_key(task.study, task.pair)
-    points, drawn = draw_values(values, task.plan, block, (*task.held, *task.put))
+    joints = joints_by_owner(task.study, task.pair)
+    points, drawn = draw_values(values, task.plan, block, (*task.held, *task.put), joints)
     size = task.plan.block_size + 1
     columns = {key: np.concatenate([values[key].si[:1], column]) for key, column in drawn.items()}
     columns |= {key: np.concatenate([values[key].si[:1], np.full(size - 1, si)]) for key, si in task.put.items()}

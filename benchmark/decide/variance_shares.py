@@ -19,9 +19,9 @@ from benchmark.decide.draw_block import DrawTask, resolution
 from benchmark.decide.moves import permitted_advantage
 from benchmark.decide.strongest import strongest_outcome
 from benchmark.draws.plan import Plan
-from benchmark.draws.values import draw_twice
+from benchmark.draws.values import draw_twice, tied_with
 from benchmark.evaluate.batch import Batch
-from benchmark.evaluate.side import values_by_key
+from benchmark.evaluate.side import joints_by_owner, values_by_key
 
 __all__ = ["VarianceShare", "sobol_shares", "variance_shares"]
 
@@ -99,8 +99,10 @@ def variance_shares(task: DrawTask, keys: Sequence[str], draws: int = 256) -> li
         As ``sobol_shares``.
     """
     values = values_by_key(task.study, task.pair)
-    a, b = draw_twice(values, Plan(1, draws, task.plan.seed), (*task.held, *task.put))
-    sets = [a, b, *({**a, key: b[key]} for key in keys)]
+    joints = joints_by_owner(task.study, task.pair)
+    a, b = draw_twice(values, Plan(1, draws, task.plan.seed), (*task.held, *task.put), joints)
+    # values that are not independent change places together
+    sets = [a, b, *({**a, **{tied: b[tied] for tied in tied_with(key, joints) if tied in b}} for key in keys)]
     columns = {key: np.concatenate([values[key].si[:1], *(item[key] for item in sets)]) for key in a}
     rows = 1 + draws * len(sets)
     columns |= {key: np.concatenate([values[key].si[:1], np.full(rows - 1, si)]) for key, si in task.put.items()}

@@ -24,9 +24,10 @@ from numpy.typing import NDArray
 
 from benchmark.catalogue import QUANTITIES
 from benchmark.draws.plan import Plan, net
+from benchmark.sets.joints import Joint, rank_matrix
 from benchmark.sets.values import Value
 
-__all__ = ["draw_twice", "draw_values", "drawn_keys", "value_at"]
+__all__ = ["draw_twice", "draw_values", "drawn_keys", "tied_with", "value_at"]
 
 Array = NDArray[np.float64]
 #: ends of the domains that a tail may not cross
@@ -103,7 +104,11 @@ def drawn_keys(values: Mapping[str, Value]) -> dict[str, list[str]]:
 
 
 def draw_values(
-    values: Mapping[str, Value], plan: Plan, block: int, held: Sequence[str] = ()
+    values: Mapping[str, Value],
+    plan: Plan,
+    block: int,
+    held: Sequence[str] = (),
+    joints: Mapping[str, Sequence[Joint]] | None = None,
 ) -> tuple[dict[str, Array], dict[str, Array]]:
     """Draw every value that has a spread.
 
@@ -116,25 +121,69 @@ def draw_values(
         Number of the block.
     held : sequence of str
         Keys that stay at their best estimate. The draws of all others are the same as without it.
+    joints : mapping, optional
+        Owner -> values of it that are not independent.
 
     Returns
     -------
     points, columns : dict
-        Ledger key -> points in (0, 1) (draw,), and the values drawn there in SI (draw,).
+        Ledger key -> points in (0, 1) (draw,), and the values drawn there in SI (draw,). Values drawn together as
+        samples have one point, that of the first of their names.
     """
     points: dict[str, Array] = {}
     columns: dict[str, Array] = {}
     for owner, keys in drawn_keys(values).items():
         table = net(owner, len(keys), plan, block)
-        for position, key in enumerate(keys):
-            if key not in held:
-                points[key] = table[:, position]
-                columns[key] = value_at(values[key], table[:, position])
+        own_points, own_columns = _drawn(values, keys, table, (joints or {}).get(owner, ()))
+        points |= {key: u for key, u in own_points.items() if key not in held}
+        columns |= {key: column for key, column in own_columns.items() if key not in held}
     return points, columns
 
 
+def _drawn(
+    values: Mapping[str, Value], keys: Sequence[str], table: Array, joints: Sequence[Joint]
+) -> tuple[dict[str, Array], dict[str, Array]]:
+    """Points and values of one owner: independent ones, correlated ones, and those drawn as samples."""
+    points = _correlated({key: table[:, position] for position, key in enumerate(keys)}, joints)
+    columns: dict[str, Array] = {}
+    for joint in joints:
+        tied = [key for name in joint.names for key in keys if _name(key) == name]
+        if joint.samples is None or not tied:
+            continue
+        first, samples = tied[0], joint.samples
+        row = np.floor(points[first] * samples.shape[0]).astype(int)
+        for key in tied:
+            columns[key] = samples[row, joint.names.index(_name(key))]
+        points = {key: u for key, u in points.items() if key == first or key not in tied}
+    columns |= {key: value_at(values[key], u) for key, u in points.items() if key not in columns}
+    return points, columns
+
+
+def _name(key: str) -> str:
+    return key.rpartition(".")[2]
+
+
+def _correlated(points: dict[str, Array], joints: Sequence[Joint]) -> dict[str, Array]:
+    """Give the points of correlated values their rank correlation: a Gaussian copula, the distributions unchanged."""
+    from scipy.special import ndtr, ndtri
+
+    names, matrix = rank_matrix(joints)
+    keys = {_name(key): key for key in points}
+    kept = [name for name in names if name in keys]  # a what-if takes the spread of a value away
+    if len(kept) < 2:
+        return points
+    place = [names.index(name) for name in kept]
+    size, vectors = np.linalg.eigh(matrix[np.ix_(place, place)])
+    root = vectors * np.sqrt(np.maximum(size, 0.0)) @ vectors.T
+    scores = root @ np.stack([ndtri(points[keys[name]]) for name in kept])
+    return {**points, **{keys[name]: ndtr(row) for name, row in zip(kept, scores, strict=True)}}
+
+
 def draw_twice(
-    values: Mapping[str, Value], plan: Plan, held: Sequence[str] = ()
+    values: Mapping[str, Value],
+    plan: Plan,
+    held: Sequence[str] = (),
+    joints: Mapping[str, Sequence[Joint]] | None = None,
 ) -> tuple[dict[str, Array], dict[str, Array]]:
     """Return two independent sets of draws of one block, of nets that hold both.
 
@@ -146,8 +195,24 @@ def draw_twice(
     sets: tuple[dict[str, Array], dict[str, Array]] = ({}, {})
     for owner, keys in drawn_keys(values).items():
         table = net(f"{owner}, two sets", 2 * len(keys), plan, 0)
-        for position, key in enumerate(keys):
-            if key not in held:
-                for half in (0, 1):
-                    sets[half][key] = value_at(values[key], table[:, position + half * len(keys)])
+        for half, found in enumerate(sets):
+            part = table[:, half * len(keys) : (half + 1) * len(keys)]
+            _, columns = _drawn(values, keys, part, (joints or {}).get(owner, ()))
+            found |= {key: column for key, column in columns.items() if key not in held}
     return sets
+
+
+def tied_with(key: str, joints: Mapping[str, Sequence[Joint]]) -> set[str]:
+    """Return the keys that are not independent of one, itself among them."""
+    owner = key.rpartition(".")[0]
+    group = {key}
+    while True:
+        wider = group | {
+            f"{owner}.{name}"
+            for joint in joints.get(owner, ())
+            if any(f"{owner}.{other}" in group for other in joint.names)
+            for name in joint.names
+        }
+        if wider == group:
+            return group
+        group = wider

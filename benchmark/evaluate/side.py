@@ -20,10 +20,11 @@ from benchmark.devices.model import DeviceModel, ModelInputs, Prepared
 from benchmark.devices.record import SwitchPair
 from benchmark.evaluate.batch import Batch, resolve
 from benchmark.sets.circuit_file import CircuitSpec
+from benchmark.sets.joints import Joint
 from benchmark.sets.study import NodePair, Side, Study
 from benchmark.sets.values import Value
 
-__all__ = ["SideProblem", "build_side", "keys_of", "values_by_key"]
+__all__ = ["SideProblem", "build_side", "joints_by_owner", "keys_of", "values_by_key"]
 
 Array = NDArray[np.float64]
 
@@ -124,6 +125,12 @@ def values_by_key(study: Study, pair: NodePair) -> dict[str, Value]:
         found |= {f"{owner}.gating.{name}": value for name, value in sorted(side.gating.items())}
         found |= {f"{owner}.mitigation.{name}": value for name, value in sorted(side.mitigation.items())}
     return found
+
+
+def joints_by_owner(study: Study, pair: NodePair) -> dict[str, tuple[Joint, ...]]:
+    """Return owner of ledger keys -> values of it that are not independent."""
+    found = {"study": study.joints, pair.wires.id: pair.wires.joints}
+    return found | {side.technology.id: side.technology.joints for side, _, _ in _sides(study, pair)}
 
 
 def _sides(study: Study, pair: NodePair) -> list[tuple[Side, str, str]]:

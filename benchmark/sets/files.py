@@ -21,7 +21,7 @@ from typing import Any
 from benchmark.errors import Problem
 from benchmark.sets.problems import Collector
 
-__all__ = ["TomlFile", "read_bytes", "read_toml", "shown"]
+__all__ = ["TomlFile", "is_file", "is_folder", "read_bytes", "read_toml", "shown"]
 
 #: a parameter file is written by hand; anything larger is not one
 MAX_BYTES = 4_000_000
@@ -122,6 +122,22 @@ def _index(text: str) -> dict[str, int]:
             opened = _OPENS.match(line[key.end() :])
             quotes = opened.group(1) if opened and opened.group(1) not in line[key.end() + opened.end() :] else ""
     return lines
+
+
+def is_file(path: Path) -> bool:
+    """Tell whether there is such a file; a name the system cannot hold is none."""
+    try:
+        return path.is_file()
+    except OSError:
+        return False
+
+
+def is_folder(path: Path) -> bool:
+    """Tell whether there is such a folder; a name the system cannot hold is none."""
+    try:
+        return path.is_dir()
+    except OSError:
+        return False
 
 
 def read_bytes(path: Path, name: str, collector: Collector) -> bytes | None:

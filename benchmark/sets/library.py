@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import os
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
 from decimal import Decimal
@@ -9,7 +10,7 @@ from pathlib import Path
 
 import benchmark
 from benchmark.errors import Problem, nearest
-from benchmark.sets.files import TomlFile, read_toml
+from benchmark.sets.files import TomlFile, is_file, read_toml
 from benchmark.sets.parameters import ModelDeclaration, ParameterSet, build_technology, build_wires
 from benchmark.sets.problems import Collector
 from benchmark.sets.sources import Source, read_sources
@@ -49,7 +50,7 @@ class Library:
         """Read the source lists of all roots; a nearer root adds to the shipped list."""
         for root in reversed(self.roots):
             path = root / "sources.toml"
-            if path.exists():
+            if os.path.lexists(path):  # a link to nowhere is a mistake, not an absence
                 self.sources.update(read_sources(path, self.collector, self.shown(path)))
 
     def shown(self, path: Path) -> str:
@@ -76,7 +77,7 @@ class Library:
         for root in self.roots:
             for place in (root / folder, root):
                 path = place / f"{name}.toml"
-                if path.is_file():
+                if is_file(path):
                     return path
         return None
 

@@ -16,6 +16,7 @@ from benchmark.errors import nearest
 from benchmark.measured import MeasuredTable
 from benchmark.sets.files import TomlFile
 from benchmark.sets.formulas import FormulaError, evaluate_formula, names_in
+from benchmark.sets.joints import Joint, read_joints
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import TechnologyFile, WiresFile, validate_values
 from benchmark.sets.set_parts import Anchor, ModelDeclaration, read_anchors, read_rows, read_tables
@@ -51,6 +52,7 @@ class ParameterSet:
     path: Path
     lines: Mapping[str, int] = field(default_factory=dict)
     rows_rest_on: frozenset[tuple[str, str]] = frozenset()  # (evidence, source) of the stage results
+    joints: tuple[Joint, ...] = ()
 
     def position(self, node: str) -> int:
         """Return the index of a node label."""
@@ -290,6 +292,9 @@ def build_technology(
     _resolve_defaults(declaration, options, values, stated, file, collector)
     tables_named = {**dict.fromkeys(spoiled), **parsed.value}
     check_formulas({name: v for name, v in values.items() if not v.is_default}, file, tables_named, collector)
+    stated_values = {name: value for name, value in values.items() if name in parsed.value}
+    joints, with_samples = read_joints(parsed.joint, stated_values, file, collector)
+    values |= with_samples
     tables = read_tables(parsed, declaration, file, sources, collector)
     rows, rows_rest_on = read_rows(parsed.row, parsed.nodes, file, sources, parsed.default, collector)
     if "rows" in declaration.tables:
@@ -330,6 +335,7 @@ def build_technology(
         file.path,
         file.lines,
         rows_rest_on,
+        joints,
     )
 
 
@@ -383,6 +389,7 @@ def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -
         if name not in parsed.value and name not in spoiled:
             collector.add(file.problem(f"value.{name}", "is missing", "", QUANTITIES[name].example))
     check_formulas(values, file, {**dict.fromkeys(spoiled), **parsed.value}, collector)
+    joints, values = read_joints(parsed.joint, values, file, collector)
     if len(collector.problems) > before:
         return None
     return ParameterSet(
@@ -406,6 +413,7 @@ def build_wires(file: TomlFile, sources: frozenset[str], collector: Collector) -
         file.text,
         file.path,
         file.lines,
+        joints=joints,
     )
 
 

@@ -245,6 +245,22 @@ class RowTable(FileModel):
     owner: Owner = None
 
 
+class JointTable(FileModel):
+    """Values of this file that are not independent."""
+
+    values: list[Text] = Field(min_length=2, max_length=16, description="Names of values of this file")
+    rank_correlation: Number | None = Field(
+        default=None, description="Rank correlation of two values that have spreads: -1 to 1"
+    )
+    samples: list[list[Number]] | None = Field(
+        default=None,
+        description="Samples on which all of them were measured: one row each, numbers in the units of the values",
+    )
+
+
+Joints = Annotated[list[JointTable], Field(description="Values of this file that are not independent")]
+
+
 class TechnologyFile(FileModel):
     """A parameter set of one technology."""
 
@@ -263,6 +279,7 @@ class TechnologyFile(FileModel):
     default: DefaultsTable = Field(default=DefaultsTable(), description="What a value below does not say itself")
     option: dict[str, Text] = Field(default={}, description="Choices of the model in words")
     value: dict[str, ValueTable] = Field(default={}, description="Values by catalogue name")
+    joint: Joints = []
     anchor: dict[str, AnchorTable] = Field(
         default={}, description="Published numbers the set must predict: compared, never fitted"
     )
@@ -284,6 +301,7 @@ class WiresFile(FileModel):
     note: FreeNote = ""
     default: DefaultsTable = Field(default=DefaultsTable(), description="What a value below does not say itself")
     value: dict[str, ValueTable] = Field(default={}, description="Values by catalogue name")
+    joint: Joints = []
 
 
 class SourceEntry(FileModel):

@@ -11,7 +11,7 @@ import numpy as np
 
 from benchmark.errors import nearest
 from benchmark.measured import MeasuredTable
-from benchmark.sets.files import TomlFile
+from benchmark.sets.files import TomlFile, is_file
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import AnchorTable, DefaultsTable, Measure, RowTable, TechnologyFile
 from benchmark.sets.tables import TableFile, read_table
@@ -234,7 +234,7 @@ def read_tables(
             )
             continue
         # beside the set, or beside the folder of the technologies
-        beside = any((file.path.parent / path).with_suffix(suffix).exists() for suffix in (".csv", ".toml"))
+        beside = any(is_file((file.path.parent / path).with_suffix(suffix)) for suffix in (".csv", ".toml"))
         root = file.path.parent if beside else file.path.parent.parent
         shown_root = Path(file.name).parent if beside else Path(file.name).parent.parent
         table = read_table(root / path, name, sources, collector, str(shown_root / path))

@@ -9,6 +9,7 @@ from pathlib import Path
 from typing import NamedTuple
 
 from benchmark.sets.circuit_file import CircuitSpec
+from benchmark.sets.joints import Joint
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.values import Value
 
@@ -65,7 +66,8 @@ class Side:
 
     ``circuit``: the circuit it has of its own under the topology own-best (``circuit_spec``: when that is a file);
     empty: the study's. ``mitigation``: what its copies and back biases cost. ``may_gate``: False keeps the supply on
-    while idle although the study allows power gating (a rung of the ladder, never a study).
+    while idle although the study allows power gating (a rung of the ladder, never a study). ``outlook``: of the
+    candidate, sets of the same switch that stand for something else (a target, a limit), shown and never judged.
     """
 
     id: str
@@ -81,6 +83,7 @@ class Side:
     back_biases: tuple[float, ...] = (0.0,)
     mitigation: Mapping[str, Value] = field(default_factory=dict)
     may_gate: bool = True
+    outlook: tuple[ParameterSet, ...] = ()
 
     @property
     def choices(self) -> list[Choice]:
@@ -193,6 +196,7 @@ class Study:
     default_fields: tuple[str, ...] = field(default=())
     topology: str = "same-netlist"
     draws: DrawSettings = field(default_factory=DrawSettings)
+    joints: tuple[Joint, ...] = ()
     #: supplies per zoom of the search
     zoom_points: int = 33
 

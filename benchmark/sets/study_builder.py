@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 from collections.abc import Mapping, Sequence
 from typing import Any
 
@@ -9,6 +10,7 @@ from benchmark.catalogue import PRODUCT_CLASSES, QUANTITIES, STUDY_QUANTITIES
 from benchmark.errors import nearest
 from benchmark.sets.circuit_file import CircuitSpec
 from benchmark.sets.files import TomlFile, shown
+from benchmark.sets.joints import read_joints
 from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
@@ -186,6 +188,30 @@ class _Builder:
             mitigation,
         )
 
+    def outlook(self, side: Side) -> Side:
+        """Read the candidate's further sets: the same model, its node of the headline pair, each for something else."""
+        found: list[ParameterSet] = []
+        nodes = [pair.candidate for pair in self.parsed.nodes.pairs if pair.label == self.parsed.nodes.headline]
+        dotted = "candidate.outlook"
+        for name in self.parsed.candidate.outlook:
+            item = self.library.load(name, "technologies", self.file.problem(dotted, ""))
+            if item is None:
+                continue
+            if item.kind != "technology" or item.model != side.technology.model:
+                allowed = f"technology sets of the model {side.technology.model}"
+                self.refuse(dotted, "is not a set of the candidate's model", repr(name), allowed)
+                continue
+            stated = {other.ambition: other.id for other in (side.technology, *found)}
+            if item.ambition in stated:
+                what = f"stands for {item.ambition}, as {stated[item.ambition]} does"
+                self.refuse(dotted, what, repr(name), "one set each for today, target, limit")
+            for node in nodes:
+                if node not in item.nodes:
+                    what = f"{item.id} has no node of the headline pair"
+                    self.refuse(dotted, what, repr(node), ", ".join(item.nodes), nearest(node, item.nodes))
+            found.append(item)
+        return dataclasses.replace(side, outlook=tuple(found))
+
     def mitigations(
         self, table: SideTable, dotted: str
     ) -> tuple[tuple[float, ...], tuple[float, ...], dict[str, Value]]:
@@ -226,8 +252,12 @@ class _Builder:
 
     def sides(self) -> tuple[Side | None, list[Side]]:
         candidate = self.side(self.parsed.candidate, "candidate")
+        if candidate is not None and self.parsed.candidate.outlook:
+            candidate = self.outlook(candidate)
         contenders = []
         for position, table in enumerate(self.parsed.contender):
+            if table.outlook:
+                self.refuse(f"contender.{position}.outlook", "belongs to the candidate alone", ", ".join(table.outlook))
             side = self.side(table, f"contender.{position}")
             if side is not None:
                 contenders.append(side)
@@ -394,8 +424,9 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     points = int(build.number("search.supply_points", parsed.search.supply_points, 3, 5001))
     refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
     draws = _draws(build)
+    joints, values = read_joints(parsed.joint, values, file, library.collector)
     _check_transient(build, points)
-    _check_temperatures(build, temperatures, [*contenders, *([candidate] if candidate else [])])
+    _check_temperatures(build, temperatures, [*contenders, *_every_set(candidate)])
     _check_self_comparison(build, candidate, contenders)
     if candidate is not None and contenders:
         check_declared_supplies(build, policy, candidate, contenders)
@@ -439,6 +470,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         file.path,
         topology=parsed.workload.topology,
         draws=draws,
+        joints=joints,
     )
 
 
@@ -471,6 +503,13 @@ def _check_transient(build: _Builder, points: int) -> None:
         build.refuse(
             "search.supply_points", "is too many for the transient rule", str(points), f"3 to {TRANSIENT_POINTS}"
         )
+
+
+def _every_set(candidate: Side | None) -> list[Side]:
+    """Return the candidate with each of its sets in turn."""
+    if candidate is None:
+        return []
+    return [candidate, *(dataclasses.replace(candidate, technology=item) for item in candidate.outlook)]
 
 
 def _check_temperatures(build: _Builder, temperatures: Sequence[float], sides: Sequence[Side]) -> None:
@@ -513,7 +552,7 @@ def _check_invented(
     """A study with invented inputs must call itself a demonstration, and only then."""
     groups: list[list[Value]] = [list(values.values()), *(list(item.values.values()) for item in wires)]
     groups += [list(layer.values()) for layer in circuit.layers.values()] if circuit is not None else []
-    for side in [*contenders, *([candidate] if candidate else [])]:
+    for side in [*contenders, *_every_set(candidate)]:
         groups += [
             list(table.values()) for table in (side.technology.values, side.overhead, side.gating, side.mitigation)
         ]

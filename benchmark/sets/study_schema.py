@@ -14,6 +14,7 @@ from benchmark.sets.schema import (
     FreeNote,
     High,
     Identity,
+    Joints,
     Low,
     Measure,
     NodeLabel,
@@ -148,6 +149,12 @@ class SideTable(FileModel):
     id: Text = Field(
         default="", description="Name in results; needed when one technology stands for several contenders"
     )
+    outlook: list[Text] = Field(
+        default=[],
+        max_length=2,
+        description="Candidate only: further sets of the same switch by id, such as a target and a physical limit; "
+        "drawn and tabled beside it, never judged",
+    )
     circuit: Text = Field(
         default="", description="Circuit of this side alone, with workload.topology = own-best; empty: workload.circuit"
     )
@@ -263,6 +270,7 @@ class StudyFile(FileModel):
     product: ProductTable = Field(description="K: the product class")
     workload: WorkloadTable = Field(description="W: the operation, the circuit, and how time and leakage are counted")
     value: dict[str, ValueTable] = Field(description="Scenario values by catalogue name, the same for both sides")
+    joint: Joints = []
     conditions: ConditionsTable = Field(description="What both sides share")
     candidate: SideTable = Field(description="The new switch")
     contender: list[SideTable] = Field(

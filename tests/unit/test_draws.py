@@ -14,9 +14,10 @@ from benchmark.decide.compare import Comparison
 from benchmark.decide.draw_block import DrawTask
 from benchmark.decide.uncertainty import uncertainty
 from benchmark.draws.plan import Plan, net, plan_of
-from benchmark.draws.values import draw_values, drawn_keys, value_at
+from benchmark.draws.values import draw_values, drawn_keys, tied_with, value_at
 from benchmark.evaluate.batch import Batch
 from benchmark.record.load import load_study
+from benchmark.sets.joints import Joint
 from benchmark.sets.study import draws_allowed
 from benchmark.sets.values import Spread, Value
 from tests.fixed_displacement import fixed_displacement
@@ -291,3 +292,73 @@ def test_narrow_spreads_give_the_deterministic_answer(tmp_path: Path):
     for required, expected in (("1.0", 1.0), ("3.0", 0.0)):
         found = uncertainty(task(fixed_displacement(required=required, **narrow).write(tmp_path / required), 64))
         assert found.reaches.value == expected
+
+
+# -- values that are not independent -----------------------------------------------------------------------------------
+
+
+def sampled(columns: dict[str, np.ndarray], a: str, b: str) -> float:
+    return float(stats.spearmanr(columns[a], columns[b]).statistic)
+
+
+@pytest.mark.parametrize("rho", [-1.0, -0.6, 0.0, 0.35, 1.0])
+def test_a_rank_correlation_is_met_and_the_distributions_stay(rho: float):
+    values = {f"set.{name}": value(2.0, "loguniform", 1.0, 8.0) for name in ("a", "b", "c")}
+    joints = {"set": (Joint(("a", "b"), rho),)}
+    drawn = [draw_values(values, Plan(8, 1024, 0), block, joints=joints)[1] for block in range(8)]
+    columns = {key: np.concatenate([part[key] for part in drawn]) for key in values}
+    assert sampled(columns, "set.a", "set.b") == near(rho, rel=0, abs=0.02)
+    assert sampled(columns, "set.a", "set.c") == near(0.0, abs=0.04)
+    for column in columns.values():
+        assert stats.kstest(column, stats.loguniform(1.0, 8.0).cdf).statistic < 0.02
+
+
+def test_gum_s1_power_meter_with_correlation():
+    """9.4.3: r = 0.9: u 67e-6 at x1 = 0, 505e-6 at x1 = 0.050 (closed form, as published)."""
+    joint = Joint(("x1", "x2"), 6.0 / np.pi * np.arcsin(0.45))  # r = 2 sin(pi rho / 6)
+    for x1, u in ((0.0, 67e-6), (0.050, 505e-6)):
+        values = {"example.x1": normal(x1, 0.005), "example.x2": normal(0.0, 0.005)}
+        plan = plan_of(2**17)
+        y = []
+        for block in range(plan.blocks):
+            _, columns = draw_values(values, plan, block, joints={"example": (joint,)})
+            y.append(columns["example.x1"] ** 2 + columns["example.x2"] ** 2)
+        assert np.concatenate(y).std() == near(u, rel=0.012)
+
+
+def test_paired_samples_with_opposite_effect_leave_nothing():
+    """Resistance and capacitance measured on the same samples, perfectly opposed: R C has no spread at all."""
+    r = np.array([1.0e3, 2.0e3, 4.0e3, 8.0e3])
+    samples = np.stack([r, 1.0e-12 / r], axis=1)
+    values = {
+        "set.r": value(2.0e3, "samples", 1.0e3, 8.0e3),
+        "set.c": value(5.0e-16, "samples", 1.25e-16, 1.0e-15),
+        "set.x": value(2.0, "uniform", 1.0, 4.0),
+    }
+    points, columns = draw_values(values, Plan(8, 16, 0), 0, joints={"set": (Joint(("r", "c"), samples=samples),)})
+    assert columns["set.r"] * columns["set.c"] == near(np.full(16, 1.0e-12), rel=1e-15)
+    assert set(columns["set.r"]) == set(r)
+    assert set(points) == {"set.r", "set.x"}
+    assert tied_with("set.r", {"set": (Joint(("r", "c"), samples=samples),)}) == {"set.r", "set.c"}
+
+
+def test_joints_of_files(tmp_path: Path):
+    inputs = fixed_displacement()
+    film = inputs.sets["technologies/film-switch"]
+    film["joint"] = [{"values": ["actuator_coefficient", "input_capacitance"], "rank_correlation": D("0.8")}]
+    correlated = uncertainty(task(inputs.write(tmp_path / "a"), 4096))
+    # ln A = ... + 2 ln d - ln C: a positive correlation narrows it; r = 2 sin(0.8 pi / 6)
+    r = 2.0 * np.sin(0.8 * np.pi / 6.0)
+    exact = np.sqrt(0.04 + 0.16 + 0.01 - 2.0 * r * 0.2 * 0.4)
+    assert correlated.sd_log.value == near(exact, rel=0, abs=4.0 * correlated.sd_log.error + 1e-3)
+    for key in ("actuator_coefficient", "input_capacitance"):
+        del film["value"][key]["spread"]
+    film["joint"] = [
+        {
+            "values": ["actuator_coefficient", "input_capacitance"],
+            "samples": [[D("190.0"), D("0.0902")], [D("200.0"), D("0.1000")], [D("210.0"), D("0.1102")]],
+        }
+    ]
+    paired = uncertainty(task(inputs.write(tmp_path / "b"), 1024))
+    assert paired.inputs == 2  # the pair, and the reference's capacitance
+    assert paired.sd_log.value == near(0.10, rel=0.02)  # d^2 / C is the same for all three samples within 0.3 %
