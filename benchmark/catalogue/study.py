@@ -119,11 +119,20 @@ STUDY_QUANTITIES: tuple[Quantity, ...] = (
     Quantity(
         "repeated_share",
         "g_copy",
-        "share of the block that each further parallel copy repeats: area, leakage and wake-up energy",
+        "share of the block that each further parallel copy repeats: its leakage, bias and wake-up energy",
         "1",
         0.05,
         1.0,
         "fraction",
+    ),
+    Quantity(
+        "area_share",
+        "h_copy",
+        "area that each further parallel copy adds, routing included, as a share of the block's",
+        "1",
+        0.05,
+        5.0,
+        "nonnegative",
     ),
     Quantity("body_factor", "gamma_b", "threshold shift per volt of back bias, V per V", "1", 0.01, 0.3, "nonnegative"),
     Quantity(

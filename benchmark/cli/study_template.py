@@ -64,7 +64,7 @@ def _side(kind: str, item: ParameterSet) -> str:
     for name in ("residual_leakage", "wake_energy_cycles"):
         lines.append(f'# {name} = {{ value = {STUDY_NUMBERS[name]}, unit = "{QUANTITIES[name].unit}" }}')
     lines.append(f"# with the knob copies:\n# [{kind}.mitigation]")
-    for name in ("routing_overhead", "repeated_share"):
+    for name in ("routing_overhead", "repeated_share", "area_share"):
         lines.append(f'# {name} = {{ value = {STUDY_NUMBERS[name]}, unit = "{QUANTITIES[name].unit}" }}')
     return "\n".join(lines)
 

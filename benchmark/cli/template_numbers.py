@@ -147,6 +147,7 @@ STUDY_NUMBERS: Final[Mapping[str, str]] = {
     "wake_energy_cycles": "3",
     "routing_overhead": "0.1",
     "repeated_share": "1",
+    "area_share": "1",
     "idle_time": "1",
     "active_cycles": "1000",
     "word_length": "16",

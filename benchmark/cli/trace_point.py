@@ -156,7 +156,7 @@ class _Tracer:
             sheet.given("n_copy", choice.copies, "1", "parallel copies, which take turns")
             sheet.given("k_copy", one(costs["routing_overhead"]), "1", "dynamic energy added by each further copy")
             sheet.given("g_copy", one(costs["repeated_share"]), "1", "share of the block each further copy repeats")
-            sheet.result("s_copy", "1 + g_copy*(n_copy - 1)", "1", "leakage, area and wake-up energy against one copy")
+            sheet.result("s_copy", "1 + g_copy*(n_copy - 1)", "1", "leakage and wake-up energy against one copy")
 
     # -- what all nets share ------------------------------------------------------------------------------------
 

@@ -16,9 +16,10 @@ time: a block that may be gated is gated where that costs less.
 
 Parallel copies: n copies take turns, so each may take n times the time between two operations, which is then the path
 delay over n; one operation takes as long as before. Every further copy adds the share k to the dynamic energy of an
-operation (routing, merging) and repeats the share g of the block (g = 1: all of it; less when stages are pipelined)::
+operation (routing, merging), repeats the share g of the block (g = 1: all of it; less when stages are pipelined) and
+takes the share h of its area::
 
-    E_dynamic -> E_dynamic (1 + k (n - 1));   P, area, sum(C V^2) -> (1 + g (n - 1)) times
+    E_dynamic -> (1 + k (n - 1)) times;   P, sum(C V^2) -> (1 + g (n - 1)) times;   area -> (1 + h (n - 1)) times
 
 (arithmetic of Chandrakasan, Sheng, Brodersen, JSSC 27 (1992) 473, from memory). The overhead power is repeated in
 whole, the level shifters are not. Not modelled: the delay of merging. Back bias: see ``SideProblem.device_shift``; any
@@ -195,7 +196,7 @@ def _reduce(problem: SideProblem, supply: Array, choice: Choice, pair: SwitchPai
         leakage_power=leakage,
         standing_power=standing,
         idle_energy=idle_energy,
-        area=at_hot(metrics.area) * repeated,
+        area=at_hot(metrics.area) * _repeated(problem, choice.copies, "area_share"),
         power_density=time,
         noise_ratio=np.broadcast_to(_temperatures(problem, metrics.half_swing_over_noise).min(axis=1), shape),
         hysteresis=_hysteresis(problem, pair, shape),

@@ -33,7 +33,7 @@ _STUDY = (
 )
 #: field of a design point -> base value
 _POINT = {
-    **dict.fromkeys(("supply", "threshold_shift"), "V"),
+    **dict.fromkeys(("supply", "threshold_shift", "back_bias"), "V"),
     **dict.fromkeys(("time", "cycle"), "s"),
     "energy": "J",
     "leakage_power": "W",
@@ -74,8 +74,8 @@ class _Maker:
         if point is None:
             return None
         return {
-            **{name: self.by(point[name], unit) for name, unit in _POINT.items()},
-            "size": point["size"],
+            **{name: self.by(point[name], unit) for name, unit in _POINT.items() if name in point},
+            **{name: point[name] for name in ("size", "copies", "gated") if name in point},
             "time_parts": {name: self.by(value, "s") for name, value in point["time_parts"].items()},
             "energy_parts": {name: self.by(value, "J") for name, value in point["energy_parts"].items()},
             **{name: point[name] for name in ("delay_shares", "energy_shares", "delay_limit", "energy_limit")},
@@ -95,6 +95,36 @@ class _Maker:
             | {"contenders": [self.side(side, "contender") for side in row["contenders"]]}
             for row in self.record["policies"]
         ]
+
+    def ladder(self) -> list[Row]:
+        return [
+            {name: ladder[name] for name in ("of", "state", "turn")}
+            | {
+                "rungs": [
+                    {name: rung[name] for name in ("name", "offered", "advantage", "side", "copies", "gated")}
+                    | {name: self.by(rung[name], "V") for name in ("supply", "back_bias")}
+                    | {"why": self.say(rung["why"])}
+                    for rung in ladder["rungs"]
+                ]
+            }
+            for ladder in self.record.get("ladder", ())
+        ]
+
+    def robustness(self) -> Row:
+        found = self.record.get("robustness")
+        if found is None:
+            return {}
+        kept = ("policy", "contenders", "pair", "temperatures", "advantage", "level", "strongest", "declared")
+        cells = [{name: cell[name] for name in kept} | {"why": self.say(cell["why"])} for cell in found["cells"]]
+        counts = {name: found[name] for name in ("reaching", "better", "infeasible", "worst")}
+        return {"robustness": counts | {"cells": cells}}
+
+    def uncertainty(self) -> Row | None:
+        found = self.record.get("uncertainty")
+        if found is None:
+            return None
+        shares = [{**row, "unit": OF_BEST} for row in found["shares"]]
+        return {name: value for name, value in found.items() if name != "bands"} | {"shares": shares, "bands": []}
 
     def curves(self) -> list[Row]:
         return [
@@ -163,6 +193,14 @@ class _Maker:
             for row in self.record["closed_form"]
         ]
 
+    def error_bands(self) -> Row:
+        bands = self.record["error_bands"]
+        rows = [
+            row | {"missing": [{"share": part["share"], "why": self.say(part["why"])} for part in row["missing"]]}
+            for row in bands["sides"]
+        ]
+        return {"sides": rows, "advantage": bands["advantage"]}
+
     def moves(self) -> list[Row]:
         ends = ("best", "low", "high", "flip", "flip_low", "flip_high")
         kept = ("key", "name", "evidence", "advantage_low", "advantage_high", "ranged", "straddles", "matters")
@@ -208,7 +246,7 @@ class _Maker:
     def sides(self) -> list[Row]:
         kept = ("id", "role", "technology", "ambition", "model", "sizes", "sha256")
         return [
-            {name: side[name] for name in (*kept, "circuit") if name in side}
+            {name: side[name] for name in (*kept, "circuit", "copies") if name in side}
             | {name: self.say(side[name]) for name in ("title", "flavour", "note")}
             | {name: [LEFT_OUT] * len(side[name]) for name in ("supply", "threshold_shifts")}
             for side in self.record["sides"]
@@ -324,6 +362,9 @@ def _parts(make: _Maker, record: Record, words: str) -> Row:
         "requirements": make.requirements(),
         "policies": make.policies(),
         "sides": make.sides(),
+        "ladder": make.ladder(),
+        **make.robustness(),
+        "uncertainty": make.uncertainty(),
         "curves": make.curves(),
         "advantage_against_time": make.advantages(),
         "crossings": [{"level": row["level"], "time": make.by(row["time"], "s")} for row in record["crossings"]],
@@ -332,6 +373,7 @@ def _parts(make: _Maker, record: Record, words: str) -> Row:
         "node_crossings": record["node_crossings"],
         "anchors": make.anchors(),
         "closed_form": make.closed_form(),
+        "error_bands": make.error_bands(),
         "self_checks": record["self_checks"],
         "ledger": make.ledger(),
         "options": [row | {"value": make.say(row["value"])} for row in record["options"]],

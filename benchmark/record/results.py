@@ -10,12 +10,22 @@ import numpy as np
 from benchmark.decide.assess import RequirementResult
 from benchmark.decide.compare import Outcome, SideOutcome
 from benchmark.decide.curves import Envelope, Swept
+from benchmark.decide.error_bands import AdvantageBand, SideBand
 from benchmark.decide.limiting import DELAY_GROUPS, ENERGY_GROUPS, groups_of, limiting
 from benchmark.decide.moves import InputMove
 from benchmark.decide.verdict import Verdict
 from benchmark.evaluate.points import Points
 
-__all__ = ["clean", "envelope_rows", "outcome_row", "point_row", "requirement_rows", "swept_rows", "verdict_row"]
+__all__ = [
+    "clean",
+    "envelope_rows",
+    "error_band_row",
+    "outcome_row",
+    "point_row",
+    "requirement_rows",
+    "swept_rows",
+    "verdict_row",
+]
 
 
 def clean(value: Any) -> Any:
@@ -49,6 +59,9 @@ def point_row(points: Points, row: int = 0, column: int = 0) -> dict[str, Any]:
         "supply": _cell(points.supply, row, column),
         "size": points.size,
         "threshold_shift": points.threshold_shift,
+        "copies": points.copies,
+        "back_bias": _cell(points.back_bias, row, column),
+        "gated": bool(_cell(points.gated, row, column)),
         "time": _cell(points.time, row, column),
         "cycle": _cell(points.cycle, row, column),
         "energy": _cell(points.energy, row, column),
@@ -200,3 +213,14 @@ def envelope_rows(envelope: Envelope) -> list[dict[str, Any]]:
         }
         for i in range(envelope.time.size)
     ]
+
+
+def error_band_row(bands: list[SideBand], advantage: AdvantageBand | None) -> dict[str, Any]:
+    """Measured bands of the closed forms at the design points, and what they leave of the advantage."""
+    kept = ("side", "role", "quantity", "low", "high", "covered", "points", "over")
+    sides = [
+        {name: getattr(band, name) for name in kept}
+        | {"missing": [{"share": share, "why": why} for share, why in band.missing]}
+        for band in bands
+    ]
+    return {"sides": sides, "advantage": None if advantage is None else vars(advantage)}

@@ -13,8 +13,9 @@ import numpy as np
 import benchmark
 from benchmark.decide.assess import RequirementResult, assess
 from benchmark.decide.closed_form import closed_form_differences, delay_factor
-from benchmark.decide.compare import Comparison, Outcome
+from benchmark.decide.compare import Comparison, Outcome, choice_of
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
+from benchmark.decide.error_bands import advantage_band, band_warnings, side_bands
 from benchmark.decide.flips import with_flips
 from benchmark.decide.moves import InputMove, move_inputs
 from benchmark.decide.notices import result_warnings
@@ -26,12 +27,23 @@ from benchmark.decide.verdict import Verdict, judge
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
+from benchmark.record.draws import draw_rows
 from benchmark.record.ledger import ledger_rows, option_rows, technologies
-from benchmark.record.results import clean, envelope_rows, outcome_row, requirement_rows, swept_rows, verdict_row
+from benchmark.record.outlook import outlook_rows
+from benchmark.record.results import (
+    clean,
+    envelope_rows,
+    error_band_row,
+    outcome_row,
+    requirement_rows,
+    swept_rows,
+    verdict_row,
+)
 from benchmark.record.statements import CAUTIONS, NOT_MODELLED, conventions
+from benchmark.record.strength import ladder_rows, mitigation_conventions, robustness_row, side_choices
 from benchmark.record.topology import circuit_assumptions, same_netlist_rows, side_circuit, topology_convention
 from benchmark.sets.library import Library
-from benchmark.sets.study import Study
+from benchmark.sets.study import Choice, DrawSettings, Study
 
 __all__ = ["RECORD_SCHEMA", "Progress", "run_study"]
 
@@ -126,7 +138,13 @@ def _files(study: Study, library: Library) -> list[dict[str, str]]:
 
 
 def run_study(
-    study: Study, library: Library, *, created: str | None = None, progress: Progress = _silent
+    study: Study,
+    library: Library,
+    *,
+    created: str | None = None,
+    progress: Progress = _silent,
+    draws: DrawSettings | None = None,
+    jobs: int = 1,
 ) -> dict[str, Any]:
     """Run a study and return its record as plain data.
 
@@ -138,22 +156,39 @@ def run_study(
         Time stamp to write instead of the clock (for byte-identical records).
     progress : callable
         Told each step and the share done.
+    draws : DrawSettings, optional
+        Instead of those of the study.
+    jobs : int
+        Processes for the draws; their number changes no digit.
     """
     progress("evaluating the headline pair", 0.0)
     primary = _primary(study)
     progress("moving every input alone", 0.2)
     verdict = _verdict(study, primary)
     progress("other policies", 0.6)
-    policies = [outcome_row(primary.outcome, study.policy.primary in DIAGNOSTIC)]
-    policies += [outcome_row(primary.comparison.outcome(name), name in DIAGNOSTIC) for name in study.policy.also]
+    outcomes = {study.policy.primary: primary.outcome}
+    outcomes |= {name: primary.comparison.outcome(name) for name in study.policy.also}
+    policies = [outcome_row(outcome, name in DIAGNOSTIC) for name, outcome in outcomes.items()]
     policies += same_netlist_rows(study)
-    progress("required times and nodes", 0.7)
+    progress("strength of the reference and robustness", 0.65)
+    rungs = ladder_rows(primary.comparison, primary.outcome)
+    cells = robustness_row(study, outcomes)
+    progress("required times and nodes", 0.75)
     envelope = advantage_against_time(study, primary.curves)
     nodes = scan_nodes(study, study.policy.primary)
     steps = node_steps(study, study.policy.primary, nodes)
     progress("checking the reference and the method", 0.8)
     anchors = [result for item in technologies(study) if item.model for result in anchor_results(item)]
     checks = self_checks(study, primary.outcome)
+    bands = side_bands(primary.comparison, primary.outcome)
+    banded = advantage_band(primary.comparison, primary.outcome, envelope, bands)
+    drawn = draw_rows(
+        study,
+        primary.comparison.frozen_choices(primary.outcome),
+        draws or study.draws,
+        jobs,
+        lambda share: progress("drawing all ranges together", 0.82 + 0.13 * share),
+    )
     progress("writing the record", 0.95)
     sources = library.sources
     used = _used_sources(study)
@@ -166,6 +201,10 @@ def run_study(
         "requirements": requirement_rows(primary.requirements),
         "policies": policies,
         "sides": _side_rows(study),
+        "uncertainty": drawn,
+        "ladder": rungs,
+        "robustness": cells,
+        "outlook": outlook_rows(study),
         "curves": _curve_rows(primary),
         "advantage_against_time": envelope_rows(envelope),
         "crossings": _crossings(study, envelope),
@@ -174,19 +213,23 @@ def run_study(
         "node_crossings": _node_crossings(study, [row.advantage for row in nodes]),
         "anchors": [vars(row) for row in anchors],
         "closed_form": closed_form_differences(primary.comparison, primary.outcome),
+        "error_bands": error_band_row(bands, banded),
         "self_checks": checks,
         "ledger": ledger_rows(study, verdict.moves, sources),
         "options": option_rows(study),
         "sources": {
             key: vars(sources[key]) | {"citation": sources[key].citation} for key in sorted(used) if key in sources
         },
-        "conventions": conventions(study, _factors(primary)) + topology_convention(study),
+        "conventions": conventions(study, _factors(primary))
+        + topology_convention(study)
+        + mitigation_conventions(study),
         "circuit_assumptions": circuit_assumptions(primary.comparison),
         "not_modelled": list(NOT_MODELLED),
         "cautions": list(CAUTIONS),
         "notes": [str(note) for note in sorted(set(library.collector.notes))],
         "warnings": [str(warning) for warning in sorted(set(library.collector.warnings))]
-        + result_warnings(primary.comparison, primary.outcome, verdict),
+        + result_warnings(primary.comparison, primary.outcome, verdict)
+        + band_warnings(study, bands, banded),
         "files": _files(study, library),
     }
     progress("done", 1.0)
@@ -253,16 +296,31 @@ def _side_rows(study: Study) -> list[dict[str, Any]]:
                 "supply": list(side.supply),
                 "sizes": list(side.sizes),
                 "threshold_shifts": list(side.threshold_shifts),
+                **side_choices(side),
                 "sha256": item.sha256,
             }
         )
     return rows
 
 
+def _shown_curves(primary: _Primary, key: str, curves: list[tuple[SideRun, Swept]]) -> list[tuple[SideRun, Swept]]:
+    """One curve for each size and threshold shift: with copies and back bias as chosen, else the first."""
+    contenders = {side.id: side for side in primary.outcome.contenders}
+    chosen = choice_of(primary.outcome.candidate if key == "candidate" else contenders[key])
+    found: dict[tuple[float, float], tuple[SideRun, Swept]] = {}
+    for run, curve in curves:
+        points = curve.points
+        place = (points.size, points.threshold_shift)
+        own = Choice(*place, points.copies, float(points.back_bias[0, 0]))
+        if place not in found or own == chosen:
+            found[place] = (run, curve)
+    return list(found.values())
+
+
 def _curve_rows(primary: _Primary) -> list[dict[str, Any]]:
     rows = []
     for key, curves in primary.curves.items():
-        for run, curve in curves:
+        for run, curve in _shown_curves(primary, key, curves):
             rows.append(
                 {
                     "side": curve.id,
@@ -312,8 +370,9 @@ def _used_sources(study: Study) -> set[str]:
     values = [*study.values.values(), *(value for item in study.wires_sets for value in item.values.values())]
     used: set[str] = set()
     for side in (study.candidate, *study.contenders):
-        item = side.technology
-        values += [*item.values.values(), *side.overhead.values(), *side.gating.values(), *side.mitigation.values()]
+        values += [*side.overhead.values(), *side.gating.values(), *side.mitigation.values()]
+    for item in technologies(study):
+        values += item.values.values()
         used |= {table.source for table in item.tables.values()} | {anchor.source for anchor in item.anchors}
         used |= {source for _, source in item.rows_rest_on}
     if study.circuit_spec is not None:

@@ -2,13 +2,24 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from typing import Any
 
 from benchmark.record.shown_units import in_units_of_record, normalised
 from benchmark.units import format_si
 
-__all__ = ["answer_sentence", "engineering", "factor", "verdict_text"]
+__all__ = [
+    "answer_sentence",
+    "cell_words",
+    "engineering",
+    "factor",
+    "ladder_words",
+    "probability",
+    "robustness_words",
+    "uncertainty_words",
+    "verdict_text",
+]
 
 _PREFIXES = (
     (1e15, "P"),
@@ -86,6 +97,102 @@ def _side_line(name: str, point: Mapping[str, Any]) -> str:
     )
 
 
+def _band_line(record: Mapping[str, Any]) -> str:
+    """Return how far the closed forms were from simulation; empty where none stands behind the numbers."""
+    parts = []
+    rows = record["error_bands"]["sides"]
+    for side in dict.fromkeys(row["side"] for row in rows):
+        mine = [row for row in rows if row["side"] == side and row["quantity"] in ("delay", "energy per operation")]
+        said = [
+            f"{row['quantity']} {row['low']:.2f} to {row['high']:.2f}"
+            + ("" if row["covered"] > 0.999 else f" ({100.0 * row['covered']:.0f} % of it measured)")
+            for row in mine
+            if row["points"]
+        ]
+        parts.append(f"{side} {', '.join(said) if said else 'not measured'}")
+    return f"Closed forms over circuit simulation: {'; '.join(parts)}" if parts else ""
+
+
+def probability(found: Mapping[str, float]) -> str:
+    """Print a probability with its sampling error."""
+    if found["error"] == 0.0:
+        return f"{found['value']:.3g} (no scatter between scrambles)"
+    digits = max(2, 1 - math.floor(math.log10(found["error"])))
+    return f"{found['value']:.{digits}f} +- {found['error']:.{digits}f}"
+
+
+def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
+    """Say how probable the required advantage is under the stated ranges, and what carries it."""
+    found = record.get("uncertainty")
+    if found is None:
+        return []
+    required = record["study"]["required_advantage"]
+    reaches, better = probability(found["reaches"]), probability(found["above_one"])
+    lines = [
+        f"Under the stated ranges ({found['draws']} draws, seed {found['seed']}): an advantage of {required:g} is "
+        f"{found['word']}, probability {reaches}; more than 1: {better}. "
+        f"The ranges of {found['judgement']} of {found['inputs']} inputs are judgement or invented."
+    ]
+    if found["without_candidate"] > 0.0:
+        lines.append(f"  In {found['without_candidate']:.2g} of the draws the candidate has no permitted point.")
+    if found["constant"]:
+        return [*lines, "  No drawn input moves the advantage."]
+    named = [row for row in found["shares"][:3] if row["share"] > 2.0 * row["share_error"]]
+    if named:
+        shares = ", ".join(f"{row['key']} {100.0 * row['share']:.2g} %" for row in named)
+        lines.append(f"  Largest shares of the variance of its logarithm: {shares}")
+    if found["stop"]:
+        return [*lines, "  No measurement of these inputs can change the answer within their ranges: stop."]
+    first = max(found["shares"], key=lambda row: row["worth"])
+    if first["worth"] > 2.0 * first["worth_error"]:
+        lines.append(f"  Most worth measuring: {first['key']} (worth {first['worth']:.2g} in ln(advantage))")
+    return lines
+
+
+def ladder_words(record: Mapping[str, Any], row: Mapping[str, Any]) -> str:
+    """Say what becomes of the required advantage on the way up a ladder."""
+    required = record["study"]["required_advantage"]
+    head = f"Ladder of the {row['of']}: "
+    if row["state"] == "undefined":
+        return f"{head}on no rung do both sides have a permitted point."
+    known = [rung for rung in row["rungs"] if rung["advantage"] is not None]
+    first, last = (_shown(rung["advantage"], required) for rung in (known[0], known[-1]))
+    whole = known[-1]["name"] == row["rungs"][-1]["name"]
+    top = "with everything the study offers" if whole else f"at '{known[-1]['name']}'"
+    span = f"advantage {first} at '{known[0]['name']}', {last} {top}"
+    end = {
+        "lost": f"is lost at '{row['turn']}'",
+        "reached": f"is reached at '{row['turn']}'",
+        "kept": "is kept on every rung",
+        "never": "is reached on no rung",
+    }[row["state"]]
+    return f"{head}{span}; the required {required:g} {end}."
+
+
+def cell_words(cell: Mapping[str, Any]) -> str:
+    """Name a cell."""
+    kelvin = cell["temperatures"]
+    at = f"{kelvin[0]:.6g} K" if len(kelvin) == 1 else "all temperatures"
+    return f"{cell['policy']}, contenders {cell['contenders']}, pair {cell['pair']}, {at}"
+
+
+def robustness_words(record: Mapping[str, Any]) -> str:
+    """Say how many cells reach the required advantage, and which is the worst."""
+    row = record["robustness"]
+    required = record["study"]["required_advantage"]
+    cells = len(row["cells"])
+    text = f"Robustness: {row['reaching']} of {cells} cells reach {required:g}, {row['better']} are above 1"
+    text += f", {row['infeasible']} are infeasible" if row["infeasible"] else ""
+    if row["worst"] is None:
+        return f"{text}."
+    worst = row["cells"][row["worst"]]
+    return f"{text}; worst {_shown(worst['advantage'], required)} ({cell_words(worst)})."
+
+
+def _shown(advantage: Any, required: float) -> str:
+    return advantage if isinstance(advantage, str) else factor(advantage, 1.0, required)
+
+
 @in_units_of_record
 def verdict_text(record: Mapping[str, Any]) -> str:
     """Return the verdict as a few plain lines."""
@@ -102,6 +209,8 @@ def verdict_text(record: Mapping[str, Any]) -> str:
         reference = next((side for side in primary["contenders"] if side["id"] == primary["strongest"]), None)
         if reference is not None and reference["point"] is not None:
             lines.append(_side_line(reference["id"], reference["point"]))
+    if band := _band_line(record):
+        lines.append(band)
     lines.append("Requirements:")
     for row in record["requirements"]:
         unit = row["unit"]
@@ -111,6 +220,9 @@ def verdict_text(record: Mapping[str, Any]) -> str:
             f"  {row['state']:7} {row['name'].replace('_', ' ')}: demanded {engineering(row['demanded'], unit)}, "
             f"offered {engineering(row['offered'], unit)}{margin}{note}"
         )
+    lines += uncertainty_words(record)
+    lines += [ladder_words(record, row) for row in record.get("ladder", ())]
+    lines += [robustness_words(record)] if "robustness" in record else []
     counts = (
         f"{verdict['inputs_with_effect']} inputs move the result, {verdict['inputs_without_range']} of them have "
         f"no stated range, {verdict['inputs_of_judgement']} are judgement or invented."
