@@ -247,24 +247,43 @@ def sheet(
     advantage: float | None = None,
     pair: str = "",
     points: int = 17,
+    probability: float | None = None,
+    draws: int = 256,
+    seed: int = 0,
     told: Told | None = None,
 ) -> Needed:
-    """Return what each decisive value of the candidate must be, alone; parameters as in ``need``.
+    """Return what each decisive value of the candidate must be, alone; other parameters as in ``need``.
+
+    Parameters
+    ----------
+    probability : float, optional
+        Also state the value, and the spread, at which the level is reached with this probability when all stated ranges
+        are drawn together.
+    draws, seed : int
+        How many draws (a power of two from 16), and from which seed.
 
     Raises
     ------
     UsageError
-        For an unknown pair or level, or when there is no advantage today.
+        For an unknown pair or level, when there is no advantage today, or when a probability is asked for and nothing
+        can be drawn.
     """
-    from benchmark.decide.specification import SHEET_COLUMNS, sheet_rows, specification
+    from benchmark.decide.specification import SHEET_COLUMNS, TOLERANCE_COLUMNS, sheet_rows, specification
 
     view, trials = _trials(study, pair, told)
-    found = specification(trials, _level(view, advantage), points)
+    level = _level(view, advantage)
+    found = specification(trials, level, points, probability=probability, draws=draws, seed=seed)
     rows = sheet_rows(found)
-    facts = [(row["name"], f"{row['reachable']}. {row['words']}") for row in rows]
+    facts = []
+    for row in rows:
+        drawn = found.tolerances.get(row["name"])
+        facts.append(
+            (row["name"], f"{row['reachable']}. {row['words']}" + ("" if drawn is None else f". Drawn: {drawn.words}"))
+        )
+    columns = SHEET_COLUMNS if probability is None else (*SHEET_COLUMNS, *TOLERANCE_COLUMNS)
     if not facts:
         facts = [("nothing is decisive", "no value of the candidate alone changes on which side the answer lies")]
-    return Needed(_heading(view, trials), tuple(facts), SHEET_COLUMNS, tuple(rows))
+    return Needed(_heading(view, trials), tuple(facts), columns, tuple(rows))
 
 
 def opportunity(

@@ -304,6 +304,11 @@ def need(
     flips: Annotated[
         int, typer.Option("--flips", help="Smallest set of up to so many inputs (1 to 3) that changes the answer.")
     ] = 0,
+    probability: Annotated[
+        float | None, typer.Option("--probability", help="With --sheet: also value and spread for this probability.")
+    ] = None,
+    draws: Annotated[int, typer.Option("--draws", help="Draws for --probability: a power of two from 16.")] = 256,
+    seed: Annotated[int, typer.Option("--seed", help="Seed of these draws.")] = 0,
     points: Annotated[int | None, typer.Option("--points", help="Grid points of each scan.")] = None,
     form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
     nodes: Nodes = None,
@@ -324,6 +329,9 @@ def need(
         map_=map_,
         improve=improve,
         flips=flips,
+        probability=probability,
+        draws=draws,
+        seed=seed,
         form=form,
         nodes=nodes or [],
         overrides=_overrides(set_),

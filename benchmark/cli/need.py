@@ -75,6 +75,9 @@ def need_command(
     map_: str,
     improve: bool,
     flips: int,
+    probability: float | None,
+    draws: int,
+    seed: int,
     form: str,
     nodes: Sequence[Path],
     overrides: Mapping[str, str],
@@ -99,6 +102,9 @@ def need_command(
     if points is not None and (points < 2 or question in ("--improve", "--flips")):
         message = f"--points needs 2 or more, and a question that scans a range; found {points}"
         raise UsageError(message)
+    if probability is not None and not sheet:
+        message = "--probability belongs to --sheet"
+        raise UsageError(message)
     told = _Count()
     more: dict[str, Any] = {"advantage": advantage, "pair": pair, "told": told}
     scan: dict[str, Any] = {} if points is None else {"points": points}
@@ -107,7 +113,7 @@ def need_command(
         if trade:
             found = api.trade(view, names[0], names[1], over=ranges, **more, **scan)
         elif sheet:
-            found = api.sheet(view, **more, **scan)
+            found = api.sheet(view, probability=probability, draws=draws, seed=seed, **more, **scan)
         elif map_:
             found = api.opportunity(view, map_, **more, **scan)
         elif improve:

@@ -19,6 +19,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
+from numpy.typing import NDArray
 
 from benchmark.decide.axes import Axis
 from benchmark.decide.profile import Crossing, Edge, Line, Profile, profiles
@@ -119,6 +120,7 @@ def find_needs(
     today = float(trials.best.advantage[0])
     found = []
     for profile in profiles(trials, [Line(axis) for axis in axes], levels, count):
+        looks: list[_Look] | None = None
         for level in dict.fromkeys(levels):
             crossings = profile.crossings_of(level)
             known = profile.defined
@@ -133,7 +135,24 @@ def find_needs(
                 float(known.max()) if known.size else float("nan"),
                 _on_bound(profile, level),
             )
-            found.append(_followed(trials, profile, need) if ideal and need.kind == "never" else need)
+            if ideal and need.kind == "never":
+                looks = _look(trials, profile.line) if looks is None else looks
+                need = _followed(trials, profile, need, looks)
+            found.append(need)
+    return found
+
+
+#: one way outwards: its name, the values looked at, and the advantages up to where a side has no permitted point
+_Look = tuple[str, list[float], NDArray[np.float64]]
+
+
+def _look(trials: Trials, line: Line) -> list[_Look]:
+    """Evaluate the ways to the ideal limits of an axis."""
+    found = []
+    for end, values in _ways(line.axis):
+        answers = trials([line.trial(x) for x in values]).advantage
+        stop = int(np.argmax(np.isnan(answers))) if np.isnan(answers).any() else len(values)
+        found.append((end, values[:stop], answers[:stop]))
     return found
 
 
@@ -154,25 +173,20 @@ def _ways(axis: Axis) -> list[tuple[str, list[float]]]:
     return [(name, values) for name, values in ways if values]
 
 
-def _followed(trials: Trials, profile: Profile, need: Need) -> Need:
-    """Follow one axis outwards: the nearest value beyond the range that reaches the level, or how far it goes."""
-    line = profile.line
+def _followed(trials: Trials, profile: Profile, need: Need, looks: Sequence[_Look]) -> Need:
+    """Return the nearest value beyond the range that reaches the level, or how far the axis goes."""
     inside = int(np.nanargmax(profile.advantage))
     best = Reach(float(profile.x[inside]), float(profile.advantage[inside]), "inside the range", True, "")
-    for end, values in _ways(need.axis):
-        answers = trials([line.trial(x) for x in values]).advantage
-        # the way ends where a side loses its last permitted point
-        stop = int(np.argmax(np.isnan(answers))) if np.isnan(answers).any() else len(values)
-        advantages = answers[:stop]
+    for end, values, advantages in looks:
         above = np.flatnonzero(advantages >= need.level)
         if above.size:
             return _beyond(trials, need, values, int(above[0]))
-        if stop and float(advantages.max()) >= best.advantage:
+        if values and float(advantages.max()) >= best.advantage:
             furthest = int(np.flatnonzero(advantages == advantages.max())[-1])
-            change = abs(advantages[-1] / advantages[-2] - 1.0) if stop > 1 else np.inf
-            settled = bool(values[stop - 1] in (0.0, 1.0) or change <= SETTLED)
+            change = abs(advantages[-1] / advantages[-2] - 1.0) if len(values) > 1 else np.inf
+            settled = bool(values[-1] in (0.0, 1.0) or change <= SETTLED)
             best = Reach(values[furthest], float(advantages[furthest]), end, settled, "")
-    limit = trials([line.trial(best.x)]).limit(0, trials.study.policy.metric)
+    limit = trials([profile.line.trial(best.x)]).limit(0, trials.study.policy.metric)
     return dataclasses.replace(need, kind="unreachable", reach=dataclasses.replace(best, limit=limit))
 
 

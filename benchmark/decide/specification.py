@@ -6,8 +6,8 @@ of the required advantage the answer lies, or when it has no range and moves the
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
@@ -16,10 +16,11 @@ from benchmark.decide.axes import Axis, known_axes
 from benchmark.decide.break_even import NO_EFFECT, Need, find_needs
 from benchmark.decide.moves import range_of
 from benchmark.decide.need_words import need_text, range_text
+from benchmark.decide.tolerance import Tolerance, Tolerances
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 
-__all__ = ["SHEET_COLUMNS", "Sheet", "sheet_rows", "specification"]
+__all__ = ["SHEET_COLUMNS", "TOLERANCE_COLUMNS", "Sheet", "sheet_rows", "specification"]
 
 #: relative step by which a value without range is moved to see whether anything rests on it
 PROBE = 0.01
@@ -36,18 +37,32 @@ SHEET_COLUMNS = (
     "range",
     "words",
 )
+#: further columns when a probability is asked for
+TOLERANCE_COLUMNS = (
+    "probability",
+    "probability_today",
+    "probability_error",
+    "required_at_probability",
+    "spread_factor",
+)
 
 
 @dataclass(frozen=True)
 class Sheet:
-    """``needs``: one per decisive value, at the required advantage; ``advantage``: today's."""
+    """``needs``: one per decisive value, at the required advantage; ``advantage``: today's.
+
+    ``tolerances``: name -> required value and spread at a probability, when one was asked for.
+    """
 
     level: float
     advantage: float
     needs: tuple[Need, ...]
+    tolerances: Mapping[str, Tolerance] = field(default_factory=dict)
 
 
-def specification(trials: Trials, level: float, count: int = 17) -> Sheet:
+def specification(
+    trials: Trials, level: float, count: int = 17, *, probability: float | None = None, draws: int = 256, seed: int = 0
+) -> Sheet:
     """Return the required value of every decisive value of the candidate.
 
     Parameters
@@ -57,19 +72,28 @@ def specification(trials: Trials, level: float, count: int = 17) -> Sheet:
         Required advantage.
     count : int
         Grid points per value.
+    probability : float, optional
+        Also state the required value and spread at which the level is reached with this probability, all stated ranges
+        drawn together.
+    draws, seed : int
+        How many draws (a power of two), and from which seed.
 
     Raises
     ------
     UsageError
-        When the best estimate has no advantage, so that nothing can be called decisive.
+        When the best estimate has no advantage, so that nothing can be called decisive, or when a probability is asked
+        for and no value has a spread.
     """
     today = float(trials.best.advantage[0])
     if np.isnan(today):
         message = f"no specification sheet: {trials.best.state(0)} at the best estimate ({trials.why({})})"
         raise UsageError(message)
     axes = _decisive(trials, level)
+    drawn = None if probability is None else Tolerances(trials, level, probability, draws, seed)
     needs = find_needs(trials.study, trials.pair, axes, [level], trials=trials, count=count)
-    return Sheet(level, today, tuple(need for need in needs if need.kind != "no effect"))
+    needs = [need for need in needs if need.kind != "no effect"]
+    tolerances = {} if drawn is None else {need.axis.name: drawn.of(need.axis) for need in needs}
+    return Sheet(level, today, tuple(needs), tolerances)
 
 
 def _decisive(trials: Trials, level: float) -> list[Axis]:
@@ -144,5 +168,18 @@ def sheet_rows(sheet: Sheet) -> list[dict[str, Any]]:
                     "range": range_text(axis),
                     "words": need_text(need),
                 }
+                | _at_probability(sheet.tolerances.get(axis.name))
             )
     return rows
+
+
+def _at_probability(found: Tolerance | None) -> dict[str, Any]:
+    if found is None:
+        return {}
+    return {
+        "probability": found.probability,
+        "probability_today": found.today,
+        "probability_error": found.error,
+        "required_at_probability": found.axis.shown(found.value),
+        "spread_factor": found.spread,
+    }

@@ -11,6 +11,7 @@ import pytest
 
 from benchmark import api
 from tests.cli.conftest import Run
+from tests.fixed_displacement import fixed_displacement
 from tests.near import near
 from tests.studies import hub
 
@@ -118,6 +119,17 @@ def test_sheet(evenload: Run):
     assert "hand-line-new.on_resistance no. Advantage 1.5: unreachable" in text
 
 
+def test_sheet_with_a_probability(evenload: Run, tmp_path: Path):
+    path = fixed_displacement().write(tmp_path / "film")
+    ran = evenload("need", path, "--sheet", "--probability", "0.9", "--draws", "64", "--points", "3", "--format", "csv")
+    by_name = {row["name"]: row for row in rows(ran.out)}
+    row = by_name["film-switch.actuator_coefficient"]
+    assert float(row["required"]) < 200.0 < float(row["required_at_probability"])
+    assert row["probability"] == "0.9"
+    text = words(evenload("need", path, "--sheet", "--probability", "0.9", "--draws", "64", "--points", "3").out)
+    assert "Drawn: today P = " in text
+
+
 def test_map(evenload: Run, study: Path):
     found = rows(evenload("need", study, "--map", "activity", "--points", "3", "--format", "csv").out)
     boundary = [row for row in found if row["kind"] == "boundary"]
@@ -157,6 +169,9 @@ def test_improve_and_flips(evenload: Run, study: Path):
         (["--sheet", "activity"], "--sheet takes no names and no --over"),
         (["--map", "speed"], "a map over 'speed' is not known; known are activity, duty"),
         (["--map", "duty"], "a map over duty needs a study that states an idle scheme"),
+        (["activity", "--probability", "0.9"], "--probability belongs to --sheet"),
+        (["--sheet", "--probability", "1"], "a probability above 0 and below 1 is needed, found 1"),
+        (["--sheet", "--probability", "0.9", "--draws", "10"], "draws must be a power of two"),
         (["--flips", "4"], "sets of 1, 2 or 3 inputs can be looked for, found 4"),
     ],
 )
