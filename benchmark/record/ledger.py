@@ -17,8 +17,8 @@ __all__ = ["ledger_rows", "option_rows", "set_rows", "technologies"]
 
 
 def technologies(study: Study) -> list[ParameterSet]:
-    """Every technology set of a study once, candidate first."""
-    sets = [study.candidate.technology, *(side.technology for side in study.contenders)]
+    """Every technology set of a study once, candidate first, then those it is shown beside."""
+    sets = [study.candidate.technology, *(side.technology for side in study.contenders), *study.candidate.outlook]
     return list({item.id: item for item in sets}.values())
 
 

@@ -21,6 +21,7 @@ __all__ = [
     "energy_delay",
     "envelope_path",
     "limits_of",
+    "outlook_path",
     "plane_of",
     "side_key",
     "side_name",
@@ -31,6 +32,8 @@ WIDTH, HEIGHT = 610.0, 420.0
 MARGINS = (74.0, 10.0, 12.0, 48.0)
 POLICY_SHAPES = ("circle", "square", "diamond", "triangle-up", "cross", "triangle-down")
 FEASIBLE = state_word(True)
+#: what a set may stand for, in order
+AMBITIONS = ("today", "target", "limit")
 #: how far beyond the feasible points the chart looks
 BEYOND = 4.0
 
@@ -61,7 +64,10 @@ def side_key(row: Mapping[str, Any]) -> str:
 
 
 def side_name(record: Record, key: str) -> str:
-    """Return the words for a side: the title of the candidate, the name the study gives a contender."""
+    """Return the words for a side: the title of a set of the candidate, the name the study gives a contender."""
+    beside = {f"candidate {row['technology']}": str(row["title"]) for row in record.get("outlook", ())}
+    if key in beside:
+        return beside[key]
     side = next(side for side in record["sides"] if f"{side['role']} {side['id']}" == key)
     return str(side["title"] if side["role"] == "candidate" else side["id"])
 
@@ -116,10 +122,26 @@ def _marks(record: Record) -> list[Row]:
     rows = [
         {name: row[name] for name in columns}
         | {"shape": shapes[row["policy"]], "ambition": ambition.get(side_key(row), "today")}
+        | {"path": row["role"] == "candidate" and row["policy"] == record["policies"][0]["policy"]}
         for row in policy_rows(record)
         if row["state"] == FEASIBLE and (row["role"] == "candidate" or row["strongest"])
     ]
+    primary = record["policies"][0]["policy"]
+    rows += [
+        {"policy": primary, "role": "candidate", "side": row["technology"], "supply_V": row["supply"]}
+        | {"time_s": row["time"], "energy_J": row["energy"], "shape": shapes[primary], "ambition": row["ambition"]}
+        | {"path": True}
+        for row in record.get("outlook", ())
+        if row["feasible"]
+    ]
     return positive(rows, "time_s", "energy_J")[0]
+
+
+def outlook_path(plane: Plane) -> list[Row]:
+    """Return the candidate's primary points from today's set to the target to the limit; empty with fewer than two."""
+    mine = {mark["ambition"]: mark for mark in plane.marks if mark["role"] == "candidate" and mark["path"]}
+    path = [mine[ambition] for ambition in AMBITIONS if ambition in mine]
+    return path if len(path) > 1 else []
 
 
 def plane_of(record: Record, width: float, height: float) -> Plane | None:
@@ -195,13 +217,15 @@ def _caption(plane: Plane) -> str:
         words.append("No contender has a feasible point, so there is no reference line.")
     if plane.marks:
         words.append("Larger symbols are the design points of the policies, one shape per policy on either side.")
-        stand = [word for word in ("today", "target", "limit") if any(m["ambition"] == word for m in plane.marks)]
+        stand = [word for word in AMBITIONS if any(m["ambition"] == word for m in plane.marks)]
         looks = {
             "today": "filled: today's",
             "target": "hollow: a target",
             "limit": "outlined, broken: a physical limit",
         }
         words.append(f"What the technology stands for: {'; '.join(looks[word] for word in stand)}.")
+    if outlook_path(plane):
+        words.append("The thin line leads from one set of the candidate to the next, at the primary policy.")
     deadline = plane.limits.deadline
     if deadline is not None:
         here = plane.x.holds(deadline)

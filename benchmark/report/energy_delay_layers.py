@@ -7,7 +7,7 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from benchmark.report.drawing import Canvas, Label
-from benchmark.report.energy_delay import FEASIBLE, Plane, envelope_path, side_key, side_name
+from benchmark.report.energy_delay import FEASIBLE, Plane, envelope_path, outlook_path, side_key, side_name
 from benchmark.report.figure import Row
 from benchmark.report.placing import Box, Placer, hatch, wrapped
 from benchmark.report.style import INK, looks
@@ -110,6 +110,7 @@ def _named_groups(plane: Plane) -> list[tuple[Row, list[str]]]:
 
 def _obstacles(plane: Plane, supplies: Mapping[str, Sequence[Row]]) -> Placer:
     placer = Placer(Box(3.0, 3.0, plane.x.size - 3.0, plane.y.size - 3.0))
+    placer.avoid_line([plane.pixel(row) for row in outlook_path(plane)])
     for rows in plane.curves.values():
         placer.avoid_line([plane.pixel(row) for row in rows])
     for shift in (-4.0, 4.0):  # the reference line is broad
@@ -177,6 +178,13 @@ def supplies_of(plane: Plane) -> dict[str, list[Row]]:
     return {key: _supply_marks(plane, plane.curves[key]) for key in order}
 
 
+def _colour(record: Mapping[str, Any], mark: Row) -> str:
+    """Return the colour of the side; further sets of the candidate have the candidate's."""
+    styles = looks(record)
+    candidate = next(key for key in styles if key.startswith("candidate "))
+    return styles.get(side_key(mark), styles[candidate]).colour
+
+
 def layers(record: Mapping[str, Any], plane: Plane, supplies: Mapping[str, Sequence[Row]]) -> list[Row]:
     """Return the layers, from the ground up; ``supplies`` as ``supplies_of`` chooses them."""
     styles = looks(record)
@@ -201,6 +209,7 @@ def layers(record: Mapping[str, Any], plane: Plane, supplies: Mapping[str, Seque
         dash = list(look.dash) or [1, 0]
         canvas.path(good, "time_s", "energy_J", color=look.colour, strokeWidth=look.width, strokeDash=dash)
         canvas.marks(supplies[key], "time_s", "energy_J", shape=look.marker, size=34, color=look.colour)
+    canvas.path(outlook_path(plane), "time_s", "energy_J", color=INK, strokeWidth=1.0, strokeDash=[6, 2])
     for mark, _ in policy_groups(plane):
         look_of_mark: Row = _AMBITION[mark["ambition"]] | {
             "shape": mark["shape"],
@@ -208,7 +217,7 @@ def layers(record: Mapping[str, Any], plane: Plane, supplies: Mapping[str, Seque
             "stroke": INK,
             "strokeWidth": 1.3,
         }
-        canvas.marks([mark], "time_s", "energy_J", **{"fill": styles[side_key(mark)].colour, **look_of_mark})
+        canvas.marks([mark], "time_s", "energy_J", **{"fill": _colour(record, mark), **look_of_mark})
     canvas.backs(labels)
     canvas.words([words for label in labels for words in label.words()])
     return canvas.layers

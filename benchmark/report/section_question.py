@@ -89,6 +89,8 @@ def answer(record: Record, digest: str) -> Section:
         blocks.append(
             Paragraph(f"the best estimate {number(advantage, 2, (1.0,))} {word} 1.", "Against an advantage of 1:")
         )
+    if record.get("outlook"):
+        blocks.append(Paragraph(_made_on(record), "Made on:"))
     blocks += [
         Paragraph(_decisive(record), "Decisive inputs:"),
         Paragraph(_first_to_measure(record), "First thing to measure:"),
@@ -98,6 +100,17 @@ def answer(record: Record, digest: str) -> Section:
         text = f"{plural(len(record['warnings']), 'warning')} below (section Warnings)."
         blocks.append(Paragraph(text, "Warnings:"))
     return Section("answer", "Answer", tuple(blocks))
+
+
+def _made_on(record: Record) -> str:
+    """Say which set of the candidate carries the verdict, and what the others would have."""
+    side = next(side for side in record["sides"] if side["role"] == "candidate")
+    others = [
+        f"{row['ambition']} ({row['title']}): "
+        + (f"advantage {number(row['advantage'], 2)}" if is_number(row["advantage"]) else f"infeasible, {row['why']}")
+        for row in record["outlook"]
+    ]
+    return f"{side['ambition']} ({side['title']}). Shown beside it and not judged: {'; '.join(others)}."
 
 
 def evidence_counts(record: Record) -> str:

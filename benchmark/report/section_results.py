@@ -47,6 +47,30 @@ def curves(figure: Figure, ribbons: Figure) -> Section:
     return Section("curves", "Energy against time", (figure, ribbons))
 
 
+def _outlook(record: Record) -> list[Block]:
+    """Return the candidate's sets side by side: what each stands for, and which one the verdict is made on."""
+    beside = record.get("outlook", ())
+    if not beside:
+        return []
+    primary = record["policies"][0]
+    side = next(side for side in record["sides"] if side["role"] == "candidate")
+    judged = [side["title"], f"{side['ambition']}: carries the verdict", _advantage(record, primary["advantage"])]
+    judged += [primary["strongest"] or INFEASIBLE, *_place(primary["candidate"]["point"] or {})]
+    rows = [judged]
+    for row in beside:
+        shown = _advantage(record, row["advantage"], row["why"])
+        rows.append([row["title"], row["ambition"], shown, row["strongest"] or INFEASIBLE, *_place(row)])
+    columns = ("set of the candidate", "stands for", "advantage", "strongest contender", "supply", "time", "energy")
+    caption = "The candidate's sets under the primary policy, at the headline pair"
+    return [plain("outlook", caption, columns, rows, wide=True)]
+
+
+def _place(point: Mapping[str, Any]) -> list[str]:
+    if not is_number(point.get("energy")):
+        return [INFEASIBLE] * 3
+    return [volts(point["supply"], 3), amount(point["time"], "s", 3), amount(point["energy"], "J", 3)]
+
+
 def required_time(record: Record, figure: Figure) -> Section:
     """Return the advantage for other required times, crossings in words."""
     blocks: list[Block] = [Paragraph(text) for text in crossing_words(record)]
@@ -87,7 +111,7 @@ def _limits(record: Record) -> Table:
 
 def energy_and_time(record: Record, time: Figure, energy: Figure) -> Section:
     """Return where time and energy go."""
-    return Section("parts", "Where time and energy go", (time, energy, _limits(record)))
+    return Section("parts", "Where time and energy go", (time, energy, _limits(record), *_outlook(record)))
 
 
 def _policy_cell(side: Mapping[str, Any] | None) -> list[str]:

@@ -66,7 +66,8 @@ def _values(record: Record, chart: Chart, row: Row) -> list[tuple[str, str]]:
     sides = [side for side in record["sides"] if "role" in row and side["role"] == row["role"]]
     named = [side for side in sides if side["id"] == row["side"]]
     candidate = [side for side in record["sides"] if side["role"] == "candidate"]
-    place = owners.get((named or candidate)[0]["technology"])
+    beside = owners.get(str(row.get("side", "")))  # a further set of the candidate has the id of its technology
+    place = beside or owners.get((named or candidate)[0]["technology"])
     return [("values", f"#value-{place}")] if place else [("values", "#ledger")]
 
 
