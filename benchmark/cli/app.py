@@ -6,6 +6,7 @@ Exit status: 0 done, 1 internal fault, 2 wrong usage, 3 input refused, 130 inter
 
 from __future__ import annotations
 
+import contextlib
 import io
 import os
 import sys
@@ -66,10 +67,10 @@ def main() -> None:
         _refuse(error)
         sys.exit(3)
     except UsageError as error:
-        print(f"evenload: {error}", file=sys.stderr)  # noqa: T201
+        _say(f"evenload: {error}")
         sys.exit(2)
     except EvenloadError as error:
-        print(f"evenload: {error}", file=sys.stderr)  # noqa: T201
+        _say(f"evenload: {error}")
         sys.exit(3)
     except BrokenPipeError:
         sys.stderr.close()
@@ -79,27 +80,33 @@ def main() -> None:
         sys.exit(3)
     except SystemExit as stopped:
         if stopped.code == STOPPED:  # the command-line library has turned the interrupt into this status
-            print("evenload: stopped; nothing half-written", file=sys.stderr)  # noqa: T201
+            _say("evenload: stopped; nothing half-written")
         raise
+
+
+def _say(text: str) -> None:
+    """Print to standard error; when even that is full, the exit status is left to tell."""
+    from benchmark.cli.layout import printable
+
+    with contextlib.suppress(OSError):
+        print("\n".join(map(printable, text.split("\n"))), file=sys.stderr, flush=True)  # noqa: T201
 
 
 def _cannot(error: OSError) -> None:
     """Say which file the system does not let us read or write; a standard output that takes no more is let go."""
-    place = error.filename if isinstance(error.filename, str) else "standard output"
+    place = error.filename if isinstance(error.filename, str) else "standard output or a temporary file"
     if error.filename is None:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
-    print(f"evenload: {place}: cannot be used ({error.strerror or error})", file=sys.stderr)  # noqa: T201
+    _say(f"evenload: {place}: cannot be used ({error.strerror or error})")
 
 
 def _refuse(error: InputRefused) -> None:
-    from benchmark.cli.layout import printable
-
     shown = error.problems[:MOST_PROBLEMS]
-    print(f"evenload: input refused, {len(error.problems)} problem(s); nothing was run", file=sys.stderr)  # noqa: T201
+    _say(f"evenload: input refused, {len(error.problems)} problem(s); nothing was run")
     for problem in shown:
-        print(f"  {printable(str(problem))}", file=sys.stderr)  # noqa: T201
+        _say("  " + str(problem).replace("\n", " "))
     if len(error.problems) > len(shown):
-        print(f"  ... and {len(error.problems) - len(shown)} more", file=sys.stderr)  # noqa: T201
+        _say(f"  ... and {len(error.problems) - len(shown)} more")
 
 
 def _overrides(pairs: list[str] | None) -> dict[str, str]:

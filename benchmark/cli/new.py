@@ -9,6 +9,7 @@ from pathlib import Path
 import typer
 
 from benchmark.errors import UsageError, nearest
+from benchmark.sets.files import is_folder
 
 __all__ = ["KINDS", "new_command"]
 
@@ -38,7 +39,7 @@ def _stem(path: Path, kind: str) -> str:
     if path.suffix != ".toml":
         message = f"{path}: the name of a new file ends in .toml"
         raise UsageError(message)
-    if not path.parent.is_dir():
+    if not is_folder(path.parent):
         message = f"{path.parent}: there is no such folder"
         raise UsageError(message)
     stem = path.stem

@@ -10,7 +10,7 @@ from benchmark.circuits.library import BUILT_IN
 from benchmark.errors import Problem
 from benchmark.record.load import check_physics, check_study, open_library
 from benchmark.sets.circuit_file import read_circuit
-from benchmark.sets.files import read_toml
+from benchmark.sets.files import is_folder, read_toml
 from benchmark.sets.library import Library
 from benchmark.sets.problems import Collector
 from benchmark.sets.study_builder import build_study
@@ -31,22 +31,29 @@ def _listed(paths: Sequence[Path], collector: Collector) -> list[Path]:
     """Every TOML file named or inside a named folder; table descriptions are checked with the set that uses them."""
     found: list[Path] = []
     for path in paths:
-        if path.is_dir():
+        if is_folder(path):
             inside = [item for item in sorted(path.rglob("*.toml")) if item.parent.name != "tables"]
             if not inside:
                 collector.add(Problem(str(path), 0, "", "has no TOML file"))
             found += inside
-        elif path.exists():
+        elif _may_be_read(path):
             found.append(path)
         else:
             collector.add(Problem(str(path), 0, "", "does not exist"))
     return found
 
 
+def _may_be_read(path: Path) -> bool:
+    try:
+        return path.exists()
+    except OSError:
+        return True  # reading it will say why not
+
+
 def _roots(path: Path) -> list[Path]:
     parent = path.parent
     root = parent.parent if parent.name in ("technologies", "wires", "circuits") else parent
-    return [folder for folder in (root, root / "nodes") if folder.is_dir()]
+    return [folder for folder in (root, root / "nodes") if is_folder(folder)]
 
 
 def check_paths(paths: Sequence[Path], nodes: Sequence[Path] = ()) -> CheckResult:

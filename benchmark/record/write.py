@@ -90,9 +90,10 @@ def write_folder(folder: Path, fill: Callable[[Path], None]) -> None:
     EvenloadError
         When the place cannot be written.
     """
-    folder = folder.resolve() if folder.is_symlink() else folder.absolute()
+    folder = folder.absolute()
     with contextlib.ExitStack() as until_the_end:
         try:
+            folder = folder.resolve() if folder.is_symlink() else folder
             temporary = _made_beside(folder, until_the_end)
             # half a new folder, or after the swap the old one
             until_the_end.callback(shutil.rmtree, temporary, ignore_errors=True)
@@ -205,6 +206,9 @@ def read_record(path: Path) -> dict[str, Any]:
     file = path
     try:
         file = path / "record.json" if path.is_dir() else path
+        if file.exists() and not file.is_file():
+            message = f"{file}: is not a regular file, a record is needed"
+            raise EvenloadError(message)
         record = json.loads(file.read_text(encoding="utf-8"))
     except (OSError, ValueError, RecursionError) as error:
         message = f"{file}: is not a readable record ({type(error).__name__})"

@@ -57,7 +57,7 @@ class Library:
         """Name a path relative to its root, so that records do not depend on where the program is installed."""
         for root in self.roots:
             try:
-                inside = path.resolve().relative_to(root.resolve())
+                inside = (path.parent.resolve() / path.name).relative_to(root.resolve())  # a link has its own name
             except ValueError:
                 continue
             return str(Path(root.name.removeprefix("_")) / inside) if root == self.roots[-1] else str(inside)
