@@ -16,7 +16,7 @@ from benchmark.devices.model import Finding, ModelInputs
 from benchmark.errors import InputRefused, Problem, UsageError
 from benchmark.evaluate.batch import Batch, resolve
 from benchmark.evaluate.side import build_circuit
-from benchmark.sets.files import TomlFile, read_toml
+from benchmark.sets.files import TomlFile, is_folder, read_toml
 from benchmark.sets.library import Library, shipped_nodes
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.problems import Collector
@@ -82,7 +82,7 @@ def load_study(
         With every problem of every file, in one pass.
     """
     collector = Collector()
-    beside = [folder for folder in (path.parent, path.parent / "nodes") if folder.is_dir()]
+    beside = [folder for folder in (path.parent, path.parent / "nodes") if is_folder(folder)]
     library = open_library(*nodes, *beside, collector=collector)
     file = read_toml(path, collector, path.name)
     if file is None:
