@@ -300,19 +300,19 @@ def opportunity(
     Returns
     -------
     Needed
-        Rows of kind "today", "point", "boundary" (exact crossings of 1 and of the level) and "class" (usual place of
-        product classes, common practice, no source).
+        Rows of kind "today", "point", "boundary" (exact crossings of 0.5, 1, the level and 10) and "class" (usual place
+        of product classes, common practice, no source).
 
     Raises
     ------
     UsageError
         For another kind, or a study without a deadline or without that axis.
     """
-    from benchmark.decide.opportunity import MAP_COLUMNS, map_rows, opportunity_map
+    from benchmark.decide.opportunity import MAP_COLUMNS, contours, map_rows, opportunity_map
 
     view, trials = _trials(study, pair, told)
     level = _level(view, advantage)
-    found = opportunity_map(trials, kind, tuple(dict.fromkeys((1.0, level))), points)
+    found = opportunity_map(trials, kind, contours(level), points)
     facts = []
     for value, points_on in found.boundary.items():
         listed = ", ".join(f"{found.second.text(y)} at {x:.4g} s" for x, y in points_on)

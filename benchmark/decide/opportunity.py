@@ -19,7 +19,7 @@ from benchmark.decide.profile import Line, profiles
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 
-__all__ = ["MAP_COLUMNS", "ClassBox", "OpportunityMap", "map_rows", "opportunity_map"]
+__all__ = ["MAP_COLUMNS", "ClassBox", "OpportunityMap", "contours", "map_rows", "opportunity_map"]
 
 Array = NDArray[np.float64]
 #: columns of the rows, in order
@@ -37,6 +37,8 @@ MAP_COLUMNS = (
     "deadline_to_s",
     "value_to",
 )
+#: levels of every map, beside the required advantage
+CONTOURS = (0.5, 1.0, 10.0)
 #: what the second axis of a map is called -> name of the axis
 SECOND = {"activity": "activity", "duty": "awake_share"}
 
@@ -81,7 +83,7 @@ def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), c
     kind : "activity" or "duty"
         Second axis: rising transitions per cycle, or the share of the time in which the block is clocked.
     levels : tuple of float
-        Levels of the boundary; by default 1 and the required advantage.
+        Levels of the boundary; by default 0.5, 1, the required advantage and 10.
     count : int
         Values of each axis.
 
@@ -102,7 +104,7 @@ def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), c
         message = f"a map over {kind} needs a study that states {wanted}"
         raise UsageError(message)
     deadline, second = known[DEADLINE], find_axis(trials, SECOND[kind])
-    wanted_levels = levels or tuple(dict.fromkeys((1.0, trials.study.required_advantage)))
+    wanted_levels = levels or contours(trials.study.required_advantage)
     across, along = deadline.grid(count), second.grid(count)
     up = profiles(trials, [Line(second, {deadline: float(x)}) for x in across], wanted_levels, count, name_edges=False)
     over = profiles(trials, [Line(deadline, {second: float(y)}) for y in along], wanted_levels, count, name_edges=False)
@@ -142,6 +144,11 @@ def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), c
         _boxes(kind),
         (deadline.best, second.best, float(trials.best.advantage[0])),
     )
+
+
+def contours(required: float) -> tuple[float, ...]:
+    """Return the levels of a map, in order, each once."""
+    return tuple(sorted({*CONTOURS, required}))
 
 
 def _rows(texts: list[str], width: int) -> tuple[tuple[str, ...], ...]:

@@ -5,7 +5,8 @@ every change of side is bracketed and solved (scipy.optimize.elementwise), all l
 instead of crossing, because a side loses its last permitted point, that is a jump and no root. Between a grid point
 with and one without an advantage the edge is found by halving, and the stretch up to it is searched too.
 
-Two crossings between neighbouring grid points are not seen.
+Where the advantage turns between grid points near a level, the turning point is looked for, so that two crossings close
+to each other are seen. Narrower features that no grid point shows are not seen.
 """
 
 from __future__ import annotations
@@ -34,6 +35,8 @@ EDGE = 1.0e-6
 ASIDE = 1.0e-8
 #: halvings of a bracket, at most
 MOST = 100
+#: steps towards a turning point, at most
+TURN_STEPS = 16
 
 
 @dataclass(frozen=True)
@@ -149,6 +152,7 @@ def profiles(
     for i, grid in enumerate(grids):
         rows = slice(int(ends[i]), int(ends[i + 1]))
         scans.append(_with_edges(grid, answers, rows, edges[i]))
+    scans = _with_turns(trials, lines, scans, levels)
     crossings = _crossings(trials, lines, scans, levels)
     return [
         Profile(line, *scan, tuple(sorted(found, key=lambda c: (c.x, c.level))), tuple(edge))
@@ -207,6 +211,79 @@ def _edges(
         why = trials.why(lines[i].trial(beyond)) if name_edges else ""
         found[i].append(Edge(x, x < beyond, at, why))
     return [sorted(edges, key=lambda edge: edge.x) for edges in found]
+
+
+@dataclass
+class _Turn:
+    """Three neighbouring values around a turning point, in ln(advantage); ``sign`` 1: a maximum, -1: a minimum."""
+
+    line: int
+    level: float
+    sign: float
+    x: tuple[float, float, float]
+    y: tuple[float, float, float]
+
+    @property
+    def beyond(self) -> bool:
+        """Tell whether the middle lies on the other side of the level already."""
+        return self.sign * (self.y[1] - self.level) > 0.0
+
+    @property
+    def hopeful(self) -> bool:
+        """Tell whether the level is nearer to the middle than the outer values are."""
+        drop = max(self.sign * (self.y[1] - self.y[0]), self.sign * (self.y[1] - self.y[2]))
+        return not self.beyond and 0.0 <= self.sign * (self.level - self.y[1]) <= drop
+
+    def narrowed(self, x: tuple[float, float], y: tuple[float, float]) -> _Turn:
+        """Return the half of the bracket that holds the turning point, from the values at both middles."""
+        best = int(np.argmax([self.sign * y[0], self.sign * self.y[1], self.sign * y[1]]))
+        xs, ys = (self.x[0], x[0], self.x[1], x[1], self.x[2]), (self.y[0], y[0], self.y[1], y[1], self.y[2])
+        return _Turn(self.line, self.level, self.sign, xs[best : best + 3], ys[best : best + 3])  # type: ignore[arg-type]
+
+
+def _with_turns(trials: Trials, lines: Sequence[Line], scans: Sequence[_Scan], levels: Sequence[float]) -> list[_Scan]:
+    """Put in turning points that reach over a level between two grid points on the same side of it."""
+    turns = [turn for i, scan in enumerate(scans) for level in dict.fromkeys(levels) for turn in _turns(i, scan, level)]
+    reached: list[_Turn] = []
+    for _ in range(TURN_STEPS):
+        if not turns:
+            break
+        middles = [tuple(lines[turn.line].between(turn.x[k], turn.x[k + 1], 0.5) for k in (0, 1)) for turn in turns]
+        found = trials([lines[turn.line].trial(x) for turn, pair in zip(turns, middles, strict=True) for x in pair])
+        values = found.log.reshape(-1, 2)
+        narrowed = [
+            turn.narrowed((pair[0], pair[1]), (float(y[0]), float(y[1])))
+            for turn, pair, y in zip(turns, middles, values, strict=True)
+            if np.isfinite(y).all()
+        ]
+        reached += [turn for turn in narrowed if turn.beyond]
+        turns = [turn for turn in narrowed if turn.hopeful]
+    listed = list(scans)
+    for turn in reached:
+        x, advantage, meets, states = listed[turn.line]
+        k = int(np.searchsorted(x, turn.x[1]))
+        listed[turn.line] = (
+            np.insert(x, k, turn.x[1]),
+            np.insert(advantage, k, np.exp(turn.y[1])),
+            np.insert(meets, k, meets[max(k - 1, 0)]),
+            (*states[:k], "", *states[k:]),
+        )
+    return listed
+
+
+def _turns(line: int, scan: _Scan, level: float) -> list[_Turn]:
+    x, advantage = scan[0], scan[1]
+    with np.errstate(divide="ignore", invalid="ignore"):
+        y = np.log(advantage)
+    found = []
+    for k in range(1, len(x) - 1):
+        if not np.isfinite(y[k - 1 : k + 2]).all():
+            continue
+        for sign in (1.0, -1.0):
+            turn = _Turn(line, float(np.log(level)), sign, tuple(x[k - 1 : k + 2]), tuple(y[k - 1 : k + 2]))
+            if min(sign * (turn.y[1] - turn.y[0]), sign * (turn.y[1] - turn.y[2])) >= 0.0 and turn.hopeful:
+                found.append(turn)
+    return found
 
 
 def _above(advantage: Array, level: float) -> NDArray[np.bool_]:

@@ -62,6 +62,18 @@ def test_roots_of_several_levels_are_told_apart():
     assert [c.x for c in found.crossings_of(20.0)] == near([20.0], rel=1e-12)
 
 
+def test_two_crossings_between_grid_points_are_seen_where_the_advantage_turns():
+    # ln(advantage) = 0.01 - (ln x - 1.7)^2 rises above 0 for 0.2 in ln x; the grid steps by 0.43
+    found = profile(lambda x: math.exp(0.01 - (math.log(x) - 1.7) ** 2), 0.1, 100.0)
+    assert [math.log(c.x) for c in found.crossings] == near([1.6, 1.8], rel=1e-9)
+    assert [c.above_below for c in found.crossings] == [False, True]
+    # the same upside down, and a turn that does not reach the level
+    below = profile(lambda x: math.exp((math.log(x) - 1.7) ** 2 - 0.01), 0.1, 100.0)
+    assert [math.log(c.x) for c in below.crossings] == near([1.6, 1.8], rel=1e-9)
+    assert [c.above_below for c in below.crossings] == [True, False]
+    assert profile(lambda x: math.exp(-0.001 - (math.log(x) - 1.7) ** 2), 0.1, 100.0).crossings == ()
+
+
 def test_a_jump_is_no_root():
     found = profile(lambda x: 0.5 if x < 3.0 else 5.0, 0.1, 100.0, has=lambda x: x < 3.0)
     (crossing,) = found.crossings
