@@ -27,6 +27,7 @@ __all__ = [
     "LENGTH",
     "WIDTHS",
     "Chain",
+    "Flavour",
     "Polarity",
     "capacitances",
     "card_text",
@@ -37,12 +38,13 @@ __all__ = [
 
 Array = NDArray[np.float64]
 Polarity = Literal["n", "p"]
+#: regular, low and high threshold
+Flavour = Literal["VTG", "VTL", "VTH"]
 
 CELSIUS = 27.0
 #: drawn [m]
 LENGTH = 50e-9
 WIDTHS: dict[Polarity, float] = {"n": 0.5e-6, "p": 1.0e-6}
-_MODELS: dict[Polarity, str] = {"n": "NMOS_VTG", "p": "PMOS_VTG"}
 _SIGN: dict[Polarity, float] = {"n": 1.0, "p": -1.0}
 
 
@@ -53,12 +55,12 @@ def card_text() -> str:
     return Path(str(place)).read_text(encoding="ascii")
 
 
-def _device(name: str, nodes: str, polarity: Polarity, size: float = 1.0) -> str:
+def _device(name: str, nodes: str, polarity: Polarity, size: float = 1.0, flavour: Flavour = "VTG") -> str:
     width = WIDTHS[polarity]
     area, edge = 2.5 * LENGTH * width, width + 5.0 * LENGTH
     return (
-        f"m{name} {nodes} {_MODELS[polarity]} L={LENGTH!r} W={width!r} AS={area!r} AD={area!r} PS={edge!r} PD={edge!r} "
-        f"m={size!r}"
+        f"m{name} {nodes} {polarity.upper()}MOS_{flavour} L={LENGTH!r} W={width!r} "
+        f"AS={area!r} AD={area!r} PS={edge!r} PD={edge!r} m={size!r}"
     )
 
 
@@ -88,8 +90,13 @@ def _deck(title: str, lines: list[str], control: list[str], tunnelling: bool = T
     )
 
 
-def currents(polarity: Polarity, gates: Array, drains: Array) -> Array:
-    """Return the drain current per device [A], shape (gates, drains), in the device's own sense; evenly spaced axes."""
+def currents(
+    polarity: Polarity, gates: Array, drains: Array, flavour: Flavour = "VTG", terminal: Literal["d", "s"] = "d"
+) -> Array:
+    """Return the current per device [A], shape (gates, drains), in the device's own sense; evenly spaced axes.
+
+    ``terminal``: ``d`` the drain current, ``s`` the source current, which leaves out what the drain loses to the gate.
+    """
     sign = _SIGN[polarity]
 
     def sweep(axis: Array) -> str:
@@ -98,14 +105,21 @@ def currents(polarity: Polarity, gates: Array, drains: Array) -> Array:
 
     deck = _deck(
         "drain current",
-        [_device("1", "d g 0 0", polarity), "vd d 0 0", "vg g 0 0", ".options gmin=1e-18 reltol=1e-6 abstol=1e-16"],
-        [f"dc vd {sweep(drains)} vg {sweep(gates)}", "wrdata grid.txt i(vd) v(d) v(g)"],
+        [
+            _device("1", "d g s 0", polarity, 1.0, flavour),
+            "vs s 0 0",
+            "vd d 0 0",
+            "vg g 0 0",
+            ".options gmin=1e-18 reltol=1e-6 abstol=1e-16",
+        ],
+        [f"dc vd {sweep(drains)} vg {sweep(gates)}", f"wrdata grid.txt i(v{terminal}) v(d) v(g)"],
     )
-    table = run_deck(deck, tables={"grid.txt": ("i(vd)", "v(d)", "v(g)")}).tables["grid.txt"]
+    table = run_deck(deck, tables={"grid.txt": (f"i(v{terminal})", "v(d)", "v(g)")}).tables["grid.txt"]
     shape = (gates.size, drains.size)
     assert np.allclose(sign * table["v(d)"].reshape(shape), drains, atol=1e-9)
     assert np.allclose(sign * table["v(g)"].reshape(shape), gates[:, None], atol=1e-9)
-    return np.asarray(-sign * table["i(vd)"].reshape(shape))
+    out_of_drain = -1.0 if terminal == "d" else 1.0
+    return np.asarray(out_of_drain * sign * table[f"i(v{terminal})"].reshape(shape))
 
 
 @dataclass(frozen=True)
@@ -140,7 +154,7 @@ def _crossing(time: Array, wave: Array, level: float, after: float, rising: bool
     return float(time[i] + (level - wave[i]) / (wave[i + 1] - wave[i]) * (time[i + 1] - time[i]))
 
 
-def chain(supply: float, pace: float, added: float = 0.0, tunnelling: bool = True) -> Chain:
+def chain(supply: float, pace: float, added: float = 0.0, tunnelling: bool = True, flavour: Flavour = "VTG") -> Chain:
     """Simulate two periods of the chain 1:4:16:64:256, no wires, and measure its third stage in the second one.
 
     ``pace`` [s] sets edge, period (96 paces) and steps only: a rough delay is enough. ``added`` [F]: linear capacitance
@@ -157,8 +171,8 @@ def chain(supply: float, pace: float, added: float = 0.0, tunnelling: bool = Tru
             rail, gate, out = "rail", "gate", "out"
             lines += [f"vrail rail 0 {supply!r}", f"vgate s{k} gate 0", f"vout out s{k + 1} 0"]
         lines += [
-            _device(f"n{k}", f"{out} {gate} 0 0", "n", size),
-            _device(f"p{k}", f"{out} {gate} {rail} {rail}", "p", size),
+            _device(f"n{k}", f"{out} {gate} 0 0", "n", size, flavour),
+            _device(f"p{k}", f"{out} {gate} {rail} {rail}", "p", size, flavour),
         ]
         if added > 0.0:
             lines.append(f"c{k} {out} 0 {added * size!r}")
@@ -189,7 +203,9 @@ def chain(supply: float, pace: float, added: float = 0.0, tunnelling: bool = Tru
     return Chain(falling, rising, (total - resting * 2.0 * half) / size, resting / size)
 
 
-def capacitances(polarity: Polarity, gates: Array, drains: Array) -> tuple[Array, Array, Array]:
+def capacitances(
+    polarity: Polarity, gates: Array, drains: Array, flavour: Flavour = "VTG"
+) -> tuple[Array, Array, Array]:
     """Return dQ_gate/dV_gate, -dQ_gate/dV_drain and dQ_drain/dV_drain [F] at pairs of gate and drain voltages.
 
     Small-signal reactive currents at 1 MHz over the angular frequency: tunnelling through the gate is in phase and
@@ -201,7 +217,7 @@ def capacitances(polarity: Polarity, gates: Array, drains: Array) -> tuple[Array
         for case, (on_gate, on_drain) in {"a": (1, 0), "b": (0, 1)}.items():
             name = f"{case}{k}"
             lines += [
-                _device(name, f"d{name} g{name} 0 0", polarity),
+                _device(name, f"d{name} g{name} 0 0", polarity, 1.0, flavour),
                 f"vg{name} g{name} 0 dc {sign * float(gate)!r} ac {on_gate}",
                 f"vd{name} d{name} 0 dc {sign * float(drain)!r} ac {on_drain}",
             ]

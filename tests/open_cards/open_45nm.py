@@ -14,12 +14,13 @@ import numpy as np
 
 from benchmark.devices.record import Switch
 from benchmark.physics.drive import ENERGY_WEIGHT
+from tests.open_cards.card import Flavour
 from tests.open_cards.engine import Stage, pair_at, stage
 from tests.open_cards.fit import Curves
 from tests.open_cards.freepdk45 import EDGES, MEAN_WIDTH, ROOT, SET, SUPPLIES, capacitance, curves, measured_chain, text
 from tests.open_cards.row import Row, read_csv
 
-__all__ = ["apart", "current_rows", "deck_rows", "edge_rows", "prediction_rows", "solved_rows"]
+__all__ = ["apart", "current_rows", "deck_rows", "edge_rows", "held_out_rows", "prediction_rows", "solved_rows"]
 
 SOURCE = "open 45 nm cards (package c4m-pdk-freepdk45 0.0.1, Apache-2.0), ngspice 39, BSIM4v5, 27 degC"
 NOW = "simulated now"
@@ -27,6 +28,8 @@ NOW = "simulated now"
 LOADS = (10e-15, 20e-15)
 #: supplies at which the prediction is taken apart
 APART = (0.4, 0.6, 0.8, 1.0)
+#: cards that had no part in settling how a set is extracted
+FLAVOURS: tuple[Flavour, ...] = ("VTL", "VTH")
 
 
 def prediction_rows() -> list[Row]:
@@ -65,9 +68,9 @@ def current_rows() -> list[Row]:
     return rows
 
 
-def _energy_from_charges(supply: float) -> float:
+def _energy_from_charges(supply: float, flavour: Flavour = "VTG") -> float:
     """Energy per cycle [J] by the program's weights of the drain edge, charges as measured at this supply."""
-    c = capacitance(EDGES[0], supply)
+    c = capacitance(EDGES[0], supply, flavour)
     driven = 4.0 * (c.gate - (2.0 - ENERGY_WEIGHT) * c.edge)
     return 2.0 * MEAN_WIDTH * (driven + ENERGY_WEIGHT * c.edge + c.terminal) * supply**2
 
@@ -107,7 +110,7 @@ def apart(supply: float) -> list[Row]:
             "terminal, and no charge to the body below threshold", energy,
         ),
         Row(
-            f"leakage power {at} [W]", SOURCE, NOW, seen.leakage, here.leakage, 0.32,
+            f"leakage power {at} [W]", SOURCE, NOW, seen.leakage, here.leakage, 0.36,
             "the cards tunnel through the gate, the model does not",
         ),
         Row(
@@ -142,14 +145,42 @@ def solved_rows() -> tuple[Row, ...]:
     )  # fmt: skip
 
 
+def _written(place: Path, words: str) -> Path:
+    """Write a set into a folder of its own and return the folder."""
+    (place / "technologies").mkdir(parents=True)
+    (place / "technologies" / f"{SET}.toml").write_text(words, encoding="utf-8")
+    (place / "sources.toml").write_text((ROOT / "sources.toml").read_text(encoding="utf-8"), encoding="utf-8")
+    return place
+
+
+def held_out_rows(folder: Path) -> list[Row]:
+    """Low and high threshold of the same file, extracted by the same rules. ``folder``: where the sets are written.
+
+    The rules were settled on the regular threshold, except one: that currents are read at the source was learnt on the
+    high threshold, where off-currents of the drain gave delays 31 % too long at 0.4 V. Its energy misses 10 % below
+    threshold, where the gate sees the body; with the charges measured at the same supply it does not.
+    """
+    rows = []
+    for flavour in FLAVOURS:
+        place = _written(folder / flavour, text(False, flavour=flavour))
+        for supply in SUPPLIES[1:]:
+            seen, here = measured_chain(supply, flavour=flavour), stage(pair_at(SET, supply, place))
+            at, allowed = f"{flavour}, at {supply:.1f} V", 0.17 if flavour == "VTH" else 0.10
+            name, own = f"fan-out-of-four energy per cycle, {at} [J]", _energy_from_charges(supply, flavour)
+            note = "with the cards' charges at the same supply, without short circuit"
+            rows += [
+                Row(f"fan-out-of-four delay, {at} [s]", SOURCE, NOW, seen.delay, here.delay, 0.10),
+                Row(name, SOURCE, NOW, seen.energy, here.energy, allowed),
+                Row(f"the same from charges: {name}", SOURCE, NOW, seen.energy, own, 0.07, note, name),
+            ]
+    return rows
+
+
 def edge_rows(folder: Path) -> list[Row]:
     """Delay and energy with other readings of the gate-drain capacitance; ``folder``: where the sets are written."""
     rows = []
     for number, reading in enumerate(EDGES[1:]):
-        place = folder / f"reading-{number}"
-        (place / "technologies").mkdir(parents=True)
-        (place / "technologies" / f"{SET}.toml").write_text(text(False, reading), encoding="utf-8")
-        (place / "sources.toml").write_text((ROOT / "sources.toml").read_text(encoding="utf-8"), encoding="utf-8")
+        place = _written(folder / f"reading-{number}", text(False, reading))
         for supply in (0.4, 0.6, 1.0):
             seen, here = measured_chain(supply), stage(pair_at(SET, supply, place))
             note = f"edge: {reading}"
@@ -185,7 +216,7 @@ def deck_rows() -> list[Row]:
                 origin,
                 status,
                 float(row[f"{kind}_{polarity}_{unit}"]) * scale,
-                float(getattr(curves()[polarity], kind)[SUPPLIES.index(supply)] * MEAN_WIDTH),
+                float(getattr(curves(terminal="d")[polarity], kind)[SUPPLIES.index(supply)] * MEAN_WIDTH),
                 1e-4,
             )
             for polarity in ("n", "p")

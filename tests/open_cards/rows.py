@@ -15,9 +15,9 @@ from tests.open_cards.row import Row
 __all__ = ["COMPARISONS", "Row"]
 
 
-def _edges() -> list[Row]:
+def _in_folder(rows: Callable[[Path], list[Row]]) -> list[Row]:
     with tempfile.TemporaryDirectory() as folder:
-        return open_45nm.edge_rows(Path(folder))
+        return rows(Path(folder))
 
 
 COMPARISONS: Mapping[str, Callable[[], list[Row]]] = {
@@ -28,7 +28,8 @@ COMPARISONS: Mapping[str, Callable[[], list[Row]]] = {
         row for supply in open_45nm.APART for row in open_45nm.apart(supply)
     ],
     "Open 45 nm cards: solved as differential equations": lambda: list(open_45nm.solved_rows()),
-    "Open 45 nm cards: other readings of the edge capacitance": _edges,
+    "Open 45 nm cards: other readings of the edge capacitance": lambda: _in_folder(open_45nm.edge_rows),
+    "Open 45 nm cards: low and high threshold, held out": lambda: _in_folder(open_45nm.held_out_rows),
     "Predictive planar cards: delay and energy over supply": lambda: [
         row for cards in predictive.CARDS for row in predictive.predictive_rows(cards)
     ],
