@@ -182,7 +182,10 @@ def _from_value(key: str, value: Value) -> Axis:
         if not low <= best <= high:
             low, high = min(low, best), max(high, best)
             origin = f"{USUAL}, widened to today's value"
-    return Axis(key, quantity.meaning, quantity.unit, quantity.domain, best, low, high, origin, _as_it_is(key), value)
+    smallest = max(to_si(Decimal(repr(quantity.low)), unit), 0.0)
+    return Axis(
+        key, quantity.meaning, quantity.unit, quantity.domain, best, low, high, origin, _as_it_is(key), value, smallest
+    )
 
 
 def _shaping(study: Study) -> set[str]:
