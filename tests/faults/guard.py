@@ -153,7 +153,8 @@ def _unusable(problem: Problem, root: Path, changed: Mapping[str, bytes]) -> lis
     for spoiled, raw in changed.items():
         if (name == spoiled or spoiled.endswith(f"/{name}")) and problem.line > raw.count(b"\n") + 1:
             found.append(f"names line {problem.line} of {raw.count(chr(10).encode()) + 1}: {text[:200]!r}")
-    if not any(name == there or there.endswith(name) or name.endswith(there) for there in _names(root)):
+    known = any(name == there or there.endswith(name) or name.endswith(there) for there in _names(root))
+    if not known and not problem.what.startswith(("does not exist", "cannot be read", "is a folder", "is not a")):
         found.append(f"names a file that is not there: {text[:200]!r}")
     if "Traceback" in text or " object at 0x" in text:
         found.append(f"shows the inside of the program: {text[:200]!r}")
