@@ -52,12 +52,10 @@ def _rungs(record: Record, row: Record) -> Table:
             shown = Cell(_mark(record, rung["advantage"]), small=turn)
         supply = volts(rung["supply"], 3) if rung["side"] else "–"
         rows.append((name, shown, rung["side"] or "–", supply, _choices(rung)))
-    columns = ("allowed up to", "advantage", "strongest contender" if row["of"] == "reference" else "side")
-    caption = {
-        "reference": "The reference is allowed one more mitigation after another; the candidate keeps all of its own",
-        "candidate": "The candidate is allowed one more mitigation after another; the reference keeps all of its own",
-    }[row["of"]]
-    return plain(f"ladder-{row['of']}", caption, (*columns, "its supply", "also chosen"), rows)
+    columns = ("allowed up to", "advantage", "side" if row["of"] == "candidate" else "strongest contender")
+    grows, stays = ("candidate", "reference") if row["of"] == "candidate" else ("reference", "candidate")
+    caption = f"The {grows} is allowed one more mitigation after another; the {stays} keeps all of its own"
+    return plain(f"ladder-{grows}", caption, (*columns, "its supply", "also chosen"), rows)
 
 
 def ladder(record: Record) -> Section:

@@ -38,6 +38,7 @@ SECTIONS = [
         "robustness",
         "uncertainty",
         "moves",
+        "next-measurement",
         "nodes",
         "anchors",
     ),
