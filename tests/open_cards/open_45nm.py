@@ -20,7 +20,16 @@ from tests.open_cards.fit import Curves
 from tests.open_cards.freepdk45 import EDGES, MEAN_WIDTH, ROOT, SET, SUPPLIES, capacitance, curves, measured_chain, text
 from tests.open_cards.row import Row, read_csv
 
-__all__ = ["apart", "current_rows", "deck_rows", "edge_rows", "held_out_rows", "prediction_rows", "solved_rows"]
+__all__ = [
+    "apart",
+    "current_rows",
+    "deck_rows",
+    "edge_rows",
+    "held_out_rows",
+    "prediction_rows",
+    "solved_rows",
+    "written",
+]
 
 SOURCE = "open 45 nm cards (package c4m-pdk-freepdk45 0.0.1, Apache-2.0), ngspice 39, BSIM4v5, 27 degC"
 NOW = "simulated now"
@@ -145,7 +154,7 @@ def solved_rows() -> tuple[Row, ...]:
     )  # fmt: skip
 
 
-def _written(place: Path, words: str) -> Path:
+def written(place: Path, words: str) -> Path:
     """Write a set into a folder of its own and return the folder."""
     (place / "technologies").mkdir(parents=True)
     (place / "technologies" / f"{SET}.toml").write_text(words, encoding="utf-8")
@@ -162,7 +171,7 @@ def held_out_rows(folder: Path) -> list[Row]:
     """
     rows = []
     for flavour in FLAVOURS:
-        place = _written(folder / flavour, text(False, flavour=flavour))
+        place = written(folder / flavour, text(False, flavour=flavour))
         for supply in SUPPLIES[1:]:
             seen, here = measured_chain(supply, flavour=flavour), stage(pair_at(SET, supply, place))
             at, allowed = f"{flavour}, at {supply:.1f} V", 0.17 if flavour == "VTH" else 0.10
@@ -180,7 +189,7 @@ def edge_rows(folder: Path) -> list[Row]:
     """Delay and energy with other readings of the gate-drain capacitance; ``folder``: where the sets are written."""
     rows = []
     for number, reading in enumerate(EDGES[1:]):
-        place = _written(folder / f"reading-{number}", text(False, reading))
+        place = written(folder / f"reading-{number}", text(False, reading))
         for supply in (0.4, 0.6, 1.0):
             seen, here = measured_chain(supply), stage(pair_at(SET, supply, place))
             note = f"edge: {reading}"

@@ -1,6 +1,6 @@
 """Every comparison of this folder as rows, by title: what a validation report prints.
 
-Rows marked ``simulated now`` run ngspice; everything together takes under half a minute.
+Rows marked ``simulated now`` run ngspice; everything together takes about half a minute of one core.
 """
 
 from __future__ import annotations
