@@ -18,8 +18,9 @@ from benchmark.circuits.prefix import PREFIX_KINDS
 from benchmark.circuits.prefix_adder import prefix_adder
 from tests.factories import ohmic_pair
 from tests.near import near
+from tests.profiles import examples
 
-FEW = settings(deadline=None, max_examples=60)
+FEW = settings(max_examples=examples(60))
 
 
 def _result(netlist: Netlist, words: dict[str, int]) -> int:

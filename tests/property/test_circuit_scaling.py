@@ -15,8 +15,9 @@ from benchmark.circuits.library import build
 from benchmark.circuits.operation import OperationMetrics, estimate
 from tests.factories import ohmic_pair
 from tests.near import near
+from tests.profiles import examples
 
-LIMITED = settings(deadline=None, max_examples=40)
+LIMITED = settings(max_examples=examples(40))
 
 RULES = st.sampled_from(["chain", "step"])
 SCALE = st.floats(0.01, 100.0)

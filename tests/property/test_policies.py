@@ -13,7 +13,7 @@ from typing import Any
 
 import numpy as np
 import pytest
-from hypothesis import HealthCheck, Phase, given, settings
+from hypothesis import given
 from hypothesis import strategies as st
 
 from benchmark.decide.verdict import WORDS
@@ -22,16 +22,11 @@ from benchmark.evaluate.points import cycles_demanded, design_points
 from tests import comparisons as cmp
 from tests.comparisons import advantage, compare, comparison, load, moved, number, planar, pressed, side, steep, study
 from tests.near import near
+from tests.profiles import costly
 from tests.studies import Inputs, v
 
 GO, CONDITIONAL, FAILED, NOT_BETTER, UNDECIDED = WORDS
-few = settings(
-    max_examples=8,
-    deadline=None,
-    derandomize=True,
-    suppress_health_check=list(HealthCheck),
-    phases=(Phase.explicit, Phase.generate),  # shrinking whole comparisons takes minutes
-)
+few = costly()
 EXACT = 1e-9
 
 

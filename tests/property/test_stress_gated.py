@@ -6,14 +6,11 @@ import math
 from typing import Any
 
 import numpy as np
-from hypothesis import given, settings
+from hypothesis import given
 from hypothesis import strategies as st
 
 from benchmark.devices.record import Switch
 from tests.unit.test_stress_gated import BASE, HAND, LOG_SLOPE, limit, pair
-
-settings.register_profile("no deadline", deadline=None)
-settings.load_profile("no deadline")
 
 factors = st.floats(0.5, 2.0)
 supplies = st.floats(0.15, 0.8)

@@ -3,13 +3,10 @@
 from __future__ import annotations
 
 import numpy as np
-from hypothesis import given, settings
+from hypothesis import given
 from hypothesis import strategies as st
 
 from benchmark.physics import acoustics, force_balance, piezo, pressure_resistance, two_pole
-
-settings.register_profile("no deadline", deadline=None)
-settings.load_profile("no deadline")
 
 unit = st.floats(0.01, 0.99)
 pressures = st.floats(0.0, 2e10)

@@ -16,11 +16,12 @@ from benchmark.devices.record import SwitchPair
 from benchmark.devices.table import MODEL
 from benchmark.measured import MeasuredTable
 from benchmark.physics.interpolation import charge_curve, curve, hermite_across, inverse_temperature_weights
+from tests.profiles import examples
 from tests.unit.test_device_steep_swing import inputs as steep_inputs
 from tests.unit.test_device_steep_swing import pair_of as steep_pair
 from tests.unit.test_direct_sets import inputs_of, load
 
-SETTINGS = settings(deadline=None, max_examples=80)
+SETTINGS = settings(max_examples=examples(80))
 ROOM = 298.15
 
 

@@ -8,8 +8,9 @@ from hypothesis import strategies as st
 
 from benchmark.circuits.transfer import functional, largest_square, transfer_curve
 from tests.factories import ohmic_pair
+from tests.profiles import examples
 
-QUICK = settings(deadline=None, max_examples=25)
+QUICK = settings(max_examples=examples(25))
 DECADES = st.floats(0.1, 12.0)
 LOW = st.floats(0.0, 0.45)
 HIGH = st.floats(0.55, 1.0)

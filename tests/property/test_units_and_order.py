@@ -20,6 +20,7 @@ from benchmark.record.load import load_study
 from benchmark.record.rerun import recreate
 from benchmark.record.run import run_study
 from benchmark.record.write import summary, to_json
+from tests.profiles import examples
 from tests.studies import Inputs, Table, hub, mixed, run, toml
 
 D = Decimal
@@ -148,7 +149,7 @@ def _shuffled(data: Any, mixer: random.Random) -> Any:
     return data
 
 
-@settings(max_examples=4, deadline=None, suppress_health_check=[HealthCheck.function_scoped_fixture])
+@settings(max_examples=examples(4), suppress_health_check=[HealthCheck.function_scoped_fixture])
 @given(seed=st.integers(0, 2**32))
 def test_order_of_keys_nodes_contenders_and_pairs_does_not_matter(
     seed: int, baseline: str, tmp_path_factory: pytest.TempPathFactory
