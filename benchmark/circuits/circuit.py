@@ -15,6 +15,9 @@ from benchmark.devices.record import Array
 from benchmark.errors import UsageError
 
 if TYPE_CHECKING:
+    import numpy as np
+    from numpy.typing import NDArray
+
     from benchmark.circuits.rules import StageRule
     from benchmark.circuits.sized import Sized
 
@@ -181,8 +184,9 @@ class Circuit:
     assumptions
         What was assumed when the nets were made, one sentence each.
     stage
-        Text of the one kind of stage the circuit is made of ("inverter, fan-out 4, no wire"); empty when it has
-        several. A technology known only at one stage can be used in a circuit of just that stage.
+        Text of the one kind of stage the circuit is made of ("inverter, fan-out 4, no wire"), or an array of it over
+        rows; empty when it has several. A technology known only at one stage can be used in a circuit of just that
+        stage.
     fit
         Shapes the circuit to a technology (repeaters: how many, how wide); ``nets`` are then an example of it.
     """
@@ -193,7 +197,7 @@ class Circuit:
     nets: tuple[Net, ...]
     layers: Mapping[str, Layer] = field(default_factory=dict)
     assumptions: tuple[str, ...] = ()
-    stage: str = ""
+    stage: str | NDArray[np.str_] = ""
     fit: Fit | None = None
 
     def __post_init__(self) -> None:

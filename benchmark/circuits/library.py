@@ -13,6 +13,7 @@ from types import MappingProxyType
 from typing import Final
 
 import numpy as np
+from numpy.typing import NDArray
 
 from benchmark.circuits.adder import ripple_adder, ripple_adder_activity
 from benchmark.circuits.built_in import LENGTH_NAMES, BuiltIn, Scenario, netlist_nets, single, wire, wire_remark
@@ -45,12 +46,12 @@ def build(name: str, scenario: Scenario) -> Circuit:
     return BUILT_IN[name].build(scenario)
 
 
-def _stage_text(scenario: Scenario) -> str:
-    """Return the text of the one stage; compared with that of a technology known at one stage only."""
+def _stage_text(scenario: Scenario) -> NDArray[np.str_]:
+    """Return the text of the one stage, row by row; compared with that of a technology known at one stage only."""
     fan_out = np.asarray(scenario["fan_out"])
-    if fan_out.size != 1 or wire(scenario):
-        return ""
-    return f"inverter, fan-out {float(fan_out.reshape(-1)[0]):g}, no wire"
+    if wire(scenario):
+        return np.array("")
+    return np.array([f"inverter, fan-out {x:.12g}, no wire" for x in fan_out.ravel()]).reshape(fan_out.shape)
 
 
 def _inverter_chain(which: BuiltIn, scenario: Scenario) -> Circuit:

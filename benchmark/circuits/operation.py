@@ -238,8 +238,8 @@ def _unable(circuit: Circuit, sized: Sized, stages: tuple[StageDetail, ...]) -> 
         add("does not switch at this supply", ~closes)
         if switch.partner == "none":
             add("no complementary partner: the cells need both polarities", everywhere)
-        if switch.stage_only and switch.stage_only != circuit.stage:
-            add(f"known only at one stage ({switch.stage_only}); this circuit has other ones", everywhere)
+        if switch.stage_only and (other := np.asarray(circuit.stage) != switch.stage_only).any():
+            add(f"known only at one stage ({switch.stage_only}); this circuit has other ones", other)
         deepest = max(net.driver.depth(edge) for net in circuit.nets)
         if deepest > switch.stack_on.shape[-1]:
             add(f"{deepest} switches in series are more than the technology states", everywhere)

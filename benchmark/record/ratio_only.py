@@ -194,7 +194,7 @@ class _Maker:
         ]
 
     def error_bands(self) -> Row:
-        bands = self.record["error_bands"]
+        bands = self.record.get("error_bands", {"sides": (), "advantage": None})
         rows = [
             row | {"missing": [{"share": part["share"], "why": self.say(part["why"])} for part in row["missing"]]}
             for row in bands["sides"]
@@ -364,6 +364,7 @@ def _parts(make: _Maker, record: Record, words: str) -> Row:
         "sides": make.sides(),
         "ladder": make.ladder(),
         **make.robustness(),
+        "elasticities": [dict(row) for row in record.get("elasticities", ())],
         "uncertainty": make.uncertainty(),
         "curves": make.curves(),
         "advantage_against_time": make.advantages(),

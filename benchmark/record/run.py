@@ -15,6 +15,7 @@ from benchmark.decide.assess import RequirementResult, assess
 from benchmark.decide.closed_form import closed_form_differences, delay_factor
 from benchmark.decide.compare import Comparison, Outcome, choice_of
 from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
+from benchmark.decide.elasticity import elasticities
 from benchmark.decide.error_bands import advantage_band, band_warnings, side_bands
 from benchmark.decide.flips import with_flips
 from benchmark.decide.moves import InputMove, move_inputs
@@ -182,6 +183,15 @@ def run_study(
     checks = self_checks(study, primary.outcome)
     bands = side_bands(primary.comparison, primary.outcome)
     banded = advantage_band(primary.comparison, primary.outcome, envelope, bands)
+    progress("elasticities", 0.8)
+    effective = [move.key for move in verdict.moves if move.matters]
+    slopes = elasticities(
+        study,
+        study.pair(study.headline),
+        primary.outcome,
+        primary.comparison.frozen_choices(primary.outcome),
+        effective,
+    )
     drawn = draw_rows(
         study,
         primary.comparison.frozen_choices(primary.outcome),
@@ -201,6 +211,7 @@ def run_study(
         "requirements": requirement_rows(primary.requirements),
         "policies": policies,
         "sides": _side_rows(study),
+        "elasticities": [vars(row) for row in slopes],
         "uncertainty": drawn,
         "ladder": rungs,
         "robustness": cells,

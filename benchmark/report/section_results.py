@@ -216,7 +216,33 @@ def moves(record: Record, figure: Figure) -> Section:
         for key, title in (("conditions", "All conditions"), ("measure_next", "All to be measured before deciding"))
         if verdict[key]
     ]
-    return Section("moves", "What moves the answer", (Paragraph(counts), figure, table, *complete))
+    blocks = (Paragraph(counts), figure, table, *_elasticities(record), *complete)
+    return Section("moves", "What moves the answer", blocks)
+
+
+def _elasticities(record: Record) -> list[Block]:
+    """Return the elasticities, the steepest first; they are physics, and no measure of how much an input matters."""
+
+    def steepness(row: Mapping[str, Any]) -> float:
+        known = [abs(row[name]) for name in ("reoptimised", "at_point") if is_number(row[name])]
+        return -max(known, default=0.0)
+
+    names = ("at_point", "reoptimised", "time", "energy")
+    rows = []
+    for row in sorted(record.get("elasticities", ()), key=steepness):
+        owner, _, name = row["key"].rpartition(".")
+        shown = [number(row[key], 2) if is_number(row[key]) else "not defined" for key in names]
+        rows.append((Cell(name.replace("_", " "), small=owner), *shown))
+    if not rows:
+        return []
+    columns = ("input", "of the advantage, at the points", "of the advantage, re-optimised", "of time", "of energy")
+    caption = "Elasticities d ln y / d ln x at the best estimate: per cent per per cent"
+    text = (
+        "At the points: supplies stay. Re-optimised: each side finds its best supply again. Time and energy: of the "
+        "side the input belongs to (of the candidate for shared ones), at its point. A steep input with a narrow range "
+        "matters less than a flat one with a wide range: decide by the table above."
+    )
+    return [plain("elasticities", caption, columns, rows, wide=True), Paragraph(text)]
 
 
 def _node_side(row: Mapping[str, Any], side: str) -> list[str]:
