@@ -59,6 +59,11 @@ class Needed:
 
         return pandas.DataFrame([dict(row) for row in self.rows], columns=list(self.columns))
 
+    def _repr_html_(self) -> str:
+        from benchmark.api import html
+
+        return html.frame(*map(html.note, self.heading), html.table("", ("what", "answer"), self.facts))
+
     def __repr__(self) -> str:
         return f"Needed({len(self.facts)} answers, {len(self.rows)} rows)"
 

@@ -72,6 +72,10 @@ def test_the_forms_say_the_same_numbers_as_the_python_interface(evenload: Run, s
     assert "study.activity" in found.text
     assert repr(found) == "Needed(1 answers, 2 rows)"
     assert listed[0]["standard_deviations"] is None
+    shown = found._repr_html_()
+    assert "<table" in shown
+    assert "the candidate is better below" in shown
+    assert "<script" not in shown
 
 
 def test_a_range_of_ones_own_and_a_what_if(evenload: Run, study: Path):
