@@ -17,6 +17,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from benchmark.record.findings import findings
 from benchmark.record.scrub import LEFT_OUT, printed_forms, scrubbed
 
 __all__ = ["ratio_only"]
@@ -325,7 +326,8 @@ def ratio_only(record: Record) -> Row:
         ]
     )
     made = _parts(_Maker(record, base, told), record, words)
-    return _renamed(made, _names(record, told))  # type: ignore[no-any-return]
+    renamed: Row = _renamed(made, _names(record, told))
+    return {**renamed, "findings": findings(renamed)}
 
 
 def _names(record: Record, told: frozenset[str]) -> dict[str, str]:

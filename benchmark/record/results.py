@@ -217,10 +217,14 @@ def envelope_rows(envelope: Envelope) -> list[dict[str, Any]]:
 
 def error_band_row(bands: list[SideBand], advantage: AdvantageBand | None) -> dict[str, Any]:
     """Measured bands of the closed forms at the design points, and what they leave of the advantage."""
-    kept = ("side", "role", "quantity", "low", "high", "covered", "points", "over")
+    kept = ("side", "role", "quantity", "covered", "points", "over")
     sides = [
         {name: getattr(band, name) for name in kept}
+        | {"ratio_low": band.low, "ratio_high": band.high}
         | {"missing": [{"share": share, "why": why} for share, why in band.missing]}
         for band in bands
     ]
-    return {"sides": sides, "advantage": None if advantage is None else vars(advantage)}
+    if advantage is None:
+        return {"sides": sides, "advantage": None}
+    ends = {"advantage_low": advantage.low, "advantage_high": advantage.high, "straddles": advantage.straddles}
+    return {"sides": sides, "advantage": ends}

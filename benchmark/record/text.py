@@ -100,11 +100,11 @@ def _side_line(name: str, point: Mapping[str, Any]) -> str:
 def _band_line(record: Mapping[str, Any]) -> str:
     """Return how far the closed forms were from simulation; empty where none stands behind the numbers."""
     parts = []
-    rows = record["error_bands"]["sides"]
+    rows = record.get("error_bands", {}).get("sides", ())
     for side in dict.fromkeys(row["side"] for row in rows):
         mine = [row for row in rows if row["side"] == side and row["quantity"] in ("delay", "energy per operation")]
         said = [
-            f"{row['quantity']} {row['low']:.2f} to {row['high']:.2f}"
+            f"{row['quantity']} {row['ratio_low']:.2f} to {row['ratio_high']:.2f}"
             + ("" if row["covered"] > 0.999 else f" ({100.0 * row['covered']:.0f} % of it measured)")
             for row in mine
             if row["points"]
@@ -165,7 +165,7 @@ def ladder_words(record: Mapping[str, Any], row: Mapping[str, Any]) -> str:
         "reached": f"is reached at '{row['turn']}'",
         "kept": "is kept on every rung",
         "never": "is reached on no rung",
-    }[row["state"]]
+    }.get(row["state"], "is not judged")
     return f"{head}{span}; the required {required:g} {end}."
 
 

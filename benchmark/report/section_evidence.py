@@ -83,7 +83,7 @@ def closed_form(record: Record) -> Section:
         text = (
             "Not executed for this study: the closed-form delay was not compared with a transient of the same switches."
         )
-        return Section("closed-form", title, (Paragraph(text),))
+        return Section("closed-form", title, (Paragraph(text), *_error_bands(record)))
     rows = [
         (
             Cell(row["side"], small=f"net {row['net']}"),
@@ -108,7 +108,37 @@ def closed_form(record: Record) -> Section:
         "note",
     )
     caption = "Delay of the stage that takes most of the path, by the rule of the study and solved in time"
-    return Section("closed-form", title, (plain("closed-form", caption, columns, rows, wide=True),))
+    table = plain("closed-form", caption, columns, rows, wide=True)
+    return Section("closed-form", title, (table, *_error_bands(record)))
+
+
+def _error_bands(record: Record) -> tuple[Block, ...]:
+    """Return the measured bands of the closed forms at the design points, and what they leave of the advantage."""
+    bands = record.get("error_bands")
+    if bands is None:  # a record of an earlier version
+        return ()
+    rows = [
+        (
+            row["side"],
+            row["quantity"],
+            f"{number(row['ratio_low'])} to {number(row['ratio_high'])}" if row["points"] else "not measured",
+            f"{number(100.0 * row['covered'])} %",
+            row["points"],
+            Cell(row["over"], small="; ".join(f"not measured: {part['why']}" for part in row["missing"])),
+        )
+        for row in bands["sides"]
+    ]
+    columns = ("side", "quantity", "closed form over simulation", "share measured", "points", "measured over")
+    caption = "Closed forms at the design points over ngspice with the charges of the device, as measured beforehand"
+    table = plain("error-bands", caption, columns, rows, wide=True, empty="No side has closed forms to be measured.")
+    found = bands["advantage"]
+    if found is None:
+        return (table,)
+    ends = (found["advantage_low"], found["advantage_high"])
+    low, high = (number(end) if is_number(end) else end for end in ends)
+    turns = "; this can turn the answer." if found["straddles"] else ", on one side of the required advantage."
+    text = f"If both sides err within their bands the advantage lies between {low} and {high}{turns}"
+    return table, Notice(text) if found["straddles"] else Paragraph(text)
 
 
 def _values(row: Mapping[str, Any]) -> Cell:

@@ -163,6 +163,22 @@ def _closed_form(record: Record) -> list[Row]:
     ]
 
 
+def _error_bands(record: Record) -> list[Row]:
+    return [
+        {
+            "side": row["side"],
+            "quantity": row["quantity"],
+            "closed_over_simulated_low": word(row["ratio_low"], "not measured"),
+            "closed_over_simulated_high": word(row["ratio_high"], "not measured"),
+            "share_measured": row["covered"],
+            "points": row["points"],
+            "measured_over": row["over"],
+            "not_measured": "; ".join(part["why"] for part in row["missing"]),
+        }
+        for row in record.get("error_bands", {}).get("sides", ())
+    ]
+
+
 def ledger_table(record: Record) -> list[Row]:
     """Every value used, one row per node."""
     rows = []
@@ -260,6 +276,7 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "node_steps": step_rows,
     "anchors": _anchors,
     "closed_form": _closed_form,
+    "error_bands": _error_bands,
     "ledger": ledger_table,
     "options": _plain("options"),
     "sides": _side_rows,

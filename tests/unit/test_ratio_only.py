@@ -177,7 +177,7 @@ KEPT = {
     *("inputs_with_effect", "inputs_without_range", "inputs_of_judgement", "required_advantage", "exponent", "line"),
     *("guard_band_delay", "guard_band_leakage", "temperatures", "temperature", "supply_points", "refine_relative"),
     *("delay_shares", "energy_shares", "device_margins", "sizes", "advantages", "year", "parts", "total"),
-    *("copies", "reaching", "better", "infeasible", "worst"),
+    *("ratio_low", "ratio_high", "covered", "points", "share", "copies", "reaching", "better", "infeasible", "worst"),
 }
 
 
