@@ -89,7 +89,7 @@ def _word(found: Uncertainty, settings: DrawSettings) -> str:
         return "unlikely to be reached"
     if found.reaches.value >= settings.likely or found.reaches.value <= settings.unlikely:
         return "within the sampling error of a threshold: draw more"
-    return "open"
+    return "neither likely nor unlikely to be reached"
 
 
 def _two_errors(estimate: Estimate) -> tuple[float, float]:

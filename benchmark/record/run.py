@@ -14,7 +14,7 @@ import benchmark
 from benchmark.decide.assess import RequirementResult, assess
 from benchmark.decide.closed_form import closed_form_differences, delay_factor
 from benchmark.decide.compare import Comparison, Outcome, choice_of
-from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, scan_nodes, swept
+from benchmark.decide.curves import Envelope, Swept, advantage_against_time, crossings, pair_outcomes, scan_nodes, swept
 from benchmark.decide.elasticity import elasticities
 from benchmark.decide.error_bands import advantage_band, band_warnings, side_bands
 from benchmark.decide.flips import with_flips
@@ -29,6 +29,7 @@ from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
 from benchmark.record.draws import draw_rows
+from benchmark.record.findings import findings
 from benchmark.record.ledger import ledger_rows, option_rows, technologies
 from benchmark.record.outlook import outlook_rows
 from benchmark.record.results import (
@@ -173,10 +174,12 @@ def run_study(
     policies += same_netlist_rows(study)
     progress("strength of the reference and robustness", 0.65)
     rungs = ladder_rows(primary.comparison, primary.outcome)
-    cells = robustness_row(study, outcomes)
+    by_pair = pair_outcomes(study, study.policy.primary, {study.headline: primary.outcome})
+    known = {(label, study.policy.primary): outcome for label, outcome in by_pair.items()}
+    cells = robustness_row(study, known | {(study.headline, name): outcome for name, outcome in outcomes.items()})
     progress("required times and nodes", 0.75)
     envelope = advantage_against_time(study, primary.curves)
-    nodes = scan_nodes(study, study.policy.primary)
+    nodes = scan_nodes(study, study.policy.primary, by_pair)
     steps = node_steps(study, study.policy.primary, nodes)
     progress("checking the reference and the method", 0.8)
     anchors = [result for item in technologies(study) if item.model for result in anchor_results(item)]
@@ -244,7 +247,8 @@ def run_study(
         "files": _files(study, library),
     }
     progress("done", 1.0)
-    return clean(record)  # type: ignore[no-any-return]
+    cleaned: dict[str, Any] = clean(record)
+    return {**cleaned, "findings": findings(cleaned)}
 
 
 def _study_row(study: Study) -> dict[str, Any]:

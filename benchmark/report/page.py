@@ -70,6 +70,7 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
     steps = [figure for key, figure in shown.items() if key.startswith("node-steps")]
     return [
         asked.answer(record, digest),
+        asked.findings(record),
         asked.question(record),
         asked.requirements(record, shown["requirement-margins"]),
         results.curves(shown["energy-delay"], shown["limits-along-supply"]),

@@ -11,7 +11,7 @@ from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Pairs,
 from benchmark.report.margins import margin_words
 from benchmark.report.words import amount, is_number, listed, number, plural, policy_name, requirement_name, volts
 
-__all__ = ["answer", "evidence_counts", "question", "requirements"]
+__all__ = ["answer", "evidence_counts", "findings", "question", "requirements"]
 
 Record = Mapping[str, Any]
 MOST_NAMED = 5
@@ -202,6 +202,14 @@ def _sides(record: Record) -> Table:
         "threshold shifts",
     )
     return plain("sides", "The sides and what each may choose", columns, rows, wide=True)
+
+
+def findings(record: Record) -> Section:
+    """Return the findings in plain words, each with the section that holds its numbers."""
+    rows = [(row["text"], Cell("numbers", f"#{row['at']}")) for row in record.get("findings", ())]
+    caption = "Made from the numbers of this record alone"
+    table = plain("findings-table", caption, ("finding", "where"), rows, empty="This record states no findings.")
+    return Section("findings", "Findings", (table,))
 
 
 def question(record: Record) -> Section:
