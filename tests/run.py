@@ -19,6 +19,9 @@ BIN = ENVIRONMENT / ("Scripts" if os.name == "nt" else "bin")
 #: program -> Debian package
 PROGRAMS = {"ngspice": "ngspice", "chromium": "chromium", "cc": "gcc"}
 
+#: open 45 nm transistor cards (text files, Apache-2.0)
+CARDS = "c4m-pdk-freepdk45==0.0.1"
+
 
 def say(text: str) -> None:
     print(f"== {text}", flush=True)
@@ -55,6 +58,11 @@ def python_packages() -> None:
     say("installing evenload and its test tools into .venv")
     subprocess.run(
         [BIN / "python", "-m", "pip", "install", "--quiet", "--disable-pip-version-check", "-e", f"{ROOT}[test]"],
+        check=True,
+    )
+    # a file of transistor cards is read from it; what its own code would need is not
+    subprocess.run(
+        [BIN / "python", "-m", "pip", "install", "--quiet", "--disable-pip-version-check", "--no-deps", CARDS],
         check=True,
     )
 
