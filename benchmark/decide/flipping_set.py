@@ -5,14 +5,17 @@ its range. When one of them changes the side, sets of one are the answer. Otherw
 on request all triples; both sides of the comparison are optimised anew every time. What is exact is said with the
 answer: ends of ranges and the straight lines to them are looked at, not every point inside.
 
-An input without any effect at either end alone is left out of the larger sets. How implausible a set is: the root of
-the sum of the squared distances from the best estimates, in standard deviations of the stated spreads, at the nearest
-point found that changes the side.
+An input without any effect at either end alone is left out of the larger sets. Where more than ``EXHAUSTIVE``
+combinations of ends are left, those whose effects alone, added in ln(advantage), come to less than a third of the
+distance to the level are left out too, and their number is said. How implausible a set is: the root of the sum of the
+squared distances from the best estimates, in standard deviations of the stated spreads, at the nearest point found that
+changes the side.
 """
 
 from __future__ import annotations
 
 import itertools
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
@@ -32,6 +35,10 @@ __all__ = ["FLIP_COLUMNS", "Flip", "FlippingSets", "flip_rows", "flipping_sets"]
 Array = NDArray[np.float64]
 #: rows evaluated for one size of set, at most; more would take hours
 MOST_ROWS = 20_000
+#: combinations of ends up to which every one is evaluated
+EXHAUSTIVE = 1_000
+#: effects together may be this many times the sum of the effects alone before a set is missed
+TOGETHER = 3.0
 #: directions tried for each set that changes the side: shares of the way to the end of each input but one
 DIRECTIONS = (0.25, 0.5, 0.75, 1.0)
 #: tolerance of the share of the way along a direction
@@ -69,7 +76,8 @@ class Flip:
 class FlippingSets:
     """The sets of the smallest size, the least implausible first; none when ``flips`` is empty.
 
-    ``up_to``: sizes looked at; ``inputs``: inputs with a range; ``left_out``: names without effect alone.
+    ``up_to``: sizes looked at; ``inputs``: inputs with a range; ``left_out``: names without effect alone; ``pruned``:
+    combinations that were not evaluated because their effects alone are far too small.
     """
 
     level: float
@@ -78,6 +86,7 @@ class FlippingSets:
     up_to: int
     inputs: int
     left_out: tuple[str, ...]
+    pruned: int = 0
 
     @property
     def text(self) -> str:
@@ -87,6 +96,8 @@ class FlippingSets:
         if not self.flips:
             word = {1: "single input", 2: "pair of inputs", 3: "triple of inputs"}[self.up_to]
             idle = f"; {len(self.left_out)} without effect alone" if self.left_out else ""
+            if self.pruned:
+                idle += f"; {self.pruned} combinations whose effects alone add up to less than a third of it left out"
             return f"{head}: no {word} changes that inside the {self.inputs} ranges (their ends were tried{idle})"
         best = self.flips[0]
         moved = " and ".join(
@@ -142,7 +153,11 @@ def flipping_sets(trials: Trials, level: float, up_to: int = 2) -> FlippingSets:
     idle = {axis for axis in axes if all(same[k] for k, item in enumerate(single) if item[0][0] is axis)}
     left_out = tuple(axis.name for axis in axes if axis in idle)
     found = [item for item, flips in zip(single, other, strict=True) if flips]
-    size = 1
+    # effect of each end alone in ln(advantage) towards the level; what is not a number there may do anything
+    with np.errstate(divide="ignore", invalid="ignore"):
+        towards = (np.log(counted) - math.log(today)) * (-1.0 if reached else 1.0) if today > 0.0 else counted
+    effects = {item: float(effect) for item, effect in zip(single, np.nan_to_num(towards, nan=np.inf), strict=True)}
+    size, pruned = 1, 0
     active = [axis for axis in axes if axis not in idle]
     while not found and size < up_to:
         size += 1
@@ -153,6 +168,12 @@ def flipping_sets(trials: Trials, level: float, up_to: int = 2) -> FlippingSets:
         ]
         if not moved:
             break
+        if len(moved) > EXHAUSTIVE and np.isfinite(today):
+            kept = [item for item in moved if _could(item, effects, abs(math.log(level / today)))]
+            pruned += len(moved) - len(kept)
+            moved = kept
+        if not moved:
+            continue
         if len(moved) > MOST_ROWS:
             message = f"sets of {size} of {len(active)} inputs need {len(moved)} comparisons; at most {MOST_ROWS}"
             raise UsageError(message)
@@ -162,7 +183,13 @@ def flipping_sets(trials: Trials, level: float, up_to: int = 2) -> FlippingSets:
     flips = _nearest(trials, found[:CLOSEST], level, reached)
     best = {flip.axes: flip for flip in sorted(flips, key=lambda flip: -flip.implausibility)}
     ordered = sorted(best.values(), key=lambda flip: flip.implausibility)
-    return FlippingSets(level, float(trials.best.advantage[0]), tuple(ordered), up_to, len(axes), left_out)
+    return FlippingSets(level, float(trials.best.advantage[0]), tuple(ordered), up_to, len(axes), left_out, pruned)
+
+
+def _could(item: _Set, effects: Mapping[_Set, float], distance: float) -> bool:
+    """Tell whether the effects alone of some ends add up to enough of the distance, in ln(advantage), to be tried."""
+    alone = sum(max(effects[(axis,), (end,)], 0.0) for axis, end in zip(*item, strict=True))
+    return TOGETHER * alone >= distance
 
 
 def _ends(axis: Axis) -> tuple[float, float] | None:

@@ -35,7 +35,7 @@ def factor(low: float, high: float) -> st.SearchStrategy[float]:
 
 
 def made(policy: str, capacitance: float, resistance: float, swing: float, delay: float = 0.0) -> Trials:
-    """A candidate of stated resistance (and switching time, ns) against a tunnelling transistor, at the best supplies."""
+    """A candidate of stated resistance (and switching time, ns) against a tunnelling transistor, best supplies."""
     loaded = load(
         study(
             side("a", 0.25, 0.6),

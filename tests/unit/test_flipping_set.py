@@ -115,6 +115,21 @@ def test_without_ranges_there_is_nothing_to_move():
     assert "no pair of inputs changes that inside the 0 ranges" in found.text
 
 
+def test_combinations_far_from_enough_are_left_out_and_counted(monkeypatch):
+    made = trials(capacitance("0.100", "0.2"), capacitance("0.135", "0.2"))
+    every = flipping_sets(made, 1.0)
+    monkeypatch.setattr("benchmark.decide.flipping_set.EXHAUSTIVE", 0)
+    found = flipping_sets(made, 1.0)
+    assert names(found) == names(every)
+    assert found.flips[0].values == every.flips[0].values
+    # three of the four combinations of ends move an input the wrong way or not far enough, two could still do
+    assert 1 <= found.pruned <= 3
+    far = flipping_sets(made, 0.01)
+    assert far.flips == ()
+    assert far.pruned == 4
+    assert "4 combinations whose effects alone add up to less than a third of it left out" in far.text
+
+
 def test_a_loss_can_be_turned_too_and_other_sizes_are_refused():
     # 0.8 today
     made = trials(capacitance("0.100", "0.3"), capacitance("0.080", "0.1"))
