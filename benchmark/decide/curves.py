@@ -8,14 +8,14 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from benchmark.decide.compare import Comparison
+from benchmark.decide.compare import Comparison, Outcome
 from benchmark.decide.requirements import FUNCTIONAL, HardLimits, Meets, margins_at
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import Points, with_cycle
 from benchmark.evaluate.search import SideRun
 from benchmark.sets.study import Choice, Study
 
-__all__ = ["Envelope", "Swept", "advantage_against_time", "crossings", "scan_nodes", "swept"]
+__all__ = ["Envelope", "Swept", "advantage_against_time", "crossings", "pair_outcomes", "scan_nodes", "swept"]
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
@@ -166,11 +166,22 @@ class NodeResult:
     note: str
 
 
-def scan_nodes(study: Study, policy: str) -> list[NodeResult]:
-    """Run the primary policy at every node pair."""
+def pair_outcomes(study: Study, policy: str, known: Mapping[str, Outcome]) -> dict[str, Outcome]:
+    """Return the outcome of a policy at every node pair by label; ``known``: those that have been evaluated already."""
+    return {
+        pair.label: known[pair.label]
+        if pair.label in known
+        else Comparison(study, pair, Batch.best_estimate()).outcome(policy)
+        for pair in study.pairs
+    }
+
+
+def scan_nodes(study: Study, policy: str, known: Mapping[str, Outcome] | None = None) -> list[NodeResult]:
+    """Run the primary policy at every node pair; ``known``: outcomes that have been evaluated already, by label."""
+    outcomes = pair_outcomes(study, policy, known or {})
     results = []
     for pair in study.pairs:
-        outcome = Comparison(study, pair, Batch.best_estimate()).outcome(policy)
+        outcome = outcomes[pair.label]
         candidate, reference = outcome.candidate, outcome.strongest_side
         note = ""
         if not candidate.found[0]:

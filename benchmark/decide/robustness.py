@@ -5,9 +5,9 @@ the temperatures are all of the study, and each alone (at the headline pair, unl
 One cell was fixed before the run: it carries the verdict. The required time and energy of a policy stay as they are in
 every cell, also where the contender that sets the required time is not on the list.
 
-Sides are optimised once per policy, pair and temperatures; lists only choose among them. Other cells than those of the
-headline pair at all temperatures search the supply to ``COARSE`` at best: an optimum between two limits is flat, so
-its energy is off by the square of that.
+Sides are optimised once per policy, pair and temperatures; lists only choose among them. What has not been evaluated
+for another part of the answer is searched to ``COARSE`` at best: an optimum between two limits is flat, so its energy
+is off by the square of that; on a limit it is off by a few times that.
 """
 
 from __future__ import annotations
@@ -29,7 +29,7 @@ from benchmark.sets.study import NodePair, Study
 
 __all__ = ["Cell", "Robustness", "robustness"]
 
-#: relative step of the supply search in cells that are not headline cells
+#: relative step of the supply search in cells that no other part of the answer needs
 COARSE = 1.0e-4
 Level = Literal["reaches", "better", "not better", "infeasible"]
 
@@ -83,14 +83,14 @@ def contender_lists(names: list[str]) -> dict[str, tuple[str, ...]]:
     return {label: members for members, label in found.items() if members}
 
 
-def robustness(study: Study, headline: Mapping[str, Outcome], *, whole: bool = False) -> Robustness:
+def robustness(study: Study, known: Mapping[tuple[str, str], Outcome], *, whole: bool = False) -> Robustness:
     """Evaluate all cells.
 
     Parameters
     ----------
     study : Study
-    headline : mapping
-        Policy -> its outcome at the headline pair, where it has been evaluated already.
+    known : mapping
+        (pair, policy) -> outcome at all temperatures of the study, where it has been evaluated already.
     whole : bool
         Judge each temperature alone at every pair; by default only at the headline pair.
     """
@@ -99,11 +99,13 @@ def robustness(study: Study, headline: Mapping[str, Outcome], *, whole: bool = F
     cells: list[Cell] = []
     for pair in study.pairs:
         for temperatures in (study.temperatures, *(alone if whole or pair.label == study.headline else ())):
-            known = headline if pair.label == study.headline and temperatures == study.temperatures else {}
-            costs = _costs(study, pair, temperatures, policies, known)
+            everywhere = temperatures == study.temperatures
+            already = {name: known[pair.label, name] for name in policies if everywhere and (pair.label, name) in known}
+            costs = _costs(study, pair, temperatures, policies, already)
+            answer = everywhere and pair.label == study.headline
             for policy in policies:
                 for label, members in contender_lists(list(costs[policy].contenders)).items():
-                    declared = bool(known) and policy == study.policy.primary and label == "all"
+                    declared = answer and policy == study.policy.primary and label == "all"
                     cells.append(_cell(study, policy, (label, members), pair, temperatures, costs[policy], declared))
     numbers = [cell for cell in cells if cell.level != "infeasible"]
     return Robustness(

@@ -38,9 +38,9 @@ def _ladder_row(ladder: Ladder) -> dict[str, Any]:
     }
 
 
-def robustness_row(study: Study, outcomes: Mapping[str, Outcome]) -> dict[str, Any]:
-    """Return all cells; ``outcomes``: policy -> outcome at the headline pair."""
-    return _robustness_row(robustness(study, outcomes))
+def robustness_row(study: Study, known: Mapping[tuple[str, str], Outcome]) -> dict[str, Any]:
+    """Return all cells; ``known``: (pair, policy) -> outcome, where it has been evaluated already."""
+    return _robustness_row(robustness(study, known))
 
 
 def _robustness_row(found: Robustness) -> dict[str, Any]:
@@ -63,7 +63,7 @@ def mitigation_conventions(study: Study) -> list[dict[str, str]]:
     )
     cells = (
         "best estimates; the required time stays as it is in every cell; each temperature alone at the headline pair; "
-        f"cells other than those of the headline pair search the supply to a relative step of {COARSE:g}"
+        f"cells that no other part of the answer needs search the supply to a relative step of {COARSE:g}"
     )
     found = [{"name": "ladder", "text": supply}, {"name": "robustness", "text": cells}]
     if study.idle == "gated":

@@ -31,7 +31,8 @@ def _loaded(name: str) -> Study:
 @functools.cache
 def _found(name: str, *, whole: bool = True) -> Robustness:
     found = _loaded(name)
-    return robustness(found, _outcomes(found), whole=whole)
+    known = {(found.headline, name): outcome for name, outcome in _outcomes(found).items()}
+    return robustness(found, known, whole=whole)
 
 
 def _outcomes(found: Study):
