@@ -56,14 +56,11 @@ def _advantage(record: Record) -> list[tuple[str, str]]:
         return [("No advantage exists: a side has no permitted point.", "policies")]
     one, required = _limits_of(record)
     metric = record["study"]["metric"].replace("-", " ")
-    times = factor(advantage if advantage >= 1.0 else 1.0 / advantage, one)
-    side = "less" if advantage > 1.0 else "more"
-    change = f"{times} times {side}" if factor(advantage, one) != "1" else "as much"
     reach = "which reaches" if advantage >= required else "which does not reach"
     return [
         (
-            f"In {metric} the candidate takes {change} than {primary['strongest']}, the strongest contender: advantage "
-            f"{factor(advantage, one, required)}, {reach} the required {required:g}.",
+            f"The advantage in {metric} over {primary['strongest']}, the strongest contender, is "
+            f"{factor(advantage, one, required)} (reference / candidate), {reach} the required {required:g}.",
             "policies",
         )
     ]
@@ -141,4 +138,4 @@ def _knowing(record: Record) -> list[tuple[str, str]]:
     best = max(found["shares"], key=lambda row: row["worth"], default=None)
     if best is None or best["worth"] <= 2.0 * best["worth_error"]:
         return []
-    return [(f"What is most worth measuring is {best['key']}.", "next-measurement")]
+    return [(f"Most worth measuring: {best['key']}.", "next-measurement")]

@@ -118,7 +118,7 @@ def probability(found: Mapping[str, float]) -> str:
     if found["error"] == 0.0:
         return f"{found['value']:.3g} (no scatter between scrambles)"
     digits = max(2, 1 - math.floor(math.log10(found["error"])))
-    return f"{found['value']:.{digits}f} +- {found['error']:.{digits}f}"
+    return f"{found['value']:.{digits}f} ± {found['error']:.{digits}f}"
 
 
 def uncertainty_words(record: Mapping[str, Any]) -> list[str]:

@@ -204,9 +204,22 @@ def _sides(record: Record) -> Table:
     return plain("sides", "The sides and what each may choose", columns, rows, wide=True)
 
 
+#: section that holds the numbers of a finding -> what it is called there
+_WHERE = {
+    "requirements": "margins of requirements",
+    "policies": "all policies",
+    "uncertainty": "how sure",
+    "parts": "parts of time and energy",
+    "moves": "inputs moved alone",
+    "ladder": "ladder of the reference",
+    "nodes": "node pairs",
+    "next-measurement": "what to measure",
+}
+
+
 def findings(record: Record) -> Section:
     """Return the findings in plain words, each with the section that holds its numbers."""
-    rows = [(row["text"], Cell("numbers", f"#{row['at']}")) for row in record.get("findings", ())]
+    rows = [(row["text"], Cell(_WHERE[row["at"]], f"#{row['at']}")) for row in record.get("findings", ())]
     caption = "Made from the numbers of this record alone"
     table = plain("findings-table", caption, ("finding", "where"), rows, empty="This record states no findings.")
     return Section("findings", "Findings", (table,))
