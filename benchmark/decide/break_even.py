@@ -175,12 +175,15 @@ def _ways(axis: Axis) -> list[tuple[str, list[float]]]:
 
 def _followed(trials: Trials, profile: Profile, need: Need, looks: Sequence[_Look]) -> Need:
     """Return the nearest value beyond the range that reaches the level, or how far the axis goes."""
+    reaching = [
+        (int(np.argmax(found >= need.level)), values) for _, values, found in looks if (found >= need.level).any()
+    ]
+    if reaching:
+        first, values = min(reaching, key=lambda item: item[0])
+        return _beyond(trials, need, values, first)
     inside = int(np.nanargmax(profile.advantage))
     best = Reach(float(profile.x[inside]), float(profile.advantage[inside]), "inside the range", True, "")
     for end, values, advantages in looks:
-        above = np.flatnonzero(advantages >= need.level)
-        if above.size:
-            return _beyond(trials, need, values, int(above[0]))
         if values and float(advantages.max()) >= best.advantage:
             furthest = int(np.flatnonzero(advantages == advantages.max())[-1])
             change = abs(advantages[-1] / advantages[-2] - 1.0) if len(values) > 1 else np.inf

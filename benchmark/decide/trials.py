@@ -133,9 +133,8 @@ class Trials:
         self._comparison = comparison
         self._told = told
         self._whole = False
-        first = comparison(study, pair, Batch.best_estimate(), frozen=frozen)
-        self.outcome: Outcome = first.outcome(self.policy)
-        self.frozen = first.frozen_choices(self.outcome)
+        first = comparison(study, pair, Batch.best_estimate())
+        self.frozen = first.frozen_choices(first.outcome(self.policy)) if frozen is None else dict(frozen)
         self.problems = {"candidate": first.candidate.problem} | {
             name: run.problem for name, run in first.contenders.items()
         }

@@ -13,6 +13,7 @@ import pytest
 
 from benchmark.decide.axes import find_axis, known_axes
 from benchmark.decide.break_even import Need, find_needs
+from benchmark.decide.compare import Comparison
 from benchmark.decide.gap import AlteredComparison, Perfected, gap_rows, improvements
 from benchmark.decide.need_words import need_rows, need_text
 from benchmark.decide.opportunity import map_rows, opportunity_map
@@ -21,6 +22,7 @@ from benchmark.decide.specification import sheet_rows, specification
 from benchmark.decide.trade import trade_curve, trade_rows
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
+from benchmark.evaluate.batch import Batch
 from benchmark.record.load import load_study
 from tests.near import near
 from tests.studies import hub, mixed
@@ -109,7 +111,8 @@ D_V_25 = math.log10(1e9 / (10e-12 / (math.log(2.0) * 0.1e-15))) / 2.0 * 1e9 / (2
 
 def level_of(trials: Trials, stage: float) -> float:
     """Advantage in time at which one of the twenty stages takes so long."""
-    return float(trials.outcome.contenders[0].time[0]) / (20 * stage)
+    reference = Comparison(trials.study, trials.pair, Batch.best_estimate()).outcome(trials.policy).contenders[0]
+    return float(reference.time[0]) / (20 * stage)
 
 
 def test_transit_equals_resistance_times_capacitance_at_274_9():
