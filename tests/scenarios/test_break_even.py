@@ -101,6 +101,26 @@ def test_a_deadline_is_an_edge_and_no_root(tmp_path):
     assert [crossing.x for crossing in need.crossings] == near([0.7e-12 / (1.51e-15 * 0.02)], rel=1e-12)
 
 
+def test_a_contender_that_drops_out_makes_a_jump_and_no_root(tmp_path):
+    # low-leakage with 300 ns per stage misses the cycle above 166.7 kHz; then fast is the strongest, at 9.2 times
+    inputs = hub()
+    for name in ("closing_delay", "opening_delay"):
+        inputs.sets["technologies/low-leakage"]["value"][name]["value"] = 300
+    study, _ = load_study(inputs.write(tmp_path))
+    trials = Trials(study, study.pair("n1"))
+    (need,) = needs_of(trials, "clock_frequency", 1.0)
+    root, jump = need.crossings
+    assert (root.kind, root.above_below) == ("root", True)
+    assert (jump.kind, jump.above_below) == ("jump", False)
+    slowest = 20 * (300e-9 + math.log(2.0) * 1e-12)
+    assert jump.x == near(1.0 / slowest, rel=1e-9)
+    before, after = (0.49 * 0.02 + 0.7e3 * slowest) / 0.04, (0.36 * 0.02 + 60e3 * slowest) / 0.04
+    assert jump.why == (
+        f"the advantage jumps from {before:.4g} to {after:.4g}: low-leakage has a permitted point only below"
+    )
+    assert "no root but a jump at 0.1667 MHz" in need_text(need)
+
+
 # -- stress-gated switch: p = b d V, R = 1e9 ohm x 10^(-2 p/GPa), t = 15 ps + ln 2 R C ------------------------------
 
 COEFFICIENT = "hand-stress-gated.actuator_coefficient"
