@@ -108,7 +108,7 @@ _STEPS = (-STEP, STEP)
 def _has(study: Study, pair: NodePair, strongest: str, key: str, value: Value) -> bool:
     """Tell whether an input can have an elasticity here."""
     si = float(value.si[0])
-    quantity = QUANTITIES[key.rpartition(".")[2]]
+    quantity = QUANTITIES[value.name]  # a layer of a circuit file calls it otherwise
     if si == 0.0 or quantity.domain == "count" or not quantity.allows(si * (1.0 + STEP)):
         return False
     sides = [side for side in study.contenders if side.id == strongest]
