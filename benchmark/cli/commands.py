@@ -19,13 +19,22 @@ class _Steps:
 
     def __init__(self, quiet: bool) -> None:
         self.active = not quiet and sys.stderr.isatty()
+        self.started = time.perf_counter()
 
     def __call__(self, step: str, share: float) -> None:
         if self.active:
-            sys.stderr.write(f"\r\x1b[K{share:4.0%}  {step}")
+            sys.stderr.write(f"\r\x1b[K{share:4.0%}  {step}{time_left(time.perf_counter() - self.started, share)}")
             if share >= 1.0:
                 sys.stderr.write("\r\x1b[K")
             sys.stderr.flush()
+
+
+def time_left(elapsed: float, share: float) -> str:
+    """Say how long is left if the rest goes as fast; nothing before a tenth is done or while it would be seconds."""
+    if not 0.1 <= share < 1.0:
+        return ""
+    left = elapsed * (1.0 - share) / share
+    return "" if left < 5.0 else f", about {left:.0f} s left" if left < 90.0 else f", about {left / 60.0:.0f} min left"
 
 
 def run_command(

@@ -212,6 +212,9 @@ def study_template(stem: str) -> str:
         ),
         "# M: advantage = reference / candidate; what a new process step must bring to be worth it\n"
         "[verdict]\nrequired_advantage = 2.0",
+        "# Draws of all stated ranges together: 0 for none, else a power of two from 16. From which probability of\n"
+        "# reaching M on it is called likely, and up to which unlikely\n"
+        "[uncertainty]\ndraws = 256\nlikely = 0.9\nunlikely = 0.1",
         "# Points of the supply grid, then refined to this relative step\n"
         "[search]\nsupply_points = 61\nrefine_relative = 1.0e-6",
     ]

@@ -19,9 +19,10 @@ out groups of independently scrambled blocks (jackknife).
 
 from __future__ import annotations
 
+import contextlib
 import dataclasses
 import functools
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -135,11 +136,29 @@ def draw_blocks(task: DrawTask, jobs: int = 1) -> Iterable[BlockSum]:
 
     # a fresh interpreter: threads of the numeric libraries do not survive a fork
     with ProcessPoolExecutor(min(jobs, task.plan.blocks), mp_context=get_context("spawn")) as pool:
+        with _interrupts_left_to_us():
+            results = pool.map(work, numbers)
         try:
-            yield from pool.map(work, numbers)
+            yield from results
         except BaseException:
             pool.shutdown(cancel_futures=True)
             raise
+
+
+@contextlib.contextmanager
+def _interrupts_left_to_us() -> Iterator[None]:
+    """Processes started here ignore interrupts from the keyboard; the one that hands out the work answers them."""
+    import signal
+    import threading
+
+    if threading.current_thread() is not threading.main_thread():
+        yield
+        return
+    before = signal.signal(signal.SIGINT, signal.SIG_IGN)
+    try:
+        yield
+    finally:
+        signal.signal(signal.SIGINT, before)
 
 
 def summarise(task: DrawTask, blocks: Sequence[BlockSum]) -> Uncertainty:
@@ -246,7 +265,14 @@ def _noise(key: str, degree: int, total: BlockSum, without: Sequence[BlockSum]) 
     return float(np.sum((n - 1) / n * np.sum((parts - parts.mean(axis=0)) ** 2, axis=0)) / variance)
 
 
+def _settled(block: BlockSum, required: float) -> bool:
+    """Tell whether no draw is on the other side of the required advantage: then nothing is worth knowing."""
+    return bool(block.smallest >= np.exp(required) or block.largest <= np.exp(required))
+
+
 def _worth(block: BlockSum, key: str, basis: Array, required: float) -> float:
+    if _settled(block, required):
+        return 0.0
     mean = _mean(block) - required
     # the points stand for the whole distribution: without this their own small mean would count as information
     conditional = mean + _coefficients(block, key, basis.shape[0]) @ (basis - basis.mean(axis=1, keepdims=True))
@@ -254,6 +280,8 @@ def _worth(block: BlockSum, key: str, basis: Array, required: float) -> float:
 
 
 def _worth_of_all(block: BlockSum, required: float) -> float:
+    if _settled(block, required):  # the bins below would leave up to half of their width
+        return 0.0
     reach = block.histogram.size // 2
     log = (np.arange(block.histogram.size) - reach) * BIN - required
     mean = _mean(block) - required

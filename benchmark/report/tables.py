@@ -23,6 +23,8 @@ from benchmark.report.rows import (
     word,
 )
 from benchmark.report.steps import step_rows
+from benchmark.report.strength_rows import ladder_rows, robustness_rows
+from benchmark.report.uncertainty_rows import band_rows, distribution_rows, elasticity_rows, share_rows
 
 if TYPE_CHECKING:
     import pandas
@@ -268,6 +270,12 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
     "advantage_against_time": advantage_rows,
     "crossings": _crossings,
     "policies": policy_rows,
+    "ladder": ladder_rows,
+    "robustness": robustness_rows,
+    "elasticities": elasticity_rows,
+    "uncertainty": distribution_rows,
+    "uncertainty_inputs": share_rows,
+    "uncertainty_bands": band_rows,
     "parts": part_rows,
     "device_limits": _limits,
     "requirements": _requirements,
