@@ -7,7 +7,9 @@ columns carry inputs, expected value, tolerance, status (seen / from memory ...)
 from __future__ import annotations
 
 import csv
+import importlib
 import math
+import pkgutil
 import re
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
@@ -22,12 +24,30 @@ class Binding:
     """``row``: row_id; ``exercises``: 'package.module:function' names; ``obtain``: returns one or more numbers.
 
     ``picks`` selects which of the numbers printed in ``expected`` are compared (default: the first len(obtained)).
+    ``sampling``: what a finite number of draws adds to the tolerance of the row, in its unit. ``relative``: the row's
+    plain number is a relative tolerance (numbers far below it).
     """
 
     row: str
     exercises: tuple[str, ...]
     obtain: Callable[[], float | Sequence[float]]
     picks: tuple[int, ...] | None = None
+    sampling: float = 0.0
+    relative: bool = False
+
+
+@dataclass(frozen=True)
+class Compared:
+    """One number of a row: as printed, as obtained, and the largest difference allowed."""
+
+    expected: float
+    obtained: float
+    allowed: float
+
+    @property
+    def holds(self) -> bool:
+        """Whether the difference is allowed (nan is not)."""
+        return abs(self.obtained - self.expected) <= self.allowed
 
 
 def load() -> dict[str, dict[str, str]]:
@@ -49,7 +69,10 @@ def expected_numbers(row: dict[str, str]) -> list[tuple[float, float]]:
 
 
 def allowed_error(row: dict[str, str], expected: float, half_digit: float) -> float:
-    """Return the stated tolerance (percent is relative, a plain number absolute), at least half a printed digit."""
+    """Return the stated tolerance (percent is relative, a plain number absolute), at least half a printed digit.
+
+    A printed zero is exact where a tolerance is stated.
+    """
     text = row["tolerance"].split("(")[0].replace(" ", "")
     if text.endswith("%"):
         stated = float(text[:-1]) / 100.0 * abs(expected)
@@ -57,7 +80,7 @@ def allowed_error(row: dict[str, str], expected: float, half_digit: float) -> fl
         stated = float(text[:-4]) / 100.0
     else:
         stated = float(text.removesuffix("abs"))
-    return max(stated, half_digit)
+    return stated if stated > 0.0 and expected == 0.0 else max(stated, half_digit)
 
 
 def matching_digits(expected: float, obtained: float) -> float:
@@ -67,8 +90,8 @@ def matching_digits(expected: float, obtained: float) -> float:
     return -math.log10(abs(obtained - expected) / max(abs(expected), 1e-300))
 
 
-def failures(binding: Binding, row: dict[str, str]) -> list[str]:
-    """Compare; an empty list means the row holds."""
+def compared(binding: Binding, row: dict[str, str]) -> list[Compared]:
+    """Return every number of a row that is compared; raise ValueError when there are not as many as printed."""
     raw = binding.obtain()
     obtained = (
         [float(raw)] if isinstance(raw, (int, float)) or getattr(raw, "ndim", 1) == 0 else [float(x) for x in raw]
@@ -76,12 +99,36 @@ def failures(binding: Binding, row: dict[str, str]) -> list[str]:
     printed = expected_numbers(row)
     picked = [printed[i] for i in binding.picks] if binding.picks else printed[: len(obtained)]
     if len(picked) != len(obtained):
-        return [f"{binding.row}: {len(obtained)} numbers obtained, {len(picked)} printed"]
-    problems = []
+        message = f"{binding.row}: {len(obtained)} numbers obtained, {len(picked)} printed"
+        raise ValueError(message)
+    found = []
     for (expected, half_digit), value in zip(picked, obtained, strict=True):
-        if not abs(value - expected) <= allowed_error(row, expected, half_digit):
-            problems.append(
-                f"{binding.row}: expected {expected!r} (tolerance {row['tolerance']}), obtained {value!r}, "
-                f"{matching_digits(expected, value):.1f} digits match; source: {row['source']}"
-            )
-    return problems
+        if binding.relative:
+            allowed = max(float(row["tolerance"]) * abs(expected), half_digit)
+        else:
+            allowed = allowed_error(row, expected, half_digit)
+        found.append(Compared(expected, value, allowed + binding.sampling))
+    return found
+
+
+def failures(binding: Binding, row: dict[str, str]) -> list[str]:
+    """Compare; an empty list means the row holds."""
+    try:
+        numbers = compared(binding, row)
+    except ValueError as error:
+        return [str(error)]
+    return [
+        f"{binding.row}: expected {one.expected!r} (tolerance {row['tolerance']}), obtained {one.obtained!r}, "
+        f"{matching_digits(one.expected, one.obtained):.1f} digits match; source: {row['source']}"
+        for one in numbers
+        if not one.holds
+    ]
+
+
+def all_bindings() -> list[Binding]:
+    """Return the bindings of every ``bind_*`` module beside this one."""
+    found: list[Binding] = []
+    for info in pkgutil.iter_modules([str(Path(__file__).parent)]):
+        if info.name.startswith("bind_"):
+            found += importlib.import_module(f"tests.published.{info.name}").BINDINGS
+    return found
