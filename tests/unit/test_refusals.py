@@ -43,6 +43,8 @@ ELSEWHERE = {
     "does not say its function, so no other circuit can stand for it": "test_study.py",
     "has another function than the common circuit": "test_study.py",
     "states wire layers of its own; only the common circuit may": "test_study.py",
+    "is not a set of the candidate's model": "test_outlook.py",
+    "belongs to the candidate alone": "test_outlook.py",
 }
 
 

