@@ -40,6 +40,7 @@ PURE = {
         "value",
         "flips_below",
         "flips_above",
+        "copies",
         "advantage_at_low",
         "advantage_at_high",
         "demanded",
@@ -157,3 +158,16 @@ def test_frames_are_the_tables():
     assert list(found["crossings"].columns) in ([], ["advantage", "time_s"])
     curves = found["curves"]
     assert curves.loc[curves["state"] == "feasible", "energy_J"].astype(float).min() > 0.0
+
+
+def test_rungs_and_cells_as_rows():
+    record = mixed()
+    found = tables(record)
+    ladder, cells = found["ladder"], found["robustness"]
+    assert [row["ladder_of"] for row in ladder] == ["reference"] * 7 + ["candidate"] * 7
+    assert [row["advantage"] for row in ladder if row["rung"] == "back bias"] == [record["verdict"]["advantage"]] * 2
+    assert {row["turn"] for row in ladder} <= {"", "lost", "reached"}
+    assert [row["advantage"] for row in cells if row["declared"]] == [record["verdict"]["advantage"]]
+    assert len(cells) == len(record["robustness"]["cells"])
+    assert {row["temperature_K"] for row in cells} == {"all", *record["study"]["temperatures"]}
+    assert all(bool(row["reason"]) == (row["advantage"] == "infeasible") for row in cells)
