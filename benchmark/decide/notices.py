@@ -6,6 +6,7 @@ import math
 
 import numpy as np
 
+from benchmark.circuits.operation import estimate
 from benchmark.decide.compare import Comparison, Outcome, SideOutcome
 from benchmark.decide.policies import PRESCRIBED
 from benchmark.decide.requirements import STANDING, functional_condition, margins_at, standing
@@ -16,6 +17,8 @@ __all__ = ["result_warnings"]
 
 #: half swing over sqrt(kT/C) at which C V^2 equals k T ln 2: C V^2 = 4 x^2 k T (Landauer's least heat of erasing a bit)
 ERASURE_RATIO = 0.5 * math.sqrt(math.log(2.0))
+#: relative difference that is rounding
+ROUNDING = 1.0e-9
 
 
 def result_warnings(comparison: Comparison, outcome: Outcome, verdict: Verdict) -> list[str]:
@@ -52,7 +55,39 @@ def _of_side(side: SideOutcome, run: SideRun) -> list[str]:
         found.append(f"{side.id}: the optimum lies on the {end} end of its supply range")
     if best.points.noise_ratio[0, 0] < ERASURE_RATIO:
         found.append(f"{side.id}: C V^2 of a net is below k T ln 2, the least heat of erasing a bit")
+    if _ahead_of_sound(side, run):
+        found.append(
+            f"{side.id}: a stage is faster than sound crosses the moving body of its switch; the two-pole of the delay "
+            "rule answers before the wave arrives"
+        )
     return found
+
+
+def _ahead_of_sound(side: SideOutcome, run: SideRun) -> bool:
+    """Tell whether an edge on the path is faster than the switch that makes it can be: h / v of its moving body.
+
+    Closed-form rules add the time of flight; rules that follow the actuator as a two-pole do not know it.
+    """
+    problem, best = run.problem, side.optimum.points
+    supply, shift = best.supply[:1], problem.device_shift(best.threshold_shift, best.back_bias[:1])
+    pair = problem.switches(supply, shift, depth=problem.circuit_depth)
+    if not any(np.isfinite(switch.natural_frequency).any() for switch in (pair.down, pair.up)):
+        return False
+    metrics = estimate(
+        problem.circuit_at(supply, best.size, shift),
+        pair,
+        problem.wires,
+        problem.study.delay_rule,
+        size=best.size,
+        size_as=problem.size_as,
+        short_circuit=False,
+    )
+    return any(
+        bool(np.any(edge.delay < switch.closing_time * (1.0 - ROUNDING)))
+        for stage in metrics.stages
+        if np.any(np.asarray(stage.net.on_critical_path) > 0.0)
+        for edge, switch in ((stage.falling, pair.down), (stage.rising, pair.up))
+    )
 
 
 def _kept(side: SideOutcome, run: SideRun) -> list[str]:
