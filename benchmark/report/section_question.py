@@ -186,6 +186,8 @@ def _sides(record: Record) -> Table:
             f"{volts(side['supply'][0])} to {volts(side['supply'][1])}",
             listed(number(size, 3) for size in side["sizes"]),
             listed(volts(shift, 3) for shift in side["threshold_shifts"]),
+            *((listed(number(count, 3) for count in side["copies"]),) if "copies" in side else ()),
+            *((listed(volts(bias, 3) for bias in side["back_biases"]),) if "back_biases" in side else ()),
         )
         for side in record["sides"]
     ]
@@ -200,6 +202,11 @@ def _sides(record: Record) -> Table:
         "supply searched",
         "sizes",
         "threshold shifts",
+    )
+    columns += tuple(
+        title
+        for key, title in (("copies", "parallel copies"), ("back_biases", "back biases"))
+        if any(key in side for side in record["sides"])
     )
     return plain("sides", "The sides and what each may choose", columns, rows, wide=True)
 
@@ -219,7 +226,10 @@ _WHERE = {
 
 def findings(record: Record) -> Section:
     """Return the findings in plain words, each with the section that holds its numbers."""
-    rows = [(row["text"], Cell(_WHERE[row["at"]], f"#{row['at']}")) for row in record.get("findings", ())]
+    rows = [
+        (row["text"], Cell(_WHERE[row["at"]], f"#{row['at']}") if row["at"] in _WHERE else Cell(row["at"]))
+        for row in record.get("findings", ())
+    ]
     caption = "Made from the numbers of this record alone"
     table = plain("findings-table", caption, ("finding", "where"), rows, empty="This record states no findings.")
     return Section("findings", "Findings", (table,))

@@ -27,6 +27,7 @@ from tests.report_records import HOSTILE, changed, crossing, hostile, hub, infea
 SECTIONS = [
     *(
         "answer",
+        "findings",
         "question",
         "requirements",
         "curves",
