@@ -40,7 +40,7 @@ INLINE = {
     "interpolate",
 }
 #: keys whose list of dictionaries is written as an array of tables
-ARRAYS = {"contender", "joint", "net", "row"}
+ARRAYS = {"contender", "joint", "measurement", "net", "row"}
 
 
 def _scalar(value: Any) -> str:

@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+import dataclasses
+from collections.abc import Collection, Mapping
 from typing import Any
 
 import numpy as np
@@ -10,6 +11,7 @@ import numpy as np
 from benchmark.catalogue import QUANTITIES
 from benchmark.decide.compare import Comparison
 from benchmark.decide.draw_block import DrawTask, resolution
+from benchmark.decide.moves import range_of
 from benchmark.decide.next_measurement import NEGLIGIBLE, next_measurements, nothing_to_measure
 from benchmark.decide.uncertainty import Estimate, Told, Uncertainty, uncertainty
 from benchmark.decide.variance_shares import variance_shares
@@ -30,7 +32,12 @@ TOTAL_DRAWS = 128
 
 
 def draw_rows(
-    study: Study, frozen: Mapping[str, Choice], settings: DrawSettings, jobs: int, told: Told
+    study: Study,
+    frozen: Mapping[str, Choice],
+    settings: DrawSettings,
+    jobs: int,
+    told: Told,
+    bounds: Collection[str] = (),
 ) -> dict[str, Any] | None:
     """Draw the headline pair under the primary policy; None when no draws are asked for or nothing has a range.
 
@@ -44,6 +51,8 @@ def draw_rows(
         Processes; they change no digit.
     told : callable
         Told the share done.
+    bounds : collection of str
+        Keys of values stated as bounds on which the result rests: the probability is given at both of their ends.
     """
     pair = study.pair(study.headline)
     values = values_by_key(study, pair)
@@ -51,6 +60,8 @@ def draw_rows(
         return None
     task = DrawTask(study, pair, study.policy.primary, frozen, plan_of(settings.number, settings.seed))
     found = uncertainty(task, jobs, told)
+    ends = {key: end for key in sorted(bounds) if (end := _open_end(values[key])) is not None}
+    opened = uncertainty(dataclasses.replace(task, put=ends), jobs) if ends else None
     return {
         "draws": found.draws,
         "blocks": found.blocks,
@@ -62,6 +73,8 @@ def draw_rows(
         "judgement": sum(values[share.key].evidence in ("assumed", "invented") for share in found.shares),
         "reaches": vars(found.reaches),
         "above_one": vars(found.above_one),
+        "bounds": [{"key": key, "stated": float(values[key].si[0]), "open_end": end} for key, end in ends.items()],
+        "reaches_at_open_ends": None if opened is None else vars(opened.reaches),
         "without_candidate": found.without_candidate,
         "without_contender": found.without_contender,
         "unbounded": found.unbounded,
@@ -73,11 +86,19 @@ def draw_rows(
         "worth_of_all": vars(found.worth_of_all),
         "negligible": NEGLIGIBLE,
         "stop": nothing_to_measure(found),
-        "shares": _share_rows(found, values, study.required_advantage),
+        "shares": _share_rows(study, found, values),
         "totals": _totals(task, found),
         "strongest": dict(found.strongest),
         "bands": _band_rows(study, frozen, found),
     }
+
+
+def _open_end(value: Value) -> float | None:
+    """The far end of a value stated as a bound [SI]; None when it is none."""
+    span = range_of(value)
+    if not value.bound or value.spread is not None or span is None:
+        return None
+    return span[0] if value.bound == "at-most" else span[1]
 
 
 def _word(found: Uncertainty, settings: DrawSettings) -> str:
@@ -96,11 +117,12 @@ def _two_errors(estimate: Estimate) -> tuple[float, float]:
     return estimate.value - 2.0 * estimate.error, estimate.value + 2.0 * estimate.error
 
 
-def _share_rows(found: Uncertainty, values: Mapping[str, Value], required: float) -> list[dict[str, Any]]:
-    measured = {item.key: item for item in next_measurements(found, required)}
+def _share_rows(study: Study, found: Uncertainty, values: Mapping[str, Value]) -> list[dict[str, Any]]:
+    listed = next_measurements(found, study.required_advantage, study.measurements, values)
+    measured = {item.key: (place, item) for place, item in enumerate(listed, start=1)}
     rows = []
     for share in found.shares:
-        item, value = measured[share.key], values[share.key]
+        (place, item), value = measured[share.key], values[share.key]
         rows.append(
             {
                 "key": share.key,
@@ -114,6 +136,10 @@ def _share_rows(found: Uncertainty, values: Mapping[str, Value], required: float
                 "worth_error": item.error,
                 "worth_halved": item.worth_halved,
                 "enough": item.enough,
+                "cost": item.cost,
+                "worth_reachable": item.worth_reachable,
+                "worth_per_cost": item.worth_per_cost,
+                "place": place,
             }
         )
     return rows

@@ -135,7 +135,7 @@ def _knowing(record: Record) -> list[tuple[str, str]]:
         return []
     if found["stop"]:
         return [("No measurement of these inputs can change the answer within their ranges.", "next-measurement")]
-    best = max(found["shares"], key=lambda row: row["worth"], default=None)
-    if best is None or best["worth"] <= 2.0 * best["worth_error"]:
+    best = min(found["shares"], key=lambda row: row["place"], default=None)
+    if best is None or (best["cost"] is None and best["worth"] <= 2.0 * best["worth_error"]):
         return []
     return [(f"Most worth measuring: {best['key']}.", "next-measurement")]

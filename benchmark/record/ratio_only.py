@@ -125,7 +125,8 @@ class _Maker:
         if found is None:
             return None
         shares = [{**row, "unit": OF_BEST} for row in found["shares"]]
-        return {name: value for name, value in found.items() if name != "bands"} | {"shares": shares, "bands": []}
+        bounds = [{"key": row["key"]} for row in found["bounds"]]
+        return dict(found) | {"shares": shares, "bounds": bounds, "bands": []}
 
     def curves(self) -> list[Row]:
         return [

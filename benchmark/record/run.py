@@ -25,6 +25,7 @@ from benchmark.decide.requirements import functional_margins
 from benchmark.decide.self_checks import self_checks
 from benchmark.decide.steps import node_steps
 from benchmark.decide.verdict import Verdict, judge
+from benchmark.errors import InputRefused, Problem
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
@@ -69,10 +70,26 @@ class _Primary:
     relaxed: Outcome | None  # with the hard requirements set aside, when the candidate has no permitted point
 
 
+def _refuse_free_operations(study: Study, outcome: Outcome) -> None:
+    """Refuse a study in which an operation costs a side no energy at all: nothing is charged, and no ratio has a sense.
+
+    Raises
+    ------
+    InputRefused
+        Naming every such side.
+    """
+    free = [side.id for side in (outcome.candidate, *outcome.contenders) if side.found[0] and side.energy[0] == 0.0]
+    if free:
+        what, hint = "one operation costs no energy, so nothing can be compared", "state what the circuit charges"
+        found, allowed = ", ".join(free), "a load: driven inputs, wires, terminal capacitances"
+        raise InputRefused([Problem(study.file, 0, "value", what, found, allowed, hint)])
+
+
 def _primary(study: Study) -> _Primary:
     pair = study.pair(study.headline)
     comparison = Comparison(study, pair, Batch.best_estimate())
     outcome = comparison.outcome(study.policy.primary)
+    _refuse_free_operations(study, outcome)
     strongest = outcome.strongest_side
     ratio = None
     if strongest is not None and outcome.candidate.found[0]:
@@ -201,6 +218,7 @@ def run_study(
         draws or study.draws,
         jobs,
         lambda share: progress("drawing all ranges together", 0.82 + 0.13 * share),
+        effective,
     )
     progress("writing the record", 0.95)
     sources = library.sources
@@ -311,7 +329,7 @@ def _side_rows(study: Study) -> list[dict[str, Any]]:
                 "supply": list(side.supply),
                 "sizes": list(side.sizes),
                 "threshold_shifts": list(side.threshold_shifts),
-                **side_choices(side),
+                **side_choices(study, side),
                 "sha256": item.sha256,
             }
         )

@@ -135,6 +135,10 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
     ]
     if found["without_candidate"] > 0.0:
         lines.append(f"  In {found['without_candidate']:.2g} of the draws the candidate has no permitted point.")
+    if found["reaches_at_open_ends"] is not None:
+        keys = ", ".join(row["key"] for row in found["bounds"])
+        at_ends = probability(found["reaches_at_open_ends"])
+        lines.append(f"  Stated as bounds: {keys}; at their open ends the probability is {at_ends}.")
     if found["constant"]:
         return [*lines, "  No drawn input moves the advantage."]
     named = [row for row in found["shares"][:3] if row["share"] > 2.0 * row["share_error"]]
@@ -143,8 +147,11 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
         lines.append(f"  Largest shares of the variance of its logarithm: {shares}")
     if found["stop"]:
         return [*lines, "  No measurement of these inputs can change the answer within their ranges: stop."]
-    first = max(found["shares"], key=lambda row: row["worth"])
-    if first["worth"] > 2.0 * first["worth_error"]:
+    first = min(found["shares"], key=lambda row: row["place"])
+    if first["cost"] is not None:
+        per = f"{first['worth_per_cost']:.2g} in ln(advantage) per unit of cost"
+        lines.append(f"  Most worth measuring for its cost: {first['key']} ({per})")
+    elif first["worth"] > 2.0 * first["worth_error"]:
         lines.append(f"  Most worth measuring: {first['key']} (worth {first['worth']:.2g} in ln(advantage))")
     return lines
 

@@ -29,6 +29,10 @@ def uncertainty(record: Record, figure: Figure) -> Section:
         "verdict moves one input at a time; here all move together. Both stand."
     )
     blocks: list[Block] = [Paragraph(words[0]), Paragraph(text), figure, _quantiles(found)]
+    if found["reaches_at_open_ends"] is not None:
+        keys = ", ".join(row["key"] for row in found["bounds"])
+        at_ends = f"{keys}; at their open ends the probability is {probability(found['reaches_at_open_ends'])}."
+        blocks.insert(1, Paragraph(at_ends, "Stated as bounds:"))
     blocks.append(_shares(record, found))
     return Section("uncertainty", title, tuple(blocks))
 
@@ -80,6 +84,16 @@ def _value(record: Record, key: str) -> Cell:
     return Cell(key, f"#value-{place}" if place else "")
 
 
+def _offer(row: Record) -> str:
+    """What the measurement the study names is worth, for its cost."""
+    if not is_number(row["cost"]):
+        return "not stated"
+    return (
+        f"worth {number(row['worth_reachable'], 2)} for {number(row['cost'], 3)}: "
+        f"{number(row['worth_per_cost'], 2)} per unit of cost"
+    )
+
+
 def next_measurement(record: Record) -> Section:
     """Return what each possible measurement is worth, how good it must be, and when to stop."""
     title = "What to measure next"
@@ -103,13 +117,17 @@ def next_measurement(record: Record) -> Section:
             f"{number(row['worth'], 2)} ± {number(row['worth_error'], 1)}",
             number(row["worth_halved"], 2),
             number(row["enough"], 2) if is_number(row["enough"]) else "does not matter as it is",
+            _offer(row),
         )
-        for row in sorted(found["shares"], key=lambda row: -row["worth"])
-        if row["worth"] > 2.0 * row["worth_error"]
+        for row in sorted(found["shares"], key=lambda row: row["place"])
+        if row["worth"] > 2.0 * row["worth_error"] or is_number(row["cost"])
     ]
     if not rows:
         none = "No single input is worth measuring by itself within the sampling error."
         return Section("next-measurement", title, (Bullets((none, whole)), Paragraph(text)))
-    columns = ("input", "evidence", "worth known perfectly", "worth known twice as well", "enough")
+    columns = (
+        *("input", "evidence", "worth known perfectly", "worth known twice as well", "enough"),
+        "as the study says it could be measured",
+    )
     table = plain("next-measurements", "Inputs worth measuring, the most worthwhile first", columns, rows)
     return Section("next-measurement", title, (Paragraph(whole), table, Paragraph(text)))

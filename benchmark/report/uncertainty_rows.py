@@ -37,6 +37,9 @@ def share_rows(record: Record) -> list[Row]:
             "worth_error_ln": row["worth_error"],
             "worth_known_twice_as_well_ln": row["worth_halved"],
             "enough_standard_deviations": word(row["enough"], "does not matter as it is"),
+            "cost": word(row["cost"], "not stated"),
+            "worth_reachable_ln": word(row["worth_reachable"], "not stated"),
+            "worth_per_cost": word(row["worth_per_cost"], "not stated"),
         }
         for row in found["shares"]
     ]

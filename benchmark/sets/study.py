@@ -19,6 +19,7 @@ __all__ = [
     "DrawSettings",
     "NodePair",
     "Policy",
+    "PossibleMeasurement",
     "Requirement",
     "Side",
     "Study",
@@ -156,6 +157,15 @@ class DrawSettings:
 
 
 @dataclass(frozen=True)
+class PossibleMeasurement:
+    """A measurement that could be made of one value: its cost, and the relative standard error it can reach [1]."""
+
+    key: str
+    cost: float
+    reachable: float
+
+
+@dataclass(frozen=True)
 class Study:
     """A checked study in SI."""
 
@@ -197,6 +207,7 @@ class Study:
     topology: str = "same-netlist"
     draws: DrawSettings = field(default_factory=DrawSettings)
     joints: tuple[Joint, ...] = ()
+    measurements: tuple[PossibleMeasurement, ...] = ()
     #: supplies per zoom of the search
     zoom_points: int = 33
 

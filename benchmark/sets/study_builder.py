@@ -15,8 +15,9 @@ from benchmark.sets.library import Library
 from benchmark.sets.parameters import ParameterSet, check_formulas
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import Measure, validate_values
-from benchmark.sets.study import DrawSettings, NodePair, Side, Study, draws_allowed
+from benchmark.sets.study import NodePair, Side, Study
 from benchmark.sets.study_circuits import CircuitDeclaration, study_circuits
+from benchmark.sets.study_draws import read_draws, read_measurements
 from benchmark.sets.study_policy import check_declared_supplies, read_policy, read_requirements
 from benchmark.sets.study_schema import BackBiasKnob, FrozenKnob, KnobsTable, SideTable, StudyFile
 from benchmark.sets.study_schema import NodePair as NodePairTable
@@ -423,7 +424,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     leakage_band = build.number("conditions.guard_band.leakage", parsed.conditions.guard_band.leakage, 1.0, 1e6)
     points = int(build.number("search.supply_points", parsed.search.supply_points, 3, 5001))
     refine = build.number("search.refine_relative", parsed.search.refine_relative, 1e-12, 1.0)
-    draws = _draws(build)
+    draws = read_draws(build)
     joints, values = read_joints(parsed.joint, values, file, library.collector)
     _check_transient(build, points)
     _check_temperatures(build, temperatures, [*contenders, *_every_set(candidate)])
@@ -431,6 +432,7 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
     if candidate is not None and contenders:
         check_declared_supplies(build, policy, candidate, contenders)
     _check_invented(build, values, candidate, contenders, [pair.wires for pair in pairs], spec)
+    measurements = read_measurements(build, values, [*contenders, *([candidate] if candidate else [])], pairs)
     if len(library.collector.problems) > before or candidate is None or wires is None or not contenders:
         return None
     return Study(
@@ -471,18 +473,8 @@ def build_study(file: TomlFile, library: Library, circuits: Mapping[str, Circuit
         topology=parsed.workload.topology,
         draws=draws,
         joints=joints,
+        measurements=measurements,
     )
-
-
-def _draws(build: _Builder) -> DrawSettings:
-    table = build.parsed.uncertainty
-    if table.draws != 0 and (allowed := draws_allowed(table.draws)):
-        build.refuse("uncertainty.draws", "is no number of draws", str(table.draws), f"0 for none, or {allowed}")
-    if table.seed < 0:
-        build.refuse("uncertainty.seed", "is negative", str(table.seed), "0 or above")
-    likely = build.number("uncertainty.likely", table.likely, 0.5, 1.0)
-    unlikely = build.number("uncertainty.unlikely", table.unlikely, 0.0, 0.5)
-    return DrawSettings(table.draws, table.seed, likely, unlikely)
 
 
 def _check_transient(build: _Builder, points: int) -> None:

@@ -249,6 +249,14 @@ class UncertaintyTable(FileModel):
     )
 
 
+class MeasurementTable(FileModel):
+    """A measurement that could be made: what it costs and how well it can be done."""
+
+    value: Text = Field(description="Key of the value it would measure, such as demo-switch.actuator_coefficient")
+    cost: Number = Field(description="What it costs, in any unit that is the same for all measurements")
+    reachable_percent: Number = Field(description="Standard error it can reach, in per cent of the value")
+
+
 class SearchTable(FileModel):
     """Resolution of the supply search."""
 
@@ -282,6 +290,9 @@ class StudyFile(FileModel):
     verdict: VerdictTable = Field(description="M: the required advantage")
     uncertainty: UncertaintyTable = Field(
         default=UncertaintyTable(), description="Draws of all stated ranges together, fixed before the run"
+    )
+    measurement: list[MeasurementTable] = Field(
+        default=[], max_length=200, description="Measurements that could be made, with cost and reachable precision"
     )
     search: SearchTable = Field(description="Resolution of the supply search")
 

@@ -6,6 +6,7 @@ ln(advantage) is normal, see ``tests/fixed_displacement.py``; Phi is the normal 
 from __future__ import annotations
 
 import math
+from decimal import Decimal as D
 from pathlib import Path
 
 import pytest
@@ -13,6 +14,7 @@ from scipy.special import ndtr
 
 from benchmark.record.load import load_study
 from benchmark.record.run import run_study
+from benchmark.record.text import verdict_text
 from benchmark.sets.study import DrawSettings
 from tests.fixed_displacement import fixed_displacement
 from tests.near import near
@@ -21,7 +23,7 @@ DRAWS = 2**14
 BEFORE = {"coefficient": ("200.0", "0.20"), "capacitance": ("0.20", "0.20")}
 AFTER = {"coefficient": ("170.0", "0.05"), "capacitance": ("0.20", "0.20")}
 BOTH = {"coefficient": ("170.0", "0.05"), "capacitance": ("0.18", "0.02")}
-D, C, REFERENCE = (
+COEFFICIENT, CAPACITANCE, REFERENCE = (
     "film-switch.actuator_coefficient",
     "film-switch.input_capacitance",
     "stated-reference.input_capacitance",
@@ -41,16 +43,16 @@ def run(folder: Path, case: dict[str, tuple[str, str]], draws: int = DRAWS, seed
             2.000,
             0.4583,
             0.7349,
-            {D: 0.762, C: 0.190, REFERENCE: 0.048},
-            {D: 0.0553, C: 0.0067, REFERENCE: 6e-5},
+            {COEFFICIENT: 0.762, CAPACITANCE: 0.190, REFERENCE: 0.048},
+            {COEFFICIENT: 0.0553, CAPACITANCE: 0.0067, REFERENCE: 6e-5},
         ),
         (
             AFTER,
             1.4450,
             0.2449,
             0.4394,
-            {D: 0.167, C: 0.667, REFERENCE: 0.167},
-            {C: 0.0625, D: 0.0240, REFERENCE: 0.0240},
+            {COEFFICIENT: 0.167, CAPACITANCE: 0.667, REFERENCE: 0.167},
+            {CAPACITANCE: 0.0625, COEFFICIENT: 0.0240, REFERENCE: 0.0240},
         ),
         (BOTH, 1.6056, 0.1428, 0.6830, {}, {}),
     ],
@@ -82,8 +84,8 @@ def test_all_probabilities_before(tmp_path: Path):
 def test_the_next_measurement_moves_from_the_coefficient_to_the_capacitance(tmp_path: Path):
     before = run(tmp_path / "before", BEFORE, 4096)["uncertainty"]
     after = run(tmp_path / "after", AFTER, 4096)["uncertainty"]
-    assert max(before["shares"], key=lambda row: row["worth"])["key"] == D
-    assert max(after["shares"], key=lambda row: row["worth"])["key"] == C
+    assert max(before["shares"], key=lambda row: row["worth"])["key"] == COEFFICIENT
+    assert max(after["shares"], key=lambda row: row["worth"])["key"] == CAPACITANCE
     assert not before["stop"]
 
 
@@ -105,3 +107,18 @@ def test_another_seed_agrees_within_the_errors_and_the_same_seed_to_the_last_dig
     assert other["reaches"] != first["reaches"]
     spread = math.hypot(first["reaches"]["error"], other["reaches"]["error"])
     assert abs(other["reaches"]["value"] - first["reaches"]["value"]) <= 5.0 * spread
+
+
+def test_a_value_stated_as_a_bound_gives_the_probability_at_both_ends(tmp_path: Path):
+    """A terminal capacitance of at most 0.05 fF per switch: at its open end it is next to nothing, as in S8."""
+    inputs = fixed_displacement()
+    terminal = inputs.sets["technologies/film-switch"]["value"]["terminal_capacitance"]
+    terminal |= {"value": D("0.05"), "bound": "at-most"}
+    study, library = load_study(inputs.write(tmp_path))
+    record = run_study(study, library, created="x", draws=DrawSettings(1024))
+    found = record["uncertainty"]
+    assert [row["key"] for row in found["bounds"]] == ["film-switch.terminal_capacitance"]
+    at_open = found["reaches_at_open_ends"]
+    assert abs(at_open["value"] - 0.7349) <= 4.0 * at_open["error"] + 5e-3
+    assert found["reaches"]["value"] < at_open["value"] - 0.1
+    assert "at their open ends the probability is" in verdict_text(record)

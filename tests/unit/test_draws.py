@@ -12,10 +12,17 @@ from scipy import stats
 
 from benchmark.decide.compare import Comparison
 from benchmark.decide.draw_block import DrawTask
-from benchmark.decide.uncertainty import uncertainty
+from benchmark.decide.next_measurement import (
+    imperfect_worth,
+    next_measurements,
+    nothing_to_measure,
+    relative_spread,
+)
+from benchmark.decide.uncertainty import Estimate, InputShare, uncertainty
 from benchmark.draws.plan import Plan, net, plan_of
 from benchmark.draws.values import draw_values, drawn_keys, tied_with, value_at
 from benchmark.evaluate.batch import Batch
+from benchmark.evaluate.side import values_by_key
 from benchmark.record.load import load_study
 from benchmark.sets.joints import Joint
 from benchmark.sets.study import draws_allowed
@@ -362,3 +369,52 @@ def test_joints_of_files(tmp_path: Path):
     paired = uncertainty(task(inputs.write(tmp_path / "b"), 1024))
     assert paired.inputs == 2  # the pair, and the reference's capacitance
     assert paired.sd_log.value == near(0.10, rel=0.02)  # d^2 / C is the same for all three samples within 0.3 %
+
+
+# -- measurements ------------------------------------------------------------------------------------------------------
+
+
+def test_imperfect_information_by_hand():
+    """Normal case: sigma UL(mu/sigma), UL(z) = phi(z) - z (1 - Phi(z)): the prior narrowed by s^2 / (s^2 + s_e^2).
+
+    Raiffa and Schlaifer (1961), from memory; mu = 1, s = 1.6, error 0.8: s_i = 1.6^2 / sqrt(1.6^2 + 0.8^2) = 1.4311.
+    """
+
+    def loss(mu: float, s: float) -> float:
+        z = mu / s
+        return float(s * (stats.norm.pdf(z) - z * stats.norm.sf(z)))
+
+    zero = Estimate(0.0, 0.0)
+    share = InputShare("x", "lognormal", zero, zero, np.array([1.6, 0.0, 0.0]))
+    assert imperfect_worth(1.0, share, 0.0) == near(loss(1.0, 1.6), rel=1e-3)
+    assert loss(1.0, 1.6) == near(0.2591, rel=0, abs=5e-5)  # EVPPI of the handbook example
+    assert imperfect_worth(1.0, share, 0.5) == near(loss(1.0, 1.6**2 / np.hypot(1.6, 0.8)), rel=1e-3)
+    assert loss(1.0, 1.6**2 / np.hypot(1.6, 0.8)) == near(0.2049, rel=0, abs=5e-5)  # EVSI of the handbook example
+    assert imperfect_worth(1.0, share, 1.0e6) == near(0.0, abs=1e-6)
+
+
+def test_measurements_with_a_cost_come_by_worth_for_it(tmp_path: Path):
+    inputs = fixed_displacement()
+    inputs.study["measurement"] = [
+        {"value": "film-switch.actuator_coefficient", "cost": D("30.0"), "reachable_percent": D("5.0")},
+        {"value": "film-switch.input_capacitance", "cost": D("1.0"), "reachable_percent": D("2.0")},
+    ]
+    study, _ = load_study(inputs.write(tmp_path))
+    values = values_by_key(study, study.pair(study.headline))
+    found = uncertainty(task(tmp_path / "study.toml", 4096))
+    listed = next_measurements(found, 1.5, study.measurements, values)
+    assert [item.key.rpartition(".")[2] for item in listed[:2]] == ["input_capacitance", "actuator_coefficient"]
+    # 5 % against ln-sd 0.20 leaves a quarter of a prior standard deviation
+    coefficient = listed[1]
+    share = next(share for share in found.shares if share.key == coefficient.key)
+    assert coefficient.worth_reachable == near(imperfect_worth(np.log(2.0 / 1.5), share, 0.25), rel=1e-6, abs=5e-4)
+    assert coefficient.worth_per_cost == near(coefficient.worth_reachable / 30.0, rel=1e-12)
+    assert relative_spread(values["film-switch.actuator_coefficient"]) == near(0.20, rel=1e-12)
+
+
+def test_where_every_corner_agrees_there_is_nothing_to_measure(tmp_path: Path):
+    found = uncertainty(task(fixed_displacement(required="50.0").write(tmp_path), 1024))
+    assert found.reaches.value == 0.0
+    assert nothing_to_measure(found)
+    open_case = uncertainty(task(fixed_displacement().write(tmp_path / "open"), 1024))
+    assert not nothing_to_measure(open_case)
