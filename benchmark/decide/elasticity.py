@@ -64,6 +64,8 @@ def elasticities(
     strongest = outcome.strongest_side
     if strongest is None or not outcome.candidate.found[0]:
         return []
+    if 0.0 in (strongest.metric[0], outcome.candidate.metric[0]):
+        return []  # a side that costs nothing has no ratio
     values = values_by_key(study, pair)
     listed = [key for key in keys if key in values and _has(study, pair, strongest.id, key, values[key])]
     if not listed:

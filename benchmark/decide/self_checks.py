@@ -54,6 +54,8 @@ def _swap(study: Study, outcome: Outcome) -> dict[str, Any] | None:
         or (isinstance(required, str) and required.startswith("contender:"))
     ):
         return None
+    if 0.0 in (strongest.metric[0], outcome.candidate.metric[0]):
+        return None  # a side that costs nothing has no ratio to turn round
     side = next(side for side in study.contenders if side.id == strongest.id)
     pair = study.pair(study.headline)
     pretend, swapped = _with_sides(study, side, study.candidate, pair.reference[side.id], pair.candidate)
