@@ -233,8 +233,8 @@ def test_fan_out_of_c_is_fan_out_one_of_f_times_c(a: Any, fan_out: int):
 
 @few
 @given(switches("a"), switches("b"), st.integers(2, 40))
-def test_the_same_normalisation_of_both_sides_cancels(a: Any, b: Any, depth: int):
-    """Energy of n stages in place of one: depth multiplies both sides at fixed points."""
+def test_depth_multiplies_charges_and_delays_of_both_sides(a: Any, b: Any, depth: int):
+    """Energy of n stages in place of one, at fixed points."""
     policy = {"primary": "declared-point"}
     one, many = (compare(load(two(a, b, policy=policy, values={"logic_depth": v(n)}))) for n in (1, depth))
     for mine, theirs in ((one.candidate, many.candidate), (one.contenders[0], many.contenders[0])):
