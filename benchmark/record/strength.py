@@ -18,10 +18,14 @@ __all__ = [
 ]
 
 
-def side_choices(side: Side) -> dict[str, list[float]]:
-    """Return the copies and back biases a side may choose from, where there is a choice."""
-    found = {"copies": list(side.copies), "back_biases": list(side.back_biases)}
-    return {name: values for name, values in found.items() if values not in ([1.0], [0.0])}
+def side_choices(study: Study, side: Side) -> dict[str, list[float]]:
+    """Return the copies and back biases a side may choose from, where any side of the study has a choice."""
+    found: dict[str, list[float]] = {}
+    if any(other.copies != (1.0,) for other in study.sides):
+        found["copies"] = list(side.copies)
+    if any(other.back_biases != (0.0,) for other in study.sides):
+        found["back_biases"] = list(side.back_biases)
+    return found
 
 
 def ladder_rows(comparison: Comparison, outcome: Outcome) -> list[dict[str, Any]]:

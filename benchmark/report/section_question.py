@@ -191,7 +191,7 @@ def _sides(record: Record) -> Table:
         )
         for side in record["sides"]
     ]
-    columns = (
+    columns: tuple[str, ...] = (
         "side",
         "role",
         "technology",

@@ -253,10 +253,12 @@ def _joined(value: Any) -> Any:
 def _side_rows(record: Record) -> list[Row]:
     rows = []
     for side in record["sides"]:
-        named = {key: _joined(value) for key, value in side.items() if key not in ("supply", "threshold_shifts")}
+        apart = ("supply", "threshold_shifts", "back_biases")
+        named = {key: _joined(value) for key, value in side.items() if key not in apart}
         low, high = side["supply"]
         shifts = _joined(side["threshold_shifts"])
-        rows.append(named | {"supply_low_V": low, "supply_high_V": high, "threshold_shifts_V": shifts})
+        biases = {"back_biases_V": _joined(side["back_biases"])} if "back_biases" in side else {}
+        rows.append(named | {"supply_low_V": low, "supply_high_V": high, "threshold_shifts_V": shifts} | biases)
     return rows
 
 

@@ -2,14 +2,21 @@
 
 from __future__ import annotations
 
+from decimal import Decimal as D
 from typing import Any
 
 import pytest
 
 from benchmark.record.ratio_only import ratio_only
 from benchmark.report.blocks import Section, Table
+from benchmark.report.section_question import question
 from benchmark.report.section_strength import ladder, robustness
+from benchmark.report.tables import plain_tables
+from tests.comparisons import record as record_of
+from tests.comparisons import side, steep, study
 from tests.report_records import changed, hub, mixed
+from tests.studies import v
+from tests.unit.test_mitigations import DEADLINE, GATE, with_bias, with_copies
 
 
 def tables(section: Section) -> list[Table]:
@@ -69,3 +76,35 @@ def test_a_record_made_before_there_were_such_tables_says_so():
     assert tables(ladder(found)) == []
     assert tables(robustness(found)) == []
     assert any("no table of robustness" in getattr(block, "text", "") for block in robustness(found).blocks)
+
+
+def test_copies_and_back_bias_pass_through_record_page_and_tables():
+    """One side may be copied, the other biased; both pay for what they use."""
+    copied = with_copies("a", 0.3, 0.9, [1, 2], gating=GATE)
+    biased = with_bias(side("b", 0.3, 0.9, gating=GATE), [-0.3, 0.0], 0.1, 0.001)
+    values = {"clock_frequency": v(D("100.0"), "MHz"), "idle_time": v(D("0.002"), "s"), "active_cycles": v(500)}
+    found = record_of(
+        study(
+            copied, [biased], [steep("a"), steep("b")], timing="clocked", accounting="period", idle="gated",
+            values=values, requirements=DEADLINE, points=21, refine=1e-4,
+        )
+    )  # fmt: skip
+    assert {row["name"] for row in found["conventions"]} >= {"parallel copies", "back bias", "power gating", "ladder"}
+    assert {row["key"] for row in found["ledger"]} >= {
+        "candidate.mitigation.routing_overhead", "candidate.mitigation.area_share",
+        "contender b.mitigation.body_factor", "contender b.mitigation.back_bias_power",
+    }  # fmt: skip
+    candidate, contender = found["sides"]
+    assert (candidate["copies"], candidate["back_biases"]) == ([1.0, 2.0], [0.0])
+    assert (contender["copies"], contender["back_biases"]) == ([1.0], [-0.3, 0.0])
+    # curves of one size and threshold shift are drawn once, with copies and bias as chosen
+    assert len(found["curves"]) == 2
+    chosen = found["policies"][0]["contenders"][0]["point"]
+    assert chosen["back_bias"] in (-0.3, 0.0)
+    (sides,) = [block for block in question(found).blocks if isinstance(block, Table) and block.key == "sides"]
+    assert sides.columns[-2:] == ("parallel copies", "back biases")
+    assert sides.rows[0][-2].text == "1 and 2"
+    assert plain_tables(found)["sides"][1]["back_biases_V"] == "-0.3; 0.0"
+    ratios = ratio_only(found)
+    assert ratios["ladder"][0]["rungs"][-1]["advantage"] == found["verdict"]["advantage"]
+    assert "back_biases" not in ratios["sides"][1]
