@@ -307,7 +307,7 @@ def _rows(raw: bytes, sidecar: Sidecar, name: str, collector: Collector) -> list
 
 
 def _cell(text: str, decimal: str) -> Decimal | None:
-    if len(text) > MOST_DIGITS:
+    if len(text) > MOST_DIGITS or not text.isascii():  # Decimal reads the digits of every script
         return None
     if decimal == ",":
         if "." in text:

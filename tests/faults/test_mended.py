@@ -137,3 +137,10 @@ def test_a_number_of_endless_digits(digits: int, tmp_path: Path):
     files = {**refusals.files("table"), "tables/curve.csv": refusals.CURVE.replace("1e-12", "0." + "1" * digits)}
     (message,) = check(tmp_path, dict(files)).refused
     assert message.startswith("tables/curve.csv:2: ")
+
+
+@pytest.mark.parametrize("cell", ["٣e-12", "１e-12", "1e-１2", "−1e-12"])
+def test_digits_of_another_script_in_a_table(cell: str, tmp_path: Path):
+    files = {**refusals.files("table"), "tables/curve.csv": refusals.CURVE.replace("0.3,25,1e-12", f"0.3,25,{cell}")}
+    (message,) = check(tmp_path, dict(files)).refused
+    assert message.startswith(f"tables/curve.csv:2: I: is not a number; found {cell!r}")
