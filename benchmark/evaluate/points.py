@@ -324,7 +324,7 @@ def cycles_demanded(problem: SideProblem, points: Points, life: float) -> Array:
 
     a_max is the activity stated for the busiest net, or that of a net of the circuit which is busier still (a clock net
     rises once per cycle whatever the study says of its logic). f is the clock frequency; a self-timed block without one
-    runs all the time.
+    runs all the time. A parallel copy is charged as if it did all the work of the block.
     """
     scenario = problem.scenario
     busiest = points.busiest_rising

@@ -78,8 +78,8 @@ def mitigation_conventions(study: Study) -> list[dict[str, str]]:
             "n copies take turns: each may take n times the clock cycle or the required time; one operation takes as "
             "long as before (a deadline stated as a time is not relaxed); each further copy adds the routing overhead "
             "to the dynamic energy of an operation, the repeated share to leakage and wake-up energy, and the area "
-            "share to the area; operations must not depend on each other; the delay of distributing and merging is not "
-            "modelled"
+            "share to the area; operations must not depend on each other; endurance is asked of each copy as if it did "
+            "all the work; the delay of distributing and merging is not modelled"
         )
         found.append({"name": "parallel copies", "text": text})
     if any(side.back_biases != (0.0,) for side in study.sides):
