@@ -248,6 +248,7 @@ def trade(
 
 def sheet(
     study: StudyView | Place,
+    names: Iterable[str] = (),
     *,
     advantage: float | None = None,
     pair: str = "",
@@ -257,10 +258,12 @@ def sheet(
     seed: int = 0,
     told: Told | None = None,
 ) -> Needed:
-    """Return what each decisive value of the candidate must be, alone; other parameters as in ``need``.
+    """Return what each value of the candidate must be, alone; other parameters as in ``need``.
 
     Parameters
     ----------
+    names : iterable of str, optional
+        Values to be on the sheet; by default the decisive ones, then those with a range that move the advantage.
     probability : float, optional
         Also state the value, and the spread, at which the level is reached with this probability when all stated ranges
         are drawn together.
@@ -270,25 +273,32 @@ def sheet(
     Raises
     ------
     UsageError
-        For an unknown pair or level, when there is no advantage today, or when a probability is asked for and nothing
-        can be drawn.
+        For an unknown name, pair or level, when there is no advantage today, or when a probability is asked for and
+        nothing can be drawn.
     """
+    from benchmark.decide.axes import find_axis
     from benchmark.decide.specification import SHEET_COLUMNS, TOLERANCE_COLUMNS, sheet_rows, specification
 
     view, trials = _trials(study, pair, told)
     level = _level(view, advantage)
-    found = specification(trials, level, points, probability=probability, draws=draws, seed=seed)
+    chosen = [find_axis(trials, name) for name in names]
+    found = specification(trials, level, points, chosen=chosen, probability=probability, draws=draws, seed=seed)
     rows = sheet_rows(found)
     facts = []
     for row in rows:
         drawn = found.tolerances.get(row["name"])
         facts.append(
-            (row["name"], f"{row['reachable']}. {row['words']}" + ("" if drawn is None else f". Drawn: {drawn.words}"))
+            (row["name"], f"{_first(row)}. {row['words']}" + ("" if drawn is None else f". Drawn: {drawn.words}"))
         )
     columns = SHEET_COLUMNS if probability is None else (*SHEET_COLUMNS, *TOLERANCE_COLUMNS)
     if not facts:
-        facts = [("nothing is decisive", "no value of the candidate alone changes on which side the answer lies")]
+        facts = [("nothing is decisive", "no value of the candidate alone moves the advantage")]
     return Needed(_heading(view, trials), tuple(facts), columns, tuple(rows))
+
+
+def _first(row: Mapping[str, Any]) -> str:
+    """Say whether a value is decisive and within reach."""
+    return ("decisive; " if row["decisive"] == "yes" else "") + f"reachable: {row['reachable']}"
 
 
 def opportunity(

@@ -95,8 +95,8 @@ def need_command(
     if trade and len(names) != 2:
         message = f"--trade needs exactly two names, found {len(names)}"
         raise UsageError(message)
-    if question not in ("", "--trade") and (names or over):
-        message = f"{question} takes no names and no --over"
+    if (names and question not in ("", "--trade", "--sheet")) or (over and question not in ("", "--trade")):
+        message = f"{question} takes no {'names' if names else '--over'}"
         raise UsageError(message)
     ranges = [_range(text) for text in over]
     if points is not None and (points < 2 or question in ("--improve", "--flips")):
@@ -113,7 +113,7 @@ def need_command(
         if trade:
             found = api.trade(view, names[0], names[1], over=ranges, **more, **scan)
         elif sheet:
-            found = api.sheet(view, probability=probability, draws=draws, seed=seed, **more, **scan)
+            found = api.sheet(view, names, probability=probability, draws=draws, seed=seed, **more, **scan)
         elif map_:
             found = api.opportunity(view, map_, **more, **scan)
         elif improve:

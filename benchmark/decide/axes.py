@@ -76,6 +76,8 @@ class Axis:
     value: Value | None = None
     #: where a logarithmic scale starts when the range starts at 0
     smallest: float = 0.0
+    #: values to be scanned instead of an even grid, ascending
+    steps: tuple[float, ...] = ()
 
     @property
     def logarithmic(self) -> bool:
@@ -127,6 +129,8 @@ class Axis:
 
     def grid(self, count: int) -> Array:
         """Return ``count`` values over the range, evenly spaced on its scale, and the best estimate among them."""
+        if self.steps:
+            return np.asarray(self.steps)
         if self.logarithmic:
             start = self.low if self.low > 0.0 else self.smallest
             inner = np.concatenate([[self.low], np.geomspace(start, self.high, count)])

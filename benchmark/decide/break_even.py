@@ -19,23 +19,23 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchmark.decide.axes import Axis
 from benchmark.decide.profile import Crossing, Edge, Line, Profile, profiles
 from benchmark.decide.trials import REQUIRED_TIME, TEMPERATURE, Trials
 from benchmark.sets.study import NodePair, Study
 
-__all__ = ["Need", "Reach", "find_needs", "side_of"]
+__all__ = ["CUT", "Need", "Reach", "find_needs", "side_of"]
 
 #: decades beyond the range at which the way to an ideal limit is looked at
-OUTWARD = (1.0, 2.0, 3.0, 4.0, 6.0, 8.0, 10.0, 12.0)
+OUTWARD = (0.25, 0.5, 1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 9.0, 12.0)
 #: the advantage has settled when the last two looks differ by less
 SETTLED = 1.0e-6
 #: a relative change of the advantage below this over the whole range counts as none
 NO_EFFECT = 1.0e-9
 #: how near (in ln advantage) an end of the range must lie to the level to count as being on it
 ON_BOUND = 1.0e-9
+CUT = "where a side loses its last permitted point"
 #: values whose limit lies in neither direction
 _NO_LIMIT = (TEMPERATURE, REQUIRED_TIME)
 
@@ -44,9 +44,9 @@ _NO_LIMIT = (TEMPERATURE, REQUIRED_TIME)
 class Reach:
     """Largest advantage on the way to the ideal limits of an axis.
 
-    ``end``: ``towards 0``, ``towards 1``, ``ever larger``, or "inside the range" when the largest advantage lies there.
-    ``settled``: the advantage no longer changes at the end. ``limit``: the largest term of the candidate's delay or
-    energy there.
+    ``end``: ``towards 0``, ``towards 1``, ``ever larger``; ``CUT`` when a side loses its last permitted point there;
+    "inside the range" or "on the way" when the largest advantage lies there. ``settled``: the advantage no longer
+    changes at the end. ``limit``: the largest term of the candidate's delay or energy there.
     """
 
     x: float
@@ -136,67 +136,88 @@ def find_needs(
                 _on_bound(profile, level),
             )
             if ideal and need.kind == "never":
-                looks = _look(trials, profile.line) if looks is None else looks
+                looks = _look(trials, profile.line, levels) if looks is None else looks
                 need = _followed(trials, profile, need, looks)
             found.append(need)
     return found
 
 
-#: one way outwards: its name, the values looked at, and the advantages up to where a side has no permitted point
-_Look = tuple[str, list[float], NDArray[np.float64]]
+@dataclass(frozen=True)
+class _Look:
+    """One way outwards: its name and direction, and what was found on it from the end of the range on."""
+
+    end: str
+    upward: bool
+    profile: Profile
+
+    @property
+    def furthest(self) -> int:
+        """Position of the furthest value that has an advantage."""
+        known = np.flatnonzero(~np.isnan(self.profile.advantage))
+        return int(known[-1] if self.upward else known[0])
 
 
-def _look(trials: Trials, line: Line) -> list[_Look]:
-    """Evaluate the ways to the ideal limits of an axis."""
-    found = []
-    for end, values in _ways(line.axis):
-        answers = trials([line.trial(x) for x in values]).advantage
-        stop = int(np.argmax(np.isnan(answers))) if np.isnan(answers).any() else len(values)
-        found.append((end, values[:stop], answers[:stop]))
-    return found
+def _look(trials: Trials, line: Line, levels: Sequence[float]) -> list[_Look]:
+    """Search the ways to the ideal limits of an axis as the range itself was searched."""
+    ways = _ways(line.axis)
+    outward = [
+        Line(dataclasses.replace(line.axis, low=min(values), high=max(values), steps=tuple(sorted(values))), line.held)
+        for _, values in ways
+    ]
+    found = profiles(trials, outward, levels, name_edges=False)
+    return [
+        _Look(end, values[-1] > values[0], profile)
+        for (end, values), profile in zip(ways, found, strict=True)
+        if profile.defined.size
+    ]
 
 
 def _ways(axis: Axis) -> list[tuple[str, list[float]]]:
-    """Ways to the ideal limits, each as its name and the values looked at, nearest first; none without limits."""
+    """Ways to the ideal limits, each as its name and the values looked at, from the end of the range on."""
     if axis.name in _NO_LIMIT or axis.domain == "any" or axis.high <= 0.0:
         return []
     ways: list[tuple[str, list[float]]] = []
     if axis.domain == "count":
-        ways.append(("towards 1", [1.0] if axis.low > 1.0 else []))
+        if axis.low > 1.0:
+            ways.append(("towards 1", [axis.low, 1.0]))
     elif axis.low > 0.0:
-        down = [axis.low / 10.0**decades for decades in OUTWARD]
+        down = [axis.low / 10.0**decades for decades in (0.0, *OUTWARD)]
         ways.append(("towards 0", [*down, 0.0] if axis.domain in ("nonnegative", "fraction") else down))
     if axis.domain not in ("fraction", "share"):
-        ways.append(("ever larger", [axis.high * 10.0**decades for decades in OUTWARD]))
+        ways.append(("ever larger", [axis.high * 10.0**decades for decades in (0.0, *OUTWARD)]))
     elif axis.high < 1.0 and axis.value is not None:
-        ways.append(("towards 1", [1.0]))
-    return [(name, values) for name, values in ways if values]
+        ways.append(("towards 1", [axis.high, 1.0]))
+    return ways
 
 
 def _followed(trials: Trials, profile: Profile, need: Need, looks: Sequence[_Look]) -> Need:
     """Return the nearest value beyond the range that reaches the level, or how far the axis goes."""
-    reaching = [
-        (int(np.argmax(found >= need.level)), values) for _, values, found in looks if (found >= need.level).any()
-    ]
-    if reaching:
-        first, values = min(reaching, key=lambda item: item[0])
-        return _beyond(trials, need, values, first)
+    beyond = [crossing for look in looks for crossing in look.profile.crossings_of(need.level)]
+    if beyond:
+        nearest = min(beyond, key=lambda crossing: abs(crossing.x - need.axis.best))
+        return dataclasses.replace(need, kind="beyond", crossings=(nearest,))
     inside = int(np.nanargmax(profile.advantage))
     best = Reach(float(profile.x[inside]), float(profile.advantage[inside]), "inside the range", True, "")
-    for end, values, advantages in looks:
-        if values and float(advantages.max()) >= best.advantage:
-            furthest = int(np.flatnonzero(advantages == advantages.max())[-1])
-            change = abs(advantages[-1] / advantages[-2] - 1.0) if len(values) > 1 else np.inf
-            settled = bool(values[-1] in (0.0, 1.0) or change <= SETTLED)
-            best = Reach(values[furthest], float(advantages[furthest]), end, settled, "")
+    for look in looks:
+        found, x = look.profile.advantage, look.profile.x
+        if float(np.nanmax(found)) < best.advantage:
+            continue
+        # equal to rounding is equal: the furthest of them is meant
+        largest = np.flatnonzero(found >= np.nanmax(found) * (1.0 - 1e-12))
+        furthest = look.furthest
+        position = furthest if furthest in largest else int(largest[0])
+        cut = any(edge.x == x[furthest] for edge in look.profile.edges)
+        end = "on the way" if position != furthest else (CUT if cut else look.end)
+        best = Reach(float(x[position]), float(found[position]), end, _settled(look, furthest), "")
     limit = trials([profile.line.trial(best.x)]).limit(0, trials.study.policy.metric)
     return dataclasses.replace(need, kind="unreachable", reach=dataclasses.replace(best, limit=limit))
 
 
-def _beyond(trials: Trials, need: Need, values: Sequence[float], first: int) -> Need:
-    """Solve for the crossing between the last value below the level and the first one that reaches it."""
-    axis = need.axis
-    nearest = axis.high if values[0] > axis.high else axis.low
-    ends = sorted((nearest if first == 0 else values[first - 1], values[first]))
-    (profile,) = profiles(trials, [Line(axis.over(*ends))], [need.level], 2, name_edges=False)
-    return dataclasses.replace(need, kind="beyond", crossings=profile.crossings)
+def _settled(look: _Look, furthest: int) -> bool:
+    """Tell whether the advantage no longer changes at the end of a way."""
+    found, x = look.profile.advantage, look.profile.x
+    if x[furthest] in (0.0, 1.0) or any(edge.x == x[furthest] for edge in look.profile.edges):
+        return True
+    before = furthest - 1 if look.upward else furthest + 1
+    inside = 0 <= before < len(found) and not np.isnan(found[before])
+    return bool(inside and abs(found[furthest] / found[before] - 1.0) <= SETTLED)

@@ -8,7 +8,7 @@ from typing import Any
 import numpy as np
 
 from benchmark.decide.axes import Axis, deviations
-from benchmark.decide.break_even import Need
+from benchmark.decide.break_even import CUT, Need
 from benchmark.decide.profile import Crossing
 
 __all__ = ["NEED_COLUMNS", "need_rows", "need_text", "range_text", "who_wins"]
@@ -99,8 +99,13 @@ def _answer(need: Need) -> str:
         return f"{level}: none in the plausible range {over}: {word} (largest advantage {need.highest:.4g}){bound}"
     reach = need.reach
     limited = f", limited by {reach.limit}" if reach.limit else ""
-    if reach.end == "inside the range":
+    if reach.end in ("inside the range", "on the way"):
         return f"{level}: unreachable: the largest advantage is {reach.advantage:.4g}, at {axis.text(reach.x)}{limited}"
+    if reach.end == CUT:
+        return (
+            f"{level}: unreachable: the largest advantage is {reach.advantage:.4g}, at {axis.text(reach.x)}, {CUT}"
+            f"{limited}"
+        )
     open_end = "" if reach.settled else ", where it still changes"
     return (
         f"{level}: unreachable: even at the ideal limit ({reach.end}{open_end}) the advantage is "

@@ -1,7 +1,9 @@
-"""Specification sheet: what the decisive values of the candidate must be for the required advantage (layer 7).
+"""Specification sheet: what the values of the candidate must be for the required advantage (layer 7).
 
 Each value alone, the rest at the best estimate. A value is decisive when moving it over its range changes on which side
-of the required advantage the answer lies, or when it has no range and moves the advantage.
+of the required advantage the answer lies, or when it has no range, moves the advantage, and rests on evidence that does
+not carry any verdict. Values with a range that move the advantage without crossing stand below the decisive ones: far
+from the required advantage nothing crosses, and the sheet still has to say how far each of them would have to go.
 """
 
 from __future__ import annotations
@@ -12,6 +14,7 @@ from typing import Any
 
 import numpy as np
 
+from benchmark.catalogue import EVIDENCE
 from benchmark.decide.axes import Axis, known_axes
 from benchmark.decide.break_even import NO_EFFECT, Need, find_needs
 from benchmark.decide.moves import range_of
@@ -22,6 +25,8 @@ from benchmark.errors import UsageError
 
 __all__ = ["SHEET_COLUMNS", "TOLERANCE_COLUMNS", "Sheet", "sheet_rows", "specification"]
 
+#: where the values of a set hold: a condition, no parameter
+CONDITIONS = ("reference_temperature",)
 #: relative step by which a value without range is moved to see whether anything rests on it
 PROBE = 0.01
 SHEET_COLUMNS = (
@@ -29,6 +34,7 @@ SHEET_COLUMNS = (
     "unit",
     "today",
     "evidence",
+    "decisive",
     "required",
     "bound",
     "factor",
@@ -49,7 +55,7 @@ TOLERANCE_COLUMNS = (
 
 @dataclass(frozen=True)
 class Sheet:
-    """``needs``: one per decisive value, at the required advantage; ``advantage``: today's.
+    """``needs``: one per value, at the required advantage; ``advantage``: today's; ``decisive``: names of such values.
 
     ``tolerances``: name -> required value and spread at a probability, when one was asked for.
     """
@@ -57,13 +63,21 @@ class Sheet:
     level: float
     advantage: float
     needs: tuple[Need, ...]
+    decisive: frozenset[str] = frozenset()
     tolerances: Mapping[str, Tolerance] = field(default_factory=dict)
 
 
 def specification(
-    trials: Trials, level: float, count: int = 17, *, probability: float | None = None, draws: int = 256, seed: int = 0
+    trials: Trials,
+    level: float,
+    count: int = 17,
+    *,
+    chosen: Sequence[Axis] = (),
+    probability: float | None = None,
+    draws: int = 256,
+    seed: int = 0,
 ) -> Sheet:
-    """Return the required value of every decisive value of the candidate.
+    """Return the required values of the candidate's parameters.
 
     Parameters
     ----------
@@ -72,6 +86,8 @@ def specification(
         Required advantage.
     count : int
         Grid points per value.
+    chosen : sequence of Axis, optional
+        Values to be on the sheet; by default the decisive ones of the candidate and those with a range that matter.
     probability : float, optional
         Also state the required value and spread at which the level is reached with this probability, all stated ranges
         drawn together.
@@ -88,26 +104,31 @@ def specification(
     if np.isnan(today):
         message = f"no specification sheet: {trials.best.state(0)} at the best estimate ({trials.why({})})"
         raise UsageError(message)
-    axes = _decisive(trials, level)
+    effects = _effects(trials, level, chosen or _own(trials))
+    decisive = [axis for axis, crosses, _ in effects if crosses]
+    axes = list(chosen) or [*decisive, *(axis for axis, crosses, moves in effects if moves and not crosses)]
     drawn = None if probability is None else Tolerances(trials, level, probability, draws, seed)
     needs = find_needs(trials.study, trials.pair, axes, [level], trials=trials, count=count)
-    needs = [need for need in needs if need.kind != "no effect"]
+    if not chosen:
+        needs = [need for need in needs if need.kind != "no effect"]
     tolerances = {} if drawn is None else {need.axis.name: drawn.of(need.axis) for need in needs}
-    return Sheet(level, today, tuple(needs), tolerances)
+    return Sheet(level, today, tuple(needs), frozenset(axis.name for axis in decisive), tolerances)
 
 
-def _decisive(trials: Trials, level: float) -> list[Axis]:
-    """Return the decisive values that belong to the candidate alone; see the module docstring."""
+def _own(trials: Trials) -> list[Axis]:
+    """Return the values that belong to the candidate alone and are parameters of it."""
     candidate = trials.study.candidate.technology.id
-    own = (
-        ("candidate.",)
-        if candidate in {s.technology.id for s in trials.study.contenders}
-        else (
-            "candidate.",
-            f"{candidate}.",
-        )
-    )
-    axes = [axis for name, axis in known_axes(trials).items() if name.startswith(own) and axis.value is not None]
+    shared = candidate in {side.technology.id for side in trials.study.contenders}
+    own = ("candidate.",) if shared else ("candidate.", f"{candidate}.")
+    return [
+        axis
+        for name, axis in known_axes(trials).items()
+        if name.startswith(own) and axis.value is not None and axis.value.name not in CONDITIONS
+    ]
+
+
+def _effects(trials: Trials, level: float, axes: Sequence[Axis]) -> list[tuple[Axis, bool, bool]]:
+    """Tell of each value whether it is decisive, and whether it has a range and moves the advantage."""
     ends = [_ends(axis) for axis in axes]
     answers = trials([{}, *(axis.place(x, {}) for axis, pair in zip(axes, ends, strict=True) for x in pair)])
     today, moved = answers.advantage[0], answers.advantage[1:].reshape(-1, 2)
@@ -116,9 +137,9 @@ def _decisive(trials: Trials, level: float) -> list[Axis]:
         ranged = axis.value is not None and range_of(axis.value) is not None
         # what makes the candidate lose its last permitted point is on the other side too
         crosses = bool(np.any((pair >= level) != (today >= level)))
-        changes = bool(np.any(~(np.abs(pair / today - 1.0) <= NO_EFFECT)))
-        if crosses if ranged else changes:
-            found.append(axis)
+        moves = bool(np.any(~(np.abs(pair / today - 1.0) <= NO_EFFECT)))
+        evidence = EVIDENCE.get(axis.value.evidence if axis.value is not None else "", EVIDENCE["assumed"])
+        found.append((axis, crosses if ranged else moves and evidence.support != "go", moves and ranged))
     return found
 
 
@@ -160,6 +181,7 @@ def sheet_rows(sheet: Sheet) -> list[dict[str, Any]]:
                     "unit": axis.unit,
                     "today": axis.shown(axis.best),
                     "evidence": "" if axis.value is None else axis.value.evidence,
+                    "decisive": "yes" if axis.name in sheet.decisive else "no",
                     "required": axis.shown(x),
                     "bound": "" if crossing is None else ("at most" if crossing.above_below else "at least"),
                     "factor": x / axis.best if axis.best > 0.0 and axis.unit != "degC" else float("nan"),

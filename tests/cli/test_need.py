@@ -120,7 +120,10 @@ def test_sheet(evenload: Run):
     found = rows(evenload("need", STRESS, "--sheet", "--points", "5", "--format", "csv").out)
     assert {row["bound"] for row in found} >= {"at least", "at most"}
     text = words(evenload("need", WORD_LINE, "--sheet", "--points", "5").out)
-    assert "hand-line-new.on_resistance no. Advantage 1.5: unreachable" in text
+    assert "hand-line-new.on_resistance decisive; reachable: no. Advantage 1.5: unreachable" in text
+    named = rows(evenload("need", WORD_LINE, "--sheet", "hand-line-new.closing_delay",
+                          "--points", "5", "--format", "csv").out)  # fmt: skip
+    assert [row["name"] for row in named] == ["hand-line-new.closing_delay"]
 
 
 def test_sheet_with_a_probability(evenload: Run, tmp_path: Path):
@@ -171,7 +174,8 @@ def test_improve_and_flips(evenload: Run, study: Path):
         (["--trade", "activity"], "--trade needs exactly two names, found 1"),
         (["--trade", "activity", "activity"], "a trade curve needs two different values"),
         (["--sheet", "--improve"], "--sheet and --improve are different questions; ask one at a time"),
-        (["--sheet", "activity"], "--sheet takes no names and no --over"),
+        (["--improve", "activity"], "--improve takes no names"),
+        (["--sheet", "--over", "0.1..0.2"], "--sheet takes no --over"),
         (["--map", "speed"], "a map over 'speed' is not known; known are activity, duty"),
         (["--map", "duty"], "a map over duty needs a study that states an idle scheme"),
         (["activity", "--probability", "0.9"], "--probability belongs to --sheet"),

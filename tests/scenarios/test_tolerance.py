@@ -15,6 +15,7 @@ import pytest
 from scipy.special import ndtri
 
 from benchmark.decide.axes import find_axis
+from benchmark.decide.break_even import CUT
 from benchmark.decide.specification import sheet_rows, specification
 from benchmark.decide.tolerance import Tolerances
 from benchmark.decide.trials import Trials
@@ -95,6 +96,28 @@ def test_a_value_without_spread_is_put_exactly(tmp_path):
     assert math.log(found.value / 200e-12) == near(needed, rel=0, abs=error(0.9, 2.0 / math.sqrt(0.05)))
     assert np.isnan(found.spread)
     assert "no spread is stated" in found.words
+
+
+def test_far_from_the_level_values_with_a_range_still_stand_on_the_sheet(tmp_path):
+    trials = made(tmp_path)
+    far = specification(trials, 8.0, 5)
+    names = [need.axis.name for need in far.needs]
+    assert {D, C} <= set(names)
+    assert not {D, C} & far.decisive
+    # 8 is 4 times today's: a coefficient of 200 sqrt(4)
+    need = next(need for need in far.needs if need.axis.name == D)
+    assert need.kind == "beyond"
+    assert need.crossings[0].x == near(400e-12, rel=1e-6)
+    # 100 would need less than the lowest supply of the set, 0.05 V x 1200 pm/V
+    cut = next(need for need in specification(trials, 100.0, 5).needs if need.axis.name == D)
+    assert cut.reach is not None
+    assert cut.reach.end == CUT
+    assert cut.reach.x == near(1200e-12, rel=2e-6)
+    assert cut.reach.advantage == near(72.0, rel=1e-5)
+    near_by = specification(trials, 1.5, 5)
+    assert D in near_by.decisive
+    order = [need.axis.name in near_by.decisive for need in near_by.needs]
+    assert order == sorted(order, reverse=True)
 
 
 def test_the_sheet_carries_both(tmp_path):
