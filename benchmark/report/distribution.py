@@ -9,7 +9,7 @@ from benchmark.record.text import probability
 from benchmark.report.advantage import levels
 from benchmark.report.drawing import Canvas, Label
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, Placer
+from benchmark.report.placing import Box, Placer, fitted
 from benchmark.report.spots import Spots
 from benchmark.report.style import INK, LinearAxis, LogAxis, looks, spec
 from benchmark.report.words import is_number, number
@@ -52,11 +52,12 @@ def advantage_distribution(record: Record, width: float = WIDTH, height: float =
         canvas.rules([(edge, 0.0, edge, height)], color=INK, strokeWidth=1.6 if required else 1.0, strokeDash=[6, 3])
         placer.avoid_line([(edge, 0.0), (edge, height)])
         reached = probability(found["reaches"] if required else found["above_one"])
-        lines = [name, f"{'reached' if required else 'exceeded'} with probability {reached}"]
+        said = f"{'reached' if required else 'exceeded'} with probability {reached}"
+        lines = [line for text in (name, said) for line in fitted(text, width / 3.0, 5, bold=True)]
         placed = placer.place(lines, [(edge, height * share) for share in (0.35, 0.6, 0.2, 0.8)], bold=True)
         labels += [Label(placed, INK, True)] if placed else []
     canvas.path(rows, "advantage", "share_of_draws", color=look.colour, strokeWidth=2.6)
-    spots = Spots(MARGINS[0], MARGINS[2])
+    spots = Spots(*MARGINS[:2])
     for position, row in enumerate(rows):
         if row["share_of_draws"] in MARKED:
             canvas.symbols([curve[position]], shape="circle", size=36, color=look.colour)
