@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
-from hypothesis import HealthCheck, Phase, given, settings
+from hypothesis import given
 from hypothesis import strategies as st
 
 from benchmark.decide.axes import find_axis, known_axes
@@ -18,14 +18,9 @@ from benchmark.decide.trials import Trials
 from tests import comparisons as cmp
 from tests.comparisons import load, planar, pressed, side, steep, study
 from tests.near import near
+from tests.profiles import costly
 
-few = settings(
-    max_examples=6,
-    deadline=None,
-    derandomize=True,
-    suppress_health_check=list(HealthCheck),
-    phases=(Phase.explicit, Phase.generate),
-)
+few = costly(6)
 #: relative resolution of the search over supplies in these studies
 RESOLUTION = 1e-9
 

@@ -20,6 +20,7 @@ from benchmark.record.load import load_study
 from benchmark.record.rerun import recreate
 from benchmark.record.run import run_study
 from benchmark.record.write import summary, to_json
+from tests.fixed_displacement import fixed_displacement
 from tests.profiles import examples
 from tests.studies import Inputs, Table, hub, mixed, run, toml
 
@@ -223,7 +224,14 @@ def _again(record: dict[str, Any], folder: Path) -> dict[str, Any]:
         return run_study(*load_study(study, (), overrides), created="another time")
 
 
-@pytest.mark.parametrize("make", [mixed, hub])
+def drawn() -> Inputs:
+    """A study that asks for draws itself."""
+    inputs = fixed_displacement()
+    inputs.study["uncertainty"] = {"draws": 16, "seed": 3}
+    return inputs
+
+
+@pytest.mark.parametrize("make", [mixed, hub, drawn])
 def test_a_record_runs_again_from_its_own_files_with_every_number(make: Callable[[], Inputs], tmp_path: Path):
     record = run(make(), tmp_path / "first")
     again = _again(record, tmp_path / "again")
