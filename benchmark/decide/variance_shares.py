@@ -85,9 +85,10 @@ def _indices(a: Array, b: Array, mixed: Array) -> Array:
     from scipy.stats import sobol_indices
 
     mean = 0.5 * (a.mean() + b.mean())  # shares do not depend on it, their errors do
-    sets = {"f_A": (a - mean)[None, :], "f_B": (b - mean)[None, :], "f_AB": (mixed - mean)[:, None, :]}
+    twice = mixed if len(mixed) > 1 else np.repeat(mixed, 2, axis=0)  # the library takes two inputs or more
+    sets = {"f_A": (a - mean)[None, :], "f_B": (b - mean)[None, :], "f_AB": (twice - mean)[:, None, :]}
     found = sobol_indices(func=sets, n=a.size)
-    return np.stack([np.ravel(found.first_order), np.ravel(found.total_order)])
+    return np.stack([np.ravel(found.first_order), np.ravel(found.total_order)])[:, : len(mixed)]
 
 
 def variance_shares(task: DrawTask, keys: Sequence[str], draws: int = 256) -> list[VarianceShare]:

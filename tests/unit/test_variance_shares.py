@@ -73,3 +73,10 @@ def test_a_draw_without_an_advantage_is_refused_in_words():
     a[3] = np.nan
     with pytest.raises(ValueError, match="finite advantage in every draw"):
         sobol_shares(["x"], a, np.ones(16), np.ones((1, 16)))
+
+
+def test_one_input_alone_has_all_of_the_variance():
+    found = shares(lambda u: np.exp(u[:, 0]), 1)
+    assert len(found) == 1
+    assert found[0].first == near(1.0, rel=0, abs=0.01)
+    assert found[0].total == near(1.0, rel=0, abs=0.01)
