@@ -45,9 +45,7 @@ def warnings_of(inputs: Inputs) -> list[str]:
 
 @few
 @given(factor(0.02, 50.0), factor(0.02, 0.6), st.integers(-150, 150), st.integers(1, 4))
-def test_less_charge_energy_than_the_heat_of_erasure_is_flagged(
-    ratio: float, supply: float, celsius: int, fan_out: int
-):
+def test_a_charge_energy_below_the_heat_of_erasure_is_flagged(ratio: float, supply: float, celsius: int, fan_out: int):
     """``ratio``: C V^2 of the only net over k T ln 2; the hottest temperature counts."""
     heat = BOLTZMANN * (celsius + 273.15) * math.log(2.0)
     per_switch = ratio * heat / supply**2 / (2 * fan_out)  # an inverter input is two switches
