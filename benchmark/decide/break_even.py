@@ -20,12 +20,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from benchmark.catalogue import QUANTITIES
 from benchmark.decide.axes import Axis
 from benchmark.decide.profile import Crossing, Edge, Line, Profile, profiles
 from benchmark.decide.trials import REQUIRED_TIME, TEMPERATURE, Trials
 from benchmark.sets.study import NodePair, Study
 
-__all__ = ["CUT", "Need", "Reach", "find_needs", "side_of"]
+__all__ = ["CUT", "Need", "Reach", "find_needs", "ideal_ways", "side_of"]
 
 #: decades beyond the range at which the way to an ideal limit is looked at
 OUTWARD = (0.25, 0.5, 1.0, 1.5, 2.0, 3.0, 4.0, 6.0, 9.0, 12.0)
@@ -159,7 +160,7 @@ class _Look:
 
 def _look(trials: Trials, line: Line, levels: Sequence[float]) -> list[_Look]:
     """Search the ways to the ideal limits of an axis as the range itself was searched."""
-    ways = _ways(line.axis)
+    ways = ideal_ways(line.axis)
     outward = [
         Line(dataclasses.replace(line.axis, low=min(values), high=max(values), steps=tuple(sorted(values))), line.held)
         for _, values in ways
@@ -172,7 +173,7 @@ def _look(trials: Trials, line: Line, levels: Sequence[float]) -> list[_Look]:
     ]
 
 
-def _ways(axis: Axis) -> list[tuple[str, list[float]]]:
+def ideal_ways(axis: Axis) -> list[tuple[str, list[float]]]:
     """Ways to the ideal limits, each as its name and the values looked at, from the end of the range on."""
     if axis.name in _NO_LIMIT or axis.domain == "any" or axis.high <= 0.0:
         return []
@@ -185,7 +186,8 @@ def _ways(axis: Axis) -> list[tuple[str, list[float]]]:
         ways.append(("towards 0", [*down, 0.0] if axis.domain in ("nonnegative", "fraction") else down))
     if axis.domain not in ("fraction", "share"):
         ways.append(("ever larger", [axis.high * 10.0**decades for decades in (0.0, *OUTWARD)]))
-    elif axis.high < 1.0 and axis.value is not None:
+    elif axis.high < 1.0 and axis.value is not None and QUANTITIES[axis.value.name].high >= 1.0:
+        # a share whose usual range ends below 1 has a limit of its own (Poisson's ratio)
         ways.append(("towards 1", [axis.high, 1.0]))
     return ways
 

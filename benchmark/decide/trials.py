@@ -175,7 +175,8 @@ class Trials:
                 outcome = comparison.outcome(self.policy)
         except EvenloadError as error:
             return f"cannot be evaluated: {error}"
-        sides = (outcome.candidate, *outcome.contenders)
+        # a contender without a permitted point matters where no other has one either
+        sides = outcome.contenders if outcome.candidate.found[0] else (outcome.candidate,)
         return "; ".join(f"{side.id}: {side.why}" for side in sides if side.why and not side.found[0])
 
     def _evaluate(self, study: Study, trials: Sequence[Trial]) -> Answers:

@@ -11,7 +11,7 @@ import numpy as np
 import pytest
 
 from benchmark.decide.axes import DEADLINE, Axis, find_axis, known_axes, usual_axes
-from benchmark.decide.break_even import find_needs
+from benchmark.decide.break_even import find_needs, ideal_ways
 from benchmark.decide.need_words import need_text
 from benchmark.decide.profile import Line, profiles
 from benchmark.decide.trials import REQUIRED_TIME, TEMPERATURE, Trials, study_at
@@ -225,6 +225,28 @@ def test_what_a_circuit_refuses_ends_the_range_too():
     assert need.edges[-1].x == near(0.5, rel=2e-6)
     assert "cannot exceed 0.5 rising transitions per cycle" in need.edges[-1].why
     assert "No advantage above 0.5 (cannot be evaluated: " in need_text(need)
+
+
+def test_why_names_the_candidate_alone_unless_no_contender_is_left():
+    late = {"deadline": {"limit": {"value": D("1.0"), "unit": "ns"}, "kind": "hard"}}
+    sets = [given("a"), given("b"), given("c", closing_delay=1.0, opening_delay=1.0)]
+    contenders = [side("b", 0.5, 0.5), side("c", 0.5, 0.5)]
+    trials = trials_of(study(side("a", 0.5, 0.5), contenders, sets, requirements=late))
+    # c misses the deadline as it is; a slow candidate is the reason, not c
+    slow = trials.why({"a.closing_delay": 1e-9, "a.opening_delay": 1e-9})
+    assert slow == "a: no point of the supply range meets requirement deadline"
+    slow = trials.why({"b.closing_delay": 1e-9, "b.opening_delay": 1e-9})
+    assert slow.startswith("b: no point")
+    assert "; c: no point" in slow
+    assert trials.why({}) == ("c: no point of the supply range meets requirement deadline")
+
+
+def test_a_share_with_a_limit_of_its_own_is_not_followed_to_1():
+    trials = simple()
+    for name, follows in (("a.switching_level", False), ("study.activity", True)):
+        axis = find_axis(trials, name)
+        ends = [end for end, _ in ideal_ways(axis.over(axis.low, 0.9 * axis.high))]
+        assert ("towards 1" in ends) == follows
 
 
 def test_a_level_at_an_end_of_the_range_is_on_the_bound():
