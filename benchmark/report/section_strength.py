@@ -85,7 +85,7 @@ def _cell(record: Record, cell: Record | None) -> Cell:
         return Cell("–")
     declared = "fixed before the run" if cell["declared"] else ""
     if not (is_number(cell["advantage"]) or isinstance(cell["advantage"], str)):
-        return Cell(f"{INFEASIBLE}: {cell['why']}", small=declared)
+        return Cell(INFEASIBLE, small="; ".join(text for text in (declared, cell["why"]) if text))
     return Cell(_mark(record, cell["advantage"]), small=declared or f"against {cell['strongest']}")
 
 
