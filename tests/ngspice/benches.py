@@ -26,7 +26,7 @@ from benchmark.evaluate.deck import pace_of, switch_texts
 from benchmark.record.load import load_technology
 from tests.ngspice.runner import run_deck
 
-__all__ = ["NO_WIRES", "Bench", "bench", "current_grid", "four_states", "quasi_static"]
+__all__ = ["NO_WIRES", "Bench", "bench", "current_grid", "input_states", "quasi_static"]
 
 NO_WIRES = Wires(0.0, 0.0)
 _KNOBS: Mapping[str, Array] = {"threshold_shift": np.zeros((1, 1, 1))}
@@ -60,12 +60,14 @@ class Bench:
     cell: Cell
     fan_out: float
     pin: str
+    fixed_load: float = 0.0
 
     @property
     def net(self) -> Net:
-        """A stage that drives its own kind, no wire."""
+        """A stage that drives its own kind and ``fixed_load`` [F], no wire."""
         loads = (Load(self.cell, self.pin, self.fan_out),)
-        return Net("stage", self.cell, loads=loads, rising_per_operation=1.0, on_critical_path=1.0)
+        fixed = self.fixed_load
+        return Net("stage", self.cell, loads=loads, fixed_load=fixed, rising_per_operation=1.0, on_critical_path=1.0)
 
     def estimate(self, rule: str = "chain") -> OperationMetrics:
         """What the closed forms, or another rule, say about one stage."""
@@ -127,16 +129,18 @@ def bench(
     return Bench(pair, switch_texts(device, prepared, pair, _KNOBS), cell(cell_name), fan_out, pin)
 
 
-def four_states(one: Bench) -> list[float]:
-    """Return the leakage power of a two-input cell [W] with (a, b) low-low, high-low, low-high, high-high."""
-    supply = one.supply
+def input_states(one: Bench) -> list[float]:
+    """Return the leakage power of a cell [W] in its input states, in binary order with the first input lowest."""
+    supply, inputs = one.supply, one.cell.inputs
+    states = range(2 ** len(inputs))
     lines = ["* leakage of a cell", *switch_lines(one.texts, "delay")]
     lines += cell_lines(one.cell, "unit", {"down": 0.0, "up": 0.0})
-    for state in range(4):
-        high = {"a": bool(state & 1), "b": bool(state & 2)}
+    for state in states:
+        high = {name: bool(state >> position & 1) for position, name in enumerate(inputs)}
         level = {name: supply if on else 0.0 for name, on in high.items()}
         lines += [f"v{pin}{state} {pin}{state} 0 {volts!r}" for pin, volts in level.items()]
-        lines += [f"vr{state} r{state} 0 {supply!r}", f"x{state} o{state} r{state} a{state} b{state} {one.cell.name}"]
+        pins = " ".join(f"{pin}{state}" for pin in inputs)
+        lines += [f"vr{state} r{state} 0 {supply!r}", f"x{state} o{state} r{state} {pins} {one.cell.name}"]
         guesses = {f"o{state}": one.cell.output(high)}
         guesses |= {f"x{state}.{node}": on for node, on in inner_levels(one.cell, high).items()}
         lines.append(".nodeset " + " ".join(f"v({n})={supply if on else 0.0!r}" for n, on in guesses.items()))
@@ -145,13 +149,13 @@ def four_states(one: Bench) -> list[float]:
         ".control",
         "set numdgt=10",
         "op",
-        *(f"let p{state} = -i(vr{state})*{supply!r}\nprint p{state}" for state in range(4)),
+        *(f"let p{state} = -i(vr{state})*{supply!r}\nprint p{state}" for state in states),
         "quit 0",
         ".endc",
         ".end",
     ]
-    numbers = run_deck("\n".join(lines), [f"p{state}" for state in range(4)]).numbers
-    return [numbers[f"p{state}"] for state in range(4)]
+    numbers = run_deck("\n".join(lines), [f"p{state}" for state in states]).numbers
+    return [numbers[f"p{state}"] for state in states]
 
 
 def current_grid(text: tuple[str, ...], gates: Array, paths: Array, *, up: bool = False, lift: float = 0.0) -> Array:

@@ -16,7 +16,7 @@ from benchmark.circuits.deck_control import CHAIN_RESULTS, STATIC_RESULTS
 from benchmark.circuits.transfer import functional, transfer_curve
 from benchmark.circuits.transient import ChainLoad, chain_transient
 from benchmark.devices.record import SwitchPair
-from tests.ngspice.benches import Bench, bench, four_states, quasi_static
+from tests.ngspice.benches import Bench, bench, input_states, quasi_static
 from tests.ngspice.nand_pair import nand2_pair
 from tests.ngspice.runner import run_deck
 
@@ -175,7 +175,7 @@ def test_leakage_of_a_nand2_in_its_four_input_states(technology, node, supply, o
     mean over the four states). An actuated switch passes the full level.
     """
     one = bench(technology, node, supply, cell_name="nand2")
-    spice = four_states(one)
+    spice = input_states(one)
     down, up = one.pair.down, one.pair.up
     single = supply * down.off_current_path.item()
     stack, both = single * down.stack_off.ravel()[1], 2.0 * supply * up.off_current_path.item()
