@@ -8,23 +8,30 @@
 ``load_study`` checks a study and everything it refers to, ``run`` returns a ``Result`` with the verdict, the tables as
 pandas frames and the complete record, ``what_if`` changes numbers without a new file. ``load_set`` shows one parameter
 set, ``technologies`` lists them, ``check`` judges files. ``need``, ``trade``, ``sheet``, ``opportunity``, ``improve``
-and ``flips`` say where the answer would change. Objects show themselves as tables in a notebook.
+and ``flips`` say where the answer would change, ``changes`` what changed between two states and why,
+``batch`` which studies of a folder moved. Objects show themselves as tables in a notebook.
 
 Importing this module loads no numeric package; the functions do.
 """
 
 from __future__ import annotations
 
+from benchmark.api.batch import Batched, batch
+from benchmark.api.changes import Changes, changes
 from benchmark.api.need import Needed, flips, improve, need, opportunity, sheet, trade
 from benchmark.api.result import Result
 from benchmark.api.session import check, load_result, load_set, load_study, run, technologies, what_if, worked_study
 from benchmark.api.views import SetView, StudyView
 
 __all__ = [
+    "Batched",
+    "Changes",
     "Needed",
     "Result",
     "SetView",
     "StudyView",
+    "batch",
+    "changes",
     "check",
     "flips",
     "improve",

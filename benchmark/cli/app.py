@@ -1,7 +1,7 @@
 """The ``evenload`` command: one function per command, exit status in one place (layer 10).
 
 Exit status: 0 done, 1 internal fault, 2 wrong usage, 3 input refused, 130 interrupted; with ``--gate``: 0 go,
-10 conditional, 11 requirement failed, 12 not better, 13 not decidable.
+10 conditional, 11 requirement failed, 12 not better, 13 not decidable; ``batch``: 20 a verdict flipped.
 """
 
 from __future__ import annotations
@@ -343,3 +343,76 @@ def need(
         nodes=nodes or [],
         overrides=_overrides(set_),
     )
+
+
+@app.command()
+def changes(
+    old: Annotated[
+        str,
+        typer.Argument(
+            help="Record folder, record.json, report.html, study file, set file, or REVISION:path of a set."
+        ),
+    ],
+    new: Annotated[str, typer.Argument(help="The same; studies are run, of two sets only the values are compared.")],
+    anyway: Annotated[
+        bool, typer.Option("--anyway", help="Compare also when question, policy or required advantage differ.")
+    ] = False,
+    additive: Annotated[
+        bool, typer.Option("--additive", help="Parts also in J and s, beside the logarithms of ratios.")
+    ] = False,
+    form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
+    draws: Draws = None,
+    seed: Seed = None,
+    jobs: Jobs = 1,
+    nodes: Nodes = None,
+) -> None:
+    """Show what changed between two runs, and how much of it is due to each changed input."""
+    from benchmark.cli.changes import changes_command
+
+    changes_command(
+        old,
+        new,
+        form=form,
+        anyway=anyway,
+        additive=additive,
+        draws=draws,
+        seed=seed,
+        jobs=jobs,
+        nodes=nodes or [],
+    )
+
+
+@app.command()
+def batch(
+    folder: Annotated[Path, typer.Argument(help="Folder with study files, at any depth.")],
+    since: Annotated[
+        Path | None, typer.Option("--since", help="Folder of earlier records to compare with; default: --out.")
+    ] = None,
+    out: Annotated[
+        Path | None, typer.Option("--out", help="Folder for the new records, one folder per study; default: none.")
+    ] = None,
+    form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
+    draws: Draws = None,
+    seed: Seed = None,
+    jobs: Annotated[int, typer.Option("--jobs", help="Studies run at once; no digit depends on their number.")] = 1,
+    freeze_time: Annotated[str, typer.Option("--freeze-time", help="Time stamp to write instead of the clock.")] = "",
+    watch: Annotated[bool, typer.Option("--watch", help="Run again whenever an input file changes.")] = False,
+    nodes: Nodes = None,
+) -> None:
+    """Run every study of a folder: unchanged, moved or flipped. Exit status 20: a verdict flipped, 3: one failed."""
+    from benchmark.cli.batch import batch_command
+
+    status = batch_command(
+        folder,
+        since=since,
+        out=out,
+        form=form,
+        draws=draws,
+        seed=seed,
+        jobs=jobs,
+        freeze_time=freeze_time,
+        watch=watch,
+        nodes=nodes or [],
+    )
+    if status:
+        raise typer.Exit(status)

@@ -1,0 +1,265 @@
+"""The Python interface to many studies at once: which of them moved, which verdicts flipped."""
+
+from __future__ import annotations
+
+import functools
+import time
+from collections.abc import Callable, Iterable, Mapping, Sequence
+from dataclasses import asdict, dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from benchmark.api.changes import is_study
+from benchmark.errors import EvenloadError, InputRefused, UsageError
+
+if TYPE_CHECKING:
+    import pandas
+
+__all__ = ["Batched", "StudyState", "batch", "input_files", "studies_in"]
+
+Place = str | Path
+Told = Callable[[int, int], None]
+#: what may have become of a study, and what it is called without an earlier record
+UNCHANGED, MOVED, FLIPPED, NEW, FAILED = "unchanged", "moved", "flipped", "no earlier record", "failed"
+#: endings of files that a study may read
+INPUTS = frozenset({".toml", ".csv", ".tsv", ".txt", ".dat"})
+
+
+@dataclass(frozen=True)
+class StudyState:
+    """One study of a batch.
+
+    ``study``: its file, from the folder of the batch. ``state``: unchanged (every result is the same to the last bit),
+    moved (some result, not the verdict), flipped (the verdict), no earlier record, or failed. ``distance``: advantage
+    over the required one [1]. ``results_moved``: results that differ. ``message``: why it failed, or what makes the
+    two records different questions. ``seconds``: its run took.
+    """
+
+    study: str
+    state: str
+    verdict_old: str = ""
+    verdict_new: str = ""
+    advantage_old: float | str | None = None
+    advantage_new: float | str | None = None
+    distance: float | None = None
+    results_moved: int = 0
+    message: str = ""
+    seconds: float = 0.0
+
+
+@dataclass(frozen=True, eq=False)
+class Batched:
+    """All studies of a batch in the order of their files; ``seconds``: wall time [s]."""
+
+    rows: tuple[StudyState, ...]
+    seconds: float
+
+    @property
+    def status(self) -> int:
+        """Return the exit status: 3 a study failed, 20 a verdict flipped, else 0."""
+        states = {row.state for row in self.rows}
+        return 3 if FAILED in states else 20 if FLIPPED in states else 0
+
+    @property
+    def frame(self) -> pandas.DataFrame:
+        """Return one row for each study."""
+        import pandas
+
+        return pandas.DataFrame([asdict(row) for row in self.rows])
+
+
+def studies_in(folder: Place) -> list[Path]:
+    """Return every study file in a folder, at any depth; record folders hold none.
+
+    Raises
+    ------
+    UsageError
+        When it is not a folder, or holds no study.
+    """
+    place = Path(folder)
+    if not place.is_dir():
+        message = f"{place} is not a folder of studies"
+        raise UsageError(message)
+    found = [path for path in sorted(place.rglob("*.toml")) if path.is_file() and is_study(path)]
+    if not found:
+        message = f"{place}: holds no study; a study file is a TOML file with [workload] and [[contender]]"
+        raise UsageError(message)
+    return found
+
+
+def input_files(folders: Iterable[Place]) -> dict[str, tuple[int, int]]:
+    """Return name -> (time of the last change [ns], size) of every file in some folders that a study may read."""
+    found = {}
+    for folder in folders:
+        for path in sorted(Path(folder).rglob("*")):
+            if path.suffix.lower() in INPUTS and path.is_file():
+                told = path.stat()
+                found[str(path)] = (told.st_mtime_ns, told.st_size)
+    return found
+
+
+def batch(
+    folder: Place,
+    *,
+    since: Place | None = None,
+    out: Place | None = None,
+    nodes: Iterable[Place] = (),
+    created: str | None = None,
+    draws: int | None = None,
+    seed: int | None = None,
+    jobs: int = 1,
+    told: Told | None = None,
+) -> Batched:
+    """Run every study of a folder and say what became of it.
+
+    Parameters
+    ----------
+    folder : str or Path
+        Searched for study files at any depth.
+    since : str or Path, optional
+        Folder of earlier records, one folder per study at the place it has in ``folder``, as ``out`` writes them.
+        Default: ``out``, as it was before.
+    out : str or Path, optional
+        Where to write the new records; none are written without it.
+    nodes, created, draws, seed
+        As in ``load_study`` and ``run``.
+    jobs : int
+        Studies run at once, each in a process of its own; no digit depends on their number.
+    told : callable, optional
+        Told the number of studies done and of all.
+
+    Returns
+    -------
+    Batched
+        A study that fails has its message in its row and does not stop the others.
+
+    Raises
+    ------
+    UsageError
+        When there is no study, or a number cannot be one.
+    """
+    if jobs < 1:
+        message = f"jobs: {jobs} processes cannot work; allowed: 1 or more"
+        raise UsageError(message)
+    root = Path(folder)
+    paths = studies_in(root)
+    earlier = since if since is not None else out
+    if since is not None and not Path(since).is_dir():
+        message = f"{since} is not a folder of records"
+        raise UsageError(message)
+    _places_differ([path.relative_to(root) for path in paths])
+    started = time.perf_counter()
+    work = functools.partial(
+        _one,
+        root=root,
+        since=None if earlier is None else Path(earlier),
+        out=None if out is None else Path(out),
+        nodes=tuple(Path(place) for place in nodes),
+        options={"created": created, "draws": draws, "seed": seed},
+    )
+    rows: list[StudyState] = []
+    for row in _mapped(work, paths, jobs):
+        rows.append(row)
+        if told is not None:
+            told(len(rows), len(paths))
+    return Batched(tuple(rows), time.perf_counter() - started)
+
+
+def _places_differ(names: Sequence[Path]) -> None:
+    seen: dict[Path, Path] = {}
+    for name in names:
+        place = place_of(name, Path())
+        if place in seen:
+            message = f"{seen[place]} and {name} would have one record folder, {place}; rename one of them"
+            raise UsageError(message)
+        seen[place] = name
+
+
+def _mapped(work: Callable[[Path], StudyState], paths: Sequence[Path], jobs: int) -> Iterable[StudyState]:
+    if jobs == 1:
+        yield from map(work, paths)
+        return
+    from concurrent.futures import ProcessPoolExecutor
+    from multiprocessing import get_context
+
+    # a fresh interpreter: threads of the numeric libraries do not survive a fork
+    with ProcessPoolExecutor(min(jobs, len(paths)), mp_context=get_context("spawn")) as pool:
+        try:
+            yield from pool.map(work, paths)
+        except BaseException:
+            pool.shutdown(cancel_futures=True)
+            raise
+
+
+def _one(
+    path: Path, *, root: Path, since: Path | None, out: Path | None, nodes: tuple[Path, ...], options: Mapping[str, Any]
+) -> StudyState:
+    """Run one study; whatever is wrong with it stays with it."""
+    name = path.relative_to(root)
+    started = time.perf_counter()
+    try:
+        row = _ran(path, name, since, out, nodes, options)
+    except InputRefused as error:
+        more = f" and {len(error.problems) - 1} more" if len(error.problems) > 1 else ""
+        return StudyState(str(name), FAILED, message=f"{error.problems[0]}{more}", seconds=_passed(started))
+    except (EvenloadError, OSError) as error:
+        return StudyState(str(name), FAILED, message=str(error), seconds=_passed(started))
+    except Exception as error:  # a fault in one study must not lose the results of the others
+        message = f"internal fault ({type(error).__name__}: {error}); run this study alone to see more"
+        return StudyState(str(name), FAILED, message=message, seconds=_passed(started))
+    return StudyState(str(name), **row, seconds=_passed(started))
+
+
+def _passed(started: float) -> float:
+    return time.perf_counter() - started
+
+
+def place_of(name: Path, records: Path) -> Path:
+    """Return the record folder of a study: ``a/study.toml`` has ``a``, ``a/b.toml`` has ``a/b``."""
+    return records / (name.parent if name.name == "study.toml" and name.parent != Path() else name.with_suffix(""))
+
+
+def _ran(
+    path: Path,
+    name: Path,
+    since: Path | None,
+    out: Path | None,
+    nodes: tuple[Path, ...],
+    options: Mapping[str, Any],
+) -> dict[str, Any]:
+    from benchmark.api.session import load_study, run
+    from benchmark.record.write import read_record
+
+    before = None
+    if since is not None and (place_of(name, since) / "record.json").is_file():
+        before = read_record(place_of(name, since))
+    result = run(load_study(path, nodes), **options)
+    if out is not None:
+        place_of(name, out).parent.mkdir(parents=True, exist_ok=True)
+        result.save(place_of(name, out))
+    return _compared(before, result.record)
+
+
+def _compared(before: Mapping[str, Any] | None, now: Mapping[str, Any]) -> dict[str, Any]:
+    from benchmark.record.changes.results import result_changes
+
+    verdict, required = now["verdict"], now["study"]["required_advantage"]
+    advantage = verdict["advantage"]
+    row = {
+        "state": NEW,
+        "verdict_new": verdict["word"],
+        "advantage_new": advantage,
+        "distance": advantage / required if isinstance(advantage, float) else None,
+    }
+    if before is None:
+        return row
+    moved, _ = result_changes(before, now)
+    old = before["verdict"]
+    asked = before["study"]["required_advantage"]
+    return row | {
+        "state": FLIPPED if old["word"] != verdict["word"] else MOVED if moved else UNCHANGED,
+        "verdict_old": old["word"],
+        "advantage_old": old["advantage"],
+        "results_moved": len(moved),
+        "message": "" if asked == required else f"required advantage was {asked:g}",
+    }

@@ -1,0 +1,153 @@
+"""The Python interface to what changed and why."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+from benchmark.api.result import Result
+from benchmark.api.views import StudyView
+from benchmark.errors import UsageError
+
+if TYPE_CHECKING:
+    import pandas
+
+    from benchmark.record.changes import State
+
+__all__ = ["Changes", "changes"]
+
+Place = str | Path
+End = StudyView | Result | Place
+#: tables of a comparison of two studies, in the order of the report
+TABLES = ("inputs", "other", "attribution", "chain", "results")
+
+
+@dataclass(frozen=True, eq=False)
+class Changes:
+    """What changed between two states.
+
+    Attributes
+    ----------
+    data : mapping
+        Everything as plain data, as ``evenload changes --format json`` prints it. Two sets have inputs only.
+    """
+
+    data: Mapping[str, Any]
+
+    @property
+    def flipped(self) -> bool:
+        """Tell whether the verdict is another one; never for two sets."""
+        return bool(self.data.get("verdict", {}).get("flipped", False))
+
+    @property
+    def frames(self) -> dict[str, pandas.DataFrame]:
+        """Return the tables by name; of ``attribution`` one row for each part."""
+        import pandas
+
+        found = {name: pandas.DataFrame(self.data[name]) for name in TABLES if name in self.data}
+        if "attribution" in found:
+            found["attribution"] = pandas.DataFrame(part_rows(self.data["attribution"]))
+        return found
+
+
+def part_rows(attribution: Iterable[Mapping[str, Any]]) -> list[dict[str, Any]]:
+    """Return one row for each part of each quantity, the total last."""
+    rows: list[dict[str, Any]] = []
+    for item in attribution:
+        head = {name: item[name] for name in ("quantity", "scale", "unit")}
+        rows += [{**head, "cause": cause, "part": part} for cause, part in item["parts"].items()]
+        rows.append({**head, "cause": "total", "part": item["total"]})
+    return rows
+
+
+def changes(
+    old: End,
+    new: End,
+    *,
+    nodes: Iterable[Place] = (),
+    anyway: bool = False,
+    draws: int | None = None,
+    seed: int | None = None,
+    jobs: int = 1,
+) -> Changes:
+    """Say what changed from one state of a study, or of a set, to another, and why.
+
+    Parameters
+    ----------
+    old, new : Result, StudyView, str or Path
+        A result; a study (it is run); or the place of a record folder, ``record.json``, ``report.html``, study file,
+        set file, or ``REVISION:path`` of a set in a git repository.
+    nodes : iterable of path, optional
+        Further folders of sets, for study files.
+    anyway : bool
+        Compare also records that answer different questions.
+    draws, seed : int, optional
+        For studies that are run, as in ``run``.
+    jobs : int
+        Processes for draws; no digit depends on their number.
+
+    Returns
+    -------
+    Changes
+        Inputs, results, verdict, the parts of each change and what lies between. Of two sets: values only.
+
+    Raises
+    ------
+    UsageError
+        A set against a study, or two records that answer different questions.
+    EvenloadError
+        A place that holds nothing that can be compared.
+    InputRefused
+        With every problem of the files.
+    """
+    from benchmark.record.changes import compare_sets, compare_states, set_state
+
+    kinds = [_kind(end) for end in (old, new)]
+    if kinds.count("set") == 1:
+        message = f"{old} and {new} cannot be compared: one is a set of values, the other a study or its record"
+        raise UsageError(message)
+    if kinds[0] == "set":
+        return Changes(compare_sets(set_state(str(old)), set_state(str(new))))
+    told = {"nodes": list(nodes), "draws": draws, "seed": seed, "jobs": jobs}
+    states = [_state(end, kind, word, told) for end, kind, word in zip((old, new), kinds, ("old", "new"), strict=True)]
+    return Changes(compare_states(*states, anyway=anyway, jobs=jobs))
+
+
+def _kind(end: End) -> str:
+    """Return what an end is: result, study, record or set."""
+    if isinstance(end, Result):
+        return "result"
+    if isinstance(end, StudyView):
+        return "study"
+    path = Path(end)
+    if path.is_dir() or path.suffix.lower() in (".json", ".html", ".htm"):
+        return "record"
+    if path.is_file() and is_study(path):
+        return "study"
+    return "set"
+
+
+def is_study(path: Path) -> bool:
+    """Tell whether a TOML file is a study; one that cannot be read is none."""
+    import tomllib
+
+    try:
+        data = tomllib.loads(path.read_text(encoding="utf-8"))
+    except (OSError, ValueError, RecursionError):
+        return False
+    return "workload" in data or "contender" in data
+
+
+def _state(end: End, kind: str, word: str, told: Mapping[str, Any]) -> State:
+    from benchmark.api.session import load_study, run
+    from benchmark.record.changes import State, open_state, read_any_record
+
+    if isinstance(end, Result):
+        return open_state(f"the {word} result", end.record)
+    if kind == "record":
+        return open_state(str(end), read_any_record(Path(str(end))))
+    view = end if isinstance(end, StudyView) else load_study(end, told["nodes"])
+    result = run(view, draws=told["draws"], seed=told["seed"], jobs=told["jobs"])
+    return State(str(view.path), result.record, view.study)

@@ -1,0 +1,115 @@
+"""The command ``batch``: every study of a folder, and which verdicts flipped (layer 10)."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import sys
+import time
+from collections.abc import Sequence
+from dataclasses import asdict
+from pathlib import Path
+from typing import TYPE_CHECKING, Any
+
+import typer
+
+from benchmark.cli.changes import FORMATS
+from benchmark.cli.commands import check_folders
+from benchmark.errors import UsageError
+
+if TYPE_CHECKING:
+    from benchmark.api.batch import Batched
+
+__all__ = ["batch_command"]
+
+#: seconds between two looks at the files
+PAUSE = 1.0
+
+
+def batch_command(
+    folder: Path,
+    *,
+    since: Path | None,
+    out: Path | None,
+    form: str,
+    draws: int | None,
+    seed: int | None,
+    jobs: int,
+    freeze_time: str,
+    watch: bool,
+    nodes: Sequence[Path],
+) -> int:
+    """Run the studies and print one table; with ``watch`` again after every change of a file. Returns the status."""
+    from benchmark import api
+    from benchmark.api.batch import input_files
+
+    check_folders(nodes)
+    if form not in FORMATS:
+        message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
+        raise UsageError(message)
+    options: dict[str, Any] = {"out": out, "nodes": nodes, "draws": draws, "seed": seed, "jobs": jobs}
+    while True:
+        seen = input_files([folder, *nodes])
+        found = api.batch(folder, since=since, created=freeze_time or None, told=_told, **options)
+        _print(found, form)
+        if not watch:
+            return found.status
+        typer.echo("\nWaiting for a change of an input file; Ctrl-C stops.")
+        _wait(seen, [folder, *nodes])
+
+
+def _wait(seen: dict[str, tuple[int, int]], folders: Sequence[Path]) -> None:
+    """Wait until a file is not as it was when the last run began."""
+    from benchmark.api.batch import input_files
+
+    while input_files(folders) == seen:
+        time.sleep(PAUSE)
+
+
+def _told(done: int, of: int) -> None:
+    if sys.stderr.isatty():
+        sys.stderr.write(f"\r\x1b[K{done} of {of} studies" if done < of else "\r\x1b[K")
+        sys.stderr.flush()
+
+
+def _print(found: Batched, form: str) -> None:
+    rows = [asdict(row) for row in found.rows]
+    if form == "json":
+        typer.echo(json.dumps({"seconds": found.seconds, "studies": rows}, ensure_ascii=False, indent=1))
+    elif form == "csv":
+        written = io.StringIO()
+        writer = csv.DictWriter(written, list(rows[0]), lineterminator="\n")
+        writer.writeheader()
+        writer.writerows({name: "" if value is None else value for name, value in row.items()} for row in rows)
+        typer.echo(written.getvalue(), nl=False)
+    else:
+        _show(found)
+
+
+def _show(found: Batched) -> None:
+    from benchmark.cli.layout import Block, Note, Table, show_blocks
+
+    table = [
+        (
+            row.study,
+            row.state,
+            _number(row.advantage_old),
+            _number(row.advantage_new),
+            "-" if row.distance is None else f"x {row.distance:.4g}",
+            row.verdict_new if row.verdict_old in ("", row.verdict_new) else f"{row.verdict_old} -> {row.verdict_new}",
+        )
+        for row in found.rows
+    ]
+    columns = ("study", "state", "advantage before", "advantage", "of the required", "verdict")
+    states = [row.state for row in found.rows]
+    counts = ", ".join(f"{states.count(state)} {state}" for state in dict.fromkeys(states))
+    blocks: list[Block] = [Table("", columns, table)]
+    blocks += [Note(f"{row.study}: {row.message}") for row in found.rows if row.message]
+    show_blocks(
+        [*blocks, Note(f"{len(states)} {'study' if len(states) == 1 else 'studies'}: {counts}; {found.seconds:.1f} s.")]
+    )
+
+
+def _number(value: float | str | None) -> str:
+    return "-" if value is None else f"{value:.5g}" if isinstance(value, float) else value

@@ -1,0 +1,177 @@
+"""``evenload changes``: records, reports, studies, sets and revisions; text, csv, json; every message."""
+
+from __future__ import annotations
+
+import csv
+import io
+import json
+import shutil
+import subprocess
+from collections.abc import Callable
+from pathlib import Path
+
+import pytest
+
+from benchmark.record.changes import read_any_record
+from benchmark.report.page import embedded_record
+from tests.cli.conftest import Ran, read
+from tests.fixed_displacement import fixed_displacement
+
+Run = Callable[..., Ran]
+pytestmark = pytest.mark.usefixtures("quick")
+
+
+@pytest.fixture
+def two(tmp_path: Path) -> tuple[Path, Path]:
+    """Two studies that differ in the coefficient."""
+    old = fixed_displacement().write(tmp_path / "old")
+    return old, fixed_displacement(coefficient=("170.0", "0.05")).write(tmp_path / "new")
+
+
+@pytest.fixture
+def records(evenload: Run, two: tuple[Path, Path], tmp_path: Path) -> tuple[Path, Path]:
+    for name, study in zip(("a", "b"), two, strict=True):
+        ran = evenload("run", study, "--out", name, "--quiet", "--freeze-time", "2026-01-31T00:00:00Z")
+        assert ran.status == 0, ran.err
+    return tmp_path / "a", tmp_path / "b"
+
+
+def test_records_reports_and_studies_say_the_same(evenload: Run, two, records, tmp_path: Path):
+    first = evenload("changes", *records, "--format", "json")
+    assert first.status == 0, first.err
+    found = json.loads(first.out)
+    assert found["attribution"][0]["total"] == pytest.approx(-0.32504, abs=5e-6)
+    for folder in records:
+        script = f'<script type="application/json" id="record">{embedded_record(read(folder, "record.json"))}</script>'
+        (tmp_path / f"{folder.name}.html").write_text(f"<html>{script}</html>", encoding="utf-8")
+    reports = json.loads(evenload("changes", "a.html", "b.html", "--format", "json").out)
+    studies = json.loads(evenload("changes", *two, "--format", "json").out)
+    for other in (reports, studies):
+        for name in ("inputs", "attribution", "chain", "results", "identical", "verdict"):
+            assert other[name] == found[name], name
+
+
+def test_text_names_inputs_parts_chain_and_what_is_identical(evenload: Run, records):
+    ran = evenload("changes", *records, "--additive")
+    assert ran.status == 0, ran.err
+    words = " ".join(ran.out.split())
+    for text in (
+        "Verdict flipped: conditional go -> not decidable on this evidence",
+        "film-switch.actuator_coefficient",
+        "-0.32504 (x 0.7225)",
+        "+69.13 aJ",
+        "new inputs at the old supply",
+        "251.2 kohm",
+        "Results identical to the last bit",
+        "contender stated-reference: energy",
+    ):
+        assert text in words, text
+    assert all(len(line) <= 100 for line in ran.out.splitlines())
+
+
+def test_csv_has_the_same_numbers_with_all_digits(evenload: Run, records):
+    rows = list(csv.DictReader(io.StringIO(evenload("changes", *records, "--format", "csv").out)))
+    found = json.loads(evenload("changes", *records, "--format", "json").out)
+    parts = [row for row in rows if row["section"] == "part, logarithm" and row["node"] == "advantage"]
+    assert {row["name"]: float(row["part"]) for row in parts} == found["attribution"][0]["parts"] | {
+        "total": found["attribution"][0]["total"]
+    }
+    assert [row["name"] for row in rows if row["section"] == "identical"] == found["identical"]
+    assert [row["name"] for row in rows if row["section"] == "input"] == [row["key"] for row in found["inputs"]]
+
+
+def test_draws_on_both_sides_are_split(evenload: Run, two):
+    ran = evenload("changes", *two, "--draws", "32")
+    assert ran.status == 0, ran.err
+    assert "part of the moved best estimates" in ran.out
+
+
+def test_another_question(evenload: Run, records, tmp_path: Path):
+    fixed_displacement(required="2.0").write(tmp_path / "other")
+    refused = evenload("changes", records[0], "other/study.toml")
+    assert refused.status == 2
+    assert "answer different questions (required advantage: 1.5 -> 2); --anyway" in refused.err
+    asked = evenload("changes", records[0], "other/study.toml", "--anyway")
+    assert asked.status == 0
+    assert "Note: the criteria of the answer changed: required advantage." in asked.out
+
+
+def test_two_sets(evenload: Run, tmp_path: Path):
+    for name, case in (("old", {}), ("new", {"coefficient": ("170.0", "0.05")})):
+        fixed_displacement(**case).write(tmp_path / name)
+    place = "nodes/technologies/film-switch.toml"
+    ran = evenload("changes", f"old/{place}", f"new/{place}", "--format", "json")
+    assert ran.status == 0, ran.err
+    found = json.loads(ran.out)
+    assert [row["key"] for row in found["inputs"]] == ["actuator_coefficient", "declared_supply"]
+    assert "attribution" not in found
+    assert "Inputs that changed" in evenload("changes", f"old/{place}", f"new/{place}").out
+    same = evenload("changes", f"old/{place}", f"old/{place}")
+    assert "Inputs: none changed." in same.out
+    mixed = evenload("changes", f"old/{place}", "new/study.toml")
+    assert mixed.status == 2
+    assert "one is a set of values, the other a study or its record" in mixed.err
+
+
+def _git(*arguments: str) -> None:
+    names = ["-c", "user.name=nobody", "-c", "user.email=nobody@example.invalid"]
+    subprocess.run(["git", *names, *arguments], check=True, capture_output=True)
+
+
+@pytest.mark.skipif(shutil.which("git") is None, reason="git is not installed")
+def test_a_revision_of_a_set(evenload: Run, tmp_path: Path):
+    fixed_displacement().write(tmp_path)
+    _git("init", "-q")
+    _git("add", ".")
+    _git("commit", "-q", "-m", "first")
+    fixed_displacement(coefficient=("170.0", "0.05")).write(tmp_path)
+    place = "nodes/technologies/film-switch.toml"
+    ran = evenload("changes", f"HEAD:{place}", place, "--format", "json")
+    assert ran.status == 0, ran.err
+    row = json.loads(ran.out)["inputs"][0]
+    assert (row["key"], row["old"], row["new"]) == ("actuator_coefficient", 200.0, 170.0)
+    absent = evenload("changes", f"HEAD:{place}x", place)
+    assert absent.status == 3
+    assert "there is no such file at HEAD" in absent.err
+    unknown = evenload("changes", f"no-such:{place}", place)
+    assert unknown.status == 3
+    assert "git cannot give this revision" in unknown.err
+    study = evenload("changes", "HEAD:study.toml", place)
+    assert study.status == 3
+    assert "is a study; of a revision only a set of values can be compared" in study.err
+
+
+def test_without_git(evenload: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch):
+    fixed_displacement().write(tmp_path)
+    monkeypatch.setenv("PATH", str(tmp_path))
+    ran = evenload("changes", "HEAD:nodes/technologies/film-switch.toml", "nodes/technologies/film-switch.toml")
+    assert ran.status == 2
+    assert "git is not installed; give a file instead" in ran.err
+
+
+@pytest.mark.parametrize(
+    ("arguments", "status", "message"),
+    [
+        (("absent", "absent.toml"), 3, "absent: there is no such file; a revision is written REVISION:path"),
+        (("empty.html", "empty.html"), 3, "empty.html: holds no record; a report.html written by evenload run does"),
+        (("gone.html", "gone.html"), 3, "gone.html: is not a readable report"),
+        (("other.html", "other.html"), 3, "other.html: record schema 7 is not the one this version reads (1)"),
+        (("ratio.json", "ratio.json"), 3, "ratio.json: holds ratios only"),
+        (("a", "b", "--format", "pdf"), 2, "--format: 'pdf' is not one of text, csv, json"),
+    ],
+)
+def test_messages(evenload: Run, tmp_path: Path, arguments, status: int, message: str):
+    (tmp_path / "empty.html").write_text("<html></html>", encoding="utf-8")
+    (tmp_path / "other.html").write_text('<script id="record">{"schema": 7}</script>', encoding="utf-8")
+    (tmp_path / "ratio.json").write_text('{"schema": 1, "ratio_only": "yes"}', encoding="utf-8")
+    ran = evenload("changes", *arguments)
+    assert ran.status == status
+    assert message in ran.err
+
+
+def test_a_whole_report_gives_its_record_back(records, tmp_path: Path):
+    from benchmark.report.folder import report_page
+
+    record = read(records[0], "record.json")
+    (tmp_path / "page.html").write_text(report_page(record), encoding="utf-8")
+    assert read_any_record(tmp_path / "page.html") == record
