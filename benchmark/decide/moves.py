@@ -113,10 +113,7 @@ def _moves_of(values: Mapping[str, Value], shaping: Sequence[str]) -> list[tuple
     for key, value in values.items():
         if value.name in shaping:
             continue
-        span = range_of(value)
-        if span is None and value.formula:
-            continue  # it moves with the values its formula names, which are moved themselves
-        moves += [(key, float(value.si[0]), end) for end in span or _probes(value)]
+        moves += [(key, float(value.si[0]), end) for end in range_of(value) or _probes(value)]
     return moves
 
 

@@ -218,7 +218,7 @@ def run_study(
         draws or study.draws,
         jobs,
         lambda share: progress("drawing all ranges together", 0.82 + 0.13 * share),
-        effective,
+        [move.key for move in verdict.moves if move.matters and move.advantage_low != move.advantage_high],
     )
     progress("writing the record", 0.95)
     sources = library.sources
