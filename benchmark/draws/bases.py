@@ -26,7 +26,10 @@ def hermite(u: Array) -> Array:
     """Return He_k(z(u)) / sqrt(k!) for k = 0 to ``DEGREE``, shape (k, draw); z: inverse normal distribution."""
     from scipy.special import ndtri
 
-    z = ndtri(u)
+    return _hermite_at(ndtri(u))
+
+
+def _hermite_at(z: Array) -> Array:
     found = [np.ones_like(z), z]
     for k in range(1, DEGREE):
         found.append((z * found[k] - np.sqrt(k) * found[k - 1]) / np.sqrt(k + 1.0))
@@ -43,9 +46,12 @@ def legendre(u: Array) -> Array:
 
 
 def hermite_coefficients(function: Callable[[Array], Array]) -> Array:
-    """Return the Hermite coefficients (k,) of a function of u, by Gauss quadrature in z."""
+    """Return the Hermite coefficients (k,) of a function of u, by Gauss quadrature in z; the function is finite at 1.
+
+    The polynomials are taken at z itself: u of the outermost places rounds to 1.
+    """
     from scipy.special import ndtr
 
     z, weight = np.polynomial.hermite_e.hermegauss(64)
     u = ndtr(z)
-    return np.asarray(hermite(u) @ (weight * function(u)) / weight.sum())
+    return np.asarray(_hermite_at(z) @ (weight * function(u)) / weight.sum())
