@@ -214,7 +214,26 @@ def trade(
     points: int = 17,
     told: Told | None = None,
 ) -> Needed:
-    """Find the value of ``second`` that each value of ``first`` asks for; parameters as in ``need``.
+    """Find the value of one parameter that each value of another asks for.
+
+    Parameters
+    ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
+    first : str
+        Name as in ``need`` of the value that is varied.
+    second : str
+        Name of the value that is solved for.
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    over : sequence of (low, high), optional
+        Ranges for the names, in order, in the units of the values.
+    points : int
+        Grid points of each scan.
+    told : callable, optional
+        Told how many comparisons have been made.
 
     Returns
     -------
@@ -258,17 +277,34 @@ def sheet(
     seed: int = 0,
     told: Told | None = None,
 ) -> Needed:
-    """Return what each value of the candidate must be, alone; other parameters as in ``need``.
+    """Return what each value of the candidate must be, alone, for the level.
 
     Parameters
     ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
     names : iterable of str, optional
         Values to be on the sheet; by default the decisive ones, then those with a range that move the advantage.
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    points : int
+        Grid points of each scan.
     probability : float, optional
         Also state the value, and the spread, at which the level is reached with this probability when all stated ranges
         are drawn together.
-    draws, seed : int
-        How many draws (a power of two from 16), and from which seed.
+    draws : int
+        How many draws: a power of two from 16.
+    seed : int
+        Seed of the draws.
+    told : callable, optional
+        Told how many comparisons have been made.
+
+    Returns
+    -------
+    Needed
+        One row per required value.
 
     Raises
     ------
@@ -310,7 +346,22 @@ def opportunity(
     points: int = 13,
     told: Told | None = None,
 ) -> Needed:
-    """Return the map of the advantage over the deadline and ``kind``: "activity" or "duty"; parameters as in ``need``.
+    """Return the map of the advantage over the deadline and the activity or the duty.
+
+    Parameters
+    ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
+    kind : str
+        Second axis: "activity", or "duty" (share of the time in which the block is clocked).
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    points : int
+        Grid points per axis.
+    told : callable, optional
+        Told how many comparisons have been made.
 
     Returns
     -------
@@ -340,7 +391,23 @@ def opportunity(
 def improve(
     study: StudyView | Place, *, advantage: float | None = None, pair: str = "", told: Told | None = None
 ) -> Needed:
-    """Return the largest advantage that perfecting one physical term could give; parameters as in ``need``.
+    """Return the largest advantage that perfecting one physical term of the candidate could give.
+
+    Parameters
+    ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    told : callable, optional
+        Told how many comparisons have been made.
+
+    Returns
+    -------
+    Needed
+        One row per term, then terms perfected together.
 
     Raises
     ------
@@ -370,7 +437,23 @@ def flips(
 ) -> Needed:
     """Return the smallest sets of inputs that, inside their ranges, change the side of the level.
 
-    ``up_to``: largest set looked for, 1 to 3; other parameters as in ``need``.
+    Parameters
+    ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
+    up_to : int
+        Largest set looked for, 1 to 3.
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    told : callable, optional
+        Told how many comparisons have been made.
+
+    Returns
+    -------
+    Needed
+        One row per input of every set, the least implausible set first; none when there is no such set.
 
     Raises
     ------

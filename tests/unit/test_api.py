@@ -30,15 +30,22 @@ STAMP = "2026-01-31T00:00:00Z"
 
 #: everything a user may import; a change here is a change of the interface
 NAMES = [
+    "Needed",
     "Result",
     "SetView",
     "StudyView",
     "check",
+    "flips",
+    "improve",
     "load_result",
     "load_set",
     "load_study",
+    "need",
+    "opportunity",
     "run",
+    "sheet",
     "technologies",
+    "trade",
     "what_if",
     "worked_study",
 ]
@@ -56,6 +63,7 @@ RESULT = [
     "text",
 ]
 MEMBERS = {
+    "Needed": ["columns", "facts", "frame", "heading", "rows", "text"],
     "Result": [*RESULT, "verdict"],
     "SetView": ["frame", "id", "nodes", "parameters", "sources", "title"],
     "StudyView": ["id", "library", "nodes", "path", "sets", "study", "title", "warnings", "what_if"],
