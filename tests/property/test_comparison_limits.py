@@ -230,7 +230,7 @@ def test_costs_on_the_new_side_never_help_it(a: Any, b: Any, k: float):
     assert at(overhead_power=v(number(k), "nW")) < base
     assert at(supply_efficiency=v(number(1 / k))) < base
     assert at(residual=min(0.05 * k, 1.0)) <= base
-    assert at(wake=k) < base
+    assert at(wake=k) <= base  # a block is gated where that pays: a dear one may stay on
 
 
 @few
