@@ -96,6 +96,11 @@ class Table:
     anchors: tuple[str, ...] = ()
     kind: str = "table"
 
+    @property
+    def heads(self) -> tuple[Cell, ...]:
+        """Column headers as cells: words too long for a column may break anywhere."""
+        return tuple(Cell(name) for name in self.columns)
+
 
 @dataclass(frozen=True)
 class Figure:
