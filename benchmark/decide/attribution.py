@@ -43,7 +43,7 @@ FOLLOWS, ROUNDED = 1.0e-12, 1.0e-3
 #: a smaller difference of ln(advantage) between the two ways to the new state is rounding
 SAME_STATE = 1.0e-9
 #: combinations evaluated at once
-CHUNK = 256
+CHUNK = 1024
 #: what is split: name, unit
 _QUANTITIES = (
     ("advantage", "1"),
