@@ -204,8 +204,8 @@ def _followed(trials: Trials, profile: Profile, need: Need, looks: Sequence[_Loo
         found, x = look.profile.advantage, look.profile.x
         if float(np.nanmax(found)) < best.advantage:
             continue
-        # equal to rounding is equal: the furthest of them is meant
-        largest = np.flatnonzero(found >= np.nanmax(found) * (1.0 - 1e-12))
+        # what no longer changes is equal: the furthest of them is meant
+        largest = np.flatnonzero(found >= np.nanmax(found) * (1.0 - SETTLED))
         furthest = look.furthest
         position = furthest if furthest in largest else int(largest[0])
         cut = any(edge.x == x[furthest] for edge in look.profile.edges)
