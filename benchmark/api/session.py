@@ -172,6 +172,7 @@ def run(
     draws: int | None = None,
     seed: int | None = None,
     jobs: int = 1,
+    need: bool = False,
 ) -> Result:
     """Run a study.
 
@@ -183,10 +184,14 @@ def run(
         Time stamp to write into the record instead of the clock, for records that are equal byte by byte.
     progress : callable, optional
         Told the name of each step and the share done [1].
-    draws, seed : int, optional
-        Draws of all ranges together (0: none, else a power of two from 16) and their seed, instead of the study's.
+    draws : int, optional
+        Draws of all ranges together instead of the study's: 0 for none, else a power of two from 16.
+    seed : int, optional
+        Seed of the draws instead of the study's.
     jobs : int
         Processes for the draws; no digit depends on their number.
+    need : bool
+        Also work out break-evens, required values, who must improve, the smallest flipping set and maps.
 
     Returns
     -------
@@ -207,6 +212,11 @@ def run(
     settings = _draw_settings(loaded.study.draws, draws, seed, jobs)
     record = run_study(loaded.study, loaded.library, created=created, draws=settings, jobs=jobs, **told)
     record["what_if"] = dict(loaded.what_if)
+    if need:
+        from benchmark.api.need_blocks import need_blocks
+        from benchmark.record.results import clean
+
+        record["need"] = clean(need_blocks(loaded))
     return Result(record)
 
 

@@ -51,6 +51,9 @@ Draws = Annotated[
     int | None, typer.Option("--draws", help="Draws of all ranges together: 0 for none, else a power of two from 16.")
 ]
 Seed = Annotated[int | None, typer.Option("--seed", help="Seed of the draws; default: that of the study.")]
+Need = Annotated[
+    bool, typer.Option("--need", help="Also break-evens, required values, who must improve, flipping set, maps.")
+]
 Jobs = Annotated[int, typer.Option("--jobs", help="Processes for the draws; no digit depends on their number.")]
 
 
@@ -153,11 +156,14 @@ def run(
     draws: Draws = None,
     seed: Seed = None,
     jobs: Jobs = 1,
+    need: Need = False,
 ) -> None:
     """Run a study: verdict on the terminal, record folder with report, tables and figures."""
     from benchmark.cli.commands import run_command
 
-    word = run_command(study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only, draws, seed, jobs)
+    word = run_command(
+        study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only, draws, seed, jobs, need
+    )
     if gate:
         raise typer.Exit(GATE[word])
 
@@ -170,13 +176,16 @@ def demo(
     draws: Draws = None,
     seed: Seed = None,
     jobs: Jobs = 1,
+    need: Need = False,
 ) -> None:
     """Run the worked study that comes with the program (invented switch, published CMOS)."""
     from benchmark.cli.commands import run_command
     from benchmark.sets.library import shipped_reports
 
     study = shipped_reports() / "always-on-hub" / "study.toml"
-    run_command(study, out or Path("evenload-demo"), [], {}, freeze_time, quiet, draws=draws, seed=seed, jobs=jobs)
+    run_command(
+        study, out or Path("evenload-demo"), [], {}, freeze_time, quiet, draws=draws, seed=seed, jobs=jobs, need=need
+    )
 
 
 @app.command()
@@ -364,6 +373,7 @@ def changes(
     draws: Draws = None,
     seed: Seed = None,
     jobs: Jobs = 1,
+    need: Need = False,
     nodes: Nodes = None,
 ) -> None:
     """Show what changed between two runs, and how much of it is due to each changed input."""

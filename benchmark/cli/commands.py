@@ -48,6 +48,7 @@ def run_command(
     draws: int | None = None,
     seed: int | None = None,
     jobs: int = 1,
+    need: bool = False,
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
     from benchmark import api
@@ -55,7 +56,9 @@ def run_command(
     check_folders(nodes)
     study = api.load_study(study_path, nodes, overrides)
     folder = out or Path(f"evenload-{study.id}")
-    result = api.run(study, created=freeze_time or None, progress=_Steps(quiet), draws=draws, seed=seed, jobs=jobs)
+    result = api.run(
+        study, created=freeze_time or None, progress=_Steps(quiet), draws=draws, seed=seed, jobs=jobs, need=need
+    )
     if ratio_only:
         result = result.ratio_only()
     started = time.perf_counter()

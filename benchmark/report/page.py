@@ -12,6 +12,7 @@ from benchmark.record.shown_units import in_units_of_record
 from benchmark.record.write import to_json
 from benchmark.report import section_evidence as evidence
 from benchmark.report import section_method as method
+from benchmark.report import section_need as needs
 from benchmark.report import section_question as asked
 from benchmark.report import section_results as results
 from benchmark.report import section_strength as strength
@@ -83,6 +84,7 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
         sure.uncertainty(record, shown["advantage-distribution"]),
         results.moves(record, shown["input-swings"]),
         sure.next_measurement(record),
+        *needs.needed(record),
         results.nodes(record, shown["advantage-by-node"], steps),
         evidence.anchors(record),
         evidence.closed_form(record),
