@@ -35,7 +35,7 @@ from tests.random_sets import (
 from tests.studies import v
 
 GO, CONDITIONAL, FAILED, NOT_BETTER, UNDECIDED = WORDS
-few = costly()
+few = costly(6)
 
 
 # -- limits (27 to 35) ---------------------------------------------------------------------------------------------

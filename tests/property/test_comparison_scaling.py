@@ -38,7 +38,7 @@ from tests.random_sets import (
 from tests.studies import v
 
 GO, CONDITIONAL, FAILED, NOT_BETTER, UNDECIDED = WORDS
-few = costly()
+few = costly(6)
 
 
 # -- scaling laws (11 to 20, 22 to 26) -----------------------------------------------------------------------------

@@ -33,7 +33,7 @@ from tests.profiles import costly
 from tests.random_sets import POLICIES, RANGE, factor, lines, published, scaled, side_of, switches, two, with_policy
 from tests.studies import Inputs, v
 
-few = costly(4)
+few = costly(3)
 ERRORS = 6.0
 #: inputs of each model that are given a range
 DRAWN = {

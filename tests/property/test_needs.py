@@ -20,7 +20,7 @@ from tests.comparisons import load, planar, pressed, side, steep, study
 from tests.near import near
 from tests.profiles import costly
 
-few = costly(6)
+few = costly(3)
 #: relative resolution of the search over supplies in these studies
 RESOLUTION = 1e-9
 

@@ -13,7 +13,7 @@ from typing import Any
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import assume, given
 from hypothesis import strategies as st
 
 from benchmark.decide.notices import result_warnings
@@ -28,7 +28,7 @@ from tests.random_sets import factor, two
 from tests.studies import Inputs, technology, v
 from tests.unit.test_stress_gated import BASE, LOG_SLOPE
 
-few = costly()
+few = costly(6)
 BOLTZMANN, CHARGE = 1.380649e-23, 1.602176634e-19
 HEAT = "C V^2 of a net is below k T ln 2"
 SOUND = "is faster than sound crosses"
@@ -47,6 +47,7 @@ def warnings_of(inputs: Inputs) -> list[str]:
 @given(factor(0.02, 50.0), factor(0.02, 0.6), st.integers(-150, 150), st.integers(1, 4))
 def test_a_charge_energy_below_the_heat_of_erasure_is_flagged(ratio: float, supply: float, celsius: int, fan_out: int):
     """``ratio``: C V^2 of the only net over k T ln 2; the hottest temperature counts."""
+    assume(ratio != 1.0)  # there rounding decides
     heat = BOLTZMANN * (celsius + 273.15) * math.log(2.0)
     per_switch = ratio * heat / supply**2 / (2 * fan_out)  # an inverter input is two switches
     tiny = cmp.given("a", supply=supply, input_capacitance=v(number(per_switch * 1e15), "fF", unusual=True))

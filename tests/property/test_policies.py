@@ -40,7 +40,7 @@ from tests.random_sets import (
 from tests.studies import v
 
 GO, CONDITIONAL, FAILED, NOT_BETTER, UNDECIDED = WORDS
-few = costly()
+few = costly(6)
 
 
 # -- identities (3 to 6) -------------------------------------------------------------------------------------------

@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 import pytest
-from hypothesis import given
+from hypothesis import assume, given
 from hypothesis import strategies as st
 
 from benchmark.decide.gap import improvements
@@ -81,6 +81,7 @@ def test_idle_nearly_all_the_time_the_ranking_is_that_of_standing_power(a: Any, 
 @given(switches("a"), switches("b"), factor(0.3, 3.0), factor(1e-3, 1.0))
 def test_the_cap_binds_exactly_where_energy_over_area_and_cycle_reaches_it(a: Any, b: Any, k: float, megahertz: float):
     """Permitted up to f = cap A / E at a fixed point; a cap that does not bind changes nothing."""
+    assume(k != 1.0)  # there rounding decides
     base = two(a, b, **CLOCKED | {"requirements": {}}, values=clock(megahertz))
     base.study["candidate"]["knobs"]["supply"] |= {"low": D("0.3"), "high": D("0.3")}
     free = compare(load(base))

@@ -10,7 +10,7 @@ from benchmark.circuits.transfer import functional, largest_square, transfer_cur
 from tests.factories import ohmic_pair
 from tests.profiles import examples
 
-QUICK = settings(max_examples=examples(25))
+QUICK = settings(max_examples=examples(16))
 DECADES = st.floats(0.1, 12.0)
 LOW = st.floats(0.0, 0.45)
 HIGH = st.floats(0.55, 1.0)

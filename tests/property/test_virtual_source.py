@@ -39,7 +39,7 @@ def transistors(draw: st.DrawFn) -> vs.Transistor:
 GRID = np.linspace(0.0, 1.2, 49)
 
 
-@settings(max_examples=examples(150))
+@settings(max_examples=examples(100))
 @given(transistors(), _between(0.02, 1.2))
 def test_current_rises_with_both_voltages(t: vs.Transistor, fixed: float):
     # V_corr falls with the path voltage; where nothing else rises (no barrier lowering, very small V_dsat) so does the
@@ -52,7 +52,7 @@ def test_current_rises_with_both_voltages(t: vs.Transistor, fixed: float):
     assert (np.diff(by_path) > 0.0).all()
 
 
-@settings(max_examples=examples(100))
+@settings(max_examples=examples(60))
 @given(transistors(), _between(0.1, 10.0))
 def test_current_scales_with_width(t: vs.Transistor, factor: float):
     wider = replace(t, width=t.width * factor)
@@ -61,7 +61,7 @@ def test_current_scales_with_width(t: vs.Transistor, factor: float):
     )
 
 
-@settings(max_examples=examples(100))
+@settings(max_examples=examples(60))
 @given(transistors(), _between(0.01, 0.2))
 def test_a_threshold_shift_is_a_control_shift(t: vs.Transistor, shift: float):
     shifted = replace(t, threshold=t.threshold + shift)
@@ -72,7 +72,7 @@ def test_a_threshold_shift_is_a_control_shift(t: vs.Transistor, shift: float):
     )
 
 
-@settings(max_examples=examples(150))
+@settings(max_examples=examples(100))
 @given(transistors(), _between(0.4, 1.1))
 def test_calibration_finds_the_transistor_that_made_the_targets(t: vs.Transistor, supply: float):
     v = np.float64(supply)
@@ -85,7 +85,7 @@ def test_calibration_finds_the_transistor_that_made_the_targets(t: vs.Transistor
     np.testing.assert_allclose(vs.drain_current(again, np.float64(0.0), v), targets.off_current, rtol=1e-9)
 
 
-@settings(max_examples=examples(100))
+@settings(max_examples=examples(60))
 @given(transistors(), _between(0.1, 1.1))
 def test_open_stacks_leak_less_than_one_over_k(t: vs.Transistor, supply: float):
     def law(control: np.ndarray, path: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -105,7 +105,7 @@ def test_open_stacks_leak_less_than_one_over_k(t: vs.Transistor, supply: float):
     assert (np.diff(closed) < 0.0).all()
 
 
-@settings(max_examples=examples(100))
+@settings(max_examples=examples(60))
 @given(_between(0.06, 0.12), _between(0.0, 0.15), _between(0.2, 1.2))
 def test_exact_two_stack_saves_at_least_what_the_closed_form_says(swing: float, eta: float, supply: float):
     # the closed form leaves out the drain term of the lower device, which saves further
