@@ -49,7 +49,15 @@ class StudyState:
 
 @dataclass(frozen=True, eq=False)
 class Batched:
-    """All studies of a batch in the order of their files; ``seconds``: wall time [s]."""
+    """What became of the studies of a folder.
+
+    Attributes
+    ----------
+    rows : tuple of StudyState
+        One for each study, in the order of their files.
+    seconds : float
+        Wall time of all [s].
+    """
 
     rows: tuple[StudyState, ...]
     seconds: float
@@ -121,8 +129,14 @@ def batch(
         Default: ``out``, as it was before.
     out : str or Path, optional
         Where to write the new records; none are written without it.
-    nodes, created, draws, seed
-        As in ``load_study`` and ``run``.
+    nodes : iterable of path, optional
+        As in ``load_study``.
+    created : str, optional
+        As in ``run``.
+    draws : int, optional
+        As in ``run``.
+    seed : int, optional
+        As in ``run``.
     jobs : int
         Studies run at once, each in a process of its own; no digit depends on their number.
     told : callable, optional

@@ -76,15 +76,19 @@ def changes(
 
     Parameters
     ----------
-    old, new : Result, StudyView, str or Path
+    old : Result, StudyView, str or Path
         A result; a study (it is run); or the place of a record folder, ``record.json``, ``report.html``, study file,
         set file, or ``REVISION:path`` of a set in a git repository.
+    new : Result, StudyView, str or Path
+        The same.
     nodes : iterable of path, optional
         Further folders of sets, for study files.
     anyway : bool
         Compare also records that answer different questions.
-    draws, seed : int, optional
+    draws : int, optional
         For studies that are run, as in ``run``.
+    seed : int, optional
+        The same.
     jobs : int
         Processes for draws; no digit depends on their number.
 

@@ -97,6 +97,8 @@ class Result:
     def save(self, folder: str | Path) -> Path:
         """Write the record folder: record, summary, tables, figures and report.
 
+        Of an earlier run in the folder its criteria (policy, required advantage, thresholds) are kept with their date.
+
         Parameters
         ----------
         folder : str or Path
@@ -116,8 +118,26 @@ class Result:
         from benchmark.report.folder import fill_folder
 
         place = Path(folder)
-        write_folder(place, lambda inside: fill_folder(inside, self.record))
+        record = self.after(place).record
+        write_folder(place, lambda inside: fill_folder(inside, record))
         return place
+
+    def after(self, folder: str | Path) -> Result:
+        """Return the result as it is written into a folder that holds an earlier run of the study.
+
+        Parameters
+        ----------
+        folder : str or Path
+            A record folder; one that does not exist changes nothing.
+
+        Returns
+        -------
+        Result
+            With the date at which its criteria were first used there, and the criteria that were used before.
+        """
+        from benchmark.record.criteria import continued
+
+        return Result(continued(self.record, Path(folder)))
 
     def report(self, path: str | Path) -> Path:
         """Write the report alone: one page that opens off-line and holds the record.

@@ -52,6 +52,7 @@ def run_command(
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
     from benchmark import api
+    from benchmark.record.criteria import criteria_words
 
     check_folders(nodes)
     study = api.load_study(study_path, nodes, overrides)
@@ -61,10 +62,13 @@ def run_command(
     )
     if ratio_only:
         result = result.ratio_only()
+    result = result.after(folder)
     started = time.perf_counter()
     result.save(folder)
     seconds = time.perf_counter() - started
     typer.echo(result.text)
+    if words := criteria_words(result.record):
+        typer.echo(f"Criteria changed after results: {words}")
     if not quiet:
         size = (folder / "report.html").stat().st_size / 1e6
         typer.echo("")

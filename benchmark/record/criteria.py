@@ -1,7 +1,7 @@
 """The criteria of a study, locked by a digest at its first run into a record folder (layer 8).
 
 Policy, metric, required advantage and thresholds decide what counts as an answer. Their digest and the date of the
-first run stay in the record; a later run into the same folder with others says so.
+first run stay in the record; a later run of the study into the same folder with others says so.
 """
 
 from __future__ import annotations
@@ -9,11 +9,14 @@ from __future__ import annotations
 import hashlib
 import json
 from collections.abc import Mapping
+from pathlib import Path
 from typing import Any
 
+from benchmark.errors import EvenloadError
+from benchmark.record.write import read_record
 from benchmark.sets.study import Study
 
-__all__ = ["criteria_of", "criteria_row", "with_earlier"]
+__all__ = ["continued", "criteria_of", "criteria_row", "criteria_words", "with_earlier"]
 
 Row = dict[str, Any]
 
@@ -43,8 +46,63 @@ def criteria_of(study: Study) -> Row:
 def criteria_row(study: Study, created: str) -> Row:
     """Return the criteria of a run for its record: digest, date, and what they are."""
     stated = criteria_of(study)
-    text = json.dumps(stated, sort_keys=True, ensure_ascii=False)
-    return {"digest": hashlib.sha256(text.encode()).hexdigest(), "fixed": created, "stated": stated, "earlier": []}
+    return {"digest": _digest(stated), "fixed": created, "stated": stated, "earlier": [], "note": ""}
+
+
+def _digest(stated: Mapping[str, Any]) -> str:
+    return hashlib.sha256(json.dumps(stated, sort_keys=True, ensure_ascii=False).encode()).hexdigest()
+
+
+def continued(record: Mapping[str, Any], folder: Path) -> Mapping[str, Any]:
+    """Return a record as it is written into a folder: with the criteria of an earlier run of the study there.
+
+    An earlier record that cannot be read, or whose criteria do not have their digest, is replaced as before, and
+    ``note`` says so.
+    """
+    if "criteria" not in record or not (folder / "record.json").is_file():
+        return record
+    try:
+        before = read_record(folder)
+    except EvenloadError:
+        return _noted(record, "the folder held a record that could not be read, so earlier criteria are not known")
+    if before.get("study", {}).get("id") != record["study"]["id"]:
+        return record
+    earlier = before.get("criteria")
+    if earlier and not _whole(earlier):
+        return _noted(record, "the criteria in the folder's earlier record do not have the digest stated there")
+    return {**record, "criteria": with_earlier(record["criteria"], earlier)}
+
+
+def _noted(record: Mapping[str, Any], note: str) -> Row:
+    return {**record, "criteria": {**record["criteria"], "note": note}}
+
+
+def _whole(criteria: Any) -> bool:
+    """Tell whether the criteria of a record, and all that came before them, are what their digests say."""
+    try:
+        rows = [criteria, *criteria["earlier"]]
+        return all(isinstance(row["fixed"], str) and _digest(row["stated"]) == row["digest"] for row in rows)
+    except (KeyError, TypeError):
+        return False
+
+
+def criteria_words(record: Mapping[str, Any]) -> str:
+    """Say which criteria changed after results existed, with the dates; empty when none did."""
+    criteria = record.get("criteria") or {}
+    said = [
+        f"used on {row['fixed']}, "
+        + "; ".join(f"{item['name']} {_word(item['old'])} -> {_word(item['new'])}" for item in row["changed"])
+        for row in criteria.get("earlier", ())
+        if row["changed"]
+    ]
+    said = [f"those of this run were first used on {criteria['fixed']}; before: {' | '.join(said)}."] if said else []
+    if criteria.get("note"):
+        said.append(f"{criteria['note']}.")
+    return " ".join(said)
+
+
+def _word(value: Any) -> str:
+    return "none" if value in (None, "") else f"{value:.6g}" if isinstance(value, float) else str(value)
 
 
 def with_earlier(criteria: Mapping[str, Any], before: Mapping[str, Any] | None) -> Row:

@@ -29,6 +29,7 @@ from benchmark.errors import InputRefused, Problem
 from benchmark.evaluate.anchors import anchor_results
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import SideRun
+from benchmark.record.criteria import criteria_row
 from benchmark.record.draws import draw_rows
 from benchmark.record.findings import findings
 from benchmark.record.ledger import ledger_rows, option_rows, technologies
@@ -223,11 +224,13 @@ def run_study(
     progress("writing the record", 0.95)
     sources = library.sources
     used = _used_sources(study)
+    made = created or datetime.datetime.now(datetime.UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
     record = {
         "schema": RECORD_SCHEMA,
         "software": _software(),
-        "created": created or datetime.datetime.now(datetime.UTC).strftime("%Y-%m-%dT%H:%M:%SZ"),
+        "created": made,
         "study": _study_row(study),
+        "criteria": criteria_row(study, made),
         "verdict": verdict_row(verdict),
         "requirements": requirement_rows(primary.requirements),
         "policies": policies,

@@ -6,6 +6,7 @@ from collections import Counter
 from collections.abc import Mapping, Sequence
 from typing import Any
 
+from benchmark.record.criteria import criteria_words
 from benchmark.record.text import answer_sentence
 from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Pairs, Paragraph, Section, Table, plain
 from benchmark.report.margins import margin_words
@@ -73,6 +74,8 @@ def answer(record: Record, digest: str) -> Section:
         )
     if record.get("ratio_only"):
         blocks.append(Notice(f"no absolute value of any side is given. {record['ratio_only']}.", "Ratios only:"))
+    if words := criteria_words(record):
+        blocks.append(Notice(words, "Criteria changed after results:"))
     failed = [check["name"] for check in record["self_checks"] if not check["passed"]]
     if failed:
         blocks.append(Notice(f"{listed(failed)}. Do not use these results.", "Self-check failed:"))

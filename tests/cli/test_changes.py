@@ -93,7 +93,8 @@ def test_another_question(evenload: Run, records, tmp_path: Path):
     assert "answer different questions (required advantage: 1.5 -> 2); --anyway" in refused.err
     asked = evenload("changes", records[0], "other/study.toml", "--anyway")
     assert asked.status == 0
-    assert "Note: the criteria of the answer changed: required advantage." in asked.out
+    words = " ".join(asked.out.split())
+    assert "Note: the criteria of the answer changed: required advantage (first used on 2026-01-31" in words
 
 
 def test_two_sets(evenload: Run, tmp_path: Path):
@@ -175,3 +176,16 @@ def test_a_whole_report_gives_its_record_back(records, tmp_path: Path):
     record = read(records[0], "record.json")
     (tmp_path / "page.html").write_text(report_page(record), encoding="utf-8")
     assert read_any_record(tmp_path / "page.html") == record
+
+
+def test_other_criteria_in_the_same_folder_are_said_with_both_dates(evenload: Run, tmp_path: Path):
+    for required, date in (("1.5", "2026-01-12"), ("2.0", "2026-02-20")):
+        study = fixed_displacement(required=required).write(tmp_path / "study")
+        ran = evenload("run", study, "--out", "a", "--quiet", "--freeze-time", f"{date}T00:00:00Z")
+        assert ran.status == 0, ran.err
+        assert ("Criteria changed after results" in ran.out) == (required == "2.0")
+    assert "first used on 2026-02-20T00:00:00Z; before: used on 2026-01-12T00:00:00Z" in ran.out
+    assert "required advantage 1.5 -> 2." in ran.out
+    assert [row["fixed"] for row in read(tmp_path / "a", "record.json")["criteria"]["earlier"]] == [
+        "2026-01-12T00:00:00Z"
+    ]

@@ -142,7 +142,10 @@ def test_another_question_is_refused_unless_asked_for_and_then_bannered():
     with pytest.raises(QuestionsDiffer, match=r"required advantage: 1.5 -> 2.*--anyway"):
         change(record(), record(required="2.0"))
     found = change(record(), record(required="2.0"), anyway=True)
-    assert found["banners"] == ["the criteria of the answer changed: required advantage"]
+    date = "2026-01-31T00:00:00Z"
+    assert found["banners"] == [
+        f"the criteria of the answer changed: required advantage (first used on {date} and on {date})"
+    ]
     assert part(found, "advantage")["total"] == 0.0
 
 

@@ -30,10 +30,14 @@ STAMP = "2026-01-31T00:00:00Z"
 
 #: everything a user may import; a change here is a change of the interface
 NAMES = [
+    "Batched",
+    "Changes",
     "Needed",
     "Result",
     "SetView",
     "StudyView",
+    "batch",
+    "changes",
     "check",
     "flips",
     "improve",
@@ -58,11 +62,14 @@ RESULT = [
     "record",
     "report",
     "save",
+    "after",
     "ratio_only",
     "summary",
     "text",
 ]
 MEMBERS = {
+    "Batched": ["frame", "rows", "seconds", "status"],
+    "Changes": ["data", "flipped", "frames"],
     "Needed": ["columns", "facts", "frame", "heading", "rows", "text"],
     "Result": [*RESULT, "verdict"],
     "SetView": ["frame", "id", "nodes", "parameters", "sources", "title"],

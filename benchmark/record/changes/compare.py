@@ -123,7 +123,8 @@ def _banners(
     for kind, text in _TEXTS.items():
         names = [row["name"] for row in other if row["kind"] == kind]
         if names:
-            banners.append(f"{text}: {', '.join(names)}")
+            dates = f" ({_dates(old, new)})" if kind == "criteria" else ""
+            banners.append(f"{text}: {', '.join(names)}{dates}")
     advantage = split[0]
     if REST in advantage.parts:
         banners.append(f"the part {REST!r} is what options, tables, circuits, ranges of the search or the question do")
@@ -135,6 +136,12 @@ def _banners(
                 "the parts below are of this program's numbers"
             )
     return banners
+
+
+def _dates(old: Mapping[str, Any], new: Mapping[str, Any]) -> str:
+    """When the criteria of both were first used."""
+    first, second = ((record.get("criteria") or {}).get("fixed") or record["created"] for record in (old, new))
+    return f"first used on {first} and on {second}"
 
 
 _TEXTS = {
