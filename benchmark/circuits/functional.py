@@ -56,8 +56,8 @@ class Functional:
     regenerates
         Gain above 1, a positive margin and two distinct levels.
     error [1]
-        Estimated error of ``noise_margin`` by the fast method. Where the gain is 1 or less the margin is no
-        number to trust, only a failure.
+        Estimated error of ``noise_margin`` by the fast method. Where the gain is 1 or less, or a chain does not
+        regenerate, the margin is no number to trust, only a failure.
     supply [V], temperature [K]
         Of the point.
     """

@@ -51,7 +51,9 @@ def test_symmetric_pair_switches_at_half_the_supply_and_margins_stay_below_it(de
 def test_fast_is_within_twice_its_error_of_accurate(decades, low, high, skew, fan_in):
     pair = pair_of(decades, low, high, skew=skew)
     fast, accurate = functional(pair, fan_in), functional(pair, fan_in, "accurate")
-    if accurate.gain > 1.1:
+    if accurate.gain > 1.1 and not accurate.regenerates:  # a failure, and no number to trust
+        assert fast.noise_margin <= max(2.0 * fast.error, 2e-3)
+    if accurate.gain > 1.1 and accurate.regenerates:
         assert abs(fast.noise_margin - accurate.noise_margin) <= max(2.0 * fast.error, 2e-3)
     if abs(accurate.gain - 1.0) > 0.02 and abs(accurate.noise_margin) > 2e-3:
         assert fast.regenerates == accurate.regenerates
