@@ -13,7 +13,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.optimize import brentq
 
-from benchmark.decide import next_measurement, steps, variance_shares
+from benchmark.decide import attribution, next_measurement, variance_shares
 from benchmark.decide.uncertainty import Estimate, InputShare
 from benchmark.draws.plan import Plan, net, plan_of
 from benchmark.draws.values import draw_values
@@ -229,15 +229,15 @@ def _worth(sd: float, ratio: float) -> float:
 
 def _step() -> list[float]:
     """C V^2 from (1, 1) to (2, 0.8): bit 0 of a combination is C, bit 1 is V."""
-    worth = {(c | v << 1): (1.0 + c) * (1.0 - 0.2 * v) ** 2 for c in (0, 1) for v in (0, 1)}
-    return steps.attribution(worth, 2)
+    worth = [(1.0 + (k & 1)) * (1.0 - 0.2 * (k >> 1)) ** 2 for k in range(4)]
+    return [float(part) for part in attribution.shapley(np.array(worth), 2)]
 
 
 _INFORMATION = [
     # a net of 16384 midpoints instead of an integral
     Binding("cir.EVPPI-norm", WORTH, lambda: (_worth(1.6, 0.0), _worth(1.2, 0.0)), sampling=1e-4),
     Binding("cir.EVSI-norm", WORTH, lambda: _worth(1.6, 0.5), picks=(1,), sampling=1e-4),
-    Binding("cir.SHAP-CV2", ("benchmark.decide.steps:attribution",), _step),
+    Binding("cir.SHAP-CV2", ("benchmark.decide.attribution:shapley",), _step),
 ]
 
 BINDINGS = [*_DRAWS, *_CORRELATION, *_VARIANCE, *_INFORMATION]

@@ -18,7 +18,9 @@ import numpy as np
 from scipy import stats
 
 from benchmark.decide import (
+    attribution,
     axes,
+    closed_form,
     curves,
     elasticity,
     gap,
@@ -27,6 +29,7 @@ from benchmark.decide import (
     next_measurement,
     robustness,
     specification,
+    steps,
     trade,
     uncertainty,
     variance_shares,
@@ -58,10 +61,11 @@ KEYS = {
 }
 
 
-@lru_cache(maxsize=1)
-def _study() -> Study:
+@lru_cache(maxsize=2)
+def _study(coefficient: str = "200.0", capacitance: str = "0.20") -> Study:
+    made = fixed_displacement((coefficient, "0.20"), (capacitance, "0.20"), str(REQUIRED))
     with tempfile.TemporaryDirectory() as folder:
-        return load_study(fixed_displacement(required=str(REQUIRED)).write(Path(folder)))[0]
+        return load_study(made.write(Path(folder)))[0]
 
 
 def _task(draws: int) -> DrawTask:
@@ -221,6 +225,45 @@ def _traded() -> Iterator[Check]:
     yield _check("coefficient on the specification sheet [m/V]", LAW, own, need.crossings[0].x, 1e-6 * own, "root")
 
 
+def _split() -> Iterator[Check]:
+    """Two changes at once, told apart: the parts of a product law are its exponents times the logarithms."""
+    old, new = _study(), _study("220.0", "0.18")
+    found = attribution.attribute(old, new)[0]
+    parts = {"coefficient": 2.0 * float(mpmath.log("1.1")), "capacitance": -float(mpmath.log("0.9"))}
+    yield _check(
+        "change of ln(advantage) between two studies [1]", LAW, sum(parts.values()), found.total, 1e-6, "leakage"
+    )
+    for name, own in parts.items():
+        values = [value for key, value in found.parts.items() if KEYS[name].rpartition(".")[2] in key]
+        yield _check(f"its part from the {name} [1]", LAW, own, sum(values), 1e-5, "leakage")
+    worth = {k: (1.0 + (k & 1)) * (1.0 - 0.2 * (k >> 1)) ** 2 for k in steps.combinations(2)}
+    for name, own, value in zip(("C", "V"), (0.82, -0.54), steps.attribution(worth, 2), strict=True):
+        yield _check(
+            f"part of a step of C V^2 by two orders, {name} [1]", "both orders by hand", own, value, 1e-12, "rounding"
+        )
+
+
+def _facts() -> Iterator[Check]:
+    study = _study()
+    pair = study.pair(study.headline)
+    comparison = Comparison(study, pair, Batch.best_estimate())
+    outcome = comparison.outcome(study.policy.primary)
+    factor = closed_form.delay_factor(comparison.contenders["stated-reference"], outcome.contenders[0])
+    yield _check(
+        "factor of R C under the rule step [1]",
+        "half of an exponential, mpmath",
+        float(mpmath.log(2)),
+        factor,
+        1e-12,
+        "rounding",
+    )
+    rung = ladder.climb(comparison, outcome, "reference").rungs[0]
+    yield _check("advantage on the first rung of the reference alone [1]", LAW, 2.0, rung.advantage, 2e-6, "leakage")
+    value = values_by_key(study, pair)[KEYS["reference"]]
+    found = next_measurement.relative_spread(value)
+    yield _check("relative spread of a log-normal value, small [1]", "its ln-sd", 0.1, found, 1e-12, "definition")
+
+
 def checks() -> list[Check]:
     """Every result."""
-    return [check for part in (_drawn, _exponents, _levels, _moved, _traded) for check in part()]
+    return [check for part in (_drawn, _exponents, _levels, _moved, _traded, _split, _facts) for check in part()]

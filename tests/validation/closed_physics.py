@@ -15,7 +15,7 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy import constants, integrate, interpolate, optimize, special
 
-from benchmark.circuits import adder, net_length, patterns
+from benchmark.circuits import adder, functional, net_length, patterns
 from benchmark.draws import bases
 from benchmark.physics import (
     acoustics,
@@ -34,6 +34,7 @@ from benchmark.physics import (
     virtual_source,
     wires,
 )
+from tests.factories import ohmic_pair
 from tests.validation.check import Check
 
 __all__ = ["GROUP", "checks", "exact"]
@@ -235,6 +236,10 @@ def _switches() -> Iterator[Check]:
         "noise margin of a log-linear chain [V_DD]", "unity-gain points, scipy.optimize.brentq", margin,
         regeneration.log_linear_noise_margin(ratio), 1e-8,
     )  # fmt: skip
+    pair = ohmic_pair(on_resistance=r, off_resistance=r * ratio, window=(0.0, 1.0))
+    fast = functional.functional(pair, 1, "fast").noise_margin
+    source = "unity-gain points, scipy.optimize.brentq"
+    yield exact("the same by the fast search of the program [V_DD]", source, margin, fast.item(), 1e-3)
     yield exact(
         "open state that carries nothing, at its switching level [S]", "half of the closed conductance, by definition",
         0.5 / r, ohmic.perfect_conductance(0.6, r, 0.6), 1e-9,

@@ -133,9 +133,17 @@ def _counts(found: Dossier) -> Section:
             ("known", "meaning", "count"),
             [(name, text, known[name]) for name, text in word.items() if known[name]],
         ),
-        Paragraph(
-            "Every comparison stands in checks.csv beside this page, with source, status, expected and obtained "
-            "number, difference and tolerance; every function stands in functions.csv."
+        plain(
+            "files",
+            "Tables beside this page",
+            ("file", "holds"),
+            [
+                (
+                    Cell("checks.csv", "checks.csv"),
+                    "every comparison: source, status, expected and obtained number, difference, tolerance",
+                ),
+                (Cell("functions.csv", "functions.csv"), "every public function that computes numbers: reached or not"),
+            ],
         ),
     ]
     if failing:
