@@ -41,8 +41,8 @@ class Elasticity:
     key: str
     at_point: float
     reoptimised: float
-    time: float
-    energy: float
+    of_time: float
+    of_energy: float
 
 
 def elasticities(

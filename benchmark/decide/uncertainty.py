@@ -41,6 +41,8 @@ QUANTILES = (0.05, 0.10, 0.25, 0.50, 0.75, 0.90, 0.95)
 SHARES = tuple(i / 100.0 for i in range(1, 100))
 #: groups of blocks that are left out in turn
 MOST_GROUPS = 16
+#: terms of an expansion within so many sampling errors of 0 are left out
+CLEAR = 3.0
 #: draws from which on an expansion goes to the next degree: every term adds noise
 DEGREES = (0, 512, 2048, 8192, 32768)
 #: told the share done
@@ -181,11 +183,15 @@ def summarise(task: DrawTask, blocks: Sequence[BlockSum]) -> Uncertainty:
         if key.startswith(idle):
             shares.append(InputShare(key, shape, Estimate(0.0, 0.0), Estimate(0.0, 0.0), np.zeros(degree)))
             continue
-        noise = _noise(key, degree, total, without)
-        share = estimate(functools.partial(_share, key=key, degree=degree))
-        worth = estimate(functools.partial(_worth, key=key, basis=bases[shape][1 : degree + 1], required=log_required))
-        coefficients = _coefficients(total, key, degree)
-        shares.append(InputShare(key, shape, Estimate(share.value - noise, share.error), worth, coefficients))
+        noise = _noise(key, degree, without)
+        kept = _coefficients(total, key, degree) ** 2 > CLEAR**2 * noise
+        share = estimate(functools.partial(_share, key=key, kept=kept))
+        basis = bases[shape][1 : degree + 1]
+        worth = estimate(functools.partial(_worth, key=key, kept=kept, basis=basis, required=log_required))
+        variance = _variance(total)
+        by_noise = float(noise[kept].sum()) / variance if variance > 0.0 else 0.0
+        coefficients = np.where(kept, _coefficients(total, key, degree), 0.0)
+        shares.append(InputShare(key, shape, Estimate(share.value - by_noise, share.error), worth, coefficients))
     return Uncertainty(
         draws=total.draws,
         blocks=len(blocks),
@@ -250,19 +256,16 @@ def _coefficients(block: BlockSum, key: str, degree: int) -> Array:
     return np.asarray(block.moments[key][1 : degree + 1] / max(block.defined, 1))
 
 
-def _share(block: BlockSum, key: str, degree: int) -> float:
+def _share(block: BlockSum, key: str, kept: NDArray[np.bool_]) -> float:
     variance = _variance(block)
-    return float(np.sum(_coefficients(block, key, degree) ** 2) / variance) if variance > 0.0 else 0.0
+    return float(np.sum(_coefficients(block, key, kept.size)[kept] ** 2) / variance) if variance > 0.0 else 0.0
 
 
-def _noise(key: str, degree: int, total: BlockSum, without: Sequence[BlockSum]) -> float:
-    """Share that sampling noise alone gives: the squared errors of the coefficients."""
-    variance = _variance(total)
-    if not variance > 0.0:
-        return 0.0
+def _noise(key: str, degree: int, without: Sequence[BlockSum]) -> Array:
+    """Squared sampling errors of the coefficients."""
     parts = np.stack([_coefficients(block, key, degree) for block in without])
     n = parts.shape[0]
-    return float(np.sum((n - 1) / n * np.sum((parts - parts.mean(axis=0)) ** 2, axis=0)) / variance)
+    return np.asarray((n - 1) / n * np.sum((parts - parts.mean(axis=0)) ** 2, axis=0))
 
 
 def _settled(block: BlockSum, required: float) -> bool:
@@ -270,12 +273,13 @@ def _settled(block: BlockSum, required: float) -> bool:
     return bool(block.smallest >= np.exp(required) or block.largest <= np.exp(required))
 
 
-def _worth(block: BlockSum, key: str, basis: Array, required: float) -> float:
+def _worth(block: BlockSum, key: str, kept: NDArray[np.bool_], basis: Array, required: float) -> float:
     if _settled(block, required):
         return 0.0
     mean = _mean(block) - required
     # the points stand for the whole distribution: without this their own small mean would count as information
-    conditional = mean + _coefficients(block, key, basis.shape[0]) @ (basis - basis.mean(axis=1, keepdims=True))
+    coefficients = np.where(kept, _coefficients(block, key, kept.size), 0.0)
+    conditional = mean + coefficients @ (basis - basis.mean(axis=1, keepdims=True))
     return max(float(np.maximum(conditional, 0.0).mean() - max(mean, 0.0)), 0.0)
 
 

@@ -88,7 +88,7 @@ def draw_rows(
         "stop": nothing_to_measure(found),
         "shares": _share_rows(study, found, values),
         "totals": _totals(task, found),
-        "strongest": dict(found.strongest),
+        "strongest": [{"side": side, "share": share} for side, share in found.strongest.items()],
         "bands": _band_rows(study, frozen, found),
     }
 

@@ -198,7 +198,8 @@ class _Maker:
     def error_bands(self) -> Row:
         bands = self.record.get("error_bands", {"sides": (), "advantage": None})
         rows = [
-            row | {"missing": [{"share": part["share"], "why": self.say(part["why"])} for part in row["missing"]]}
+            {name: self.say(value) for name, value in row.items()}
+            | {"missing": [{"share": part["share"], "why": self.say(part["why"])} for part in row["missing"]]}
             for row in bands["sides"]
         ]
         return {"sides": rows, "advantage": bands["advantage"]}

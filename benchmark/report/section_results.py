@@ -227,7 +227,7 @@ def _elasticities(record: Record) -> list[Block]:
         known = [abs(row[name]) for name in ("reoptimised", "at_point") if is_number(row[name])]
         return -max(known, default=0.0)
 
-    names = ("at_point", "reoptimised", "time", "energy")
+    names = ("at_point", "reoptimised", "of_time", "of_energy")
     rows = []
     for row in sorted(record.get("elasticities", ()), key=steepness):
         owner, _, name = row["key"].rpartition(".")

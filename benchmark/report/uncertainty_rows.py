@@ -94,8 +94,13 @@ def band_rows(record: Record) -> list[Row]:
 
 def elasticity_rows(record: Record) -> list[Row]:
     """One row per input with an elasticity."""
-    names = ("at_point", "reoptimised", "time", "energy")
+    names = {
+        "at_point": "elasticity_of_advantage_at_points",
+        "reoptimised": "elasticity_of_advantage_reoptimised",
+        "of_time": "elasticity_of_time",
+        "of_energy": "elasticity_of_energy",
+    }
     return [
-        {"key": row["key"], **{name: word(row[name], "not defined") for name in names}}
+        {"key": row["key"], **{column: word(row[name], "not defined") for name, column in names.items()}}
         for row in record.get("elasticities", ())
     ]

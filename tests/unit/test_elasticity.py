@@ -30,16 +30,16 @@ def found(study, policy: str = ""):
 def test_delay_to_the_actuator_coefficient(coefficient: str, expected: float):
     """S2: -(RC/t) 2 p ln 10 with the share of RC 0.316 at 2 GPa, 0.979 at 1 GPa; invented numbers, exact arithmetic."""
     study, _ = load_study(STUDY, overrides={"hand-stress-gated.actuator_coefficient": coefficient})
-    assert found(study)["hand-stress-gated.actuator_coefficient"].time == near(expected, rel=0, abs=3e-3)
+    assert found(study)["hand-stress-gated.actuator_coefficient"].of_time == near(expected, rel=0, abs=3e-3)
 
 
 def test_where_transit_rules_the_coefficient_does_not_matter():
     study, _ = load_study(STUDY, overrides={"hand-stress-gated.actuator_coefficient": "900.0"})
-    assert found(study)["hand-stress-gated.actuator_coefficient"].time == near(0.0, abs=1e-3)
+    assert found(study)["hand-stress-gated.actuator_coefficient"].of_time == near(0.0, abs=1e-3)
 
 
 def test_a_product_law_has_its_exponents(tmp_path: Path):
-    """S8: A = E_ref d^2 / (C (60 pm)^2); the supply follows from the coefficient, so the fixed point does not see it."""
+    """S8: A = E_ref d^2 / (C (60 pm)^2); the supply follows from d, so the fixed point does not see it."""
     study, _ = load_study(fixed_displacement().write(tmp_path))
     rows = found(study)
     assert rows["film-switch.input_capacitance"].at_point == near(-1.0, rel=1e-4)
@@ -55,4 +55,4 @@ def test_at_the_point_and_re_optimised_differ_where_a_required_time_binds():
     row = found(study, "iso-delay")["hand-stress-gated.actuator_coefficient"]
     assert row.at_point == near(0.0, abs=0.3)  # only leakage per operation moves
     assert row.reoptimised == near(2.0, rel=0.02)
-    assert not math.isnan(row.time)
+    assert not math.isnan(row.of_time)

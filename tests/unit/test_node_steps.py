@@ -67,7 +67,7 @@ def test_values_carry_the_whole_step_where_nothing_else_differs():
 
 def test_the_chart_draws_the_parts_and_says_the_largest():
     record = mixed()
-    chart = node_steps(record)
+    (chart,) = node_steps(record)
     assert chart.spec is not None
     assert list(chart.points) == step_rows(record)
     factors = [row["factor"] for row in chart.points if row["cause"] != "total"]
@@ -81,6 +81,6 @@ def test_a_step_that_cannot_be_split_says_why():
             {"before": "g1", "after": "g2", "total": None, "parts": {}, "note": "one of the nodes has no advantage"}
         ]
 
-    chart = node_steps(changed(crossing(), change))
+    (chart,) = node_steps(changed(crossing(), change))
     assert chart.spec is None
     assert "one of the nodes has no advantage" in chart.caption

@@ -178,6 +178,10 @@ KEPT = {
     *("guard_band_delay", "guard_band_leakage", "temperatures", "temperature", "supply_points", "refine_relative"),
     *("delay_shares", "energy_shares", "device_margins", "sizes", "advantages", "year", "parts", "total"),
     *("ratio_low", "ratio_high", "covered", "points", "share", "copies", "reaching", "better", "infeasible", "worst"),
+    *("at_point", "reoptimised", "of_time", "of_energy"),  # elasticities
+    *("draws", "blocks", "seed", "inputs", "judgement", "likely", "unlikely", "error", "negligible", "place"),
+    *("without_candidate", "without_contender", "unbounded", "share_error", "first", "first_error", "total_error"),
+    *("worth", "worth_error", "worth_halved", "worth_reachable", "worth_per_cost", "cost", "enough"),
 }
 
 

@@ -40,6 +40,7 @@ SECTIONS = [
         "uncertainty",
         "moves",
         "next-measurement",
+        "need",
         "nodes",
         "anchors",
     ),
