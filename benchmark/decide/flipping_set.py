@@ -243,8 +243,8 @@ def _nearest(trials: Trials, sets: Sequence[_Set], level: float, reached: bool) 
     # of the two ends of the last bracket, the one that lies on the other side
     shares = np.where((solved.at_bracket[1] >= 0.0) != reached, solved.bracket[1], solved.bracket[0])
     # a level met exactly ends the search while the bracket is wide: the other side begins right beside that place
-    beside = solved.share + np.sign(shares - solved.share) * TOLERANCE
-    shares = np.where(np.abs(shares - solved.share) > TOLERANCE, beside, shares)
+    beside = solved.x + np.sign(shares - solved.x) * TOLERANCE
+    shares = np.where(np.abs(shares - solved.x) > TOLERANCE, beside, shares)
     found: dict[_Set, tuple[float, ...]] = {}
     for (item, direction), share in zip(ways, shares, strict=True):
         values = at(item, direction, float(share))
