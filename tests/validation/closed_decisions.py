@@ -23,6 +23,7 @@ from benchmark.decide import (
     closed_form,
     curves,
     elasticity,
+    flipping_set,
     gap,
     ladder,
     moves,
@@ -219,6 +220,11 @@ def _traded() -> Iterator[Check]:
     x, capacitance = pairs[len(pairs) // 2]
     own = second.best * 2.0 / REQUIRED * (x / first.best) ** 2
     yield _check("capacitance that a coefficient allows [F]", LAW, own, capacitance, 1e-5 * own, "leakage, root")
+    flip = flipping_set.flipping_sets(trials, REQUIRED, 1).flips[0]
+    own = abs(float(mpmath.log(mpmath.sqrt(mpmath.mpf(REQUIRED) / 2)) / mpmath.mpf("0.2")))
+    yield _check(
+        "nearest input that flips the answer [standard deviations]", LAW, own, flip.implausibility, 1e-5, "root"
+    )
     sheet = specification.specification(trials, REQUIRED, chosen=[first])
     (need,) = sheet.needs
     own = first.best * float(mpmath.sqrt(mpmath.mpf(REQUIRED) / 2))
