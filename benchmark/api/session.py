@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import datetime
 import numbers
 from collections.abc import Callable, Iterable, Mapping
 from decimal import Decimal
@@ -73,7 +74,12 @@ def load_set(name: str, nodes: Iterable[Place] = ()) -> SetView:
     return SetView(item, dict(library.sources))
 
 
-def load_study(path: Place, nodes: Iterable[Place] = (), what_if: Mapping[str, WhatIf] | None = None) -> StudyView:
+def load_study(
+    path: Place,
+    nodes: Iterable[Place] = (),
+    what_if: Mapping[str, WhatIf] | None = None,
+    as_of: datetime.date | None = None,
+) -> StudyView:
     """Load and check a study with every set, wires set and circuit it refers to.
 
     Parameters
@@ -85,6 +91,8 @@ def load_study(path: Place, nodes: Iterable[Place] = (), what_if: Mapping[str, W
     what_if : mapping, optional
         Numbers to use instead of those of the files: a study value name, or ``technology.name``, to a number in the
         unit of the file. The range of a changed value is dropped.
+    as_of : date, optional
+        Values with a history as they were on this day.
 
     Returns
     -------
@@ -100,7 +108,7 @@ def load_study(path: Place, nodes: Iterable[Place] = (), what_if: Mapping[str, W
 
     folders = _folders(nodes)
     changes = {name: _text(name, value) for name, value in (what_if or {}).items()}
-    study, library = load(Path(path), folders, changes)
+    study, library = load(Path(path), folders, changes, as_of)
     return StudyView(Path(path), tuple(folders), changes, study, library)
 
 
@@ -161,7 +169,8 @@ def what_if(study: StudyView, changes: Mapping[str, WhatIf] | None = None, /, **
     if both:
         message = f"what-if names {', '.join(both)} twice"
         raise UsageError(message)
-    return load_study(study.path, study.nodes, {**study.what_if, **(changes or {}), **named})
+    changed = {**study.what_if, **(changes or {}), **named}
+    return load_study(study.path, study.nodes, changed, study.library.as_of)
 
 
 def run(
@@ -212,6 +221,8 @@ def run(
     settings = _draw_settings(loaded.study.draws, draws, seed, jobs)
     record = run_study(loaded.study, loaded.library, created=created, draws=settings, jobs=jobs, **told)
     record["what_if"] = dict(loaded.what_if)
+    if loaded.library.as_of is not None:
+        record["as_of"] = loaded.library.as_of.isoformat()
     if need:
         from benchmark.api.need_blocks import need_blocks
         from benchmark.record.results import clean
@@ -262,7 +273,9 @@ def load_result(path: Place) -> Result:
     return Result(read_record(Path(path)))
 
 
-def check(paths: Place | Iterable[Place], nodes: Iterable[Place] = ()) -> CheckResult:
+def check(
+    paths: Place | Iterable[Place], nodes: Iterable[Place] = (), as_of: datetime.date | None = None
+) -> CheckResult:
     """Check files of every kind without running anything.
 
     Parameters
@@ -271,6 +284,8 @@ def check(paths: Place | Iterable[Place], nodes: Iterable[Place] = ()) -> CheckR
         Files and folders: sets, sources, circuits, studies.
     nodes : iterable of path, optional
         Further folders of sets.
+    as_of : date, optional
+        Values with a history as they were on this day.
 
     Returns
     -------
@@ -280,7 +295,7 @@ def check(paths: Place | Iterable[Place], nodes: Iterable[Place] = ()) -> CheckR
     from benchmark.record.check import check_paths
 
     listed = [paths] if isinstance(paths, (str, Path)) else list(paths)
-    return check_paths([Path(path) for path in listed], _folders(nodes))
+    return check_paths([Path(path) for path in listed], _folders(nodes), as_of)
 
 
 def technologies(nodes: Iterable[Place] = ()) -> pandas.DataFrame:

@@ -56,6 +56,8 @@ Need = Annotated[
 ]
 Jobs = Annotated[int, typer.Option("--jobs", help="Processes for the draws; no digit depends on their number.")]
 
+AsOf = Annotated[str, typer.Option("--as-of", help="Values with a history as they were on this day (2026-01-31).")]
+
 
 def main() -> None:
     """Run the command line and turn errors into messages and exit status."""
@@ -147,6 +149,7 @@ def run(
     ] = None,
     nodes: Nodes = None,
     set_: Set = None,
+    as_of: AsOf = "",
     ratio_only: Annotated[
         bool, typer.Option("--ratio-only", help="Write ratios only: no absolute value of any side, no input texts.")
     ] = False,
@@ -162,7 +165,7 @@ def run(
     from benchmark.cli.commands import run_command
 
     word = run_command(
-        study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only, draws, seed, jobs, need
+        study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only, draws, seed, jobs, need, as_of
     )
     if gate:
         raise typer.Exit(GATE[word])
@@ -191,12 +194,13 @@ def demo(
 @app.command()
 def check(
     paths: Annotated[list[Path], typer.Argument(help="Files or folders: sets, sources, circuits, studies.")],
+    as_of: AsOf = "",
     nodes: Nodes = None,
 ) -> None:
     """Check files: names, units, sources, ranges, physics. All problems in one pass."""
     from benchmark.cli.commands import check_command
 
-    check_command(paths, nodes or [])
+    check_command(paths, nodes or [], as_of)
 
 
 @app.command()

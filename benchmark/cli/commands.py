@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 import sys
 import time
 from collections.abc import Mapping, Sequence
@@ -49,13 +50,14 @@ def run_command(
     seed: int | None = None,
     jobs: int = 1,
     need: bool = False,
+    as_of: str = "",
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
     from benchmark import api
     from benchmark.record.criteria import criteria_words
 
     check_folders(nodes)
-    study = api.load_study(study_path, nodes, overrides)
+    study = api.load_study(study_path, nodes, overrides, day(as_of))
     folder = out or Path(f"evenload-{study.id}")
     result = api.run(
         study, created=freeze_time or None, progress=_Steps(quiet), draws=draws, seed=seed, jobs=jobs, need=need
@@ -85,13 +87,24 @@ def check_folders(nodes: Sequence[Path]) -> None:
             raise UsageError(message)
 
 
-def check_command(paths: Sequence[Path], nodes: Sequence[Path]) -> None:
+def day(text: str) -> datetime.date | None:
+    """Read the day of --as-of."""
+    if not text:
+        return None
+    try:
+        return datetime.date.fromisoformat(text)
+    except ValueError as error:
+        message = f"--as-of needs a day such as 2026-01-31, found {text!r}"
+        raise UsageError(message) from error
+
+
+def check_command(paths: Sequence[Path], nodes: Sequence[Path], as_of: str = "") -> None:
     """Check every file; prints what is fine, then refuses with all problems."""
     from benchmark import api
     from benchmark.errors import InputRefused
 
     check_folders(nodes)
-    result = api.check(paths, nodes)
+    result = api.check(paths, nodes, day(as_of))
     for warning in result.warnings:
         typer.echo(f"warning: {warning}", err=True)
     if result.problems:

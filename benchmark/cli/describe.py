@@ -12,7 +12,7 @@ from benchmark.evaluate.anchors import AnchorResult, anchor_results
 from benchmark.record.value_text import amount, each_number, number, spread_text, usual_range, valid_text
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.sources import Source
-from benchmark.sets.values import Value
+from benchmark.sets.values import PastValue, Value
 from benchmark.units import from_si, parse_unit
 
 __all__ = ["SUPPORT", "input_need", "option_blocks", "set_blocks", "value_blocks"]
@@ -209,9 +209,17 @@ def value_blocks(item: ParameterSet, name: str, sources: Mapping[str, Source]) -
     ):
         if text:
             facts.append((label, text))
+    facts += [("superseded", _past_words(past)) for past in reversed(value.past)]
     if item.kind == "technology":
         facts += [("model", f"{item.model}: {input_need(x)}") for x in model(item.model).inputs if x.name == name]
     return [Facts(f"{item.id}.{name}", facts)]
+
+
+def _past_words(past: PastValue) -> str:
+    value = past.value
+    source = f", {value.source}" if value.source else ""
+    numbers = f"{' / '.join(each_number(value))} {value.unit}".removesuffix(" 1")
+    return f"{numbers} from {value.date} ({value.evidence}{source}; {spread_text(value)}): {past.reason}"
 
 
 def _numbers(item: ParameterSet, value: Value) -> list[tuple[str, str]]:

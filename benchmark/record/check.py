@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 from collections.abc import Sequence
 from dataclasses import dataclass
 from pathlib import Path
@@ -11,6 +12,7 @@ from benchmark.errors import Problem
 from benchmark.record.load import check_physics, check_study, open_library
 from benchmark.sets.circuit_file import read_circuit
 from benchmark.sets.files import is_folder, read_toml
+from benchmark.sets.history import as_it_was
 from benchmark.sets.library import Library
 from benchmark.sets.problems import Collector
 from benchmark.sets.study_builder import build_study
@@ -56,12 +58,12 @@ def _roots(path: Path) -> list[Path]:
     return [folder for folder in (root, root / "nodes") if is_folder(folder)]
 
 
-def check_paths(paths: Sequence[Path], nodes: Sequence[Path] = ()) -> CheckResult:
-    """Check files and folders; nothing is run."""
+def check_paths(paths: Sequence[Path], nodes: Sequence[Path] = (), as_of: datetime.date | None = None) -> CheckResult:
+    """Check files and folders, sets as they are or as they were on a day; nothing is run."""
     collector = Collector()
     files = _listed(paths, collector)
     for path in files:
-        library = open_library(*nodes, *_roots(path), collector=collector)
+        library = open_library(*nodes, *_roots(path), collector=collector, as_of=as_of)
         _check_one(path, library, collector)
     return CheckResult(len(files), tuple(sorted(set(collector.problems))), tuple(sorted(set(collector.warnings))))
 
@@ -79,6 +81,7 @@ def _check_one(path: Path, library: Library, collector: Collector) -> None:
     elif "net" in file.data:
         read_circuit(path, library, collector)
     else:
-        built = library.build(file)
+        then = file if library.as_of is None else as_it_was(file, library.as_of, collector)
+        built = None if then is None else library.build(then)
         if built is not None and built.kind == "technology":
             check_physics(built, collector)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 import tomllib
 from collections.abc import Mapping, Sequence
 from decimal import Decimal
@@ -17,6 +18,7 @@ from benchmark.errors import InputRefused, Problem, UsageError
 from benchmark.evaluate.batch import Batch, resolve
 from benchmark.evaluate.side import build_circuit
 from benchmark.sets.files import TomlFile, is_folder, read_toml
+from benchmark.sets.history import as_it_was
 from benchmark.sets.library import Library, shipped_nodes
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.problems import Collector
@@ -26,10 +28,10 @@ from benchmark.sets.study_builder import build_study
 __all__ = ["check_physics", "check_study", "load_study", "load_technology", "open_library", "open_set"]
 
 
-def open_library(*folders: Path, collector: Collector | None = None) -> Library:
-    """Open the shipped sets, with ``folders`` searched first."""
+def open_library(*folders: Path, collector: Collector | None = None, as_of: datetime.date | None = None) -> Library:
+    """Open the shipped sets, with ``folders`` searched first; ``as_of``: as they were on a day."""
     roots = tuple(dict.fromkeys([*(folder.resolve() for folder in folders), shipped_nodes().resolve()]))
-    return Library(model, MODEL_NAMES, roots, collector if collector is not None else Collector())
+    return Library(model, MODEL_NAMES, roots, collector if collector is not None else Collector(), as_of=as_of)
 
 
 def open_set(name: str, *folders: Path) -> tuple[ParameterSet, Library]:
@@ -63,7 +65,10 @@ def load_technology(name: str, *folders: Path) -> ParameterSet:
 
 
 def load_study(
-    path: Path, nodes: Sequence[Path] = (), overrides: Mapping[str, str] | None = None
+    path: Path,
+    nodes: Sequence[Path] = (),
+    overrides: Mapping[str, str] | None = None,
+    as_of: datetime.date | None = None,
 ) -> tuple[Study, Library]:
     """Load a study with everything it refers to.
 
@@ -75,6 +80,8 @@ def load_study(
         Further folders of sets.
     overrides : mapping, optional
         What-if values: a study value name, or technology.name, to a number in the unit of the file.
+    as_of : date, optional
+        Read sets as they were on this day: values with a history have the number of then.
 
     Raises
     ------
@@ -83,11 +90,16 @@ def load_study(
     """
     collector = Collector()
     beside = [folder for folder in (path.parent, path.parent / "nodes") if is_folder(folder)]
-    library = open_library(*nodes, *beside, collector=collector)
+    library = open_library(*nodes, *beside, collector=collector, as_of=as_of)
     file = read_toml(path, collector, path.name)
     if file is None:
         collector.raise_if_any()
         raise UsageError("the study could not be read")  # noqa: EM101 - the collector has said why
+    if as_of is not None:
+        file = as_it_was(file, as_of, collector)
+    if file is None:
+        collector.raise_if_any()
+        raise UsageError("the study has no such state")  # noqa: EM101 - the collector has said why
     file = _override(file, overrides or {}, library, collector)
     study = build_study(file, library, BUILT_IN)
     if study is not None:

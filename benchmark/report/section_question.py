@@ -247,6 +247,8 @@ def question(record: Record) -> Section:
     if what_if:
         changed = listed(f"{name} = {value}" for name, value in what_if.items())
         blocks.append(Notice(f"{changed}. The files themselves are unchanged.", "What-if values set for this run:"))
+    if record.get("as_of"):
+        blocks.append(Notice(f"values with a history are as they were on {record['as_of']}.", "A past state:"))
     return Section("question", "The question as asked", (*blocks, _sides(record)))
 
 

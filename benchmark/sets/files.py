@@ -183,6 +183,11 @@ def read_toml(path: Path, collector: Collector, name: str | None = None) -> Toml
     except UnicodeDecodeError as error:
         collector.add(Problem(name, 0, "", "is not UTF-8 text", f"byte {raw[error.start]:#04x} at {error.start}"))
         return None
+    return parse_toml(path, text, name, collector)
+
+
+def parse_toml(path: Path, text: str, name: str, collector: Collector) -> TomlFile | None:
+    """Parse the text of a file; None after recording a problem."""
     endless = _ENDLESS.search(text)
     if endless is not None:
         collector.add(Problem(name, text.count("\n", 0, endless.start()) + 1, "", "is nested too deeply"))
@@ -198,4 +203,4 @@ def read_toml(path: Path, collector: Collector, name: str | None = None) -> Toml
     except (RecursionError, ValueError, ArithmeticError) as error:
         collector.add(Problem(name, 0, "", f"is not usable TOML ({type(error).__name__})"))
         return None
-    return TomlFile(name, path, data, text, hashlib.sha256(raw).hexdigest(), _index(text))
+    return TomlFile(name, path, data, text, hashlib.sha256(text.encode()).hexdigest(), _index(text))

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import datetime
 import os
 from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass, field
@@ -11,6 +12,7 @@ from pathlib import Path
 import benchmark
 from benchmark.errors import Problem, nearest
 from benchmark.sets.files import TomlFile, is_file, read_toml
+from benchmark.sets.history import as_it_was
 from benchmark.sets.parameters import ModelDeclaration, ParameterSet, build_technology, build_wires
 from benchmark.sets.problems import Collector
 from benchmark.sets.sources import Source, read_sources
@@ -43,6 +45,8 @@ class Library:
     roots: tuple[Path, ...]
     collector: Collector
     sources: dict[str, Source] = field(default_factory=dict)
+    #: sets are read as they were on this day; None: as they are
+    as_of: datetime.date | None = None
     _sets: dict[str, ParameterSet | None] = field(default_factory=dict)
     _overrides: dict[str, dict[str, Decimal | int]] = field(default_factory=dict)
 
@@ -112,6 +116,8 @@ class Library:
     def read(self, path: Path) -> ParameterSet | None:
         """Read one set file of either kind."""
         file = read_toml(path, self.collector, self.shown(path))
+        if file is not None and self.as_of is not None:
+            file = as_it_was(file, self.as_of, self.collector)
         return None if file is None else self.build(file)
 
     def override(self, name: str, key: str, number: Decimal | int) -> None:

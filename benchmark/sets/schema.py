@@ -140,6 +140,21 @@ class LogNormal(FileModel):
 SpreadTable = Annotated[Uniform | LogUniform | Triangular | Normal | LogNormal, Field(discriminator="shape")]
 
 
+class PastTable(FileModel):
+    """What a value was before: the number, the day it was measured or chosen, and why it is no longer used."""
+
+    value: Number | None = Field(default=None, description="The number, in the unit")
+    by_node: dict[NodeLabel, Number] | None = Field(default=None, description="One number per node, in the unit")
+    unit: Text | None = Field(default=None, description="Unit; of the dimension of the value")
+    spread: SpreadTable | None = Field(default=None, description="Range it was stated with; none when left out")
+    evidence: Evidence = None
+    source: SourceKey = None
+    where: Where = None
+    conditions: Conditions = None
+    date: datetime.date = Field(description="Day of the measurement or choice; it held from then on")
+    reason: Text = Field(min_length=1, description="Why it is no longer used")
+
+
 class ValueTable(FileModel):
     """One value with unit, spread and provenance: the atom of every file."""
 
@@ -163,6 +178,7 @@ class ValueTable(FileModel):
     )
     unusual: bool = Field(default=False, description="true: yes, far outside the usual range is meant")
     date: datetime.date | None = Field(default=None, description="Day of the measurement or choice, such as 2026-01-31")
+    superseded: list[PastTable] = Field(default=[], description="What it was before, oldest first; needs a date above")
 
 
 class Measure(FileModel):

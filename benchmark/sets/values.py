@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import dataclasses
 import datetime
+import itertools
 import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
@@ -69,6 +70,7 @@ class Value:
     date: str = ""
     file: str = ""
     line: int = 0
+    past: tuple[PastValue, ...] = ()  # oldest first
 
     @property
     def is_default(self) -> bool:
@@ -87,6 +89,14 @@ class Value:
     def in_unit(self, si: float) -> float:
         """Express an SI number in the unit the file used."""
         return from_si(si, parse_unit(self.unit))
+
+
+@dataclass(frozen=True)
+class PastValue:
+    """What a value was from its own date on, and why it is no longer used."""
+
+    value: Value
+    reason: str
 
 
 @dataclass(frozen=True)
@@ -420,6 +430,9 @@ def convert_value(
         spread = _convert_spread(table, quantity, unit, array, place, collector)
         if spread is None:
             return None
+    past = _past(quantity, table, nodes, place, collector)
+    if past is None:
+        return None
     return Value(
         name=quantity.name,
         si=array,
@@ -430,8 +443,40 @@ def convert_value(
         date=table.date.isoformat() if isinstance(table.date, datetime.date) else "",
         file=file.name,
         line=file.line(place.dotted),
+        past=past,
         **provenance,
     )
+
+
+def _past(
+    quantity: Quantity, table: ValueTable, nodes: Sequence[str], place: Place, collector: Collector
+) -> tuple[PastValue, ...] | None:
+    """Convert what a value was before as if it were stated today; dates must rise."""
+    before = len(collector.problems)
+    if table.superseded and not place.dotted.startswith("value."):
+        collector.add(place.file.problem(f"{place.dotted}.superseded", "belongs to values in [value] alone"))
+    dates = [past.date for past in table.superseded]
+    if dates and table.date is None:
+        collector.add(place.file.problem(place.dotted, "has superseded numbers but no date of its own"))
+    for position, (one, two) in enumerate(itertools.pairwise([*dates, *([table.date] if table.date else [])])):
+        if one >= two:
+            dotted = f"{place.dotted}.superseded"
+            where = f"entry {position + 1}"
+            collector.add(
+                place.file.problem(
+                    dotted, f"{where} is not older than what follows", f"{one} and {two}", "rising dates"
+                )
+            )
+    found = []
+    for position, past in enumerate(table.superseded, start=1):
+        told = past.model_dump(exclude={"reason"}) | {"spread": past.spread, "formula": table.formula}
+        told |= {name: told[name] or getattr(table, name) for name in ("evidence", "source", "where", "conditions")}
+        one_place = dataclasses.replace(place, dotted=f"{place.dotted}.superseded.{position}")
+        stated = ValueTable(**told, unusual=table.unusual)
+        value = convert_value(quantity, stated, nodes, one_place, collector)
+        if value is not None:
+            found.append(PastValue(value, past.reason))
+    return tuple(found) if len(collector.problems) == before else None
 
 
 def convert_measure(
