@@ -125,7 +125,7 @@ HOSTILE = (
 _CLOSED = {
     *("role", "state", "kind", "policy", "primary_policy", "also", "evidence", "set_by", "timing", "idle", "metric"),
     *("leakage_accounting", "unit", "bound", "ambition", "required_time", "margin", "demanded", "offered", "shape"),
-    *("sha256", "candidate_energy", "reference_energy"),
+    *("sha256", "candidate_energy", "reference_energy", "of"),
 }
 
 
