@@ -14,6 +14,7 @@ from typing import Any
 
 from benchmark.errors import EvenloadError
 from benchmark.record.write import read_record
+from benchmark.sets.files import is_file
 from benchmark.sets.study import Study
 
 __all__ = ["continued", "criteria_of", "criteria_row", "criteria_words", "with_earlier"]
@@ -59,7 +60,7 @@ def continued(record: Mapping[str, Any], folder: Path) -> Mapping[str, Any]:
     An earlier record that cannot be read, or whose criteria do not have their digest, is replaced as before, and
     ``note`` says so.
     """
-    if "criteria" not in record or not (folder / "record.json").is_file():
+    if "criteria" not in record or not is_file(folder / "record.json"):
         return record
     try:
         before = read_record(folder)
