@@ -148,7 +148,7 @@ def _part(item: Row, part: float) -> str:
         if abs(part) <= ROUNDING * abs(item["after"]):
             return f"0 {item['unit']}"
         return f"{'+' if part > 0.0 else ''}{engineering(part, item['unit'], 4)}"
-    return f"{part:+.5f} (x {math.exp(part):.4g})"
+    return f"{round(part, 5) + 0.0:+.5f} (x {math.exp(part):.4g})"
 
 
 def _probability(found: Row | None) -> list[Block]:
