@@ -103,7 +103,7 @@ def _open_end(value: Value) -> float | None:
 
 def _word(found: Uncertainty, settings: DrawSettings) -> str:
     """The word for the probability, with the thresholds of the study; an error that straddles one says so."""
-    low, high = _two_errors(found.reaches)
+    low, high = _two_errors(found.reaches, found.draws)
     if low >= settings.likely:
         return "likely reached"
     if high <= settings.unlikely:
@@ -113,8 +113,10 @@ def _word(found: Uncertainty, settings: DrawSettings) -> str:
     return "neither likely nor unlikely to be reached"
 
 
-def _two_errors(estimate: Estimate) -> tuple[float, float]:
-    return estimate.value - 2.0 * estimate.error, estimate.value + 2.0 * estimate.error
+def _two_errors(estimate: Estimate, draws: int) -> tuple[float, float]:
+    """About 95 %: twice the error; where all draws agree, 3/n (rule of three)."""
+    reach = 3.0 / draws if estimate.value in (0.0, 1.0) else 2.0 * estimate.error
+    return estimate.value - reach, estimate.value + reach
 
 
 def _share_rows(study: Study, found: Uncertainty, values: Mapping[str, Value]) -> list[dict[str, Any]]:

@@ -73,8 +73,8 @@ def _probability(record: Record) -> list[tuple[str, str]]:
     return [
         (
             f"With all stated ranges at once an advantage of {record['study']['required_advantage']:g} has a "
-            f"probability of {probability(found['reaches'])}; {found['judgement']} of {found['inputs']} ranges are "
-            "judgement or invented.",
+            f"probability of {probability(found['reaches'], found['draws'])}; "
+            f"{found['judgement']} of {found['inputs']} ranges are judgement or invented.",
             "uncertainty",
         )
     ]

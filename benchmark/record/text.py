@@ -113,10 +113,17 @@ def _band_line(record: Mapping[str, Any]) -> str:
     return f"Closed forms over circuit simulation: {'; '.join(parts)}" if parts else ""
 
 
-def probability(found: Mapping[str, float]) -> str:
-    """Print a probability with its sampling error."""
+def probability(found: Mapping[str, float], draws: int) -> str:
+    """Print a probability with its sampling error.
+
+    Where all draws agree there is no scatter to take an error from; the bound is that of independent draws, 3/n at 95 %
+    (rule of three: Hanley and Lippman-Hand, JAMA 249, 1743 (1983), from memory).
+    """
+    if found["value"] in (0.0, 1.0):
+        limit = f"at most {3.0 / draws:.2g}" if found["value"] == 0.0 else f"at least {1.0 - 3.0 / draws:.4g}"
+        return f"{found['value']:.0f} ({'none' if found['value'] == 0.0 else 'all'} of {draws} draws; {limit} at 95 %)"
     if found["error"] == 0.0:
-        return f"{found['value']:.3g} (no scatter between scrambles)"
+        return f"{found['value']:.3g} (the same in all scrambles)"
     digits = max(2, 1 - math.floor(math.log10(found["error"])))
     return f"{found['value']:.{digits}f} ± {found['error']:.{digits}f}"
 
@@ -127,7 +134,7 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
     if found is None:
         return []
     required = record["study"]["required_advantage"]
-    reaches, better = probability(found["reaches"]), probability(found["above_one"])
+    reaches, better = (probability(found[key], found["draws"]) for key in ("reaches", "above_one"))
     lines = [
         f"Under the stated ranges ({found['draws']} draws, seed {found['seed']}): an advantage of {required:g} is "
         f"{found['word']}, probability {reaches}; more than 1: {better}. "
@@ -137,7 +144,7 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
         lines.append(f"  In {found['without_candidate']:.2g} of the draws the candidate has no permitted point.")
     if found["reaches_at_open_ends"] is not None:
         keys = ", ".join(row["key"] for row in found["bounds"])
-        at_ends = probability(found["reaches_at_open_ends"])
+        at_ends = probability(found["reaches_at_open_ends"], found["draws"])
         lines.append(f"  Stated as bounds: {keys}; at their open ends the probability is {at_ends}.")
     if found["constant"]:
         return [*lines, "  No drawn input moves the advantage."]

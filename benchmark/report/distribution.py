@@ -51,7 +51,7 @@ def advantage_distribution(record: Record, width: float = WIDTH, height: float =
         required = "required" in name
         canvas.rules([(edge, 0.0, edge, height)], color=INK, strokeWidth=1.6 if required else 1.0, strokeDash=[6, 3])
         placer.avoid_line([(edge, 0.0), (edge, height)])
-        reached = probability(found["reaches"] if required else found["above_one"])
+        reached = probability(found["reaches"] if required else found["above_one"], found["draws"])
         said = f"{'reached' if required else 'exceeded'} with probability {reached}"
         lines = [line for text in (name, said) for line in fitted(text, width / 3.0, 5, bold=True)]
         placed = placer.place(lines, [(edge, height * share) for share in (0.35, 0.6, 0.2, 0.8)], bold=True)

@@ -31,8 +31,8 @@ def uncertainty(record: Record, figure: Figure) -> Section:
     blocks: list[Block] = [Paragraph(words[0]), Paragraph(text), figure, _quantiles(found)]
     if found["reaches_at_open_ends"] is not None:
         keys = ", ".join(row["key"] for row in found["bounds"])
-        at_ends = f"{keys}; at their open ends the probability is {probability(found['reaches_at_open_ends'])}."
-        blocks.insert(1, Paragraph(at_ends, "Stated as bounds:"))
+        reached = probability(found["reaches_at_open_ends"], found["draws"])
+        blocks.insert(1, Paragraph(f"{keys}; at their open ends the probability is {reached}.", "Stated as bounds:"))
     blocks.append(_shares(record, found))
     return Section("uncertainty", title, tuple(blocks))
 
@@ -84,6 +84,10 @@ def _value(record: Record, key: str) -> Cell:
     return Cell(key, f"#value-{place}" if place else "")
 
 
+def _worth(found: Record) -> str:
+    return f"{number(found['value'], 2)} ± {number(found['error'], 1)}" if found["value"] else "nothing"
+
+
 def _offer(row: Record) -> str:
     """What the measurement the study names is worth, for its cost."""
     if not is_number(row["cost"]):
@@ -106,7 +110,7 @@ def next_measurement(record: Record) -> Section:
         f"present range (one standard deviation), below which a better measurement is worth less than "
         f"{number(found['negligible'], 1)} more."
     )
-    whole = f"Knowing all of them perfectly is worth {probability(found['worth_of_all'])}."
+    whole = f"Knowing all of them perfectly is worth {_worth(found['worth_of_all'])}."
     if found["stop"]:
         stop = "Stop: no measurement of these inputs can change the answer within their ranges."
         return Section("next-measurement", title, (Paragraph(stop, "Stop rule:"), Paragraph(whole), Paragraph(text)))

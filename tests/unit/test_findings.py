@@ -12,6 +12,7 @@ from benchmark.record.findings import findings
 from benchmark.record.load import load_study
 from benchmark.record.ratio_only import ratio_only
 from benchmark.record.run import run_study
+from benchmark.record.text import probability
 from benchmark.sets.study import DrawSettings
 from tests.fixed_displacement import fixed_displacement
 
@@ -51,3 +52,17 @@ def test_they_follow_the_record(record):
 
 def test_a_record_without_absolute_values_has_the_same_findings(record):
     assert [row["at"] for row in ratio_only(record)["findings"]] == [row["at"] for row in record["findings"]]
+
+
+@pytest.mark.parametrize(
+    ("found", "words"),
+    [
+        ({"value": 0.0, "error": 0.0}, "0 (none of 256 draws; at most 0.012 at 95 %)"),
+        ({"value": 1.0, "error": 0.0}, "1 (all of 256 draws; at least 0.9883 at 95 %)"),
+        ({"value": 0.5, "error": 0.0}, "0.5 (the same in all scrambles)"),
+        ({"value": 0.73912, "error": 0.0051}, "0.7391 ± 0.0051"),
+        ({"value": 0.25, "error": 0.03}, "0.250 ± 0.030"),
+    ],
+)
+def test_a_probability_is_printed_with_what_bounds_it(found, words):
+    assert probability(found, 256) == words
