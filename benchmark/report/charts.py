@@ -11,6 +11,7 @@ from benchmark.report.advantage import advantage_against_time, advantage_by_node
 from benchmark.report.distribution import advantage_distribution
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart
+from benchmark.report.ladder_chart import ladder_steps
 from benchmark.report.margins import requirement_margins
 from benchmark.report.parts import where_it_goes
 from benchmark.report.ribbons import limits_along_supply
@@ -30,6 +31,7 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         limits_along_supply(record),
         advantage_against_time(record),
         *where_it_goes(record),
+        ladder_steps(record),
         advantage_distribution(record),
         input_swings(record),
         advantage_by_node(record),

@@ -36,6 +36,8 @@ FEASIBLE = state_word(True)
 AMBITIONS = ("today", "target", "limit")
 #: how far beyond the feasible points the chart looks
 BEYOND = 4.0
+#: least distance of the bars of a side [pixel]
+BARS_APART = 75.0
 
 
 @dataclass(frozen=True)
@@ -108,6 +110,7 @@ class Plane:
     dropped: int
     outside: int
     left_out: int
+    bands: list[Row]
 
     def pixel(self, row: Mapping[str, Any]) -> tuple[float, float]:
         """Return the place of a point in pixels."""
@@ -170,7 +173,37 @@ def plane_of(record: Record, width: float, height: float) -> Plane | None:
         for key, rows in usable.items()
     }
     shown = sum(map(len, curves.values()))
-    return Plane(x, y, curves, envelope, marks, limits, dropped, len(everything) - shown, left_out)
+    bands = _bands(record, usable, x, y)
+    return Plane(x, y, curves, envelope, marks, limits, dropped, len(everything) - shown, left_out, bands)
+
+
+def _bands(record: Record, curves: Mapping[str, Sequence[Row]], x: LogAxis, y: LogAxis) -> list[Row]:
+    """Return what 80 % of the draws hold of the energy of the candidate and of the strongest contender, on the axes.
+
+    A bar stands at the time that the best estimate takes at its supply, between the swept points; bars that would crowd
+    the chart are in the table of the bands only.
+    """
+    found = record.get("uncertainty")
+    strongest = record["policies"][0]["strongest"]
+    rows: list[Row] = []
+    for band in found["bands"] if found else ():
+        key = f"{band['role']} {band['side']}"
+        curve = sorted(curves.get(key, ()), key=lambda row: row["supply_V"])
+        if not curve or (band["role"] != "candidate" and band["side"] != strongest):
+            continue
+        before = [row for row in curve if row["supply_V"] <= band["supply"]]
+        after = [row for row in curve if row["supply_V"] >= band["supply"]]
+        if not before or not after:
+            continue
+        low, high = before[-1], after[0]
+        span = high["supply_V"] - low["supply_V"]
+        share = (band["supply"] - low["supply_V"]) / span if span > 0.0 else 0.0
+        time = low["time_s"] * (high["time_s"] / low["time_s"]) ** share
+        apart = all(abs(x.pixel(time) - x.pixel(row["time_s"])) > BARS_APART for row in rows if side_key(row) == key)
+        if apart and x.holds(time) and y.holds(band["energy_low"]) and y.holds(band["energy_high"]):
+            place = {"role": band["role"], "side": band["side"], "supply_V": band["supply"], "time_s": time}
+            rows.append(place | {"low_J": band["energy_low"], "high_J": band["energy_high"]})
+    return rows
 
 
 def envelope_path(envelope: Sequence[Row]) -> list[Row]:
@@ -201,6 +234,13 @@ def _points(plane: Plane) -> tuple[Row, ...]:
         | {"state": FEASIBLE, "reason": "", "policy": row["policy"]}
         for row in plane.marks
     ]
+    rows += [
+        {"series": f"{share} % of the draws"}
+        | {name: row[name] for name in place[:4]}
+        | {"energy_J": row[end], "state": "", "reason": "", "policy": ""}
+        for row in plane.bands
+        for share, end in ((10, "low_J"), (90, "high_J"))
+    ]
     return tuple(rows)
 
 
@@ -224,6 +264,11 @@ def _caption(plane: Plane) -> str:
             "limit": "outlined, broken: a physical limit",
         }
         words.append(f"What the technology stands for: {'; '.join(looks[word] for word in stand)}.")
+    if plane.bands:
+        words.append(
+            "Bars: 10 to 90 % of the draws of all stated ranges, for the energy of the candidate and of the strongest "
+            "contender at some supplies (all of them: table uncertainty_bands)."
+        )
     if outlook_path(plane):
         words.append("The thin line leads from one set of the candidate to the next, at the primary policy.")
     deadline = plane.limits.deadline

@@ -200,6 +200,11 @@ def layers(record: Mapping[str, Any], plane: Plane, supplies: Mapping[str, Seque
     if len(plane.envelope) == 1:
         canvas.marks(plane.envelope, "time_s", "energy_J", size=420, fill="#dedede", stroke="#8a8a8a", strokeWidth=1.5)
     canvas.leaders(labels)
+    for row in plane.bands:
+        place, low, high = plane.x.pixel(row["time_s"]), plane.y.pixel(row["low_J"]), plane.y.pixel(row["high_J"])
+        ends = [(place - 3.0, low, place + 3.0, low), (place - 3.0, high, place + 3.0, high)]
+        colour = styles[side_key(row)].colour
+        canvas.rules([(place, low, place, high), *ends], color=colour, strokeWidth=1.1, opacity=0.75)
     for key in reversed(order):
         look, pieces = styles[key], _segments(plane.curves[key], key)
         failing = [row for row in pieces if row["state"] != FEASIBLE]

@@ -51,6 +51,11 @@ FORMULAS: dict[str, tuple[str, str, str]] = {
         "A at the low and at the high end of its range",
         "everything else at its best estimate, both sides re-optimised",
     ),
+    "ladder": (
+        "rung of a ladder",
+        "A with the mitigations of this rung and of those before it",
+        "each side at its own supply under the primary policy, with fewer choices than the study offers",
+    ),
     "draws": (
         "distribution of the advantage",
         "share of draws with A at most this",

@@ -7,7 +7,7 @@ from typing import Any
 
 from benchmark.record.text import ladder_words, robustness_words
 from benchmark.report.advantage import levels
-from benchmark.report.blocks import Block, Cell, Paragraph, Section, Table, plain
+from benchmark.report.blocks import Block, Cell, Figure, Paragraph, Section, Table, plain
 from benchmark.report.words import is_number, listed, number, policy_name, volts
 
 __all__ = ["ladder", "robustness"]
@@ -58,12 +58,13 @@ def _rungs(record: Record, row: Record) -> Table:
     return plain(f"ladder-{grows}", caption, (*columns, "its supply", "also chosen"), rows)
 
 
-def ladder(record: Record) -> Section:
+def ladder(record: Record, figure: Figure | None = None) -> Section:
     """Return the ladder of the reference, and the candidate's beside it."""
     blocks: list[Block] = []
     for row in record.get("ladder", ()):
         blocks += [Paragraph(ladder_words(record, row)), _rungs(record, row)]
-    return Section("ladder", "Ladder of the reference", (_key(record), *blocks))
+    drawn = () if figure is None else (figure,)
+    return Section("ladder", "Ladder of the reference", (*drawn, _key(record), *blocks))
 
 
 def _cells(record: Record, pair: str, position: int) -> Table:

@@ -19,6 +19,7 @@ _FORMULAS = {
     "energy-delay": ("time", "energy"),
     "limits-along-supply": ("limit",),
     "advantage-against-time": ("advantage",),
+    "ladder-steps": ("ladder",),
     "advantage-distribution": ("draws",),
     "input-swings": ("swing",),
     "advantage-by-node": ("advantage",),

@@ -36,6 +36,7 @@ KEYS = [
         "advantage-against-time",
         "time-parts",
         "energy-parts",
+        "ladder-steps",
         "advantage-distribution",
         "input-swings",
     ),
