@@ -102,6 +102,15 @@ def _noting(name: str) -> CodeType:
     return code
 
 
+def _forget_results() -> None:
+    """Empty every cache of the package: a remembered result is no call."""
+    for name, module in list(sys.modules.items()):
+        if name.startswith("benchmark."):
+            for item in list(vars(module).values()):
+                if callable(clear := getattr(item, "cache_clear", None)):
+                    clear()
+
+
 @contextlib.contextmanager
 def recorded(functions: Mapping[str, types.FunctionType]) -> Iterator[set[str]]:
     """Collect the names of the functions called inside the block; the set is complete at its end.
@@ -110,6 +119,7 @@ def recorded(functions: Mapping[str, types.FunctionType]) -> Iterator[set[str]]:
     doubles the time.
     """
     reached: set[str] = set()
+    _forget_results()
     for name, function in functions.items():
         _waiting[name] = function, function.__code__
         function.__code__ = _noting(name)
