@@ -18,6 +18,7 @@ from benchmark.report.compose import printed, to_bitmap, to_pdf
 from benchmark.report.distribution import advantage_distribution
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart, to_svg
+from benchmark.report.ladder_chart import ladder_steps
 from benchmark.report.margins import requirement_margins
 from benchmark.report.one_page import one_page
 from benchmark.report.page import digest_of
@@ -77,6 +78,7 @@ def _column(record: Record) -> list[Chart]:
         limits_along_supply(record, COLUMN - 86.0),
         advantage_against_time(record, COLUMN - 76.0, 260.0),
         *where_it_goes(record, COLUMN - 112.0, 100.0),
+        ladder_steps(record, COLUMN - 152.0, 132.0, 20.0),
         advantage_distribution(record, COLUMN - 76.0, 240.0),
         input_swings(record, COLUMN - 164.0, 144.0, 20.0, 8),
         advantage_by_node(record, COLUMN - 76.0),

@@ -111,16 +111,18 @@ def test_killed_at_a_step_in_the_file_system(bench: Bench, over_a_record: bool, 
 
 @pytest.mark.parametrize("over_a_record", [True, False], ids=["over", "fresh"])
 def test_killed_at_a_random_moment(bench: Bench, over_a_record: bool):
-    """Thirteen moments each, from the start to a little after the usual end."""
+    """Random moments from the start to a little after the usual end, until enough of them came before it."""
     rng = random.Random(f"{KEY}/moments/{over_a_record}")
     killed = 0
-    for _ in range(13):
+    for _ in range(60):
         bench.start(over_a_record)
         died = bench.run(NEW, kill_after=rng.uniform(0.0, 1.1) * bench.seconds)
         assert died.status in (0, -signal.SIGKILL)
         killed += died.status != 0
         bench.judge(over_a_record)
         bench.next_run()
+        if killed >= 8:
+            break
     assert killed >= 5
 
 
