@@ -377,7 +377,6 @@ def changes(
     draws: Draws = None,
     seed: Seed = None,
     jobs: Jobs = 1,
-    need: Need = False,
     nodes: Nodes = None,
 ) -> None:
     """Show what changed between two runs, and how much of it is due to each changed input."""

@@ -2,9 +2,6 @@
 
 from __future__ import annotations
 
-import csv
-import io
-import json
 import sys
 import time
 from collections.abc import Sequence
@@ -14,9 +11,8 @@ from typing import TYPE_CHECKING, Any
 
 import typer
 
-from benchmark.cli.changes import FORMATS
 from benchmark.cli.commands import check_folders
-from benchmark.errors import UsageError
+from benchmark.cli.forms import check_form, echo_csv, echo_json
 
 if TYPE_CHECKING:
     from benchmark.api.batch import Batched
@@ -45,9 +41,7 @@ def batch_command(
     from benchmark.api.batch import input_files
 
     check_folders(nodes)
-    if form not in FORMATS:
-        message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
-        raise UsageError(message)
+    check_form(form)
     options: dict[str, Any] = {"out": out, "nodes": nodes, "draws": draws, "seed": seed, "jobs": jobs}
     while True:
         seen = input_files([folder, *nodes])
@@ -76,13 +70,9 @@ def _told(done: int, of: int) -> None:
 def _print(found: Batched, form: str) -> None:
     rows = [asdict(row) for row in found.rows]
     if form == "json":
-        typer.echo(json.dumps({"seconds": found.seconds, "studies": rows}, ensure_ascii=False, indent=1))
+        echo_json({"seconds": found.seconds, "studies": rows})
     elif form == "csv":
-        written = io.StringIO()
-        writer = csv.DictWriter(written, list(rows[0]), lineterminator="\n")
-        writer.writeheader()
-        writer.writerows({name: "" if value is None else value for name, value in row.items()} for row in rows)
-        typer.echo(written.getvalue(), nl=False)
+        echo_csv(list(rows[0]), (["" if value is None else value for value in row.values()] for row in rows))
     else:
         _show(found)
 

@@ -2,24 +2,18 @@
 
 from __future__ import annotations
 
-import csv
-import io
-import json
 import math
 from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
-import typer
-
 from benchmark.cli.commands import check_folders
+from benchmark.cli.forms import check_form, echo_csv, echo_json
 from benchmark.cli.layout import Block, Facts, Note, Table, show_blocks
-from benchmark.errors import UsageError
 from benchmark.record.text import engineering
 
-__all__ = ["FORMATS", "changes_command"]
+__all__ = ["changes_command"]
 
-FORMATS = ("text", "csv", "json")
 Row = Mapping[str, Any]
 #: columns of the csv: every fact is a row of its section
 COLUMNS = ("section", "name", "node", "unit", "old", "new", "factor", "at_old_supply", "part", "note")
@@ -45,18 +39,12 @@ def changes_command(
     from benchmark import api
 
     check_folders(nodes)
-    if form not in FORMATS:
-        message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
-        raise UsageError(message)
+    check_form(form)
     found = api.changes(old, new, nodes=nodes, anyway=anyway, draws=draws, seed=seed, jobs=jobs).data
     if form == "json":
-        typer.echo(json.dumps(found, ensure_ascii=False, indent=1))
+        echo_json(found)
     elif form == "csv":
-        written = io.StringIO()
-        writer = csv.DictWriter(written, COLUMNS, restval="", lineterminator="\n")
-        writer.writeheader()
-        writer.writerows({name: _cell(value) for name, value in row.items()} for row in csv_rows(found))
-        typer.echo(written.getvalue(), nl=False)
+        echo_csv(COLUMNS, ([_cell(row.get(name, "")) for name in COLUMNS] for row in csv_rows(found)))
     else:
         show_blocks(blocks(found, additive=additive))
 

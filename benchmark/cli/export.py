@@ -9,6 +9,7 @@ from pathlib import Path
 
 import typer
 
+from benchmark.cli.forms import check_form
 from benchmark.errors import EvenloadError, UsageError
 
 __all__ = ["export_command"]
@@ -23,9 +24,7 @@ def export_command(record_folder: Path, figures: Path | None, tables: Path | Non
     if figures is None and tables is None:
         message = "export needs --figures FOLDER, --tables FOLDER or both"
         raise UsageError(message)
-    if form not in FORMATS:
-        message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
-        raise UsageError(message)
+    check_form(form, FORMATS)
     record = read_record(record_folder)
     if ratio_only:
         from benchmark.record.ratio_only import ratio_only as without_absolutes

@@ -2,19 +2,15 @@
 
 from __future__ import annotations
 
-import csv
-import io
-import json
 import math
 import sys
 from collections.abc import Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-import typer
-
 from benchmark.cli.chosen import study_inputs
 from benchmark.cli.commands import check_folders
+from benchmark.cli.forms import check_form, echo_csv, echo_json
 from benchmark.errors import UsageError
 
 if TYPE_CHECKING:
@@ -22,7 +18,6 @@ if TYPE_CHECKING:
 
 __all__ = ["need_command"]
 
-FORMATS = ("text", "csv", "json")
 #: longest name that stands beside its sentence in one table
 SHORT = 32
 
@@ -86,9 +81,7 @@ def need_command(
     from benchmark import api
 
     check_folders(nodes)
-    if form not in FORMATS:
-        message = f"--format: {form!r} is not one of {', '.join(FORMATS)}"
-        raise UsageError(message)
+    check_form(form)
     question = _one_of(
         {"--trade": trade, "--sheet": sheet, "--map": bool(map_), "--improve": improve, "--flips": flips > 0}
     )
@@ -135,14 +128,10 @@ def _print(found: Needed, form: str) -> None:
         facts = [Facts("", found.facts)] if short else [Facts("", [fact]) for fact in found.facts]
         show_blocks([*map(Note, found.heading), *facts])
     elif form == "csv":
-        written = io.StringIO()
-        writer = csv.writer(written, lineterminator="\n")
-        writer.writerow(found.columns)
-        writer.writerows([_cell(row[column]) for column in found.columns] for row in found.rows)
-        typer.echo(written.getvalue(), nl=False)
+        echo_csv(found.columns, ([_cell(row[column]) for column in found.columns] for row in found.rows))
     else:
         rows = [{column: _plain(row[column]) for column in found.columns} for row in found.rows]
-        typer.echo(json.dumps({"heading": list(found.heading), "rows": rows}, ensure_ascii=False, indent=1))
+        echo_json({"heading": list(found.heading), "rows": rows})
 
 
 def _cell(value: Any) -> str:

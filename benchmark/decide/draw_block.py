@@ -40,14 +40,13 @@ SUPPLIES, ZOOM, STEP = 17, 9, 1.0e-3
 
 @dataclass(frozen=True)
 class DrawTask:
-    """What to draw: a study at one node pair under one policy, some values held or put elsewhere."""
+    """What to draw: a study at one node pair under one policy, some values put elsewhere instead of being drawn."""
 
     study: Study
     pair: NodePair
     policy: str
     frozen: Mapping[str, Choice]
     plan: Plan
-    held: tuple[str, ...] = ()
     put: Mapping[str, float] = dataclasses.field(default_factory=dict)
 
 
@@ -109,7 +108,7 @@ def _batch(task: DrawTask, block: int) -> tuple[Batch, dict[str, Array]]:
     """Return the draws of a block after the best estimate, and their points in (0, 1)."""
     values = values_by_key(task.study, task.pair)
     joints = joints_by_owner(task.study, task.pair)
-    points, drawn = draw_values(values, task.plan, block, (*task.held, *task.put), joints)
+    points, drawn = draw_values(values, task.plan, block, tuple(task.put), joints)
     size = task.plan.block_size + 1
     columns = {key: np.concatenate([values[key].si[:1], column]) for key, column in drawn.items()}
     columns |= {key: np.concatenate([values[key].si[:1], np.full(size - 1, si)]) for key, si in task.put.items()}

@@ -20,8 +20,9 @@ out groups of independently scrambled blocks (jackknife).
 from __future__ import annotations
 
 import contextlib
-import dataclasses
 import functools
+import itertools
+import operator
 from collections.abc import Callable, Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 
@@ -119,11 +120,16 @@ def uncertainty(task: DrawTask, jobs: int = 1, told: Told = lambda share: None) 
     told : callable
         Told the share done [1].
     """
-    blocks = []
-    for block in draw_blocks(task, jobs):
-        blocks.append(block)
-        told(len(blocks) / task.plan.blocks)
-    return summarise(task, blocks)
+    blocks = _counted(draw_blocks(task, jobs), task.plan.blocks, told)
+    sizes = [group.size for group in np.array_split(np.arange(task.plan.blocks), min(task.plan.blocks, MOST_GROUPS))]
+    # added up as they come, so that memory does not grow with the draws
+    return summarise(task, [functools.reduce(operator.add, itertools.islice(blocks, size)) for size in sizes])
+
+
+def _counted(blocks: Iterable[BlockSum], count: int, told: Told) -> Iterator[BlockSum]:
+    for done, block in enumerate(blocks, start=1):
+        told(done / count)
+        yield block
 
 
 def draw_blocks(task: DrawTask, jobs: int = 1) -> Iterable[BlockSum]:
@@ -163,10 +169,10 @@ def _interrupts_left_to_us() -> Iterator[None]:
         signal.signal(signal.SIGINT, before)
 
 
-def summarise(task: DrawTask, blocks: Sequence[BlockSum]) -> Uncertainty:
-    """Turn the sums of all blocks into probabilities, shares and values, each with its error."""
-    total = functools.reduce(lambda a, b: a + b, blocks)
-    without = _left_out(blocks)
+def summarise(task: DrawTask, groups: Sequence[BlockSum]) -> Uncertainty:
+    """Turn sums of blocks into probabilities, shares and values; leaving out a group in turn gives the errors."""
+    total = functools.reduce(operator.add, groups)
+    without = [functools.reduce(operator.add, [*groups[:i], *groups[i + 1 :]]) for i in range(len(groups))]
 
     def estimate(function: Callable[[BlockSum], float]) -> Estimate:
         return _jackknife(function, total, without)
@@ -194,7 +200,7 @@ def summarise(task: DrawTask, blocks: Sequence[BlockSum]) -> Uncertainty:
         shares.append(InputShare(key, shape, Estimate(share.value - by_noise, share.error), worth, coefficients))
     return Uncertainty(
         draws=total.draws,
-        blocks=len(blocks),
+        blocks=task.plan.blocks,
         seed=task.plan.seed,
         inputs=len(shapes),
         reaches=estimate(lambda block: block.reaching / block.draws),
@@ -224,13 +230,6 @@ def _idle_owners(task: DrawTask, total: BlockSum) -> tuple[str, ...]:
     return tuple(f"contender {side.id}." for side in idle) + tuple(
         f"{side.technology.id}." for side in idle if side.technology.id not in used
     )
-
-
-def _left_out(blocks: Sequence[BlockSum]) -> list[BlockSum]:
-    """Return the sums of all but one group of blocks, group by group."""
-    groups = np.array_split(np.arange(len(blocks)), min(len(blocks), MOST_GROUPS))
-    sums = [functools.reduce(lambda a, b: a + b, [blocks[i] for i in group]) for group in groups]
-    return [functools.reduce(lambda a, b: a + b, [*sums[:i], *sums[i + 1 :]]) for i in range(len(sums))]
 
 
 def _jackknife(function: Callable[[BlockSum], float], total: BlockSum, without: Sequence[BlockSum]) -> Estimate:
@@ -319,8 +318,3 @@ def _bands(counts: NDArray[np.int64]) -> dict[str, Array]:
                 rows[supply] = [np.exp(_place(histogram, q * n, CURVE_BIN)) for q in (0.1, 0.9)]
         found[quantity] = rows
     return found
-
-
-def without_inputs(task: DrawTask, held: Sequence[str]) -> DrawTask:
-    """Return the task with more inputs held at their best estimate; the draws of the others stay the same."""
-    return dataclasses.replace(task, held=(*task.held, *held))

@@ -101,7 +101,7 @@ def variance_shares(task: DrawTask, keys: Sequence[str], draws: int = 256) -> li
     """
     values = values_by_key(task.study, task.pair)
     joints = joints_by_owner(task.study, task.pair)
-    a, b = draw_twice(values, Plan(1, draws, task.plan.seed), (*task.held, *task.put), joints)
+    a, b = draw_twice(values, Plan(1, draws, task.plan.seed), tuple(task.put), joints)
     # values that are not independent change places together
     sets = [a, b, *({**a, **{tied: b[tied] for tied in tied_with(key, joints) if tied in b}} for key in keys)]
     columns = {key: np.concatenate([values[key].si[:1], *(item[key] for item in sets)]) for key in a}

@@ -70,6 +70,11 @@ class _Primary:
     curves: dict[str, list[tuple[SideRun, Swept]]]
     relaxed: Outcome | None  # with the hard requirements set aside, when the candidate has no permitted point
 
+    @property
+    def frozen(self) -> dict[str, Choice]:
+        """What each side chose at the best estimate; its frozen parts are kept wherever inputs are moved."""
+        return self.comparison.frozen_choices(self.outcome)
+
 
 def _refuse_free_operations(study: Study, outcome: Outcome) -> None:
     """Refuse a study in which an operation costs a side no energy at all: nothing is charged, and no ratio has a sense.
@@ -116,11 +121,10 @@ def _primary(study: Study) -> _Primary:
 def _verdict(study: Study, primary: _Primary) -> Verdict:
     pair = study.pair(study.headline)
     policy = study.policy.primary
-    frozen = primary.comparison.frozen_choices(primary.outcome)
     moves: list[InputMove] = []
     if primary.outcome.candidate.found[0] and primary.outcome.strongest[0] >= 0:
-        _, moves = move_inputs(study, pair, policy, frozen)
-        moves = with_flips(study, pair, policy, frozen, moves)
+        _, moves = move_inputs(study, pair, policy, primary.frozen)
+        moves = with_flips(study, pair, policy, primary.frozen, moves)
     return judge(study, primary.outcome, primary.requirements, moves, primary.relaxed)
 
 
@@ -206,16 +210,10 @@ def run_study(
     banded = advantage_band(primary.comparison, primary.outcome, envelope, bands)
     progress("elasticities", 0.8)
     effective = [move.key for move in verdict.moves if move.matters]
-    slopes = elasticities(
-        study,
-        study.pair(study.headline),
-        primary.outcome,
-        primary.comparison.frozen_choices(primary.outcome),
-        effective,
-    )
+    slopes = elasticities(study, study.pair(study.headline), primary.outcome, primary.frozen, effective)
     drawn = draw_rows(
         study,
-        primary.comparison.frozen_choices(primary.outcome),
+        primary.frozen,
         draws or study.draws,
         jobs,
         lambda share: progress("drawing all ranges together", 0.82 + 0.13 * share),

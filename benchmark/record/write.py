@@ -15,7 +15,7 @@ from typing import Any
 
 from benchmark.errors import EvenloadError
 
-__all__ = ["read_record", "summary", "to_json", "write_folder"]
+__all__ = ["of_this_version", "read_record", "summary", "to_json", "write_folder"]
 
 #: end of the name under which the old folder waits where two folders cannot be exchanged in one step
 _OLD = ".old"
@@ -213,6 +213,11 @@ def read_record(path: Path) -> dict[str, Any]:
     except (OSError, ValueError, RecursionError) as error:
         message = f"{file}: is not a readable record ({type(error).__name__})"
         raise EvenloadError(message) from error
+    return of_this_version(record, file)
+
+
+def of_this_version(record: Any, file: Path) -> dict[str, Any]:
+    """Return what was read from ``file`` if it is a record that this version reads, else refuse it."""
     if not isinstance(record, dict) or record.get("schema") != 1:
         found = record.get("schema") if isinstance(record, dict) else type(record).__name__
         message = f"{file}: record schema {found!r} is not the one this version reads (1)"

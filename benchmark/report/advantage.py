@@ -9,13 +9,13 @@ from benchmark.record.shown_units import unit_words
 from benchmark.report.drawing import Canvas, Label, Words
 from benchmark.report.energy_delay import limits_of
 from benchmark.report.figure import Chart, Row, checked
-from benchmark.report.placing import Box, Placer, fitted, hatch, wrapped
+from benchmark.report.placing import Box, Placer, fitted, hatch, text_width, wrapped
 from benchmark.report.rows import advantage_rows
 from benchmark.report.spots import Spot, Spots
 from benchmark.report.style import INK, LinearAxis, LogAxis, looks, positive, spec
 from benchmark.report.words import amount, is_number, listed, number
 
-__all__ = ["advantage_against_time", "advantage_by_node", "crossing_words", "levels", "stretches"]
+__all__ = ["advantage_against_time", "advantage_by_node", "crossing_words", "level_lines_down", "levels", "stretches"]
 
 Record = Mapping[str, Any]
 WIDTH, HEIGHT = 610.0, 330.0
@@ -82,6 +82,28 @@ def _level_lines(canvas: Canvas, record: Record, axis: LogAxis, placer: Placer) 
         if placed is not None:
             labels.append(Label(placed, INK, True))
     return labels
+
+
+def level_lines_down(
+    canvas: Canvas, axis: LogAxis, record: Record, height: float, best: tuple[float, str] | None = None
+) -> None:
+    """Draw 1 and M down a chart whose rows lie below each other, each named in a line of its own at the top.
+
+    ``best``: the best estimate and its words, drawn before them as an unbroken line.
+    """
+    lines = [*([best] if best else []), *levels(record)]
+    words = []
+    for position, (value, name) in enumerate(line for line in lines if axis.holds(line[0])):
+        x, y = axis.pixel(value), 9.0 + 14.0 * position
+        canvas.rules(
+            [(x, y + 6.0, x, height)],
+            color=INK,
+            strokeWidth=1.6 if "required" in name else 1.0,
+            strokeDash=[1, 0] if best and name == best[1] else [6, 3],
+        )
+        half = 0.5 * text_width(name, bold=True)
+        words.append(Words(name, min(max(x, half + 3.0), axis.size - half - 3.0), y, "center", bold=True))
+    canvas.words(words, back=True)
 
 
 def _advantage_axis(record: Record, values: Sequence[float], height: float) -> LogAxis:

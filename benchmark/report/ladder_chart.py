@@ -7,7 +7,7 @@ from collections.abc import Mapping, Sequence
 from typing import Any
 
 from benchmark.record.text import ladder_words
-from benchmark.report.advantage import levels
+from benchmark.report.advantage import level_lines_down, levels
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import cut, text_width
@@ -36,7 +36,7 @@ def ladder_steps(record: Record, width: float = WIDTH, left: float = LEFT, right
     height = TOP + ROW * len(rows) + 4.0
     canvas = Canvas(x, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
-    _lines(canvas, record, x, height)
+    level_lines_down(canvas, x, record, height)
     spots = Spots(left, PAD)
     places = [(x.pixel(row["advantage"]), _middle(rows.index(row))) for row in known]
     for (x0, y0), (x1, y1) in itertools.pairwise(places):
@@ -88,19 +88,6 @@ def _row(rung: Record) -> Row:
 
 def _middle(position: int) -> float:
     return TOP + ROW * (position + 0.45)
-
-
-def _lines(canvas: Canvas, record: Record, axis: LogAxis, height: float) -> None:
-    """Draw 1 and the required advantage through all rungs, each named at the top."""
-    words = []
-    for position, (value, name) in enumerate(line for line in levels(record) if axis.holds(line[0])):
-        x, y = axis.pixel(value), 9.0 + 14.0 * position
-        canvas.rules(
-            [(x, y + 6.0, x, height)], color=INK, strokeWidth=1.6 if "required" in name else 1.0, strokeDash=[6, 3]
-        )
-        half = 0.5 * text_width(name, bold=True)
-        words.append(Words(name, min(max(x, half + 3.0), axis.size - half - 3.0), y, "center", bold=True))
-    canvas.words(words, back=True)
 
 
 def _alternative(rows: Sequence[Row]) -> str:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from benchmark.report.advantage import levels
+from benchmark.report.advantage import level_lines_down, levels
 from benchmark.report.drawing import Canvas, Words
 from benchmark.report.figure import Chart, Row, checked
 from benchmark.report.placing import Box, cut, fitted, text_width
@@ -110,26 +110,6 @@ def _bar(canvas: Canvas, axis: LogAxis, row: Row, middle: float, required: float
     return left, right
 
 
-def _lines(canvas: Canvas, record: Record, axis: LogAxis, height: float) -> None:
-    """Draw the best estimate, 1 and M through all bars, each named in a row of its own at the top."""
-    wanted = [level for level, _ in levels(record)]
-    best = float(record["verdict"]["advantage"])
-    lines = [(best, f"best estimate {number(best, 2, wanted)}"), *levels(record)]
-    words = []
-    for position, (value, name) in enumerate(line for line in lines if axis.holds(line[0])):
-        x, y = axis.pixel(value), 9.0 + 14.0 * position
-        estimate = name.startswith("best")
-        canvas.rules(
-            [(x, y + 6.0, x, height)],
-            color=INK,
-            strokeWidth=1.6 if "required" in name else 1.0,
-            strokeDash=[1, 0] if estimate else [6, 3],
-        )
-        half = 0.5 * text_width(name, bold=True)
-        words.append(Words(name, min(max(x, half + 3.0), axis.size - half - 3.0), y, "center", bold=True))
-    canvas.words(words, back=True)
-
-
 def input_swings(
     record: Record, width: float = WIDTH, left: float = LEFT, right: float = RIGHT, most: int = MOST
 ) -> Chart:
@@ -147,7 +127,8 @@ def input_swings(
     axis = _axis(record, rows, width)
     canvas = Canvas(axis, LinearAxis(height, 0.0, height, vertical=True))
     canvas.frame()
-    _lines(canvas, record, axis, height)
+    wanted = [level for level, _ in levels(record)]
+    level_lines_down(canvas, axis, record, height, (float(best), f"best estimate {number(float(best), 2, wanted)}"))
     required = float(record["study"]["required_advantage"])
     spots = Spots(left, PAD)
     for position, row in enumerate(rows):

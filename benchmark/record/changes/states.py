@@ -18,7 +18,7 @@ from benchmark.errors import EvenloadError, UsageError
 from benchmark.record.ledger import set_rows
 from benchmark.record.load import load_study, open_library
 from benchmark.record.rerun import recreate
-from benchmark.record.write import read_record
+from benchmark.record.write import of_this_version, read_record
 from benchmark.sets.files import read_toml
 from benchmark.sets.study import Study
 
@@ -82,11 +82,7 @@ def read_any_record(path: Path) -> dict[str, Any]:
     except (ValueError, RecursionError) as error:
         message = f"{path}: holds no record; a report.html written by evenload run does"
         raise EvenloadError(message) from error
-    if not isinstance(record, dict) or record.get("schema") != 1:
-        found = record.get("schema") if isinstance(record, dict) else type(record).__name__
-        message = f"{path}: record schema {found!r} is not the one this version reads (1)"
-        raise EvenloadError(message)
-    return record
+    return of_this_version(record, path)
 
 
 def open_state(shown: str, record: Mapping[str, Any]) -> State:
