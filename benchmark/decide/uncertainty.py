@@ -33,7 +33,7 @@ from benchmark.decide.draw_block import BIN, CURVE_BIN, BlockSum, DrawTask, basi
 from benchmark.draws.bases import QUADRATURE
 from benchmark.evaluate.side import values_by_key
 
-__all__ = ["Estimate", "InputShare", "Uncertainty", "draw_blocks", "summarise", "uncertainty"]
+__all__ = ["Estimate", "InputShare", "Uncertainty", "draw_blocks", "summarise", "uncertainty", "unseen"]
 
 Array = NDArray[np.float64]
 #: quantiles of the advantage that are stated
@@ -56,6 +56,15 @@ class Estimate:
 
     value: float
     error: float
+
+
+def unseen(draws: int) -> float:
+    """Return the largest probability, at 95 %, of what happened in none of ``draws`` independent draws: 3/n.
+
+    Rule of three: Hanley and Lippman-Hand, JAMA 249, 1743 (1983), from memory. Where all draws agree there is no
+    scatter to take an error from.
+    """
+    return 3.0 / draws
 
 
 @dataclass(frozen=True)

@@ -13,7 +13,7 @@ from benchmark.decide.compare import Comparison
 from benchmark.decide.draw_block import DrawTask, resolution
 from benchmark.decide.moves import range_of
 from benchmark.decide.next_measurement import NEGLIGIBLE, next_measurements, nothing_to_measure
-from benchmark.decide.uncertainty import Estimate, Told, Uncertainty, uncertainty
+from benchmark.decide.uncertainty import Estimate, Told, Uncertainty, uncertainty, unseen
 from benchmark.decide.variance_shares import variance_shares
 from benchmark.draws.plan import plan_of
 from benchmark.draws.values import drawn_keys
@@ -114,8 +114,8 @@ def _word(found: Uncertainty, settings: DrawSettings) -> str:
 
 
 def _two_errors(estimate: Estimate, draws: int) -> tuple[float, float]:
-    """About 95 %: twice the error; where all draws agree, 3/n (rule of three)."""
-    reach = 3.0 / draws if estimate.value in (0.0, 1.0) else 2.0 * estimate.error
+    """About 95 %: twice the error; where all draws agree, what none of them showed."""
+    reach = unseen(draws) if estimate.value in (0.0, 1.0) else 2.0 * estimate.error
     return estimate.value - reach, estimate.value + reach
 
 

@@ -6,6 +6,7 @@ import math
 from collections.abc import Mapping
 from typing import Any
 
+from benchmark.decide.uncertainty import unseen
 from benchmark.record.shown_units import in_units_of_record, normalised
 from benchmark.units import format_si
 
@@ -114,13 +115,9 @@ def _band_line(record: Mapping[str, Any]) -> str:
 
 
 def probability(found: Mapping[str, float], draws: int) -> str:
-    """Print a probability with its sampling error.
-
-    Where all draws agree there is no scatter to take an error from; the bound is that of independent draws, 3/n at 95 %
-    (rule of three: Hanley and Lippman-Hand, JAMA 249, 1743 (1983), from memory).
-    """
+    """Print a probability with its sampling error; where all draws agree, with what none of them showed."""
     if found["value"] in (0.0, 1.0):
-        limit = f"at most {3.0 / draws:.2g}" if found["value"] == 0.0 else f"at least {1.0 - 3.0 / draws:.4g}"
+        limit = f"at most {unseen(draws):.2g}" if found["value"] == 0.0 else f"at least {1.0 - unseen(draws):.4g}"
         return f"{found['value']:.0f} ({'none' if found['value'] == 0.0 else 'all'} of {draws} draws; {limit} at 95 %)"
     if found["error"] == 0.0:
         return f"{found['value']:.3g} (the same in all scrambles)"

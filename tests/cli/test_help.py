@@ -2,13 +2,17 @@
 
 from __future__ import annotations
 
+import ast
+import inspect
 import json
 import subprocess
 import sys
+from pathlib import Path
 
 import pytest
 
 import benchmark
+import benchmark.cli.app as app_module
 from tests.cli.conftest import Run
 
 #: pydantic is not listed: the command-line library itself imports it (about 50 ms)
@@ -73,3 +77,13 @@ def test_wrong_usage_is_status_2(arguments: list[str], evenload: Run):
     assert ran.status == 2
     assert ran.out == ""
     assert ran.err
+
+
+def test_every_option_of_a_command_is_used():
+    """An option that is taken and then forgotten would be accepted without any effect."""
+    tree = ast.parse(Path(inspect.getsourcefile(app_module) or "").read_text(encoding="utf-8"))
+    commands = [item for item in tree.body if isinstance(item, ast.FunctionDef) and item.decorator_list]
+    assert {item.name for item in commands} >= set(COMMANDS)
+    for command in commands:
+        used = {node.id for part in command.body for node in ast.walk(part) if isinstance(node, ast.Name)}
+        assert [argument.arg for argument in command.args.args if argument.arg not in used] == [], command.name

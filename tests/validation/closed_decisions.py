@@ -111,6 +111,16 @@ def _drawn() -> Iterator[Check]:
         )  # fmt: skip
     worth = _loss(gain, SD) - max(gain, 0.0)
     yield _check("value of perfect information [ln advantage]", NORMAL, worth, found.worth_of_all.value, 0.001, sampled)
+    for draws in (64, 256, 4096):
+        exact = 1.0 - 0.05 ** (1.0 / draws)
+        yield _check(
+            f"largest probability of what none of {draws} draws showed, at 95 % [1]",
+            "(1 - p)^n = 0.05: the binomial probability of no success",
+            exact,
+            uncertainty.unseen(draws),
+            0.03 * exact,
+            "the rule of three is the first term of the logarithm",
+        )
     shares = {item.key: item for item in found.shares}
     for name, variance in SHARES.items():
         one, sd = shares[KEYS[name]], float(np.sqrt(variance))

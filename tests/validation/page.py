@@ -26,7 +26,6 @@ TITLE = "Evenload: what its numbers were compared with"
 #: checks nearest to what they allow that are listed by name
 NEAREST = 20
 _FRAME = """\
-{% from "blocks.html" import render with context %}
 <!DOCTYPE html>
 <html lang="en">
 <head>
@@ -46,23 +45,7 @@ form-action 'none'">
 <h1>{{ title }}</h1>
 </header>
 <main>
-{% for section in sections %}
-<section id="{{ section.key }}" aria-labelledby="{{ section.key }}-title">
-<h2 id="{{ section.key }}-title">{{ loop.index }} {{ section.title }}</h2>
-{% for block in section.blocks %}
-{{ render(block) }}
-{% endfor %}
-</section>
-{% if loop.first %}
-<nav aria-label="Sections">
-<ol start="2">
-{% for other in sections[1:] %}
-<li><a href="#{{ other.key }}">{{ other.title }}</a></li>
-{% endfor %}
-</ol>
-</nav>
-{% endif %}
-{% endfor %}
+{% include "sections.html" %}
 </main>
 </body>
 </html>
