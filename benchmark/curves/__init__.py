@@ -1,1 +1,1 @@
-"""Raw measured tables (layer 8): a file from an instrument or a figure, read as its description says."""
+"""Raw measured tables (layer 7.5): a file from an instrument or a figure, read as its description says."""

@@ -1,4 +1,4 @@
-"""Measured curves as the description of a raw file made them (layer 8): SI arrays, marks and provenance."""
+"""Measured curves as the description of a raw file made them (layer 7.5): SI arrays, marks and provenance."""
 
 from __future__ import annotations
 
@@ -32,7 +32,10 @@ class Sweep:
         Line of the file each point stands on, counted from 1.
     at_floor, at_compliance : mapping of str to array of bool
         Value meaning -> shape (points,), for every value column: the size of the value is only an upper bound
-        (at or below the declared floor), or only a lower bound (at or above the declared compliance).
+        (at or below the declared floor), or only a lower bound (at or above the declared compliance). Below the
+        floor a value may have either sign: it is noise, and the floor is the bound.
+    floor, compliance : mapping of str to float
+        Value meaning -> SI, only where declared, in the dimension of the column here (divided by the width like it).
     """
 
     labels: Mapping[str, str]
@@ -41,6 +44,8 @@ class Sweep:
     rows: IntArray
     at_floor: Mapping[str, BoolArray]
     at_compliance: Mapping[str, BoolArray]
+    floor: Mapping[str, float] = field(default_factory=dict)
+    compliance: Mapping[str, float] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
