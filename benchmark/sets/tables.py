@@ -31,7 +31,7 @@ from benchmark.sets.schema import (
 from benchmark.sets.values import Place, read_provenance
 from benchmark.units import Unit, UnitError, parse_unit, to_si
 
-__all__ = ["COLUMN_UNITS", "TableFile", "read_table"]
+__all__ = ["COLUMN_UNITS", "TableFile", "cell_number", "read_table"]
 
 MAX_ROWS = 200_000
 MAX_COLUMNS = 200
@@ -306,7 +306,8 @@ def _rows(raw: bytes, sidecar: Sidecar, name: str, collector: Collector) -> list
     return rows
 
 
-def _cell(text: str, decimal: str) -> Decimal | None:
+def cell_number(text: str, decimal: str) -> Decimal | None:
+    """Read the number of a cell exactly; None when it is none, or beyond the range of the program."""
     if len(text) > MOST_DIGITS or not text.isascii():  # Decimal reads the digits of every script
         return None
     if decimal == ",":
@@ -347,7 +348,7 @@ def _columns(
             continue
         numbers = []
         for line, cells in rows[1:]:
-            number = _cell(cells[position], sidecar.decimal)
+            number = cell_number(cells[position], sidecar.decimal)
             if number is None:
                 hint = (
                     'declare decimal = "," in the sidecar' if "," in cells[position] and sidecar.decimal == "." else ""
