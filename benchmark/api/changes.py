@@ -21,7 +21,7 @@ __all__ = ["Changes", "changes"]
 Place = str | Path
 End = StudyView | Result | Place
 #: tables of a comparison of two studies, in the order of the report
-TABLES = ("inputs", "other", "attribution", "chain", "results")
+TABLES = ("inputs", "other", "points", "attribution", "chain", "results")
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,9 +32,12 @@ class Changes:
     ----------
     data : mapping
         Everything as plain data, as ``evenload changes --format json`` prints it. Two sets have inputs only.
+    record : mapping or None
+        The record of the new state with what changed in it; None for two sets.
     """
 
     data: Mapping[str, Any]
+    record: Mapping[str, Any] | None = None
 
     @property
     def flipped(self) -> bool:
@@ -50,6 +53,31 @@ class Changes:
         if "attribution" in found:
             found["attribution"] = pandas.DataFrame(part_rows(self.data["attribution"]))
         return found
+
+    def report(self, path: Place) -> Path:
+        """Write the report of the new state with a section of what changed since the old one.
+
+        Parameters
+        ----------
+        path : str or Path
+            File to write; one that exists is replaced.
+
+        Returns
+        -------
+        Path
+            The file.
+
+        Raises
+        ------
+        UsageError
+            When two sets were compared.
+        EvenloadError
+            When the file cannot be written.
+        """
+        if self.record is None:
+            message = "two sets of values have no report; compare two studies or their records"
+            raise UsageError(message)
+        return Result(self.record).report(path)
 
 
 def part_rows(attribution: Iterable[Mapping[str, Any]]) -> list[dict[str, Any]]:
@@ -106,7 +134,7 @@ def changes(
     InputRefused
         With every problem of the files.
     """
-    from benchmark.record.changes import compare_sets, compare_states, set_state
+    from benchmark.record.changes import compare_sets, compare_states, in_record, set_state
 
     kinds = [_kind(end) for end in (old, new)]
     if kinds.count("set") == 1:
@@ -116,7 +144,8 @@ def changes(
         return Changes(compare_sets(set_state(str(old)), set_state(str(new))))
     told = {"nodes": list(nodes), "draws": draws, "seed": seed, "jobs": jobs}
     states = [_state(end, kind, word, told) for end, kind, word in zip((old, new), kinds, ("old", "new"), strict=True)]
-    return Changes(compare_states(*states, anyway=anyway, jobs=jobs))
+    found = compare_states(*states, anyway=anyway, jobs=jobs)
+    return Changes(found, in_record(states[1].record, found))
 
 
 def _kind(end: End) -> str:

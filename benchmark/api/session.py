@@ -17,6 +17,7 @@ from benchmark.errors import UsageError, nearest
 if TYPE_CHECKING:
     import pandas
 
+    from benchmark.record.changes import State
     from benchmark.record.check import CheckResult
     from benchmark.sets.study import DrawSettings
 
@@ -182,6 +183,8 @@ def run(
     seed: int | None = None,
     jobs: int = 1,
     need: bool = False,
+    since: Result | Place | None = None,
+    anyway: bool = False,
 ) -> Result:
     """Run a study.
 
@@ -201,6 +204,10 @@ def run(
         Processes for the draws; no digit depends on their number.
     need : bool
         Also work out break-evens, required values, who must improve, the smallest flipping set and maps.
+    since : Result, str or Path, optional
+        An earlier result, record folder, ``record.json`` or ``report.html``: also say what changed since, and why.
+    anyway : bool
+        With ``since``: also when the earlier record answers another question.
 
     Returns
     -------
@@ -212,11 +219,14 @@ def run(
     InputRefused
         When the study is a file with problems.
     UsageError
-        When a number of draws, a seed or a number of processes cannot be one.
+        When a number of draws, a seed or a number of processes cannot be one, or ``since`` answers another question.
+    EvenloadError
+        When ``since`` holds no record that can be evaluated.
     """
     from benchmark.record.run import run_study
 
     loaded = study if isinstance(study, StudyView) else load_study(study)
+    earlier = None if since is None else _earlier(since, loaded, anyway)
     told = {} if progress is None else {"progress": progress}
     settings = _draw_settings(loaded.study.draws, draws, seed, jobs)
     record = run_study(loaded.study, loaded.library, created=created, draws=settings, jobs=jobs, **told)
@@ -228,7 +238,25 @@ def run(
         from benchmark.record.results import clean
 
         record["need"] = clean(need_blocks(loaded))
+    if earlier is not None:
+        from benchmark.record.changes import State, compare_states, in_record
+
+        found = compare_states(earlier, State("this run", record, loaded.study), anyway=anyway, jobs=jobs)
+        record = in_record(record, found)
     return Result(record)
+
+
+def _earlier(since: Result | Place, study: StudyView, anyway: bool) -> State:
+    """Return the earlier state, refused before anything is run when it answers another question."""
+    from benchmark.record.changes import open_state, read_any_record, refuse_other_question
+
+    if isinstance(since, Result):
+        state = open_state("the earlier result", since.record)
+    else:
+        state = open_state(str(since), read_any_record(Path(since)))
+    if not anyway:
+        refuse_other_question((state.shown, state.study), (str(study.path), study.study))
+    return state
 
 
 def _draw_settings(stated: DrawSettings, draws: int | None, seed: int | None, jobs: int) -> DrawSettings:

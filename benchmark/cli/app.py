@@ -56,6 +56,9 @@ Need = Annotated[
 ]
 Jobs = Annotated[int, typer.Option("--jobs", help="Processes for the draws; no digit depends on their number.")]
 
+Anyway = Annotated[
+    bool, typer.Option("--anyway", help="Compare also when question, policy or required advantage differ.")
+]
 AsOf = Annotated[str, typer.Option("--as-of", help="Values with a history as they were on this day (2026-01-31).")]
 
 
@@ -160,12 +163,30 @@ def run(
     seed: Seed = None,
     jobs: Jobs = 1,
     need: Need = False,
+    since: Annotated[
+        Path | None,
+        typer.Option("--since", help="Earlier record folder or report.html: also say what changed since, and why."),
+    ] = None,
+    anyway: Anyway = False,
 ) -> None:
     """Run a study: verdict on the terminal, record folder with report, tables and figures."""
     from benchmark.cli.commands import run_command
 
     word = run_command(
-        study, out, nodes or [], _overrides(set_), freeze_time, quiet, ratio_only, draws, seed, jobs, need, as_of
+        study,
+        out,
+        nodes or [],
+        _overrides(set_),
+        freeze_time,
+        quiet,
+        ratio_only,
+        draws,
+        seed,
+        jobs,
+        need,
+        as_of,
+        since,
+        anyway,
     )
     if gate:
         raise typer.Exit(GATE[word])
@@ -367,12 +388,14 @@ def changes(
         ),
     ],
     new: Annotated[str, typer.Argument(help="The same; studies are run, of two sets only the values are compared.")],
-    anyway: Annotated[
-        bool, typer.Option("--anyway", help="Compare also when question, policy or required advantage differ.")
-    ] = False,
+    anyway: Anyway = False,
     additive: Annotated[
         bool, typer.Option("--additive", help="Parts also in J and s, beside the logarithms of ratios.")
     ] = False,
+    report: Annotated[
+        Path | None,
+        typer.Option("--report", help="File ending in .html: the report of the new run with a section of the change."),
+    ] = None,
     form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
     draws: Draws = None,
     seed: Seed = None,
@@ -388,6 +411,7 @@ def changes(
         form=form,
         anyway=anyway,
         additive=additive,
+        report=report,
         draws=draws,
         seed=seed,
         jobs=jobs,

@@ -51,16 +51,27 @@ def run_command(
     jobs: int = 1,
     need: bool = False,
     as_of: str = "",
+    since: Path | None = None,
+    anyway: bool = False,
 ) -> str:
     """Run a study and write its record folder; returns the word of the verdict."""
     from benchmark import api
     from benchmark.record.criteria import criteria_words
 
     check_folders(nodes)
+    _check_since(since, ratio_only, anyway)
     study = api.load_study(study_path, nodes, overrides, day(as_of))
     folder = out or Path(f"evenload-{study.id}")
     result = api.run(
-        study, created=freeze_time or None, progress=_Steps(quiet), draws=draws, seed=seed, jobs=jobs, need=need
+        study,
+        created=freeze_time or None,
+        progress=_Steps(quiet),
+        draws=draws,
+        seed=seed,
+        jobs=jobs,
+        need=need,
+        since=since,
+        anyway=anyway,
     )
     if ratio_only:
         result = result.ratio_only()
@@ -71,12 +82,26 @@ def run_command(
     typer.echo(result.text)
     if words := criteria_words(result.record):
         typer.echo(f"Criteria changed after results: {words}")
+    if since is not None:
+        from benchmark.record.changes.words import change_lines
+
+        typer.echo("\n  ".join([f"Since {since}:", *change_lines(result.record["change"])]))
     if not quiet:
         size = (folder / "report.html").stat().st_size / 1e6
         typer.echo("")
         typer.echo(f"Record:  {folder} (written in {seconds:.1f} s)")
         typer.echo(f"Report:  {folder / 'report.html'} ({size:.1f} MB)")
     return result.verdict
+
+
+def _check_since(since: Path | None, ratio_only: bool, anyway: bool) -> None:
+    """Refuse combinations in which an option would do nothing."""
+    if since is not None and ratio_only:
+        message = "--since needs absolute values of both runs, which --ratio-only leaves out; give one of them"
+        raise UsageError(message)
+    if anyway and since is None:
+        message = "--anyway says how to compare with an earlier record; give --since RECORD too"
+        raise UsageError(message)
 
 
 def check_folders(nodes: Sequence[Path]) -> None:

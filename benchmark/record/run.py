@@ -11,6 +11,7 @@ from typing import Any
 import numpy as np
 
 import benchmark
+from benchmark import constants
 from benchmark.decide.assess import RequirementResult, assess
 from benchmark.decide.closed_form import closed_form_differences, delay_factor
 from benchmark.decide.compare import Comparison, Outcome, choice_of
@@ -139,6 +140,11 @@ def _software() -> dict[str, str]:
     }
 
 
+def _constants() -> dict[str, float]:
+    """Physical constants by name, SI: with other ones, other results are not the work of an input."""
+    return {name: value for name, value in vars(constants).items() if name.isupper()}
+
+
 def _files(study: Study, library: Library) -> list[dict[str, str]]:
     """Every input file with its text, so that the record alone can be run again."""
     rows = [{"name": study.file, "kind": "study", "sha256": study.sha256, "text": study.text}]
@@ -226,6 +232,7 @@ def run_study(
     record = {
         "schema": RECORD_SCHEMA,
         "software": _software(),
+        "constants": _constants(),
         "created": made,
         "study": _study_row(study),
         "criteria": criteria_row(study, made),

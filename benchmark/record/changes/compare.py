@@ -2,21 +2,26 @@
 
 from __future__ import annotations
 
+import hashlib
 import math
 from collections.abc import Mapping, Sequence
+from pathlib import PurePath
 from typing import Any
 
 from benchmark.decide.attribution import REST, Attribution, attribute
 from benchmark.errors import UsageError
 from benchmark.record.changes.chain import causal_chain
 from benchmark.record.changes.inputs import input_changes, text_changes
-from benchmark.record.changes.question import ASKED, other_changes
+from benchmark.record.changes.points import operating_points
+from benchmark.record.changes.question import asked_changes, other_changes
 from benchmark.record.changes.results import result_changes
 from benchmark.record.changes.spreads import probability_split
 from benchmark.record.changes.states import State
 from benchmark.record.results import clean
+from benchmark.record.write import to_json
+from benchmark.sets.study import Study
 
-__all__ = ["QuestionsDiffer", "compare_sets", "compare_states"]
+__all__ = ["QuestionsDiffer", "compare_sets", "compare_states", "in_record", "refuse_other_question"]
 
 #: a smaller difference of ln(advantage) between record and present program is rounding
 SAME = 1.0e-9
@@ -41,22 +46,18 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
     Returns
     -------
     dict
-        ``inputs``, ``other`` (what is not a value), ``results``, ``identical``, ``verdict``, ``attribution``,
-        ``probability`` (None without draws on both sides), ``chain``, ``banners``.
+        ``inputs``, ``other`` (what is not a value), ``results``, ``identical``, ``verdict``, ``points`` (operating
+        points before and after), ``attribution``, ``probability`` (None without draws on both sides), ``chain``,
+        ``banners``.
 
     Raises
     ------
     QuestionsDiffer
         When question or criteria differ and ``anyway`` is not set.
     """
+    if not anyway:
+        refuse_other_question((old.shown, old.study), (new.shown, new.study))
     other = other_changes(old, new)
-    asked = [row for row in other if row["kind"] in ASKED]
-    if asked and not anyway:
-        named = "; ".join(f"{row['name']}: {row['old'] or 'absent'} -> {row['new'] or 'absent'}" for row in asked)
-        message = (
-            f"{old.shown} and {new.shown} answer different questions ({named}); --anyway compares them none the less"
-        )
-        raise QuestionsDiffer(message)
     changed, identical = result_changes(old.record, new.record)
     split = attribute(old.study, new.study)
     found = {
@@ -72,6 +73,7 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
             "reasons_new": new.record["verdict"]["reasons"],
             "flipped": old.record["verdict"]["word"] != new.record["verdict"]["word"],
         },
+        "points": operating_points(old.record, new.record),
         "attribution": [vars(row) for row in split],
         "probability": probability_split(old.study, new.study, (old.record, new.record), jobs),
         "chain": causal_chain(old.study, new.study),
@@ -80,6 +82,28 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
     }
     cleaned: Row = clean(found)
     return cleaned
+
+
+def refuse_other_question(old: tuple[str, Study], new: tuple[str, Study]) -> None:
+    """Refuse to compare two studies, each with its name, that answer different questions.
+
+    Raises
+    ------
+    QuestionsDiffer
+        Naming everything in which question and criteria differ.
+    """
+    asked = asked_changes(old[1], new[1])
+    if asked:
+        named = "; ".join(f"{row['name']}: {row['old'] or 'absent'} -> {row['new'] or 'absent'}" for row in asked)
+        message = f"{old[0]} and {new[0]} answer different questions ({named}); --anyway compares them none the less"
+        raise QuestionsDiffer(message)
+
+
+def in_record(record: Mapping[str, Any], found: Mapping[str, Any]) -> Row:
+    """Return a record with what changed since an earlier one; folders of the earlier one are not told."""
+    old = {**found["old"], "shown": PurePath(found["old"]["shown"]).name}
+    new = {**found["new"], "shown": ""}
+    return {**record, "change": {**found, "old": old, "new": new}}
 
 
 def compare_sets(old: Mapping[str, Any], new: Mapping[str, Any]) -> Row:
@@ -110,6 +134,8 @@ def _head(state: State) -> Row:
         "shown": state.shown,
         "study": study["id"],
         "created": state.record["created"],
+        "sha256": hashlib.sha256(to_json(state.record).encode()).hexdigest(),
+        "metric": study["metric"],
         "advantage": verdict["advantage"],
         "required_advantage": study["required_advantage"],
     }
@@ -150,6 +176,7 @@ _TEXTS = {
     "option": "choices that are no numbers changed",
     "file": "measured tables or circuit files changed",
     "method": "what is searched changed",
+    "constant": "physical constants of the program changed",
     "program": "the program or its libraries changed",
 }
 

@@ -10,10 +10,8 @@ from benchmark.record.changes.states import State
 from benchmark.record.ledger import technologies
 from benchmark.sets.study import Side, Study
 
-__all__ = ["ASKED", "other_changes"]
+__all__ = ["asked_changes", "other_changes"]
 
-#: kinds of difference that make it another question
-ASKED = ("question", "criteria")
 _QUESTION = (
     "product_class",
     "operation",
@@ -32,14 +30,23 @@ _QUESTION = (
 def other_changes(old: State, new: State) -> list[dict[str, str]]:
     """Return every difference that is not a value: ``kind``, ``name``, ``old``, ``new``.
 
-    Kinds: question and criteria (then the two answer different questions), option, table, circuit, method, program.
+    Kinds: question and criteria (then the two answer different questions), option, file, method, draws, constant,
+    program.
     """
-    made = (_question, _criteria, _options, _files, _method, _draws)
-    kinds = ("question", "criteria", "option", "file", "method", "draws")
-    rows: list[dict[str, str]] = []
-    for kind, make in zip(kinds, made, strict=True):
+    rows = asked_changes(old.study, new.study)
+    for kind, make in (("option", _options), ("file", _files), ("method", _method), ("draws", _draws)):
         rows += text_changes(make(old.study), make(new.study), kind)
+    rows += text_changes(*_constants(old.record, new.record), "constant")
     return rows + text_changes(_program(old.record), _program(new.record), "program")
+
+
+def asked_changes(old: Study, new: Study) -> list[dict[str, str]]:
+    """Return what makes it another question: the question itself, and the criteria of its answer."""
+    return [
+        row
+        for kind, make in (("question", _question), ("criteria", _criteria))
+        for row in text_changes(make(old), make(new), kind)
+    ]
 
 
 def _question(study: Study) -> dict[str, str]:
@@ -106,6 +113,15 @@ def _draws(study: Study) -> dict[str, str]:
 
 def _program(record: Mapping[str, Any]) -> dict[str, str]:
     return {name: str(version) for name, version in record["software"].items()}
+
+
+def _constants(old: Mapping[str, Any], new: Mapping[str, Any]) -> tuple[dict[str, str], dict[str, str]]:
+    """Physical constants of the program that made each record, where both state them."""
+    stated = [record.get("constants") for record in (old, new)]
+    if None in stated:
+        return {}, {}
+    first, second = ({name: repr(value) for name, value in (row or {}).items()} for row in stated)
+    return first, second
 
 
 def _words(value: Any) -> str:
