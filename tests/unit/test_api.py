@@ -69,7 +69,7 @@ RESULT = [
 ]
 MEMBERS = {
     "Batched": ["frame", "rows", "seconds", "status"],
-    "Changes": ["data", "flipped", "frames"],
+    "Changes": ["data", "flipped", "frames", "record", "report"],
     "Needed": ["columns", "facts", "frame", "heading", "rows", "text"],
     "Result": [*RESULT, "verdict"],
     "SetView": ["frame", "id", "nodes", "parameters", "sources", "title"],
