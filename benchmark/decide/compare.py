@@ -18,7 +18,7 @@ from benchmark.decide.infeasible import why_infeasible
 from benchmark.decide.policies import PolicyInputs, metric_of, optimum
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.points import cycle_time
-from benchmark.evaluate.search import Optimum, SideRun
+from benchmark.evaluate.search import Alteration, Optimum, SideRun
 from benchmark.evaluate.side import build_side, keys_of
 from benchmark.sets.study import Choice, NodePair, Side, Study
 
@@ -72,12 +72,29 @@ class Outcome:
 
 
 class Comparison:
-    """A study at one node pair over a batch. Each side evaluates only the rows that can change it."""
+    """A study at one node pair over a batch. Each side evaluates only the rows that can change it.
+
+    Parameters
+    ----------
+    study : Study
+    pair : NodePair
+    batch : Batch
+    frozen : mapping, optional
+        Choice of every side that is to be kept.
+    alter : callable, optional
+        Applied to every side as it is built.
+    """
 
     def __init__(
-        self, study: Study, pair: NodePair, batch: Batch, *, frozen: Mapping[str, Choice] | None = None
+        self,
+        study: Study,
+        pair: NodePair,
+        batch: Batch,
+        *,
+        frozen: Mapping[str, Choice] | None = None,
+        alter: Alteration | None = None,
     ) -> None:
-        self.study, self.pair, self.batch = study, pair, batch
+        self.study, self.pair, self.batch, self.alter = study, pair, batch, alter
         self.frozen = dict(frozen or {})
         self._position: dict[str, NDArray[np.intp]] = {}
         self.candidate = self._run(study.candidate, "candidate")
@@ -91,7 +108,7 @@ class Comparison:
     def _run(self, side: Side, role: str) -> SideRun:
         rows, position = self.batch.distinct(keys_of(self.pair, side, role))
         self._position[self._key(side, role)] = position
-        return SideRun(build_side(self.study, side, role, self.pair, self.batch.take(rows)), self.pair)
+        return SideRun(build_side(self.study, side, role, self.pair, self.batch.take(rows)), self.pair, self.alter)
 
     def key(self, run: SideRun) -> str:
         """Return the key of a side among the frozen choices."""

@@ -15,16 +15,13 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
 
 from benchmark.circuits.circuit import Layer
-from benchmark.decide.trials import Timed, Trials
+from benchmark.decide.trials import Trials
 from benchmark.devices.record import Switch, SwitchPair
-from benchmark.evaluate.search import SideRun
 from benchmark.evaluate.side import SideProblem
-from benchmark.sets.study import NodePair, Side
 
-__all__ = ["GAP_COLUMNS", "AlteredComparison", "Improvement", "Perfected", "gap_rows", "improvements"]
+__all__ = ["GAP_COLUMNS", "Improvement", "Perfected", "gap_rows", "improvements"]
 
 #: factors by which resistance and capacitances are made smaller
 SMALLER = (1.0e-12, 1.0e-9, 1.0e-3, 1.0e-1)
@@ -137,32 +134,6 @@ def _without_wires(problem: SideProblem) -> SideProblem:
     )
 
 
-class _AlteredRun(SideRun):
-    """A side with some terms perfected, and so are its parts."""
-
-    def __init__(self, run: SideRun, pair: NodePair, alter: Perfected) -> None:
-        super().__init__(alter(run.problem), pair)
-        self.alter = alter
-
-    def subset(self, rows: NDArray[np.intp]) -> SideRun:
-        """Return the same side for some rows only."""
-        made = super().subset(rows)
-        altered = _AlteredRun(made, self.pair, self.alter)
-        altered._grids = made._grids
-        return altered
-
-
-class AlteredComparison(Timed):
-    """A comparison of sides with some terms perfected."""
-
-    def __init__(self, alter: Perfected, *arguments: Any, **named: Any) -> None:
-        self.alter = alter
-        super().__init__(*arguments, **named)
-
-    def _run(self, side: Side, role: str) -> SideRun:
-        return _AlteredRun(super()._run(side, role), self.pair, self.alter)
-
-
 @dataclass(frozen=True)
 class Improvement:
     """The largest advantage with some terms perfect.
@@ -215,9 +186,9 @@ def _perfected(trials: Trials, name: str, terms: tuple[str, ...], side: str) -> 
     smaller = SMALLER if {"device resistance", "device capacitance"} & set(terms) else SMALLER[:1]
     found = []
     for factor in smaller:
-        changed = functools.partial(AlteredComparison, Perfected(terms, factor))
+        perfect = Perfected(terms, factor)
         with np.errstate(all="ignore"):
-            best = Trials(trials.study, trials.pair, trials.policy, comparison=changed, frozen=trials.frozen).best
+            best = Trials(trials.study, trials.pair, trials.policy, alter=perfect, frozen=trials.frozen).best
         found.append(best)
     advantages = np.array([answers.advantage[0] for answers in found])
     if len(found) > 1 and advantages[0] > GROWS * advantages[1]:

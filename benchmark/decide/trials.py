@@ -22,6 +22,7 @@ from benchmark.decide.strongest import strongest_outcome
 from benchmark.devices.model import ModelInputs
 from benchmark.errors import EvenloadError, UsageError
 from benchmark.evaluate.batch import Batch, resolve
+from benchmark.evaluate.search import Alteration
 from benchmark.evaluate.side import values_by_key
 from benchmark.measured import MeasuredTable
 from benchmark.sets.study import Choice, NodePair, Study
@@ -105,8 +106,8 @@ class Trials:
     pair : NodePair
     policy : str
         By default the study's primary policy.
-    comparison : callable
-        Makes the comparison; another class may alter the sides.
+    alter : callable, optional
+        Applied to every side as it is built.
     frozen : mapping, optional
         Frozen choice of every side to keep; by default those of the best estimate.
     told : callable
@@ -119,7 +120,7 @@ class Trials:
         pair: NodePair,
         policy: str = "",
         *,
-        comparison: Callable[..., Comparison] = Timed,
+        alter: Alteration | None = None,
         frozen: Mapping[str, Choice] | None = None,
         told: Callable[[int], None] | None = None,
     ) -> None:
@@ -130,10 +131,10 @@ class Trials:
             self.best_values[REQUIRED_TIME] = study.policy.required_time
         self.best_values[TEMPERATURE] = study.temperatures[-1]
         self.policy = policy or study.policy.primary
-        self._comparison = comparison
+        self._alter = alter
         self._told = told
         self._whole = False
-        first = comparison(study, pair, Batch.best_estimate())
+        first = Timed(study, pair, Batch.best_estimate(), alter=alter)
         self.frozen = first.frozen_choices(first.outcome(self.policy)) if frozen is None else dict(frozen)
         self.problems = {"candidate": first.candidate.problem} | {
             name: run.problem for name, run in first.contenders.items()
@@ -171,7 +172,7 @@ class Trials:
             with np.errstate(all="ignore"):
                 batch = _batch([trial], self.best_values)
                 self._judge(batch)
-                comparison = self._comparison(study, self.pair, batch, frozen=self.frozen)
+                comparison = Timed(study, self.pair, batch, frozen=self.frozen, alter=self._alter)
                 outcome = comparison.outcome(self.policy)
         except EvenloadError as error:
             return f"cannot be evaluated: {error}"
@@ -186,7 +187,7 @@ class Trials:
             with np.errstate(all="ignore"):
                 batch = _batch(trials, self.best_values)
                 self._judge(batch)
-                comparison = self._comparison(study, self.pair, batch, frozen=self.frozen)
+                comparison = Timed(study, self.pair, batch, frozen=self.frozen, alter=self._alter)
                 if self._whole:
                     return _answers(comparison, comparison.outcome(self.policy))
                 return _answers(comparison, strongest_outcome(comparison, self.policy))

@@ -25,6 +25,7 @@ from benchmark.sets.study import Choice, NodePair
 
 __all__ = [
     "All",
+    "Alteration",
     "Condition",
     "Objective",
     "Optimum",
@@ -40,6 +41,7 @@ __all__ = [
 
 Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
+Alteration = Callable[[SideProblem], SideProblem]
 Objective = Callable[[SideProblem, Points], Array]
 #: points of which a costly condition is asked in one call: enough to be worth the call
 ASKED_TOGETHER = 16
@@ -104,11 +106,21 @@ class All(Condition):
 
 
 class SideRun:
-    """A side with its grids, each computed once."""
+    """A side with its grids, each computed once.
 
-    def __init__(self, problem: SideProblem, pair: NodePair) -> None:
-        self.problem = problem
+    Parameters
+    ----------
+    problem : SideProblem
+        As ``build_side`` makes it.
+    pair : NodePair
+    alter : callable, optional
+        Makes another side of it, here and in every part of it: what would be if a term of it were perfect.
+    """
+
+    def __init__(self, problem: SideProblem, pair: NodePair, alter: Alteration | None = None) -> None:
+        self.problem = problem if alter is None else alter(problem)
         self.pair = pair
+        self.alter = alter
         self._grids: dict[Choice, Points] = {}
 
     @property
@@ -130,7 +142,7 @@ class SideRun:
         """The same side for some rows only; what is known of them is kept."""
         problem = self.problem
         smaller = build_side(problem.study, problem.side, problem.role, self.pair, problem.batch.take(rows))
-        made = SideRun(smaller, self.pair)
+        made = SideRun(smaller, self.pair, self.alter)
         if problem.batch.rows > 1:
             made._grids = {choice: _points_of(points, rows) for choice, points in self._grids.items()}
         return made

@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import dataclasses
-import functools
 import math
 from pathlib import Path
 from typing import Any
@@ -14,7 +13,7 @@ import pytest
 from benchmark.decide.axes import find_axis, known_axes
 from benchmark.decide.break_even import Need, find_needs
 from benchmark.decide.compare import Comparison
-from benchmark.decide.gap import AlteredComparison, Perfected, gap_rows, improvements
+from benchmark.decide.gap import Perfected, gap_rows, improvements
 from benchmark.decide.need_words import need_rows, need_text
 from benchmark.decide.opportunity import map_rows, opportunity_map
 from benchmark.decide.profile import Line, label_changes
@@ -310,8 +309,7 @@ def test_perfecting_leakage_leaves_the_charges_and_perfect_charges_leave_the_lea
 def test_perfecting_nothing_changes_no_bit(tmp_path):
     study, _ = load_study(mixed().write(tmp_path))
     trials = Trials(study, study.pair(study.headline))
-    changed = functools.partial(AlteredComparison, Perfected((), 1.0))
-    again = Trials(study, trials.pair, comparison=changed)
+    again = Trials(study, trials.pair, alter=Perfected((), 1.0))
     assert again.best.advantage[0] == trials.best.advantage[0]
     assert again.best.energy_shares.keys() == trials.best.energy_shares.keys()
 
