@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import datetime
-from typing import Annotated, Any, Literal
+from typing import Annotated, Literal
 
 from pydantic import Field
 
+from benchmark.curves.requests import ExtractTable
 from benchmark.sets.schema import FileModel, FreeNote, Measure, Schema, Text, Whole
 
 __all__ = ["ColumnTable", "CurvesFile", "GivenTable", "RepeatTable"]
@@ -101,4 +102,4 @@ class CurvesFile(FileModel):
     date: datetime.date | None = Field(default=None, description="Day of the measurement, such as 2026-01-31")
     note: FreeNote = ""
     owner: Text = Field(default="", description="Who decided, for choices and targets")
-    extract: list[dict[str, Any]] = Field(default=[], description="What is extracted from the curves")
+    extract: list[ExtractTable] = Field(default=[], description="What is extracted from the curves")

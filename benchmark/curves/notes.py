@@ -77,8 +77,9 @@ def mark_notes(sweeps: Sequence[Sweep], columns: Sequence[Column]) -> list[str]:
             ("floor", "at_floor", "at or below the floor: upper bounds of the size"),
             ("compliance", "at_compliance", "at or above the compliance: lower bounds of the size"),
         ):
-            limits = {format_si(float(getattr(c, key)), c.unit.text, 6) for c in mine if getattr(c, key) > 0}
+            stated = [getattr(column.spec, key) for column in mine]
+            limits = {f"{measure.value} {measure.unit}" for measure in stated if measure is not None}
             if limits:
                 count = sum(int(np.sum(getattr(sweep, marks)[meaning])) for sweep in sweeps if meaning in sweep.columns)
-                notes.append(f"{meaning}: {count} readings {words} ({', '.join(sorted(limits))})")
+                notes.append(f"{meaning}: {count} reading(s) {words} ({', '.join(sorted(limits))})")
     return notes

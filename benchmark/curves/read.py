@@ -17,6 +17,7 @@ from benchmark.curves.meanings import MEANINGS, MULTIPLIED
 from benchmark.curves.notes import column_note, curve_notes, mark_notes
 from benchmark.curves.numbers import Numbers, read_numbers
 from benchmark.curves.record import IntArray, MeasuredCurves, Sweep
+from benchmark.curves.requests import convert_requests
 from benchmark.curves.sweeps import given_values, make_sweeps
 from benchmark.sets.files import TomlFile, read_bytes, read_toml
 from benchmark.sets.library import shipped_nodes
@@ -77,6 +78,8 @@ def read_curves(
     numbers = _numbers(blocks, used, reading)
     if len(collector.problems) > before:
         return None
+    units = _units(columns, reading)
+    requests = convert_requests(spec.extract, file, spec.along, units, collector)
     table.notes += [column_note(column, spec) for column in columns]
     if spec.ignore:
         table.notes.append(f"columns left out as declared: {', '.join(spec.ignore)}")
@@ -88,7 +91,6 @@ def read_curves(
     _check_given(sweeps, reading)
     if len(collector.problems) > before:
         return None
-    units = _units(columns, reading)
     return MeasuredCurves(
         name=path.stem,
         file=name,
@@ -107,7 +109,7 @@ def read_curves(
         owner=spec.owner,
         note=spec.note,
         hero=spec.hero,
-        extract=tuple(spec.extract),
+        extract=tuple(requests),
     )
 
 

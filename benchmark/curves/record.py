@@ -4,10 +4,11 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
+
+from benchmark.curves.requests import Request
 
 __all__ = ["Array", "BoolArray", "IntArray", "MeasuredCurves", "Sweep"]
 
@@ -75,4 +76,4 @@ class MeasuredCurves:
     owner: str
     note: str = ""
     hero: bool = False
-    extract: tuple[Any, ...] = field(default=())
+    extract: tuple[Request, ...] = ()
