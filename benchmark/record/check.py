@@ -17,7 +17,7 @@ from benchmark.sets.library import Library
 from benchmark.sets.problems import Collector
 from benchmark.sets.study_builder import build_study
 
-__all__ = ["CheckResult", "check_paths"]
+__all__ = ["CheckResult", "check_paths", "roots_of"]
 
 
 @dataclass(frozen=True)
@@ -52,7 +52,8 @@ def _may_be_read(path: Path) -> bool:
         return True  # reading it will say why not
 
 
-def _roots(path: Path) -> list[Path]:
+def roots_of(path: Path) -> list[Path]:
+    """Return the folders in which what a file names is looked for first."""
     parent = path.parent
     root = parent.parent if parent.name in ("technologies", "wires", "circuits") else parent
     return [folder for folder in (root, root / "nodes") if is_folder(folder)]
@@ -63,7 +64,7 @@ def check_paths(paths: Sequence[Path], nodes: Sequence[Path] = (), as_of: dateti
     collector = Collector()
     files = _listed(paths, collector)
     for path in files:
-        library = open_library(*nodes, *_roots(path), collector=collector, as_of=as_of)
+        library = open_library(*nodes, *roots_of(path), collector=collector, as_of=as_of)
         _check_one(path, library, collector)
     return CheckResult(len(files), tuple(sorted(set(collector.problems))), tuple(sorted(set(collector.warnings))))
 
@@ -78,6 +79,10 @@ def _check_one(path: Path, library: Library, collector: Collector) -> None:
         study = build_study(file, library, BUILT_IN)
         if study is not None:
             check_study(study, file, collector)
+    elif file.data.get("kind") == "curves":
+        from benchmark.curves.read import read_curves  # brings pandas, which is slow to import
+
+        read_curves(path, collector, frozenset(library.sources))
     elif "net" in file.data:
         read_circuit(path, library, collector)
     else:
