@@ -21,7 +21,7 @@ def _kind(data: dict[str, Any]) -> str:
         return "study"
     if "net" in data:
         return "circuit"
-    return "wires" if data.get("kind") == "wires" else "technology"
+    return str(data["kind"]) if data.get("kind") in ("wires", "curves") else "technology"
 
 
 def files_of(library: Library, kind: str) -> dict[str, TomlFile | None]:
