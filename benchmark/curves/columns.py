@@ -125,7 +125,7 @@ def _unit(column: ColumnTable, quantity: Quantity, place: Place, dotted: str, re
             inside = parse_unit(place.unit)
         except UnitError as error:
             if column.unit is None:
-                hint = f'state unit = "..." in {dotted} as well'
+                hint = 'state unit = "..." in its [[column]] as well'
                 reading.table.refuse(where, f"unknown unit: {error}", "", example, hint)
                 return None
             note = f"column {place.header}: the unit {place.unit!r} of the file is taken for {column.unit}, as stated"
@@ -141,11 +141,14 @@ def _unit(column: ColumnTable, quantity: Quantity, place: Place, dotted: str, re
         return None
     unit = stated or inside or (None if wanted.dimension else wanted)
     if unit is None:
-        reading.table.refuse(where, "has no unit", "", example, f'state unit = "..." in {dotted}')
+        reading.table.refuse(where, "has no unit", "", example, 'state unit = "..." in its [[column]]')
         return None
     if unit.dimension != wanted.dimension:
         found, allowed = f"{unit.text!r} ({unit.dimension_text})", f"{example} ({wanted.dimension_text})"
-        reading.table.refuse(where, "has the wrong dimension", found, allowed, _width_hint(column, unit))
+        if stated is not None:
+            reading.problem(f"{dotted}.unit", "has the wrong dimension", found, allowed, _width_hint(column, unit))
+        else:
+            reading.table.refuse(where, "has the wrong dimension", found, allowed, _width_hint(column, unit))
         return None
     return unit
 

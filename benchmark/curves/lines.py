@@ -5,6 +5,7 @@ from __future__ import annotations
 import codecs
 import csv
 import io
+import re
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 
@@ -53,7 +54,7 @@ class RawTable:
         if not most or self._counts[key] <= most:
             self.collector.add(Problem(self.name, line, column, what, found, allowed, hint))
         elif self._counts[key] == most + 1:
-            self.collector.add(Problem(self.name, line, column, f"{what}, and so do further rows"))
+            self.collector.add(Problem(self.name, line, column, f"{what} (further rows alike are not listed)"))
 
 
 @dataclass(frozen=True)
@@ -144,7 +145,7 @@ def _kept(
     if spec.header_starts:
         starts = [number for number, line in lines if line.lstrip(' \t"').startswith(spec.header_starts)]
         if not starts:
-            words = [line.strip()[:40] for _, line in lines if line.strip()]
+            words = [re.split(r"[,;|\t]", line.strip())[0][:40] for _, line in lines if line.strip()]
             collector.add(
                 Problem(
                     name,
@@ -153,13 +154,17 @@ def _kept(
                     "has no line that starts as the description says",
                     "",
                     f"header_starts = {spec.header_starts!r}",
-                    nearest(spec.header_starts, [word[: len(spec.header_starts)] for word in words]),
+                    nearest(spec.header_starts, words),
                 )
             )
             return None
         start = starts[0] - 1
     if start >= len(lines):
-        collector.add(Problem(name, 0, "", "has no line after those left out", f"{len(lines)} lines", f"over {start}"))
+        collector.add(
+            Problem(
+                name, 0, "", "has no line after those left out", f"{len(lines)} lines", f"{start + 1} lines or more"
+            )
+        )
         return None
     if start:
         notes.append(
@@ -245,8 +250,7 @@ def read_rows(raw: bytes, spec: CurvesFile, name: str, collector: Collector) -> 
         count = str(len(table.header.cells))
         table.refuse((header.line, ""), "has too many columns", count, f"at most {MAX_COLUMNS}")
         return None
-    _check_shape(table, spec)
-    return table
+    return table if _check_shape(table, spec) else None
 
 
 def _header(rows: list[Row], spec: CurvesFile) -> Row:
@@ -273,8 +277,8 @@ def _trim(table: RawTable) -> None:
         table.notes.append(f"empty cells after the last column left out in {trimmed} line(s)")
 
 
-def _check_shape(table: RawTable, spec: CurvesFile) -> None:
-    """Refuse rows of another length, and rows of units where none or one was declared."""
+def _check_shape(table: RawTable, spec: CurvesFile) -> bool:
+    """Refuse rows of another length, and rows of units where none or one was declared; False: nothing to go on with."""
     width = len(table.header.cells)
     rows = [*([table.units] if table.units.line else []), *table.rows]
     hint = "check the delimiter" if all(len(row.cells) == 1 for row in rows) or width == 1 else ""
@@ -283,12 +287,17 @@ def _check_shape(table: RawTable, spec: CurvesFile) -> None:
             found = f"{len(row.cells)} cell{'' if len(row.cells) == 1 else 's'}"
             table.refuse((row.line, ""), "row and header differ in length", found, str(width), hint, most=MOST_SHOWN)
     table.rows[:] = [row for row in table.rows if len(row.cells) == width]
+    if any(cell_number(cell, spec.decimal) is not None for cell in table.units.cells):
+        where, text = (table.units.line, ""), ", ".join(table.units.cells)
+        table.refuse(where, "holds numbers where a row of units is declared", text, "", 'leave out units = "row"')
+        return False
     first = table.rows[0] if table.rows else Row(0, [])
     no_numbers = all(cell_number(cell, spec.decimal) is None for cell in first.cells)
-    if no_numbers and any(is_unit(cell) for cell in first.cells):
-        text = ", ".join(cell for cell in first.cells if cell)
-        if spec.units == "row":
-            table.refuse((first.line, ""), "is a second row of units", text, "one row of units after the header")
-        else:
-            table.refuse((first.line, ""), "looks like a row of units", text, "rows of numbers", 'state units = "row"')
-        del table.rows[0]
+    if not no_numbers or not any(is_unit(cell) for cell in first.cells):
+        return bool(table.rows)
+    text = ", ".join(cell for cell in first.cells if cell)
+    if spec.units == "row":
+        table.refuse((first.line, ""), "is a second row of units", text, "one row of units after the header")
+    else:
+        table.refuse((first.line, ""), "looks like a row of units", text, "rows of numbers", 'state units = "row"')
+    return False

@@ -49,11 +49,12 @@ def check_flat_top(column: Column, si: Array, lines: IntArray, reading: Reading)
     if not long.size:
         return
     one, last = int(first[long[0]]), int(end[long[0]]) - 1
+    low, high = sorted((int(lines[one]), int(lines[last])))
     reading.table.refuse(
-        (int(min(lines[one], lines[last])), column.header),
+        (low, column.header),
         "has a flat top at a round value that no compliance explains",
-        f"{found:.3g} {column.unit.text} to line {int(max(lines[one], lines[last]))}",
+        f"{found:.3g} {column.unit.text} on lines {low} to {high}",
         "",
-        f"was the instrument limited? state compliance in {column.dotted}; if the sample saturates, saturates = true",
+        "was the instrument limited? state compliance in its [[column]]; if the sample saturates, saturates = true",
         most=1,
     )

@@ -113,7 +113,10 @@ def _check_rest(headers: list[str], free: dict[int, str], reading: Reading) -> N
     for position, header in free.items():
         if header not in spec.ignore:
             where = (table.header.line, header or f"column {position + 1}")
-            hint = nearest(header, names) or "describe it in a [[column]], or name it in ignore"
+            near = "" if header in names else nearest(header, names)
+            hint = near or "describe it in a [[column]], or name it in ignore"
+            if not header:
+                hint = 'it has no name: describe it by number, or state ignore = [""]'
             table.refuse(where, "is neither read nor ignored", "", ", ".join(names), hint)
     for name in sorted({name for name in spec.ignore if spec.ignore.count(name) > 1}):
         reading.problem("ignore", "names a column twice", repr(name))

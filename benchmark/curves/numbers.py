@@ -97,13 +97,15 @@ def read_numbers(column: Column, rows: IntArray, reading: Reading) -> Numbers:
 def _refuse(cell: str, line: int, column: Column, reading: Reading) -> None:
     decimal, where = reading.spec.decimal, (line, column.header)
     if not cell:
-        hint = "rows without a reading do not belong into the file"
+        hint = "leave out rows without a reading, or ignore the column"
         reading.table.refuse(where, "is empty", "", "a number", hint, most=MOST_SHOWN)
         return
     number = cell_number(cell, decimal)
     if number is not None and abs(number) in _NO_READING:
         allowed = "a reading; leave the row out"
-        reading.table.refuse(where, "is an instrument's sign for no reading", cell[:40], allowed, most=MOST_SHOWN)
+        reading.table.refuse(
+            where, "is what instruments send when they have no reading", cell[:40], allowed, most=MOST_SHOWN
+        )
         return
     hint = ""
     other = "," if decimal == "." else "."

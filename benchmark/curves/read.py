@@ -88,7 +88,8 @@ def read_curves(
         for block, rows in zip(blocks, used, strict=True)
         for sweep in make_sweeps(block, rows, numbers, given, reading)
     ]
-    _check_given(sweeps, reading)
+    if len(collector.problems) == before:
+        _check_given(sweeps, reading)
     if len(collector.problems) > before:
         return None
     return MeasuredCurves(
@@ -199,12 +200,13 @@ def _units(columns: list[Column], reading: Reading) -> Mapping[str, str]:
     widths = [column.unit.text for column in columns if column.meaning == "width"]
     stated = [spec.fixed, *(table.fixed for table in spec.given), *(column.fixed for column in spec.column)]
     widths += [measures["width"].unit for measures in stated if "width" in measures]
+    width = [*widths, "m"][0]  # a column per width without any width is refused with its first curve
     for column in columns:
         if column.spec.kind == "label":
             continue
         unit = column.unit.text
         if column.spec.per_width:
-            unit = f"{unit} {widths[0]}" if column.spec.meaning in MULTIPLIED else f"{unit}/{widths[0]}"
+            unit = f"{unit} {width}" if column.spec.meaning in MULTIPLIED else f"{unit}/{width}"
         found.setdefault(column.meaning, unit)
     for measures in stated:
         for name, measure in measures.items():
