@@ -7,9 +7,11 @@
 
 ``load_study`` checks a study and everything it refers to, ``run`` returns a ``Result`` with the verdict, the tables as
 pandas frames and the complete record, ``what_if`` changes numbers without a new file. ``load_set`` shows one parameter
-set, ``technologies`` lists them, ``check`` judges files. ``need``, ``trade``, ``sheet``, ``opportunity``, ``improve``
-and ``flips`` say where the answer would change, ``changes`` what changed between two states and why,
-``batch`` which studies of a folder moved. Objects show themselves as tables in a notebook.
+set, ``technologies`` lists them, ``check`` judges files. ``need``, ``trade``, ``sheet``, ``joint_sheet``,
+``opportunity``, ``improve`` and ``flips`` say where the answer would change, ``changes`` what changed between two
+states and why, ``batch`` which studies of a folder moved. ``supersede`` gives a value of a set a new number and keeps
+the old one.
+Objects show themselves as tables in a notebook.
 
 Importing this module loads no numeric package; the functions do.
 """
@@ -18,7 +20,8 @@ from __future__ import annotations
 
 from benchmark.api.batch import Batched, batch
 from benchmark.api.changes import Changes, changes
-from benchmark.api.need import Needed, flips, improve, need, opportunity, sheet, trade
+from benchmark.api.edit import Edited, supersede
+from benchmark.api.need import Needed, flips, improve, joint_sheet, need, opportunity, sheet, trade
 from benchmark.api.result import Result
 from benchmark.api.session import check, load_result, load_set, load_study, run, technologies, what_if, worked_study
 from benchmark.api.views import SetView, StudyView
@@ -26,6 +29,7 @@ from benchmark.api.views import SetView, StudyView
 __all__ = [
     "Batched",
     "Changes",
+    "Edited",
     "Needed",
     "Result",
     "SetView",
@@ -35,6 +39,7 @@ __all__ = [
     "check",
     "flips",
     "improve",
+    "joint_sheet",
     "load_result",
     "load_set",
     "load_study",
@@ -42,6 +47,7 @@ __all__ = [
     "opportunity",
     "run",
     "sheet",
+    "supersede",
     "technologies",
     "trade",
     "what_if",

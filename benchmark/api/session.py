@@ -28,7 +28,7 @@ Place = str | Path
 WhatIf = int | float | Decimal | str
 
 
-def _folders(nodes: Iterable[Place]) -> list[Path]:
+def folders_of(nodes: Iterable[Place]) -> list[Path]:
     folders = [Path(nodes)] if isinstance(nodes, (str, Path)) else [Path(folder) for folder in nodes]
     for folder in folders:
         if not folder.is_dir():
@@ -37,7 +37,7 @@ def _folders(nodes: Iterable[Place]) -> list[Path]:
     return folders
 
 
-def _text(name: str, value: object) -> str:
+def text_of(name: str, value: object) -> str:
     """The number as the file would spell it: exact, so that it gives the bits the command line gives."""
     if isinstance(value, (str, Decimal)):
         return str(value)
@@ -45,7 +45,7 @@ def _text(name: str, value: object) -> str:
         return str(int(value))
     if isinstance(value, numbers.Real) and not isinstance(value, bool):
         return repr(float(value))
-    message = f"what-if {name}: a number is needed, found {value!r}"
+    message = f"{name}: a number is needed, found {value!r}"
     raise UsageError(message)
 
 
@@ -71,7 +71,7 @@ def load_set(name: str, nodes: Iterable[Place] = ()) -> SetView:
     """
     from benchmark.record.load import open_set
 
-    item, library = open_set(name, *_folders(nodes))
+    item, library = open_set(name, *folders_of(nodes))
     return SetView(item, dict(library.sources))
 
 
@@ -107,8 +107,8 @@ def load_study(
     """
     from benchmark.record.load import load_study as load
 
-    folders = _folders(nodes)
-    changes = {name: _text(name, value) for name, value in (what_if or {}).items()}
+    folders = folders_of(nodes)
+    changes = {name: text_of(f"what-if {name}", value) for name, value in (what_if or {}).items()}
     study, library = load(Path(path), folders, changes, as_of)
     return StudyView(Path(path), tuple(folders), changes, study, library)
 
@@ -323,7 +323,7 @@ def check(
     from benchmark.record.check import check_paths
 
     listed = [paths] if isinstance(paths, (str, Path)) else list(paths)
-    return check_paths([Path(path) for path in listed], _folders(nodes), as_of)
+    return check_paths([Path(path) for path in listed], folders_of(nodes), as_of)
 
 
 def technologies(nodes: Iterable[Place] = ()) -> pandas.DataFrame:
@@ -349,6 +349,6 @@ def technologies(nodes: Iterable[Place] = ()) -> pandas.DataFrame:
     from benchmark.record.listing import TECHNOLOGY_COLUMNS, technology_rows
     from benchmark.record.load import open_library
 
-    library = open_library(*_folders(nodes))
+    library = open_library(*folders_of(nodes))
     library.collector.raise_if_any()
     return pandas.DataFrame(technology_rows(library), columns=["id", *TECHNOLOGY_COLUMNS])

@@ -45,7 +45,7 @@ def changes_command(
     if form == "json":
         echo_json(found)
     elif form == "csv":
-        echo_csv(COLUMNS, ([_cell(row.get(name, "")) for name in COLUMNS] for row in change_rows(found)))
+        echo_csv(COLUMNS, ([cell(row.get(name, "")) for name in COLUMNS] for row in change_rows(found)))
     else:
         written = [] if report is None else [Note(f"Report: {report} ({report.stat().st_size / 1e6:.1f} MB)")]
         show_blocks([*blocks(found, additive=additive), *written])
@@ -85,7 +85,7 @@ def _table(table: Any, empty: str = "") -> Block:
     return Table(table.title, table.columns, table.rows) if table.rows else Note(empty)
 
 
-def _cell(value: Any) -> str:
+def cell(value: Any) -> str:
     """A number with all its digits; nothing where there is none."""
     if value is None:
         return ""

@@ -16,7 +16,10 @@ from benchmark.sets.problems import Collector
 __all__ = ["as_it_was"]
 
 #: what an entry states for itself; without a range it had none
-_OWN = ("value", "by_node", "unit", "spread", "evidence", "source", "where", "conditions", "date")
+_OWN = (
+    *("value", "by_node", "unit", "spread", "evidence", "source", "where", "conditions", "date"),
+    *("note", "owner", "bound", "formula", "unusual"),
+)
 #: what goes when an entry does not state it
 _GONE = ("value", "by_node", "unit", "spread")
 
@@ -73,6 +76,9 @@ def _put_back(table: Any, dotted: str, day: datetime.date, file: TomlFile, colle
     for name in _OWN:
         if name in entry:
             table[name] = entry[name]
+    for name in ("note", "owner", "bound", "formula"):
+        if entry.get(name) in ("", "none"):  # said to have had none
+            table.pop(name)
     for _ in range(len(entries) - known[-1]):
         entries.pop()
     if not entries:

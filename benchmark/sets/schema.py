@@ -141,7 +141,10 @@ SpreadTable = Annotated[Uniform | LogUniform | Triangular | Normal | LogNormal, 
 
 
 class PastTable(FileModel):
-    """What a value was before: the number, the day it was measured or chosen, and why it is no longer used."""
+    """What a value was before: the number, the day it was measured or chosen, and why it is no longer used.
+
+    What it does not say besides number, unit, spread and date was as it is now.
+    """
 
     value: Number | None = Field(default=None, description="The number, in the unit")
     by_node: dict[NodeLabel, Number] | None = Field(default=None, description="One number per node, in the unit")
@@ -151,6 +154,15 @@ class PastTable(FileModel):
     source: SourceKey = None
     where: Where = None
     conditions: Conditions = None
+    note: Note = None
+    owner: Owner = None
+    bound: Literal["at-least", "at-most", "none"] | None = Field(
+        default=None, description="What kind of bound it was, or none, where that differs from today's"
+    )
+    formula: Text | None = Field(
+        default=None, description='Formula it had, or "" for none, where that differs from today\'s'
+    )
+    unusual: bool | None = Field(default=None, description="Whether it was meant to be unusual, if that changed")
     date: datetime.date = Field(description="Day of the measurement or choice; it held from then on")
     reason: Text = Field(min_length=1, description="Why it is no longer used")
 

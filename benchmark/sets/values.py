@@ -33,6 +33,8 @@ from benchmark.units import Unit, UnitError, from_si, parse_unit, to_si
 
 __all__ = ["Spread", "Value", "amount", "convert_measure", "convert_range", "convert_value", "read_provenance"]
 
+#: what a superseded entry does not say was as it is now
+_AS_NOW = ("evidence", "source", "where", "conditions", "note", "owner", "bound", "formula", "unusual")
 #: half-width of the central 95 % of a normal distribution, in standard deviations
 NORMAL_95 = 1.959963984540054
 
@@ -468,11 +470,12 @@ def _past(
                 )
             )
     found = []
-    for position, past in enumerate(table.superseded, start=1):
-        told = past.model_dump(exclude={"reason"}) | {"spread": past.spread, "formula": table.formula}
-        told |= {name: told[name] or getattr(table, name) for name in ("evidence", "source", "where", "conditions")}
+    for position, past in enumerate(table.superseded):
+        told = past.model_dump(exclude={"reason"}) | {"spread": past.spread}
+        told |= {name: getattr(table, name) for name in _AS_NOW if told[name] is None}
+        told["bound"] = None if told["bound"] == "none" else told["bound"]
         one_place = dataclasses.replace(place, dotted=f"{place.dotted}.superseded.{position}")
-        stated = ValueTable(**told, unusual=table.unusual)
+        stated = ValueTable(**told)
         value = convert_value(quantity, stated, nodes, one_place, collector)
         if value is not None:
             found.append(PastValue(value, past.reason))

@@ -32,6 +32,7 @@ STAMP = "2026-01-31T00:00:00Z"
 NAMES = [
     "Batched",
     "Changes",
+    "Edited",
     "Needed",
     "Result",
     "SetView",
@@ -48,6 +49,7 @@ NAMES = [
     "opportunity",
     "run",
     "sheet",
+    "supersede",
     "technologies",
     "trade",
     "what_if",

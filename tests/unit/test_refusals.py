@@ -44,6 +44,8 @@ ELSEWHERE = {
     "has another function than the common circuit": "test_study.py",
     "is not UTF-8 text; no change was written": "test_change_line.py",
     "cannot be used (": "test_change_line.py",
+    "stands in a layout that cannot be edited; edit it by hand": "test_supersede.py",
+    "does not say from which day its old number held, so its past": "test_supersede.py",
     "); nothing was written": "test_change_line.py",
     "has a history without dates": "test_history.py",
     "has no number yet on that day": "test_history.py",

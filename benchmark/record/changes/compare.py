@@ -11,7 +11,7 @@ from typing import Any
 from benchmark.decide.attribution import REST, Attribution, attribute
 from benchmark.errors import UsageError
 from benchmark.record.changes.chain import causal_chain
-from benchmark.record.changes.inputs import input_changes, text_changes
+from benchmark.record.changes.inputs import input_changes, text_changes, unit_notes
 from benchmark.record.changes.points import operating_points
 from benchmark.record.changes.question import asked_changes, other_changes
 from benchmark.record.changes.results import result_changes
@@ -59,12 +59,13 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
         refuse_other_question((old.shown, old.study), (new.shown, new.study))
     other = other_changes(old, new)
     changed, identical = result_changes(old.record, new.record)
+    inputs = input_changes(old.record["ledger"], new.record["ledger"])
     split = attribute(old.study, new.study)
     found = {
         "old": _head(old),
         "new": _head(new),
-        "banners": _banners(other, split, old.record, new.record),
-        "inputs": input_changes(old.record["ledger"], new.record["ledger"]),
+        "banners": [*_banners(other, split, old.record, new.record), *unit_notes(inputs)],
+        "inputs": inputs,
         "other": other,
         "verdict": {
             "old": old.record["verdict"]["word"],
@@ -102,7 +103,7 @@ def refuse_other_question(old: tuple[str, Study], new: tuple[str, Study]) -> Non
 def in_record(record: Mapping[str, Any], found: Mapping[str, Any]) -> Row:
     """Return a record with what changed since an earlier one; folders of the earlier one are not told."""
     old = {**found["old"], "shown": PurePath(found["old"]["shown"]).name}
-    new = {**found["new"], "shown": ""}
+    new = {name: value for name, value in found["new"].items() if name not in ("shown", "sha256")}
     return {**record, "change": {**found, "old": old, "new": new}}
 
 
@@ -117,11 +118,12 @@ def compare_sets(old: Mapping[str, Any], new: Mapping[str, Any]) -> Row:
     banners = [] if old["id"] == new["id"] else [f"two different sets: {old['id']} and {new['id']}"]
     # keys carry the id of their set, which differs between a set and a renamed copy of it
     ledgers = [[row | {"key": row["name"]} for row in state["ledger"]] for state in (old, new)]
+    inputs = input_changes(*ledgers)
     found = {
         "old": {"shown": old["shown"], "id": old["id"]},
         "new": {"shown": new["shown"], "id": new["id"]},
-        "banners": banners,
-        "inputs": input_changes(*ledgers),
+        "banners": [*banners, *unit_notes(inputs)],
+        "inputs": inputs,
         "other": text_changes(old["options"], new["options"], "option"),
     }
     cleaned: Row = clean(found)

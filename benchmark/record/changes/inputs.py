@@ -8,9 +8,11 @@ from typing import Any
 
 from benchmark.units import from_si, parse_unit, to_si
 
-__all__ = ["input_changes", "text_changes"]
+__all__ = ["input_changes", "text_changes", "unit_notes"]
 
 Row = Mapping[str, Any]
+#: a number that changes by more, up or down, may have been given in another unit
+SUSPICIOUS = 10.0
 #: what is said of a value besides its number
 _WORDS = ("evidence", "source", "where", "conditions", "bound", "formula", "date", "owner_of_choice", "note")
 
@@ -154,3 +156,15 @@ def text_changes(old: Mapping[str, str], new: Mapping[str, str], kind: str) -> l
         for name in dict.fromkeys([*old, *new])
         if old.get(name, "") != new.get(name, "")
     ]
+
+
+def unit_notes(changed: Sequence[Row]) -> list[str]:
+    """Return a sentence for every number that changed by more than a factor 10, or its sign."""
+    notes = []
+    for row in changed:
+        factor = row["factor"]
+        if not factor or (factor > 0.0 and 1.0 / SUSPICIOUS <= factor <= SUSPICIOUS):
+            continue
+        place = row["key"] + (f" at {row['node']}" if row["node"] else "")
+        notes.append(f"{place} changed by a factor {factor:.4g}: check units first")
+    return notes

@@ -20,9 +20,11 @@ from benchmark.record.load import load_study, open_library
 from benchmark.record.rerun import recreate
 from benchmark.record.write import of_this_version, read_record
 from benchmark.sets.files import read_toml
+from benchmark.sets.parameters import ParameterSet
+from benchmark.sets.sources import Source
 from benchmark.sets.study import Study
 
-__all__ = ["State", "is_report", "open_state", "read_any_record", "set_state"]
+__all__ = ["State", "is_report", "open_state", "read_any_record", "set_state", "state_of_set"]
 
 #: seconds git may take
 PATIENCE = 60.0
@@ -132,13 +134,18 @@ def set_state(place: str) -> dict[str, Any]:
         if item is None:
             message = f"{place}: is not a set of values (technology or wires)"
             raise EvenloadError(message)
-        return {
-            "shown": place,
-            "id": item.id,
-            "nodes": list(item.nodes),
-            "options": dict(item.options),
-            "ledger": set_rows(item, library.sources),
-        }
+        return state_of_set(place, item, library.sources)
+
+
+def state_of_set(shown: str, item: ParameterSet, sources: Mapping[str, Source]) -> dict[str, Any]:
+    """Return what ``set_state`` returns of a set that is built."""
+    return {
+        "shown": shown,
+        "id": item.id,
+        "nodes": list(item.nodes),
+        "options": dict(item.options),
+        "ledger": set_rows(item, sources),
+    }
 
 
 @contextlib.contextmanager
