@@ -36,6 +36,7 @@ _EXAMPLES = {
     "level": 'level = { value = 1e-7, unit = "A/um" }, in the unit of the column it is a level of',
     "at": 'at = { value = 0.5, unit = "V" }',
     "supply": 'supply = { value = 0.7, unit = "V" }',
+    "half_path_voltage": 'half_path_voltage = "subtracted" (small path voltage) or "kept"',
     "sweep": 'sweep = "forward", "backward" or "mean"',
 }
 
@@ -83,7 +84,7 @@ def _charge(meaning: str, unit: str) -> Kind:
 
 
 def _contact(meaning: str, unit: str) -> Kind:
-    return Kind(meaning, ("length",), ("path_resistance",), unit, (), ("span", "weights"), logarithmic=True)
+    return Kind(meaning, ("contact_spacing",), ("resistance_width",), unit, (), ("span", "weights"), logarithmic=True)
 
 
 def _slope(meaning: str, unit: str) -> Kind:
@@ -105,7 +106,7 @@ KINDS: dict[str, Kind] = {
     ),
     "threshold_extrapolated": Kind(
         "threshold voltage: line at the largest transconductance, drawn to zero current", _CONTROL, _CURRENT, "V",
-        (), ("sweep", "points"), least_points=3,
+        ("half_path_voltage",), ("sweep", "points"), least_points=3,
     ),
     "current": Kind(
         "current at a stated voltage", ("control_voltage", "path_voltage"), _CURRENT, "{of}", ("at",), logarithmic=True
@@ -134,7 +135,7 @@ KINDS: dict[str, Kind] = {
     "pull_in_voltage": _jump("control voltage at which a rising sweep jumps"),
     "pull_out_voltage": _jump("control voltage at which a falling sweep jumps back"),
     "cycles_to_failure": Kind(
-        "switching cycles until the column first crosses the stated limit", ("cycles",),
+        "switching cycles until the column first crosses the stated limit", ("switching_cycles",),
         ("path_resistance", *_CURRENT), "1", ("level",), (), {"level": "of"}, logarithmic=True,
     ),
 }  # fmt: skip

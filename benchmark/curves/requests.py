@@ -42,6 +42,10 @@ class ExtractTable(FileModel):
         default=None,
         description="Contacts: readings equally accurate in ohm (equal), or in per cent (relative)",
     )
+    half_path_voltage: Literal["subtracted", "kept"] | None = Field(
+        default=None, description="Extrapolated threshold: whether half the path voltage is subtracted"
+    )
+    leave_out: list[Text] = Field(default=[], description="Devices that are left out, by name; the result says so")
     sweep: Literal["forward", "backward", "mean"] | None = Field(
         default=None, description="Which sweep is read; mean: the mean of the numbers of both"
     )
@@ -75,6 +79,7 @@ _ALWAYS = frozenset(
         "control_voltage",
         "labels",
         "over",
+        "leave_out",
         "reading_percent",
         "setting",
         "spread",
@@ -102,7 +107,9 @@ class Request:
     node: str = ""
     sweep: str = ""
     over: str = ""
-    weights: str = "equal"
+    leave_out: tuple[str, ...] = ()
+    weights: Literal["equal", "relative"] = "equal"
+    half_path_voltage: bool = False
     points: int = 0
     spread: str = "uncertainty"
     reading: float = 0.0
@@ -145,7 +152,7 @@ def _convert(
     table: ExtractTable, dotted: str, file: TomlFile, along: str, units: Mapping[str, str], collector: Collector
 ) -> Request | None:
     kind = KINDS[table.quantity]
-    stated = {key for key in ExtractTable.model_fields if getattr(table, key) not in (None, {})}
+    stated = {key for key in ExtractTable.model_fields if getattr(table, key) not in (None, {}, [])}
     allowed = _ALWAYS | set(kind.needs) | set(kind.may)
     for key in kind.needs:
         if key not in stated:
@@ -195,6 +202,8 @@ def _convert(
         node=table.node or "",
         sweep=table.sweep or "",
         over=table.over or "",
+        leave_out=tuple(table.leave_out),
+        half_path_voltage=table.half_path_voltage == "subtracted",
         weights=table.weights or "equal",
         points=table.points or kind.least_points,
         spread=table.spread or "uncertainty",

@@ -8,7 +8,15 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
 
-from tests.validation import from_anchors, from_bands, from_closed_forms, from_open_cards, from_published, from_solvers
+from tests.validation import (
+    from_anchors,
+    from_bands,
+    from_closed_forms,
+    from_curves,
+    from_open_cards,
+    from_published,
+    from_solvers,
+)
 from tests.validation.check import Check
 from tests.validation.reach import public_functions, recorded
 
@@ -30,6 +38,7 @@ CHECKS, FUNCTIONS, PAGE = FOLDER / "checks.csv", FOLDER / "functions.csv", FOLDE
 SOURCES: tuple[Callable[[], list[Check]], ...] = (
     from_published.checks,
     from_closed_forms.checks,
+    from_curves.checks,
     from_solvers.checks,
     from_bands.checks,
     from_open_cards.checks,

@@ -1,0 +1,120 @@
+"""One number over many devices: median, quartiles and spread, apart from the error of measurement (layer 3)."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from benchmark.physics.extraction.result import Bound, CannotExtract, Extracted
+
+__all__ = ["OverDevices", "over_devices"]
+
+#: quartiles of a normal distribution are so many standard deviations apart
+NORMAL_QUARTILES = 1.3489795003921634
+#: standard error of the median of a normal sample, in standard deviations over sqrt(n)
+NORMAL_MEDIAN = math.sqrt(math.pi / 2.0)
+
+
+@dataclass(frozen=True)
+class OverDevices:
+    """What many devices say about one number, SI.
+
+    ``median``, and ``median_bound`` where it rests on bounds. ``lower_quartile`` and ``upper_quartile``: None where
+    they rest on bounds. ``seen_spread``: distance of the quartiles over 1.349, the standard deviation of a normal
+    distribution. ``measured``: root mean square of the uncertainties of the single numbers. ``device_spread``: what is
+    left of the spread without them, sqrt(seen^2 - measured^2); None where the measurement explains all of it.
+    ``median_error``: 1.2533 seen/sqrt(n). ``count`` devices, ``bounds`` of them known only by a bound.
+    """
+
+    median: float
+    median_bound: Bound
+    lower_quartile: float | None
+    upper_quartile: float | None
+    seen_spread: float | None
+    measured: float
+    device_spread: float | None
+    median_error: float | None
+    count: int
+    bounds: int
+
+
+def over_devices(found: Sequence[Extracted]) -> OverDevices:
+    """Sum up one number of many devices.
+
+    Parameters
+    ----------
+    found : sequence of Extracted
+        The number of each device.
+
+    Returns
+    -------
+    OverDevices
+        Quantiles by linear interpolation between ordered numbers (R. J. Hyndman and Y. Fan, The American Statistician
+        50, 361 (1996), definition 7; from memory). A bound counts as anywhere on its side: a quantile that this cannot
+        move is a number, else a bound.
+
+    Raises
+    ------
+    CannotExtract
+        Fewer than two devices; or the bounds leave the median open on both sides.
+    """
+    if len(found) < 2:
+        what = "a median over devices needs more than one"
+        raise CannotExtract(what, str(len(found)), "2 or more")
+    values = np.array([one.value for one in found])
+    below = np.array([one.bound == "at-most" for one in found])
+    above = np.array([one.bound == "at-least" for one in found])
+    median, bound = _quantile(values, below, above, 0.5)
+    quartiles = [_quantile(values, below, above, share, refuse=False) for share in (0.25, 0.75)]
+    lower, upper = (None if one_bound or math.isnan(one) else one for one, one_bound in quartiles)
+    seen = None if lower is None or upper is None else (upper - lower) / NORMAL_QUARTILES
+    errors = [one.uncertainty for one in found if one.uncertainty is not None]
+    measured = math.sqrt(sum(error**2 for error in errors) / len(errors)) if errors else 0.0
+    left = None if seen is None or seen <= measured else math.sqrt(seen**2 - measured**2)
+    return OverDevices(
+        median=median,
+        median_bound=bound,
+        lower_quartile=lower,
+        upper_quartile=upper,
+        seen_spread=seen,
+        measured=measured,
+        device_spread=left,
+        median_error=None if seen is None or bound else NORMAL_MEDIAN * seen / math.sqrt(len(found)),
+        count=len(found),
+        bounds=int(np.sum(below | above)),
+    )
+
+
+def _quantile(
+    values: np.ndarray, below: np.ndarray, above: np.ndarray, share: float, *, refuse: bool = True
+) -> tuple[float, Bound]:
+    """Return a quantile and whether it is a bound; nan when it is open on both sides and that may be."""
+    least, most = (
+        _between(np.sort(np.where(side, infinite, values)), share)
+        for side, infinite in ((below, -math.inf), (above, math.inf))
+    )
+    if least == most:
+        return least, ""
+    if math.isfinite(most):
+        return most, "at-most"
+    if math.isfinite(least):
+        return least, "at-least"
+    if refuse:
+        what = "the median over devices is open on both sides: too many bounds"
+        raise CannotExtract(what, f"{int(np.sum(below))} upper and {int(np.sum(above))} lower bounds of {values.size}")
+    return math.nan, ""
+
+
+def _between(ordered: np.ndarray, share: float) -> float:
+    """Interpolate between ordered numbers, of which some may be infinite."""
+    place = share * (ordered.size - 1)
+    left = math.floor(place)
+    part = place - left
+    if part == 0.0:
+        return float(ordered[left])
+    if not math.isfinite(ordered[left]):
+        return float(ordered[left])
+    return float(ordered[left] + part * (ordered[left + 1] - ordered[left]))
