@@ -8,6 +8,8 @@ from typing import Any
 
 from benchmark.record.shown_units import in_units_of_record
 from benchmark.report.advantage import advantage_against_time, advantage_by_node
+from benchmark.report.change_parts import change_parts
+from benchmark.report.change_picture import change_picture
 from benchmark.report.distribution import advantage_distribution
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart
@@ -37,6 +39,8 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         advantage_by_node(record),
         *node_steps(record),
     ]
+    if record.get("change") is not None:
+        found += [change_picture(record), change_parts(record)]
     if record.get("ratio_only"):
         found = [dataclasses.replace(chart, points=tuple(ratio_columns(chart.points))) for chart in found]
     return {chart.key: chart for chart in found}

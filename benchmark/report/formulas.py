@@ -66,6 +66,12 @@ FORMULAS: dict[str, tuple[str, str, str]] = {
         "factor = exp(mean of the changes of ln A)",
         "the values of a cause put in place in one order and in the opposite one, both sides re-optimised",
     ),
+    "change": (
+        "part of a change",
+        "mean over all orders of the change of ln A",
+        "the changed inputs put in place one after another in every order, both sides re-optimised each time; the "
+        "parts add up to ln(A after / A before)",
+    ),
 }
 
 #: part as the record names it -> formula, what stands in it
@@ -110,8 +116,8 @@ def formulas(record: Record) -> Table:
         for name in ("time_parts", "energy_parts")
         for part in side["point"][name]
     )
-    rows: list[tuple[Any, ...]] = [(Cell(name), form, words) for name, form, words in FORMULAS.values()]
-    keys = [*FORMULAS]
+    keys = [key for key in FORMULAS if key != "change" or record.get("change") is not None]
+    rows: list[tuple[Any, ...]] = [(Cell(name), form, words) for name, form, words in (FORMULAS[key] for key in keys)]
     for part in shown:
         form, words = PARTS.get(part, ("as the device model reports it", ""))
         rows.append((Cell(part, small="part"), form, words))

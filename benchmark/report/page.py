@@ -10,6 +10,7 @@ from typing import Any
 
 from benchmark.record.shown_units import in_units_of_record
 from benchmark.record.write import to_json
+from benchmark.report import section_change as change
 from benchmark.report import section_evidence as evidence
 from benchmark.report import section_method as method
 from benchmark.report import section_need as needs
@@ -83,6 +84,7 @@ def sections(record: Record, charts: Mapping[str, Chart], drawings: Mapping[str,
         strength.robustness(record),
         sure.uncertainty(record, shown["advantage-distribution"]),
         results.moves(record, shown["input-swings"]),
+        *change.changed(record, shown.get("change-picture"), shown.get("change-parts")),
         sure.next_measurement(record),
         *needs.needed(record),
         results.nodes(record, shown["advantage-by-node"], steps),

@@ -13,6 +13,8 @@ from typing import Any
 
 from benchmark.record.shown_units import in_units_of_record
 from benchmark.report.advantage import advantage_against_time, advantage_by_node
+from benchmark.report.change_parts import change_parts
+from benchmark.report.change_picture import change_picture
 from benchmark.report.charts import charts
 from benchmark.report.compose import printed, to_bitmap, to_pdf
 from benchmark.report.distribution import advantage_distribution
@@ -83,7 +85,15 @@ def _column(record: Record) -> list[Chart]:
         input_swings(record, COLUMN - 164.0, 144.0, 20.0, 8),
         advantage_by_node(record, COLUMN - 76.0),
         *node_steps(record, COLUMN - 170.0, 150.0),
+        *_changes(record),
     ]
+
+
+def _changes(record: Record) -> list[Chart]:
+    """Charts of what changed, where the record was compared with an earlier one."""
+    if record.get("change") is None:
+        return []
+    return [change_picture(record, COLUMN - 86.0, 300.0), change_parts(record, COLUMN - 240.0, 122.0, 118.0)]
 
 
 @in_units_of_record

@@ -10,6 +10,7 @@ from benchmark.record.criteria import criteria_words
 from benchmark.record.text import answer_sentence
 from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Pairs, Paragraph, Section, Table, plain
 from benchmark.report.margins import margin_words
+from benchmark.report.section_change import change_sentence
 from benchmark.report.words import amount, is_number, listed, number, plural, policy_name, requirement_name, volts
 
 __all__ = ["answer", "evidence_counts", "findings", "question", "requirements"]
@@ -94,6 +95,8 @@ def answer(record: Record, digest: str) -> Section:
         )
     if record.get("outlook"):
         blocks.append(Paragraph(_made_on(record), "Made on:"))
+    if said := change_sentence(record):
+        blocks.append(Paragraph(said, "Since the previous record:"))
     blocks += [
         Paragraph(_decisive(record), "Decisive inputs:"),
         Paragraph(_first_to_measure(record), "First thing to measure:"),

@@ -23,6 +23,8 @@ _FORMULAS = {
     "advantage-distribution": ("draws",),
     "input-swings": ("swing",),
     "advantage-by-node": ("advantage",),
+    "change-picture": ("time", "energy", "advantage"),
+    "change-parts": ("change",),
 }
 
 
@@ -77,9 +79,11 @@ def _worked(record: Record, chart: Chart, index: int, row: Row) -> list[tuple[st
     if chart.key == "advantage-by-node":
         return [("both sides", f"#pair-{index + 1}")]
     primary = record["policies"][0]["policy"]
+    if row.get("when") == "before":
+        return []  # worked out on the page of the earlier record
     if chart.key in ("time-parts", "energy-parts"):
         place = anchor_of(record, row["role"], row["side"], chart.key.partition("-")[0])
-    elif row.get("series") == "design point" and row["policy"] == primary:
+    elif row.get("series") == "operating point" or (row.get("series") == "design point" and row["policy"] == primary):
         place = anchor_of(record, row["role"], row["side"])
     else:
         place = ""

@@ -19,7 +19,8 @@ def operating_points(old: Record, new: Record) -> list[dict[str, Any]]:
     -------
     list of dict
         ``when`` (before, after), ``role``, ``side`` (its id), ``name`` (title of the candidate, id of a contender),
-        and of the design point ``supply`` [V], ``time`` [s], ``energy`` [J], ``area`` [m^2], ``leakage_power`` [W].
+        ``ambition`` of its technology, and of the design point ``supply`` [V], ``time`` [s], ``energy`` [J],
+        ``area`` [m^2], ``leakage_power`` [W].
         A side without a permitted point has no row.
     """
     return [row for when, record in (("before", old), ("after", new)) for row in _points(when, record)]
@@ -27,12 +28,14 @@ def operating_points(old: Record, new: Record) -> list[dict[str, Any]]:
 
 def _points(when: str, record: Record) -> list[dict[str, Any]]:
     policy = record["policies"][0]
-    candidate = next(side for side in record["sides"] if side["role"] == "candidate")
-    strongest = [side for side in policy["contenders"] if side["id"] == policy["strongest"]]
-    named = [("candidate", str(candidate["title"]), policy["candidate"])]
-    named += [("contender", str(side["id"]), side) for side in strongest]
-    return [
-        {"when": when, "role": role, "side": side["id"], "name": name, **{key: side["point"].get(key) for key in _KEPT}}
-        for role, name, side in named
-        if side["point"] is not None
-    ]
+    named = [("candidate", policy["candidate"])]
+    named += [("contender", side) for side in policy["contenders"] if side["id"] == policy["strongest"]]
+    rows = []
+    for role, side in named:
+        if side["point"] is None:
+            continue
+        told = next(row for row in record["sides"] if (row["role"], row["id"]) == (role, side["id"]))
+        name = str(told["title"] if role == "candidate" else side["id"])
+        head = {"when": when, "role": role, "side": side["id"], "name": name, "ambition": told["ambition"]}
+        rows.append({**head, **{key: side["point"].get(key) for key in _KEPT}})
+    return rows

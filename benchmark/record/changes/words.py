@@ -35,6 +35,8 @@ __all__ = [
 Row = Mapping[str, Any]
 #: columns of the rows: every fact is a row of its section
 COLUMNS = ("section", "name", "node", "unit", "old", "new", "factor", "at_old_supply", "part", "note")
+#: columns of a chain
+_ENDS = ("before", "at_old_supply", "after")
 #: a smaller relative difference in a chain is rounding
 SAME = 1.0e-9
 #: a smaller part of an energy or time is the rounding of its sums
@@ -201,7 +203,7 @@ def _estimate(row: Row) -> str:
 
 
 def _same(row: Row) -> bool:
-    ends = [row[name] for name in ("before", "at_old_supply", "after")]
+    ends = [row[name] for name in _ENDS]
     if None in ends or not all(isinstance(end, float) for end in ends):
         return len(set(map(str, ends))) == 1
     return bool(max(ends) - min(ends) <= SAME * max(map(abs, ends)))
@@ -209,20 +211,17 @@ def _same(row: Row) -> bool:
 
 def chain_table(found: Row, how: Print = PLAIN) -> Worded:
     """Return what lies between inputs and result and changes anywhere; the rows and the json have all of it."""
-    moving = [row for row in found["chain"] if not _same(row)]
+    worded = [
+        tuple("-" if row[name] is None else how.amount(row[name], row["unit"], 4) for name in _ENDS)
+        for row in found["chain"]
+    ]
     rows = tuple(
-        (
-            row["stage"],
-            row["quantity"],
-            *(
-                "-" if row[name] is None else how.amount(row[name], row["unit"], 4)
-                for name in ("before", "at_old_supply", "after")
-            ),
-        )
-        for row in moving
+        (row["stage"], row["quantity"], *ends)
+        for row, ends in zip(found["chain"], worded, strict=True)
+        if not _same(row) and len(set(ends)) > 1
     )
-    still = len(found["chain"]) - len(moving)
-    title = f"From inputs to result, candidate ({still} further quantities do not change)"
+    still = len(worded) - len(rows)
+    title = f"From inputs to result, candidate ({still} further quantities do not change in these digits)"
     return Worded(title, ("stage", "quantity", "before", "new inputs at the old supply", "after"), rows)
 
 
