@@ -95,9 +95,14 @@ def supersede(
         Its new number in ``unit``; text and Decimal keep their digits.
     unit : str
         Unit of the new number, of the dimension of the value; ``"1"`` for plain numbers.
-    evidence, source, where, conditions : str
-        What the new number is worth, where it comes from (a key of ``sources.toml``), the place in the source, and what
-        it holds for; ``"-"`` where there is nothing to say. They hold for the numbers of all nodes.
+    evidence : str
+        Evidence class of the new number. Like source, where and conditions it holds for the numbers of all nodes.
+    source : str
+        A key of ``sources.toml``.
+    where : str
+        Place in the source; ``"-"`` for none.
+    conditions : str
+        What the new number holds for; ``"-"`` for none.
     date : date or str
         Day of the measurement or choice (2026-01-31); the new number holds from then on.
     reason : str
@@ -109,8 +114,12 @@ def supersede(
     spread : mapping or str
         The range: ``"lognormal factor 1.25"``, ``"normal percent 5"``, ``"uniform 160 180"``, ``"none"``, or ``"keep"``
         the one it had. Must be said where the old number had a range.
-    note, owner, bound : str
-        As in the file. A note or bound of the old number goes with it; an owner stays unless another is named.
+    note : str
+        Note on the new number; that of the old number goes with it.
+    owner : str
+        Who decided; empty: as it was.
+    bound : str
+        ``"at-least"`` or ``"at-most"`` where the new number is a bound only.
     nodes : iterable of path, optional
         Further folders of sets and sources.
     write : bool
@@ -119,6 +128,7 @@ def supersede(
     Returns
     -------
     Edited
+        What changed, what the check says of it, and the files that were written.
 
     Raises
     ------

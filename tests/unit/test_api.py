@@ -72,6 +72,7 @@ RESULT = [
 MEMBERS = {
     "Batched": ["frame", "rows", "seconds", "status"],
     "Changes": ["data", "flipped", "frames", "record", "report"],
+    "Edited": ["data", "frame", "lines", "notes", "text", "warnings", "written"],
     "Needed": ["columns", "facts", "frame", "heading", "rows", "text"],
     "Result": [*RESULT, "verdict"],
     "SetView": ["frame", "id", "nodes", "parameters", "sources", "title"],
