@@ -4,114 +4,20 @@ from __future__ import annotations
 
 import itertools
 import math
-from collections.abc import Callable, Iterable, Mapping, Sequence
-from dataclasses import dataclass
+from collections.abc import Iterable, Mapping, Sequence
 from typing import TYPE_CHECKING, Any
 
-from benchmark.api.session import Place, load_study
+from benchmark.api.needed import Needed, Range, Told, heading_of, level_of, ranged, trials_of
+from benchmark.api.session import Place
 from benchmark.api.views import StudyView
-from benchmark.errors import UsageError, nearest
+from benchmark.errors import UsageError
 
 if TYPE_CHECKING:
-    import pandas
-
-    from benchmark.decide.axes import Axis
     from benchmark.decide.trials import Trials
 
-__all__ = ["Needed", "flips", "improve", "need", "opportunity", "sheet", "trade"]
+__all__ = ["Needed", "flips", "improve", "joint_sheet", "need", "opportunity", "sheet", "trade"]
 
-Told = Callable[[int], None]
-#: ends of a range, in the unit of the value
-Range = tuple[float | str, float | str]
 REQUIRED_ADVANTAGE = "required_advantage"
-
-
-@dataclass(frozen=True, eq=False, repr=False)
-class Needed:
-    """An answer in words and as rows.
-
-    Attributes
-    ----------
-    heading : tuple of str
-        Study, node pair, policy, and the advantage as it is today.
-    facts : tuple of (str, str)
-        Name and sentence.
-    columns : tuple of str
-        Of the rows, in order; values are in the unit a column names, or the one of the column ``unit``.
-    rows : tuple of mapping
-        Numbers and words; nan where there is no number.
-    """
-
-    heading: tuple[str, ...]
-    facts: tuple[tuple[str, str], ...]
-    columns: tuple[str, ...]
-    rows: tuple[Mapping[str, Any], ...]
-
-    @property
-    def text(self) -> str:
-        """Return heading and sentences as plain lines."""
-        return "\n".join([*self.heading, *(f"{name}: {text}" for name, text in self.facts)])
-
-    @property
-    def frame(self) -> pandas.DataFrame:
-        """Return the rows as a tidy frame."""
-        import pandas
-
-        return pandas.DataFrame([dict(row) for row in self.rows], columns=list(self.columns))
-
-    def _repr_html_(self) -> str:
-        from benchmark.api import html
-
-        return html.frame(*map(html.note, self.heading), html.table("", ("what", "answer"), self.facts))
-
-    def __repr__(self) -> str:
-        return f"Needed({len(self.facts)} answers, {len(self.rows)} rows)"
-
-
-def _level(view: StudyView, advantage: float | None) -> float:
-    level = view.study.required_advantage if advantage is None else float(advantage)
-    if not (math.isfinite(level) and level > 0.0):
-        message = f"an advantage above 0 is needed, found {level:g}"
-        raise UsageError(message)
-    return level
-
-
-def _trials(study: StudyView | Place, pair: str, told: Told | None) -> tuple[StudyView, Trials]:
-    from benchmark.decide.trials import Trials
-
-    view = study if isinstance(study, StudyView) else load_study(study)
-    labels = [item.label for item in view.study.pairs]
-    label = pair or view.study.headline
-    if label not in labels:
-        message = f"there is no node pair {label!r}; known are {', '.join(labels)}; {nearest(label, labels)}"
-        raise UsageError(message.rstrip("; "))
-    return view, Trials(view.study, view.study.pair(label), told=told)
-
-
-def _heading(view: StudyView, trials: Trials) -> tuple[str, ...]:
-    study = trials.study
-    best = trials.best
-    if best.state(0):
-        today = f"no advantage today: {best.state(0)} ({trials.why({})})"
-    else:
-        strongest = best.names[int(best.strongest[0])]
-        today = f"advantage today {best.advantage[0]:.4g} in {study.policy.metric} against {strongest}"
-        today += "" if best.meets[0] else "; a listed requirement is missed"
-    return (
-        f"Study {study.id}: {study.title}",
-        *(f"What-if: {name} = {text}" for name, text in view.what_if.items()),
-        f"Node pair {trials.pair.label}, policy {trials.policy}, both sides optimised at every value; {today}",
-    )
-
-
-def _ranged(axes: Sequence[Axis], over: Sequence[Range]) -> list[Axis]:
-    """Give axes the ranges asked for, in order."""
-    if len(over) > len(axes):
-        message = f"{len(over)} ranges for {len(axes)} value(s)"
-        raise UsageError(message)
-    ends = [tuple(axis.si(str(end)) for end in pair) for axis, pair in zip(axes, over, strict=False)]
-    found = [axis.over(low, high) for axis, (low, high) in zip(axes, ends, strict=False)]
-    return [*found, *axes[len(found) :]]
 
 
 def need(
@@ -158,14 +64,17 @@ def need(
     from benchmark.decide.break_even import find_needs
     from benchmark.decide.need_words import NEED_COLUMNS, need_rows, need_text
 
-    view, trials = _trials(study, pair, told)
+    view, trials = trials_of(study, pair, told)
     asked = list(names)
-    level = _level(view, advantage)
+    level = level_of(view, advantage)
     axes = [find_axis(trials, name) for name in asked if name != REQUIRED_ADVANTAGE] if asked else usual_axes(trials)
+    if over and REQUIRED_ADVANTAGE in asked:
+        message = f"{REQUIRED_ADVANTAGE} takes no range; ask for it without one"
+        raise UsageError(message)
     if points < 2:
         message = f"a scan needs at least 2 points, found {points}"
         raise UsageError(message)
-    found = find_needs(trials.study, trials.pair, _ranged(axes, over), (1.0, level), trials=trials, count=points)
+    found = find_needs(trials.study, trials.pair, ranged(axes, over), (1.0, level), trials=trials, count=points)
     facts = []
     for axis, group in itertools.groupby(found, key=lambda item: item.axis):
         facts.append((axis.name, f"{axis.meaning}, today {axis.text(axis.best)}. {need_text(*group)}"))
@@ -174,7 +83,7 @@ def need(
         text, row = _required_advantage(trials, level)
         facts.append((REQUIRED_ADVANTAGE, text))
         rows.append({column: row.get(column, "") for column in NEED_COLUMNS})
-    return Needed(_heading(view, trials), tuple(facts), NEED_COLUMNS, tuple(rows))
+    return Needed(heading_of(view, trials), tuple(facts), NEED_COLUMNS, tuple(rows))
 
 
 def _required_advantage(trials: Trials, level: float) -> tuple[str, dict[str, Any]]:
@@ -248,9 +157,9 @@ def trade(
     from benchmark.decide.axes import find_axis
     from benchmark.decide.trade import TRADE_COLUMNS, trade_curve, trade_rows
 
-    view, trials = _trials(study, pair, told)
-    level = _level(view, advantage)
-    one, other = _ranged([find_axis(trials, first), find_axis(trials, second)], over)
+    view, trials = trials_of(study, pair, told)
+    level = level_of(view, advantage)
+    one, other = ranged([find_axis(trials, first), find_axis(trials, second)], over)
     rows = trade_rows(trade_curve(trials, one, other, level, points, points))
     facts = []
     for row in rows:
@@ -262,7 +171,7 @@ def trade(
         else:
             words = {"always": "any value will do", "never": "no value will do"}.get(row["answer"], "no advantage")
         facts.append((place, words + (f"; cut {row['cut_by']}" if row["cut_by"] else "")))
-    return Needed(_heading(view, trials), tuple(facts), TRADE_COLUMNS, tuple(rows))
+    return Needed(heading_of(view, trials), tuple(facts), TRADE_COLUMNS, tuple(rows))
 
 
 def sheet(
@@ -273,8 +182,8 @@ def sheet(
     pair: str = "",
     points: int = 17,
     probability: float | None = None,
-    draws: int = 256,
-    seed: int = 0,
+    draws: int | None = None,
+    seed: int | None = None,
     told: Told | None = None,
 ) -> Needed:
     """Return what each value of the candidate must be, alone, for the level.
@@ -294,10 +203,10 @@ def sheet(
     probability : float, optional
         Also state the value, and the spread, at which the level is reached with this probability when all stated ranges
         are drawn together.
-    draws : int
-        How many draws: a power of two from 16.
-    seed : int
-        Seed of the draws.
+    draws : int, optional
+        How many draws for the probability: a power of two from 16, by default 256.
+    seed : int, optional
+        Seed of the draws, by default 0.
     told : callable, optional
         Told how many comparisons have been made.
 
@@ -309,16 +218,17 @@ def sheet(
     Raises
     ------
     UsageError
-        For an unknown name, pair or level, when there is no advantage today, or when a probability is asked for and
-        nothing can be drawn.
+        For an unknown name, pair or level, when there is no advantage today, when a probability is asked for and
+        nothing can be drawn, or when draws or a seed are given without one.
     """
     from benchmark.decide.axes import find_axis
     from benchmark.decide.specification import SHEET_COLUMNS, TOLERANCE_COLUMNS, sheet_rows, specification
 
-    view, trials = _trials(study, pair, told)
-    level = _level(view, advantage)
+    view, trials = trials_of(study, pair, told)
+    level = level_of(view, advantage)
     chosen = [find_axis(trials, name) for name in names]
-    found = specification(trials, level, points, chosen=chosen, probability=probability, draws=draws, seed=seed)
+    drawing = _drawing(probability, draws, seed)
+    found = specification(trials, level, points, chosen=chosen, probability=probability, **drawing)
     rows = sheet_rows(found)
     facts = []
     for row in rows:
@@ -329,12 +239,80 @@ def sheet(
     columns = SHEET_COLUMNS if probability is None else (*SHEET_COLUMNS, *TOLERANCE_COLUMNS)
     if not facts:
         facts = [("nothing is decisive", "no value of the candidate alone moves the advantage")]
-    return Needed(_heading(view, trials), tuple(facts), columns, tuple(rows))
+    return Needed(heading_of(view, trials), tuple(facts), columns, tuple(rows))
+
+
+def _drawing(probability: float | None, draws: int | None, seed: int | None) -> dict[str, int]:
+    """Return draws and seed; refused where nothing is drawn."""
+    given = [name for name, number in (("draws", draws), ("seed", seed)) if number is not None]
+    if given and probability is None:
+        message = f"{' and '.join(given)} given without a probability, so nothing would be drawn; state a probability"
+        raise UsageError(message)
+    return {"draws": 256 if draws is None else draws, "seed": 0 if seed is None else seed}
 
 
 def _first(row: Mapping[str, Any]) -> str:
     """Say whether a value is decisive and within reach."""
     return ("decisive; " if row["decisive"] == "yes" else "") + f"reachable: {row['reachable']}"
+
+
+def joint_sheet(
+    study: StudyView | Place,
+    names: Iterable[str] = (),
+    *,
+    advantage: float | None = None,
+    pair: str = "",
+    points: int = 17,
+    probability: float | None = None,
+    draws: int | None = None,
+    seed: int | None = None,
+    told: Told | None = None,
+) -> Needed:
+    """Return what several values of the candidate, and their spreads, must be together for the level.
+
+    Parameters
+    ----------
+    study : StudyView, str or Path
+        A loaded study, or the file of one.
+    names : iterable of str, optional
+        Values with a stated spread; by default all of the candidate's that move the advantage.
+    advantage : float, optional
+        Level instead of the required advantage of the study.
+    pair : str, optional
+        Label of a node pair; by default the headline.
+    points : int
+        Grid points of the scan over the steps.
+    probability : float, optional
+        Also state values and spreads at which the level is reached with this probability.
+    draws : int, optional
+        How many draws for the probability: a power of two from 16, by default 256.
+    seed : int, optional
+        Seed of the draws, by default 0.
+    told : callable, optional
+        Told how many comparisons have been made.
+
+    Returns
+    -------
+    Needed
+        One row per value. Put into the files of the study they give the level with the probability of the sheet.
+
+    Raises
+    ------
+    UsageError
+        For an unknown name, pair or level, a value without a stated spread or without effect, when there is no
+        advantage today, or when draws or a seed are given without a probability.
+    """
+    from benchmark.decide.axes import find_axis
+    from benchmark.decide.joint_sheet import joint_sheet as solved
+    from benchmark.decide.joint_words import JOINT_COLUMNS, joint_facts, joint_rows
+    from benchmark.decide.specification import spread_effects
+
+    view, trials = trials_of(study, pair, told)
+    level = level_of(view, advantage)
+    drawing = _drawing(probability, draws, seed)
+    axes = [find_axis(trials, name) for name in dict.fromkeys(names)] or spread_effects(trials, level)
+    found = solved(trials, level, axes, probability=probability, count=points, **drawing)
+    return Needed(heading_of(view, trials), tuple(joint_facts(found)), JOINT_COLUMNS, tuple(joint_rows(found)))
 
 
 def opportunity(
@@ -376,8 +354,8 @@ def opportunity(
     """
     from benchmark.decide.opportunity import MAP_COLUMNS, contours, map_rows, opportunity_map
 
-    view, trials = _trials(study, pair, told)
-    level = _level(view, advantage)
+    view, trials = trials_of(study, pair, told)
+    level = level_of(view, advantage)
     found = opportunity_map(trials, kind, contours(level), points)
     facts = []
     for value, points_on in found.boundary.items():
@@ -385,7 +363,7 @@ def opportunity(
         facts.append((f"boundary of advantage {value:.4g}", listed or "none on the map"))
     won = float((found.advantage >= level).mean())
     facts.append((f"share of the map with {level:.4g} or more", f"{won:.0%} of {found.advantage.size} points"))
-    return Needed(_heading(view, trials), tuple(facts), MAP_COLUMNS, tuple(map_rows(found)))
+    return Needed(heading_of(view, trials), tuple(facts), MAP_COLUMNS, tuple(map_rows(found)))
 
 
 def improve(
@@ -416,15 +394,15 @@ def improve(
     """
     from benchmark.decide.gap import GAP_COLUMNS, gap_rows, improvements
 
-    view, trials = _trials(study, pair, told)
-    level = _level(view, advantage)
+    view, trials = trials_of(study, pair, told)
+    level = level_of(view, advantage)
     rows = gap_rows(improvements(trials), level)
     facts = []
     for row in rows:
         words = row["state"] or f"at most {row['advantage']:.4g}, then limited by {row['limit']}"
         words += f"; {level:.4g} {'reached' if row['reaches'] == 'yes' else 'not reached'}"
         facts.append((row["perfected"], words + (f" ({row['side']})" if row["side"] not in ("", "candidate") else "")))
-    return Needed(_heading(view, trials), tuple(facts), GAP_COLUMNS, tuple(rows))
+    return Needed(heading_of(view, trials), tuple(facts), GAP_COLUMNS, tuple(rows))
 
 
 def flips(
@@ -462,8 +440,8 @@ def flips(
     """
     from benchmark.decide.flipping_set import FLIP_COLUMNS, flip_rows, flipping_sets
 
-    view, trials = _trials(study, pair, told)
-    found = flipping_sets(trials, _level(view, advantage), up_to)
+    view, trials = trials_of(study, pair, told)
+    found = flipping_sets(trials, level_of(view, advantage), up_to)
     facts = [("smallest set", found.text)]
     for number, flip in enumerate(found.flips, start=1):
         moved = "; ".join(
@@ -472,4 +450,4 @@ def flips(
             for axis, value, distance in zip(flip.axes, flip.values, flip.distances, strict=True)
         )
         facts.append((f"set {number}, distance {flip.implausibility:.3g}", moved))
-    return Needed(_heading(view, trials), tuple(facts), FLIP_COLUMNS, tuple(flip_rows(found)))
+    return Needed(heading_of(view, trials), tuple(facts), FLIP_COLUMNS, tuple(flip_rows(found)))

@@ -57,6 +57,16 @@ def _one_of(chosen: Mapping[str, bool]) -> str:
     return asked[0] if asked else ""
 
 
+def _refuse_idle(idle: Mapping[str, bool], question: str) -> None:
+    """Refuse what the question asked has no use for."""
+    listed = [name for name, given in idle.items() if given]
+    if listed:
+        homes = {"--together": "--sheet", "--probability": "--sheet"}
+        belongs = [f"{name} belongs to {homes[name]}" for name in listed if name in homes and not question]
+        message = "; ".join(belongs) or f"{question} takes no {' and no '.join(listed)}"
+        raise UsageError(message)
+
+
 def need_command(
     study_path: Path,
     names: Sequence[str],
@@ -67,12 +77,13 @@ def need_command(
     points: int | None,
     trade: bool,
     sheet: bool,
+    together: bool,
     map_: str,
     improve: bool,
-    flips: int,
+    flips: int | None,
     probability: float | None,
-    draws: int,
-    seed: int,
+    draws: int | None,
+    seed: int | None,
     form: str,
     nodes: Sequence[Path],
     overrides: Mapping[str, str],
@@ -83,20 +94,31 @@ def need_command(
     check_folders(nodes)
     check_form(form)
     question = _one_of(
-        {"--trade": trade, "--sheet": sheet, "--map": bool(map_), "--improve": improve, "--flips": flips > 0}
+        {"--trade": trade, "--sheet": sheet, "--map": bool(map_), "--improve": improve, "--flips": flips is not None}
     )
     if trade and len(names) != 2:
         message = f"--trade needs exactly two names, found {len(names)}"
         raise UsageError(message)
-    if (names and question not in ("", "--trade", "--sheet")) or (over and question not in ("", "--trade")):
-        message = f"{question} takes no {'names' if names else '--over'}"
+    _refuse_idle(
+        {
+            "names": bool(names) and question not in ("", "--trade", "--sheet"),
+            "--over": bool(over) and question not in ("", "--trade"),
+            "--together": together and question != "--sheet",
+            "--probability": probability is not None and question != "--sheet",
+            "--points": points is not None and question in ("--improve", "--flips"),
+        },
+        question,
+    )
+    drawing = {"--draws": draws is not None, "--seed": seed is not None}
+    if idle := [name for name, given in drawing.items() if given and probability is None]:
+        message = f"{' and '.join(idle)} without --probability: nothing would be drawn"
+        raise UsageError(message)
+    if over and not names:
+        message = "--over needs the names of the values whose ranges it states"
         raise UsageError(message)
     ranges = [_range(text) for text in over]
-    if points is not None and (points < 2 or question in ("--improve", "--flips")):
-        message = f"--points needs 2 or more, and a question that scans a range; found {points}"
-        raise UsageError(message)
-    if probability is not None and not sheet:
-        message = "--probability belongs to --sheet"
+    if points is not None and points < 2:
+        message = f"--points needs 2 or more, found {points}"
         raise UsageError(message)
     told = _Count()
     more: dict[str, Any] = {"advantage": advantage, "pair": pair, "told": told}
@@ -106,12 +128,13 @@ def need_command(
         if trade:
             found = api.trade(view, names[0], names[1], over=ranges, **more, **scan)
         elif sheet:
-            found = api.sheet(view, names, probability=probability, draws=draws, seed=seed, **more, **scan)
+            asked = api.joint_sheet if together else api.sheet
+            found = asked(view, names, probability=probability, draws=draws, seed=seed, **more, **scan)
         elif map_:
             found = api.opportunity(view, map_, **more, **scan)
         elif improve:
             found = api.improve(view, **more)
-        elif flips:
+        elif flips is not None:
             found = api.flips(view, up_to=flips, **more)
         else:
             found = api.need(view, names, over=ranges, **more, **scan)

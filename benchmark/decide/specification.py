@@ -23,7 +23,7 @@ from benchmark.decide.tolerance import Tolerance, Tolerances
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 
-__all__ = ["SHEET_COLUMNS", "TOLERANCE_COLUMNS", "Sheet", "sheet_rows", "specification"]
+__all__ = ["SHEET_COLUMNS", "TOLERANCE_COLUMNS", "Sheet", "sheet_rows", "specification", "spread_effects"]
 
 #: where the values of a set hold: a condition, no parameter
 CONDITIONS = ("reference_temperature",)
@@ -113,6 +113,12 @@ def specification(
         needs = [need for need in needs if need.kind != "no effect"]
     tolerances = {} if drawn is None else {need.axis.name: drawn.of(need.axis) for need in needs}
     return Sheet(level, today, tuple(needs), frozenset(axis.name for axis in decisive), tolerances)
+
+
+def spread_effects(trials: Trials, level: float) -> list[Axis]:
+    """Return the values of the candidate with a stated spread that move the advantage."""
+    drawn = [axis for axis in _own(trials) if axis.value is not None and axis.value.spread is not None]
+    return [axis for axis, _, moves in _effects(trials, level, drawn) if moves] if drawn else []
 
 
 def _own(trials: Trials) -> list[Axis]:

@@ -29,6 +29,7 @@ from benchmark.decide.trials import Trials
 from benchmark.draws.plan import plan_of
 from benchmark.draws.values import draw_values
 from benchmark.errors import UsageError
+from benchmark.evaluate.side import joints_by_owner
 from benchmark.sets.study import draws_allowed
 
 __all__ = ["Tolerance", "Tolerances"]
@@ -89,12 +90,16 @@ class Tolerances:
             message = f"draws must be {allowed}; found {draws}"
             raise UsageError(message)
         plan = plan_of(draws, seed)
-        blocks = [draw_values(trials.values, plan, block)[1] for block in range(plan.blocks)]
-        if not blocks[0]:
+        joints = joints_by_owner(trials.study, trials.pair)
+        blocks = [draw_values(trials.values, plan, block, joints=joints) for block in range(plan.blocks)]
+        if not blocks[0][1]:
             message = "no value of the study has a spread: nothing can be drawn, so there is no probability"
             raise UsageError(message)
         self.level, self.probability = level, probability
-        self.columns = {key: np.concatenate([block[key] for block in blocks]) for key in blocks[0]}
+        #: ledger key -> points in (0, 1), and values drawn there (SI), over the draws
+        self.points, self.columns = (
+            {key: np.concatenate([block[part][key] for block in blocks]) for key in blocks[0][part]} for part in (0, 1)
+        )
         self.draws = draws
         coarse = resolution(trials.study)
         self.trials = Trials(coarse, trials.pair, trials.policy, frozen=trials.frozen)
@@ -104,14 +109,21 @@ class Tolerances:
         """Sampling error of a probability: of independent draws, an upper bound for these."""
         return math.sqrt(self.probability * (1.0 - self.probability) / self.draws)
 
+    @property
+    def place(self) -> int:
+        """Place of the sorted draw that decides: where it reaches the level, the probability is reached."""
+        return math.floor((1.0 - self.probability) * self.draws + 1e-9)
+
     def reaching(self, key: str = "", factor: float = 1.0, spread: float = 1.0) -> Array:
         """Return ln(advantage / M) of every draw, sorted; minus infinity where M is not reached for another reason."""
-        columns: Mapping[str, Array] = self.columns
-        if key:
-            moved = self._moved(key, factor, spread)
-            if moved is None:
-                return np.full(self.draws, -np.inf)
-            columns = {**self.columns, key: moved}
+        moved = self._moved(key, factor, spread) if key else None
+        if key and moved is None:
+            return np.full(self.draws, -np.inf)
+        return self.ranked({} if moved is None else {key: moved})
+
+    def ranked(self, other: Mapping[str, Array]) -> Array:
+        """Return ln(advantage / M) of every draw, sorted, with other values (SI, over the draws) for some keys."""
+        columns = {**self.columns, **other}
         rows = [{name: float(column[row]) for name, column in columns.items()} for row in range(self.draws)]
         answers = self.trials(rows)
         log = np.where(answers.meets, answers.log, -np.inf) - math.log(self.level)
@@ -137,7 +149,7 @@ class Tolerances:
 
     def _margin(self, key: str, factor: float, spread: float) -> float:
         """ln(advantage / M) that a share 1 - p of the draws does not exceed; at least 0 where P >= p."""
-        return float(self.reaching(key, factor, spread)[math.floor((1.0 - self.probability) * self.draws + 1e-9)])
+        return float(self.reaching(key, factor, spread)[self.place])
 
     def of(self, axis: Axis) -> Tolerance:
         """Answer for one parameter with a value above 0 that is no whole number."""

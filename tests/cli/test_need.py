@@ -10,6 +10,7 @@ from pathlib import Path
 import pytest
 
 from benchmark import api
+from benchmark.errors import UsageError
 from tests.cli.conftest import Run
 from tests.fixed_displacement import fixed_displacement
 from tests.near import near
@@ -189,3 +190,47 @@ def test_wrong_use_is_answered_in_words(arguments: list[str], message: str, even
     assert ran.status == 2
     assert message in words(ran.err)
     assert ran.out == ""
+
+
+def test_sheet_of_values_together(evenload: Run, tmp_path: Path):
+    path = fixed_displacement().write(tmp_path / "film")
+    ran = evenload("need", path, "--sheet", "--together", "--probability", "0.9", "--draws", "64", "--seed", "2")
+    text = words(ran.out)
+    assert "one standard deviation of a value counts as hard as halving its spread" in text
+    # ln(1.5 / 2) / 0.6 steps at the best estimates
+    assert "1.5 is met exactly where 0.4795 steps may be given up (today 2)" in text
+    assert "with probability 0.9" in text
+    assert "film-switch.declared_supply follows by its formula: " in text
+    found = rows(evenload("need", path, "actuator_coefficient", "film-switch.input_capacitance", "--sheet",
+                          "--together", "--format", "csv").out)  # fmt: skip
+    assert float(found[0]["required"]) == near(200.0 * 0.75 ** (1.0 / 3.0), rel=1e-6)
+    assert found[0]["spread_today"] == "lognormal, ln_sd = 0.2"
+    assert found[0]["spread_at_probability"] == ""
+
+
+@pytest.mark.parametrize(
+    ("arguments", "message"),
+    [
+        (["activity", "--draws", "64"], "--draws without --probability: nothing would be drawn"),
+        (["--sheet", "--draws", "64", "--seed", "1"], "--draws and --seed without --probability: nothing would be"),
+        (["--together"], "--together belongs to --sheet"),
+        (["--improve", "--together"], "--improve takes no --together"),
+        (["--improve", "--probability", "0.9"], "--improve takes no --probability"),
+        (["--flips", "0"], "sets of 1, 2 or 3 inputs can be looked for, found 0"),
+        (["--flips", "1", "--points", "5"], "--flips takes no --points"),
+        (["--over", "0.1..0.2"], "--over needs the names of the values whose ranges it states"),
+        (["required_advantage", "activity", "--over", "1..2"], "required_advantage takes no range"),
+        (["--sheet", "--together"], "a joint sheet needs values with a stated spread"),
+    ],
+)
+def test_an_option_without_effect_is_refused(arguments: list[str], message: str, evenload: Run, study: Path):
+    ran = evenload("need", study, *arguments)
+    assert ran.status == 2
+    assert message in words(ran.err)
+    assert ran.out == ""
+
+
+def test_draws_without_a_probability_are_refused_in_python_too(study: Path):
+    for asked in (api.sheet, api.joint_sheet):
+        with pytest.raises(UsageError, match="seed given without a probability, so nothing would be drawn"):
+            asked(study, seed=1)

@@ -25,6 +25,7 @@ from benchmark.decide import (
     elasticity,
     flipping_set,
     gap,
+    joint_sheet,
     ladder,
     moves,
     next_measurement,
@@ -239,6 +240,12 @@ def _traded() -> Iterator[Check]:
     (need,) = sheet.needs
     own = first.best * float(mpmath.sqrt(mpmath.mpf(REQUIRED) / 2))
     yield _check("coefficient on the specification sheet [m/V]", LAW, own, need.crossings[0].x, 1e-6 * own, "root")
+    found = joint_sheet.joint_sheet(trials, REQUIRED, specification.spread_effects(trials, REQUIRED))
+    own = float(mpmath.log(mpmath.mpf(REQUIRED) / 2) / mpmath.mpf("0.6"))
+    yield _check("steps of coefficient and capacitance together [1]", LAW, own, found.steps, 1e-5, "leakage, root")
+    value = float(joint_sheet.moved_value(trials.values[KEYS["coefficient"]], 1.0, own).si[0])
+    own = first.best * float(mpmath.cbrt(mpmath.mpf(REQUIRED) / 2))
+    yield _check("coefficient on the joint sheet [m/V]", LAW, own, value, 1e-12 * own, "rounding")
 
 
 def _split() -> Iterator[Check]:
