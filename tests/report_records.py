@@ -12,8 +12,9 @@ from pathlib import Path
 from typing import Any
 
 from tests import studies
+from tests.fixed_displacement import fixed_displacement
 
-__all__ = ["HOSTILE", "changed", "crossing", "hostile", "hub", "infeasible", "mixed"]
+__all__ = ["HOSTILE", "changed", "crossing", "hostile", "hub", "infeasible", "mixed", "remeasured"]
 
 Record = dict[str, Any]
 
@@ -33,6 +34,22 @@ def mixed() -> Record:
 def hub() -> Record:
     """Sides stated at one supply each, no ranges."""
     return copy.deepcopy(_run("hub"))
+
+
+@functools.cache
+def _remeasured() -> Record:
+    from benchmark import api
+
+    with tempfile.TemporaryDirectory() as folder:
+        place = Path(folder)
+        old = api.run(fixed_displacement().write(place / "old"), created="2026-01-31T00:00:00Z", draws=64)
+        again = fixed_displacement(("170.0", "0.05"), ("0.18", "0.02")).write(place / "new")
+        return dict(api.run(again, created="2026-02-28T00:00:00Z", draws=64, since=old).record)
+
+
+def remeasured() -> Record:
+    """Scenario S8 after both measurements, with what changed since the record before them."""
+    return copy.deepcopy(_remeasured())
 
 
 def changed(record: Record, change: Callable[[Record], None]) -> Record:
@@ -125,7 +142,7 @@ HOSTILE = (
 _CLOSED = {
     *("role", "state", "kind", "policy", "primary_policy", "also", "evidence", "set_by", "timing", "idle", "metric"),
     *("leakage_accounting", "unit", "bound", "ambition", "required_time", "margin", "demanded", "offered", "shape"),
-    *("sha256", "candidate_energy", "reference_energy", "of"),
+    *("sha256", "candidate_energy", "reference_energy", "of", "when", "scale", "quantity"),
 }
 
 

@@ -9,6 +9,7 @@ from collections.abc import Callable, Mapping, Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from benchmark.record.changes.words import COLUMNS, change_rows
 from benchmark.report.rows import (
     INFEASIBLE,
     NOT_PERMITTED,
@@ -303,7 +304,10 @@ _BUILDERS: dict[str, Callable[[Record], list[Row]]] = {
 
 def plain_tables(record: Record) -> dict[str, list[Row]]:
     """Return table name -> rows, in a fixed order, with the column names of an ordinary record."""
-    return {name: build(record) for name, build in _BUILDERS.items()}
+    found = {name: build(record) for name, build in _BUILDERS.items()}
+    if record.get("change") is not None:
+        found["changes"] = [{name: row.get(name, "") for name in COLUMNS} for row in change_rows(record["change"])]
+    return found
 
 
 def tables(record: Record) -> dict[str, list[Row]]:

@@ -60,8 +60,11 @@ def _places(record: Record) -> tuple[dict[str, int], dict[str, int]]:
 def _values(record: Record, chart: Chart, row: Row) -> list[tuple[str, str]]:
     """Return links into the ledger: to the value itself, else to the first value of the technology."""
     keys, owners = _places(record)
-    if "key" in row and row["key"] in keys:
-        return [("value", f"#value-{keys[row['key']]}")]
+    key = row.get("key", row.get("cause"))
+    if key in keys:
+        return [("value", f"#value-{keys[key]}")]
+    if chart.key == "change-parts":
+        return [("values", "#ledger")]
     if "requirement" in row:
         wanted = next((place for key, place in keys.items() if key.rpartition(".")[2] == row["requirement"]), None)
         if wanted is not None:
@@ -70,6 +73,8 @@ def _values(record: Record, chart: Chart, row: Row) -> list[tuple[str, str]]:
     named = [side for side in sides if side["id"] == row["side"]]
     candidate = [side for side in record["sides"] if side["role"] == "candidate"]
     beside = owners.get(str(row.get("side", "")))  # a further set of the candidate has the id of its technology
+    if row.get("when") == "before" and not named:
+        return [("values", "#ledger")]  # a contender of the earlier record alone
     place = beside or owners.get((named or candidate)[0]["technology"])
     return [("values", f"#value-{place}")] if place else [("values", "#ledger")]
 
