@@ -212,6 +212,101 @@ backward,0.2,0.3,25,6e-8
 backward,0.3,0.3,25,1e-6
 """
 
+RAW_CURVES = """\
+schema = 1
+kind = "curves"
+file = "raw.csv"
+header_starts = "VG"
+units = "row"
+comment = "#"
+along = "control_voltage"
+ignore = ["Time"]
+evidence = "invented"
+source = "invented"
+conditions = "probe station"
+fixed = { width = { value = 2.0, unit = "um" } }
+[[column]]
+header = "VG"
+meaning = "control_voltage"
+kind = "axis"
+[[column]]
+header = "VD"
+meaning = "path_voltage"
+kind = "axis"
+[[column]]
+header = "T"
+meaning = "temperature"
+kind = "axis"
+[[column]]
+header = "Die"
+meaning = "device"
+kind = "label"
+allowed = ["A1", "A2"]
+[[column]]
+header = "ID"
+meaning = "path_current"
+kind = "value"
+per_width = true
+floor = { value = 1.0, unit = "pA" }
+compliance = { value = 1.0, unit = "mA" }
+"""
+
+RAW = """\
+Invented analyser, one wafer
+VG,VD,T,Die,ID,Time
+V,V,degC,-,uA,s
+0.0,0.3,25,A1,1e-6,0
+0.1,0.3,25,A1,1e-4,1
+0.2,0.3,25,A1,1e-2,2
+0.3,0.3,25,A1,1.37,3
+# second device
+0.0,0.3,25,A2,2e-6,4
+0.1,0.3,25,A2,2e-4,5
+0.2,0.3,25,A2,2e-2,6
+0.3,0.3,25,A2,2.41,7
+"""
+
+SIDE_BY_SIDE = """\
+schema = 1
+kind = "curves"
+file = "side.csv"
+delimiter = "\\t"
+units = "header"
+along = "control_voltage"
+turns = ["forward", "backward"]
+evidence = "invented"
+source = "invented"
+conditions = "probe station"
+fixed = { temperature = { value = 25.0, unit = "degC" } }
+[repeat]
+label = "device"
+words = ["A1", "A2"]
+[[given]]
+labels = { device = "A1" }
+fixed = { width = { value = 2.0, unit = "um" } }
+[[given]]
+labels = { device = "A2" }
+fixed = { width = { value = 1.0, unit = "um" } }
+[[column]]
+header = "VG"
+meaning = "control_voltage"
+kind = "axis"
+[[column]]
+header = "ID"
+meaning = "path_current"
+kind = "value"
+per_width = true
+"""
+
+SIDE = """\
+VG (V)\tID (uA)\tVG (V)\tID [nA]
+0.0\t1e-6\t0.0\t2e-3
+0.1\t1e-4\t0.1\t0.2
+0.2\t1e-2\t0.2\t20
+0.1\t3e-4\t0.1\t0.6
+0.0\t3e-6\t\t
+"""
+
 
 def files(kind: str) -> dict[str, str]:
     """The files of a kind by name; the first one is checked."""
@@ -223,6 +318,8 @@ def files(kind: str) -> dict[str, str]:
         "circuit": {"word-line.toml": CIRCUIT},
         "sources": {"sources.toml": SOURCES},
         "table": {"technologies/curves.toml": TABLE_SET, **tables},
+        "curves": {"raw.toml": RAW_CURVES, "raw.csv": RAW},
+        "side-by-side": {"side.toml": SIDE_BY_SIDE, "side.csv": SIDE},
         "study": mixed().files(),
     }[kind]
 

@@ -232,7 +232,7 @@ def read_rows(raw: bytes, spec: CurvesFile, name: str, collector: Collector) -> 
             blank += 1
             continue
         rows.append(Row(number, cells))
-        if len(rows) > MAX_ROWS:
+        if len(rows) > MAX_ROWS + spec.has_header:
             collector.add(Problem(name, number, "", "has too many rows", "", f"at most {MAX_ROWS}"))
             return None
     if len(collector.problems) > before:

@@ -52,56 +52,34 @@ def read_curves(
         the same bits.
     """
     before = len(collector.problems)
-    file = read_toml(path, collector, shown_name or str(path))
-    spec = None if file is None else validate(CurvesFile, file, collector)
-    if file is None or spec is None:
+    opened = _open(path, sources, shown_name or str(path), collector)
+    if opened is None:
         return None
-    known = _known_sources(path, collector) if sources is None else sources
-    read_provenance(spec, Place(file, "", DefaultsTable(), known), collector)
-    _check_choices(spec, file, collector)
-    name = (Path(file.name).parent / spec.file).as_posix()
-    if Path(spec.file).name != spec.file:
-        collector.add(file.problem("file", "is not the name of a file beside the description", repr(spec.file)))
-        return None
-    raw = read_bytes(path.parent / spec.file, name, collector)
-    table = None if raw is None else read_rows(raw, spec, name, collector)
-    if raw is None or table is None:
-        return None
-    reading = Reading(spec, file, table, collector)
-    places = match_columns(reading)
-    columns = [column for column in (judge_column(place, reading) for place in places) if column is not None]
-    if len(collector.problems) > before:
-        return None
-    blocks = make_blocks(columns, reading)
-    given = given_values(reading)
-    used = [_rows_of(block, reading) for block in blocks]
-    numbers = _numbers(blocks, used, reading)
-    if len(collector.problems) > before:
-        return None
+    reading, raw, consistent = opened
+    spec, notes = reading.spec, reading.table.notes
+    columns = _columns(reading, consistent)
     units = _units(columns, reading)
-    requests = convert_requests(spec.extract, file, spec.along, units, collector)
-    table.notes += [column_note(column, spec) for column in columns]
-    if spec.ignore:
-        table.notes.append(f"columns left out as declared: {', '.join(spec.ignore)}")
-    sweeps = [
-        sweep
-        for block, rows in zip(blocks, used, strict=True)
-        for sweep in make_sweeps(block, rows, numbers, given, reading)
-    ]
-    if len(collector.problems) == before:
-        _check_given(sweeps, reading)
+    requests = convert_requests(spec.extract, reading.file, spec.along, units, collector) if columns else []
+    sweeps = _sweeps(columns, reading)
     if len(collector.problems) > before:
         return None
+    ignored = [f"columns left out as declared: {', '.join(spec.ignore)}"] if spec.ignore else []
     return MeasuredCurves(
         name=path.stem,
-        file=name,
-        description=file.name,
+        file=reading.table.name,
+        description=reading.file.name,
         digest=hashlib.sha256(raw).hexdigest(),
-        description_digest=file.sha256,
+        description_digest=reading.file.sha256,
         along=spec.along,
         sweeps=tuple(sweeps),
         units=units,
-        notes=(*table.notes, *curve_notes(sweeps, spec, units), *mark_notes(sweeps, columns)),
+        notes=(
+            *notes,
+            *(column_note(column, spec) for column in columns),
+            *ignored,
+            *curve_notes(sweeps, spec, units),
+            *mark_notes(sweeps, columns),
+        ),
         evidence=spec.evidence,
         source=spec.source,
         where=spec.where,
@@ -114,6 +92,56 @@ def read_curves(
     )
 
 
+def _open(
+    path: Path, sources: frozenset[str] | None, shown_name: str, collector: Collector
+) -> tuple[Reading, bytes, bool] | None:
+    """Read the description and divide the raw file into rows; and tell whether the keys of the description agree."""
+    file = read_toml(path, collector, shown_name)
+    spec = None if file is None else validate(CurvesFile, file, collector)
+    if file is None or spec is None:
+        return None
+    known = _known_sources(path, collector) if sources is None else sources
+    read_provenance(spec, Place(file, "", DefaultsTable(), known), collector)
+    consistent = _check_choices(spec, file, collector)
+    if Path(spec.file).name != spec.file:
+        collector.add(file.problem("file", "is not the name of a file beside the description", repr(spec.file)))
+        return None
+    name = (Path(file.name).parent / spec.file).as_posix()
+    raw = read_bytes(path.parent / spec.file, name, collector)
+    table = None if raw is None else read_rows(raw, spec, name, collector)
+    return None if raw is None or table is None else (Reading(spec, file, table, collector), raw, consistent)
+
+
+def _columns(reading: Reading, consistent: bool) -> list[Column]:
+    """Find and judge the columns; none when any of them has a problem, or the description contradicts itself."""
+    start = len(reading.collector.problems)
+    judged = [judge_column(place, reading) for place in match_columns(reading)]
+    columns = [column for column in judged if column is not None]
+    if consistent and len(reading.collector.problems) == start:
+        return columns
+    _read_alone(columns, reading)
+    return []
+
+
+def _sweeps(columns: list[Column], reading: Reading) -> list[Sweep]:
+    """Cut the file into curves; what is wrong elsewhere does not keep them from being judged."""
+    start = len(reading.collector.problems)
+    blocks = make_blocks(columns, reading) if columns else []
+    given = given_values(reading)
+    used = [_rows_of(block, reading) for block in blocks]
+    numbers = _numbers(blocks, used, reading)
+    if len(reading.collector.problems) > start:
+        return []
+    sweeps = [
+        sweep
+        for block, rows in zip(blocks, used, strict=True)
+        for sweep in make_sweeps(block, rows, numbers, given, reading)
+    ]
+    if columns and len(reading.collector.problems) == start:
+        _check_given(sweeps, reading)
+    return sweeps
+
+
 def _known_sources(path: Path, collector: Collector) -> frozenset[str]:
     """Source keys of the list beside the description and of the shipped one."""
     keys = set(read_sources(shipped_nodes() / "sources.toml", collector))
@@ -121,8 +149,9 @@ def _known_sources(path: Path, collector: Collector) -> frozenset[str]:
     return frozenset(keys | set(read_sources(beside, collector)) if beside.exists() else keys)
 
 
-def _check_choices(spec: CurvesFile, file: TomlFile, collector: Collector) -> None:
-    """Refuse keys that exclude each other or mean nothing."""
+def _check_choices(spec: CurvesFile, file: TomlFile, collector: Collector) -> bool:
+    """Refuse keys that exclude each other or mean nothing; True when there are none."""
+    before = len(collector.problems)
     if spec.skip_rows and spec.header_starts:
         collector.add(file.problem("skip_rows", "stands beside header_starts", "", "one of them"))
     if spec.header_starts and not spec.has_header:
@@ -144,6 +173,7 @@ def _check_choices(spec: CurvesFile, file: TomlFile, collector: Collector) -> No
         collector.add(file.problem("repeat.words", "names two groups alike", ", ".join(spec.repeat.words)))
     if spec.comment and spec.comment.strip() != spec.comment:
         collector.add(file.problem("comment", "has blanks around it", repr(spec.comment)))
+    return len(collector.problems) == before
 
 
 def _rows_of(block: Block, reading: Reading) -> IntArray:
@@ -171,6 +201,16 @@ def _numbers(blocks: list[Block], used: list[IntArray], reading: Reading) -> dic
         else:
             found[position] = read_numbers(column, rows, reading)
     return found
+
+
+def _read_alone(columns: list[Column], reading: Reading) -> None:
+    """Judge the cells of columns that are good themselves where others are not, to report all in one pass."""
+    for column in columns:
+        rows = [index for index, row in enumerate(reading.table.rows) if row.cells[column.position]]
+        if column.spec.kind == "label":
+            _check_words(column, np.array(rows, dtype=np.int64), reading)
+        else:
+            read_numbers(column, np.array(rows, dtype=np.int64), reading)
 
 
 def _check_words(column: Column, rows: IntArray, reading: Reading) -> None:
