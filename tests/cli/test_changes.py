@@ -13,11 +13,14 @@ from pathlib import Path
 import pytest
 
 from benchmark.record.changes import read_any_record
+from benchmark.report.folder import fill_folder
 from benchmark.report.page import embedded_record
 from tests.cli.conftest import Ran, read
 from tests.fixed_displacement import fixed_displacement
 
 Run = Callable[..., Ran]
+SET = "old/nodes/technologies/film-switch.toml"
+_WHOLE = fill_folder
 pytestmark = pytest.mark.usefixtures("quick")
 
 
@@ -176,6 +179,122 @@ def test_a_whole_report_gives_its_record_back(records, tmp_path: Path):
     record = read(records[0], "record.json")
     (tmp_path / "page.html").write_text(report_page(record), encoding="utf-8")
     assert read_any_record(tmp_path / "page.html") == record
+
+
+@pytest.fixture
+def drawn(quick: None, monkeypatch: pytest.MonkeyPatch) -> None:
+    """Undo the leaving out of charts and reports."""
+    from benchmark.report import folder
+
+    monkeypatch.setattr("benchmark.report.folder.fill_folder", _WHOLE)
+    assert folder.fill_folder is _WHOLE
+
+
+@pytest.mark.usefixtures("drawn")
+def test_a_run_since_an_earlier_record_says_what_changed(evenload: Run, two, tmp_path: Path):
+    """As a folder and as a report; the comparison is the one of ``changes``, and it can be exported."""
+    time = ("--freeze-time", "2026-01-31T00:00:00Z", "--quiet")
+    assert evenload("run", two[0], "--out", "a", *time).status == 0
+    ran = evenload("run", two[1], "--out", "b", "--since", "a", *time)
+    assert ran.status == 0, ran.err
+    tail = ran.out[ran.out.index("Since a:") :].splitlines()
+    assert tail[1] == ("  Verdict flipped: conditional go -> not decidable on this evidence; advantage 2 -> 1.445.")
+    assert tail[2] == "  Most of it by film-switch.actuator_coefficient (x 0.7225)."
+    assert evenload("run", two[1], "--out", "c", "--since", "a/report.html", *time).status == 0
+    change, again = (read(tmp_path / name, "record.json")["change"] for name in "bc")
+    assert change["old"] | {"shown": ""} == again["old"] | {"shown": ""}
+    assert [change[key] for key in change if key != "old"] == [again[key] for key in again if key != "old"]
+    found = json.loads(evenload("changes", "a", "b", "--format", "json").out)
+    for name in ("inputs", "attribution", "chain", "results", "identical", "verdict", "points", "other"):
+        assert change[name] == found[name], name
+    page = (tmp_path / "b" / "report.html").read_text(encoding="utf-8")
+    assert '<section id="change"' in page
+    assert '<figure id="chart-change-picture">' in page
+    assert evenload("export", "b", "--figures", "figures").status == 0
+    assert (tmp_path / "figures" / "change-picture-180mm.pdf").is_file()
+    assert "Operating points before and after" in (tmp_path / "figures" / "change-picture-88mm.txt").read_text("utf-8")
+
+
+@pytest.mark.usefixtures("drawn")
+def test_the_report_of_a_change_can_be_dropped_back(evenload: Run, two, tmp_path: Path):
+    """Report of A against report of B: the same change report as from the folders; and from the change report."""
+    for name, study in zip("ab", two, strict=True):
+        assert evenload("run", study, "--out", name, "--quiet").status == 0
+    ran = evenload("changes", "a", "b", "--report", "change.html")
+    assert ran.status == 0, ran.err
+    assert "Report: change.html (" in ran.out
+    first = evenload("changes", "a", "b", "--format", "csv").out
+    assert evenload("changes", "a/report.html", "b/report.html", "--format", "csv").out == first
+    assert evenload("changes", "a/report.html", "change.html", "--format", "csv").out == first
+    kept = read_any_record(tmp_path / "change.html")["change"]
+    assert kept["attribution"] == json.loads(evenload("changes", "a", "b", "--format", "json").out)["attribution"]
+    # and the report of the way back, from the studies themselves
+    assert evenload("changes", two[1], two[0], "--report", "back.HTML", "--draws", "16").status == 0
+    back = read_any_record(tmp_path / "back.HTML")["change"]
+    parts = [row["attribution"][0]["parts"]["film-switch.actuator_coefficient"] for row in (kept, back)]
+    assert parts[0] == pytest.approx(-parts[1], rel=1e-9)
+    assert back["probability"]["how"].startswith("16 draws")
+
+
+def test_since_into_the_same_folder_compares_with_what_was_there(evenload: Run, two, tmp_path: Path):
+    assert evenload("run", two[0], "--out", "a", "--quiet").status == 0
+    ran = evenload("run", two[1], "--out", "a", "--since", "a", "--quiet")
+    assert ran.status == 0, ran.err
+    assert "advantage 2 -> 1.445" in ran.out
+    assert read(tmp_path / "a", "record.json")["change"]["old"]["shown"] == "a"
+
+
+def test_since_a_record_that_answers_another_question(evenload: Run, records, tmp_path: Path):
+    other = fixed_displacement(required="2.0").write(tmp_path / "other")
+    refused = evenload("run", other, "--out", "c", "--since", records[0])
+    assert refused.status == 2
+    assert "answer different questions (required advantage: 1.5 -> 2); --anyway" in refused.err
+    assert not (tmp_path / "c").exists()
+    ran = evenload("run", other, "--out", "c", "--since", records[0], "--anyway")
+    assert ran.status == 0, ran.err
+    assert "Note: the criteria of the answer changed: required advantage (first used on 2026-01-31" in ran.out
+    assert read(tmp_path / "c", "record.json")["change"]["other"][0] == {
+        "kind": "criteria",
+        "name": "required advantage",
+        "old": "1.5",
+        "new": "2",
+    }
+
+
+def test_other_constants_are_no_change_of_an_input(evenload: Run, records, tmp_path: Path):
+    record = read(records[0], "record.json")
+    assert record["constants"]["BOLTZMANN"] == 1.380649e-23
+    record["constants"]["BOLTZMANN"] = 1.38e-23
+    (tmp_path / "old.json").write_text(json.dumps(record), encoding="utf-8")
+    found = json.loads(evenload("changes", "old.json", records[1], "--format", "json").out)
+    assert "physical constants of the program changed: BOLTZMANN" in found["banners"]
+    assert {"kind": "constant", "name": "BOLTZMANN", "old": "1.38e-23", "new": "1.380649e-23"} in found["other"]
+    assert set(found["attribution"][0]["parts"]) == {"film-switch.actuator_coefficient"}
+    del record["constants"]  # an older record does not state them
+    (tmp_path / "old.json").write_text(json.dumps(record), encoding="utf-8")
+    assert json.loads(evenload("changes", "old.json", records[1], "--format", "json").out)["banners"] == []
+
+
+@pytest.mark.parametrize(
+    ("arguments", "status", "message"),
+    [
+        (("run", "old/study.toml", "--since", "absent"), 3, "absent: is not a readable record (FileNotFoundError)"),
+        (("run", "old/study.toml", "--since", "old/study.toml"), 3, "study.toml: is not a readable record"),
+        (("run", "old/study.toml", "--since", "a", "--ratio-only"), 2, "--since needs absolute values of both runs"),
+        (("run", "old/study.toml", "--anyway"), 2, "--anyway says how to compare with an earlier record; give --since"),
+        (("changes", "a", "b", "--report", "x.pdf"), 2, "--report: x.pdf must end in .html, so that changes can read"),
+        (
+            ("changes", SET, SET, "--report", "x.html"),
+            2,
+            "two sets of values have no report; compare two studies or their records",
+        ),
+        (("changes", "old/study.toml", "old/study.toml", "--report", "no/x.html"), 3, "no/x.html: cannot be written"),
+    ],
+)
+def test_messages_of_since_and_report(evenload: Run, two, arguments, status: int, message: str):
+    ran = evenload(*arguments)
+    assert ran.status == status
+    assert message in ran.err
 
 
 def test_other_criteria_in_the_same_folder_are_said_with_both_dates(evenload: Run, tmp_path: Path):
