@@ -46,7 +46,7 @@ class Kind:
     """One kind of reading.
 
     ``meaning``: what it is, in words. ``along``: axes it can be read along. ``of``: columns it can be read from.
-    ``unit``: unit of the result; ``{of}`` and ``{along}`` stand for the units of the columns. ``needs`` and ``may``:
+    ``unit``: unit of the result, from the units of the columns. ``needs`` and ``may``:
     keys of the request. ``measured_in``: key -> "of", or a unit, where it is not in the unit of the axis.
     ``least_points``: fewest neighbouring points of a local slope. ``logarithmic``: a spread of the result is one of its
     logarithm.
@@ -62,6 +62,15 @@ class Kind:
     least_points: int = 0
     logarithmic: bool = False
 
+    def unit_for(self, of: str, along: str, units: Mapping[str, str]) -> str:
+        """Return the unit to print the result in, for a column and an axis with these units."""
+        width = "/um" if of.endswith("_per_width") else ""
+        read, axis = units[of], units[along]
+        charge = read if of.startswith("charge") else f"fC{width}"
+        capacitance = read if of.startswith("input_capacitance") else f"fF{width}"
+        inside = f"({axis})" if set(axis) & set("/ *") else axis
+        return self.unit.format(of=read, along=inside, charge=charge, capacitance=capacitance)
+
     @staticmethod
     def example(key: str) -> str:
         """Say how a key is written."""
@@ -75,7 +84,7 @@ _SWING_SPAN = {"span": "of"}
 
 def _swing(meaning: str, least_points: int = 0) -> Kind:
     may = ("sweep", "points") if least_points else ("sweep",)
-    return Kind(meaning, _CONTROL, _CURRENT, "V/decade", ("span",), may, _SWING_SPAN, least_points)
+    return Kind(meaning, _CONTROL, _CURRENT, "mV/decade", ("span",), may, _SWING_SPAN, least_points)
 
 
 def _charge(meaning: str, unit: str) -> Kind:
@@ -130,8 +139,8 @@ KINDS: dict[str, Kind] = {
     "contact_resistivity": _contact("contact resistivity, for contacts longer than 1.5 transfer lengths", "ohm m^2"),
     "sheet_resistance": _contact("sheet resistance between the contacts", "ohm"),
     "transfer_length": _contact("transfer length of the contact", "m"),
-    "resistance_slope": _slope("decades that the resistance falls per unit of the axis", "decade/({along})"),
-    "log_resistance_slope": _slope("slope of the natural logarithm of the resistance along the axis", "1/({along})"),
+    "resistance_slope": _slope("decades that the resistance falls per unit of the axis", "decade/{along}"),
+    "log_resistance_slope": _slope("slope of the natural logarithm of the resistance along the axis", "1/{along}"),
     "pull_in_voltage": _jump("control voltage at which a rising sweep jumps"),
     "pull_out_voltage": _jump("control voltage at which a falling sweep jumps back"),
     "cycles_to_failure": Kind(

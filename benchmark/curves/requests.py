@@ -9,11 +9,14 @@ from typing import Literal
 
 from pydantic import Field
 
+from benchmark.catalogue import QUANTITIES
 from benchmark.curves.quantities import KINDS, QuantityName
+from benchmark.errors import nearest
 from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import DefaultsTable, FileModel, Measure, NodeLabel, Number, RangeTable, Text, Whole
 from benchmark.sets.values import Place, convert_measure, convert_range
+from benchmark.units import parse_unit
 
 __all__ = ["ExtractTable", "Request", "convert_requests"]
 
@@ -93,7 +96,8 @@ class Request:
 
     ``measures``: key of the table -> SI number (``span`` as ``low`` and ``high``); ``fixed``: meaning -> SI of what
     tells the curves to read from others; ``labels``: the same in words. ``of``: meaning of the column that is read.
-    ``said``: key -> number and unit as the file states them. ``dotted``: its place in the description.
+    ``said``: key -> number and unit as the file states them. ``unit``: unit of the result. ``dotted`` and ``line``: its
+    place in the description.
     """
 
     quantity: str
@@ -103,6 +107,8 @@ class Request:
     fixed: Mapping[str, float]
     labels: Mapping[str, str]
     said: Mapping[str, str]
+    unit: str
+    line: int
     name: str = ""
     node: str = ""
     sweep: str = ""
@@ -186,6 +192,9 @@ def _convert(
     measures, said = _measures(table, dotted, file, along, of[0], units, collector)
     fixed = _fixed(table, dotted, file, along, units, collector)
     reading = _percent(table, dotted, file, collector)
+    unit = kind.unit_for(of[0], along, units)
+    if table.name is not None:
+        _check_name(table.name, unit, dotted, file, collector)
     if table.points is not None and table.points < kind.least_points:
         collector.add(
             file.problem(f"{dotted}.points", "is too small", str(table.points), f"{kind.least_points} or more")
@@ -198,6 +207,8 @@ def _convert(
         fixed=fixed,
         labels=dict(table.labels),
         said=said,
+        unit=unit,
+        line=file.line(dotted),
         name=table.name or "",
         node=table.node or "",
         sweep=table.sweep or "",
@@ -210,6 +221,25 @@ def _convert(
         reading=reading,
         setting=measures.get("setting", 0.0),
     )
+
+
+def _check_name(name: str, unit: str, dotted: str, file: TomlFile, collector: Collector) -> None:
+    """Refuse a value name that is none, or whose dimension is not that of the reading."""
+    quantity = QUANTITIES.get(name)
+    if quantity is None:
+        hint = nearest(name, QUANTITIES)
+        collector.add(file.problem(f"{dotted}.name", "is not a value name", repr(name), "", hint))
+        return
+    wanted, found = parse_unit(quantity.unit), parse_unit(unit)
+    if found.dimension != wanted.dimension:
+        collector.add(
+            file.problem(
+                f"{dotted}.name",
+                f"has another dimension than what is read ({quantity.meaning})",
+                f"{unit} ({found.dimension_text})",
+                f"a reading such as {quantity.unit} ({wanted.dimension_text})",
+            )
+        )
 
 
 def _place(file: TomlFile, dotted: str) -> Place:

@@ -58,7 +58,8 @@ class Restated:
     ``numbers`` by node, or one under an empty name for all nodes, in ``unit``. ``spread``: its table, None for none, or
     the word ``keep``. ``told``: what else changes in the table (evidence, source, where, conditions, note, owner,
     bound), None to leave a key out. ``reason``: why the old number is no longer used; empty to correct the words in
-    place. ``old_date``: day from which the old number held, where the file does not say.
+    place. ``old_date``: day from which the old number held, where the file does not say. ``extracted_from``: file and
+    digest of the data a new number was read off; a new number without it was not read off a file.
     """
 
     name: str
@@ -69,6 +70,7 @@ class Restated:
     date: datetime.date | None
     reason: str
     old_date: datetime.date | None = None
+    extracted_from: Mapping[str, str] | None = None
 
 
 @dataclass(frozen=True)
@@ -206,6 +208,8 @@ def _edit(opened: OpenSet, one: Restated, collector: Collector) -> Edit | None:
     if one.spread != KEEP:
         changed["spread"] = one.spread
     changed |= one.told
+    if one.reason:
+        changed["extracted_from"] = one.extracted_from
     if one.date is not None:
         changed["date"] = one.date
     return Edit(one.name, changed, one.reason, one.old_date)

@@ -17,7 +17,7 @@ __all__ = ["Edit", "edited_text"]
 
 Data = dict[str, Any]
 #: what an entry of the history states of a value in any case
-_NUMBER = ("value", "by_node", "unit", "spread")
+_NUMBER = ("value", "by_node", "unit", "spread", "extracted_from")
 #: what it states too, as the file says it there or among its defaults
 _ORIGIN = ("evidence", "source", "where", "conditions")
 #: what it states only where the new state says otherwise, and what stands for "none"

@@ -18,10 +18,10 @@ __all__ = ["as_it_was"]
 #: what an entry states for itself; without a range it had none
 _OWN = (
     *("value", "by_node", "unit", "spread", "evidence", "source", "where", "conditions", "date"),
-    *("note", "owner", "bound", "formula", "unusual"),
+    *("note", "owner", "bound", "formula", "unusual", "extracted_from"),
 )
 #: what goes when an entry does not state it
-_GONE = ("value", "by_node", "unit", "spread")
+_GONE = ("value", "by_node", "unit", "spread", "extracted_from")
 
 
 def as_it_was(file: TomlFile, day: datetime.date, collector: Collector) -> TomlFile | None:

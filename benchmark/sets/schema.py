@@ -62,7 +62,9 @@ Whole = Annotated[int, BeforeValidator(_whole)]
 Text = Annotated[str, Field(max_length=20_000)]
 _LABEL = r"^[A-Za-z0-9][A-Za-z0-9_.\-]{0,80}$"
 _NODE_LABEL = r"^[A-Za-z][A-Za-z0-9_\-]{0,40}$"
+_DIGEST = r"^[0-9a-f]{64}$"
 _PATTERN_TEXT = {
+    _DIGEST: "64 digits 0 to 9 and a to f",
     _LABEL: "up to 81 letters, digits, '_', '.' and '-', starting with a letter or digit",
     _NODE_LABEL: "up to 41 letters, digits, '_' and '-', starting with a letter",
 }
@@ -140,6 +142,18 @@ class LogNormal(FileModel):
 SpreadTable = Annotated[Uniform | LogUniform | Triangular | Normal | LogNormal, Field(discriminator="shape")]
 
 
+class ExtractedFrom(FileModel):
+    """Measured data that a number was read off."""
+
+    file: Text = Field(description="File with the data, by its path from this file")
+    digest: Annotated[str, Field(pattern=_DIGEST)] = Field(description="sha256 of its bytes then; check compares")
+
+
+ReadOff = Annotated[
+    ExtractedFrom | None, Field(description="Measured data that the number was read off; check says if they changed")
+]
+
+
 class PastTable(FileModel):
     """What a value was before: the number, the day it was measured or chosen, and why it is no longer used.
 
@@ -163,6 +177,7 @@ class PastTable(FileModel):
         default=None, description='Formula it had, or "" for none, where that differs from today\'s'
     )
     unusual: bool | None = Field(default=None, description="Whether it was meant to be unusual, if that changed")
+    extracted_from: ReadOff = None
     date: datetime.date = Field(description="Day of the measurement or choice; it held from then on")
     reason: Text = Field(min_length=1, description="Why it is no longer used")
 
@@ -190,6 +205,7 @@ class ValueTable(FileModel):
     )
     unusual: bool = Field(default=False, description="true: yes, far outside the usual range is meant")
     date: datetime.date | None = Field(default=None, description="Day of the measurement or choice, such as 2026-01-31")
+    extracted_from: ReadOff = None
     superseded: list[PastTable] = Field(default=[], description="What it was before, oldest first; needs a date above")
 
 

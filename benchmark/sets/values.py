@@ -16,6 +16,7 @@ from numpy.typing import NDArray
 
 from benchmark.catalogue import EVIDENCE, Quantity
 from benchmark.errors import nearest
+from benchmark.sets.extracted import check_data
 from benchmark.sets.files import TomlFile, shown
 from benchmark.sets.problems import Collector
 from benchmark.sets.schema import (
@@ -435,6 +436,8 @@ def convert_value(
     past = _past(quantity, table, nodes, place, collector)
     if past is None:
         return None
+    if table.extracted_from is not None:
+        check_data(table.extracted_from, file, place.dotted, collector)
     return Value(
         name=quantity.name,
         si=array,

@@ -3,15 +3,25 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
 
-from benchmark.physics.extraction.result import Bound, CannotExtract, Extracted
+from benchmark.physics.extraction.result import (
+    READING,
+    SETTING,
+    Bound,
+    CannotExtract,
+    Extracted,
+    Part,
+    combined,
+)
 
 __all__ = ["OverDevices", "over_devices"]
 
+#: parts of an uncertainty that move all devices alike
+COMMON = (READING, SETTING)
 #: quartiles of a normal distribution are so many standard deviations apart
 NORMAL_QUARTILES = 1.3489795003921634
 #: standard error of the median of a normal sample, in standard deviations over sqrt(n)
@@ -24,9 +34,11 @@ class OverDevices:
 
     ``median``, and ``median_bound`` where it rests on bounds. ``lower_quartile`` and ``upper_quartile``: None where
     they rest on bounds. ``seen_spread``: distance of the quartiles over 1.349, the standard deviation of a normal
-    distribution. ``measured``: root mean square of the uncertainties of the single numbers. ``device_spread``: what is
-    left of the spread without them, sqrt(seen^2 - measured^2); None where the measurement explains all of it.
-    ``median_error``: 1.2533 seen/sqrt(n). ``count`` devices, ``bounds`` of them known only by a bound.
+    distribution. ``measured``: root mean square of what makes the numbers of single devices uncertain one by one
+    (scatter and spacing of points). ``device_spread``: what is left of the spread without it, the root of the
+    difference of squares; None where the measurement explains all of it. ``common``: root mean square of the stated
+    accuracies of reading and setting, which move all devices alike. ``median_error``: 1.2533 seen/sqrt(n) and the
+    common part together. ``count`` devices, ``bounds`` of them known only by a bound.
     """
 
     median: float
@@ -35,6 +47,7 @@ class OverDevices:
     upper_quartile: float | None
     seen_spread: float | None
     measured: float
+    common: float
     device_spread: float | None
     median_error: float | None
     count: int
@@ -71,8 +84,8 @@ def over_devices(found: Sequence[Extracted]) -> OverDevices:
     quartiles = [_quantile(values, below, above, share, refuse=False) for share in (0.25, 0.75)]
     lower, upper = (None if one_bound or math.isnan(one) else one for one, one_bound in quartiles)
     seen = None if lower is None or upper is None else (upper - lower) / NORMAL_QUARTILES
-    errors = [one.uncertainty for one in found if one.uncertainty is not None]
-    measured = math.sqrt(sum(error**2 for error in errors) / len(errors)) if errors else 0.0
+    measured = _typical(found, lambda part: part.name not in COMMON)
+    common = _typical(found, lambda part: part.name in COMMON)
     left = None if seen is None or seen <= measured else math.sqrt(seen**2 - measured**2)
     return OverDevices(
         median=median,
@@ -81,11 +94,20 @@ def over_devices(found: Sequence[Extracted]) -> OverDevices:
         upper_quartile=upper,
         seen_spread=seen,
         measured=measured,
+        common=common,
         device_spread=left,
-        median_error=None if seen is None or bound else NORMAL_MEDIAN * seen / math.sqrt(len(found)),
+        median_error=(
+            None if seen is None or bound else math.hypot(NORMAL_MEDIAN * seen / math.sqrt(len(found)), common)
+        ),
         count=len(found),
         bounds=int(np.sum(below | above)),
     )
+
+
+def _typical(found: Sequence[Extracted], counts: Callable[[Part], bool]) -> float:
+    """Return the root mean square over the devices of the parts that count; 0 without any number."""
+    sizes = [combined(part for part in one.parts if counts(part)).size for one in found if not one.bound]
+    return math.sqrt(sum(size**2 for size in sizes) / len(sizes)) if sizes else 0.0
 
 
 def _quantile(
