@@ -38,6 +38,22 @@ _COMMON = (
 
 _RESISTIVE = (
     Quantity("on_resistance", "R_on", "resistance of the closed switch", "kohm", 1.0e-3, 1.0e5),
+    Quantity(
+        "closed_state_current",
+        "I_on",
+        "current of one closed switch with the declared supply across it, for the consistency check only",
+        "uA",
+        1.0e-6,
+        1.0e5,
+    ),
+    Quantity(
+        "effective_drive_current",
+        "I_eff",
+        "effective drive current of one switch at the declared supply, for the consistency check only",
+        "uA",
+        1.0e-6,
+        1.0e5,
+    ),
     Quantity("off_resistance", "R_off", "resistance of the open switch", "Mohm", 1.0e-3, 1.0e12),
     Quantity(
         "open_state_current",
@@ -232,6 +248,14 @@ _STRESS_GATED = (
         "Pa/m",
         1.0e17,
         1.0e21,
+    ),
+    Quantity(
+        "declared_pressure",
+        "p_DD",
+        "pressure on the channel at the declared supply, for the consistency check only",
+        "GPa",
+        1.0e-4,
+        50.0,
     ),
     Quantity("stack_thickness", "h_s", "thickness of the stack the sound crosses", "nm", 1.0, 1.0e4),
     Quantity("stack_sound_speed", "v_s", "sound speed in the stack", "m/s", 300.0, 2.0e4),

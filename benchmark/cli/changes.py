@@ -60,6 +60,8 @@ def blocks(found: Row, *, additive: bool = False) -> list[Block]:
     if "verdict" in found:
         shown.append(Facts("", words.answer_rows(found)))
     shown.append(_table(words.input_table(found), "Inputs: none changed."))
+    if found["links"]:
+        shown.append(_table(words.link_table(found)))
     if found["other"]:
         shown.append(_table(words.other_table(found)))
     if "attribution" not in found:

@@ -21,6 +21,7 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
+from benchmark.devices.links.link import Link
 from benchmark.devices.netlist.parts import SubCircuits
 from benchmark.devices.record import Array, SwitchPair
 from benchmark.measured import MeasuredTable
@@ -102,6 +103,8 @@ class DeviceModel:
     switch: Callable[[Prepared, Array, Array, Mapping[str, Array]], SwitchPair]
     #: domain checks that need the physics (coupling-factor consistency, swing below the thermionic limit ...)
     check: Callable[[ModelInputs], list[Finding]] = _no_findings
+    #: stated values that say the same thing, or bound each other; judged by ``benchmark.evaluate.links``
+    links: tuple[Link, ...] = ()
     #: tables the model reads: name -> required
     tables: Mapping[str, bool] = field(default_factory=dict)
     #: published targets the model is solved for at load (they check the solver, not the model)

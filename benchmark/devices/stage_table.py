@@ -30,6 +30,7 @@ from typing import Final
 
 import numpy as np
 
+from benchmark.devices.links.resistive import SUPPLY_LINK
 from benchmark.devices.model import DeviceModel, Finding, ModelInputs, Option, Prepared
 from benchmark.devices.ohmic_law import OhmicLaw
 from benchmark.devices.record import Array, BoolArray, Switch, SwitchPair
@@ -260,6 +261,7 @@ MODEL = DeviceModel(
     prepare=_prepare,
     switch=_switch,
     check=_check,
+    links=(SUPPLY_LINK,),
     tables={"rows": True},
     references=(
         "ln 2 R C = delay, C V^2 = energy per cycle (definitions); own capacitance = node minus fan-out times input",

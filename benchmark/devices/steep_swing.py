@@ -34,6 +34,7 @@ from typing import Any
 
 import numpy as np
 
+from benchmark.devices.links.transistor import STEEP_SWING_LINKS
 from benchmark.devices.model import DeviceModel, Finding, Input, ModelInputs, Option, Prepared
 from benchmark.devices.netlist.parts import SubCircuits
 from benchmark.devices.netlist.steep_swing import blend_text
@@ -243,6 +244,7 @@ MODEL = DeviceModel(
     switch=_switch,
     netlist=_netlist,
     check=_check,
+    links=STEEP_SWING_LINKS,
     knobs=("threshold_shift",),
     references=(
         "I = {I_off + [1/I_on + 1/(I_off (10^(V/S) - 1))]^-1} (1 - exp(-V_DS/V_sat)) (own blend)",

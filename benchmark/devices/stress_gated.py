@@ -37,6 +37,7 @@ from collections.abc import Mapping
 import numpy as np
 
 from benchmark.constants import VACUUM_PERMITTIVITY
+from benchmark.devices.links.stress_gated import STRESS_GATED_LINKS
 from benchmark.devices.model import DeviceModel, ModelInputs, Prepared
 from benchmark.devices.netlist.parts import SubCircuits, scalar
 from benchmark.devices.netlist.stress_gated import Gate, switch_text
@@ -313,5 +314,6 @@ MODEL = DeviceModel(
     switch=_switch,
     netlist=_netlist,
     check=check,
+    links=STRESS_GATED_LINKS,
     references=REFERENCES,
 )

@@ -41,6 +41,7 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 
+from benchmark.devices.links.resistive import SUPPLY_LINK
 from benchmark.devices.model import DeviceModel, Finding, ModelInputs, Prepared
 from benchmark.devices.record import Array, BoolArray, Switch, SwitchPair
 from benchmark.devices.standing import (
@@ -236,6 +237,7 @@ MODEL = DeviceModel(
     prepare=_prepare,
     switch=_switch,
     check=_check,
+    links=(SUPPLY_LINK,),
     tables=TABLES,
     references=REFERENCES,
 )

@@ -16,6 +16,7 @@ from benchmark.devices import MODEL_NAMES, model
 from benchmark.devices.model import Finding, ModelInputs
 from benchmark.errors import InputRefused, Problem, UsageError
 from benchmark.evaluate.batch import Batch, resolve
+from benchmark.evaluate.links import FITS, REFUSED, LinkRow, link_rows
 from benchmark.evaluate.side import build_circuit
 from benchmark.sets.files import TomlFile, is_folder, read_toml
 from benchmark.sets.history import as_it_was
@@ -24,6 +25,7 @@ from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.problems import Collector
 from benchmark.sets.study import Side, Study
 from benchmark.sets.study_builder import build_study
+from benchmark.sets.values import amount
 
 __all__ = ["check_physics", "check_study", "load_study", "load_technology", "open_library", "open_set"]
 
@@ -172,6 +174,27 @@ def check_physics(technology: ParameterSet, collector: Collector) -> None:
             finding.hint,
         )
         {"refuse": collector.add, "warn": collector.warn}.get(finding.level, collector.note)(problem)
+    _check_links(technology, collector)
+
+
+def _check_links(technology: ParameterSet, collector: Collector) -> None:
+    """Report stated values that do not fit each other, with the numbers of both sides; one problem for each link."""
+    broken: dict[str, list[LinkRow]] = {}
+    for row in link_rows(technology):
+        if row.state != FITS:
+            broken.setdefault(row.formula, []).append(row)
+    for rows in broken.values():
+        refused = any(row.state == REFUSED for row in rows)
+        dotted = f"value.{rows[0].place}"
+        found = "; ".join(
+            f"{amount(f'{row.left:.5g}', row.unit)} against {amount(f'{row.right:.5g}', row.unit)}"
+            f"{f' at {row.node}' if row.node else ''}, ratio {row.ratio:.4g}"
+            for row in rows
+        )
+        what = f"{'contradicts' if refused else 'does not fit'} other values of the set: {rows[0].formula}"
+        line = _line(technology, dotted)
+        problem = Problem(technology.file, line, dotted, what, found, rows[0].tolerance, rows[0].hint)
+        (collector.add if refused else collector.warn)(problem)
 
 
 def _line(technology: ParameterSet, dotted: str) -> int:

@@ -118,7 +118,6 @@ def test_without_closing_voltage_there_is_no_hysteresis():
         ({"off_state": "current"}, ("off_resistance",), {"open_state_current": 2e-6}, "value.open_state_current"),
         ({}, (), {"switching_level": 1.0}, "value.switching_level"),
         ({}, (), {"switching_level": 0.0}, "value.switching_level"),
-        ({}, (), {"closing_voltage": 0.30}, "value.closing_voltage"),
         ({}, (), {"closing_voltage": 0.35, "opening_voltage": 0.36}, "value.opening_voltage"),
         ({}, (), {"closing_voltage": 0.35, "opening_voltage": -0.2}, "value.opening_voltage"),
         ({}, (), {"opening_voltage": 0.2}, "value.opening_voltage"),

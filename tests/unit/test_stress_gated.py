@@ -11,6 +11,7 @@ import pytest
 
 from benchmark.constants import BOLTZMANN, ELEMENTARY_CHARGE, VACUUM_PERMITTIVITY
 from benchmark.devices import model
+from benchmark.devices.links import judged
 from benchmark.devices.model import ModelInputs
 from benchmark.devices.record import Switch, SwitchPair
 from benchmark.physics import acoustics, two_pole
@@ -358,7 +359,14 @@ def test_hand_law_required_coefficients():
 
 
 def findings(values: Mapping[str, Any], **options: str) -> dict[tuple[str, str], str]:
-    return {(item.level, item.name): item.found for item in MODEL.check(inputs(values, **options))}
+    given = inputs(values, **options)
+    found = {(item.level, item.name): item.found for item in MODEL.check(given)}
+    for item in judged(MODEL.links, given.values, given.options):
+        for level, where in (("warn", item.warned), ("refuse", item.refused)):
+            if np.any(where):
+                worst = float(np.ravel(item.deviation)[np.argmax(np.abs(item.deviation))])
+                found[level, f"value.{item.link.place}"] = f"{100.0 * worst:+.1f} %"
+    return found
 
 
 def test_a_consistent_set_has_no_findings():

@@ -12,6 +12,7 @@ from benchmark.decide.attribution import REST, Attribution, attribute
 from benchmark.errors import UsageError
 from benchmark.record.changes.chain import causal_chain
 from benchmark.record.changes.inputs import input_changes, text_changes, unit_notes
+from benchmark.record.changes.links import changed_links, study_links
 from benchmark.record.changes.points import operating_points
 from benchmark.record.changes.question import asked_changes, other_changes
 from benchmark.record.changes.results import result_changes
@@ -46,7 +47,8 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
     Returns
     -------
     dict
-        ``inputs``, ``other`` (what is not a value), ``results``, ``identical``, ``verdict``, ``points`` (operating
+        ``inputs``, ``links`` (which other values the changed ones have to fit), ``other`` (what is not a value),
+        ``results``, ``identical``, ``verdict``, ``points`` (operating
         points before and after), ``attribution``, ``probability`` (None without draws on both sides), ``chain``,
         ``banners``.
 
@@ -66,6 +68,7 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
         "new": _head(new),
         "banners": [*_banners(other, split, old.record, new.record), *unit_notes(inputs)],
         "inputs": inputs,
+        "links": changed_links(study_links(old.study), study_links(new.study), [row["key"] for row in inputs]),
         "other": other,
         "verdict": {
             "old": old.record["verdict"]["word"],
@@ -124,6 +127,7 @@ def compare_sets(old: Mapping[str, Any], new: Mapping[str, Any]) -> Row:
         "new": {"shown": new["shown"], "id": new["id"]},
         "banners": [*banners, *unit_notes(inputs)],
         "inputs": inputs,
+        "links": changed_links(old["links"], new["links"], [row["key"] for row in inputs]),
         "other": text_changes(old["options"], new["options"], "option"),
     }
     cleaned: Row = clean(found)

@@ -15,6 +15,7 @@ from pathlib import Path, PurePosixPath
 from typing import Any
 
 from benchmark.errors import EvenloadError, UsageError
+from benchmark.record.changes.links import set_links
 from benchmark.record.ledger import set_rows
 from benchmark.record.load import load_study, open_library
 from benchmark.record.rerun import recreate
@@ -112,7 +113,7 @@ def set_state(place: str) -> dict[str, Any]:
     Returns
     -------
     dict
-        ``shown``, ``id``, ``nodes``, ``options`` and ``ledger`` (rows as in a record).
+        ``shown``, ``id``, ``nodes``, ``options``, ``ledger`` (rows as in a record) and ``links``.
 
     Raises
     ------
@@ -145,6 +146,7 @@ def state_of_set(shown: str, item: ParameterSet, sources: Mapping[str, Source]) 
         "nodes": list(item.nodes),
         "options": dict(item.options),
         "ledger": set_rows(item, sources),
+        "links": set_links(item),
     }
 
 

@@ -25,6 +25,7 @@ __all__ = [
     "change_rows",
     "identical_words",
     "input_table",
+    "link_table",
     "other_table",
     "part_tables",
     "probability_rows",
@@ -142,6 +143,29 @@ def input_table(found: Row, how: Print = PLAIN) -> Worded:
     return Worded("Inputs that changed", columns, rows)
 
 
+def link_table(found: Row, how: Print = PLAIN) -> Worded:
+    """Return the values that state the same thing as a changed one, or bound it: both sides, ratio, what is allowed."""
+
+    def side(row: Row, name: str) -> str:
+        old, new = row[f"{name}_old"], how.number(row[name], 5)
+        return f"{new if old is None else arrow(how.number(old, 5), new, how)} {row['unit']}".removesuffix(" 1")
+
+    rows = tuple(
+        (
+            row["formula"] + (f", node {row['node']}" if row["node"] else ""),
+            row["set"] or "-",
+            side(row, "left"),
+            side(row, "right"),
+            how.number(row["ratio"], 4),
+            row["tolerance"],
+            row["state"],
+        )
+        for row in found.get("links", ())
+    )
+    columns = ("link", "set", "left side", "right side", "ratio", "allowed", "result")
+    return Worded("Values that have to fit the changed ones", columns, rows)
+
+
 def other_table(found: Row) -> Worded:
     """Return what changed besides values."""
     rows = tuple((row["kind"], row["name"], row["old"] or "absent", row["new"] or "absent") for row in found["other"])
@@ -257,6 +281,18 @@ def change_rows(found: Row) -> list[dict[str, Any]]:
     for row in found["inputs"]:
         kept = {name: row[name] for name in ("node", "unit", "old", "new", "factor")}
         rows.append({"section": "input", "name": row["key"], **kept, "note": ", ".join(row["changed"])})
+    for row in found.get("links", ()):
+        head = {
+            "section": "link",
+            "node": row["node"],
+            "unit": row["unit"],
+            "note": f"{row['state']}: {row['tolerance']}",
+        }
+        sides = (("left side of", "left", None), ("right side of", "right", row["ratio"]))
+        rows += [
+            {**head, "name": f"{words} {row['formula']}", "old": row[f"{name}_old"], "new": row[name], "factor": ratio}
+            for words, name, ratio in sides
+        ]
     rows += [
         {"section": row["kind"], "name": row["name"], "old": row["old"], "new": row["new"]} for row in found["other"]
     ]
