@@ -25,6 +25,8 @@ from benchmark.catalogue import (
     Quantity,
 )
 from benchmark.circuits.library import BUILT_IN
+from benchmark.curves.description import CurvesFile
+from benchmark.curves.meanings import MEANINGS, ONE_SIGN, PER_WIDTH
 from benchmark.devices import MODEL_NAMES, model
 from benchmark.devices.model import DeviceModel, Input
 from benchmark.sets.circuit_file import CELL
@@ -327,6 +329,36 @@ def table_schema() -> Schema:
     return _finish(schema, "Description of a measured table")
 
 
+def curves_schema() -> Schema:
+    """The schema of the description of a raw measured file."""
+    schema = _raw(CurvesFile)
+    own, column = schema["properties"], schema["$defs"]["ColumnTable"]
+    listed = "; ".join(f"{name} [{quantity.unit}]" for name, quantity in MEANINGS.items())
+    column["properties"]["meaning"]["description"] = f"What the column holds. {listed}; labels: a name of your own"
+    own["along"] = {"description": own["along"]["description"], "enum": list(MEANINGS)}
+    own["turns"]["minItems"] = 2
+    column["properties"]["number"]["minimum"] = 1
+    column["anyOf"] = [{"required": ["header"]}, {"required": ["number"]}]
+    words = dict.fromkeys(("unit", "scale", "floor", "compliance"), False)
+    axis = dict.fromkeys(("floor", "compliance"), False)
+    column["allOf"] = [
+        {
+            "if": _when(["kind"], ["axis", "value"]),
+            "then": {"properties": {"meaning": {"enum": list(MEANINGS)}, "allowed": False}},
+            "else": {"properties": {**words, "meaning": {"not": {"enum": list(MEANINGS)}}}},
+        },
+        {"if": _when(["kind"], ["axis"]), "then": {"properties": axis}},
+        {"if": _when(["sign"], ["both"]), "then": {"properties": {"meaning": {"enum": sorted(ONE_SIGN)}}}},
+        {
+            "if": {"properties": {"per_width": {"const": True}}, "required": ["per_width"]},
+            "then": {"properties": {"meaning": {"enum": list(PER_WIDTH)}}},
+        },
+    ]
+    for table in (own, column["properties"], schema["$defs"]["GivenTable"]["properties"]):
+        table["fixed"]["propertyNames"] = {"enum": list(MEANINGS)}
+    return _finish(schema, "Description of a raw measured file")
+
+
 # -- studies and circuits -----------------------------------------------------------------------------------------
 
 
@@ -424,6 +456,7 @@ def schemas() -> dict[str, Schema]:
         "wires.json": wires_schema,
         "sources.json": sources_schema,
         "table.json": table_schema,
+        "curves.json": curves_schema,
         "study.json": study_schema,
         "circuit.json": circuit_schema,
     }

@@ -214,7 +214,10 @@ def demo(
 
 @app.command()
 def check(
-    paths: Annotated[list[Path], typer.Argument(help="Files or folders: sets, sources, circuits, studies.")],
+    paths: Annotated[
+        list[Path],
+        typer.Argument(help="Files or folders: sets, sources, circuits, studies, descriptions of raw measured files."),
+    ],
     as_of: AsOf = "",
     nodes: Nodes = None,
 ) -> None:
@@ -243,7 +246,7 @@ def show(
 
 @app.command()
 def new(
-    kind: Annotated[str, typer.Argument(help="study, technology or circuit.")],
+    kind: Annotated[str, typer.Argument(help="study, technology, circuit or curves (a raw measured file).")],
     path: Annotated[Path, typer.Argument(help="File to write (ends in .toml).")],
     model: Annotated[str, typer.Option("--model", help="Device model of a new technology.")] = "given",
 ) -> None:

@@ -13,7 +13,7 @@ from benchmark.sets.files import is_folder
 
 __all__ = ["KINDS", "new_command"]
 
-KINDS = ("study", "technology", "circuit")
+KINDS = ("study", "technology", "circuit", "curves")
 _LABEL = re.compile(r"[A-Za-z0-9][A-Za-z0-9_.\-]{0,80}")
 
 
@@ -65,6 +65,10 @@ def _texts(kind: str, stem: str, model_name: str) -> dict[str, str]:
         from benchmark.cli.study_template import study_template
 
         return {f"{stem}.toml": study_template(stem)}
+    if kind == "curves":
+        from benchmark.cli.curves_template import curves_template
+
+        return curves_template(stem)
     from benchmark.cli.templates import circuit_template, technology_template
 
     if kind == "circuit":

@@ -87,6 +87,7 @@ def read_curves(
         date=spec.date.isoformat() if spec.date else "",
         owner=spec.owner,
         note=spec.note,
+        title=spec.title,
         hero=spec.hero,
         extract=tuple(requests),
     )

@@ -75,5 +75,6 @@ class MeasuredCurves:
     date: str
     owner: str
     note: str = ""
+    title: str = ""
     hero: bool = False
     extract: tuple[Request, ...] = ()

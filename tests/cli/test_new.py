@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import tomllib
 from pathlib import Path
 
@@ -10,6 +11,8 @@ import pytest
 from benchmark.catalogue import QUANTITIES
 from benchmark.cli.study_template import CONTENDERS
 from benchmark.cli.template_numbers import SPREADS, STUDY_NUMBERS, TECHNOLOGY_NUMBERS
+from benchmark.curves.description import ColumnTable, CurvesFile, GivenTable, RepeatTable
+from benchmark.curves.meanings import MEANINGS
 from benchmark.devices import MODEL_NAMES, model
 from tests.cli.conftest import Run
 
@@ -94,6 +97,36 @@ def test_a_new_study_runs(tmp_path: Path, evenload: Run):
         assert outcome.advantage[0] > 0.0, pair.label
 
 
+def test_a_new_description_of_a_raw_file_passes_the_check_as_written(tmp_path: Path, evenload: Run):
+    ran = evenload("new", "curves", "my-wafer.toml")
+    assert ran.out == "Written: my-wafer.toml\nWritten: my-wafer.csv\nNext:    evenload check my-wafer.toml\n"
+    checked = evenload("check", "my-wafer.toml")
+    assert (checked.status, checked.out, checked.err) == (0, "1 file(s) fine\n", "")
+    data = tomllib.loads((tmp_path / "my-wafer.toml").read_text(encoding="utf-8"))
+    assert data["evidence"] == data["source"] == "invented"
+    assert "nvented" in (tmp_path / "my-wafer.csv").read_text(encoding="utf-8").splitlines()[0]
+    (tmp_path / "my-wafer.toml").unlink()
+    again = evenload("new", "curves", "my-wafer.toml")
+    assert (again.status, again.err) == (2, "evenload: my-wafer.csv exists; nothing was written\n")
+
+
+def test_a_description_of_a_raw_file_names_every_key_there_is(tmp_path: Path, evenload: Run):
+    """Keys that the template does not use stand in comments that become keys when the sign is taken off."""
+    evenload("new", "curves", "my-wafer.toml")
+    text = (tmp_path / "my-wafer.toml").read_text(encoding="utf-8")
+    commented = [line.removeprefix("# ") for line in text.splitlines() if line.startswith("# ")]
+    keys = {line.partition(" = ")[0] for line in text.splitlines() if " = " in line and not line.startswith("#")}
+    for line in commented:
+        with contextlib.suppress(tomllib.TOMLDecodeError):
+            keys |= set(tomllib.loads(line))
+    models = (CurvesFile, ColumnTable, RepeatTable, GivenTable)
+    known = {info.alias or key for item in models for key, info in item.model_fields.items()}
+    tables = {"fixed", "repeat", "given", "column", "extract"}
+    assert known - keys - tables == set()
+    assert all(name in text for name in MEANINGS)
+    assert max(len(line) for line in text.splitlines()) <= 120
+
+
 # -- refusals --------------------------------------------------------------------------------------------------
 
 
@@ -102,9 +135,10 @@ def test_a_new_study_runs(tmp_path: Path, evenload: Run):
     [
         (
             ["technolgy", "a.toml"],
-            "there is no template 'technolgy'; known are study, technology, circuit; did you mean 'technology'?",
+            "there is no template 'technolgy'; known are study, technology, circuit, curves; "
+            "did you mean 'technology'?",
         ),
-        (["zzz", "a.toml"], "there is no template 'zzz'; known are study, technology, circuit"),
+        (["zzz", "a.toml"], "there is no template 'zzz'; known are study, technology, circuit, curves"),
         (["study", "a.tml"], "a.tml: the name of a new file ends in .toml"),
         (["study", "a"], "a: the name of a new file ends in .toml"),
         (["study", ".toml"], ".toml: the name of a new file ends in .toml"),
@@ -134,7 +168,7 @@ def test_what_cannot_be_written(arguments: list[str], message: str, tmp_path: Pa
     assert list(tmp_path.iterdir()) == []
 
 
-@pytest.mark.parametrize("kind", ["study", "technology", "circuit"])
+@pytest.mark.parametrize("kind", ["study", "technology", "circuit", "curves"])
 def test_nothing_is_overwritten(kind: str, tmp_path: Path, evenload: Run):
     (tmp_path / "a.toml").write_text("mine")
     (tmp_path / "dangling.toml").symlink_to("nowhere")

@@ -55,6 +55,8 @@ def schema_of(path: Path, data: Table) -> str:
         return "study.json"
     if path.name == "sources.toml" or path.parent.name == "tables":
         return "sources.json" if path.name == "sources.toml" else "table.json"
+    if data.get("kind") == "curves":
+        return "curves.json"
     if "net" in data:
         return "circuit.json"
     return "wires.json" if data.get("kind") == "wires" else f"technology-{data['model']}.json"
@@ -309,3 +311,41 @@ def test_wrong_sources_and_table_descriptions_are_refused_by_the_schema(name: st
     assert complaints(schema, data) == []
     change(data)
     assert complaints(schema, data) != []
+
+
+RAW_WRONG: dict[str, Callable[[Table], None]] = {
+    "unknown key": _set("delimeter", to=";"),
+    "unknown delimiter": _set("delimiter", to=":"),
+    "negative rows": _set("skip_rows", to=-1),
+    "one turn": _set("turns", to=["forward"]),
+    "unknown axis": _set("along", to="gate"),
+    "no columns": _set("column", to=[]),
+    "column without place": _drop("column", 0, "header"),
+    "column zero": _set("column", 0, "number", to=0),
+    "unknown meaning": _set("column", 0, "meaning", to="gate_voltage"),
+    "a quantity as label": _set("column", 2, "meaning", to="width"),
+    "a label with a unit": _set("column", 2, "unit", to="V"),
+    "words of numbers": _set("column", 0, "allowed", to=["0", "1"]),
+    "floor of an axis": _set("column", 0, "floor", to={"value": 1.0, "unit": "mV"}),
+    "floor without unit": _drop("column", 1, "floor", "unit"),
+    "two signs of a voltage": _set("column", 0, "sign", to="both"),
+    "voltage per width": _set("column", 0, "per_width", to=True),
+    "unknown fixed value": _set("fixed", "gate", to={"value": 1.0, "unit": "V"}),
+    "unknown quantity": _set("extract", 0, "quantity", to="slope"),
+    "unknown evidence": _set("evidence", to="rumour"),
+}
+
+
+@pytest.mark.parametrize("name", RAW_WRONG)
+def test_wrong_descriptions_of_raw_files_are_refused_by_the_schema_and_by_the_program(name: str, tmp_path: Path):
+    from tests.studies import toml
+
+    path = tmp_path / "raw.toml"
+    new_command("curves", path, "")
+    data = read(path)
+    for wrong in (False, True):
+        if wrong:
+            RAW_WRONG[name](data)
+        path.write_text(toml(data), encoding="utf-8")
+        assert bool(complaints("curves.json", data)) == wrong
+        assert bool(check_paths([path]).problems) == wrong
