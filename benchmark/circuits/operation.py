@@ -106,7 +106,7 @@ def estimate(
     guard_delay: Value = 1.0,
     guard_leakage: Value = 1.0,
     internal_nodes: bool = True,
-    short_circuit: bool = True,
+    short_circuit: bool | SwitchPair = True,
 ) -> OperationMetrics:
     """Return what one operation of the circuit costs when it is made of this pair of switches.
 
@@ -122,7 +122,9 @@ def estimate(
     guard_delay, guard_leakage [1]
         Multipliers of every delay part and of every leakage part.
     short_circuit
-        False leaves the short-circuit energy out, as the hand equations do.
+        False leaves the short-circuit energy out, as the hand equations do. A pair that broadcasts against ``pair``
+        (the same switches at one of its temperatures) gives the currents behind it: who wants the energy at one
+        temperature need not integrate them at all.
     """
     sized = Sized(pair, size, size_as, sizing, internal_nodes)
     stage_rule = rule_by_name(rule) if isinstance(rule, str) else rule
@@ -131,14 +133,15 @@ def estimate(
     cells = _total(net.count for net in circuit.nets)
     area = _total(net.count * net.copies * sized.area(net.driver) for net in circuit.nets)
     pitch = np.asarray(np.sqrt(area / cells))
+    crossing = (pair if short_circuit else None) if isinstance(short_circuit, bool) else short_circuit
     settings = StageSettings(
         sized=sized,
         wires=wires,
         layers=circuit.layers,
         rule=stage_rule,
         gate_pitch=pitch,
-        short_circuit=short_circuit_currents(pair) if short_circuit else None,
-        motion=motion_charges(pair) if short_circuit else {},
+        short_circuit=None if crossing is None else short_circuit_currents(crossing),
+        motion={} if crossing is None else motion_charges(crossing),
     )
     stages = tuple(stage(net, settings) for net in circuit.nets)
 

@@ -34,8 +34,11 @@ BIN = 0.005
 FINE_BINS = 8000
 #: width of a bin of ln(energy) and ln(time) on a curve, and bins on each side
 CURVE_BIN, CURVE_BINS = 0.02, 400
-#: supplies of the grid, of each zoom, and relative step of the search in a draw
-SUPPLIES, ZOOM, STEP = 17, 9, 1.0e-3
+#: blocks whose draws make the bands of the curves: 16 384 draws place a tenth to a share of 0.003, and every point of
+#: every curve is a good part of the work
+CURVE_BLOCKS = 16
+#: supplies of the grid and relative step of the search in a draw
+SUPPLIES, STEP = 17, 1.0e-3
 
 
 @dataclass(frozen=True)
@@ -57,7 +60,7 @@ class BlockSum:
     ``histogram``: draws by ln(advantage), bins of width ``BIN`` around 0. ``moments``: key -> sums of ln(advantage)
     times the basis functions of the key, over draws with an advantage. ``unbounded``: draws in which the candidate
     costs nothing. ``curves``: side -> counts of ln(value / value of the best estimate), (energy or time, supply, bin of
-    width ``CURVE_BIN``), of the draws in which the point can be evaluated.
+    width ``CURVE_BIN``), of the draws in which the point can be evaluated; from the first ``CURVE_BLOCKS`` blocks.
     """
 
     draws: int
@@ -93,15 +96,20 @@ class BlockSum:
             self.histogram + other.histogram,
             self.strongest + other.strongest,
             {key: self.moments[key] + other.moments[key] for key in self.moments},
-            {side: self.curves[side] + other.curves[side] for side in self.curves},
+            _joined(self.curves, other.curves),
             min(self.smallest, other.smallest),
             max(self.largest, other.largest),
         )
 
 
+def _joined(one: Mapping[str, Counts], other: Mapping[str, Counts]) -> Mapping[str, Counts]:
+    """Add up counts; a block that counted nothing adds nothing."""
+    return {side: counts + other[side] for side, counts in one.items()} if one and other else one or other
+
+
 def resolution(study: Study) -> Study:
     """Return the study with the resolution of the search in a draw: the metric is found to about 1e-3."""
-    return dataclasses.replace(study, supply_points=SUPPLIES, zoom_points=ZOOM, refine_relative=STEP)
+    return dataclasses.replace(study, supply_points=SUPPLIES, refine_relative=STEP)
 
 
 def _batch(task: DrawTask, block: int) -> tuple[Batch, dict[str, Array]]:
@@ -127,7 +135,8 @@ def sum_block(task: DrawTask, block: int) -> BlockSum:
     comparison, outcome, points = drawn(task, block)
     advantage = permitted_advantage(comparison, outcome)[1:]
     shapes = {key: value.spread.shape for key, value in values_by_key(task.study, task.pair).items() if value.spread}
-    rivals = outcome.strongest[1:] >= 0
+    # without a candidate nobody looks for its strongest contender
+    rivals = (outcome.strongest[1:] >= 0) | ~outcome.candidate.found[1:]
     missing = np.isnan(advantage)
     # a candidate that costs nothing reaches every advantage, which has no logarithm
     defined = np.isfinite(advantage) & (advantage > 0.0)
@@ -147,6 +156,7 @@ def sum_block(task: DrawTask, block: int) -> BlockSum:
         curves={
             side: _curve(comparison, run, task.frozen[comparison.key(run)])
             for side, run in {"candidate": comparison.candidate, **comparison.contenders}.items()
+            if block < CURVE_BLOCKS
         },
         smallest=float(advantage[defined].min()) if defined.any() else np.inf,
         largest=float(advantage[defined].max()) if defined.any() else -np.inf,

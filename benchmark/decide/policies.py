@@ -22,7 +22,17 @@ from numpy.typing import NDArray
 
 from benchmark.decide.requirements import FunctionalFloor, functional_condition, hard_conditions
 from benchmark.evaluate.points import Points, design_points
-from benchmark.evaluate.search import All, Condition, Objective, Optimum, SideRun, hold_to, minimise, on_grid
+from benchmark.evaluate.search import (
+    All,
+    Condition,
+    Objective,
+    Optimum,
+    SideRun,
+    hold_to,
+    least,
+    minimise,
+    same_silicon,
+)
 from benchmark.evaluate.side import SideProblem
 from benchmark.sets.study import Choice
 
@@ -87,9 +97,10 @@ class Within(Condition):
         """Return limit over value."""
         return np.asarray(run.problem.batch.own(self.limit) / getattr(points, self.attribute))
 
-    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+    def judge(self, run: SideRun, points: Points, among: Mask) -> tuple[Mask, Array]:
         """Compare the numbers themselves, without the rounding of a quotient; an unknown limit admits nothing."""
-        return np.asarray(getattr(points, self.attribute) <= run.problem.batch.own(self.limit))
+        inside = getattr(points, self.attribute) <= run.problem.batch.own(self.limit)
+        return np.asarray(inside), self.margin(run, points, among)
 
 
 class Nowhere(Condition):
@@ -171,12 +182,14 @@ def optimum(
     return minimise(run, objective, cheap, costly, frozen)
 
 
-def roughly(name: str, run: SideRun, inputs: PolicyInputs, choice: Choice) -> Optimum:
-    """Return the best supply of the grid alone, without the functional floor; prescribed supplies are exact."""
-    objective, cheap, _ = _parts(name, run, inputs)
-    if name in PRESCRIBED:
-        return _fixed(run, prescribed(name, run, inputs, choice), cheap, None)
-    return on_grid(run, choice, objective, cheap)
+def roughly(name: str, run: SideRun, inputs: PolicyInputs, choice: Choice) -> Array:
+    """Return the least of what the policy makes small over a few supplies, (row,), whatever conditions say.
+
+    Infinite where no point has a value.
+    """
+    objective, _, _ = _parts(name, run, inputs)
+    found = [least(run, other, objective) for other in same_silicon(run, choice)]
+    return np.broadcast_to(np.min(found, axis=0), (run.problem.batch.rows,))
 
 
 def hold_to_floor(name: str, run: SideRun, inputs: PolicyInputs, frozen: Choice, without: Optimum) -> Optimum:

@@ -129,6 +129,10 @@ def design_points(
     """
     shift = problem.device_shift(threshold_shift, back_bias)
     pair = problem.switches(supply, shift, depth=problem.circuit_depth)
+    short_circuit: bool | SwitchPair = problem.study.short_circuit == "estimated"
+    if short_circuit and len(problem.study.temperatures) > 1:
+        # energy is wanted at the highest temperature only
+        short_circuit = problem.switches(supply, shift, problem.study.temperatures[-1:], depth=1)
     metrics = estimate(
         problem.circuit_at(supply, size, shift),
         pair,
@@ -138,7 +142,7 @@ def design_points(
         size_as=problem.size_as,
         guard_delay=problem.study.guard_band_delay,
         guard_leakage=problem.study.guard_band_leakage,
-        short_circuit=problem.study.short_circuit == "estimated",
+        short_circuit=short_circuit,
     )
     return _reduce(problem, np.atleast_2d(supply), Choice(size, threshold_shift, copies, back_bias), pair, metrics)
 

@@ -21,6 +21,7 @@ from numpy.typing import NDArray
 
 from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.side import SideProblem, build_side
+from benchmark.evaluate.zoom import Near, Seen
 from benchmark.sets.study import Choice, NodePair
 
 __all__ = [
@@ -31,9 +32,11 @@ __all__ = [
     "Optimum",
     "SideRun",
     "hold_to",
+    "least",
     "minimise",
-    "on_grid",
+    "nowhere",
     "put_rows",
+    "same_silicon",
     "supply_grid",
     "take_columns",
     "take_rows",
@@ -47,6 +50,12 @@ Objective = Callable[[SideProblem, Points], Array]
 ASKED_TOGETHER = 16
 #: relative distance at which an optimum counts as lying on a limit of the search
 ON_BOUND = 1.0e-9
+#: of so many supplies of the grid one is looked at for a first idea
+SPARSE = 4
+#: the rows that are not done go on alone once they are fewer than one in so many
+ALONE = 2
+#: points of each round that looks for a window of permitted supplies
+WINDOW_POINTS = 9
 
 
 @dataclass(frozen=True)
@@ -71,9 +80,14 @@ class Condition(abc.ABC):
         ``among``: points that need an answer; it may say anything about the others.
         """
 
+    def judge(self, run: SideRun, points: Points, among: Mask) -> tuple[Mask, Array]:
+        """Return where the condition is not missed (an unknown is no failure), and the margin."""
+        margin = np.broadcast_to(self.margin(run, points, among), points.energy.shape)
+        return ~(margin < 1.0), margin
+
     def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
-        """Return where the condition is not missed; an unknown is no failure."""
-        return np.broadcast_to(~(self.margin(run, points, among) < 1.0), points.energy.shape)
+        """Return where the condition is not missed."""
+        return self.judge(run, points, among)[0]
 
 
 @dataclass(frozen=True)
@@ -89,12 +103,14 @@ class All(Condition):
             worst = np.fmin(worst, part.margin(run, points, among))
         return worst
 
-    def __call__(self, run: SideRun, points: Points, among: Mask) -> Mask:
+    def judge(self, run: SideRun, points: Points, among: Mask) -> tuple[Mask, Array]:
         """Return where all hold, among the points asked about; each is asked only where those before it hold."""
-        mask = among
+        mask, worst = among, np.full(points.energy.shape, np.inf)
         for part in self.parts:
-            mask = mask & part(run, points, mask)
-        return mask
+            holds, margin = part.judge(run, points, mask)
+            worst = np.where(mask, np.fmin(worst, margin), worst)
+            mask = mask & holds
+        return mask, worst
 
     @classmethod
     def of(cls, *conditions: Condition) -> All:
@@ -198,12 +214,25 @@ def _points_of(points: Points, rows: NDArray[np.intp]) -> Points:
     return dataclasses.replace(points, **{item.name: pick(getattr(points, item.name)) for item in fields(points)})
 
 
-def on_grid(run: SideRun, choice: Choice, objective: Objective, cheap: Condition) -> Optimum:
-    """Return the best supply of the grid, not refined; rows without a permitted one have ``found`` False."""
-    grid = run.grid(choice)
-    column, value = _best(objective(run.problem, grid), grid.able & cheap(run, grid, grid.able))
-    nowhere = np.zeros(value.shape, dtype=bool)
-    return Optimum(_take(grid, column), value, np.isfinite(value), nowhere, nowhere, nowhere)
+def least(run: SideRun, choice: Choice, objective: Objective) -> Array:
+    """Return the least value over a few supplies of the grid, (row,), whatever conditions say; infinite where none."""
+    supply = supply_grid(run.problem)
+    some = np.unique(np.append(np.arange(0, supply.shape[1], SPARSE), supply.shape[1] - 1))
+    points = design_points(run.problem, supply[:, some], *choice)
+    return np.asarray(np.where(points.able, objective(run.problem, points), np.inf).min(axis=1))
+
+
+def nowhere(run: SideRun, choice: Choice) -> Optimum:
+    """Return an optimum without a permitted point in any row; its points only fill the place."""
+    low = np.array([[run.problem.side.supply[0]]])
+    points = design_points(run.problem, low, *choice)
+    no = np.zeros(points.energy.shape[0], dtype=bool)
+    return Optimum(points, np.full(no.shape, np.inf), no, no, no, no)
+
+
+def same_silicon(run: SideRun, frozen: Choice | None) -> list[Choice]:
+    """Return the choices that keep the frozen parts of one; all when none is given."""
+    return [choice for choice in run.combinations if frozen is None or choice.frozen == frozen.frozen]
 
 
 def take_columns(points: Points, columns: NDArray[np.intp]) -> Points:
@@ -290,55 +319,91 @@ def _search(
     column, value = _best_on_grid(run, grid, objective, cheap, costly)
     best = _take(grid, column)
     step = (ends[1] - ends[0]) / max(problem.study.supply_points - 1, 1)
-    # the step of the grid, not its neighbours: a declared supply may lie beside a point of the grid, or on it
-    low, high = _bracket(best.supply[:, 0], step, ends)
     missing = ~np.isfinite(value)
     if missing.any() and step > 0.0:
         first = _feasible(run, combination, condition, missing)
         best = _merge(best, first.points, first.found)
         value = np.where(first.found, objective(problem, first.points)[:, 0], value)
-        near = _bracket(best.supply[:, 0], step, ends)
-        low, high = np.where(first.found, near[0], low), np.where(first.found, near[1], high)
-    at_limit = np.zeros(value.shape, dtype=bool)
-    active = np.isfinite(value) & (high - low > problem.study.refine_relative * high)
-    while active.any():
-        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, problem.study.zoom_points)
-        points = design_points(problem, fine, *combination)
-        score = objective(problem, points)
+    margin = cheap.judge(run, best, best.able)[1][:, 0]
+    # the step of the grid, not its neighbours: a declared supply may lie beside a point of the grid, or on it
+    near = Near.around(best.supply[:, 0], value, margin, step, ends)
+    nowhere = np.zeros(value.shape, dtype=bool)
+    return _zoom(
+        run,
+        combination,
+        objective,
+        condition,
+        Optimum(best, value, nowhere, nowhere, nowhere, nowhere),
+        near,
+        near.first(),
+    )
+
+
+def _zoom(
+    run: SideRun,
+    combination: Choice,
+    objective: Objective,
+    condition: Condition,
+    best: Optimum,
+    near: Near,
+    fine: Array,
+) -> Optimum:
+    """Refine the best points of a grid, round by round; the rows that take longer go on alone."""
+    problem, points, value = run.problem, best.points, best.value
+    ends = problem.side.supply
+
+    def open_rows() -> Mask:
+        return np.isfinite(value) & (near.width > problem.study.refine_relative * near.top)
+
+    active = open_rows()
+    rows = np.zeros(0, dtype=np.intp)
+    while active.any() and not rows.size:
+        found = design_points(problem, fine, *combination)
+        score = objective(problem, found)
         # only points that would improve on the best so far need to be judged
-        candidates = points.able & (score < value[:, None])
-        permitted = candidates & condition(run, points, candidates)
-        column, fine_value = _best(score, permitted)
-        better = active & (fine_value < value)
+        candidates = found.able & (score < value[:, None])
+        permitted, margins = condition.judge(run, found, candidates)
+        seen = Seen(fine, np.where(found.able, score, np.inf), candidates & permitted, margins)
+        narrower, place = near.narrowed(seen)
+        better = active & (place >= 0)
         if better.any():
-            best = _merge(best, _take(points, column), better)
-            value = np.where(better, fine_value, value)
-        # a better supply next to the best permitted one is not permitted
-        refused = ((score < value[:, None]) | ~points.able) & ~permitted
-        at_limit = np.where(active, refused.any(axis=1), at_limit)
-        # where nothing in the interval was better, zoom around the best point so far
-        near = _bracket(best.supply[:, 0], (high - low) / (problem.study.zoom_points - 1), ends)
-        low, high = np.where(active, near[0], low), np.where(active, near[1], high)
-        active &= high - low > problem.study.refine_relative * high
-    found = np.isfinite(value)
-    supply = best.supply[:, 0]
-    at_lower = found & (supply <= ends[0] * (1.0 + ON_BOUND)) & (step > 0.0)
-    at_upper = found & (supply >= ends[1] * (1.0 - ON_BOUND)) & (step > 0.0)
-    return Optimum(best, value, found, at_lower, at_upper, found & at_limit & ~at_lower & ~at_upper)
+            points = _merge(points, _take(found, np.maximum(place, 0)), better)
+            value = np.where(better, narrower.seen.score[:, 1], value)
+        near = near.where(active, narrower)
+        active, fine = open_rows(), near.following(ends)
+        rows = np.flatnonzero(active) if ALONE * np.count_nonzero(active) < active.size else rows
+    known = np.isfinite(value)
+    supply = points.supply[:, 0]
+    at_lower = known & (supply <= ends[0] * (1.0 + ON_BOUND)) & (ends[1] > ends[0])
+    at_upper = known & (supply >= ends[1] * (1.0 - ON_BOUND)) & (ends[1] > ends[0])
+    whole = Optimum(points, value, known, at_lower, at_upper, known & near.at_limit & ~at_lower & ~at_upper)
+    if not rows.size:
+        return whole
+    rest = _zoom(
+        run.subset(rows), combination, objective, condition, take_rows(whole, rows), near.rows(rows), fine[rows]
+    )
+    return put_rows(whole, rest, rows)
 
 
 def _feasible(run: SideRun, combination: Choice, condition: Condition, wanted: Mask) -> Optimum:
     """Look between the points of the grid for a permitted supply, where the grid has none.
 
-    The smallest margin of all conditions is made as large as it goes, by the same zooming: a window of permitted
-    supplies, however narrow, holds the supply at which it is largest, if the margins have one peak there.
+    The smallest margin of all conditions is made as large as it goes, by zooming: a window of permitted supplies,
+    however narrow, holds the supply at which it is largest, if the margins have one peak there.
     """
+    rows = np.flatnonzero(wanted)
+    if rows.size < wanted.size:
+        # the grid stands for the rows that need nothing
+        nothing = np.zeros(wanted.shape, dtype=bool)
+        grid = _take(run.grid(combination), np.zeros(wanted.shape, dtype=np.intp))
+        whole = Optimum(grid, np.full(wanted.shape, np.inf), nothing, nothing, nothing, nothing)
+        part = _feasible(run.subset(rows), combination, condition, np.ones(rows.shape, dtype=bool))
+        return put_rows(whole, part, rows)
     problem = run.problem
     ends = problem.side.supply
 
     def shortest(points: Points) -> Array:
-        able = points.able & wanted[:, None]
-        return np.where(able, -np.fmin(condition.margin(run, points, able), np.finfo(float).max), np.inf)
+        return np.where(points.able, -np.fmin(condition.margin(run, points, points.able), np.finfo(float).max), np.inf)
 
     grid = run.grid(combination)
     everywhere = np.ones(grid.energy.shape, dtype=bool)
@@ -349,7 +414,7 @@ def _feasible(run: SideRun, combination: Choice, condition: Condition, wanted: M
     found = np.zeros(wanted.shape, dtype=bool)
     active = wanted & np.isfinite(value)
     while active.any():
-        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, problem.study.zoom_points)
+        fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, WINDOW_POINTS)
         points = design_points(problem, fine, *combination)
         column, fine_value = _best(shortest(points), np.ones(fine.shape, dtype=bool))
         better = active & (fine_value < value)
@@ -358,7 +423,7 @@ def _feasible(run: SideRun, combination: Choice, condition: Condition, wanted: M
             value = np.where(better, fine_value, value)
         asked = (active & (value <= -1.0))[:, None]
         found |= (asked & best.able & condition(run, best, asked))[:, 0]
-        near = _bracket(best.supply[:, 0], (high - low) / (problem.study.zoom_points - 1), ends)
+        near = _bracket(best.supply[:, 0], (high - low) / (WINDOW_POINTS - 1), ends)
         low, high = np.where(active, near[0], low), np.where(active, near[1], high)
         active &= ~found & (high - low > problem.study.refine_relative * high)
     nowhere = np.zeros(wanted.shape, dtype=bool)
@@ -385,7 +450,7 @@ def minimise(
         Choice whose frozen parts are kept; by default those that are best for row 0. What may be chosen at run time is
         chosen row by row.
     """
-    combinations = [choice for choice in run.combinations if frozen is None or choice.frozen == frozen.frozen]
+    combinations = same_silicon(run, frozen)
     candidates: dict[tuple[float, ...], Optimum] = {}
     for combination in combinations:
         found = _with_costly(run, combination, objective, cheap, costly)

@@ -16,6 +16,8 @@ from numpy.typing import NDArray
 
 __all__ = [
     "Balance",
+    "Law",
+    "Number",
     "series_balance",
     "subthreshold_current",
     "two_stack_reduction",

@@ -23,7 +23,8 @@ The last line holds I on both sides: it is solved by Newton steps inside a brack
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, fields, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -50,6 +51,10 @@ Number = float | Array
 STEPS = 40
 #: a step this small (relative) leaves an error of its square: below 1e-15
 SMALL_STEP = 1.0e-8
+#: elements below which picking some costs more than it saves
+FEW = 512
+#: elements solved at once, so that their arrays stay in the cache
+PIECE = 8192
 
 
 @dataclass(frozen=True)
@@ -244,21 +249,60 @@ def _solve(t: Transistor, gate: Array, drain: Array, body: Number) -> Array:
         return inner.current
     with np.errstate(divide="ignore", invalid="ignore", over="ignore"):
         high = np.where(drain > 0.0, np.where(r_t > 0.0, drain / r_t, inner.current), 0.0)
-    low = current = np.zeros_like(high)
     unknown = np.isnan(inner.current)
-    done = ~(high > 0.0) | unknown
-    for _ in range(STEPS):
+    nothing = np.zeros_like(high)
+    current = _newton(t, (gate, drain, body), inner, _Bracket(nothing, nothing, high, ~(high > 0.0) | unknown), STEPS)
+    return np.where(unknown, np.nan, current)
+
+
+@dataclass(frozen=True)
+class _Bracket:
+    """Where the current is looked for: the last guess, between two bounds; ``done`` marks what is found."""
+
+    current: Array
+    low: Array
+    high: Array
+    done: NDArray[np.bool_]
+
+
+def _newton(
+    t: Transistor, voltages: tuple[Array, Array, Number], inner: _Inner, bracket: _Bracket, steps: int
+) -> Array:
+    """Newton steps from a bracket and the model evaluated at its guess; most need two, so the others go on alone."""
+    current, low, high, done = bracket.current, bracket.low, bracket.high, bracket.done
+    for step in range(steps):
         excess = inner.current - current
         low, high = np.where(excess > 0.0, current, low), np.where(excess < 0.0, current, high)
         newton = current + excess / (1.0 + _fall(t, inner))
         following = np.where((newton >= low) & (newton <= high), newton, 0.5 * (low + high))
         following = np.where(done, current, following)
-        done |= np.abs(following - current) <= np.where(following == newton, SMALL_STEP, 1.0e-15) * following
+        done = done | (np.abs(following - current) <= np.where(following == newton, SMALL_STEP, 1.0e-15) * following)
         current = following
         if done.all():
             break
-        _, inner = _inside(t, gate, drain, body, current)
-    return np.where(unknown, np.nan, current)
+        if step and done.size > FEW and 2 * np.count_nonzero(done) > done.size:
+            rest = ~done
+            alone, (gate, drain, body) = _of(t, voltages, rest)
+            left = _Bracket(current[rest], low[rest], high[rest], done[rest])
+            current = current.copy()
+            inner = _inside(alone, gate, drain, body, left.current)[1]
+            current[rest] = _newton(alone, (gate, drain, body), inner, left, steps - step - 1)
+            break
+        _, inner = _inside(t, *voltages, current)
+    return current
+
+
+def _of(
+    t: Transistor, voltages: tuple[Array, Array, Number], elements: NDArray[np.bool_]
+) -> tuple[Transistor, tuple[Array, Array, Number]]:
+    """Return transistors and voltages of some elements, one after the other."""
+
+    def picked(value: Any) -> Any:
+        return value if np.ndim(value) == 0 else np.broadcast_to(value, elements.shape)[elements]
+
+    named = {item.name: picked(getattr(t, item.name)) for item in fields(t)}
+    gate, drain, body = (picked(value) for value in voltages)
+    return Transistor(**named), (gate, drain, body)
 
 
 def drain_current(t: Transistor, control: Array, path: Array, body: Number = 0.0) -> Array:
@@ -277,7 +321,21 @@ def drain_current(t: Transistor, control: Array, path: Array, body: Number = 0.0
     (no barrier lowering together with v L / mu below about 0.05 V).
     """
     gate, drain = np.asarray(control, dtype=np.float64), np.asarray(path, dtype=np.float64)
-    return _solve(t, gate, drain, body)
+    named = {item.name: getattr(t, item.name) for item in fields(t)}
+    shape = np.broadcast_shapes(gate.shape, drain.shape, *(np.shape(value) for value in (body, *named.values())))
+    if (size := int(np.prod(shape))) <= PIECE or shape[0] == 1:
+        return _solve(t, gate, drain, body)
+    found = np.empty(shape)
+    step = max(1, PIECE * shape[0] // size)
+    for rows in (slice(start, start + step) for start in range(0, shape[0], step)):
+        part = Transistor(**{name: _cut(value, rows, shape) for name, value in named.items()})
+        found[rows] = _solve(part, *(_cut(voltage, rows, shape) for voltage in (gate, drain, body)))
+    return found
+
+
+def _cut(value: Any, rows: slice, shape: tuple[int, ...]) -> Any:
+    """Return the rows (first axis of ``shape``) of something that broadcasts to it."""
+    return value[rows] if np.ndim(value) == len(shape) and np.shape(value)[0] == shape[0] else value
 
 
 def intrinsic_slopes(t: Transistor, control: Array, path: Array) -> Slopes:

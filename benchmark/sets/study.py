@@ -208,8 +208,6 @@ class Study:
     draws: DrawSettings = field(default_factory=DrawSettings)
     joints: tuple[Joint, ...] = ()
     measurements: tuple[PossibleMeasurement, ...] = ()
-    #: supplies per zoom of the search
-    zoom_points: int = 33
 
     @property
     def wires_sets(self) -> tuple[ParameterSet, ...]:
