@@ -123,6 +123,8 @@ def _refuse(cell: str, line: int, column: Column, reading: Reading) -> None:
 def _check_domain(column: Column, si: Array, rows: Sequence[int], reading: Reading) -> None:
     """Refuse signs that a quantity cannot have; within the floor a reading may have either."""
     quantity, turned = MEANINGS[column.spec.meaning], column.spec.sign == "negative"
+    if not rows:
+        return
     one_sign = column.spec.meaning in ONE_SIGN and column.spec.sign != "both"
     values = si[list(rows)]
     if quantity.domain == "positive" or one_sign:

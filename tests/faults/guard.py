@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import random
+import re
 import resource
 import signal
 import time
@@ -28,6 +29,8 @@ SLOWEST, LARGEST = 4.0, 150.0
 LONGEST = 6000
 #: wall time [s] after which a mutant counts as hung
 HUNG = 30
+#: what ends a line of a raw file; old instruments write carriage returns alone
+_LINE_END = re.compile(rb"\r\n|\r|\n")
 
 
 class Hung(BaseException):
@@ -151,8 +154,9 @@ def _unusable(problem: Problem, root: Path, changed: Mapping[str, bytes]) -> lis
         found.append(f"has a message of {len(text)} characters: {text[:100]!r}")
     name = problem.file.replace(f"{root}/", "")
     for spoiled, raw in changed.items():
-        if (name == spoiled or spoiled.endswith(f"/{name}")) and problem.line > raw.count(b"\n") + 1:
-            found.append(f"names line {problem.line} of {raw.count(chr(10).encode()) + 1}: {text[:200]!r}")
+        lines = len(_LINE_END.findall(raw)) + 1
+        if (name == spoiled or spoiled.endswith(f"/{name}")) and problem.line > lines:
+            found.append(f"names line {problem.line} of {lines}: {text[:200]!r}")
     known = any(name == there or there.endswith(name) or name.endswith(there) for there in _names(root))
     if not known and not problem.what.startswith(("does not exist", "cannot be read", "is a folder", "is not a")):
         found.append(f"names a file that is not there: {text[:200]!r}")

@@ -89,7 +89,8 @@ def _study(inputs: Inputs, share: float, only: str = "") -> Seed:
 def seeds() -> dict[str, Seed]:
     """Every seed by name."""
     found: dict[str, Seed] = {}
-    for kind, share in (("technology", 8), ("stages", 6), ("wires", 6), ("circuit", 8), ("sources", 5), ("table", 8)):
+    shares = {"technology": 8, "stages": 6, "wires": 6, "circuit": 8, "sources": 5, "table": 8, "curves": 6}
+    for kind, share in (shares | {"side-by-side": 6}).items():
         files = refusals.files(kind)
         found[kind] = Seed(files, tuple(files), share)
     found["derived"] = Seed({"switch.toml": derived_set()}, ("switch.toml",), 4)
