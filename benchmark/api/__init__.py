@@ -10,7 +10,7 @@ pandas frames and the complete record, ``what_if`` changes numbers without a new
 set, ``technologies`` lists them, ``check`` judges files. ``need``, ``trade``, ``sheet``, ``joint_sheet``,
 ``opportunity``, ``improve`` and ``flips`` say where the answer would change, ``changes`` what changed between two
 states and why, ``batch`` which studies of a folder moved. ``supersede`` gives a value of a set a new number and keeps
-the old one.
+the old one; ``extract`` reads numbers off measured curves.
 Objects show themselves as tables in a notebook.
 
 Importing this module loads no numeric package; the functions do.
@@ -21,6 +21,7 @@ from __future__ import annotations
 from benchmark.api.batch import Batched, batch
 from benchmark.api.changes import Changes, changes
 from benchmark.api.edit import Edited, supersede
+from benchmark.api.extract import Extraction, extract
 from benchmark.api.need import Needed, flips, improve, joint_sheet, need, opportunity, sheet, trade
 from benchmark.api.result import Result
 from benchmark.api.session import check, load_result, load_set, load_study, run, technologies, what_if, worked_study
@@ -30,6 +31,7 @@ __all__ = [
     "Batched",
     "Changes",
     "Edited",
+    "Extraction",
     "Needed",
     "Result",
     "SetView",
@@ -37,6 +39,7 @@ __all__ = [
     "batch",
     "changes",
     "check",
+    "extract",
     "flips",
     "improve",
     "joint_sheet",

@@ -482,6 +482,70 @@ def supersede(
 
 
 @app.command()
+def extract(
+    description: Annotated[Path, typer.Argument(help="Description of a raw measured file (TOML, kind curves).")],
+    figure: Annotated[
+        Path | None,
+        typer.Option("--figure", help="Also draw points and what was read off them: a file ending in svg, pdf or png."),
+    ] = None,
+    into: Annotated[
+        Path | None, typer.Option("--into", metavar="SET", help="Write the numbers into this set; old ones stay in it.")
+    ] = None,
+    reason: Annotated[str, typer.Option("--reason", help="With --into: why the old numbers are no longer used.")] = "",
+    old_date: Annotated[
+        str, typer.Option("--old-date", help="With --into: day from which the old numbers held, if the set is silent.")
+    ] = "",
+    dry_run: Annotated[bool, typer.Option("--dry-run", help="With --into: print the change, write nothing.")] = False,
+    form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
+    nodes: Nodes = None,
+) -> None:
+    """Read numbers off measured curves: swing, threshold, currents, charge, contacts, pull-in, with uncertainty."""
+    from benchmark.cli.extract import extract_command
+
+    told = {"reason": reason, "old_date": old_date, "dry_run": dry_run}
+    extract_command(description, figure, into, told, nodes=nodes, form=form)
+
+
+sheet_app = typer.Typer(no_args_is_help=True, rich_markup_mode=None)
+app.add_typer(sheet_app, name="sheet", help="Values of a set out to a spreadsheet and in again (CSV).")
+
+
+@sheet_app.command("export")
+def sheet_export(
+    set_file: Annotated[Path, typer.Argument(metavar="SET", help="Set file: technology or wires (TOML).")],
+    sheet: Annotated[Path, typer.Argument(metavar="SHEET", help="File to write (ends in .csv).")],
+    nodes: Nodes = None,
+) -> None:
+    """Write the values of a set as a table for a spreadsheet: one row per value and node."""
+    from benchmark.cli.edit import export_command
+
+    export_command(set_file, sheet, nodes or [])
+
+
+@sheet_app.command("import")
+def sheet_import(
+    sheet: Annotated[Path, typer.Argument(metavar="SHEET", help="File that the spreadsheet saved as CSV UTF-8.")],
+    set_file: Annotated[Path, typer.Argument(metavar="SET", help="Set file the sheet was exported from.")],
+    reason: Annotated[str, typer.Option("--reason", help="Why the old numbers are no longer used.")] = "",
+    date: Annotated[str, typer.Option("--date", help="Day from which the new numbers hold (2026-01-31).")] = "",
+    old_date: Annotated[
+        str, typer.Option("--old-date", help="Day from which the old numbers held, where the file does not say.")
+    ] = "",
+    decimal: Annotated[
+        str, typer.Option("--decimal", help="Decimal sign: point or comma; default: as untouched numbers show.")
+    ] = "",
+    dry_run: Annotated[bool, typer.Option("--dry-run", help="Check and print the change, write nothing.")] = False,
+    form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
+    nodes: Nodes = None,
+) -> None:
+    """Take the changes of a sheet into its set: comments stay, old numbers are kept, CHANGES.md says what changed."""
+    from benchmark.cli.edit import import_command
+
+    told = {"reason": reason, "date": date, "old_date": old_date, "decimal": decimal}
+    import_command(sheet, set_file, told, nodes=nodes or [], form=form, dry_run=dry_run)
+
+
+@app.command()
 def batch(
     folder: Annotated[Path, typer.Argument(help="Folder with study files, at any depth.")],
     since: Annotated[

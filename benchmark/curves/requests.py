@@ -194,7 +194,7 @@ def _convert(
     reading = _percent(table, dotted, file, collector)
     unit = kind.unit_for(of[0], along, units)
     if table.name is not None:
-        _check_name(table.name, unit, dotted, file, collector)
+        unit = _unit_of_name(table.name, unit, dotted, file, collector)
     if table.points is not None and table.points < kind.least_points:
         collector.add(
             file.problem(f"{dotted}.points", "is too small", str(table.points), f"{kind.least_points} or more")
@@ -223,13 +223,13 @@ def _convert(
     )
 
 
-def _check_name(name: str, unit: str, dotted: str, file: TomlFile, collector: Collector) -> None:
-    """Refuse a value name that is none, or whose dimension is not that of the reading."""
+def _unit_of_name(name: str, unit: str, dotted: str, file: TomlFile, collector: Collector) -> str:
+    """Return the unit of a value name; refuse a name that is none, or of another dimension than the reading."""
     quantity = QUANTITIES.get(name)
     if quantity is None:
         hint = nearest(name, QUANTITIES)
         collector.add(file.problem(f"{dotted}.name", "is not a value name", repr(name), "", hint))
-        return
+        return unit
     wanted, found = parse_unit(quantity.unit), parse_unit(unit)
     if found.dimension != wanted.dimension:
         collector.add(
@@ -240,6 +240,7 @@ def _check_name(name: str, unit: str, dotted: str, file: TomlFile, collector: Co
                 f"a reading such as {quantity.unit} ({wanted.dimension_text})",
             )
         )
+    return quantity.unit
 
 
 def _place(file: TomlFile, dotted: str) -> Place:

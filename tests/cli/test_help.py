@@ -17,7 +17,7 @@ from tests.cli.conftest import Run
 
 #: pydantic is not listed: the command-line library itself imports it (about 50 ms)
 HEAVY = ("numpy", "scipy", "pandas", "pint", "altair", "vl_convert", "jinja2", "rich", "tomllib")
-COMMANDS = ("run", "demo", "check", "show", "new", "trace", "export", "need", "changes", "batch", "supersede")
+COMMANDS = ("run", "demo", "check", "show", "new", "trace", "export", "need", "changes", "batch", "supersede", "extract")
 PROBE = """
 import json, sys
 sys.argv = ["evenload", *json.loads(sys.argv[1])]

@@ -151,7 +151,7 @@ def combined(parts: Iterable[Part], name: str = "") -> Part:
     Part
         ``size`` = sqrt(sum u^2); ``freedom`` = u^4 / sum(u_i^4 / nu_i), inf when nothing is estimated.
     """
-    sizes = [(part.size, part.freedom) for part in parts]
+    sizes = [(float(part.size), float(part.freedom)) for part in parts]
     total = math.hypot(*(size for size, _ in sizes))
     if total == 0.0:
         return Part(name, 0.0, min((freedom for _, freedom in sizes), default=math.inf))
