@@ -99,6 +99,7 @@ $quantities
 quantity = "average_swing"
 span = { low = 1.0e-11, high = 1.0e-7, unit = "A/um" }
 sweep = "forward"
+over = "median"                    # of the devices, or the word of one
 """
 )
 

@@ -32,7 +32,8 @@ def new_command(kind: str, path: Path, model_name: str) -> None:
     _write(files)
     for place in files:
         typer.echo(f"Written: {place}")
-    typer.echo(f"Next:    evenload check {path}" + (f", evenload run {path}" if kind == "study" else ""))
+    then = {"study": "run", "curves": "extract"}.get(kind)
+    typer.echo(f"Next:    evenload check {path}" + (f", evenload {then} {path}" if then else ""))
 
 
 def _stem(path: Path, kind: str) -> str:

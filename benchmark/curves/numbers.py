@@ -49,7 +49,9 @@ def _number(cell: str, column: Column, decimal: str) -> Fraction | None:
         with localcontext() as context:
             context.prec = _POWER_DIGITS
             number = Decimal(10) ** number
-    exact = Fraction(number) * column.unit.factor + column.unit.offset
+    exact = Fraction(number) * column.unit.factor
+    if column.unit.offset:
+        exact += column.unit.offset
     return -exact if column.spec.sign == "negative" else exact
 
 

@@ -99,12 +99,14 @@ def test_a_new_study_runs(tmp_path: Path, evenload: Run):
 
 def test_a_new_description_of_a_raw_file_passes_the_check_as_written(tmp_path: Path, evenload: Run):
     ran = evenload("new", "curves", "my-wafer.toml")
-    assert ran.out == "Written: my-wafer.toml\nWritten: my-wafer.csv\nNext:    evenload check my-wafer.toml\n"
+    then = "Next:    evenload check my-wafer.toml, evenload extract my-wafer.toml\n"
+    assert ran.out == f"Written: my-wafer.toml\nWritten: my-wafer.csv\n{then}"
     checked = evenload("check", "my-wafer.toml")
     assert (checked.status, checked.out, checked.err) == (0, "1 file(s) fine\n", "")
     data = tomllib.loads((tmp_path / "my-wafer.toml").read_text(encoding="utf-8"))
     assert data["evidence"] == data["source"] == "invented"
     assert "nvented" in (tmp_path / "my-wafer.csv").read_text(encoding="utf-8").splitlines()[0]
+    assert "70.0" in evenload("extract", "my-wafer.toml").out  # the swing of the invented curves
     (tmp_path / "my-wafer.toml").unlink()
     again = evenload("new", "curves", "my-wafer.toml")
     assert (again.status, again.err) == (2, "evenload: my-wafer.csv exists; nothing was written\n")
