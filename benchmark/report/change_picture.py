@@ -243,9 +243,10 @@ def _numbers(row: Row, plane: _Plane) -> str:
 
 
 def _place(row: Row, plane: _Plane) -> str:
-    """Return both coordinates and the supply."""
+    """Return the supply and both coordinates."""
+    words = {"energy_J": "energy", "area_m2": "area", "leakage_power_W": "leakage power"}[plane.vertical]
     upright = amount(row[plane.vertical], _unit(plane.vertical), 3)
-    return f"{amount(row['time_s'], 's', 3)}, {upright}, {volts(row['supply_V'], 3)}"
+    return f"supply {volts(row['supply_V'], 3)}, time {amount(row['time_s'], 's', 3)}, {words} {upright}"
 
 
 def _name(rows: Sequence[Row], plane: _Plane) -> str:

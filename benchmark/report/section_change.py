@@ -54,14 +54,14 @@ def changed(record: Record, picture: Figure | None, parts: Figure | None) -> lis
     blocks += [] if parts is None else [parts]
     blocks += [Paragraph(text) for text in words.unsplit(change, "logarithm")]
     for position, table in enumerate(words.part_tables(change, PAGE, additive=True), start=1):
-        blocks.append(_table(f"change-parts-{position}", table, wide=True))
+        blocks.append(_table(f"change-parts-{position}", table))
     blocks += _probability(change)
     chain = words.chain_table(change, PAGE)
     none = "Between inputs and result of the candidate nothing changed."
-    blocks.append(_table("change-chain", chain, wide=True) if chain.rows else Paragraph(none))
+    blocks.append(_table("change-chain", chain) if chain.rows else Paragraph(none))
     results = words.result_table(change, PAGE)
     if results.rows:
-        blocks.append(_table("change-results", results, wide=True))
+        blocks.append(_table("change-results", results))
     blocks.append(Paragraph(words.identical_words(change)))
     return [Section("change", TITLE, tuple(blocks))]
 

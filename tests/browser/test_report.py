@@ -15,7 +15,7 @@ from playwright.sync_api import Browser, BrowserContext, Page, sync_playwright
 from benchmark.report.charts import charts
 from benchmark.report.folder import fill_folder
 from benchmark.report.one_page import one_page
-from tests.report_records import crossing, hostile, infeasible, mixed
+from tests.report_records import crossing, hostile, infeasible, mixed, remeasured
 
 pytestmark = pytest.mark.browser
 
@@ -29,6 +29,9 @@ RECORDS = {
     "infeasible": infeasible,
     "hostile": lambda: hostile(mixed()),
     "long-words": lambda: hostile(mixed(), LONG),
+    "remeasured": remeasured,
+    "remeasured-hostile": lambda: hostile(remeasured()),
+    "remeasured-long": lambda: hostile(remeasured(), LONG),
 }
 
 
@@ -382,6 +385,60 @@ def test_twice_the_size_has_no_sideways_scroll(visit: Any, name: str):
     assert seen.page.evaluate("document.documentElement.scrollWidth") <= 640
     seen.page.evaluate("document.documentElement.style.fontSize = '200%'")  # larger words in an unchanged window
     assert seen.page.evaluate("document.documentElement.scrollWidth") <= 640
+
+
+_CUT = """() => [...document.querySelectorAll("#change figure svg")].flatMap((svg) => {
+    const whole = svg.getBoundingClientRect();
+    return [...svg.querySelectorAll("text")].filter((item) => {
+        const box = item.getBoundingClientRect();
+        return box.left < whole.left - 0.5 || box.right > whole.right + 0.5
+            || box.top < whole.top - 0.5 || box.bottom > whole.bottom + 0.5;
+    }).map((item) => item.textContent);
+})"""
+
+
+@pytest.mark.parametrize("name", ["remeasured", "remeasured-hostile", "remeasured-long"])
+@pytest.mark.parametrize(("width", "media"), [(1280, "screen"), (360, "screen"), (PRINT_WIDTH, "print")])
+def test_a_change_is_shown_whole_before_and_after(visit: Any, name: str, width: int, media: Any):
+    """No words of the picture or of the waterfall leave their drawing, nothing but tables scrolls sideways."""
+    seen = visit(name, width=width)
+    page = seen.page
+    page.emulate_media(media=media)
+    assert page.locator("#change figure svg").count() == 2
+    assert page.locator("#change figure svg text").count() > 25
+    assert page.evaluate(_CUT) == []
+    assert page.evaluate("document.documentElement.scrollWidth") <= width
+    clipped = page.evaluate(
+        """() => [...document.querySelectorAll("#change th, #change td, #change dd, #change p")].filter((item) =>
+        item.scrollWidth > item.clientWidth + 1 && getComputedStyle(item).display !== "inline").map((item) =>
+        item.textContent.slice(0, 60))"""
+    )
+    assert clipped == []
+    assert seen.complaints == []
+
+
+def test_words_that_leave_a_drawing_are_seen(visit: Any):
+    page = visit("remeasured").page
+    page.evaluate("document.querySelector('#change figure svg text').setAttribute('x', '-400')")
+    assert len(page.evaluate(_CUT)) == 1
+
+
+def test_the_marks_of_a_change_lead_to_their_numbers_and_can_be_read(visit: Any):
+    page = visit("remeasured").page
+    marks = page.locator("#chart-change-picture .chart a")
+    assert marks.count() == 3, "candidate before, candidate after, reference before and after"
+    said = []
+    for position in range(marks.count()):
+        marks.nth(position).focus()
+        said.append(_readout(page))
+    assert all("energy" in words for words in said), said
+    marks.first.click()
+    assert page.evaluate("location.hash").startswith("#data-change-picture-")
+    assert page.locator(page.evaluate("location.hash")).is_visible()
+    bars = page.locator("#chart-change-parts .chart a")
+    assert bars.count() == 3
+    bars.first.focus()
+    assert "film-switch.actuator_coefficient" in _readout(page)
 
 
 def test_no_words_of_the_one_page_figure_leave_the_page(browser: Browser, tmp_path: Path):

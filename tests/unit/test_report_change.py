@@ -112,11 +112,14 @@ def test_every_mark_and_line_is_named_in_words_and_told_apart_without_colour(wid
 def test_the_words_of_the_picture_come_from_the_same_record():
     record = remeasured()
     chart = change_picture(record)
-    for text in ("Invented film-switch before: 996 ps, 180 aJ, 0.3 V, advantage 2.", "Required line after: 240 aJ for"):
+    for text in (
+        "Invented film-switch before: supply 0.3 V, time 996 ps, energy 180 aJ, advantage 2.",
+        "Required line after: 240 aJ for",
+    ):
         assert text in chart.alternative.replace("\u00a0", " ")
     assert "policy declared point" in chart.caption
     record["change"]["points"][0]["energy"] *= 2.0
-    assert "360 aJ, 0.3 V, advantage 2" in change_picture(record).alternative.replace("\u00a0", " ")
+    assert "energy 360 aJ, advantage 2" in change_picture(record).alternative.replace("\u00a0", " ")
 
 
 def test_another_required_advantage_has_a_line_of_its_own():
