@@ -50,6 +50,8 @@ def changed(record: Record, picture: Figure | None, parts: Figure | None) -> lis
     blocks += [] if picture is None else [picture]
     inputs = words.input_table(change, PAGE)
     blocks.append(_inputs(record, inputs) if inputs.rows else Paragraph("No input changed."))
+    links = words.link_table(change, PAGE)
+    blocks += [_table("change-links", links, wide=True)] if links.rows else []
     blocks += _others(change)
     blocks += [] if parts is None else [parts]
     blocks += [Paragraph(text) for text in words.unsplit(change, "logarithm")]

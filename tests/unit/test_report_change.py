@@ -15,7 +15,15 @@ from typing import Any
 
 import pytest
 
-from benchmark.record.changes.words import PLAIN, chain_table, change_rows, input_table, part_tables, result_table
+from benchmark.record.changes.words import (
+    PLAIN,
+    chain_table,
+    change_rows,
+    input_table,
+    link_table,
+    part_tables,
+    result_table,
+)
 from benchmark.record.ratio_only import ratio_only
 from benchmark.report.change_parts import change_parts
 from benchmark.report.change_picture import change_picture
@@ -307,18 +315,19 @@ def test_the_page_says_what_the_terminal_says_digit_by_digit():
     change, found = record["change"], _Tables(page_of_remeasured()).found
     tables = {
         "change-inputs": input_table(change, PLAIN),
+        "change-links": link_table(change, PLAIN),
         "change-chain": chain_table(change, PLAIN),
         "change-results": result_table(change, PLAIN),
         **{f"change-parts-{i}": t for i, t in enumerate(part_tables(change, PLAIN, additive=True), start=1)},
     }
-    assert len(tables) == 5
+    assert len(tables) == 6
     for key, table in tables.items():
         heads, *rows = found[key]
         assert heads == list(table.columns)
         assert [[_alike(cell) for cell in row] for row in rows] == [
             [_alike(cell) for cell in row] for row in table.rows
         ]
-        assert len(rows) >= 3
+        assert len(rows) >= (1 if key == "change-links" else 3)
     assert found["change-parts-1"][-1][:2] == ["total", "−0.21968 (×0.8028)"]
 
 
