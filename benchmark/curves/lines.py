@@ -170,15 +170,20 @@ def _kept(
         notes.append(
             f"lines 1 to {start} before the table left out" if start > 1 else "line 1 before the table left out"
         )
-    kept, comments = [], 0
+    kept, comments, ended = [], 0, not spec.ends_before
     for number, line in lines[start:]:
         if spec.ends_before and line.lstrip(' \t"').startswith(spec.ends_before):
             notes.append(f"the table ends before line {number}; {len(lines) - number + 1} line(s) left out")
+            ended = True
             break
         if spec.comment and line.lstrip().startswith(spec.comment):
             comments += 1
             continue
         kept.append((number, line))
+    if not ended:
+        allowed = f"ends_before = {spec.ends_before!r}, or none"
+        collector.add(Problem(name, 0, "", "does not end as the description says", "", allowed))
+        return None
     if comments:
         notes.append(_counted(comments, "comment"))
     return kept

@@ -116,7 +116,11 @@ def _open(
 def _columns(reading: Reading, consistent: bool) -> list[Column]:
     """Find and judge the columns; none when any of them has a problem, or the description contradicts itself."""
     start = len(reading.collector.problems)
-    judged = [judge_column(place, reading) for place in match_columns(reading)]
+    places = match_columns(reading)
+    if reading.spec.repeat and len(reading.collector.problems) == start and all(place.group < 0 for place in places):
+        words = str(len(reading.spec.repeat.words))
+        reading.problem("repeat", "repeats no column", "", f"a header that stands {words} times")
+    judged = [judge_column(place, reading) for place in places]
     columns = [column for column in judged if column is not None]
     if consistent and len(reading.collector.problems) == start:
         return columns

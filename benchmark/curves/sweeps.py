@@ -14,7 +14,7 @@ from benchmark.curves.blocks import Block
 from benchmark.curves.columns import Column, fixed_values
 from benchmark.curves.lines import MOST_SHOWN, Reading
 from benchmark.curves.marks import at_compliance, at_floor, check_flat_top
-from benchmark.curves.meanings import MULTIPLIED
+from benchmark.curves.meanings import MULTIPLIED, PER_WIDTH
 from benchmark.curves.numbers import Numbers
 from benchmark.curves.record import Array, IntArray, Sweep
 from benchmark.errors import nearest
@@ -184,9 +184,12 @@ def _distinct(
     if len(kept) < LEAST_POINTS:
         line = table.rows[int(kept[0])].line
         found = f"{len(kept)} at {table.rows[int(kept[0])].cells[along.position]}"
-        table.refuse(
-            (line, along.header), f"a curve has fewer than {LEAST_POINTS} points", found, "", "", most=MOST_SHOWN
+        others = [column.header for column in (*block.of_kind("label"), *block.of_kind("axis")) if column is not along]
+        hint = (
+            f"{', '.join(others)} tell curves apart: read what changes with every row as kind value" if others else ""
         )
+        what = f"a curve has fewer than {LEAST_POINTS} points"
+        table.refuse((line, along.header), what, found, "", hint, most=MOST_SHOWN)
         return None
     return kept
 
@@ -203,6 +206,7 @@ def _sweep(
     """Convert one curve; numbers per width are divided before they are rounded."""
     table = reading.table
     lines = np.array([table.rows[row].line for row in rows.tolist()], dtype=np.int64)
+    _check_widths(fixed, int(lines[0]), block, reading)
     columns = {along.meaning: numbers[along.position].si[rows]}
     floors, tops, floor, compliance = {}, {}, {}, {}
     for column in block.of_kind("value"):
@@ -222,6 +226,18 @@ def _sweep(
         )
     also = {name: float(number) for name, number in fixed.items()}
     return Sweep(labels, also, columns, lines, floors, tops, floor, compliance)
+
+
+def _check_widths(fixed: Mapping[str, Fraction], line: int, block: Block, reading: Reading) -> None:
+    """Absolute numbers beside numbers per width can only be used together when the width is known."""
+    values = block.of_kind("value")
+    absolute = [column.header for column in values if column.meaning in PER_WIDTH]
+    if "width" in fixed or not absolute or not any(column.meaning in PER_WIDTH.values() for column in values):
+        return
+    hint = "state fixed.width, or a column with the width"
+    reading.table.refuse(
+        (line, absolute[0]), "is absolute beside numbers per width, but no width is stated", "", "", hint, most=1
+    )
 
 
 def _factor(

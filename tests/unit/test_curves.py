@@ -345,6 +345,24 @@ def test_units_in_the_header_in_three_ways(tmp_path: Path):
         assert (values(found, "control_voltage"), values(found, "path_current")) == ([[0.0, 1.0]], [[1e-9, 2e-9]])
 
 
+def test_a_name_may_be_the_whole_header_with_its_unit(tmp_path: Path):
+    description = PLAIN + 'units = "header"\n' + VOLT + AMPERE.replace('header = "I"', 'header = "I (nA)"')
+    path = put(tmp_path, "V (V),I (nA)\n0,1\n1,2\n", description.replace('unit = "A"', 'unit = "nA"'))
+    assert values(read(path), "path_current") == [[1e-9, 2e-9]]
+
+
+def test_absolute_numbers_beside_numbers_per_width_need_the_width(tmp_path: Path):
+    per_width = AMPERE.replace('"I"', '"J"').replace("path_current", "path_current_per_width").replace('"A"', '"A/m"')
+    farad = AMPERE.replace("path_current", "input_capacitance").replace('unit = "A"', 'unit = "fF"')
+    raw = "V,I,J\n0,1,1e-6\n1,2,2e-6\n"
+    assert refusals(put(tmp_path, raw, PLAIN + VOLT + farad + per_width)) == [
+        "raw.csv:2: I: is absolute beside numbers per width, but no width is stated; "
+        "state fixed.width, or a column with the width"
+    ]
+    wide = PLAIN.replace("fixed = {", 'fixed = { width = { value = 3, unit = "um" },')
+    assert read(put(tmp_path, raw, wide + VOLT + farad + per_width)).sweeps[0].fixed["width"] == 3e-6
+
+
 def test_a_unit_of_the_file_that_nobody_can_read_is_stated_in_the_description(tmp_path: Path):
     raw = "V,T,I\nVolts,Deg. C,A\n0,25,1e-9\n1,25,2e-9\n"
     warm = VOLT.replace('"V"\nmeaning = "control_voltage"', '"T"\nmeaning = "temperature"').replace('"V"', '"degC"')
@@ -451,10 +469,11 @@ def test_what_is_no_table(raw: bytes, message: str, tmp_path: Path):
     assert refusals(put(tmp_path, raw, PLAIN + VOLT + AMPERE)) == [message]
 
 
-def test_a_micro_sign_of_an_old_instrument(tmp_path: Path):
-    raw = "V,I\nV,µA\n0,1\n1,2\n".encode("latin-1")
+@pytest.mark.parametrize(("sign", "encoding"), [("\u00b5", "latin-1"), ("\u00b5", "utf-8"), ("\u03bc", "utf-8")])
+def test_either_micro_sign(sign: str, encoding: str, tmp_path: Path):
+    raw = f"V,I\nV,{sign}A\n0,1\n1,2\n".encode(encoding)
     columns = (VOLT + AMPERE).replace('unit = "V"\n', "").replace('unit = "A"\n', "")
-    found = read(put(tmp_path, raw, PLAIN + 'encoding = "latin-1"\nunits = "row"\n' + columns))
+    found = read(put(tmp_path, raw, PLAIN + f'encoding = "{encoding}"\nunits = "row"\n' + columns))
     assert values(found, "path_current") == [[1e-6, 2e-6]]
 
 
