@@ -20,7 +20,7 @@ from __future__ import annotations
 
 from benchmark.api.batch import Batched, batch
 from benchmark.api.changes import Changes, changes
-from benchmark.api.edit import Edited, supersede
+from benchmark.api.edit import Edited, export_sheet, import_sheet, supersede
 from benchmark.api.extract import Extraction, extract
 from benchmark.api.need import Needed, flips, improve, joint_sheet, need, opportunity, sheet, trade
 from benchmark.api.result import Result
@@ -39,8 +39,10 @@ __all__ = [
     "batch",
     "changes",
     "check",
+    "export_sheet",
     "extract",
     "flips",
+    "import_sheet",
     "improve",
     "joint_sheet",
     "load_result",

@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
     from benchmark.record.editing import EditedSet
 
-__all__ = ["Edited", "supersede"]
+__all__ = ["Edited", "export_sheet", "import_sheet", "supersede"]
 
 Place = str | Path
 Day = datetime.date | str
@@ -37,7 +37,7 @@ class Edited:
     notes : tuple of str
         What else a reader must know of the change.
     lines : tuple of str
-        Lines for the list of changes.
+        Lines for the list of changes, each with its day.
     text : str
         The set as it is now.
     written : tuple of Path
@@ -166,6 +166,115 @@ def supersede(
     return finished(change_set(opened, [one]), _notes(table, node, opened.item.nodes), write=write)
 
 
+def export_sheet(path: Place, sheet: Place, nodes: Iterable[Place] = ()) -> Path:
+    """Write the values of a set as a comma-separated table for a spreadsheet: one row per value and node.
+
+    Parameters
+    ----------
+    path : str or Path
+        A technology or wires set.
+    sheet : str or Path
+        File to write; its name ends in .csv. An older one is replaced.
+    nodes : iterable of path, optional
+        Further folders of sets and sources.
+
+    Returns
+    -------
+    Path
+        The file that was written.
+
+    Raises
+    ------
+    UsageError
+        When the name does not end in .csv.
+    InputRefused
+        With every problem of the set, or when the file cannot be written.
+    """
+    from benchmark.record.editing import open_set_file
+    from benchmark.sets.change_line import write_files
+    from benchmark.sets.sheet import sheet_text
+
+    place = _table(sheet)
+    text = sheet_text(open_set_file(Path(path), folders_of(nodes)).file)
+    write_files({place: text if text.isascii() else f"\ufeff{text}"})  # spreadsheets know UTF-8 by the mark
+    return place
+
+
+def import_sheet(
+    sheet: Place,
+    path: Place,
+    *,
+    reason: str = "",
+    date: Day | None = None,
+    old_date: Day | None = None,
+    decimal: str = "",
+    nodes: Iterable[Place] = (),
+    write: bool = True,
+) -> Edited:
+    """Take the changes of a sheet into the set it was exported from, as ``supersede`` takes one.
+
+    Comments of the file are kept and what did not change stays to the byte. Changed numbers, units, ranges, evidence,
+    sources, places and conditions supersede what was; a changed comment or date alone is corrected in place.
+
+    Parameters
+    ----------
+    sheet : str or Path
+        The file that the spreadsheet saved: UTF-8, with commas, semicolons or tabs between the cells.
+    path : str or Path
+        The set; it must be as it was when the sheet was exported.
+    reason : str
+        Why the old numbers are no longer used; needed when a value changes.
+    date : date or str, optional
+        Day from which the new numbers hold, for rows whose date was not changed.
+    old_date : date or str, optional
+        Day from which the old numbers held, where the file does not say.
+    decimal : str
+        Decimal sign of the sheet, ``"point"`` or ``"comma"``; empty: the point, and the comma only in a sheet with
+        semicolons whose untouched numbers have it.
+    nodes : iterable of path, optional
+        Further folders of sets and sources.
+    write : bool
+        False: judge the change only.
+
+    Returns
+    -------
+    Edited
+        What changed, what the check says of it, and the files that were written.
+
+    Raises
+    ------
+    UsageError
+        When the decimal sign or a day is none.
+    InputRefused
+        With every problem of the sheet, each with its cell, or of the changed set; nothing was written.
+    """
+    from benchmark.record.editing import change_set, open_set_file
+    from benchmark.record.sheet import Told, restated_by
+    from benchmark.sets.files import read_bytes
+    from benchmark.sets.problems import Collector
+    from benchmark.sets.sheet import read_sheet
+
+    if decimal not in ("", "point", "comma"):
+        message = f"decimal: {decimal!r} is not one of point, comma"
+        raise UsageError(message)
+    said = Told(_day("date", date) if date else None, _day("old date", old_date) if old_date else None, reason, decimal)
+    opened, collector = open_set_file(Path(path), folders_of(nodes)), Collector()
+    place = _table(sheet)
+    raw = read_bytes(place, place.name, collector)
+    read = None if raw is None else read_sheet(raw, place.name, collector)
+    restated, notes = restated_by(read, opened, said, collector) if read else ([], ())
+    collector.raise_if_any()
+    return finished(change_set(opened, restated), notes, write=write)
+
+
+def _table(sheet: Place) -> Path:
+    place = Path(sheet)
+    if place.suffix.lower() != ".csv":
+        message = f"{place}: the name of a sheet ends in .csv"
+        raise UsageError(message)
+    return place
+
+
 def _notes(table: Mapping[str, Any], node: str, known: tuple[str, ...]) -> tuple[str, ...]:
     if not node or len(known) == 1:
         return ()
@@ -176,7 +285,8 @@ def _notes(table: Mapping[str, Any], node: str, known: tuple[str, ...]) -> tuple
 def finished(edited: EditedSet, notes: tuple[str, ...], *, write: bool) -> Edited:
     """Write a changed set, unless it is only judged, and say what changed."""
     written = edited.write() if write else ()
-    return Edited(edited.comparison, edited.warnings, notes, edited.lines, edited.text, written)
+    lines = tuple(f"{day.isoformat()}, {text}" for day, text in edited.lines)
+    return Edited(edited.comparison, edited.warnings, notes, lines, edited.text, written)
 
 
 def _day(what: str, told: Day) -> datetime.date:

@@ -15,7 +15,7 @@ from benchmark.cli.layout import Block, Note, show_blocks
 if TYPE_CHECKING:
     from benchmark.api.edit import Edited
 
-__all__ = ["show_edit", "supersede_command"]
+__all__ = ["export_command", "import_command", "show_edit", "supersede_command"]
 
 
 def supersede_command(
@@ -27,6 +27,26 @@ def supersede_command(
     check_folders(nodes)
     check_form(form)
     show_edit(api.supersede(path, name, number, nodes=nodes, write=not dry_run, **told), form, dry_run=dry_run)
+
+
+def export_command(path: Path, sheet: Path, nodes: Sequence[Path]) -> None:
+    """Write the sheet of a set."""
+    from benchmark import api
+
+    check_folders(nodes)
+    written = api.export_sheet(path, sheet, nodes)
+    show_blocks([Note(f"Written: {written}"), Note(f"Next:    evenload sheet import {sheet} {path}")])
+
+
+def import_command(
+    sheet: Path, path: Path, told: Mapping[str, Any], *, nodes: Sequence[Path], form: str, dry_run: bool
+) -> None:
+    """Take a sheet into its set and print the change."""
+    from benchmark import api
+
+    check_folders(nodes)
+    check_form(form)
+    show_edit(api.import_sheet(sheet, path, nodes=nodes, write=not dry_run, **told), form, dry_run=dry_run)
 
 
 def show_edit(edited: Edited, form: str, *, dry_run: bool) -> None:

@@ -77,14 +77,14 @@ class Restated:
 class EditedSet:
     """A changed set that passes the check, not yet written.
 
-    ``comparison`` as ``compare_sets`` returns it; ``lines`` for the list of changes; ``warnings`` of the new state.
+    ``comparison`` as ``compare_sets`` returns it; ``lines`` for the list of changes, with the day
+    from which each change holds; ``warnings`` of the new state.
     """
 
     opened: OpenSet
     text: str
     comparison: Mapping[str, Any]
-    lines: tuple[str, ...]
-    date: datetime.date | None
+    lines: tuple[tuple[datetime.date, str], ...]
     warnings: tuple[str, ...]
 
     def write(self) -> tuple[Path, ...]:
@@ -104,9 +104,12 @@ class EditedSet:
             message = f"{path}: was changed by something else meanwhile; nothing was written"
             raise EvenloadError(message)
         texts = {path: self.text}
-        if self.lines and self.date is not None:
-            place = changes_file(path)
-            texts[place] = with_changes(read_changes(place), path.stem, self.lines, self.date)
+        place = changes_file(path)
+        listed = read_changes(place) if self.lines else ""
+        for day in sorted({day for day, _ in self.lines}):  # the newest comes to the top
+            listed = with_changes(listed, path.stem, [text for when, text in self.lines if when == day], day)
+        if self.lines:
+            texts[place] = listed
         write_files(texts)
         return tuple(texts)
 
@@ -153,10 +156,18 @@ def change_set(opened: OpenSet, restated: Sequence[Restated]) -> EditedSet:
         state_of_set("the file as it was", opened.item, opened.sources),
         state_of_set("the file as it is now", after, opened.sources),
     )
-    dates = [one.date for one in restated if one.date is not None]
-    reasons = {edit.name: edit.reason for edit in edits}
-    lines = tuple(_line(row, reasons) for row in comparison["inputs"] if reasons.get(row["key"]))
-    return EditedSet(opened, text or "", comparison, lines, max(dates, default=None), warnings)
+    reasons = {edit.name: edit.reason for edit in edits if edit.reason}
+    lines = tuple(
+        (_day_of(after, row["key"]), _line(row, reasons[row["key"]]))
+        for row in comparison["inputs"]
+        if row["key"] in reasons
+    )
+    return EditedSet(opened, text or "", comparison, lines, warnings)
+
+
+def _day_of(item: ParameterSet, name: str) -> datetime.date:
+    """Return the day from which a value with a history holds."""
+    return datetime.date.fromisoformat(item.values[name].date)
 
 
 def _judged(opened: OpenSet, text: str) -> tuple[ParameterSet, tuple[str, ...]]:
@@ -207,6 +218,11 @@ def _edit(opened: OpenSet, one: Restated, collector: Collector) -> Edit | None:
         return None
     if one.spread != KEEP:
         changed["spread"] = one.spread
+    elif _absolute(table.get("spread")) and changed["unit"] != table.get("unit") and not _like(one.unit, table):
+        said = f"{table.get('unit', '1')} -> {one.unit}"
+        collector.add(
+            file.problem(dotted, "changes its unit while its range stays; state the range in the new unit", said)
+        )
     changed |= one.told
     if one.reason:
         changed["extracted_from"] = one.extracted_from
@@ -238,6 +254,19 @@ def _numbers(table: Data, one: Restated, nodes: Sequence[str], file: TomlFile, c
             return None
         by_node[node] = converted
     return {"value": None, "by_node": by_node, "unit": said}
+
+
+def _absolute(spread: Mapping[str, Any] | None) -> bool:
+    """Tell whether a range is stated in the unit of its value."""
+    return spread is not None and bool({"low", "high", "sd"} & spread.keys())
+
+
+def _like(unit: str, table: Data) -> bool:
+    """Tell whether a unit is only another spelling of that of a table."""
+    one, two = _unit(unit), _unit(table.get("unit", "1"))
+    return (
+        one is not None and two is not None and dataclasses.replace(one, text="") == dataclasses.replace(two, text="")
+    )
 
 
 def _exact(number: Decimal, unit: str, wanted: str) -> Decimal | None:
@@ -301,9 +330,9 @@ def _unit(text: str) -> Unit | None:
         return None
 
 
-def _line(row: Mapping[str, Any], reasons: Mapping[str, str]) -> str:
+def _line(row: Mapping[str, Any], reason: str) -> str:
     """One line of the list of changes."""
-    reason, source = reasons[row["key"]], row["source_new"]
+    source = row["source_new"]
     if "value" in row["changed"]:
         old, new = (Decimal(f"{row[end]:.12g}") for end in ("old", "new"))
         return change_text(row["key"], old, new, row["unit"], node=row["node"], source=source, reason=reason)

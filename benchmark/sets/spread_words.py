@@ -69,7 +69,9 @@ def read_spread(text: str, low: str = "", high: str = "", decimal: str = "point"
     if len(rest) != 2 or rest[0] not in keys:
         message = f"{shape} needs one number with its name"
         raise CellError(message, f"such as {shape} {keys[0]} 1.25, or {keys[1]}")
-    return {"shape": shape, rest[0]: read_number(rest[1], decimal)}
+    # a number inside words is not turned by a spreadsheet, whatever its decimal sign is
+    sign = decimal if "," in rest[1] else "point"
+    return {"shape": shape, rest[0]: read_number(rest[1], sign)}
 
 
 def _limits(rest: list[str], low: str, high: str, decimal: str) -> dict[str, Any]:

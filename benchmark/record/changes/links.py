@@ -36,7 +36,7 @@ def study_links(study: Study) -> list[dict[str, Any]]:
 
 
 def changed_links(old: Sequence[Row], new: Sequence[Row], changed: Collection[str]) -> list[dict[str, Any]]:
-    """Return the links that changed values take part in, as they are now, with both sides as they were.
+    """Return the links that changed values take part in and that are not as they were, with both sides then and now.
 
     Parameters
     ----------
@@ -56,6 +56,8 @@ def changed_links(old: Sequence[Row], new: Sequence[Row], changed: Collection[st
         if not set(row["keys"]) & set(changed):
             continue
         was = before.get(_place(row))
+        if was is not None and (was["left"], was["right"], was["state"]) == (row["left"], row["right"], row["state"]):
+            continue  # another node, or only a range or a word
         sides = {f"{side}_old": None if was is None else was[side] for side in ("left", "right")}
         found.append({**row, **sides})
     return found

@@ -150,19 +150,21 @@ def link_table(found: Row, how: Print = PLAIN) -> Worded:
         old, new = row[f"{name}_old"], how.number(row[name], 5)
         return f"{new if old is None else arrow(how.number(old, 5), new, how)} {row['unit']}".removesuffix(" 1")
 
+    several = any(row["set"] for row in found.get("links", ()))
     rows = tuple(
         (
-            row["formula"] + (f", node {row['node']}" if row["node"] else ""),
-            row["set"] or "-",
+            row["state"],
+            *([row["set"]] if several else []),
+            row["node"] or "all",
+            row["formula"],
             side(row, "left"),
             side(row, "right"),
             how.number(row["ratio"], 4),
             row["tolerance"],
-            row["state"],
         )
         for row in found.get("links", ())
     )
-    columns = ("link", "set", "left side", "right side", "ratio", "allowed", "result")
+    columns = ("result", *(["set"] if several else []), "node", "link", "left side", "right side", "ratio", "allowed")
     return Worded("Values that have to fit the changed ones", columns, rows)
 
 
