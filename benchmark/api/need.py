@@ -147,7 +147,8 @@ def trade(
     Returns
     -------
     Needed
-        Rows ready for drawing; the first one is today's point.
+        Rows ready for drawing; the first one is today's point, the last ones are draws of both values from their stated
+        spreads, the rest at the best estimate.
 
     Raises
     ------
@@ -155,12 +156,13 @@ def trade(
         For an unknown name, pair, range or level, or when both names move the same value.
     """
     from benchmark.decide.axes import find_axis
-    from benchmark.decide.trade import TRADE_COLUMNS, trade_curve, trade_rows
+    from benchmark.decide.trade import TRADE_COLUMNS, trade_curve, trade_rows, trade_samples
 
     view, trials = trials_of(study, pair, told)
     level = level_of(view, advantage)
     one, other = ranged([find_axis(trials, first), find_axis(trials, second)], over)
-    rows = trade_rows(trade_curve(trials, one, other, level, points, points))
+    curve = trade_curve(trials, one, other, level, points, points)
+    rows, samples = trade_rows(curve), trade_samples(trials, curve)
     facts = []
     for row in rows:
         place = f"{one.name} {row['first_value']:.4g} {one.unit}".removesuffix(" 1")
@@ -171,7 +173,10 @@ def trade(
         else:
             words = {"always": "any value will do", "never": "no value will do"}.get(row["answer"], "no advantage")
         facts.append((place, words + (f"; cut {row['cut_by']}" if row["cut_by"] else "")))
-    return Needed(heading_of(view, trials), tuple(facts), TRADE_COLUMNS, tuple(rows))
+    if samples:
+        reaching = sum(row["advantage"] >= level and row["meets_requirements"] == "yes" for row in samples)
+        facts.append((f"draws of {one.name} and {other.name}", f"{reaching} of {len(samples)} reach {level:.4g}"))
+    return Needed(heading_of(view, trials), tuple(facts), TRADE_COLUMNS, (*rows, *samples))
 
 
 def sheet(

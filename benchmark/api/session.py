@@ -24,6 +24,8 @@ if TYPE_CHECKING:
 __all__ = ["check", "load_result", "load_set", "load_study", "run", "technologies", "what_if", "worked_study"]
 
 Place = str | Path
+#: share of a run with needs that is done when these begin
+NEED_FROM = 0.2
 #: a what-if number; text is read as the file would read it
 WhatIf = int | float | Decimal | str
 
@@ -227,7 +229,7 @@ def run(
 
     loaded = study if isinstance(study, StudyView) else load_study(study)
     earlier = None if since is None else _earlier(since, loaded, anyway)
-    told = {} if progress is None else {"progress": progress}
+    told = {} if progress is None else {"progress": _part(progress, 0.0, NEED_FROM) if need else progress}
     settings = _draw_settings(loaded.study.draws, draws, seed, jobs)
     record = run_study(loaded.study, loaded.library, created=created, draws=settings, jobs=jobs, **told)
     record["what_if"] = dict(loaded.what_if)
@@ -237,7 +239,9 @@ def run(
         from benchmark.api.need_blocks import need_blocks
         from benchmark.record.results import clean
 
-        record["need"] = clean(need_blocks(loaded))
+        record["need"] = clean(need_blocks(loaded, progress and _part(progress, NEED_FROM, 1.0), settings))
+        if progress is not None:
+            progress("done", 1.0)
     if earlier is not None:
         from benchmark.record.changes import State, compare_states, in_record
 
@@ -257,6 +261,11 @@ def _earlier(since: Result | Place, study: StudyView, anyway: bool) -> State:
     if not anyway:
         refuse_other_question((state.shown, state.study), (str(study.path), study.study))
     return state
+
+
+def _part(progress: Callable[[str, float], None], start: float, end: float) -> Callable[[str, float], None]:
+    """Return the progress of one part of a run: its share of 0 to 1 is that of ``start`` to ``end`` of the whole."""
+    return lambda step, share: progress(step, start + (end - start) * share)
 
 
 def _draw_settings(stated: DrawSettings, draws: int | None, seed: int | None, jobs: int) -> DrawSettings:

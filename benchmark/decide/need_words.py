@@ -30,6 +30,8 @@ NEED_COLUMNS = (
     "low",
     "high",
     "range",
+    "advantage_from",
+    "advantage_to",
     "evidence",
     "words",
 )
@@ -123,8 +125,19 @@ def need_text(*needs: Need) -> str:
     return ". ".join(text[0].upper() + text[1:] for text in parts)
 
 
+def _stretch(need: Need) -> tuple[float, float]:
+    """Return the ends of the plausible range, drawn in to where both sides still have a permitted point."""
+    if need.kind == "undefined":
+        return float("nan"), float("nan")
+    low = max([edge.x for edge in need.edges if not edge.defined_below], default=need.axis.low)
+    high = min([edge.x for edge in need.edges if edge.defined_below], default=need.axis.high)
+    # a gap in the middle: the words say it
+    return (low, high) if low < high else (need.axis.low, need.axis.high)
+
+
 def _row(need: Need, crossing: Crossing | None) -> dict[str, Any]:
     axis = need.axis
+    start, end = _stretch(need)
     x = float("nan") if crossing is None else crossing.x
     value = axis.shown(x)
     positive = crossing is not None and axis.best > 0.0 and x > 0.0 and axis.unit != "degC"
@@ -144,6 +157,8 @@ def _row(need: Need, crossing: Crossing | None) -> dict[str, Any]:
         "low": axis.shown(axis.low),
         "high": axis.shown(axis.high),
         "range": axis.origin,
+        "advantage_from": axis.shown(start),
+        "advantage_to": axis.shown(end),
         "evidence": "" if axis.value is None else axis.value.evidence,
         "words": need_text(need),
     }

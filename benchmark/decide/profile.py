@@ -35,6 +35,8 @@ EDGE = 1.0e-6
 ASIDE = 1.0e-8
 #: halvings of a bracket, at most
 MOST = 100
+#: rows that cost about as much as the call that evaluates them, and places looked at in one step towards an edge
+ROWS_FOR_A_CALL, MOST_INNER = 20, 7
 #: steps towards a turning point, at most
 TURN_STEPS = 16
 
@@ -49,7 +51,8 @@ class Line:
     def trial(self, x: float) -> dict[str, float]:
         """Return the trial at one value of the axis."""
         found: dict[str, float] = {}
-        for axis, value in (*self.held.items(), (self.axis, x)):
+        # twice: what an axis places may depend on another one (a share of the time on the clock), in either order
+        for axis, value in (*self.held.items(), (self.axis, x)) * 2:
             found |= axis.place(float(value), found)
         return found
 
@@ -181,7 +184,7 @@ def _edges(
     ends: NDArray[np.int64],
     name_edges: bool,
 ) -> list[list[Edge]]:
-    """Halve every step between a value with and one without an advantage, all at once."""
+    """Narrow every step between a value with and one without an advantage, all at once."""
     listed: list[tuple[int, float, float]] = []  # line, value with an advantage, value without
     for i, grid in enumerate(grids):
         has = ~np.isnan(answers.advantage[ends[i] : ends[i + 1]])
@@ -198,12 +201,18 @@ def _edges(
         wide = np.flatnonzero(np.abs(outside - inside) > EDGE * np.maximum(np.abs(inside), np.abs(outside)))
         if not wide.size:
             break
-        middle = np.array([lines[listed[k][0]].between(inside[k], outside[k], 0.5) for k in wide])
-        tried = trials([lines[listed[k][0]].trial(x) for k, x in zip(wide, middle, strict=True)])
-        has = ~np.isnan(tried.advantage)
-        inside[wide] = np.where(has, middle, inside[wide])
-        advantage[wide] = np.where(has, tried.advantage, advantage[wide])
-        outside[wide] = np.where(has, outside[wide], middle)
+        # several places at once where few edges are left: a call costs more than a row
+        shares = np.linspace(0.0, 1.0, min(max(ROWS_FOR_A_CALL // wide.size, 1), MOST_INNER) + 2)[1:-1]
+        tried_x = np.array([[lines[listed[k][0]].between(inside[k], outside[k], s) for s in shares] for k in wide])
+        tried = trials([lines[listed[k][0]].trial(x) for k, row in zip(wide, tried_x, strict=True) for x in row])
+        found_at = tried.advantage.reshape(tried_x.shape)
+        for k, x, at in zip(wide, tried_x, found_at, strict=True):
+            missing = np.flatnonzero(np.isnan(at))
+            first = int(missing[0]) if missing.size else at.size
+            if first > 0:
+                inside[k], advantage[k] = x[first - 1], at[first - 1]
+            if first < at.size:
+                outside[k] = x[first]
     for position, (i, start, _) in enumerate(listed):
         x, beyond, at = float(inside[position]), float(outside[position]), float(advantage[position])
         if np.isnan(at):  # the grid point itself is the last one inside

@@ -23,7 +23,15 @@ from benchmark.decide.tolerance import Tolerance, Tolerances
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 
-__all__ = ["SHEET_COLUMNS", "TOLERANCE_COLUMNS", "Sheet", "sheet_rows", "specification", "spread_effects"]
+__all__ = [
+    "SHEET_COLUMNS",
+    "TOLERANCE_COLUMNS",
+    "Sheet",
+    "most_effective",
+    "sheet_rows",
+    "specification",
+    "spread_effects",
+]
 
 #: where the values of a set hold: a condition, no parameter
 CONDITIONS = ("reference_temperature",)
@@ -39,6 +47,7 @@ SHEET_COLUMNS = (
     "bound",
     "factor",
     "reachable",
+    "limit",
     "advantage_with_it",
     "range",
     "words",
@@ -111,8 +120,30 @@ def specification(
     needs = find_needs(trials.study, trials.pair, axes, [level], trials=trials, count=count)
     if not chosen:
         needs = [need for need in needs if need.kind != "no effect"]
-    tolerances = {} if drawn is None else {need.axis.name: drawn.of(need.axis) for need in needs}
+    # what the best estimates cannot reach is not looked for in the draws
+    open_ones = [need for need in needs if need.kind not in ("unreachable", "never", "undefined")]
+    tolerances = {} if drawn is None else {need.axis.name: drawn.of(need.axis) for need in open_ones}
     return Sheet(level, today, tuple(needs), frozenset(axis.name for axis in decisive), tolerances)
+
+
+def most_effective(trials: Trials, count: int = 2) -> list[Axis]:
+    """Return the values of the candidate that move the advantage most over their range, the largest effect first.
+
+    Values with a stated range come before others, which are moved a little, and values of the set before overheads;
+    defaults and values of 0 are left out. Where an end has no advantage, the other end counts.
+    """
+    axes = [
+        axis
+        for axis in _own(trials)
+        if axis.domain != "count" and axis.best != 0.0 and axis.value is not None and not axis.value.is_default
+    ]
+    ends = [_ends(axis) for axis in axes]
+    log = trials([{}, *(axis.place(x, {}) for axis, pair in zip(axes, ends, strict=True) for x in pair)]).log
+    swing = np.nan_to_num(np.abs(log[1:] - log[0]), nan=0.0, posinf=0.0).reshape(-1, 2).max(axis=1)
+    ranged = [axis.value is not None and range_of(axis.value) is not None for axis in axes]
+    beside = [axis.name.startswith("candidate.") for axis in axes]
+    order = sorted(range(len(axes)), key=lambda k: (not ranged[k], beside[k], -swing[k]))
+    return [axes[k] for k in order if swing[k] > NO_EFFECT][:count]
 
 
 def spread_effects(trials: Trials, level: float) -> list[Axis]:
@@ -173,6 +204,19 @@ def _reachable(need: Need) -> str:
     }[need.kind]
 
 
+def _limit(need: Need) -> str:
+    """Say what a value runs into: where a side loses its last permitted point, else its ideal limit."""
+    axis = need.axis
+    cuts = [
+        f"{'up to' if edge.defined_below else 'from'} {axis.text(edge.x)} ({edge.why or 'no permitted point beyond'})"
+        for edge in need.edges
+    ]
+    if need.reach is not None:
+        by = f", limited by {need.reach.limit}" if need.reach.limit else ""
+        cuts.append(f"largest advantage {need.reach.advantage:.4g} ({need.reach.end}){by}")
+    return "; ".join(cuts) or "none inside the range"
+
+
 def sheet_rows(sheet: Sheet) -> list[dict[str, Any]]:
     """Return one row per required value, and one where there is none."""
     rows = []
@@ -192,18 +236,19 @@ def sheet_rows(sheet: Sheet) -> list[dict[str, Any]]:
                     "bound": "" if crossing is None else ("at most" if crossing.above_below else "at least"),
                     "factor": x / axis.best if axis.best > 0.0 and axis.unit != "degC" else float("nan"),
                     "reachable": _reachable(need),
+                    "limit": _limit(need),
                     "advantage_with_it": float("nan") if crossing is None else crossing.advantage,
                     "range": range_text(axis),
                     "words": need_text(need),
                 }
-                | _at_probability(sheet.tolerances.get(axis.name))
+                | (_at_probability(sheet.tolerances.get(axis.name)) if sheet.tolerances else {})
             )
     return rows
 
 
 def _at_probability(found: Tolerance | None) -> dict[str, Any]:
     if found is None:
-        return {}
+        return dict.fromkeys(TOLERANCE_COLUMNS, float("nan"))
     return {
         "probability": found.probability,
         "probability_today": found.today,

@@ -15,9 +15,12 @@ from benchmark.decide.axes import Axis
 from benchmark.decide.break_even import side_of
 from benchmark.decide.profile import Line, Profile, profiles
 from benchmark.decide.trials import Trials
+from benchmark.draws.plan import plan_of
+from benchmark.draws.values import draw_values
 from benchmark.errors import UsageError
+from benchmark.evaluate.side import joints_by_owner
 
-__all__ = ["TRADE_COLUMNS", "TradeCurve", "trade_curve", "trade_rows"]
+__all__ = ["TRADE_COLUMNS", "TradeCurve", "trade_curve", "trade_rows", "trade_samples"]
 
 #: columns of the rows, in order; values in the units of the columns beside them
 TRADE_COLUMNS = (
@@ -35,6 +38,8 @@ TRADE_COLUMNS = (
     "second_low",
     "second_high",
     "cut_by",
+    "cut_below",
+    "cut_above",
 )
 
 
@@ -80,6 +85,48 @@ def trade_curve(trials: Trials, first: Axis, second: Axis, level: float, count: 
     return TradeCurve(first, second, level, tuple(map(float, values)), tuple(found), today)
 
 
+def trade_samples(trials: Trials, curve: TradeCurve, draws: int = 64, seed: int = 0) -> list[dict[str, Any]]:
+    """Draw both values from their stated spreads, the rest at the best estimate: today's cloud beside the curve.
+
+    Parameters
+    ----------
+    trials : Trials
+    curve : TradeCurve
+    draws, seed : int
+        How many draws (a power of two from 16), and from which seed.
+
+    Returns
+    -------
+    list of dict
+        Rows with ``answer`` "sample"; none when neither value has a stated spread.
+    """
+    plan = plan_of(draws, seed)
+    joints = joints_by_owner(trials.study, trials.pair)
+    blocks = [draw_values(trials.values, plan, block, joints=joints)[1] for block in range(plan.blocks)]
+    drawn = {
+        axis: np.concatenate([block[axis.name] for block in blocks])
+        for axis in (curve.first, curve.second)
+        if axis.name in blocks[0]
+    }
+    if not drawn:
+        return []
+    table = [np.broadcast_to(drawn.get(axis, axis.best), draws) for axis in (curve.first, curve.second)]
+    pairs = [(float(x), float(y)) for x, y in zip(*table, strict=True)]
+    answers = trials([Line(curve.second, {curve.first: x}).trial(y) for x, y in pairs])
+    return [
+        _row(
+            curve,
+            x,
+            None,
+            second=y,
+            answer="sample",
+            advantage=float(answers.advantage[k]),
+            meets_requirements="yes" if answers.meets[k] else "no",
+        )
+        for k, (x, y) in enumerate(pairs)
+    ]
+
+
 def trade_rows(curve: TradeCurve) -> list[dict[str, Any]]:
     """Return rows ready for drawing: today's point first, then the curve in the order of the first value.
 
@@ -110,13 +157,17 @@ def _row(
     curve: TradeCurve, x: float, profile: Profile | None, *, second: float = float("nan"), **more: Any
 ) -> dict[str, Any]:
     first, other = curve.first, curve.second
-    low, high, cut = float("nan"), float("nan"), ""
+    low, high, cut, beyond = float("nan"), float("nan"), "", {True: "", False: ""}
     if profile is not None and profile.defined.size:
         has = profile.x[~np.isnan(profile.advantage)]
         low, high = other.shown(float(has.min())), other.shown(float(has.max()))
         cut = "; ".join(
             f"{'above' if edge.defined_below else 'below'} {other.text(edge.x)}: {edge.why}" for edge in profile.edges
         )
+        beyond = {
+            above: "; ".join(edge.why for edge in profile.edges if edge.defined_below == above)
+            for above in (True, False)
+        }
     row = dict.fromkeys(TRADE_COLUMNS, "") | {
         "first": first.name,
         "first_unit": first.unit,
@@ -129,5 +180,7 @@ def _row(
         "second_low": low,
         "second_high": high,
         "cut_by": cut,
+        "cut_below": beyond[False],
+        "cut_above": beyond[True],
     }
     return row | more

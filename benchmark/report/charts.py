@@ -15,6 +15,7 @@ from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart
 from benchmark.report.ladder_chart import ladder_steps
 from benchmark.report.margins import requirement_margins
+from benchmark.report.need_charts import need_charts
 from benchmark.report.parts import where_it_goes
 from benchmark.report.ribbons import limits_along_supply
 from benchmark.report.rows import ratio_columns
@@ -38,6 +39,7 @@ def charts(record: Mapping[str, Any]) -> dict[str, Chart]:
         input_swings(record),
         advantage_by_node(record),
         *node_steps(record),
+        *need_charts(record),
     ]
     if record.get("change") is not None:
         found += [change_picture(record), change_parts(record)]

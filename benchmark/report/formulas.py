@@ -66,6 +66,12 @@ FORMULAS: dict[str, tuple[str, str, str]] = {
         "factor = exp(mean of the changes of ln A)",
         "the values of a cause put in place in one order and in the opposite one, both sides re-optimised",
     ),
+    "break-even": (
+        "break-even and required value",
+        "x at which A(x) = 1, or A(x) = the required advantage",
+        "everything else at its best estimate or as the row says, both sides re-optimised at every x; solved to 1e-13 "
+        "in ln A",
+    ),
     "change": (
         "part of a change",
         "mean over all orders of the change of ln A",
@@ -73,6 +79,9 @@ FORMULAS: dict[str, tuple[str, str, str]] = {
         "parts add up to ln(A after / A before)",
     ),
 }
+
+#: formulas of what is not in every record -> where it stands in a record
+ON_REQUEST = {"break-even": "need", "change": "change"}
 
 #: part as the record names it -> formula, what stands in it
 PARTS: dict[str, tuple[str, str]] = {
@@ -116,7 +125,7 @@ def formulas(record: Record) -> Table:
         for name in ("time_parts", "energy_parts")
         for part in side["point"][name]
     )
-    keys = [key for key in FORMULAS if key != "change" or record.get("change") is not None]
+    keys = [key for key in FORMULAS if key not in ON_REQUEST or record.get(ON_REQUEST[key])]
     rows: list[tuple[Any, ...]] = [(Cell(name), form, words) for name, form, words in (FORMULAS[key] for key in keys)]
     for part in shown:
         form, words = PARTS.get(part, ("as the device model reports it", ""))

@@ -22,6 +22,7 @@ from benchmark.report.energy_delay import energy_delay
 from benchmark.report.figure import Chart, to_svg
 from benchmark.report.ladder_chart import ladder_steps
 from benchmark.report.margins import requirement_margins
+from benchmark.report.need_charts import need_charts_in_column
 from benchmark.report.one_page import one_page
 from benchmark.report.page import digest_of
 from benchmark.report.parts import where_it_goes
@@ -85,6 +86,7 @@ def _column(record: Record) -> list[Chart]:
         input_swings(record, COLUMN - 164.0, 144.0, 20.0, 8),
         advantage_by_node(record, COLUMN - 76.0),
         *node_steps(record, COLUMN - 170.0, 150.0),
+        *need_charts_in_column(record, COLUMN),
         *_changes(record),
     ]
 

@@ -23,6 +23,10 @@ _FORMULAS = {
     "advantage-distribution": ("draws",),
     "input-swings": ("swing",),
     "advantage-by-node": ("advantage",),
+    "break-even-lines": ("break-even",),
+    "trade-curve": ("break-even",),
+    "opportunity-activity": ("advantage", "break-even"),
+    "opportunity-duty": ("advantage", "break-even"),
     "change-picture": ("time", "energy", "advantage"),
     "change-parts": ("change",),
 }

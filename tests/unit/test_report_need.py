@@ -12,7 +12,8 @@ def test_answers_stand_in_the_record_and_the_report(tmp_path: Path):
     view = api.load_study(fixed_displacement().write(tmp_path))
     result = api.run(view, created="2026-01-31T00:00:00Z", need=True)
     blocks = {row["key"]: row for row in result.record["need"]}
-    assert list(blocks) == ["break-evens", "sheet", "improve", "flips"]  # self-timed: no deadline to map
+    # self-timed: no deadline to map
+    assert list(blocks) == ["break-evens", "sheet", "joint-sheet", "trade", "improve", "flips"]
     sheet = api.sheet(view)
     assert [fact[1] for fact in blocks["sheet"]["facts"]] == [text for _, text in sheet.facts]
     result.report(tmp_path / "report.html")
