@@ -138,7 +138,7 @@ KINDS: dict[str, Kind] = {
     "contact_resistance": _contact("resistance of one contact times its width", "{of}"),
     "contact_resistivity": _contact("contact resistivity, for contacts longer than 1.5 transfer lengths", "ohm m^2"),
     "sheet_resistance": _contact("sheet resistance between the contacts", "ohm"),
-    "transfer_length": _contact("transfer length of the contact", "m"),
+    "transfer_length": _contact("transfer length of the contact", "{along}"),
     "resistance_slope": _slope("decades that the resistance falls per unit of the axis", "decade/{along}"),
     "log_resistance_slope": _slope("slope of the natural logarithm of the resistance along the axis", "1/{along}"),
     "pull_in_voltage": _jump("control voltage at which a rising sweep jumps"),
