@@ -127,7 +127,9 @@ def _decoded(raw: bytes, spec: CurvesFile, name: str, collector: Collector, note
         )
         collector.add(Problem(name, line, "", "is binary", "", "a text file with rows of cells"))
         return None
-    notes.append(f"read as {spec.encoding} text" + (" with a byte order mark" if mark else ""))
+    marked = " with a byte order mark" if mark else ""
+    cells = "white space" if spec.delimiter == "whitespace" else repr(spec.delimiter)
+    notes.append(f"read as {spec.encoding} text{marked}, cells divided at {cells}, decimal sign {spec.decimal!r}")
     return text
 
 
@@ -255,6 +257,9 @@ def read_rows(raw: bytes, spec: CurvesFile, name: str, collector: Collector) -> 
         count = str(len(table.header.cells))
         table.refuse((header.line, ""), "has too many columns", count, f"at most {MAX_COLUMNS}")
         return None
+    if header.line:
+        units_too = f", units on line {units.line}" if units.line else ""
+        notes.append(f"names of the columns on line {header.line}{units_too}")
     return table if _check_shape(table, spec) else None
 
 
@@ -286,9 +291,14 @@ def _check_shape(table: RawTable, spec: CurvesFile) -> bool:
     """Refuse rows of another length, and rows of units where none or one was declared; False: nothing to go on with."""
     width = len(table.header.cells)
     rows = [*([table.units] if table.units.line else []), *table.rows]
-    hint = "check the delimiter" if all(len(row.cells) == 1 for row in rows) or width == 1 else ""
+    alike = len({len(row.cells) for row in rows}) == 1 and len(rows) > 1
     for row in rows:
         if len(row.cells) != width:
+            hint = ""
+            if alike:
+                hint = f"is line {table.header.line} the header? state header_starts, skip_rows, or another delimiter"
+            elif spec.delimiter == "," and len(row.cells) > width:
+                hint = "decimal commas need another delimiter, or quotes"
             found = f"{len(row.cells)} cell{'' if len(row.cells) == 1 else 's'}"
             table.refuse((row.line, ""), "row and header differ in length", found, str(width), hint, most=MOST_SHOWN)
     table.rows[:] = [row for row in table.rows if len(row.cells) == width]

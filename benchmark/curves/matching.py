@@ -115,6 +115,8 @@ def _check_rest(headers: list[str], free: dict[int, str], reading: Reading) -> N
             where = (table.header.line, header or f"column {position + 1}")
             near = "" if header in names else nearest(header, names)
             hint = near or "describe it in a [[column]], or name it in ignore"
+            if len(headers) == 1 and re.search(r"[,;|\t]", header):
+                hint = "check the delimiter"
             if not header:
                 hint = 'it has no name: describe it by number, or state ignore = [""]'
             table.refuse(where, "is neither read nor ignored", "", ", ".join(names), hint)

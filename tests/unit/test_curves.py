@@ -160,9 +160,10 @@ def test_forty_devices_forward_and_backward_side_by_side(tmp_path: Path):
 def test_everything_that_was_done_is_said(tmp_path: Path):
     found = read(put(tmp_path, RAW, RAW_CURVES))
     assert list(found.notes) == [
-        "read as utf-8 text",
+        "read as utf-8 text, cells divided at ',', decimal sign '.'",
         "line 1 before the table left out",
         "1 comment line left out",
+        "names of the columns on line 2, units on line 3",
         "column 1 (VG): voltage of the control terminal in V",
         "column 2 (VD): voltage across the switched path in V, tells curves apart",
         "column 3 (T): temperature in degC, 273.15 added for K, tells curves apart",
