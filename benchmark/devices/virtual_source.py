@@ -27,8 +27,8 @@ drain leakage (it is inside the published off-current and falls with the barrier
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import fields, replace
-from typing import Literal
+from dataclasses import dataclass, fields, replace
+from typing import Any, Literal
 
 import numpy as np
 
@@ -141,24 +141,54 @@ def _first_guess(t: vs.Transistor, supply: Array, above: int) -> Array:
     return np.asarray(lifted - np.log1p(-1.0 / above) * t.thermal_voltage)
 
 
-def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift: Array, depth: int | None) -> Switch:
-    values: Mapping[str, Array] = prepared["values"]
-    calibrated, solved = prepared["transistors"][polarity]
-    t = _at(calibrated, values, kelvin, shift)
+@dataclass(frozen=True)
+class _Solved:
+    """What a polarity's currents come to: I(V, V), I(0, V), I(V, V/2), I(V/2, V), I(3V/4, 3V/4) [A]; stacks."""
+
+    on: Array
+    off: Array
+    high: Array
+    low: Array
+    middle: Array
+    stack_on: Array
+    stack_off: Array
+
+
+def _solved(transistors: list[vs.Transistor], supply: Array, counts: Array) -> list[_Solved]:
+    """Solve currents and stacks of all polarities together: fewer and larger arrays are faster."""
+    axes = max(supply.ndim, *(np.ndim(getattr(t, item.name)) for t in transistors for item in fields(t)))
+    t = _joined(transistors, axes)
     v = supply[..., None]
-    # I(V, V), I(0, V), I(V, V/2), I(V/2, V), I(3V/4, 3V/4)
     control = v * np.array([1.0, 0.0, 1.0, 0.5, 0.75])
     path = v * np.array([1.0, 1.0, 0.5, 1.0, 0.75])
-    law = _Current(t)
-    on, off, high, low, middle = np.moveaxis(law(control, path), -1, 0)
+    on, off, high, low, middle = np.moveaxis(vs.drain_current(_widened(t), control, path), -1, 0)
+    stack_on, stack_off = _stacks(t, supply + 0.0 * on, high + low, counts)
+    arrays = (on, off, high, low, middle, stack_on, stack_off)
+    return [_Solved(*(array[i] for array in arrays)) for i in range(len(transistors))]
+
+
+def _joined(transistors: list[vs.Transistor], axes: int) -> vs.Transistor:
+    """Return transistors along a new first axis, before ``axes`` others."""
+
+    def joined(values: list[Any]) -> Any:
+        if values[0] is None:
+            return None
+        rows = np.stack(np.broadcast_arrays(*(array(value) for value in values)))
+        return rows.reshape(rows.shape[:1] + (1,) * (axes + 1 - rows.ndim) + rows.shape[1:])
+
+    return vs.Transistor(
+        **{item.name: joined([getattr(t, item.name) for t in transistors]) for item in fields(vs.Transistor)}
+    )
+
+
+def _one(
+    prepared: Prepared, polarity: str, t: vs.Transistor, found: _Solved, supply: Array, outside: dict[str, BoolArray]
+) -> Switch:
+    values: Mapping[str, Array] = prepared["values"]
     width, edge = values["unit_width"], values["overlap_capacitance"]
-    weight = drive.miller_weight(middle / high)
+    weight = drive.miller_weight(found.middle / found.high)
     own_terminal = values["terminal_capacitance_per_width"] * width
-    stack_on, stack_off = _stacks(t, supply + 0.0 * on, high + low, stack_counts(values)[:depth])
-    outside: dict[str, BoolArray] = {
-        "no threshold and velocity meet the stated currents": ~solved,
-        f"temperature outside {COLDEST:g} K to {HOTTEST:g} K": (kelvin < COLDEST) | (kelvin > HOTTEST),
-    }
+    outside = {"no threshold and velocity meet the stated currents": ~prepared["transistors"][polarity][1], **outside}
     sense: Literal["down", "up"] = "down" if polarity == "n" else "up"
     return Switch(
         technology=MODEL.name,
@@ -167,16 +197,16 @@ def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift:
         resistance_kind="effective",
         stack_time="simultaneous",
         input_scales_with_size=True,
-        resistance=effective_resistance(supply, high, low),
+        resistance=effective_resistance(supply, found.high, found.low),
         switching_level=array(0.5),
-        current=law,
-        on_current=on,
-        off_current_path=off,
+        current=_Current(t),
+        on_current=found.on,
+        off_current_path=found.off,
         off_current_input_high=array(0.0),
         off_current_input_low=array(0.0),
         off_current_body=array(0.0),
-        stack_on=stack_on,
-        stack_off=stack_off,
+        stack_on=found.stack_on,
+        stack_off=found.stack_off,
         input_charge=drive.switching_capacitance(t, supply, edge, ENERGY_WEIGHT) * supply,
         input_capacitance_delay=drive.switching_capacitance(t, supply, edge, weight),
         terminal_capacitance=ENERGY_WEIGHT * edge * width + own_terminal,
@@ -193,7 +223,7 @@ def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift:
             "injection velocity": (array(t.velocity), "m/s"),
             "mobility": (array(t.mobility), "m^2/V/s"),
             "inversion capacitance": (array(t.inversion_capacitance), "F/m^2"),
-            "effective current": (np.asarray(drive.effective_current(high, low)), "A"),
+            "effective current": (np.asarray(drive.effective_current(found.high, found.low)), "A"),
             "drain-edge weight in delay": (np.asarray(weight), "1"),
         },
         **prepared["standing"],
@@ -201,13 +231,21 @@ def _one(prepared: Prepared, polarity: str, supply: Array, kelvin: Array, shift:
 
 
 def _switch(prepared: Prepared, supply: Array, temperature: Array, knobs: Mapping[str, Array]) -> SwitchPair:
+    values: Mapping[str, Array] = prepared["values"]
     v, kelvin, shift = array(supply), array(temperature), array(knobs["threshold_shift"])
     # each further switch of a stack costs three current balances per point
     depth = int(np.max(knobs["stack_depth"])) if "stack_depth" in knobs else None
-    down = _one(prepared, "n", v, kelvin, shift, depth)
+    transistors = {name: _at(t, values, kelvin, shift) for name, (t, _) in prepared["transistors"].items()}
+    solved = _solved(list(transistors.values()), v, stack_counts(values)[:depth])
+    outside: dict[str, BoolArray] = {
+        f"temperature outside {COLDEST:g} K to {HOTTEST:g} K": (kelvin < COLDEST) | (kelvin > HOTTEST)
+    }
+    switches = [
+        _one(prepared, name, t, found, v, outside) for (name, t), found in zip(transistors.items(), solved, strict=True)
+    ]
     if prepared["partner"] == "mirrored":
-        return mirrored(down, v, kelvin)
-    return SwitchPair(down=down, up=_one(prepared, "p", v, kelvin, shift, depth), supply=v, temperature=kelvin)
+        return mirrored(switches[0], v, kelvin)
+    return SwitchPair(down=switches[0], up=switches[1], supply=v, temperature=kelvin)
 
 
 def _netlist(prepared: Prepared, pair: SwitchPair, knobs: Mapping[str, Array]) -> SubCircuits:

@@ -323,19 +323,22 @@ def drain_current(t: Transistor, control: Array, path: Array, body: Number = 0.0
     gate, drain = np.asarray(control, dtype=np.float64), np.asarray(path, dtype=np.float64)
     named = {item.name: getattr(t, item.name) for item in fields(t)}
     shape = np.broadcast_shapes(gate.shape, drain.shape, *(np.shape(value) for value in (body, *named.values())))
-    if (size := int(np.prod(shape))) <= PIECE or shape[0] == 1:
+    if (size := int(np.prod(shape))) <= PIECE:
         return _solve(t, gate, drain, body)
     found = np.empty(shape)
-    step = max(1, PIECE * shape[0] // size)
-    for rows in (slice(start, start + step) for start in range(0, shape[0], step)):
-        part = Transistor(**{name: _cut(value, rows, shape) for name, value in named.items()})
-        found[rows] = _solve(part, *(_cut(voltage, rows, shape) for voltage in (gate, drain, body)))
+    axis = int(np.argmax(shape))
+    step = max(1, PIECE * shape[axis] // size)
+    for start in range(0, shape[axis], step):
+        place = (slice(None),) * axis + (slice(start, start + step),)
+        part = Transistor(**{name: _cut(value, place, shape) for name, value in named.items()})
+        found[place] = _solve(part, *(_cut(voltage, place, shape) for voltage in (gate, drain, body)))
     return found
 
 
-def _cut(value: Any, rows: slice, shape: tuple[int, ...]) -> Any:
-    """Return the rows (first axis of ``shape``) of something that broadcasts to it."""
-    return value[rows] if np.ndim(value) == len(shape) and np.shape(value)[0] == shape[0] else value
+def _cut(value: Any, place: tuple[slice, ...], shape: tuple[int, ...]) -> Any:
+    """Return a piece of something that broadcasts to ``shape``."""
+    axis = len(place) - 1 - len(shape) + np.ndim(value)
+    return value if axis < 0 or np.shape(value)[axis] == 1 else value[place[len(shape) - np.ndim(value) :]]
 
 
 def intrinsic_slopes(t: Transistor, control: Array, path: Array) -> Slopes:
