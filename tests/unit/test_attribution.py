@@ -13,7 +13,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from benchmark.decide.attribution import REST, ROUNDING, attribute, changed_values, shapley
+from benchmark.decide.attribution import MOST_CHANGES, REST, ROUNDING, attribute, changed_values, shapley
 from benchmark.record.load import load_study
 from tests.fixed_displacement import fixed_displacement
 from tests.near import near
@@ -131,6 +131,41 @@ def test_too_many_changes_go_together_by_owner(tmp_path: Path):
     assert len(grouped.parts) <= 2 < len(alone.parts)
     assert all("values)" in name for name in grouped.parts)
     assert math.fsum(grouped.parts.values()) == near(alone.total, rel=0, abs=1e-9)
+
+
+def test_thirteen_changes_go_together_by_owner_and_the_parts_are_exact(tmp_path: Path):
+    """Beyond twelve the parts of values become parts of owners: still the mean over all orders, so no error."""
+    inputs, moved = mixed(), 0
+    for place in sorted(inputs.sets):
+        for name, table in inputs.sets[place]["value"].items():
+            known = any(word in name for word in ("capacitance", "resistance", "current", "swing", "velocity", "delay"))
+            if moved == 13 or "formula" in table or not known:
+                continue
+            spread = table.pop("spread", None)
+            assert spread is None or isinstance(spread, dict)
+            if "by_node" in table:
+                table["by_node"] = {node: number * D("1.001") for node, number in table["by_node"].items()}
+            else:
+                table["value"] = table["value"] * D("1.001")
+            moved += 1
+    old, new = load(mixed(), tmp_path / "old"), load(inputs, tmp_path / "new")
+    count = len(changed_values(old, new))
+    assert count == 13 == MOST_CHANGES + 1
+    forth, back = attribute(old, new), attribute(new, old)
+    alone = attribute(old, new, most=count)[0]
+    assert len(forth[0].parts) >= 2
+    for one, other in zip(forth, back, strict=True):
+        assert len(one.parts) <= MOST_CHANGES
+        size = max(abs(one.before), 1e-30) if one.scale == "additive" else 1.0
+        assert abs(math.fsum(one.parts.values()) - one.total) <= 1e-9 * size
+        for name, part in one.parts.items():
+            assert abs(part + other.parts[name]) <= 1e-9 * size, name
+    # nearly additive at a thousandth each, so a group is the sum of its members
+    for name, part in forth[0].parts.items():
+        owner = name.split(" (")[0]
+        members = [p for key, p in alone.parts.items() if key.split(".")[0] == owner]
+        assert f"({len(members)} values)" in name
+        assert part == near(math.fsum(members), rel=0, abs=1e-6)
 
 
 def test_what_values_do_not_carry_over_is_a_part_of_its_own(tmp_path: Path):
