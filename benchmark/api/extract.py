@@ -97,11 +97,7 @@ class Extraction:
         """
         from benchmark.report.curve_figure import write_curve_figures
 
-        place = Path(path)
-        if place.suffix not in (".svg", ".pdf", ".png"):
-            message = f"--figure: {place.name!r} does not end in .svg, .pdf or .png"
-            raise UsageError(message)
-        return write_curve_figures(self.curves, self.found, place, width)
+        return write_curve_figures(self.curves, self.found, check_figure(path), width)
 
     def into(
         self,
@@ -273,6 +269,15 @@ def extract(path: Place) -> Extraction:
     collector.raise_if_any()
     warnings = tuple(str(warning) for warning in sorted(set(collector.warnings)))
     return Extraction(place, curves, tuple(found), warnings)
+
+
+def check_figure(path: Place) -> Path:
+    """Refuse the name of a drawing that says no form."""
+    place = Path(path)
+    if place.suffix not in (".svg", ".pdf", ".png"):
+        message = f"--figure: {place.name!r} does not end in .svg, .pdf or .png"
+        raise UsageError(message)
+    return place
 
 
 def _day(told: str) -> datetime.date:

@@ -35,6 +35,7 @@ def extract_command(
 ) -> None:
     """Read, print, draw and write what was asked for; nothing is drawn or written when something is refused."""
     from benchmark import api
+    from benchmark.api.extract import check_figure
 
     check_form(form)
     idle = [f"--{name.replace('_', '-')}" for name, value in told.items() if value] + (["--nodes"] if nodes else [])
@@ -42,17 +43,14 @@ def extract_command(
         message = f"{', '.join(idle)}: only with --into"
         raise UsageError(message)
     check_folders(nodes or [])
+    if figure is not None:
+        check_figure(figure)
     found = api.extract(description)
-    edited = None
-    if into is not None:
-        edited = found.into(
-            into,
-            reason=told["reason"],
-            old_date=told["old_date"] or None,
-            nodes=nodes or [],
-            write=not told["dry_run"],
-        )
+    change = {"reason": told["reason"], "old_date": told["old_date"] or None, "nodes": nodes or []}
+    edited = None if into is None else found.into(into, write=False, **change)
     drawn = () if figure is None else found.figure(figure)
+    if into is not None and not told["dry_run"]:
+        edited = found.into(into, **change)
     if form == "json":
         said = {"figures": [str(path) for path in drawn]}
         if edited is not None:
