@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import functools
 import time
 from collections.abc import Callable, Iterable, Mapping, Sequence
@@ -14,6 +15,9 @@ from benchmark.errors import EvenloadError, InputRefused, UsageError
 
 if TYPE_CHECKING:
     import pandas
+
+    from benchmark.api.result import Result
+    from benchmark.api.views import StudyView
 
 __all__ = ["Batched", "StudyState", "batch", "input_files", "studies_in"]
 
@@ -31,8 +35,8 @@ class StudyState:
 
     ``study``: its file, from the folder of the batch. ``state``: unchanged (every result is the same to the last bit),
     moved (some result, not the verdict), flipped (the verdict), no earlier record, or failed. ``distance``: advantage
-    over the required one [1]. ``results_moved``: results that differ. ``message``: why it failed, or what makes the
-    two records different questions. ``seconds``: its run took.
+    over the required one [1]. ``results_moved``: results that differ. ``message``: why it failed, what makes the two
+    records different questions, or why the new record does not say what changed. ``seconds``: its run took.
     """
 
     study: str
@@ -95,14 +99,21 @@ def studies_in(folder: Place) -> list[Path]:
     return found
 
 
-def input_files(folders: Iterable[Place]) -> dict[str, tuple[int, int]]:
-    """Return name -> (time of the last change [ns], size) of every file in some folders that a study may read."""
+def input_files(folders: Iterable[Place], records: Iterable[Place | None] = ()) -> dict[str, tuple[int, int]]:
+    """Return name -> (time of the last change [ns], size) of every file in some folders that a study may read.
+
+    Files in the folders ``records`` are left out: their tables are written by the runs themselves.
+    """
+    written = [Path(place).resolve() for place in records if place is not None]
     found = {}
     for folder in folders:
         for path in sorted(Path(folder).rglob("*")):
+            if any(path.resolve().is_relative_to(place) for place in written):
+                continue
             if path.suffix.lower() in INPUTS and path.is_file():
-                told = path.stat()
-                found[str(path)] = (told.st_mtime_ns, told.st_size)
+                with contextlib.suppress(FileNotFoundError):  # an editor may just be exchanging it
+                    told = path.stat()
+                    found[str(path)] = (told.st_mtime_ns, told.st_size)
     return found
 
 
@@ -128,7 +139,7 @@ def batch(
         Folder of earlier records, one folder per study at the place it has in ``folder``, as ``out`` writes them.
         Default: ``out``, as it was before.
     out : str or Path, optional
-        Where to write the new records; none are written without it.
+        Where to write the new records; none are written without it. One that moved says what changed, and why.
     nodes : iterable of path, optional
         As in ``load_study``.
     created : str, optional
@@ -247,11 +258,29 @@ def _ran(
     before = None
     if since is not None and (place_of(name, since) / "record.json").is_file():
         before = read_record(place_of(name, since))
-    result = run(load_study(path, nodes), **options)
+    view = load_study(path, nodes)
+    result = run(view, **options)
+    row = _compared(before, result.record)
     if out is not None:
+        if before is not None and row["state"] != UNCHANGED:
+            result, why_not = _explained(before, view, result)
+            row["message"] = "; ".join(text for text in (row["message"], why_not) if text)
         place_of(name, out).parent.mkdir(parents=True, exist_ok=True)
         result.save(place_of(name, out))
-    return _compared(before, result.record)
+    return row
+
+
+def _explained(before: Mapping[str, Any], view: StudyView, result: Result) -> tuple[Result, str]:
+    """Return the result with what changed since the earlier record, or as it is with the reason why not."""
+    from benchmark.api.result import Result
+    from benchmark.record.changes import State, compare_states, in_record, open_state
+
+    try:
+        old = open_state("the earlier record", before)
+        found = compare_states(old, State("this run", result.record, view.study), anyway=True)
+    except (EvenloadError, InputRefused) as error:
+        return result, f"what changed cannot be said: {str(error).splitlines()[0]}"
+    return Result(in_record(result.record, found)), ""
 
 
 def _compared(before: Mapping[str, Any] | None, now: Mapping[str, Any]) -> dict[str, Any]:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import sys
 import time
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import asdict
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -44,20 +44,18 @@ def batch_command(
     check_form(form)
     options: dict[str, Any] = {"out": out, "nodes": nodes, "draws": draws, "seed": seed, "jobs": jobs}
     while True:
-        seen = input_files([folder, *nodes])
+        seen = input_files([folder, *nodes], [out, since])
         found = api.batch(folder, since=since, created=freeze_time or None, told=_told, **options)
         _print(found, form)
         if not watch:
             return found.status
         typer.echo("\nWaiting for a change of an input file; Ctrl-C stops.")
-        _wait(seen, [folder, *nodes])
+        _wait(seen, lambda: input_files([folder, *nodes], [out, since]))
 
 
-def _wait(seen: dict[str, tuple[int, int]], folders: Sequence[Path]) -> None:
+def _wait(seen: dict[str, tuple[int, int]], look: Callable[[], dict[str, tuple[int, int]]]) -> None:
     """Wait until a file is not as it was when the last run began."""
-    from benchmark.api.batch import input_files
-
-    while input_files(folders) == seen:
+    while look() == seen:
         time.sleep(PAUSE)
 
 

@@ -2,57 +2,44 @@
 
 from __future__ import annotations
 
-import copy
 import csv
 import io
 import json
 import os
 from collections.abc import Callable
-from decimal import Decimal as D
 from pathlib import Path
+from typing import Any
 
 import pytest
 
 from benchmark.api.batch import batch, input_files, studies_in
-from tests.cli.conftest import Ran
-from tests.fixed_displacement import fixed_displacement
-from tests.studies import toml
+from tests.cli.conftest import Ran, read
+from tests.five_studies import five_studies
 
 Run = Callable[..., Ran]
 pytestmark = pytest.mark.usefixtures("quick")
 TIME = ("--freeze-time", "2026-01-31T00:00:00Z")
 
 
-def write(folder: Path, coefficient: str = "200.0") -> None:
-    """Five studies of two switches that share their sets; the second switch has a fixed coefficient."""
-    inputs = fixed_displacement(coefficient=(coefficient, "0.05"))
-    other = copy.deepcopy(fixed_displacement().sets["technologies/film-switch"]) | {"id": "other-switch"}
-    inputs.sets["technologies/other-switch"] = other
-    for position, (required, switch) in enumerate(
-        [("1.2", "film"), ("1.5", "film"), ("3.0", "film"), ("1.5", "other"), ("3.0", "other")], start=1
-    ):
-        study = copy.deepcopy(inputs.study) | {"id": f"study-{position}"}
-        study["verdict"]["required_advantage"] = D(required)
-        study["candidate"]["technology"] = f"{switch}-switch"
-        inputs.texts[f"s{position}.toml"] = toml(study)
-    for name, text in inputs.files().items():
-        if name != "study.toml":
-            place = folder / name
-            place.parent.mkdir(parents=True, exist_ok=True)
-            place.write_text(text, encoding="utf-8")
+def only(folder: Path, *names: str, coefficient: str = "200.0") -> None:
+    """Write some of the five studies."""
+    five_studies(folder, coefficient)
+    for place in folder.glob("s*.toml"):
+        if place.stem not in names:
+            place.unlink()
 
 
 def test_one_edit_five_studies(evenload: Run, tmp_path: Path):
     """Coefficient 200 -> 170: advantage 2.000 -> 1.445; M = 1.2 moves, 1.5 flips, 3.0 moves, the other switch stays."""
-    write(tmp_path / "all")
+    five_studies(tmp_path / "all")
     first = evenload("batch", "all", "--out", "records", *TIME)
     assert first.status == 0, first.err
     assert first.out.count("no earlier record") == 5 + 1
     again = evenload("batch", "all", "--out", "records", *TIME)
     assert again.status == 0
     assert "5 studies: 5 unchanged;" in again.out
-    write(tmp_path / "all", "170.0")
-    ran = evenload("batch", "all", "--since", "records", "--format", "json", *TIME)
+    five_studies(tmp_path / "all", "170.0")
+    ran = evenload("batch", "all", "--since", "records", "--format", "json")
     assert ran.status == 20, ran.err
     rows = json.loads(ran.out)["studies"]
     assert [row["study"] for row in rows] == [f"s{i}.toml" for i in range(1, 6)]
@@ -62,16 +49,16 @@ def test_one_edit_five_studies(evenload: Run, tmp_path: Path):
     distances = [1.445 / 1.2, 1.445 / 1.5, 1.445 / 3.0, 2.0 / 1.5, 2.0 / 3.0]
     assert [row["distance"] for row in rows] == pytest.approx(distances, rel=1e-6)
     assert [bool(row["results_moved"]) for row in rows] == [True] * 3 + [False] * 2
-    text = evenload("batch", "all", "--since", "records", *TIME)
+    text = evenload("batch", "all", "--since", "records")
     assert "5 studies: 2 moved, 1 flipped, 2 unchanged;" in text.out
     assert "x 0.9633" in text.out
     assert all(len(line) <= 100 for line in text.out.splitlines())
-    table = list(csv.DictReader(io.StringIO(evenload("batch", "all", "--format", "csv", *TIME).out)))
+    table = list(csv.DictReader(io.StringIO(evenload("batch", "all", "--format", "csv").out)))
     assert [row["state"] for row in table] == ["no earlier record"] * 5
 
 
 def test_a_broken_study_does_not_stop_the_others(evenload: Run, tmp_path: Path):
-    write(tmp_path / "all")
+    five_studies(tmp_path / "all")
     for name in ("s1", "s4", "s5"):
         (tmp_path / "all" / f"{name}.toml").unlink()
     bad = tmp_path / "all" / "s2.toml"
@@ -83,7 +70,7 @@ def test_a_broken_study_does_not_stop_the_others(evenload: Run, tmp_path: Path):
 
 
 def test_an_internal_fault_stays_with_its_study(tmp_path: Path, monkeypatch: pytest.MonkeyPatch):
-    write(tmp_path)
+    five_studies(tmp_path)
 
     def fault(*_: object, **__: object) -> None:
         raise ZeroDivisionError
@@ -96,7 +83,7 @@ def test_an_internal_fault_stays_with_its_study(tmp_path: Path, monkeypatch: pyt
 
 
 def test_several_processes_change_no_digit(tmp_path: Path):
-    write(tmp_path)
+    five_studies(tmp_path)
     for name in ("s1", "s2", "s4"):
         (tmp_path / f"{name}.toml").unlink()
     alone, together = batch(tmp_path), batch(tmp_path, jobs=2)
@@ -108,7 +95,7 @@ def test_several_processes_change_no_digit(tmp_path: Path):
 
 def test_watching_runs_again_after_an_edit(evenload: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch):
     """The pause is taken by an edit, then by an interrupt."""
-    write(tmp_path / "all")
+    five_studies(tmp_path / "all")
     for name in ("s1", "s3", "s4", "s5"):
         (tmp_path / "all" / f"{name}.toml").unlink()
     pauses = []
@@ -117,7 +104,7 @@ def test_watching_runs_again_after_an_edit(evenload: Run, tmp_path: Path, monkey
         pauses.append(1)
         if len(pauses) > 1:
             raise KeyboardInterrupt
-        write(tmp_path / "all", "170.0")
+        five_studies(tmp_path / "all", "170.0")
         for name in ("s1", "s3", "s4", "s5"):
             (tmp_path / "all" / f"{name}.toml").unlink()
 
@@ -126,6 +113,66 @@ def test_watching_runs_again_after_an_edit(evenload: Run, tmp_path: Path, monkey
     assert ran.status == 130
     assert "1 study: 1 no earlier record;" in ran.out
     assert "1 study: 1 flipped;" in ran.out
+
+
+def test_watching_does_not_wake_up_by_its_own_records(evenload: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch):
+    """Records written inside the folder of the studies hold tables, which are no inputs."""
+    only(tmp_path / "all", "s2")
+    monkeypatch.setattr("benchmark.report.folder.fill_folder", _with_tables)
+    pauses = []
+
+    def pause(_: float) -> None:
+        pauses.append(1)
+        raise KeyboardInterrupt
+
+    monkeypatch.setattr("benchmark.cli.batch.time.sleep", pause)
+    ran = evenload("batch", "all", "--out", "all/records", "--watch", *TIME)
+    assert ran.status == 130
+    assert (tmp_path / "all" / "records" / "s2" / "tables" / "parts.csv").is_file()
+    assert len(pauses) == 1, "it waits"
+    assert ran.out.count("1 study:") == 1
+
+
+def _with_tables(place: Path, record: dict[str, Any]) -> None:
+    (place / "record.json").write_text(json.dumps(record), encoding="utf-8")
+    (place / "tables").mkdir()
+    (place / "tables" / "parts.csv").write_text("no rows\n", encoding="utf-8")
+
+
+def test_a_record_that_moved_says_what_changed_and_why(evenload: Run, tmp_path: Path):
+    for coefficient in ("200.0", "170.0"):
+        only(tmp_path / "all", "s2", "s4", coefficient=coefficient)
+        evenload("batch", "all", "--out", "records", *TIME)
+    change = read(tmp_path / "records" / "s2", "record.json")["change"]
+    assert change["verdict"]["flipped"]
+    parts = change["attribution"][0]["parts"]
+    assert parts == {"film-switch.actuator_coefficient": pytest.approx(-0.32504, abs=5e-6)}
+    assert "change" not in read(tmp_path / "records" / "s4", "record.json"), "unchanged"
+
+
+def test_another_required_advantage_is_a_flip_with_its_reason(evenload: Run, tmp_path: Path):
+    only(tmp_path / "all", "s2")
+    assert evenload("batch", "all", "--out", "records", *TIME).status == 0
+    study = tmp_path / "all" / "s2.toml"
+    study.write_text(study.read_text(encoding="utf-8").replace("advantage = 1.5", "advantage = 3.0"), encoding="utf-8")
+    ran = evenload("batch", "all", "--out", "records", *TIME)
+    assert ran.status == 20
+    assert "s2.toml: required advantage was 1.5" in ran.out
+    record = read(tmp_path / "records" / "s2", "record.json")
+    assert any("the criteria of the answer changed: required advantage" in text for text in record["change"]["banners"])
+    assert [row["fixed"] for row in record["criteria"]["earlier"]] == ["2026-01-31T00:00:00Z"]
+
+
+def test_an_earlier_record_with_ratios_only_cannot_say_why(evenload: Run, tmp_path: Path):
+    only(tmp_path / "all", "s2")
+    ran = evenload("run", "all/s2.toml", "--out", "records/s2", "--ratio-only", "--quiet", *TIME)
+    assert ran.status == 0, ran.err
+    only(tmp_path / "all", "s2", coefficient="170.0")
+    ran = evenload("batch", "all", "--out", "records", "--format", "json", *TIME)
+    row = json.loads(ran.out)["studies"][0]
+    assert (ran.status, row["state"]) == (20, "flipped")
+    assert row["message"].startswith("what changed cannot be said: the earlier record: holds ratios only")
+    assert "change" not in read(tmp_path / "records" / "s2", "record.json")
 
 
 def test_files_are_told_apart_by_time_and_size(tmp_path: Path):
@@ -138,7 +185,7 @@ def test_files_are_told_apart_by_time_and_size(tmp_path: Path):
 
 
 def test_study_files_are_found_at_any_depth(tmp_path: Path):
-    write(tmp_path / "one" / "two")
+    five_studies(tmp_path / "one" / "two")
     (tmp_path / "one" / "broken.toml").write_text("x = ", encoding="utf-8")
     assert [path.name for path in studies_in(tmp_path)] == [f"s{i}.toml" for i in range(1, 6)]
 
@@ -155,7 +202,7 @@ def test_study_files_are_found_at_any_depth(tmp_path: Path):
     ],
 )
 def test_messages(evenload: Run, tmp_path: Path, arguments, message: str):
-    write(tmp_path / "all")
+    five_studies(tmp_path / "all")
     (tmp_path / "empty").mkdir()
     (tmp_path / "twice" / "a").mkdir(parents=True)
     for name in ("a.toml", "a/study.toml"):
