@@ -30,6 +30,8 @@ FIRST_POINTS = 9
 AT_LIMIT = np.array([-1.0 / 8.0, -1.0 / 64.0, 0.0, 1.0 / 64.0, 1.0 / 8.0])
 AT_VERTEX = np.array([-1.0 / 4.0, -1.0 / 16.0, 0.0, 1.0 / 16.0, 1.0 / 4.0])
 EVENLY = np.arange(1.0, 6.0) / 6.0
+#: points closer than this part of the interval are the same point, which came up twice
+APART = 1.0e-6
 #: an aim is kept up while it shrinks the interval at least so much
 ENOUGH = 0.25
 
@@ -169,13 +171,21 @@ class Near:
         best = np.argmin(cost, axis=1)[:, None]
         best = np.where(np.isfinite(np.take_along_axis(cost, best, axis=1)), best, 1)
         at = np.take_along_axis(together.supply, best, axis=1)
-        below = np.where(together.supply < at, together.supply, -np.inf)
-        above = np.where(together.supply > at, together.supply, np.inf)
-        left, right = np.argmax(below, axis=1)[:, None], np.argmin(above, axis=1)[:, None]
-        # at an end of the range there is nothing beyond
-        left = np.where(np.isfinite(below).any(axis=1, keepdims=True), left, best)
-        right = np.where(np.isfinite(above).any(axis=1, keepdims=True), right, best)
+        known, apart = ~np.isnan(together.score), APART * self.width[:, None]
+        left = _nearest(known, at - together.supply, apart, best)
+        right = _nearest(known, together.supply - at, apart, best)
         seen = together.take(np.concatenate([left, best, right], axis=1))
         made = Near(seen, np.zeros(self.even.shape, dtype=bool))
         even = ~self.even & (made.width > ENOUGH * self.width)
         return Near(seen, even), np.where(best[:, 0] >= 3, best[:, 0] - 3, -1)
+
+
+def _nearest(known: Mask, distance: Array, apart: Array, best: NDArray[np.intp]) -> NDArray[np.intp]:
+    """Return the place of the nearest point at positive distances (row, 1); at an end of the range the best one itself.
+
+    What is not apart is the best point over again; it counts where there is nothing else.
+    """
+    far = np.where(known & (distance > apart), distance, np.inf)
+    close = np.where(known & (distance > 0.0), distance, -np.inf)
+    place = np.where(np.isfinite(far).any(axis=1), np.argmin(far, axis=1), np.argmax(close, axis=1))[:, None]
+    return np.where(np.isfinite(close).any(axis=1, keepdims=True), place, best)
