@@ -76,7 +76,8 @@ class Found:
         if self.over.median_error is None:
             return ()
         sampling = math.sqrt(max(self.over.median_error**2 - self.over.common**2, 0.0))
-        return (Part(f"median of {self.over.count} devices", sampling), Part("reading and setting", self.over.common))
+        parts = (Part(f"median of {self.over.count} devices", sampling), Part("reading and setting", self.over.common))
+        return tuple(part for part in parts if part.size > 0.0)
 
     @property
     def spread(self) -> float | None:

@@ -165,12 +165,13 @@ def _fits(canvas: Canvas, placer: Placer, curves: MeasuredCurves, found: Sequenc
     labels = []
     for one in found:
         pixels: list[tuple[float, float]] = []
+        weight = 2.4 if len(one.devices) <= NAMED else 1.0
         for position, device in enumerate(one.devices):
             runs = _line(device.read.line_x, device.read.line_y, log)
             for line_x, line_y in runs:
                 rows = _shown(line_x, line_y, curves, one.request.of, canvas)
                 if len(rows) > 1:
-                    canvas.path([row | {"run": ""} for row in rows], "a", "b", color=FIT, strokeWidth=2.4)
+                    canvas.path([row | {"run": ""} for row in rows], "a", "b", color=FIT, strokeWidth=weight)
                 elif rows:
                     canvas.marks(rows, "a", "b", shape="cross", size=110, color=FIT)
                 if position == 0:
@@ -179,7 +180,7 @@ def _fits(canvas: Canvas, placer: Placer, curves: MeasuredCurves, found: Sequenc
             continue
         placer.avoid_line(pixels)
         places = [pixels[len(pixels) // 2], pixels[0], pixels[-1]]
-        lines = fitted(number_text(one), 230.0, 2)
+        lines = fitted(number_text(one), 320.0, 2)
         placed = placer.place(lines, places)
         labels += [Label(placed, FIT)] if placed else []
     return labels

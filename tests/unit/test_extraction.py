@@ -132,6 +132,22 @@ def test_a_level_reached_twice_is_refused_with_both_places():
     assert refused(lambda: threshold_at_current(curve(hump, at_floor=marks, floor=1e-11), 1e-9)).what == error.what
 
 
+def test_a_switch_that_jumps_out_of_the_noise_is_bracketed():
+    jumped = curve(np.where(V > 0.405, 1e-6, -2e-14), at_floor=V < 0.405, floor=1e-13)
+    found = threshold_at_current(jumped, 1e-9)
+    assert found.value == near(0.405)
+    assert found.uncertainty == near(0.005 / math.sqrt(3.0))
+    assert found.remarks[0].startswith("the level lies between a reading and a bound")
+    back = curve(np.where(V > 0.305, 1e-6, 1e-14)[::-1], V[::-1], at_floor=(V < 0.305)[::-1], floor=1e-13)
+    window = hysteresis_window(jumped, back, 1e-9)
+    assert window.value == near(0.1)
+    assert window.uncertainty == near(math.sqrt(2.0) * 0.005 / math.sqrt(3.0))
+    # below the floor the level may be anywhere
+    assert refused(lambda: threshold_at_current(jumped, 0.5e-13)).what == (
+        "the level lies below the readings above the noise floor"
+    )
+
+
 def test_a_level_beyond_the_readings_is_refused_and_never_extrapolated():
     error = refused(lambda: crossing(curve(STEEP), 2e-13, "log"))
     assert error.what == "the curve does not reach the level"

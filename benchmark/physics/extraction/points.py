@@ -40,6 +40,9 @@ Scale = Literal["linear", "log"]
 LEAST = 4
 #: points whose parabola gives scatter and curvature at a place
 NEAREST = 7
+BRACKETED = (
+    "the level lies between a reading and a bound: the middle of the two places, give or take half their distance"
+)
 
 
 @dataclass(frozen=True)
@@ -182,13 +185,22 @@ def nearby(points: Points, at: float, scale: Scale, most: int = NEAREST) -> Near
 
 @dataclass(frozen=True)
 class Crossing:
-    """Where a curve crosses a level: abscissa, parts of its uncertainty, and the two points it lies between."""
+    """Where a curve crosses a level: abscissa, parts of its uncertainty, and the two points it lies between.
+
+    ``bracketed``: one of the two is only a bound, so the crossing may lie anywhere between them.
+    """
 
     x: float
     parts: tuple[Part, ...]
     left: int
     right: int
     rising: bool
+    bracketed: bool = False
+
+    @property
+    def remarks(self) -> tuple[str, ...]:
+        """What a reader must know about the place."""
+        return (BRACKETED,) if self.bracketed else ()
 
 
 def _hidden(points: Points, level: float) -> IntArray:
@@ -274,6 +286,12 @@ def crossing(points: Points, level: float, scale: Scale, accuracy: Accuracy | No
     points, level, scale, accuracy
         As in `crossings`.
 
+    Returns
+    -------
+    Crossing
+        On the straight line between two readings. Where the level is passed between a reading and a bound beyond it (a
+        switch that jumps out of the noise), the middle of the two, with half their distance as half width.
+
     Raises
     ------
     CannotExtract
@@ -283,7 +301,7 @@ def crossing(points: Points, level: float, scale: Scale, accuracy: Accuracy | No
         what = "a level on a logarithmic scale must be above 0"
         raise CannotExtract(what, Told("{}", "y", (level,)))
     found, hidden = crossings(points, level, scale, accuracy), _hidden(points, level)
-    if len(found) > 1 or (found and hidden.size):
+    if len(found) + hidden.size > 1:
         what = "the curve reaches the level more than once"
         raise CannotExtract(
             what,
@@ -292,9 +310,18 @@ def crossing(points: Points, level: float, scale: Scale, accuracy: Accuracy | No
             "choose another level or sweep",
             at=[*(int(points.place[one.left]) for one in found), *(int(i) for i in points.place[hidden])],
         )
+    if hidden.size == 1:
+        return _bracket(points, int(hidden[0]), accuracy or Accuracy())
     if not found:
         raise _not_reached(points, level, scale)
     return found[0]
+
+
+def _bracket(points: Points, left: int, stated: Accuracy) -> Crossing:
+    low, high = float(points.x[left]), float(points.x[left + 1])
+    parts = gathered((Part(SPACING, half_width(0.5 * (high - low))), Part(SETTING, stated.setting)))
+    rising = bool(points.y[left + 1] > points.y[left])
+    return Crossing(0.5 * (low + high), parts, left, left + 1, rising, bracketed=True)
 
 
 def _not_reached(points: Points, level: float, scale: Scale) -> CannotExtract:

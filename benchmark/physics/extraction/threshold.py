@@ -29,7 +29,7 @@ __all__ = ["extrapolated_threshold", "hysteresis_window", "threshold_at_current"
 ROUNDING = 1e-9
 
 
-def _read(points: Points, one: Crossing, level: float, remarks: tuple[str, ...] = ()) -> Extracted:
+def _read(points: Points, one: Crossing, level: float) -> Extracted:
     return Extracted(
         one.x,
         one.parts,
@@ -38,7 +38,7 @@ def _read(points: Points, one: Crossing, level: float, remarks: tuple[str, ...] 
         line_x=np.array([one.x]),
         line_y=np.array([level]),
         used=points.place[one.left : one.right + 1],
-        remarks=remarks,
+        remarks=one.remarks,
     )
 
 
@@ -173,4 +173,5 @@ def hysteresis_window(forward: Points, backward: Points, level: float, accuracy:
         line_x=ends,
         line_y=np.array([level, level]),
         used=forward.place[rising.left : rising.right + 1],
+        remarks=tuple(dict.fromkeys((*rising.remarks, *falling.remarks))),
     )
