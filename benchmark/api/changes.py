@@ -128,7 +128,7 @@ def changes(
     Raises
     ------
     UsageError
-        A set against a study, or two records that answer different questions.
+        A set against a study, two records that answer different questions, or an option that would have no effect.
     EvenloadError
         A place that holds nothing that can be compared.
     InputRefused
@@ -136,16 +136,28 @@ def changes(
     """
     from benchmark.record.changes import compare_sets, compare_states, in_record, set_state
 
+    places = list(nodes)
     kinds = [_kind(end) for end in (old, new)]
     if kinds.count("set") == 1:
         message = f"{old} and {new} cannot be compared: one is a set of values, the other a study or its record"
         raise UsageError(message)
+    _refuse_idle(kinds, {"nodes": bool(places), "draws": draws is not None, "seed": seed is not None})
     if kinds[0] == "set":
+        _refuse_idle(kinds, {"anyway": anyway, "jobs": jobs != 1})
         return Changes(compare_sets(set_state(str(old)), set_state(str(new))))
-    told = {"nodes": list(nodes), "draws": draws, "seed": seed, "jobs": jobs}
+    told = {"nodes": places, "draws": draws, "seed": seed, "jobs": jobs}
     states = [_state(end, kind, word, told) for end, kind, word in zip((old, new), kinds, ("old", "new"), strict=True)]
     found = compare_states(*states, anyway=anyway, jobs=jobs)
     return Changes(found, in_record(states[1].record, found))
+
+
+def _refuse_idle(kinds: list[str], given: Mapping[str, bool]) -> None:
+    """Refuse options for running a study where none is run, and of results where two sets are compared."""
+    idle = [name for name, stated in given.items() if stated]
+    if idle and "study" not in kinds:
+        what = "two sets are compared value by value" if kinds[0] == "set" else "records hold what they were run with"
+        message = f"{', '.join(idle)}: without effect, for {what}; leave out"
+        raise UsageError(message)
 
 
 def _kind(end: End) -> str:

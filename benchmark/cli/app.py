@@ -248,7 +248,9 @@ def show(
 def new(
     kind: Annotated[str, typer.Argument(help="study, technology, circuit or curves (a raw measured file).")],
     path: Annotated[Path, typer.Argument(help="File to write (ends in .toml).")],
-    model: Annotated[str, typer.Option("--model", help="Device model of a new technology.")] = "given",
+    model: Annotated[
+        str | None, typer.Option("--model", help="Device model of a new technology; default: given.")
+    ] = None,
 ) -> None:
     """Write a commented template to start from."""
     from benchmark.cli.new import new_command
@@ -266,43 +268,58 @@ def export(
         typer.Option("--figures", help="Folder for figures of 88 mm, 180 mm and one page: SVG, PDF, PNG, caption."),
     ] = None,
     tables: Annotated[Path | None, typer.Option("--tables", help="Folder for tables and numbered sources.")] = None,
-    form: Annotated[str, typer.Option("--format", help="Format of the tables: csv, md or latex.")] = "csv",
+    form: Annotated[
+        str | None, typer.Option("--format", help="Format of the tables: csv, md or latex; default: csv.")
+    ] = None,
     ratio_only: Annotated[
         bool, typer.Option("--ratio-only", help="Ratios only: no absolute value of any side.")
     ] = False,
     netlist: Annotated[Path | None, typer.Option("--netlist", help="File for a deck that runs in ngspice.")] = None,
-    side: Annotated[str, typer.Option("--side", help="Netlist: candidate, or the id of a contender.")] = "candidate",
+    side: Annotated[
+        str | None, typer.Option("--side", help="Netlist: candidate (default), or the id of a contender.")
+    ] = None,
     supply: Annotated[
         float | None, typer.Option("--supply", help="Netlist: supply in volt; default: the optimum of the policy.")
     ] = None,
     node: Annotated[str, typer.Option("--node", help="Netlist: label of a node pair; default: the headline.")] = "",
     net: Annotated[str, typer.Option("--net", help="Netlist: net to repeat; default: the largest of the path.")] = "",
     capacitances: Annotated[
-        str, typer.Option("--capacitances", help="Netlist: constants (delay, energy) or charges of the device.")
-    ] = "delay",
+        str | None,
+        typer.Option(
+            "--capacitances", help="Netlist: constants (delay, the default; energy) or charges of the device."
+        ),
+    ] = None,
     nodes: Nodes = None,
     set_: Set = None,
 ) -> None:
     """Write figures and tables for papers and boards from a record, or one design point as a deck for ngspice."""
+    from benchmark.cli.export import export_command, refuse_idle
+
+    given = {"--side": side, "--supply": supply, "--node": node or None, "--net": net or None, "--nodes": nodes}
+    given |= {"--capacitances": capacitances, "--set": set_, "--format": form, "--ratio-only": ratio_only or None}
+    refuse_idle(
+        {name: value is not None for name, value in given.items()},
+        netlist=netlist is not None,
+        tables=tables is not None,
+        figures=figures is not None,
+    )
     if netlist is not None:
         from benchmark.cli.netlist import netlist_command
 
         netlist_command(
             record,
             netlist,
-            side=side,
+            side=side or "candidate",
             supply=supply,
             node=node,
             net=net,
-            capacitances=capacitances,
+            capacitances=capacitances or "delay",
             nodes=nodes or [],
             overrides=_overrides(set_),
         )
         if figures is None and tables is None:
             return
-    from benchmark.cli.export import export_command
-
-    export_command(record, figures, tables, form, ratio_only)
+    export_command(record, figures, tables, form or "csv", ratio_only)
 
 
 @app.command()

@@ -11,8 +11,9 @@ from typing import TYPE_CHECKING, Any
 
 import typer
 
-from benchmark.cli.commands import check_folders
+from benchmark.cli.commands import check_folders, refuse_idle_draws
 from benchmark.cli.forms import check_form, echo_csv, echo_json
+from benchmark.errors import UsageError
 
 if TYPE_CHECKING:
     from benchmark.api.batch import Batched
@@ -42,6 +43,10 @@ def batch_command(
 
     check_folders(nodes)
     check_form(form)
+    refuse_idle_draws(seed, 1, draws)
+    if freeze_time and out is None:
+        message = "--freeze-time is written into records; state --out FOLDER for them"
+        raise UsageError(message)
     options: dict[str, Any] = {"out": out, "nodes": nodes, "draws": draws, "seed": seed, "jobs": jobs}
     while True:
         seen = input_files([folder, *nodes], [out, since])

@@ -38,6 +38,9 @@ def changes_command(
     if report is not None and report.suffix.lower() not in (".html", ".htm"):
         message = f"--report: {report} must end in .html, so that changes can read it back"
         raise UsageError(message)
+    if additive and form != "text":
+        message = f"--additive is for text; --format {form} always holds these parts"
+        raise UsageError(message)
     changes = api.changes(old, new, nodes=nodes, anyway=anyway, draws=draws, seed=seed, jobs=jobs)
     if report is not None:
         changes.report(report)

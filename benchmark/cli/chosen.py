@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 import tempfile
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
 from pathlib import Path
@@ -21,11 +21,16 @@ __all__ = ["ChosenPoint", "choose_point", "node_pair", "study_inputs"]
 
 
 @contextmanager
-def study_inputs(path: Path, overrides: Mapping[str, str]) -> Iterator[tuple[Path, dict[str, str]]]:
+def study_inputs(
+    path: Path, overrides: Mapping[str, str], nodes: Sequence[Path] = ()
+) -> Iterator[tuple[Path, dict[str, str]]]:
     """A study file as it is, or the inputs of a record folder written into a temporary one."""
     if not (path.is_dir() or path.name == "record.json"):
         yield path, dict(overrides)
         return
+    if nodes:
+        message = f"--nodes has no effect on {path}: a record holds all its inputs; name the study file instead"
+        raise UsageError(message)
     record = read_record(path)
     with tempfile.TemporaryDirectory(prefix="evenload-") as folder:
         study, numbers = recreate(record, Path(folder))

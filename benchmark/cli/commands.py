@@ -60,7 +60,11 @@ def run_command(
 
     check_folders(nodes)
     _check_since(since, ratio_only, anyway)
+    if need and ratio_only:
+        message = "--need and --ratio-only exclude each other: needs are stated in the units of the values"
+        raise UsageError(message)
     study = api.load_study(study_path, nodes, overrides, day(as_of))
+    refuse_idle_draws(seed, jobs, study.study.draws.number if draws is None else draws)
     folder = out or Path(f"evenload-{study.id}")
     result = api.run(
         study,
@@ -101,6 +105,14 @@ def _check_since(since: Path | None, ratio_only: bool, anyway: bool) -> None:
         raise UsageError(message)
     if anyway and since is None:
         message = "--anyway says how to compare with an earlier record; give --since RECORD too"
+        raise UsageError(message)
+
+
+def refuse_idle_draws(seed: int | None, jobs: int, draws: int | None) -> None:
+    """Refuse a seed or processes for draws where nothing is drawn."""
+    idle = [name for name, given in (("--seed", seed is not None), ("--jobs", jobs > 1)) if given]
+    if idle and draws == 0:
+        message = f"{' and '.join(idle)} without draws: nothing would be drawn; state --draws"
         raise UsageError(message)
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import os
 import tempfile
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from pathlib import Path
 
 import typer
@@ -12,7 +12,25 @@ import typer
 from benchmark.cli.forms import check_form
 from benchmark.errors import EvenloadError, UsageError
 
-__all__ = ["export_command"]
+__all__ = ["export_command", "refuse_idle"]
+
+#: options that say something about a netlist alone
+NETLIST_OPTIONS = ("--side", "--supply", "--node", "--net", "--capacitances", "--nodes", "--set")
+
+
+def refuse_idle(given: Mapping[str, bool], *, netlist: bool, tables: bool, figures: bool) -> None:
+    """Refuse options of something that is not written; ``given``: option -> whether it was stated."""
+    homes = dict.fromkeys(NETLIST_OPTIONS, "--netlist") | {"--format": "--tables"}
+    written = {"--netlist": netlist, "--tables": tables}
+    idle = [f"{name} belongs to {homes[name]}" for name in homes if given.get(name) and not written[homes[name]]]
+    if given.get("--ratio-only") and netlist:
+        idle.append("--ratio-only and --netlist exclude each other: a deck holds absolute values")
+    if idle:
+        message = "; ".join(idle)
+        raise UsageError(message)
+    if not (netlist or tables or figures):
+        message = "export needs --figures FOLDER, --tables FOLDER or --netlist FILE"
+        raise UsageError(message)
 
 
 def export_command(record_folder: Path, figures: Path | None, tables: Path | None, form: str, ratio_only: bool) -> None:
@@ -21,9 +39,6 @@ def export_command(record_folder: Path, figures: Path | None, tables: Path | Non
     from benchmark.report.publish import write_figures
     from benchmark.report.publish_tables import FORMATS, write_tables
 
-    if figures is None and tables is None:
-        message = "export needs --figures FOLDER, --tables FOLDER or both"
-        raise UsageError(message)
     check_form(form, FORMATS)
     record = read_record(record_folder)
     if ratio_only:

@@ -42,8 +42,11 @@ class _Count:
             sys.stderr.write(f"\r\x1b[K{self.made} comparisons")
             sys.stderr.flush()
 
-    def done(self) -> None:
-        """Wipe the line."""
+    def __enter__(self) -> None:
+        pass
+
+    def __exit__(self, *stopped: object) -> None:
+        """Wipe the line, also when the question is interrupted."""
         if self.active:
             sys.stderr.write("\r\x1b[K")
             sys.stderr.flush()
@@ -123,7 +126,7 @@ def need_command(
     told = _Count()
     more: dict[str, Any] = {"advantage": advantage, "pair": pair, "told": told}
     scan: dict[str, Any] = {} if points is None else {"points": points}
-    with study_inputs(study_path, overrides) as (path, numbers):
+    with told, study_inputs(study_path, overrides, nodes) as (path, numbers):
         view = api.load_study(path, nodes, numbers)
         if trade:
             found = api.trade(view, names[0], names[1], over=ranges, **more, **scan)
@@ -138,7 +141,6 @@ def need_command(
             found = api.flips(view, up_to=flips, **more)
         else:
             found = api.need(view, names, over=ranges, **more, **scan)
-    told.done()
     _print(found, form)
 
 

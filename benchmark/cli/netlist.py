@@ -43,7 +43,7 @@ def netlist_command(
     check_folders(nodes)
     chosen_capacitances = _capacitances(capacitances)
     _refuse_other_files(target)
-    with study_inputs(study_path, overrides or {}) as (path, numbers):
+    with study_inputs(study_path, overrides or {}, nodes) as (path, numbers):
         study, _ = load_study(path, nodes, numbers)
         chosen = choose_point(study, node_pair(study, node), side, supply)
         points = design_points(chosen.run.problem, np.array([[chosen.supply]]), *chosen.choice)

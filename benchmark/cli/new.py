@@ -17,11 +17,15 @@ KINDS = ("study", "technology", "circuit", "curves")
 _LABEL = re.compile(r"[A-Za-z0-9][A-Za-z0-9_.\-]{0,80}")
 
 
-def new_command(kind: str, path: Path, model_name: str) -> None:
-    """Write a template of the kind at ``path``; its id is the stem of the file."""
+def new_command(kind: str, path: Path, model: str | None = None) -> None:
+    """Write a template of the kind at ``path``; its id is the stem of the file. ``model``: of a technology."""
     if kind not in KINDS:
         message = f"there is no template {kind!r}; known are {', '.join(KINDS)}; {nearest(kind, KINDS)}".rstrip("; ")
         raise UsageError(message)
+    if model is not None and kind != "technology":
+        message = f"--model belongs to a new technology; a {kind} has none"
+        raise UsageError(message)
+    model_name = "given" if model is None else model
     stem = _stem(path, kind)
     texts = _texts(kind, stem, model_name)
     files = {path.parent / name: _hint(name, path.parent, kind, model_name) + text for name, text in texts.items()}

@@ -26,7 +26,7 @@ def trace_command(
 ) -> None:
     """Print the arithmetic of one design point of one side."""
     check_folders(nodes)
-    with study_inputs(study_path, overrides) as (path, numbers):
+    with study_inputs(study_path, overrides, nodes) as (path, numbers):
         study, _ = load_study(path, nodes, numbers)
         chosen = choose_point(study, node_pair(study, node), side, supply)
         lines = [
