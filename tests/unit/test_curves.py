@@ -7,6 +7,7 @@ from decimal import Decimal
 from fractions import Fraction
 from pathlib import Path
 
+import mpmath
 import numpy as np
 import pytest
 
@@ -268,6 +269,23 @@ def test_one_column_per_curve_beside_a_shared_axis(tmp_path: Path):
     ]
 
 
+def test_a_shared_value_column_belongs_to_every_curve(tmp_path: Path):
+    shared = AMPERE.replace('"I"', '"R"').replace("path_current", "path_resistance").replace('"A"', '"ohm"')
+    one = AMPERE + 'labels = { device = "A1" }\n'
+    other = AMPERE.replace('"I"', '"J"') + 'labels = { device = "A2" }\n'
+    found = read(put(tmp_path, "V,I,J,R\n0,1,2,7\n1,3,4,8\n", PLAIN + VOLT + one + other + shared))
+    assert [sweep.labels for sweep in found.sweeps] == [{"device": "A1"}, {"device": "A2"}]
+    assert values(found, "path_resistance") == [[7.0, 8.0], [7.0, 8.0]]
+    assert values(found, "path_current") == [[1.0, 3.0], [2.0, 4.0]]
+
+
+def test_words_in_quotes_may_hold_the_delimiter(tmp_path: Path):
+    die = '[[column]]\nheader = "Die"\nmeaning = "device"\nkind = "label"\n'
+    raw = 'V, I, "Die"\n0, 1e-9, "row 1, left"\n1, 2e-9, "row 1, left"\n'
+    (sweep,) = read(put(tmp_path, raw, PLAIN + VOLT + AMPERE + die)).sweeps
+    assert sweep.labels == {"device": "row 1, left"}
+
+
 def test_logarithms_are_powers_of_ten_in_the_stated_unit(tmp_path: Path):
     one = PLAIN + VOLT + AMPERE.replace('"I"', '"log10(I/A)"') + 'scale = "log10"\n'
     other = PLAIN + VOLT + AMPERE.replace('"I"', '"log10(I/uA)"').replace('"A"', '"uA"') + 'scale = "log10"\n'
@@ -278,6 +296,16 @@ def test_logarithms_are_powers_of_ten_in_the_stated_unit(tmp_path: Path):
     assert first[1] == 1e-9
     assert np.allclose(first, [10**-12.5, 1e-9, 10**-3.123456], rtol=1e-14, atol=0.0)
     assert any("ten to the power of the number" in note for note in ampere.notes)
+
+
+def test_powers_of_ten_are_rounded_once(tmp_path: Path):
+    """Two hundred logarithms against the arithmetic of mpmath with 60 digits, rounded to a float once."""
+    drawn = np.random.default_rng(7).integers(-150_000_000, -10_000_000, 200)
+    texts = [f"{Decimal(int(number)).scaleb(-7):f}" for number in sorted(set(drawn.tolist()))]
+    raw = "V,I\n" + "\n".join(f"{k},{text}" for k, text in enumerate(texts)) + "\n"
+    (found,) = values(read(put(tmp_path, raw, PLAIN + VOLT + AMPERE + 'scale = "log10"\n')), "path_current")
+    with mpmath.workdps(60):
+        assert found == [float(mpmath.mpf(10) ** mpmath.mpf(text)) for text in texts]
 
 
 def test_logarithms_nobody_declared_are_refused(tmp_path: Path):
@@ -429,6 +457,20 @@ def test_other_tops_are_not_asked_about(currents: str, tmp_path: Path):
 def test_a_flat_top_of_a_capacitance_is_nothing_to_ask_about(tmp_path: Path):
     farad = AMPERE.replace("path_current", "input_capacitance").replace('unit = "A"', 'unit = "fF"')
     assert len(read(put(tmp_path, "V,I\n0,1\n1,1\n2,1\n", PLAIN + VOLT + farad)).sweeps) == 1
+
+
+def test_limits_include_their_own_value_and_follow_the_width(tmp_path: Path):
+    limits = 'per_width = true\nfloor = { value = 1, unit = "pA" }\ncompliance = { value = 1, unit = "mA" }\n'
+    wide = PLAIN.replace("fixed = {", 'fixed = { width = { value = 3, unit = "um" },')
+    (sweep,) = read(put(tmp_path, "V,I\n0,1e-12\n1,1.1e-12\n2,0.9e-3\n3,1e-3\n", wide + VOLT + AMPERE + limits)).sweeps
+    assert sweep.at_floor["path_current_per_width"].tolist() == [True, False, False, False]
+    assert sweep.at_compliance["path_current_per_width"].tolist() == [False, False, False, True]
+    assert (
+        sweep.floor["path_current_per_width"]
+        == sweep.columns["path_current_per_width"][0]
+        == float(Fraction(1, 3000000))
+    )
+    assert sweep.compliance["path_current_per_width"] == sweep.columns["path_current_per_width"][3]
 
 
 def test_every_value_column_has_its_own_marks(tmp_path: Path):
