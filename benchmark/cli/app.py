@@ -295,8 +295,9 @@ def export(
     """Write figures and tables for papers and boards from a record, or one design point as a deck for ngspice."""
     from benchmark.cli.export import export_command, refuse_idle
 
-    given = {"--side": side, "--supply": supply, "--node": node or None, "--net": net or None, "--nodes": nodes}
-    given |= {"--capacitances": capacitances, "--set": set_, "--format": form, "--ratio-only": ratio_only or None}
+    given: dict[str, object] = {"--side": side, "--supply": supply, "--node": node or None, "--net": net or None}
+    given |= {"--capacitances": capacitances, "--set": set_, "--nodes": nodes, "--format": form}
+    given |= {"--ratio-only": ratio_only or None}
     refuse_idle(
         {name: value is not None for name, value in given.items()},
         netlist=netlist is not None,
