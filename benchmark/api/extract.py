@@ -113,7 +113,7 @@ class Extraction:
         Parameters
         ----------
         set_file : str or Path
-            A technology or wires set that states every value named by a request.
+            A technology or wires set; a value of its model that it does not state yet is added.
         reason : str
             Why the old numbers are no longer used; default: that they were read off this file.
         old_date : date or str, optional
@@ -215,7 +215,8 @@ class Extraction:
             _day(curves.date),
             " ".join((reason or f"read off {Path(curves.file).name}").split()),
             old_date,
-            {"file": Path(read_from).as_posix(), "digest": curves.digest},
+            {"file": Path(read_from).as_posix(), "digest": curves.digest} | ({"hero": True} if curves.hero else {}),
+            may_add=True,
         )
         return restated, notes
 

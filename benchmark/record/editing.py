@@ -13,6 +13,7 @@ from typing import Any
 
 import numpy as np
 
+from benchmark.devices import model
 from benchmark.errors import EvenloadError, InputRefused, Problem, nearest
 from benchmark.record.changes.compare import compare_sets
 from benchmark.record.changes.states import state_of_set
@@ -59,7 +60,8 @@ class Restated:
     the word ``keep``. ``told``: what else changes in the table (evidence, source, where, conditions, note, owner,
     bound), None to leave a key out. ``reason``: why the old number is no longer used; empty to correct the words in
     place. ``old_date``: day from which the old number held, where the file does not say. ``extracted_from``: file and
-    digest of the data a new number was read off; a new number without it was not read off a file.
+    digest of the data a new number was read off; a new number without it was not read off a file. ``may_add``: a value
+    of the model that the set does not state is added to it.
     """
 
     name: str
@@ -70,7 +72,8 @@ class Restated:
     date: datetime.date | None
     reason: str
     old_date: datetime.date | None = None
-    extracted_from: Mapping[str, str] | None = None
+    extracted_from: Mapping[str, Any] | None = None
+    may_add: bool = False
 
 
 @dataclass(frozen=True)
@@ -190,11 +193,17 @@ def _judged(opened: OpenSet, text: str) -> tuple[ParameterSet, tuple[str, ...]]:
     return item, tuple(str(warning) for warning in sorted(set(collector.warnings)))
 
 
+def _inputs(item: ParameterSet) -> frozenset[str]:
+    """Names that the model of a technology reads."""
+    return frozenset(entry.name for entry in model(item.model).inputs) if item.kind == "technology" else frozenset()
+
+
 def _edit(opened: OpenSet, one: Restated, collector: Collector) -> Edit | None:
     """Return the new words of a value table."""
     file, nodes, before = opened.file, opened.item.nodes, len(collector.problems)
     dotted, known = f"value.{one.name}", file.data.get("value", {})
-    if one.name not in known:
+    added = one.name not in known and one.may_add and one.name in _inputs(opened.item) and "" in one.numbers
+    if one.name not in known and not added:
         collector.add(file.problem(dotted, "is not stated in the set", "", ", ".join(known), nearest(one.name, known)))
         return None
     unknown = [node for node in one.numbers if node and node not in nodes]
@@ -204,7 +213,7 @@ def _edit(opened: OpenSet, one: Restated, collector: Collector) -> Edit | None:
                 dotted, "is asked for a node the set does not have", node, ", ".join(nodes), nearest(node, nodes)
             )
         )
-    table = opened.table(one.name)
+    table = {} if added else opened.table(one.name)
     if table.get("formula") and one.reason and not unknown:
         collector.add(
             file.problem(
@@ -295,12 +304,14 @@ def _following(opened: OpenSet, restated: Sequence[Restated]) -> list[Edit]:
     for one in restated:
         if not one.reason:
             continue
-        unit, value = _unit(one.unit), opened.item.values[one.name]
+        unit, value = _unit(one.unit), opened.item.values.get(one.name)
         if unit is None:
             return []  # the check of the changed set names it
         if "" in one.numbers:
             moved[one.name] = np.array([to_si(one.numbers[""], unit)])
             continue
+        if value is None:
+            continue  # a value that is new to the set: no formula names it
         array = np.array(np.broadcast_to(value.si, (len(opened.item.nodes),)))
         for node, number in one.numbers.items():
             array[opened.item.position(node)] = to_si(number, unit)
@@ -333,8 +344,8 @@ def _unit(text: str) -> Unit | None:
 def _line(row: Mapping[str, Any], reason: str) -> str:
     """One line of the list of changes."""
     source = row["source_new"]
-    if "value" in row["changed"]:
-        old, new = (Decimal(f"{row[end]:.12g}") for end in ("old", "new"))
+    if {"value", "added"} & set(row["changed"]):
+        old, new = (None if row[end] is None else Decimal(f"{row[end]:.12g}") for end in ("old", "new"))
         return change_text(row["key"], old, new, row["unit"], node=row["node"], source=source, reason=reason)
     place = f"{row['key']} at {row['node']}" if row["node"] else row["key"]
     words = []

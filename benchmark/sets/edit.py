@@ -30,7 +30,7 @@ class Edit:
 
     ``changed``: key of the table to what it says now, None to leave it out. ``date`` and ``reason``: what the table
     said before goes into its history; without ``reason`` it is corrected in place. ``old_date``: day from which the
-    old number held, for a table that does not say.
+    old number held, for a table that does not say. A value that the set does not state gets a table at the end.
     """
 
     name: str
@@ -56,8 +56,13 @@ def edited_text(file: TomlFile, edits: Sequence[Edit], collector: Collector) -> 
     document = tomlkit.parse(file.text)
     wanted = copy.deepcopy(file.data)
     before = len(collector.problems)
+    stated = wanted.setdefault("value", {})
+    added = [edit for edit in edits if edit.name not in stated]
     for edit in edits:
-        table: Data = wanted["value"][edit.name]
+        if edit in added:
+            stated[edit.name] = {key: item for key, item in edit.changed.items() if item is not None}
+            continue
+        table: Data = stated[edit.name]
         entry = _entry(file, edit, table, collector) if edit.reason else None
         _apply(document["value"][edit.name], edit, entry)
         for key, item in edit.changed.items():
@@ -70,6 +75,8 @@ def edited_text(file: TomlFile, edits: Sequence[Edit], collector: Collector) -> 
     if len(collector.problems) > before:
         return None
     text = tomlkit.dumps(document)
+    text += "" if text.endswith("\n") or not added else "\n"
+    text += "".join(f"\n[value.{edit.name}]\n{_lines(stated[edit.name])}" for edit in added)
     if "\r\n" in file.text:
         text = text.replace("\r\n", "\n").replace("\n", "\r\n")
     again = parse_toml(file.path, text, file.name, Collector())
@@ -197,6 +204,11 @@ def _item(value: Any) -> Any:
     import tomlkit
 
     return tomlkit.parse(f"x = {_written(value)}\n")["x"]
+
+
+def _lines(table: Data) -> str:
+    """Write a table key by key."""
+    return "".join(f"{key} = {_written(item)}\n" for key, item in table.items())
 
 
 def _written(value: Any) -> str:

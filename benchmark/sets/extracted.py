@@ -1,4 +1,4 @@
-"""Numbers read off measured data: whether the data are still what they were (layer 2)."""
+"""Numbers read off measured data: whether the data are still what they were, and a typical sample (layer 2)."""
 
 from __future__ import annotations
 
@@ -32,6 +32,9 @@ def check_data(said: ExtractedFrom, file: TomlFile, dotted: str, collector: Coll
             file.problem(inside, "is not a path from this file", repr(said.file), "such as ../tables/name.csv")
         )
         return
+    if said.hero:
+        what = "was read off a hero device: one chosen sample, not a typical one"
+        collector.warn(file.problem(dotted, what, repr(said.file), "", "take the median of many devices"))
     path = file.path.parent / said.file
     if not is_file(path):
         return

@@ -147,6 +147,7 @@ class ExtractedFrom(FileModel):
 
     file: Text = Field(description="File with the data, by its path from this file")
     digest: Annotated[str, Field(pattern=_DIGEST)] = Field(description="sha256 of its bytes then; check compares")
+    hero: bool = Field(default=False, description="true: one chosen device, not a typical one; check warns")
 
 
 ReadOff = Annotated[

@@ -140,6 +140,36 @@ def test_a_set_takes_the_numbers_and_keeps_the_old_ones(folder: Path, evenload: 
     assert "new wafer" in changes
 
 
+def test_a_value_that_the_set_does_not_state_is_added(folder: Path):
+    path = folder / "nodes" / "technologies" / NAME
+    before = path.read_text(encoding="utf-8")
+    description = folder / "data" / "nfet-7um-path-1p8V.toml"
+    fitted = 'quantity = "fitted_swing"\n'
+    told = description.read_text(encoding="utf-8").replace("name = ", "# name = ")
+    description.write_text(told.replace(fitted, fitted + 'name = "subthreshold_swing_p"\n'), encoding="utf-8")
+    edited = api.extract(description).into(path)
+    assert edited.text.startswith(before)
+    table = tomllib.loads(path.read_text(encoding="utf-8"))["value"]["subthreshold_swing_p"]
+    assert table["value"] == near(92.97421, rel=1e-6)
+    assert table["unit"] == "mV/decade"
+    assert "superseded" not in table
+    assert "subthreshold_swing_p, absent -> 92.9742" in (folder / "nodes" / "CHANGES.md").read_text(encoding="utf-8")
+    assert check_paths([path]).problems == ()
+
+
+def test_a_hero_device_is_named_as_such(folder: Path, evenload: Run):
+    path = folder / "nodes" / "technologies" / NAME
+    description = folder / "data" / "nfet-7um-path-1p8V.toml"
+    told = description.read_text(encoding="utf-8")
+    description.write_text(told.replace('where = "nfet', 'hero = true\nwhere = "nfet'), encoding="utf-8")
+    said = " ".join(evenload("extract", description, "--into", path, "--old-date", "2010-01-01").out.split())
+    assert "holds a hero device: one chosen sample, not a typical one" in said
+    warned = [str(one) for one in check_paths([path]).warnings]
+    assert sum("was read off a hero device: one chosen sample, not a typical one" in one for one in warned) == 3
+    note = tomllib.loads(path.read_text(encoding="utf-8"))["value"]["on_current"]["note"]
+    assert "a hero device, not a typical one" in note
+
+
 def test_check_says_when_the_data_changed(folder: Path, evenload: Run):
     path = folder / "nodes" / "technologies" / NAME
     api.extract(folder / "data" / "nfet-7um-path-1p8V.toml").into(path, old_date="2010-01-01")
@@ -205,7 +235,10 @@ def test_what_cannot_go_into_a_set_is_refused(folder: Path, evenload: Run):
         return str(caught.value)
 
     assert "does not say on which day the curves were measured" in refused(told.replace("date = 2022-01-01\n", ""))
-    assert "is not stated in the set" in refused(told.replace('name = "on_current"', 'name = "effective_current_p"'))
+    level = 'quantity = "threshold_at_current"\n'
+    assert "is not stated in the set" in refused(told.replace(level, level + 'name = "closing_voltage"\n'))
+    said = refused(told.replace('name = "on_current"', 'name = "effective_current_p"'))
+    assert "value.effective_current_p: and channel_mobility_p fix the same thing" in said
     both = told.replace('quantity = "fitted_swing"\n', 'quantity = "fitted_swing"\nname = "subthreshold_swing"\n')
     assert "names a value that another request gives too; found subthreshold_swing" in refused(both)
     mixed = both.replace('name = "subthreshold_swing"\n', 'name = "subthreshold_swing"\nnode = "n45"\n', 1)

@@ -392,6 +392,7 @@ def test_spread_of_devices_is_kept_apart_from_the_error_of_measurement():
     assert over.median_error == near(math.hypot(math.sqrt(math.pi / 2.0) * seen / math.sqrt(41), 0.2))
     noisy = over_devices([device(float(v), "", Part("scatter of the points", 5.0)) for v in values])
     assert noisy.device_spread is None
+    assert noisy.median_error == near(math.sqrt(math.pi / 2.0) * 5.0 / math.sqrt(41))
 
 
 def test_a_median_stands_on_bounds_only_where_they_can_move_it():

@@ -37,8 +37,9 @@ class OverDevices:
     distribution. ``measured``: root mean square of what makes the numbers of single devices uncertain one by one
     (scatter and spacing of points). ``device_spread``: what is left of the spread without it, the root of the
     difference of squares; None where the measurement explains all of it. ``common``: root mean square of the stated
-    accuracies of reading and setting, which move all devices alike. ``median_error``: 1.2533 seen/sqrt(n) and the
-    common part together. ``count`` devices, ``bounds`` of them known only by a bound.
+    accuracies of reading and setting, which move all devices alike. ``median_error``: 1.2533/sqrt(n) times the spread
+    seen, or times ``measured`` where that is larger, together with the common part. ``count`` devices, ``bounds`` of
+    them known only by a bound.
     """
 
     median: float
@@ -97,7 +98,9 @@ def over_devices(found: Sequence[Extracted]) -> OverDevices:
         common=common,
         device_spread=left,
         median_error=(
-            None if seen is None or bound else math.hypot(NORMAL_MEDIAN * seen / math.sqrt(len(found)), common)
+            None
+            if seen is None or bound
+            else math.hypot(NORMAL_MEDIAN * max(seen, measured) / math.sqrt(len(found)), common)
         ),
         count=len(found),
         bounds=int(np.sum(below | above)),
