@@ -266,6 +266,15 @@ V,V,degC,-,uA,s
 0.3,0.3,25,A2,2.41,7
 """
 
+REQUESTS = f"""\
+{RAW_CURVES}
+[[extract]]
+quantity = "average_swing"
+span = {{ low = 1.0e-10, high = 1.0e-8, unit = "A/um" }}
+name = "subthreshold_swing"
+over = "A1"
+"""
+
 SIDE_BY_SIDE = """\
 schema = 1
 kind = "curves"
@@ -319,6 +328,10 @@ def files(kind: str) -> dict[str, str]:
         "sources": {"sources.toml": SOURCES},
         "table": {"technologies/curves.toml": TABLE_SET, **tables},
         "curves": {"raw.toml": RAW_CURVES, "raw.csv": RAW},
+        "requests": {
+            "raw.toml": REQUESTS,
+            "raw.csv": RAW.replace("0.1,0.3,25,A1", "0.05,0.3,25,A1,1e-5,1\n0.1,0.3,25,A1"),
+        },
         "side-by-side": {"side.toml": SIDE_BY_SIDE, "side.csv": SIDE},
         "study": mixed().files(),
     }[kind]

@@ -14,7 +14,7 @@ from tests import refusals
 from tests.refusals import Case, cases, check, files
 
 CASES = dict(cases())
-KINDS = ["technology", "stages", "wires", "circuit", "sources", "table", "curves", "side-by-side", "study"]
+KINDS = ["technology", "stages", "wires", "circuit", "sources", "table", "curves", "requests", "side-by-side", "study"]
 #: messages that need more than a spoiled file; the tests that read them are named
 ELSEWHERE = {
     "is a folder, a file is needed": "test_files.py",
@@ -121,10 +121,7 @@ def _messages(path: Path) -> set[str]:
 
 
 MODULES = sorted(
-    path
-    for package in (benchmark.sets, benchmark.curves)
-    for path in Path(str(package.__file__)).parent.glob("*.py")
-    if path.name != "requests.py"  # read whole in the tests of requests
+    path for package in (benchmark.sets, benchmark.curves) for path in Path(str(package.__file__)).parent.glob("*.py")
 )
 
 
