@@ -16,6 +16,7 @@ from typing import Annotated
 import typer
 
 import benchmark
+from benchmark.cli import set_commands
 from benchmark.errors import EvenloadError, InputRefused, UsageError
 
 __all__ = ["app", "main"]
@@ -40,9 +41,7 @@ MOST_PROBLEMS = 40
 #: status of a run that was interrupted from the keyboard
 STOPPED = 130
 
-Nodes = Annotated[
-    list[Path] | None, typer.Option("--nodes", help="Further folder of sets, searched first (repeatable).")
-]
+Nodes = set_commands.Nodes
 Set = Annotated[
     list[str] | None,
     typer.Option("--set", help="What-if: NAME=NUMBER or TECHNOLOGY.NAME=NUMBER, in the unit of the file."),
@@ -447,56 +446,7 @@ def changes(
     )
 
 
-@app.command()
-def supersede(
-    set_file: Annotated[Path, typer.Argument(metavar="SET", help="Set file: technology or wires (TOML).")],
-    name: Annotated[str, typer.Argument(metavar="VALUE", help="Name of the value.")],
-    number: Annotated[str, typer.Argument(metavar="NUMBER", help="Its new number, in --unit.")],
-    unit: Annotated[str, typer.Option("--unit", help="Unit of the new number; 1 for a plain number.")] = "",
-    evidence: Annotated[str, typer.Option("--evidence", help="Evidence class of the new number.")] = "",
-    source: Annotated[str, typer.Option("--source", help="Key of sources.toml.")] = "",
-    where: Annotated[str, typer.Option("--where", help="Place in the source; - for none.")] = "",
-    conditions: Annotated[
-        str, typer.Option("--conditions", help="What the new number holds for: temperature, sample; - for none.")
-    ] = "",
-    date: Annotated[str, typer.Option("--date", help="Day from which the new number holds (2026-01-31).")] = "",
-    reason: Annotated[str, typer.Option("--reason", help="Why the old number is no longer used.")] = "",
-    old_date: Annotated[
-        str, typer.Option("--old-date", help="Day from which the old number held, where the file does not say.")
-    ] = "",
-    node: Annotated[str, typer.Option("--node", help="Change this node only; default: one number for all nodes.")] = "",
-    spread: Annotated[
-        str,
-        typer.Option(
-            "--spread", help="Range: 'lognormal factor 1.25', 'normal percent 5', 'uniform 160 180', none, or keep."
-        ),
-    ] = "",
-    note: Annotated[str, typer.Option("--note", help="Note on the new number; the old note goes with the old.")] = "",
-    owner: Annotated[str, typer.Option("--owner", help="Who decided; default: as it was.")] = "",
-    bound: Annotated[str, typer.Option("--bound", help="The new number is a bound only: at-least or at-most.")] = "",
-    dry_run: Annotated[bool, typer.Option("--dry-run", help="Check and print the change, write nothing.")] = False,
-    form: Annotated[str, typer.Option("--format", help="text, csv or json.")] = "text",
-    nodes: Nodes = None,
-) -> None:
-    """Give a value of a set a new number: the old one stays in the file, derived values follow, CHANGES.md says so."""
-    from benchmark.cli.edit import supersede_command
-
-    told = {
-        "unit": unit,
-        "evidence": evidence,
-        "source": source,
-        "where": where,
-        "conditions": conditions,
-        "date": date,
-        "reason": reason,
-        "old_date": old_date,
-        "node": node,
-        "spread": spread,
-        "note": note,
-        "owner": owner,
-        "bound": bound,
-    }
-    supersede_command(set_file, name, number, told, nodes=nodes or [], form=form, dry_run=dry_run)
+set_commands.add_to(app)
 
 
 @app.command()

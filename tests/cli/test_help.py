@@ -13,10 +13,12 @@ import pytest
 
 import benchmark
 import benchmark.cli.app as app_module
+import benchmark.cli.set_commands as set_module
 from tests.cli.conftest import Run
 
 #: pydantic is not listed: the command-line library itself imports it (about 50 ms)
 HEAVY = ("numpy", "scipy", "pandas", "pint", "altair", "vl_convert", "jinja2", "rich", "tomllib")
+MODULES = (app_module, set_module)
 COMMANDS = (
     "run",
     "demo",
@@ -95,8 +97,9 @@ def test_wrong_usage_is_status_2(arguments: list[str], evenload: Run):
 
 def test_every_option_of_a_command_is_used():
     """An option that is taken and then forgotten would be accepted without any effect."""
-    tree = ast.parse(Path(inspect.getsourcefile(app_module) or "").read_text(encoding="utf-8"))
-    commands = [item for item in tree.body if isinstance(item, ast.FunctionDef) and item.decorator_list]
+    trees = [ast.parse(Path(inspect.getsourcefile(module) or "").read_text(encoding="utf-8")) for module in MODULES]
+    functions = [item for tree in trees for item in tree.body if isinstance(item, ast.FunctionDef)]
+    commands = [item for item in functions if any(word in ast.unparse(item.args) for word in ("Option", "Argument"))]
     assert {item.name.removesuffix("_export").removesuffix("_import") for item in commands} >= set(COMMANDS)
     for command in commands:
         used = {node.id for part in command.body for node in ast.walk(part) if isinstance(node, ast.Name)}
