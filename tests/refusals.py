@@ -330,7 +330,7 @@ def files(kind: str) -> dict[str, str]:
         "curves": {"raw.toml": RAW_CURVES, "raw.csv": RAW},
         "requests": {
             "raw.toml": REQUESTS,
-            "raw.csv": RAW.replace("0.1,0.3,25,A1", "0.05,0.3,25,A1,1e-5,1\n0.1,0.3,25,A1"),
+            "raw.csv": RAW.replace("0.2,0.3,25,A1", "0.15,0.3,25,A1,1e-3,1\n0.2,0.3,25,A1"),
         },
         "side-by-side": {"side.toml": SIDE_BY_SIDE, "side.csv": SIDE},
         "study": mixed().files(),
