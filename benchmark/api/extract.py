@@ -253,9 +253,15 @@ def extract(path: Place) -> Extraction:
     """
     from benchmark.curves.extraction import extract_all
     from benchmark.curves.read import read_curves
+    from benchmark.sets.files import read_toml, shown
     from benchmark.sets.problems import Collector
 
     place, collector = Path(path), Collector()
+    file = read_toml(place, collector)
+    collector.raise_if_any()
+    if file is not None and file.data.get("kind") != "curves":
+        what = "is no description of a raw measured file"
+        raise InputRefused([file.problem("kind", what, shown(file.data.get("kind", "none")), 'kind = "curves"')])
     curves = read_curves(place, collector)
     collector.raise_if_any()
     if curves is None:

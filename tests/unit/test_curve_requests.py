@@ -334,6 +334,16 @@ def test_a_description_that_asks_for_nothing_is_refused(tmp_path: Path):
         api.extract(write(tmp_path, ""))
 
 
+def test_a_file_of_another_kind_is_refused_in_one_line(tmp_path: Path):
+    (tmp_path / "study.toml").write_text('schema = 1\nkind = "wires"\n', encoding="utf-8")
+    with pytest.raises(InputRefused) as caught:
+        api.extract(tmp_path / "study.toml")
+    (problem,) = caught.value.problems
+    assert str(problem).endswith(
+        "study.toml:2: kind: is no description of a raw measured file; found 'wires'; allowed: kind = \"curves\""
+    )
+
+
 # -- dialects --------------------------------------------------------------------------------------------------
 
 
