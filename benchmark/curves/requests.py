@@ -166,6 +166,7 @@ def _convert(
     for key in sorted(stated - allowed):
         words = ", ".join(sorted(allowed - {"quantity"}))
         collector.add(file.problem(f"{dotted}.{key}", f"is not used by {table.quantity}", "", words))
+    table = table.model_copy(update=dict.fromkeys(stated - allowed))  # what is idle is judged no further
     if table.node is not None and table.name is None:
         collector.add(file.problem(f"{dotted}.node", "has no value it belongs to", "", 'name = "..."'))
     if along not in kind.along:
