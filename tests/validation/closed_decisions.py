@@ -241,6 +241,9 @@ def _traded() -> Iterator[Check]:
     own = first.best * float(mpmath.sqrt(mpmath.mpf(REQUIRED) / 2))
     yield _check("coefficient on the specification sheet [m/V]", LAW, own, need.crossings[0].x, 1e-6 * own, "root")
     found = joint_sheet.joint_sheet(trials, REQUIRED, specification.spread_effects(trials, REQUIRED))
+    # exponents 2 and -1 with equal spreads: the coefficient moves the advantage most
+    (largest,) = specification.most_effective(trials, 1)
+    yield _check("value of the candidate with the largest effect [m/V]", LAW, first.best, largest.best, 0.0, "exact")
     own = float(mpmath.log(mpmath.mpf(REQUIRED) / 2) / mpmath.mpf("0.6"))
     yield _check("steps of coefficient and capacitance together [1]", LAW, own, found.steps, 1e-5, "leakage, root")
     value = float(joint_sheet.moved_value(trials.values[KEYS["coefficient"]], 1.0, own).si[0])
