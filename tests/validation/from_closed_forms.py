@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from tests.validation import closed_decisions, closed_physics
+from tests.validation import closed_decisions, closed_links, closed_physics
 from tests.validation.check import Check
 
 __all__ = ["checks"]
@@ -10,4 +10,4 @@ __all__ = ["checks"]
 
 def checks() -> list[Check]:
     """Every result."""
-    return [*closed_physics.checks(), *closed_decisions.checks()]
+    return [*closed_physics.checks(), *closed_decisions.checks(), *closed_links.checks()]
