@@ -139,8 +139,8 @@ def extrapolated_threshold(
         line_y=np.asarray(fit.intercept + fit.slope * line),
         used=points.place[usable[best : best + neighbours]],
         remarks=(
-            f"largest of {slopes.size} slopes, each over {neighbours} neighbouring points; scatter makes a largest slope "
-            f"too large and the threshold too high; {told}",
+            f"largest of {slopes.size} slopes, each over {neighbours} neighbouring points; scatter makes a largest "
+            f"slope too large and the threshold too high; {told}",
         ),
     )
 
