@@ -24,7 +24,6 @@ __all__ = [
     "constrained_modulus",
     "coupling_factor",
     "coupling_from_resonance",
-    "coupling_gap",
     "cubic_axis_modulus",
     "frequency_constant",
     "permittivity_clamped",
@@ -68,15 +67,6 @@ def coupling_factor(coefficient: ArrayLike, compliance: ArrayLike, permittivity:
     """
     d, s, eps = _float(coefficient), _float(compliance), _float(permittivity)
     return np.asarray(np.abs(d) / np.sqrt(s * eps), dtype=np.float64)
-
-
-def coupling_gap(coefficient: ArrayLike, compliance: ArrayLike, permittivity: ArrayLike, published: ArrayLike) -> Array:
-    """Return k33 implied by the constants over the published k33, minus 1 [1].
-
-    Published tables fail this identity by several percent when they mix specimens of different shape.
-    Arguments as in `coupling_factor`; ``published`` is k33 [1].
-    """
-    return np.asarray(coupling_factor(coefficient, compliance, permittivity) / _float(published) - 1.0)
 
 
 def compliance_constant_displacement(compliance: ArrayLike, coupling: ArrayLike) -> Array:
