@@ -25,6 +25,7 @@ from benchmark.sets.problems import Collector
 from benchmark.sets.schema import DefaultsTable, validate
 from benchmark.sets.sources import read_sources
 from benchmark.sets.values import Place, read_provenance
+from benchmark.units import UnitError, parse_unit
 
 __all__ = ["read_curves"]
 
@@ -242,9 +243,10 @@ def _units(columns: list[Column], reading: Reading) -> Mapping[str, str]:
     """Unit in which each meaning is printed: that of the file, for per-width numbers with that of the width."""
     spec = reading.spec
     found: dict[str, str] = {}
+    tables = [spec.fixed, *(table.fixed for table in spec.given), *(column.fixed for column in spec.column)]
+    stated = [(name, m.unit) for table in tables for name, m in table.items() if _fits(name, m.unit)]
     widths = [column.unit.text for column in columns if column.meaning == "width"]
-    stated = [spec.fixed, *(table.fixed for table in spec.given), *(column.fixed for column in spec.column)]
-    widths += [measures["width"].unit for measures in stated if "width" in measures]
+    widths += [unit for name, unit in stated if name == "width"]
     width = [*widths, "m"][0]  # a column per width without any width is refused with its first curve
     for column in columns:
         if column.spec.kind == "label":
@@ -253,7 +255,14 @@ def _units(columns: list[Column], reading: Reading) -> Mapping[str, str]:
         if column.spec.per_width:
             unit = f"{unit} {width}" if column.spec.meaning in MULTIPLIED else f"{unit}/{width}"
         found.setdefault(column.meaning, unit)
-    for measures in stated:
-        for name, measure in measures.items():
-            found.setdefault(name, measure.unit if name in MEANINGS else "1")
+    for name, unit in stated:
+        found.setdefault(name, unit)
     return found
+
+
+def _fits(name: str, unit: str) -> bool:
+    """Tell whether a meaning is known and a unit fits it; what does not is refused elsewhere."""
+    try:
+        return name in MEANINGS and parse_unit(unit).dimension == parse_unit(MEANINGS[name].unit).dimension
+    except UnitError:
+        return False

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import itertools
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
@@ -218,14 +219,28 @@ def _sweep(
         check_flat_top(column, si, lines, reading)
         floors[column.meaning], tops[column.meaning] = at_floor(column, si), at_compliance(column, si)
         if column.floor > 0:
-            floor[column.meaning] = float(column.floor * factor)
+            floor[column.meaning] = _rounded(column.floor * factor)
         if column.compliance > 0:
-            compliance[column.meaning] = float(column.compliance * factor)
-        columns[column.meaning] = (
-            np.array([float(read.exact[row] * factor) for row in rows.tolist()]) if column.spec.per_width else si
-        )
+            compliance[column.meaning] = _rounded(column.compliance * factor)
+        if column.spec.per_width:
+            si = np.array([_rounded(read.exact[row] * factor) for row in rows.tolist()])
+        limits = [*floor.values(), *compliance.values()]
+        if not np.all(np.isfinite([*si.tolist(), *limits])):
+            where, width = (int(lines[0]), column.header), f"{float(fixed['width']):g} m"
+            table.refuse(where, "is beyond the range of the program with this width", width, "", "", most=1)
+            return None
+        columns[column.meaning] = si
     also = {name: float(number) for name, number in fixed.items()}
     return Sweep(labels, also, columns, lines, floors, tops, floor, compliance)
+
+
+def _rounded(number: Fraction) -> float:
+    """Round to a float; not a number where the program has none of that size."""
+    try:
+        si = float(number)
+    except OverflowError:
+        return math.nan
+    return math.nan if si == 0.0 and number != 0 else si
 
 
 def _check_widths(fixed: Mapping[str, Fraction], line: int, block: Block, reading: Reading) -> None:

@@ -90,7 +90,7 @@ def seeds() -> dict[str, Seed]:
     """Every seed by name."""
     found: dict[str, Seed] = {}
     shares = {"technology": 8, "stages": 6, "wires": 6, "circuit": 8, "sources": 5, "table": 8, "curves": 6}
-    for kind, share in (shares | {"side-by-side": 6}).items():
+    for kind, share in (shares | {"side-by-side": 5, "requests": 5}).items():
         files = refusals.files(kind)
         found[kind] = Seed(files, tuple(files), share)
     found["derived"] = Seed({"switch.toml": derived_set()}, ("switch.toml",), 4)

@@ -392,6 +392,21 @@ def test_absolute_numbers_beside_numbers_per_width_need_the_width(tmp_path: Path
     assert read(put(tmp_path, raw, wide + VOLT + farad + per_width)).sweeps[0].fixed["width"] == 3e-6
 
 
+def test_a_width_that_no_number_survives_is_refused(tmp_path: Path):
+    tiny = PLAIN.replace("fixed = {", 'fixed = { width = { value = 1e-300, unit = "m" },')
+    path = put(tmp_path, "V,I\n0,1\n1,1e-9\n", tiny + VOLT + AMPERE + "per_width = true\n")
+    assert len(read(path).sweeps) == 1  # 1e300 is a number of the program
+    path = put(tmp_path, "V,I\n0,1\n1,1e-9\n", tiny.replace('"m"', '"nm"') + VOLT + AMPERE + "per_width = true\n")
+    assert refusals(path) == ["raw.csv:2: I: is beyond the range of the program with this width; found 1e-309 m"]
+
+
+def test_a_wrong_unit_of_the_width_is_said_once(tmp_path: Path):
+    wrong = PLAIN.replace("fixed = {", 'fixed = { width = { value = 1, unit = "V*" },')
+    asked = '[[extract]]\nquantity = "current"\nat = { value = 1, unit = "V" }\n'
+    lines = refusals(put(tmp_path, "V,I\n0,1\n1,2\n", wrong + VOLT + AMPERE + "per_width = true\n" + asked))
+    assert lines == ["raw.toml:8: fixed.width.unit: unknown unit: 'V*' is not a unit; allowed: a unit such as m"]
+
+
 def test_a_unit_of_the_file_that_nobody_can_read_is_stated_in_the_description(tmp_path: Path):
     raw = "V,T,I\nVolts,Deg. C,A\n0,25,1e-9\n1,25,2e-9\n"
     warm = VOLT.replace('"V"\nmeaning = "control_voltage"', '"T"\nmeaning = "temperature"').replace('"V"', '"degC"')

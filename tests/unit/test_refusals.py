@@ -34,6 +34,7 @@ ELSEWHERE = {
     "looks like logarithms, and the description does not say so": "test_curves.py",
     "(further rows alike are not listed)": "test_curves.py",
     "is absolute beside numbers per width, but no width is stated": "test_curves.py",
+    "is beyond the range of the program with this width": "test_curves.py",
     "there is no such set": "test_sets_library.py",
     "is not a value of the set": "test_sets_library.py",
     "compares two nodes of ": "test_study.py",
