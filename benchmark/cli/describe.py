@@ -205,6 +205,7 @@ def value_blocks(item: ParameterSet, name: str, sources: Mapping[str, Source]) -
         ("owner", value.owner),
         ("bound", {"at-least": "a lower bound", "at-most": "an upper bound"}.get(value.bound, "")),
         ("formula", value.formula),
+        ("read off", value.read_off),
         ("date", value.date),
     ):
         if text:

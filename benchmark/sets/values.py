@@ -74,6 +74,7 @@ class Value:
     file: str = ""
     line: int = 0
     past: tuple[PastValue, ...] = ()  # oldest first
+    read_off: str = ""  # measured data it was read off, with their digest
 
     @property
     def is_default(self) -> bool:
@@ -449,6 +450,7 @@ def convert_value(
         file=file.name,
         line=file.line(place.dotted),
         past=past,
+        read_off=f"{said.file}, sha256 {said.digest}" if (said := table.extracted_from) else "",
         **provenance,
     )
 

@@ -135,6 +135,8 @@ def test_a_set_takes_the_numbers_and_keeps_the_old_ones(folder: Path, evenload: 
     assert (off["bound"], "spread" in off) == ("at-most", False)
     comments = [line for line in before.text.splitlines() if line.startswith("#")]
     assert all(line in path.read_text(encoding="utf-8") for line in comments)
+    shown = evenload("show", "silicon-45nm-high-performance.on_current", "--nodes", folder / "nodes").out
+    assert "../../data/nfet-7um-path-1p8V.mdm, sha256" in " ".join(shown.split())
     changes = (folder / "nodes" / "CHANGES.md").read_text(encoding="utf-8")
     assert "subthreshold_swing" in changes
     assert "new wafer" in changes

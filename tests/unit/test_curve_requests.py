@@ -127,6 +127,11 @@ def test_the_median_over_devices_and_what_is_left_out(tmp_path: Path):
     assert found.over is not None
     assert found.over.count == 3
     assert found.over.seen_spread == near(0.01 / 1.3489795003921634, rel=1e-9)
+    assert found.spread == found.uncertainty
+    assert one(tmp_path, AVERAGE + chosen + 'spread = "none"\n').spread is None
+    spread = one(tmp_path, AVERAGE + chosen + 'spread = "devices"\n')
+    assert spread.over is not None
+    assert spread.spread == spread.over.device_spread == near(0.01 / 1.3489795003921634, rel=1e-6)
     few = one(tmp_path, AVERAGE + chosen + 'leave_out = ["A3"]\n')
     assert few.value == near(0.065, rel=1e-12)
     assert "left out, as the description says: A3" in few.warnings
