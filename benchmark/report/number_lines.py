@@ -17,7 +17,7 @@ __all__ = ["number_lines"]
 
 Record = Mapping[str, Any]
 WIDTH, LEFT, RIGHT, PAD = 470.0, 186.0, 16.0, 8.0
-ROW = 70.0
+ROW = 76.0
 KEY, TITLE = "break-even-lines", "Break-evens and required values, axis by axis"
 BLUE = "#0072B2"
 #: a line whose ends lie further apart than this factor is logarithmic
@@ -58,7 +58,9 @@ def number_lines(record: Record, width: float = WIDTH, left: float = LEFT, right
             spots.mark(place, line.middle, start + index, _said(row))
         start += len(group)
     drawing = checked(spec(canvas.layers, width, height, (left, PAD, right, 8.0)))
+    now = rows[0]["advantage_today"]
     caption = (
+        f"Advantage today: {number(now, 3, (1.0, required)) if is_number(now) else now}. "
         "One line per value, the others at their best estimate, both sides re-optimised everywhere. Grey band: "
         "plausible range. Filled circle: today. Upright strokes: where the advantage is 1 and, thicker, the required "
         f"{number(required, 3)}. Solid: the candidate is better; bar: by the required advantage or more; dashed: the "
@@ -93,12 +95,9 @@ def _name(row: Row) -> tuple[str, str]:
 
 def _names(row: Row, left: float, top: float) -> list[Words]:
     name, owner = _name(row)
-    advantage = row["advantage_today"]
-    today = f"advantage today {number(advantage)}" if is_number(advantage) else f"today {advantage}"
-    words = [Words(cut(name, left - 14.0, bold=True), -10.0, top + 20.0, "right", bold=True)]
-    if owner:
-        words.append(Words(cut(f"of {owner}", left - 14.0), -10.0, top + 34.0, "right"))
-    return [*words, Words(cut(today, left - 14.0), -10.0, top + (48.0 if owner else 34.0), "right")]
+    beside = owner not in ("", "study")
+    words = [Words(cut(name, left - 14.0, bold=True), -10.0, top + (34.0 if beside else 41.0), "right", bold=True)]
+    return [*words, *([Words(cut(f"of {owner}", left - 14.0), -10.0, top + 48.0, "right")] if beside else [])]
 
 
 def _said(row: Row) -> str:
@@ -114,7 +113,7 @@ class _Line:
     """One number line: its axis, and for every stretch who is better."""
 
     def __init__(self, rows: Sequence[Row], width: float, top: float, required: float) -> None:
-        self.rows, self.required, self.top, self.middle = rows, required, top, top + 36.0
+        self.rows, self.required, self.top, self.middle = rows, required, top, top + 41.0
         first = rows[0]
         self.low, self.high, self.today = first["range_low"], first["range_high"], first["today"]
         self.marks = [row for row in rows if is_number(row["value"])]

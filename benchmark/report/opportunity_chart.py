@@ -53,22 +53,26 @@ def _chart(record: Record, block: Record, width: float, height: float) -> Chart:
     y = LogAxis.around([row["value"] for row in plotted], height, "1", name, vertical=True, room=0.03)
     canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, width - 3.0, height - 3.0))
     canvas.frame()
-    labels = _infeasible(canvas, plotted, placer)
-    labels += _classes(canvas, record, [row for row in shown if row["kind"] == "class"], placer)
-    _points(canvas, plotted, required)
-    labels += _boundary(canvas, shown, required, placer)
     today = next(row for row in rows if row["kind"] == "today")
+    here = x.pixel(today["deadline_s"]), y.pixel(today["value"])
+    placer.avoid_mark(*here, 9.0)
+    for row in plotted:
+        if is_number(row["advantage"]):
+            placer.avoid_point(x.pixel(row["deadline_s"]), y.pixel(row["value"]))
+    hatched = _infeasible(canvas, plotted)
+    classes = _classes(canvas, record, [row for row in shown if row["kind"] == "class"])
+    _points(canvas, plotted, required)
+    labels = _boundary(canvas, shown, required, placer)
+    placed = placer.place([f"this study: {_advantage(today)}"], [here], bold=True)
+    labels += [Label(placed, INK, True)] if placed else []
+    labels += _named(hatched, classes, placer)
     spots = Spots(*MARGINS[:2])
     for row in shown:
         if row["kind"] in ("point", "boundary", "today"):
             place = x.pixel(row["deadline_s"]), y.pixel(row["value"])
             if row["kind"] == "today" or (row["kind"] == "boundary" and row["level"] in (1.0, required)):
                 spots.mark(*place, shown.index(row), _said(row))
-    place = x.pixel(today["deadline_s"]), y.pixel(today["value"])
-    canvas.symbols([place], shape="diamond", size=150, color=INK, stroke="white", strokeWidth=1.2)
-    placer.avoid_mark(*place)
-    placed = placer.place([f"this study: {_advantage(today)}"], [place], bold=True)
-    labels += [Label(placed, INK, True)] if placed else []
+    canvas.symbols([here], shape="diamond", size=150, color=INK, stroke="white", strokeWidth=1.2)
     canvas.leaders(labels)
     canvas.backs(labels)
     canvas.words([words for label in labels for words in label.words()])
@@ -111,21 +115,34 @@ def _cells(rows: Sequence[Row], axis: LogAxis, field: str) -> dict[float, tuple[
     return {value: (edges[k], edges[k + 1]) for k, value in enumerate(places)}
 
 
-def _infeasible(canvas: Canvas, rows: Sequence[Row], placer: Placer) -> list[Label]:
-    """Hatch where a side has no permitted point, and say so."""
+def _infeasible(canvas: Canvas, rows: Sequence[Row]) -> list[tuple[str, Place]]:
+    """Hatch where a side has no permitted point; returns why, and the middle of each such part."""
     x, y = canvas.x, canvas.y
     if not isinstance(x, LogAxis) or not isinstance(y, LogAxis):
         return []
     across, along = _cells(rows, x, "deadline_s"), _cells(rows, y, "value")
-    labels: list[Label] = []
+    found: list[tuple[str, Place]] = []
     gone = [row for row in rows if not is_number(row["advantage"])]
     for reason in dict.fromkeys(row["reason"] for row in gone):
         group = [row for row in gone if row["reason"] == reason]
         boxes = [(across[row["deadline_s"]], along[row["value"]]) for row in group]
         canvas.rules([line for box in _merged(boxes) for line in hatch(box)], color="#bdbdbd")
         middle = group[len(group) // 2]
-        place = x.pixel(middle["deadline_s"]), y.pixel(middle["value"])
-        placed = placer.place(["infeasible:", *_short(reason)], [place], distances=(2.0, 20.0))
+        found.append((reason, (x.pixel(middle["deadline_s"]), y.pixel(middle["value"]))))
+    return found
+
+
+def _named(
+    hatched: Sequence[tuple[str, Place]], classes: Sequence[tuple[str, bool, Box]], placer: Placer
+) -> list[Label]:
+    """Write what is hatched and the names of the classes, the study's own first."""
+    labels: list[Label] = []
+    for name, own, box in sorted(classes, key=lambda item: not item[1]):
+        at = [(box.left, box.top), (box.right, box.top), (box.left, box.bottom), (box.right, box.bottom)]
+        placed = placer.place([name], at, bold=own, distances=(6.0, 12.0, 20.0, 30.0))
+        labels += [Label(placed, "#4a4a4a", own)] if placed else []
+    for reason, place in hatched:
+        placed = placer.place(["infeasible:", *_short(reason)], [place], distances=(2.0, 20.0, 40.0))
         labels += [Label(placed)] if placed else []
     return labels
 
@@ -153,10 +170,10 @@ def _short(reason: str) -> list[str]:
     return [words.get(reason, "cannot be evaluated")]
 
 
-def _classes(canvas: Canvas, record: Record, rows: Sequence[Row], placer: Placer) -> list[Label]:
-    """Outline the usual places of product classes, the study's own in bold."""
+def _classes(canvas: Canvas, record: Record, rows: Sequence[Row]) -> list[tuple[str, bool, Box]]:
+    """Outline the usual places of product classes, the study's own in bold; returns what is to be written where."""
     x, y = canvas.x, canvas.y
-    labels: list[Label] = []
+    found: list[tuple[str, bool, Box]] = []
     for row in rows:
         left, right = x.pixel(row["deadline_s"]), x.pixel(row["deadline_to_s"])
         top, bottom = y.pixel(row["value_to"]), y.pixel(row["value"])
@@ -171,10 +188,8 @@ def _classes(canvas: Canvas, record: Record, rows: Sequence[Row], placer: Placer
             (box.left, box.bottom, box.left, box.top),
         ]
         canvas.rules(corners, color=GREY, strokeWidth=1.6 if own else 0.9, strokeDash=[4, 2])
-        at = [(box.left, box.top), (box.right, box.top), (box.left, box.bottom), (box.right, box.bottom)]
-        placed = placer.place([row["product_class"]], at, bold=own, distances=(6.0, 12.0, 20.0, 30.0))
-        labels += [Label(placed, "#4a4a4a", own)] if placed else []
-    return labels
+        found.append((row["product_class"], own, box))
+    return found
 
 
 def _points(canvas: Canvas, rows: Sequence[Row], required: float) -> None:

@@ -165,6 +165,9 @@ def test_the_trade_curve_is_the_product_law_with_todays_cloud():
     reached = sum(row["advantage"] >= 1.5 for row in samples)
     assert f"filled where the level is reached ({reached})" in chart.caption
     assert any("today: advantage 2" in text for text in _words(chart))
+    (mark,) = [layer for layer in _layers(chart) if layer["mark"].get("shape") == "diamond"]
+    (place,) = mark["data"]["values"]
+    assert sorted(place.values()) == near([0.1, 200.0], rel=1e-9)
 
 
 def test_the_limit_of_a_trade_is_drawn_hatched_and_named():
@@ -205,6 +208,8 @@ def test_the_break_even_of_the_hub_lies_on_the_drawn_boundary():
     for x, y in ends:  # 0.49 a + 0.7 pW x T against 2 a, at every deadline
         assert y == near(0.7e3 * x / 1.51, rel=1e-9)
     assert "this study: advantage 0.42" in _words(chart)
+    (mark,) = [layer for layer in _layers(chart) if layer["mark"].get("shape") == "diamond"]
+    assert mark["data"]["values"] == [{"a": near(1e-5, rel=1e-9), "b": near(0.02, rel=1e-9)}]
 
 
 def test_the_boundary_over_the_duty_is_that_of_hand_arithmetic_at_every_deadline():
