@@ -252,7 +252,9 @@ def _ran(
     nodes: tuple[Path, ...],
     options: Mapping[str, Any],
 ) -> dict[str, Any]:
+    from benchmark.api.result import Result
     from benchmark.api.session import load_study, run
+    from benchmark.record.criteria import after_earlier
     from benchmark.record.write import read_record
 
     before = None
@@ -261,6 +263,8 @@ def _ran(
     view = load_study(path, nodes)
     result = run(view, **options)
     row = _compared(before, result.record)
+    if before is not None:
+        result = Result(after_earlier(result.record, before))
     if out is not None:
         if before is not None and row["state"] != UNCHANGED:
             result, why_not = _explained(before, view, result)

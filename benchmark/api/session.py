@@ -26,6 +26,8 @@ __all__ = ["check", "load_result", "load_set", "load_study", "run", "technologie
 Place = str | Path
 #: share of a run with needs that is done when these begin
 NEED_FROM = 0.2
+#: share of a run since an earlier record that is done when the change is worked out
+CHANGE_FROM = 0.6
 #: a what-if number; text is read as the file would read it
 WhatIf = int | float | Decimal | str
 
@@ -229,6 +231,9 @@ def run(
 
     loaded = study if isinstance(study, StudyView) else load_study(study)
     earlier = None if since is None else _earlier(since, loaded, anyway)
+    whole = progress
+    if progress is not None and earlier is not None:
+        progress = _part(progress, 0.0, CHANGE_FROM)
     told = {} if progress is None else {"progress": _part(progress, 0.0, NEED_FROM) if need else progress}
     settings = _draw_settings(loaded.study.draws, draws, seed, jobs)
     record = run_study(loaded.study, loaded.library, created=created, draws=settings, jobs=jobs, **told)
@@ -244,9 +249,14 @@ def run(
             progress("done", 1.0)
     if earlier is not None:
         from benchmark.record.changes import State, compare_states, in_record
+        from benchmark.record.criteria import after_earlier
 
+        if whole is not None:
+            whole("what changed, and why", CHANGE_FROM)
         found = compare_states(earlier, State("this run", record, loaded.study), anyway=anyway, jobs=jobs)
-        record = in_record(record, found)
+        record = in_record(dict(after_earlier(record, earlier.record)), found)
+        if whole is not None:
+            whole("done", 1.0)
     return Result(record)
 
 

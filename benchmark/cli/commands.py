@@ -77,9 +77,9 @@ def run_command(
         since=since,
         anyway=anyway,
     )
+    result = result.after(folder)
     if ratio_only:
         result = result.ratio_only()
-    result = result.after(folder)
     started = time.perf_counter()
     result.save(folder)
     seconds = time.perf_counter() - started

@@ -17,9 +17,24 @@ from benchmark.record.write import read_record
 from benchmark.sets.files import is_file
 from benchmark.sets.study import Study
 
-__all__ = ["continued", "criteria_of", "criteria_row", "criteria_words", "with_earlier"]
+__all__ = [
+    "after_earlier",
+    "continued",
+    "criteria_of",
+    "criteria_row",
+    "criteria_words",
+    "with_earlier",
+    "without_limits",
+]
 
 Row = dict[str, Any]
+#: criteria without a dimension, which a ratio-only record may tell
+_PURE = frozenset(
+    {
+        *("required advantage", "primary policy", "other policies", "metric", "exponent"),
+        *("likely from", "unlikely up to", "invented inputs"),
+    }
+)
 
 
 def criteria_of(study: Study) -> Row:
@@ -58,20 +73,46 @@ def continued(record: Mapping[str, Any], folder: Path) -> Mapping[str, Any]:
     """Return a record as it is written into a folder: with the criteria of an earlier run of the study there.
 
     An earlier record that cannot be read, or whose criteria do not have their digest, is replaced as before, and
-    ``note`` says so.
+    ``note`` says so. A ratio-only record stays as it is: it is made of one that has been continued.
     """
-    if "criteria" not in record or not is_file(folder / "record.json"):
+    if "criteria" not in record or record.get("ratio_only") or not is_file(folder / "record.json"):
         return record
     try:
         before = read_record(folder)
     except EvenloadError:
         return _noted(record, "the folder held a record that could not be read, so earlier criteria are not known")
+    return after_earlier(record, before)
+
+
+def after_earlier(record: Mapping[str, Any], before: Mapping[str, Any]) -> Mapping[str, Any]:
+    """Return a record with the criteria of an earlier record of the same study; of another study nothing is taken."""
     if before.get("study", {}).get("id") != record["study"]["id"]:
         return record
     earlier = before.get("criteria")
+    if earlier and before.get("ratio_only"):
+        return _noted(
+            record, "the earlier record holds ratios only, so whether its criteria were the same is not known"
+        )
     if earlier and not _whole(earlier):
-        return _noted(record, "the criteria in the folder's earlier record do not have the digest stated there")
+        return _noted(record, "the criteria in the earlier record do not have the digest stated there")
     return {**record, "criteria": with_earlier(record["criteria"], earlier)}
+
+
+def without_limits(criteria: Mapping[str, Any], left_out: str) -> Row:
+    """Return the criteria as a ratio-only record tells them: dates, what changed, and only what has no dimension.
+
+    The digest goes too: of a few unknown numbers it could be found by trying.
+    """
+
+    def told(row: Mapping[str, Any]) -> Row:
+        stated = {name: value for name, value in row["stated"].items() if name in _PURE}
+        return {"digest": left_out, "fixed": row["fixed"], "stated": stated}
+
+    def change(item: Mapping[str, Any]) -> Row:
+        return dict(item) if item["name"] in _PURE else {"name": item["name"], "old": left_out, "new": left_out}
+
+    earlier = [told(row) | {"changed": [change(item) for item in row["changed"]]} for row in criteria["earlier"]]
+    return told(criteria) | {"earlier": earlier, "note": criteria["note"]}
 
 
 def _noted(record: Mapping[str, Any], note: str) -> Row:

@@ -17,6 +17,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from benchmark.record.criteria import without_limits
 from benchmark.record.findings import findings
 from benchmark.record.scrub import LEFT_OUT, printed_forms, scrubbed
 
@@ -362,6 +363,7 @@ def _parts(make: _Maker, record: Record, words: str) -> Row:
         "ratio_only": words,
         **{name: record[name] for name in ("software", "created")},
         "study": make.study(),
+        **({"criteria": without_limits(record["criteria"], LEFT_OUT)} if record.get("criteria") else {}),
         "verdict": make.verdict(),
         "requirements": make.requirements(),
         "policies": make.policies(),

@@ -147,6 +147,14 @@ def _policy(record: Record) -> str:
     return f"{policy_name(study['primary_policy'])}{_required_time(record)}{energy}{exponent}. For robustness: {also}."
 
 
+def _locked(record: Record) -> str:
+    """Say since when the criteria are locked, and by which digest."""
+    criteria = record.get("criteria")
+    return (
+        f"; locked at the first run with them, {criteria['fixed']}, by sha256 {criteria['digest']}" if criteria else ""
+    )
+
+
 def _slots(record: Record) -> list[tuple[str, str]]:
     study, sides = record["study"], record["sides"]
     candidate = next(side for side in sides if side["role"] == "candidate")
@@ -172,7 +180,7 @@ def _slots(record: Record) -> list[tuple[str, str]]:
         ("Metric", study["metric"].replace("-", " ")),
         ("Policy", _policy(record)),
         ("Evidence", f"{len(record['ledger'])} values: {evidence_counts(record)}"),
-        ("Criteria fixed", f"{study['declared']} by {study['owner']}"),
+        ("Criteria fixed", f"{study['declared']} by {study['owner']}{_locked(record)}"),
     ]
 
 

@@ -3,8 +3,10 @@
 from __future__ import annotations
 
 import csv
+import html
 import io
 import json
+import re
 import shutil
 import subprocess
 from collections.abc import Callable
@@ -308,3 +310,43 @@ def test_other_criteria_in_the_same_folder_are_said_with_both_dates(evenload: Ru
     assert [row["fixed"] for row in read(tmp_path / "a", "record.json")["criteria"]["earlier"]] == [
         "2026-01-12T00:00:00Z"
     ]
+
+
+@pytest.mark.usefixtures("drawn")
+def test_criteria_are_locked_at_the_first_run_and_a_later_change_heads_the_page(evenload: Run, tmp_path: Path):
+    """The required advantage is edited in the study file after a run; then a limit; then all is as at first again."""
+    study = fixed_displacement().write(tmp_path)
+    first = study.read_text(encoding="utf-8")
+    higher = first.replace("required_advantage = 1.5", "required_advantage = 2.0")
+    later = higher.replace('limit = { value = 1.0, unit = "us" }', 'limit = { value = 2.0, unit = "us" }')
+    assert len({first, higher, later}) == 3
+
+    def head(text: str, date: str, *more: str) -> str:
+        """Run, and return what stands on the page before the question."""
+        study.write_text(text, encoding="utf-8")
+        ran = evenload("run", "study.toml", "--out", "a", "--quiet", "--freeze-time", f"2026-{date}T00:00:00Z", *more)
+        assert ran.status == 0, ran.err
+        page = (tmp_path / "a" / "report.html").read_text(encoding="utf-8")
+        start = page[page.index('<section id="answer"') : page.index("<nav")]
+        assert ("Criteria changed after results" in ran.out) == ("Criteria changed after results:" in start)
+        return html.unescape(re.sub("<[^>]*>", "", start))
+
+    assert "Criteria changed" not in head(first, "01-12")
+    digest = read(tmp_path / "a", "record.json")["criteria"]["digest"]
+    assert "Criteria changed" not in head(first, "01-20"), "the same again"
+    said = head(higher, "02-20")
+    assert said.split("\n")[2].startswith("Demonstration:"), "the answer begins with its notices"
+    assert (
+        "Criteria changed after results: those of this run were first used on 2026-02-20T00:00:00Z; "
+        "before: used on 2026-01-12T00:00:00Z, required advantage 1.5 -> 2." in said
+    )
+    said = head(later, "03-01")
+    assert "used on 2026-01-12T00:00:00Z, required advantage 1.5 -> 2; requirement deadline hard, limit 1e-06 s" in said
+    assert "used on 2026-02-20T00:00:00Z, requirement deadline hard, limit 1e-06 s" in said
+    said = head(first, "04-01")
+    assert "used on 2026-02-20T00:00:00Z, required advantage 2 -> 1.5" in said, "going back does not hide it"
+    assert read(tmp_path / "a", "record.json")["criteria"]["digest"] == digest
+    said = head(higher, "05-01", "--ratio-only")
+    assert "required advantage 1.5 -> 2" in said
+    assert "requirement deadline [left out] -> [left out]" in said
+    assert "1e-06" not in said

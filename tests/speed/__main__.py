@@ -3,15 +3,18 @@
 ``python -m tests.speed [--million]``: prints a table. Each kernel is compiled twice with ``-O3 -march=native``, without
 and with the vector math library (``-ffast-math`` lets gcc use it). The results of both must agree with the program's
 before anything is timed. ``--million`` also runs a million draws of a hand study with 1, 2 and 4 processes and compares
-the bits. Times are the best of several runs of one process; nothing is asserted about them.
+the bits. Times are the best of several runs of one process; nothing is asserted about them. Last, a batch of five
+studies after one edit of a set, with one process and with two, through the command line.
 """
 
 from __future__ import annotations
 
 import argparse
 import ctypes
+import os
 import resource
 import subprocess
+import sys
 import tempfile
 import time
 from collections.abc import Callable
@@ -28,6 +31,7 @@ from benchmark.evaluate.points import design_points
 from benchmark.evaluate.side import build_side
 from benchmark.physics import virtual_source as vs
 from benchmark.record.load import load_study
+from tests.five_studies import five_studies, five_whole_studies
 from tests.fixed_displacement import fixed_displacement
 
 Array = np.ndarray
@@ -195,6 +199,39 @@ def draws_case(million: bool) -> None:
     print(f"same bits with 1, 2 and 4 processes: {len(set(found.values())) == 1}")
 
 
+def batch_case() -> None:
+    """``evenload batch``: five studies, one edit of a set, one table; records with reports are written."""
+    kinds: dict[str, tuple[Callable[[Path, str], None], str, str]] = {
+        "hand studies": (five_studies, "200.0", "170.0"),
+        "studies of two device models, six policies, ranges": (five_whole_studies, "1", "0.97"),
+    }
+    for name, (write, old, new) in kinds.items():
+        for jobs in (1, 2):
+            with tempfile.TemporaryDirectory() as folder:
+                place = Path(folder)
+                write(place / "all", old)
+                batch_run(place, jobs)
+                write(place / "all", new)
+                seconds, used, said = batch_run(place, jobs)
+            print(f"batch of five {name}, {jobs} process(es): {seconds:.1f} s "
+                  f"({used.ru_utime + used.ru_stime:.1f} s of processor time), "
+                  f"largest process {used.ru_maxrss / 1024:.0f} MB; {said}")  # fmt: skip
+
+
+def batch_run(place: Path, jobs: int) -> tuple[float, resource.struct_rusage, str]:
+    """Wall time [s], what all processes used (memory: the largest of them), and what is counted in the last line."""
+    words = ["-c", "from benchmark.cli import main; main()", "batch", "all", "--out", "records", "--jobs", str(jobs)]
+    started = time.perf_counter()
+    with subprocess.Popen([sys.executable, *words], cwd=place, stdout=subprocess.PIPE, text=True) as child:
+        assert child.stdout is not None
+        said = child.stdout.read().strip().splitlines()
+        _, status, used = os.wait4(child.pid, 0)
+        child.returncode = os.waitstatus_to_exitcode(status)
+    if child.returncode not in (0, 20):
+        raise SystemExit("\n".join(said))
+    return time.perf_counter() - started, used, " ".join(said[-1].split("; ")[0].split())
+
+
 def main() -> None:
     options = argparse.ArgumentParser(description=__doc__)
     options.add_argument("--million", action="store_true", help="also run a million draws with 1, 2 and 4 processes")
@@ -207,6 +244,7 @@ def main() -> None:
         chain_case(libraries)
         current_case(libraries)
     draws_case(million)
+    batch_case()
 
 
 if __name__ == "__main__":

@@ -10,6 +10,7 @@ from typing import Any
 
 import pytest
 
+from benchmark import api
 from benchmark.api import Result
 from benchmark.record.criteria import criteria_words, with_earlier
 from benchmark.record.ratio_only import ratio_only
@@ -74,8 +75,11 @@ def test_edit_the_required_advantage_after_a_run_and_the_report_says_so(tmp_path
     assert f"used on {SECOND}, required advantage 2 -> 3" in criteria_words(fourth)
 
 
-def test_a_page_of_a_first_run_says_nothing():
-    assert "Criteria changed" not in report_page(made("1.5", FIRST))
+def test_a_page_of_a_first_run_says_since_when_they_are_locked_and_no_more():
+    record = made("1.5", FIRST)
+    page = report_page(record)
+    assert "Criteria changed" not in page
+    assert f"; locked at the first run with them, {FIRST}, by sha256 {record['criteria']['digest']}</dd>" in page
 
 
 def test_other_studies_and_new_folders_change_nothing(tmp_path: Path):
@@ -120,5 +124,38 @@ def test_a_record_without_criteria_counts_as_none(tmp_path: Path):
     assert with_earlier(made("2.0", SECOND)["criteria"], None) == made("2.0", SECOND)["criteria"]
 
 
-def test_ratios_only_leave_the_limits_out():
-    assert "criteria" not in ratio_only(made("1.5", FIRST))
+def test_ratios_only_tell_the_change_and_its_dates_and_leave_the_limits_out(tmp_path: Path):
+    saved(tmp_path / "a", made("1.5", FIRST))
+    later = made("2.0", SECOND)
+    stated = later["criteria"]["stated"] | {"requirement deadline": "hard, limit 7.7777e-07 s"}
+    later["criteria"] = later["criteria"] | {"stated": stated, "digest": "0" * 64}
+    later = dict(Result(later).after(tmp_path / "a").record)
+    record = ratio_only(later)
+    words = criteria_words(record)
+    assert f"first used on {SECOND}; before: used on {FIRST}, required advantage 1.5 -> 2; " in words
+    assert "requirement deadline [left out] -> [left out]" in words
+    assert "Criteria changed after results:" in report_page(record)
+    text = json.dumps(record["criteria"])
+    assert later["criteria"]["digest"] not in text
+    assert made("1.5", FIRST)["criteria"]["digest"] not in text
+    assert "limit" not in text
+    assert "7.7777" not in text
+    assert record["criteria"]["stated"]["required advantage"] == 2.0
+    # it is made of a record that has been continued, and stays as it is
+    assert Result(record).after(tmp_path / "a").record == record
+    # what was written with ratios only cannot tell whether the criteria of the next run are the same
+    saved(tmp_path / "b", record)
+    note = "the earlier record holds ratios only, so whether its criteria were the same is not known"
+    assert Result(made("2.0", THIRD)).after(tmp_path / "b").record["criteria"]["note"] == note
+
+
+def test_an_earlier_record_elsewhere_counts_when_it_is_named(tmp_path: Path):
+    """Another folder does not make changed criteria the first ones: the record that is compared with has the date."""
+    old = api.run(fixed_displacement().write(tmp_path / "old"), created=FIRST)
+    new = fixed_displacement(required="2.0").write(tmp_path / "new")
+    result = api.run(new, created=SECOND, since=old, anyway=True)
+    words = f"those of this run were first used on {SECOND}; before: used on {FIRST}, required advantage 1.5 -> 2."
+    assert criteria_words(result.record) == words
+    same = api.run(new, created=THIRD, since=result)
+    assert same.record["criteria"]["fixed"] == SECOND
+    assert criteria_words(same.record) == words
