@@ -85,7 +85,8 @@ def _blocks(found: Extraction) -> list[Block]:
         *(("read", note) for note in curves.notes),
     ]
     blocks: list[Block] = [Facts(f"Read from {curves.file}", facts), _numbers(found)]
-    blocks.append(_parts(found))
+    parts = _parts(found)
+    blocks += [parts] if parts.rows else []
     for one in found.found:
         if one.over is not None:
             blocks += _devices(one, curves)
@@ -101,8 +102,14 @@ def _bounded(text: str, bound: str) -> str:
     return {"at-least": f"at least {text}", "at-most": f"at most {text}"}.get(bound, text)
 
 
+def _size_words(size: float | None) -> str:
+    from benchmark.record.extracted import two_digits
+
+    return "not known" if size is None else two_digits(size) if size else "0"
+
+
 def _numbers(found: Extraction) -> Table:
-    from benchmark.record.extracted import digits_of, found_rows, in_unit, size_in_unit, two_digits
+    from benchmark.record.extracted import digits_of, found_rows, in_unit, size_in_unit
 
     rows = []
     for one in found.found:
@@ -115,7 +122,7 @@ def _numbers(found: Extraction) -> Table:
             (
                 request.quantity.replace("_", " "),
                 _bounded(digits_of(in_unit(one.value, unit), uncertainty), one.bound),
-                "none: a bound" if one.bound else two_digits(uncertainty) if uncertainty else "0",
+                "none: a bound" if one.bound else _size_words(uncertainty),
                 unit,
                 asked or "-",
                 between or f"{one.over.count if one.over else 0} devices",
@@ -128,15 +135,16 @@ def _numbers(found: Extraction) -> Table:
 
 
 def _parts(found: Extraction) -> Table:
-    from benchmark.record.extracted import size_in_unit, two_digits
+    from benchmark.record.extracted import size_in_unit
 
     rows = []
     for one in found.found:
         for part in one.parts:
             size = size_in_unit(part.size, one.request.unit) or 0.0
             freedom = "-" if part.freedom == float("inf") else f"{part.freedom:.3g}"
-            shown = two_digits(size) if size else "0"
-            rows.append((one.request.quantity.replace("_", " "), part.name, shown, one.request.unit, freedom))
+            rows.append(
+                (one.request.quantity.replace("_", " "), part.name, _size_words(size), one.request.unit, freedom)
+            )
     columns = ("quantity", "part", "standard uncertainty", "unit", "degrees of freedom")
     return Table("What the uncertainty is made of", columns, rows)
 
@@ -149,7 +157,7 @@ def _devices(one: Found, curves: MeasuredCurves) -> list[Block]:
         return []
 
     def size(si: float | None) -> str:
-        return "not known" if si is None else f"{two_digits(size_in_unit(si, unit) or 0.0) if si else '0'} {unit}"
+        return f"{_size_words(size_in_unit(si, unit))} {'' if si is None or unit == '1' else unit}".rstrip()
 
     quartiles = [in_unit(q, unit) for q in (over.lower_quartile, over.upper_quartile) if q is not None]
     facts = [

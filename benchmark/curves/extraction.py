@@ -37,6 +37,9 @@ from benchmark.units import format_si
 
 __all__ = ["DeviceReading", "Found", "extract_all"]
 
+#: devices that are named in a remark
+MOST_NAMED = 6
+
 
 @dataclass(frozen=True)
 class DeviceReading:
@@ -140,7 +143,7 @@ def _answer(request: Request, curves: MeasuredCurves, readings: Sequence[DeviceR
         warnings += first.remarks
         return Found(request, first.value, first.uncertainty, first.bound, tuple(readings), None, tuple(warnings))
     over = over_devices([one.read for one in readings])
-    warnings += dict.fromkeys(remark for one in readings for remark in one.read.remarks)
+    warnings += _shared_remarks(readings)
     if over.bounds:
         warnings.append(f"{over.bounds} of {over.count} devices are known only by a bound")
     if over.device_spread is None and over.seen_spread is not None:
@@ -149,6 +152,21 @@ def _answer(request: Request, curves: MeasuredCurves, readings: Sequence[DeviceR
         what = "the spread between devices cannot be told from the uncertainty of measurement, or rests on bounds"
         raise CannotExtract(what, hint='state spread = "uncertainty" or "none"')
     return Found(request, over.median, over.median_error, over.median_bound, tuple(readings), over, tuple(warnings))
+
+
+def _shared_remarks(readings: Sequence[DeviceReading]) -> list[str]:
+    """Say each remark once, with the devices it is about where it is not about all of them."""
+    about: dict[str, list[str]] = {}
+    for one in readings:
+        for remark in one.read.remarks:
+            about.setdefault(remark, []).append(one.device)
+    said = []
+    for remark, devices in about.items():
+        names = ", ".join(devices[:MOST_NAMED]) + (
+            f" and {len(devices) - MOST_NAMED} more" * (len(devices) > MOST_NAMED)
+        )
+        said.append(remark if len(devices) == len(readings) else f"{names}: {remark}")
+    return said
 
 
 def _used(request: Request, sweeps: Sequence[Sweep], curves: MeasuredCurves) -> tuple[Sweep, ...]:

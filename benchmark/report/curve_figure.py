@@ -30,6 +30,8 @@ FIT, POINT = "#A34800", "#005A8D"
 _LOGARITHMIC = frozenset(
     {"path_current", "path_current_per_width", "path_resistance", "control_current", "control_current_per_width"}
 )
+#: axes that span decades
+_DECADES = frozenset({"switching_cycles", "frequency", "time"})
 #: most curves that are named in the drawing
 NAMED = 4
 #: points of a line that is straight on a linear scale and bent on a logarithmic one
@@ -137,9 +139,14 @@ def _rows(sweep: Sweep, of: str, curves: MeasuredCurves) -> Iterator[Row]:
         }
 
 
-def _axes(curves: MeasuredCurves, of: str, drawn: Sequence[Row], log: bool) -> tuple[LinearAxis, LogAxis | LinearAxis]:
+def _axes(
+    curves: MeasuredCurves, of: str, drawn: Sequence[Row], log: bool
+) -> tuple[LogAxis | LinearAxis, LogAxis | LinearAxis]:
     axis, unit = curves.units.get(curves.along, "1"), curves.units[of]
-    x = _linear([row["a"] for row in drawn], WIDTH, f"{_meaning(curves.along)} [{axis}]")
+    places = [row["a"] for row in drawn]
+    along = f"{_meaning(curves.along)} [{axis}]".removesuffix(" [1]")
+    decades = curves.along in _DECADES and min(places) > 0.0
+    x = _Powers.around(places, WIDTH, "1", along) if decades else _linear(places, WIDTH, along)
     values = [row["b"] for row in drawn]
     title = f"{_meaning(of)} [{unit}]"
     if log:
