@@ -233,7 +233,8 @@ def _edit(opened: OpenSet, one: Restated, collector: Collector) -> Edit | None:
             file.problem(dotted, "changes its unit while its range stays; state the range in the new unit", said)
         )
     changed |= one.told
-    if one.reason:
+    same = all(changed[key] == table.get(key) for key in ("value", "by_node", "unit"))
+    if one.reason and not (same and one.extracted_from is None):  # another number was not read off these data
         changed["extracted_from"] = one.extracted_from
     if one.date is not None:
         changed["date"] = one.date

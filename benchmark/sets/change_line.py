@@ -125,7 +125,8 @@ def write_files(texts: Mapping[Path, str]) -> None:
     before: dict[Path, bytes | None] = {}
     place = Path()
     try:
-        for place, text in texts.items():
+        for name, text in texts.items():
+            place = name.resolve() if name.is_symlink() else name  # a link stays, what it names is written
             before[place] = place.read_bytes() if place.exists() else None
             made[place] = _beside(place, text.encode("utf-8"))
         for place, temporary in made.items():

@@ -15,13 +15,12 @@ from benchmark.sets.problems import Collector
 
 __all__ = ["as_it_was"]
 
-#: what an entry states for itself; without a range it had none
-_OWN = (
-    *("value", "by_node", "unit", "spread", "evidence", "source", "where", "conditions", "date"),
-    *("note", "owner", "bound", "formula", "unusual", "extracted_from"),
-)
-#: what goes when an entry does not state it
-_GONE = ("value", "by_node", "unit", "spread", "extracted_from")
+#: what an entry states for itself; what it does not state of these it did not have
+_NUMBER = ("value", "by_node", "unit", "spread", "extracted_from")
+#: what it states where the state that followed says otherwise; else it was as in that state
+_WORDS = ("evidence", "source", "where", "conditions", "note", "owner", "bound", "formula", "unusual")
+#: words that say that there was none
+_NONE = {"note": "", "owner": "", "bound": "none", "formula": ""}
 
 
 def as_it_was(file: TomlFile, day: datetime.date, collector: Collector) -> TomlFile | None:
@@ -70,15 +69,17 @@ def _put_back(table: Any, dotted: str, day: datetime.date, file: TomlFile, colle
         return
     if known[-1] == len(entries):
         return
-    entry = dict(entries[known[-1]])
-    for name in _GONE:
+    for entry in map(dict, reversed(entries[known[-1] :])):  # from the newest on, each against what followed it
+        for name in _WORDS:
+            if name in entry and entry[name] == _NONE.get(name):
+                table.pop(name, None)
+            elif name in entry:
+                table[name] = entry[name]
+    for name in _NUMBER:
         table.pop(name, None)
-    for name in _OWN:
         if name in entry:
             table[name] = entry[name]
-    for name in ("note", "owner", "bound", "formula"):
-        if entry.get(name) in ("", "none"):  # said to have had none
-            table.pop(name)
+    table["date"] = entry["date"]
     for _ in range(len(entries) - known[-1]):
         entries.pop()
     if not entries:

@@ -158,7 +158,7 @@ ReadOff = Annotated[
 class PastTable(FileModel):
     """What a value was before: the number, the day it was measured or chosen, and why it is no longer used.
 
-    What it does not say besides number, unit, spread and date was as it is now.
+    What it does not say besides number, unit, spread and date was as in the state that followed it.
     """
 
     value: Number | None = Field(default=None, description="The number, in the unit")
@@ -172,10 +172,10 @@ class PastTable(FileModel):
     note: Note = None
     owner: Owner = None
     bound: Literal["at-least", "at-most", "none"] | None = Field(
-        default=None, description="What kind of bound it was, or none, where that differs from today's"
+        default=None, description="What kind of bound it was, or none, where that differs from the state that followed"
     )
     formula: Text | None = Field(
-        default=None, description='Formula it had, or "" for none, where that differs from today\'s'
+        default=None, description='Formula it had, or "" for none, where that differs from the state that followed'
     )
     unusual: bool | None = Field(default=None, description="Whether it was meant to be unusual, if that changed")
     extracted_from: ReadOff = None

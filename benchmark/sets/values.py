@@ -34,8 +34,8 @@ from benchmark.units import Unit, UnitError, from_si, parse_unit, to_si
 
 __all__ = ["Spread", "Value", "amount", "convert_measure", "convert_range", "convert_value", "read_provenance"]
 
-#: what a superseded entry does not say was as it is now
-_AS_NOW = ("evidence", "source", "where", "conditions", "note", "owner", "bound", "formula", "unusual")
+#: what a superseded entry does not say of these was as in the state that followed it
+_AS_FOLLOWED = ("evidence", "source", "where", "conditions", "note", "owner", "bound", "formula", "unusual")
 #: half-width of the central 95 % of a normal distribution, in standard deviations
 NORMAL_95 = 1.959963984540054
 
@@ -474,16 +474,16 @@ def _past(
                     dotted, f"{where} is not older than what follows", f"{one} and {two}", "rising dates"
                 )
             )
-    found = []
-    for position, past in enumerate(table.superseded):
-        told = past.model_dump(exclude={"reason"}) | {"spread": past.spread}
-        told |= {name: getattr(table, name) for name in _AS_NOW if told[name] is None}
+    found: list[PastValue] = []
+    words = {name: getattr(table, name) for name in _AS_FOLLOWED}
+    for position, past in reversed(list(enumerate(table.superseded))):  # each against what followed it
+        words |= {name: said for name in _AS_FOLLOWED if (said := getattr(past, name)) is not None}
+        told = {name: getattr(past, name) for name in ("value", "by_node", "unit", "spread", "date")} | words
         told["bound"] = None if told["bound"] == "none" else told["bound"]
         one_place = dataclasses.replace(place, dotted=f"{place.dotted}.superseded.{position}")
-        stated = ValueTable(**told)
-        value = convert_value(quantity, stated, nodes, one_place, collector)
+        value = convert_value(quantity, ValueTable(**told), nodes, one_place, collector)
         if value is not None:
-            found.append(PastValue(value, past.reason))
+            found.insert(0, PastValue(value, past.reason))
     return tuple(found) if len(collector.problems) == before else None
 
 

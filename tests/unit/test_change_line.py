@@ -103,3 +103,12 @@ def test_permissions_stay(tmp_path: Path):
     place.chmod(0o600)
     write_files({place: "new"})
     assert (place.read_text(), place.stat().st_mode & 0o777) == ("new", 0o600)
+
+
+def test_a_link_stays_a_link(tmp_path: Path):
+    real, name = tmp_path / "real.toml", tmp_path / "name.toml"
+    real.write_text("old")
+    name.symlink_to(real)
+    write_files({name: "new"})
+    assert name.is_symlink()
+    assert real.read_text() == "new"
