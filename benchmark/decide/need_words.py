@@ -132,7 +132,7 @@ def _stretch(need: Need) -> tuple[float, float]:
     low = max([edge.x for edge in need.edges if not edge.defined_below], default=need.axis.low)
     high = min([edge.x for edge in need.edges if edge.defined_below], default=need.axis.high)
     # a gap in the middle: the words say it
-    return (low, high) if low < high else (need.axis.low, need.axis.high)
+    return (low, high) if low <= high else (need.axis.low, need.axis.high)
 
 
 def _row(need: Need, crossing: Crossing | None) -> dict[str, Any]:

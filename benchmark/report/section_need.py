@@ -6,7 +6,7 @@ from collections.abc import Mapping
 from typing import Any
 
 from benchmark.report.blocks import Block, Cell, Figure, Paragraph, Section, Table, plain
-from benchmark.report.words import is_number, listed, number, spaced
+from benchmark.report.words import is_number, number, spaced
 
 __all__ = ["needed"]
 
@@ -74,8 +74,8 @@ def _required(record: Record, row: Record) -> Table:
 
 def _name(item: Record) -> Cell:
     owner, _, name = item["name"].rpartition(".")
-    words = listed([f"of {owner}", *(["decisive"] if item["decisive"] == "yes" else [])]) if owner else ""
-    return Cell(name.replace("_", " "), small=words)
+    words = [*([f"of {owner}"] if owner else []), *(["decisive"] if item["decisive"] == "yes" else [])]
+    return Cell(name.replace("_", " "), small=", ".join(words))
 
 
 def _bounded(item: Record, field: str) -> str:
@@ -86,6 +86,8 @@ def _bounded(item: Record, field: str) -> str:
 
 def _at_probability(item: Record) -> Cell:
     value = item.get("required_at_probability")
+    if item["today"] == 0.0:
+        return Cell("–")
     if not is_number(value):
         return Cell("none between a tenth and ten times today's" if is_number(item.get("probability")) else "–")
     return Cell(spaced(value, item["unit"], 4), small=f"today: P = {number(item['probability_today'])}")
@@ -93,7 +95,11 @@ def _at_probability(item: Record) -> Cell:
 
 def _spread(item: Record) -> str:
     factor = item.get("spread_factor")
-    return f"{number(factor)} times the stated one" if is_number(factor) else "none small enough, or none stated"
+    if is_number(factor):
+        return f"{number(factor)} times the stated one"
+    if "stated range" not in item["range"]:
+        return "none stated"
+    return "none small enough" if is_number(item.get("probability")) else "–"
 
 
 def _table(row: Record) -> Table:

@@ -129,6 +129,13 @@ def test_who_is_better_is_written_on_the_line():
     assert "1.5 or more" in _words(drawn(film)["break-even-lines"])
 
 
+def test_a_supply_that_is_permitted_at_one_value_only_is_infeasible_elsewhere():
+    rows = [row for row in drawn(film)["break-even-lines"].points if row["key"] == "stated-reference.declared_supply"]
+    for row in rows:  # its supply range is 0.3 V alone
+        assert row["permitted_from"] == near(0.3, rel=1e-5)
+        assert row["permitted_to"] == near(0.3, rel=1e-5)
+
+
 def test_an_answer_without_a_number_is_a_word():
     points = drawn(always_on)["break-even-lines"].points
     assert {row["value"] for row in points if not is_number(row["value"])} == {"no effect"}
@@ -322,6 +329,9 @@ def test_the_required_values_stand_in_one_table():
     for head in ("today", "needed, best estimate", "needed at 90 %", "spread allowed", "limit", "reachable"):
         assert head in table[: table.index("</thead>")]
     assert "at least 173.2" in table  # 200 sqrt(1.5 / 2) pm/V
+    assert "of film-switch, decisive" in table
+    assert "none stated" in table
+    assert "none small enough" in table
     assert '<section id="need-joint-sheet"' in text
 
 
