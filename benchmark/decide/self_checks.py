@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
+import math
 from typing import Any
 
 import numpy as np
@@ -76,7 +77,8 @@ def _finer_grid(study: Study, outcome: Outcome) -> dict[str, Any] | None:
         return None
     finer = dataclasses.replace(study, supply_points=2 * study.supply_points - 1)
     again = Comparison(finer, study.pair(study.headline), Batch.best_estimate()).outcome(study.policy.primary)
-    change = float(again.advantage[0] / outcome.advantage[0] - 1.0)
+    old, new = float(outcome.advantage[0]), float(again.advantage[0])
+    change = 0.0 if new == old else new / old - 1.0 if old != 0.0 else math.inf  # a reference may cost nothing
     tolerance = min(max(1e-4, 100.0 * study.refine_relative), 1e-2)  # a coarse search must not excuse itself
     return {
         "name": "supply grid twice as fine",
