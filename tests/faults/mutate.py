@@ -137,7 +137,8 @@ def scale_number(text: str, rng: random.Random) -> str:
     match = rng.choice(found)
     factor = rng.choice([1.0001, 1.1, 2.0, 0.5, 10.0, 1e3, 1e-3, 1e6, -1.0])
     new = float(match[0]) * factor
-    return text[: match.start()] + (repr(new) if rng.random() < 0.7 or math.isinf(new) else str(round(new))) + text[match.end() :]
+    written = repr(new) if rng.random() < 0.7 or math.isinf(new) else str(round(new))
+    return text[: match.start()] + written + text[match.end() :]
 
 
 def other_type(text: str, rng: random.Random) -> str:
