@@ -26,7 +26,7 @@ from numpy.typing import NDArray
 from benchmark.decide.axes import Axis, deviations, known_axes
 from benchmark.decide.break_even import NO_EFFECT
 from benchmark.decide.moves import range_of
-from benchmark.decide.profile import find_shares
+from benchmark.decide.profile import shares_on_side
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 
@@ -239,12 +239,7 @@ def _nearest(trials: Trials, sets: Sequence[_Set], level: float, reached: bool) 
         with np.errstate(divide="ignore"):
             return np.asarray(np.log(counted) - np.log(level))
 
-    solved = find_shares(difference, len(ways), xtol=TOLERANCE, ftol=0.0)
-    # of the two ends of the last bracket, the one that lies on the other side
-    shares = np.where((solved.at_bracket[1] >= 0.0) != reached, solved.bracket[1], solved.bracket[0])
-    # a level met exactly ends the search while the bracket is wide: the other side begins right beside that place
-    beside = solved.x + np.sign(shares - solved.x) * TOLERANCE
-    shares = np.where(np.abs(shares - solved.x) > TOLERANCE, beside, shares)
+    shares = shares_on_side(difference, len(ways), not reached, xtol=TOLERANCE)
     found: dict[_Set, tuple[float, ...]] = {}
     for (item, direction), share in zip(ways, shares, strict=True):
         values = at(item, direction, float(share))

@@ -17,10 +17,10 @@ frozen at the best estimate (size, threshold shift) stay as they are today.
 from __future__ import annotations
 
 import dataclasses
+import itertools
 import math
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -28,7 +28,7 @@ from numpy.typing import NDArray
 from benchmark.catalogue import QUANTITIES
 from benchmark.decide.axes import Axis
 from benchmark.decide.break_even import NO_EFFECT
-from benchmark.decide.profile import Line, find_shares, profiles
+from benchmark.decide.profile import Line, profiles, shares_on_side
 from benchmark.decide.tolerance import LOGARITHMIC, Tolerances
 from benchmark.decide.trials import Trials
 from benchmark.draws.values import value_at
@@ -284,31 +284,20 @@ def _drawn_steps(drawn: Tolerances, moved: Sequence[Moved], span: tuple[float, f
     here = margin(0.0)
     sign = -1.0 if here >= 0.0 else 1.0
     end = span[0] if sign < 0.0 else span[1]
-    known = 0.0
-    for look in (*(sign * look for look in LOOKS if look < abs(end)), end):
-        if look == known:
-            break
-        there = margin(look)
-        if (there >= 0.0) != (here >= 0.0):
-            return _solved(margin, known, look, there)
-        known = look
+    looks = [0.0, *(sign * look for look in LOOKS if look < abs(end)), *([end] if end else [])]
+    for low, high in itertools.pairwise(looks):
+        if (margin(high) >= 0.0) != (here >= 0.0):
+            return _edge(margin, low, high)
     return float("nan")
 
 
-def _solved(margin: Any, low: float, high: float, there: float) -> float:
-    """Return the end of the last bracket at which the margin is not below 0."""
+def _edge(margin: Callable[[float], float], low: float, high: float) -> float:
+    """Return where the margin changes sign, on the side on which it is not below 0."""
 
     def difference(share: Array, which: NDArray[np.intp]) -> Array:
         return np.array([margin(low + (high - low) * float(s)) for s in share])
 
-    # to the width of the bracket: a margin near 0 would end the search while its other end is far away
-    found = find_shares(difference, 1, xtol=TOLERANCE, ftol=0.0)
-    if float(difference(found.x, np.zeros(1, dtype=np.intp))[0]) >= 0.0:
-        share = float(found.x[0])
-    else:
-        ends = [(float(x[0]), float(y[0])) for x, y in zip(found.bracket, found.at_bracket, strict=True)]
-        share = next((x for x, y in ends if y >= 0.0), 1.0 if there >= 0.0 else 0.0)
-    return low + (high - low) * share
+    return low + (high - low) * float(shares_on_side(difference, 1, True, xtol=TOLERANCE)[0])
 
 
 def _follows(trials: Trials, moved: Sequence[Moved], steps: float) -> tuple[tuple[str, str, float], ...]:

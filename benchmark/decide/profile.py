@@ -20,7 +20,18 @@ from numpy.typing import NDArray
 from benchmark.decide.axes import Axis
 from benchmark.decide.trials import Answers, Trials
 
-__all__ = ["Crossing", "Edge", "LabelChange", "Line", "Profile", "Shares", "find_shares", "label_changes", "profiles"]
+__all__ = [
+    "Crossing",
+    "Edge",
+    "LabelChange",
+    "Line",
+    "Profile",
+    "Shares",
+    "find_shares",
+    "label_changes",
+    "profiles",
+    "shares_on_side",
+]
 
 Array = NDArray[np.float64]
 #: ln(advantage) that stands for "none" or "infinite" in the search
@@ -388,6 +399,27 @@ def find_shares(
         maxiter=MOST,
     )
     return Shares(np.asarray(result.x, dtype=np.float64), tuple(result.bracket), tuple(result.f_bracket))
+
+
+def shares_on_side(
+    difference: Callable[[Array, NDArray[np.intp]], Array], count: int, above: bool, *, xtol: float
+) -> Array:
+    """Return the shares next to the solutions of ``find_shares`` at which the function is, or is not, below 0.
+
+    Parameters
+    ----------
+    difference, count
+        As in ``find_shares``.
+    above : bool
+        Whether 0 and more is wanted, or less.
+    xtol : float
+        How near to the solution [share].
+    """
+    solved = find_shares(difference, count, xtol=xtol, ftol=0.0)
+    shares = np.where((solved.at_bracket[1] >= 0.0) == above, solved.bracket[1], solved.bracket[0])
+    # a 0 met exactly ends the search while the bracket is wide: the wanted side begins right beside that place
+    beside = solved.x + np.sign(shares - solved.x) * xtol
+    return np.asarray(np.where(np.abs(shares - solved.x) > xtol, beside, shares))
 
 
 def _jump(trials: Trials, line: Line, x: float) -> str:
