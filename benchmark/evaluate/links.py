@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterator
 from dataclasses import dataclass
 
@@ -11,7 +12,7 @@ from benchmark.devices import model
 from benchmark.devices.links import Judged, judged
 from benchmark.sets.formulas import evaluate_formula, names_in
 from benchmark.sets.parameters import ParameterSet
-from benchmark.units import from_si, parse_unit
+from benchmark.units import Unit, from_si, parse_unit
 
 __all__ = ["FITS", "REFUSED", "WARNED", "LinkRow", "link_rows"]
 
@@ -75,8 +76,8 @@ def _rows(item: Judged, technology: ParameterSet) -> Iterator[LinkRow]:
             link.place,
             link.names,
             node,
-            from_si(float(left[position]), unit),
-            from_si(float(right[position]), unit),
+            _in_unit(float(left[position]), unit),
+            _in_unit(float(right[position]), unit),
             link.unit,
             1.0 + float(deviation[position]),
             _tolerance(item),
@@ -84,6 +85,11 @@ def _rows(item: Judged, technology: ParameterSet) -> Iterator[LinkRow]:
             link.source,
             link.hint,
         )
+
+
+def _in_unit(si: float, unit: Unit) -> float:
+    """Express a side in its unit; what is not finite has none."""
+    return from_si(si, unit) if math.isfinite(si) else si
 
 
 def _tolerance(item: Judged) -> str:

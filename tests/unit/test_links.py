@@ -218,6 +218,15 @@ def test_all_nodes_at_once_are_each_node_alone():
     assert whole.refused.tolist() == [False, False, True]
 
 
+@pytest.mark.parametrize("huge", [1e200, 1e-200])
+def test_numbers_out_of_any_range_do_not_fit_and_do_not_stop_anything(huge: float):
+    for _, link in LINKS:
+        values = {key: np.asarray(huge) for key in link.names}
+        (found,) = judged([link], values, options_for(link))
+        if not np.isfinite(found.deviation):
+            assert found.warned or found.refused, link.formula
+
+
 def test_every_shipped_set_fits():
     for path in sorted((shipped_nodes() / "technologies").glob("*.toml")):
         assert {row.state for row in link_rows(load_technology(path.stem))} <= {"fits"}, path.stem

@@ -80,13 +80,14 @@ def judged(links: Sequence[Link], values: Values, options: Mapping[str, str]) ->
 
 
 def _judge(link: Link, values: Values) -> Judged:
-    left, right = np.broadcast_arrays(
-        np.asarray(link.left(values), dtype=np.float64), np.asarray(link.right(values), dtype=np.float64)
-    )
-    above, below = (right, left) if link.kind == "equal" else (left, right)
-    with np.errstate(divide="ignore", invalid="ignore"):
+    with np.errstate(all="ignore"):  # numbers far out of any range: what is not finite does not fit
+        left, right = np.broadcast_arrays(
+            np.asarray(link.left(values), dtype=np.float64), np.asarray(link.right(values), dtype=np.float64)
+        )
+        above, below = (right, left) if link.kind == "equal" else (left, right)
         deviation = np.asarray(np.where(above == below, 0.0, above / below - 1.0))
     size = np.abs(deviation) if link.kind == "equal" else deviation
+    size = np.where(np.isnan(size), np.inf, size)
 
     def beyond(limit: float | None) -> BoolArray:
         return np.asarray(np.zeros(size.shape, dtype=bool) if limit is None else size > max(limit, ROUNDING))
