@@ -12,9 +12,10 @@ from scipy import stats
 
 from benchmark.physics.extraction.charge import charge_from_capacitance
 from benchmark.physics.extraction.contacts import contacts, log_slope
+from benchmark.physics.extraction.jumps import cycles_to_failure, jump_voltage
 from benchmark.physics.extraction.lines import line_fit
 from benchmark.physics.extraction.points import Points, read_at
-from benchmark.physics.extraction.result import Array, Extracted
+from benchmark.physics.extraction.result import Array, CannotExtract, Extracted
 from benchmark.physics.extraction.swing import average_swing, fitted_swing, minimum_swing
 from benchmark.physics.extraction.threshold import extrapolated_threshold, hysteresis_window, threshold_at_current
 from tests.near import near
@@ -208,3 +209,38 @@ def test_scatter_of_third_differences_covers_a_charge(share: float):
     true = 1e-15 * (0.6 + 0.25 * 0.36)
     low, high = bounds(share)
     assert low <= covered(found, true, share) <= high
+
+
+values = st.one_of(
+    st.floats(-1.0, 1.0).map(lambda number: round(number, 12)),
+    st.floats(1e-14, 1e-3),
+    st.sampled_from([0.0, 1e-6, 1.0]),
+)
+ROUGH: dict[str, Read] = {
+    **READS,
+    "extrapolated": lambda p, k: extrapolated_threshold(p),
+    "window": lambda p, k: hysteresis_window(p, p, 1e-6),
+    "contacts": lambda p, k: contacts(p.x, p.y, "relative").transfer_length,
+    "slope": lambda p, k: log_slope(p),
+    "linear": lambda p, k: read_at(p, 0.1, "linear"),
+    "jump": lambda p, k: jump_voltage(p, factor=3.0),
+    "step": lambda p, k: jump_voltage(p, step=0.3),
+    "cycles": lambda p, k: cycles_to_failure(p, 1e-6),
+}
+
+
+@given(
+    y=st.lists(values, min_size=4, max_size=12),
+    marks=st.lists(st.sampled_from(["", "", "", "floor", "compliance"]), min_size=12, max_size=12),
+)
+def test_any_readings_give_a_number_a_bound_or_a_refusal_in_words(y: list[float], marks: list[str]):
+    x = 0.05 * np.arange(1, len(y) + 1)
+    low, high = (np.array([mark == word for mark in marks[: len(y)]]) for word in ("floor", "compliance"))
+    points = Points.of(x, np.array(y), low, high, 1e-12)
+    for name, read in ROUGH.items():
+        try:
+            found = read(points, 1.0)
+        except CannotExtract:
+            continue
+        assert np.isfinite(found.value), name
+        assert found.bound or np.isfinite(found.uncertainty or 0.0), name

@@ -108,6 +108,10 @@ def test_a_span_that_reaches_the_floor_is_refused_with_the_points():
     error = refused(lambda: average_swing(curve(dirty, at_floor=marks), 1e-10, 1e-6))
     assert error.what == "the span of currents holds readings at the floor or the compliance"
     assert error.at == (25,)
+    dirty[25] = -1e-13
+    error = refused(lambda: fitted_swing(curve(dirty), 1e-10, 1e-6))
+    assert error.what == "the span of currents holds readings that are not above 0"
+    assert (error.at, error.hint) == ((25,), "declare the noise floor")
 
 
 # -- levels ----------------------------------------------------------------------------------------------------
@@ -177,6 +181,8 @@ def test_a_transconductance_that_still_rises_is_refused():
     error = refused(lambda: extrapolated_threshold(curve(V**2)))
     assert error.what == "the transconductance is largest at an end of the data"
     assert words(error.found) == "0.59 (SI)"
+    error = refused(lambda: extrapolated_threshold(curve(np.full(V.shape, 1e-6))))
+    assert error.what == "the current does not change along the sweep, so no line meets zero current"
     error = refused(lambda: extrapolated_threshold(curve(V[:4] ** 2, V[:4]), 4))
     assert error.what == "the largest slope needs more points that are readings, not bounds"
 

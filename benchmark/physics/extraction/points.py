@@ -239,7 +239,7 @@ def crossings(points: Points, level: float, scale: Scale, accuracy: Accuracy | N
     """
     stated = accuracy or Accuracy()
     y, wanted = _on_scale(points.y, scale), (math.log(level) if scale == "log" else level)
-    above = y - wanted
+    above = np.sign(y - wanted)
     sure = points.trusted & np.isfinite(y)
     exact = np.flatnonzero(sure & (above == 0.0))
     between = np.flatnonzero(sure[:-1] & sure[1:] & (above[:-1] * above[1:] < 0.0))
@@ -265,7 +265,8 @@ def _crossing(
         slope = (y[right] - y[left]) / (x[right] - x[left])
     near = nearby(points, at, scale)
     if slope == 0.0:
-        return Crossing(at, (), left, right, False)
+        what = "the curve is flat where it reaches the level"
+        raise CannotExtract(what, at=points.place[[left, right]])
     reading = stated.reading if scale == "log" else stated.reading * abs(wanted)
     parts = gathered(
         (

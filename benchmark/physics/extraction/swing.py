@@ -47,6 +47,9 @@ def _ends(points: Points, low: float, high: float, accuracy: Accuracy) -> tuple[
     if not np.all(points.trusted[inside]):
         what = "the span of currents holds readings at the floor or the compliance"
         raise CannotExtract(what, at=points.place[inside][~points.trusted[inside]])
+    if not np.all(points.y[inside] > 0.0):
+        what = "the span of currents holds readings that are not above 0"
+        raise CannotExtract(what, hint="declare the noise floor", at=points.place[inside][points.y[inside] <= 0.0])
     return first, last
 
 

@@ -106,8 +106,12 @@ def extrapolated_threshold(
     x, y = points.x[usable], points.y[usable]
     windows_x, windows = sliding_window_view(x, neighbours), sliding_window_view(y, neighbours)
     dx = windows_x - windows_x.mean(axis=-1, keepdims=True)
-    slopes = (dx * windows).sum(axis=-1) / (dx**2).sum(axis=-1)
+    dy = windows - windows.mean(axis=-1, keepdims=True)
+    slopes = (dx * dy).sum(axis=-1) / (dx**2).sum(axis=-1)
     sizes = slopes if y[-1] > y[0] else -slopes
+    if not sizes.max() > 0.0:
+        what = "the current does not change along the sweep, so no line meets zero current"
+        raise CannotExtract(what, at=points.place[usable])
     best = int(np.flatnonzero(sizes >= sizes.max() * (1.0 - ROUNDING))[0])
     if best in (0, slopes.size - 1):
         what = "the transconductance is largest at an end of the data"
@@ -120,7 +124,8 @@ def extrapolated_threshold(
         )
     fit = line_fit(windows_x[best], windows[best])
     value, error = (float(one) for one in fit.zero())
-    beside = [float(line_fit(windows_x[k], windows[k]).zero()[0]) for k in (best - 1, best + 1) if slopes[k] != 0.0]
+    around = [line_fit(windows_x[k], windows[k]) for k in (best - 1, best + 1)]
+    beside = [float(line.zero()[0]) for line in around if float(line.slope) != 0.0]
     middle = float(windows_x[best].mean())
     parts = (
         Part(SCATTER, error, fit.freedom),
