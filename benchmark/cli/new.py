@@ -23,7 +23,8 @@ def new_command(kind: str, path: Path, model: str | None = None) -> None:
         message = f"there is no template {kind!r}; known are {', '.join(KINDS)}; {nearest(kind, KINDS)}".rstrip("; ")
         raise UsageError(message)
     if model is not None and kind != "technology":
-        message = f"--model belongs to a new technology; a {kind} has none"
+        noun = "description of curves" if kind == "curves" else kind
+        message = f"--model belongs to a new technology; a {noun} has none"
         raise UsageError(message)
     model_name = "given" if model is None else model
     stem = _stem(path, kind)

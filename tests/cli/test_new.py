@@ -140,6 +140,10 @@ def test_a_description_of_a_raw_file_names_every_key_there_is(tmp_path: Path, ev
             "there is no template 'technolgy'; known are study, technology, circuit, curves; "
             "did you mean 'technology'?",
         ),
+        (
+            ["curves", "a.toml", "--model", "given"],
+            "--model belongs to a new technology; a description of curves has none",
+        ),
         (["zzz", "a.toml"], "there is no template 'zzz'; known are study, technology, circuit, curves"),
         (["study", "a.tml"], "a.tml: the name of a new file ends in .toml"),
         (["study", "a"], "a: the name of a new file ends in .toml"),

@@ -152,7 +152,7 @@ def test_shipped_files_name_their_schema(path: Path):
 def test_new_files_validate_and_name_their_schema(kind: str, model_name: str, tmp_path: Path):
     if kind != "technology" and model_name != MODEL_NAMES[0]:
         return
-    new_command(kind, tmp_path / "fresh.toml", model_name)
+    new_command(kind, tmp_path / "fresh.toml", model_name if kind == "technology" else None)
     files = sorted(tmp_path.rglob("*.toml"))
     assert files
     for path in files:
@@ -341,7 +341,7 @@ def test_wrong_descriptions_of_raw_files_are_refused_by_the_schema_and_by_the_pr
     from tests.studies import toml
 
     path = tmp_path / "raw.toml"
-    new_command("curves", path, "")
+    new_command("curves", path)
     data = read(path)
     for wrong in (False, True):
         if wrong:
