@@ -46,6 +46,7 @@ NAMES = [
     "flips",
     "import_sheet",
     "improve",
+    "joint_sheet",
     "load_result",
     "load_set",
     "load_study",
@@ -115,7 +116,7 @@ def _documented() -> Iterator[tuple[str, Any]]:
         item = getattr(api, name)
         yield name, item
         for key, member in vars(item).items() if inspect.isclass(item) else ():
-            if not key.startswith("_"):
+            if not key.startswith("_") and key not in item.__dataclass_fields__:  # fields stand under Attributes
                 own = member.fget if isinstance(member, property) else getattr(member, "func", member)
                 yield f"{name}.{key}", own
 
