@@ -32,6 +32,7 @@ from benchmark.report.figure import checked
 from benchmark.report.folder import fill_folder, report_page
 from benchmark.report.publish import COLUMN, figures_for_print
 from benchmark.report.section_change import PAGE, change_sentence, changed
+from benchmark.report.tables import tables
 from benchmark.report.trails import trail
 from tests.near import near
 from tests.report_records import changed as altered
@@ -313,15 +314,15 @@ def _alike(text: str) -> str:
 def test_the_page_says_what_the_terminal_says_digit_by_digit():
     record = remeasured()
     change, found = record["change"], _Tables(page_of_remeasured()).found
-    tables = {
+    wanted_tables = {
         "change-inputs": input_table(change, PLAIN),
         "change-links": link_table(change, PLAIN),
         "change-chain": chain_table(change, PLAIN),
         "change-results": result_table(change, PLAIN),
         **{f"change-parts-{i}": t for i, t in enumerate(part_tables(change, PLAIN, additive=True), start=1)},
     }
-    assert len(tables) == 6
-    for key, table in tables.items():
+    assert len(wanted_tables) == 6
+    for key, table in wanted_tables.items():
         heads, *rows = found[key]
         assert heads == list(table.columns)
         assert [[_alike(cell) for cell in row] for row in rows] == [
@@ -437,3 +438,11 @@ def test_the_page_prints_signs_and_arrows_as_pages_do():
     assert PAGE.signed(-0.5, 3) == "−0.500"
     assert PLAIN.signed(-0.5, 3) == "-0.500"
     assert PLAIN.signed(-1e-9, 3) == "+0.000"
+
+
+def test_numbers_of_the_table_of_changes_have_their_unit_beside_them():
+    rows = [row for row in tables(remeasured())["changes"] if isinstance(row["new"], float)]
+    sections = {row["section"].split(",")[0] for row in rows}
+    assert {"input", "chain", "result", "probability"} <= sections
+    bare = [row for row in rows if not row["unit"]]
+    assert all(row["section"] == "probability" or row["name"].endswith(": margin") for row in bare), bare
