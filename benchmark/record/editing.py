@@ -12,6 +12,7 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
 from benchmark.devices import model
 from benchmark.errors import EvenloadError, InputRefused, Problem, nearest
@@ -23,6 +24,7 @@ from benchmark.sets.change_line import change_text, changes_file, read_changes, 
 from benchmark.sets.edit import Edit, edited_text
 from benchmark.sets.files import TomlFile, parse_toml, read_toml
 from benchmark.sets.follow import followers, in_file_digits
+from benchmark.sets.formulas import FormulaError
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.problems import Collector
 from benchmark.sets.sources import Source
@@ -300,29 +302,19 @@ def _exact(number: Decimal, unit: str, wanted: str) -> Decimal | None:
 
 
 def _following(opened: OpenSet, restated: Sequence[Restated]) -> list[Edit]:
-    """Return the derived values that follow from the restated ones, with the reason that names those."""
-    moved = {}
-    for one in restated:
-        if not one.reason:
-            continue
-        unit, value = _unit(one.unit), opened.item.values.get(one.name)
-        if unit is None:
-            return []  # the check of the changed set names it
-        if "" in one.numbers:
-            moved[one.name] = np.array([to_si(one.numbers[""], unit)])
-            continue
-        if value is None:
-            continue  # a value that is new to the set: no formula names it
-        array = np.array(np.broadcast_to(value.si, (len(opened.item.nodes),)))
-        for node, number in one.numbers.items():
-            array[opened.item.position(node)] = to_si(number, unit)
-        moved[one.name] = array
-    if not moved:
+    """Return the derived values that follow from the restated ones, with the reason that names those.
+
+    None where a number cannot be one or a formula cannot be computed with it: the check of the changed set says why.
+    """
+    moved = _moved(opened, restated)
+    try:
+        following = followers(opened.item.values, moved) if moved else {}
+    except FormulaError:
         return []
     newest = max((one.date for one in restated if one.date is not None), default=None)
     old_date = next((one.old_date for one in restated if one.old_date is not None), None)
     edits = []
-    for name, si in followers(opened.item.values, moved).items():
+    for name, si in following.items():
         table = opened.table(name)
         numbers = [in_file_digits(float(x), table.get("unit", "1")) for x in si]
         changed: Data = {"date": newest}
@@ -333,6 +325,29 @@ def _following(opened: OpenSet, restated: Sequence[Restated]) -> list[Edit]:
             changed |= {"value": None, "by_node": dict(zip(opened.item.nodes, each, strict=True))}
         edits.append(Edit(name, changed, f"follows {', '.join(sorted(moved))}", old_date))
     return edits
+
+
+def _moved(opened: OpenSet, restated: Sequence[Restated]) -> dict[str, NDArray[np.float64]]:
+    """Return the new numbers of superseded values in SI; empty when one of them cannot be a number of the program."""
+    moved = {}
+    for one in restated:
+        unit, value = _unit(one.unit), opened.item.values.get(one.name)
+        if not one.reason or (value is None and "" not in one.numbers):
+            continue
+        if unit is None:
+            return {}
+        try:
+            numbers = {node: to_si(number, unit) for node, number in one.numbers.items()}
+        except OverflowError:
+            return {}
+        if "" in numbers:
+            moved[one.name] = np.array([numbers[""]])
+        elif value is not None:
+            array = np.array(np.broadcast_to(value.si, (len(opened.item.nodes),)))
+            for node, number in numbers.items():
+                array[opened.item.position(node)] = number
+            moved[one.name] = array
+    return moved
 
 
 def _unit(text: str) -> Unit | None:

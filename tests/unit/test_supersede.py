@@ -224,6 +224,8 @@ def test_the_unit_of_the_other_nodes_stays(tmp_path: Path):
     ("name", "number", "more", "message"),
     [
         ("actuator_coefficient", "-5", {}, "is out of its domain; found -5 pm/V; allowed: above 0"),
+        ("actuator_coefficient", "0", {}, "is out of its domain; found 0 pm/V"),
+        ("actuator_coefficient", "9e299", {"unit": "Gm/V"}, "is beyond the range of the program"),
         ("actuator_coefficient", "170", {"unit": "V"}, "has the wrong dimension"),
         ("actuator_coefficient", "170", {"unit": "pm/vv"}, "unknown unit"),
         ("actuator_coefficient", "170", {"source": "nobody"}, "is not a known source"),
