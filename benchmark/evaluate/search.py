@@ -21,6 +21,7 @@ from numpy.typing import NDArray
 
 from benchmark.evaluate.points import Points, design_points
 from benchmark.evaluate.side import SideProblem, build_side
+from benchmark.evaluate.windows import hidden_windows
 from benchmark.evaluate.zoom import Near, Seen
 from benchmark.sets.study import Choice, NodePair
 
@@ -215,11 +216,17 @@ def _points_of(points: Points, rows: NDArray[np.intp]) -> Points:
 
 
 def least(run: SideRun, choice: Choice, objective: Objective) -> Array:
-    """Return the least value over a few supplies of the grid, (row,), whatever conditions say; infinite where none."""
-    supply = supply_grid(run.problem)
+    """Return what the least value over a few supplies of the grid cannot be below, (row,), whatever conditions say.
+
+    At the highest temperature alone: another one may make the path slower, which can only cost more energy and time.
+    Infinite where no point has a value.
+    """
+    hot = dataclasses.replace(run.problem.study, temperatures=run.problem.study.temperatures[-1:])
+    problem = dataclasses.replace(run.problem, study=hot)
+    supply = supply_grid(problem)
     some = np.unique(np.append(np.arange(0, supply.shape[1], SPARSE), supply.shape[1] - 1))
-    points = design_points(run.problem, supply[:, some], *choice)
-    return np.asarray(np.where(points.able, objective(run.problem, points), np.inf).min(axis=1))
+    points = design_points(problem, supply[:, some], *choice)
+    return np.asarray(np.where(points.able, objective(problem, points), np.inf).min(axis=1))
 
 
 def nowhere(run: SideRun, choice: Choice) -> Optimum:
@@ -319,24 +326,16 @@ def _search(
     column, value = _best_on_grid(run, grid, objective, cheap, costly)
     best = _take(grid, column)
     step = (ends[1] - ends[0]) / max(problem.study.supply_points - 1, 1)
-    missing = ~np.isfinite(value)
-    if missing.any() and step > 0.0:
-        first = _feasible(run, combination, condition, missing)
-        best = _merge(best, first.points, first.found)
-        value = np.where(first.found, objective(problem, first.points)[:, 0], value)
-    margin = cheap.judge(run, best, best.able)[1][:, 0]
+    no = np.zeros(value.shape, dtype=bool)
+    start = Optimum(best, value, np.isfinite(value), no, no, no)
+    if step > 0.0:
+        start = _between(run, combination, objective, cheap, condition, start)
+        if not start.found.all():
+            start = _feasible(run, combination, objective, condition, start)
+    margin = cheap.judge(run, start.points, start.points.able)[1][:, 0]
     # the step of the grid, not its neighbours: a declared supply may lie beside a point of the grid, or on it
-    near = Near.around(best.supply[:, 0], value, margin, step, ends)
-    nowhere = np.zeros(value.shape, dtype=bool)
-    return _zoom(
-        run,
-        combination,
-        objective,
-        condition,
-        Optimum(best, value, nowhere, nowhere, nowhere, nowhere),
-        near,
-        near.first(),
-    )
+    near = Near.around(start.points.supply[:, 0], start.value, margin, step, ends)
+    return _zoom(run, combination, objective, condition, start, near, near.first())
 
 
 def _zoom(
@@ -385,38 +384,68 @@ def _zoom(
     return put_rows(whole, rest, rows)
 
 
-def _feasible(run: SideRun, combination: Choice, condition: Condition, wanted: Mask) -> Optimum:
-    """Look between the points of the grid for a permitted supply, where the grid has none.
+def _between(
+    run: SideRun, combination: Choice, objective: Objective, cheap: Condition, condition: Condition, start: Optimum
+) -> Optimum:
+    """Look where the grid steps over a window of permitted supplies that would be better than what it found."""
+    grid = run.grid(combination)
+    hidden = hidden_windows([part.margin(run, grid, grid.able) for part in All.of(cheap).parts], grid.able)
+    score = objective(run.problem, grid)
+    cost = np.fmin(score[:, :-1], score[:, 1:])
+    while True:
+        interval, least = _best(cost, hidden & (cost < start.value[:, None]))
+        rows = np.flatnonzero(np.isfinite(least))
+        if not rows.size:
+            return start
+        place = interval[rows]
+        hidden[rows, place] = False
+        part = run.subset(rows)
+        found = _window(part, combination, condition, grid.supply[rows, place], grid.supply[rows, place + 1])
+        start = _with_better(start, found, rows, objective(part.problem, found.points)[:, 0])
+
+
+def _with_better(start: Optimum, found: Optimum, rows: NDArray[np.intp], value: Array) -> Optimum:
+    """Take the points found in some rows where they are better; ``value`` is theirs."""
+    keep = np.flatnonzero(found.found & (value < start.value[rows]))
+    if not keep.size:
+        return start
+    return put_rows(start, take_rows(dataclasses.replace(found, value=value), keep), rows[keep])
+
+
+def _feasible(run: SideRun, combination: Choice, objective: Objective, condition: Condition, start: Optimum) -> Optimum:
+    """Look around the point of the grid with the largest margin for a permitted supply, where the grid has none."""
+    rows = np.flatnonzero(~start.found)
+    part = run.subset(rows)
+    grid = part.grid(combination)
+    column, short = _best(_short(part, grid, condition), np.ones(grid.energy.shape, dtype=bool))
+    ends = run.problem.side.supply
+    step = (ends[1] - ends[0]) / max(run.problem.study.supply_points - 1, 1)
+    low, high = _bracket(np.take_along_axis(grid.supply, column[:, None], axis=1)[:, 0], step, ends)
+    found = _window(part, combination, condition, low, high, wanted=np.isfinite(short))
+    return _with_better(start, found, rows, objective(part.problem, found.points)[:, 0])
+
+
+def _short(run: SideRun, points: Points, condition: Condition) -> Array:
+    """Return the negative of the smallest margin; infinite where the numbers mean nothing."""
+    return np.where(points.able, -np.fmin(condition.margin(run, points, points.able), np.finfo(float).max), np.inf)
+
+
+def _window(
+    run: SideRun, combination: Choice, condition: Condition, low: Array, high: Array, wanted: Mask | None = None
+) -> Optimum:
+    """Look for a permitted supply between two supplies.
 
     The smallest margin of all conditions is made as large as it goes, by zooming: a window of permitted supplies,
     however narrow, holds the supply at which it is largest, if the margins have one peak there.
     """
-    rows = np.flatnonzero(wanted)
-    if rows.size < wanted.size:
-        # the grid stands for the rows that need nothing
-        nothing = np.zeros(wanted.shape, dtype=bool)
-        grid = _take(run.grid(combination), np.zeros(wanted.shape, dtype=np.intp))
-        whole = Optimum(grid, np.full(wanted.shape, np.inf), nothing, nothing, nothing, nothing)
-        part = _feasible(run.subset(rows), combination, condition, np.ones(rows.shape, dtype=bool))
-        return put_rows(whole, part, rows)
-    problem = run.problem
-    ends = problem.side.supply
-
-    def shortest(points: Points) -> Array:
-        return np.where(points.able, -np.fmin(condition.margin(run, points, points.able), np.finfo(float).max), np.inf)
-
-    grid = run.grid(combination)
-    everywhere = np.ones(grid.energy.shape, dtype=bool)
-    column, value = _best(shortest(grid), everywhere)
-    best = _take(grid, column)
-    step = (ends[1] - ends[0]) / max(problem.study.supply_points - 1, 1)
-    low, high = _bracket(best.supply[:, 0], step, ends)
-    found = np.zeros(wanted.shape, dtype=bool)
-    active = wanted & np.isfinite(value)
+    problem, ends = run.problem, run.problem.side.supply
+    best, value = nowhere(run, combination).points, np.full(low.shape, np.inf)
+    found = np.zeros(low.shape, dtype=bool)
+    active = np.ones(low.shape, dtype=bool) if wanted is None else wanted
     while active.any():
         fine = low[:, None] + (high - low)[:, None] * np.linspace(0.0, 1.0, WINDOW_POINTS)
         points = design_points(problem, fine, *combination)
-        column, fine_value = _best(shortest(points), np.ones(fine.shape, dtype=bool))
+        column, fine_value = _best(_short(run, points, condition), np.ones(fine.shape, dtype=bool))
         better = active & (fine_value < value)
         if better.any():
             best = _merge(best, _take(points, column), better)
@@ -425,9 +454,9 @@ def _feasible(run: SideRun, combination: Choice, condition: Condition, wanted: M
         found |= (asked & best.able & condition(run, best, asked))[:, 0]
         near = _bracket(best.supply[:, 0], (high - low) / (WINDOW_POINTS - 1), ends)
         low, high = np.where(active, near[0], low), np.where(active, near[1], high)
-        active &= ~found & (high - low > problem.study.refine_relative * high)
-    nowhere = np.zeros(wanted.shape, dtype=bool)
-    return Optimum(best, value, found, nowhere, nowhere, nowhere)
+        active &= ~found & np.isfinite(value) & (high - low > problem.study.refine_relative * high)
+    no = np.zeros(found.shape, dtype=bool)
+    return Optimum(best, np.where(found, value, np.inf), found, no, no, no)
 
 
 def minimise(
