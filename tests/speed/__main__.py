@@ -5,6 +5,8 @@ and with the vector math library (``-ffast-math`` lets gcc use it). The results 
 before anything is timed. ``--million`` also runs a million draws of a hand study with 1, 2 and 4 processes and compares
 the bits. Times are the best of several runs of one process; nothing is asserted about them. Last, a batch of five
 studies after one edit of a set, with one process and with two, through the command line.
+
+``python -m tests.speed --demo DRAWS`` runs so many draws of the worked study with 1, 2 and 4 processes instead.
 """
 
 from __future__ import annotations
@@ -36,6 +38,7 @@ from tests.fixed_displacement import fixed_displacement
 
 Array = np.ndarray
 HERE = Path(__file__).parent
+WORKED = HERE.parents[1] / "reports" / "always-on-hub" / "study.toml"
 STRESS = HERE.parent / "data" / "stress-hand" / "study.toml"
 DRAWS, SUPPLIES = 2048, 33
 
@@ -174,29 +177,40 @@ def report(name: str, elements: int, ours: float, kernels: dict[str, float]) -> 
         print(f"    {kernel}: {1e9 * seconds / elements:.1f} ns; the program takes {ours / seconds:.1f} times as long")
 
 
-def draws_case(million: bool) -> None:
-    """Draws of a whole hand study, both sides, verdict included: time, memory, bits."""
-    with tempfile.TemporaryDirectory() as folder:
-        study, _ = load_study(fixed_displacement().write(Path(folder)))
+def draw_task(path: Path, draws: int) -> DrawTask:
+    """Draws of a study at its headline pair, with what was chosen at the best estimate."""
+    study, _ = load_study(path)
     pair = study.pair(study.headline)
     comparison = Comparison(study, pair, Batch.best_estimate())
     frozen = comparison.frozen_choices(comparison.outcome(study.policy.primary))
-    task = DrawTask(study, pair, study.policy.primary, frozen, plan_of(2**13))
-    seconds = best(lambda: [sum_block(task, block) for block in range(task.plan.blocks)], 3)
-    print(f"hand study, both sides at declared points: {1e6 * seconds / task.plan.draws:.1f} us per draw")
-    if not million:
-        return
-    task = DrawTask(study, pair, study.policy.primary, frozen, plan_of(2**20))
+    return DrawTask(study, pair, study.policy.primary, frozen, plan_of(draws))
+
+
+def draws_case(million: bool) -> None:
+    """Draws of a whole hand study, both sides, verdict included: time, memory, bits."""
+    with tempfile.TemporaryDirectory() as folder:
+        study = fixed_displacement().write(Path(folder))
+        small, large = draw_task(study, 2**13), draw_task(study, 2**20)
+    seconds = best(lambda: [sum_block(small, block) for block in range(small.plan.blocks)], 3)
+    print(f"hand study, both sides at declared points: {1e6 * seconds / small.plan.draws:.1f} us per draw")
+    if million:
+        many_draws("hand study", large)
+
+
+def many_draws(name: str, task: DrawTask) -> None:
+    """Run the draws with 1, 2 and 4 processes."""
     found = {}
     for jobs in (1, 2, 4):
         started = time.perf_counter()
         found[jobs] = repr(uncertainty(task, jobs))
+        seconds = time.perf_counter() - started
         own, workers = (
             resource.getrusage(who).ru_maxrss / 1024 for who in (resource.RUSAGE_SELF, resource.RUSAGE_CHILDREN)
         )
-        print(f"2^20 draws, {jobs} process(es): {time.perf_counter() - started:.1f} s, peak memory {own:.0f} MB, "
-              f"largest worker {workers:.0f} MB")  # fmt: skip
-    print(f"same bits with 1, 2 and 4 processes: {len(set(found.values())) == 1}")
+        print(f"{name}: {task.plan.draws} draws, {jobs} process(es): {seconds:.1f} s, "
+              f"{1e3 * seconds / task.plan.draws:.2f} ms per draw, peak memory {own:.0f} MB, "
+              f"largest worker {workers:.0f} MB", flush=True)  # fmt: skip
+    print(f"{name}: same bits with 1, 2 and 4 processes: {len(set(found.values())) == 1}")
 
 
 def batch_case() -> None:
@@ -235,7 +249,11 @@ def batch_run(place: Path, jobs: int) -> tuple[float, resource.struct_rusage, st
 def main() -> None:
     options = argparse.ArgumentParser(description=__doc__)
     options.add_argument("--million", action="store_true", help="also run a million draws with 1, 2 and 4 processes")
-    million = options.parse_args().million
+    options.add_argument("--demo", type=int, metavar="DRAWS", help="only so many draws of the worked study, likewise")
+    asked = options.parse_args()
+    if asked.demo:
+        many_draws("worked study", draw_task(WORKED, asked.demo))
+        return
     with tempfile.TemporaryDirectory() as folder:
         libraries = {
             "kernel": library(Path(folder), "plain"),
@@ -243,7 +261,7 @@ def main() -> None:
         }
         chain_case(libraries)
         current_case(libraries)
-    draws_case(million)
+    draws_case(asked.million)
     batch_case()
 
 
