@@ -9,7 +9,9 @@ An input without any effect at either end alone is left out of the larger sets. 
 combinations of ends are left, those whose effects alone, added in ln(advantage), come to less than a third of the
 distance to the level are left out too, and their number is said. How implausible a set is: the root of the sum of the
 squared distances from the best estimates, in standard deviations of the stated spreads, at the nearest point found that
-changes the side.
+changes the side. That point is solved for every combination of ends that changes the side: the order of the points at
+the ends is another one. Only where there are more than ``MOST_SOLVED`` combinations are those left that look furthest
+on a straight line in ln(advantage), and their number is said.
 """
 
 from __future__ import annotations
@@ -43,8 +45,10 @@ TOGETHER = 3.0
 DIRECTIONS = (0.25, 0.5, 0.75, 1.0)
 #: tolerance of the share of the way along a direction
 TOLERANCE = 1.0e-7
-#: sets whose nearest point is looked for
-CLOSEST = 5
+#: combinations of ends whose nearest point is solved, at most
+MOST_SOLVED = 400
+#: sets that are listed, of those solved
+LISTED = 5
 FLIP_COLUMNS = (
     "set",
     "inputs",
@@ -77,7 +81,8 @@ class FlippingSets:
     """The sets of the smallest size, the least implausible first; none when ``flips`` is empty.
 
     ``up_to``: sizes looked at; ``inputs``: inputs with a range; ``left_out``: names without effect alone; ``pruned``:
-    combinations that were not evaluated because their effects alone are far too small.
+    combinations that were not evaluated because their effects alone are far too small; ``sets``: sets of inputs that
+    change the side, listed or not; ``unsolved``: combinations of ends that do, whose nearest point was not solved.
     """
 
     level: float
@@ -87,6 +92,8 @@ class FlippingSets:
     inputs: int
     left_out: tuple[str, ...]
     pruned: int = 0
+    sets: int = 0
+    unsolved: int = 0
 
     @property
     def text(self) -> str:
@@ -106,7 +113,11 @@ class FlippingSets:
         )
         size = len(best.axes)
         word = {1: "one input", 2: "two inputs", 3: "three inputs"}[size]
-        return f"{head}: {word} together change that, first of {len(self.flips)}: {moved}"
+        change = "alone changes" if size == 1 else "together change"
+        many = f", the least implausible of {self.sets} such sets" if self.sets > 1 else ""
+        many += f" ({len(self.flips)} listed)" if self.sets > len(self.flips) else ""
+        rest = f"; nearest points of {self.unsolved} further combinations of ends not solved" if self.unsolved else ""
+        return f"{head}: {word} {change} that{many}: {moved}{rest}"
 
 
 #: inputs, and the ends they are moved to
@@ -152,7 +163,7 @@ def flipping_sets(trials: Trials, level: float, up_to: int = 2) -> FlippingSets:
     same = np.abs(counted / today - 1.0) <= NO_EFFECT if np.isfinite(today) else np.isnan(counted)
     idle = {axis for axis in axes if all(same[k] for k, item in enumerate(single) if item[0][0] is axis)}
     left_out = tuple(axis.name for axis in axes if axis in idle)
-    found = [item for item, flips in zip(single, other, strict=True) if flips]
+    found = [(item, float(end)) for item, flips, end in zip(single, other, counted, strict=True) if flips]
     # effect of each end alone in ln(advantage) towards the level; what is not a number there may do anything
     with np.errstate(divide="ignore", invalid="ignore"):
         towards = (np.log(counted) - math.log(today)) * (-1.0 if reached else 1.0) if today > 0.0 else counted
@@ -177,13 +188,37 @@ def flipping_sets(trials: Trials, level: float, up_to: int = 2) -> FlippingSets:
         if len(moved) > MOST_ROWS:
             message = f"sets of {size} of {len(active)} inputs need {len(moved)} comparisons; at most {MOST_ROWS}"
             raise UsageError(message)
-        other, _ = _on_other_side(trials, [_trial(*item) for item in moved], level, reached)
-        found = [item for item, flips in zip(moved, other, strict=True) if flips]
-    found.sort(key=lambda item: _distance(*item))
-    flips = _nearest(trials, found[:CLOSEST], level, reached)
-    best = {flip.axes: flip for flip in sorted(flips, key=lambda flip: -flip.implausibility)}
-    ordered = sorted(best.values(), key=lambda flip: flip.implausibility)
-    return FlippingSets(level, float(trials.best.advantage[0]), tuple(ordered), up_to, len(axes), left_out, pruned)
+        other, counted = _on_other_side(trials, [_trial(*item) for item in moved], level, reached)
+        found = [(item, float(end)) for item, flips, end in zip(moved, other, counted, strict=True) if flips]
+    if len(found) > MOST_SOLVED:
+        found.sort(key=lambda pair: _straight(pair[0], pair[1], today, level))
+    flips = _nearest(trials, [item for item, _ in found[:MOST_SOLVED]], level, reached)
+    best = {flip.axes: flip for flip in sorted(flips, key=lambda flip: -_known(flip.implausibility))}
+    ordered = sorted(best.values(), key=lambda flip: _known(flip.implausibility))
+    return FlippingSets(
+        level,
+        float(trials.best.advantage[0]),
+        tuple(ordered[:LISTED]),
+        up_to,
+        len(axes),
+        left_out,
+        pruned,
+        len({item[0] for item, _ in found}),
+        max(len(found) - MOST_SOLVED, 0),
+    )
+
+
+def _known(distance: float) -> float:
+    """A distance that no spread tells comes last."""
+    return distance if np.isfinite(distance) else math.inf
+
+
+def _straight(item: _Set, end: float, today: float, level: float) -> float:
+    """Distance at the level on a straight line in ln(advantage) from today to the ends; that of the ends if unknown."""
+    whole = _known(_distance(*item))
+    if not (today > 0.0 and end > 0.0 and math.isfinite(end)):
+        return whole
+    return whole * math.log(level / today) / math.log(end / today)
 
 
 def _could(item: _Set, effects: Mapping[_Set, float], distance: float) -> bool:
@@ -243,7 +278,7 @@ def _nearest(trials: Trials, sets: Sequence[_Set], level: float, reached: bool) 
     found: dict[_Set, tuple[float, ...]] = {}
     for (item, direction), share in zip(ways, shares, strict=True):
         values = at(item, direction, float(share))
-        if item not in found or _distance(item[0], values) < _distance(item[0], found[item]):
+        if item not in found or _known(_distance(item[0], values)) < _known(_distance(item[0], found[item])):
             found[item] = values
     answers = trials([_trial(item[0], values) for item, values in found.items()])
     return [

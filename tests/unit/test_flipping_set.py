@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 import math
 from decimal import Decimal as D
 from typing import Any
@@ -76,19 +77,100 @@ def test_no_single_input_but_exactly_one_pair():
     assert {row["evidence"] for row in rows} == {"invented"}
 
 
-def test_the_less_implausible_pair_comes_first():
-    wide = {"closing_delay": v(D("0.0"), "ns")}
-    sets = trials(capacitance("0.100", "0.2"), capacitance("0.135", "0.2"), terminal_capacitance=v(
-        D("0.02"), "fF", spread={"shape": "uniform", "low": D("0.0"), "high": D("0.06")}), **wide)  # fmt: skip
+def overheads(candidate: Table | None, contender: Table | None, reference: str, **spreads: Table) -> Trials:
+    """Capacitances of both sides with spreads of their own, and efficiencies of supply with ranges."""
+    free = {"options": {"off_state": "none"}, "off_resistance": None}
+
+    def of(name: str, best: str) -> Table:
+        own = {"spread": spreads[name]} if name in spreads else {}
+        return v(D(best), "fF", unusual=True, **own)
+
+    sets = [
+        given("a", input_capacitance=of("a", "0.100"), **free),
+        given("b", input_capacitance=of("b", reference), **free),
+    ]
+    sides = [
+        side(name, 0.5, 0.5, **({"costs": {"supply_efficiency": table}} if table else {}))
+        for name, table in (("a", candidate), ("b", contender))
+    ]
+    loaded = load(study(sides[0], [sides[1]], sets, required=D("1.0")))
+    return Trials(loaded, loaded.pair(loaded.headline))
+
+
+def test_the_order_is_that_of_the_nearest_points_not_of_the_ends(monkeypatch):
+    """1.2 today. One end lies 3.46 standard deviations away, but its side changes after 0.23 of one already."""
+    sets = overheads(
+        None,
+        None,
+        "0.120",
+        a={"shape": "uniform", "low": D("0.100"), "high": D("0.400")},
+        b={"shape": "lognormal", "ln_sd": D("0.12")},
+    )
+    exact = {"a.input_capacitance": 0.02 / (0.3 / math.sqrt(12.0)), "b.input_capacitance": math.log(1.2) / 0.12}
+    for most in (400, 1):
+        monkeypatch.setattr("benchmark.decide.flipping_set.MOST_SOLVED", most)
+        found = flipping_sets(sets, 1.0)
+        assert names(found)[0] == {"a.input_capacitance"}
+        assert found.sets == 2
+        for flip in found.flips:
+            assert flip.implausibility == near(exact[flip.axes[0].name], rel=1e-5)
+    assert found.unsolved == 1
+    assert "nearest points of 1 further combinations of ends not solved" in found.text
+    monkeypatch.setattr("benchmark.decide.flipping_set.MOST_SOLVED", 400)
+    monkeypatch.setattr("benchmark.decide.flipping_set.LISTED", 1)
     found = flipping_sets(sets, 1.0)
-    assert all(len(flip.axes) == len(found.flips[0].axes) for flip in found.flips)
-    order = [flip.implausibility for flip in found.flips]
-    assert order == sorted(order)
-    for flip in found.flips:
-        moved: dict[str, float] = {}
+    assert found.unsolved == 0
+    assert names(found) == [{"a.input_capacitance"}]
+    assert "one input alone changes that, the least implausible of 2 such sets (1 listed): a.input" in found.text
+
+
+def test_the_less_implausible_pair_comes_first():
+    """1.2 today (0.108 fF / 0.9 over 0.100 fF); no input alone takes away more than 1.17, most of the pairs do."""
+    sets = overheads(
+        v(D("1.0"), spread={"shape": "loguniform", "low": D("0.87"), "high": D("1.0")}),
+        v(D("0.9"), spread={"shape": "loguniform", "low": D("0.85"), "high": D("1.0")}),
+        "0.108",
+        a={"shape": "uniform", "low": D("0.099"), "high": D("0.117")},
+        b={"shape": "lognormal", "ln_sd": D("0.075")},
+    )
+    found = flipping_sets(sets, 1.0)
+    assert all(len(flip.axes) == 2 for flip in found.flips)
+    # by how much ln(advantage) falls with the standard deviations of each, and how far each may go
+    falls = {
+        "a.input_capacitance": lambda z: math.log(1.0 + z * 0.018 / math.sqrt(12.0) / 0.100),
+        "b.input_capacitance": lambda z: 0.075 * z,
+        "candidate.overhead.supply_efficiency": lambda z: math.log(1.0 / 0.87) / math.sqrt(12.0) * z,
+        "contender b.overhead.supply_efficiency": lambda z: math.log(1.0 / 0.85) / math.sqrt(12.0) * z,
+    }
+    reach = {
+        "a.input_capacitance": 0.017 / (0.018 / math.sqrt(12.0)),
+        "b.input_capacitance": 1.959964,
+        "candidate.overhead.supply_efficiency": math.sqrt(12.0),
+        "contender b.overhead.supply_efficiency": math.log(1.0 / 0.9) / math.log(1.0 / 0.85) * math.sqrt(12.0),
+    }
+    exact = {}
+    for pair in itertools.combinations(reach, 2):
+        if sum(falls[name](reach[name]) for name in pair) <= math.log(1.2):
+            continue
+        nearest = minimize(
+            lambda z: z @ z,
+            [reach[name] for name in pair],
+            bounds=[(0.0, reach[name]) for name in pair],
+            constraints={
+                "type": "eq",
+                "fun": lambda z, p=pair: sum(map(lambda n, x: falls[n](x), p, z)) - math.log(1.2),
+            },
+        )
+        exact[frozenset(pair)] = math.sqrt(nearest.fun)
+    assert len(exact) == found.sets >= 4
+    order = [frozenset(flip) for flip in names(found)]
+    assert order == sorted(exact, key=lambda pair: exact[pair])[:5]
+    for pair, flip in zip(order, found.flips, strict=True):
+        assert exact[pair] * (1.0 - 1e-6) <= flip.implausibility <= 1.06 * exact[pair]
+        moved = {}
         for axis, value in zip(flip.axes, flip.values, strict=True):
             moved |= axis.place(value, moved)
-        assert sets([moved]).advantage[0] < 1.0 + 1e-6
+        assert sets([moved]).advantage[0] == near(1.0, rel=1e-6)
 
 
 def test_none_up_to_pairs_is_said_and_a_triple_is_found_on_request():
