@@ -1,9 +1,9 @@
 """Robustness: the best estimate under every policy, list of contenders, node pair and list of temperatures (layer 7).
 
 The policies are those of the study without its diagnostics; the lists are all contenders, all but one, and each alone;
-the temperatures are all of the study, and each alone (at the headline pair, unless the whole product is asked for).
-One cell was fixed before the run: it carries the verdict. The required time and energy of a policy stay as they are in
-every cell, also where the contender that sets the required time is not on the list.
+the temperatures are all of the study, and each alone. One cell was fixed before the run: it carries the verdict. The
+required time and energy of a policy stay as they are in every cell, also where the contender that sets the required
+time is not on the list.
 
 Sides are optimised once per policy, pair and temperatures; lists only choose among them. What has not been evaluated
 for another part of the answer is searched to ``COARSE`` at best: an optimum between two limits is flat, so its energy
@@ -83,7 +83,7 @@ def contender_lists(names: list[str]) -> dict[str, tuple[str, ...]]:
     return {label: members for members, label in found.items() if members}
 
 
-def robustness(study: Study, known: Mapping[tuple[str, str], Outcome], *, whole: bool = False) -> Robustness:
+def robustness(study: Study, known: Mapping[tuple[str, str], Outcome]) -> Robustness:
     """Evaluate all cells.
 
     Parameters
@@ -91,14 +91,12 @@ def robustness(study: Study, known: Mapping[tuple[str, str], Outcome], *, whole:
     study : Study
     known : mapping
         (pair, policy) -> outcome at all temperatures of the study, where it has been evaluated already.
-    whole : bool
-        Judge each temperature alone at every pair; by default only at the headline pair.
     """
     policies = [name for name in (study.policy.primary, *study.policy.also) if name not in DIAGNOSTIC]
     alone = [(kelvin,) for kelvin in study.temperatures if len(study.temperatures) > 1]
     cells: list[Cell] = []
     for pair in study.pairs:
-        for temperatures in (study.temperatures, *(alone if whole or pair.label == study.headline else ())):
+        for temperatures in (study.temperatures, *alone):
             everywhere = temperatures == study.temperatures
             already = {name: known[pair.label, name] for name in policies if everywhere and (pair.label, name) in known}
             costs = _costs(study, pair, temperatures, policies, already)

@@ -66,7 +66,7 @@ def mitigation_conventions(study: Study) -> list[dict[str, str]]:
         "first contender of the study"
     )
     cells = (
-        "best estimates; the required time stays as it is in every cell; each temperature alone at the headline pair; "
+        "best estimates; the required time stays as it is in every cell; each temperature also alone; "
         f"cells that no other part of the answer needs search the supply to a relative step of {COARSE:g}"
     )
     found = [{"name": "ladder", "text": supply}, {"name": "robustness", "text": cells}]
