@@ -5,12 +5,12 @@ from __future__ import annotations
 import contextlib
 import functools
 import time
-from collections.abc import Callable, Iterable, Mapping, Sequence
+from collections.abc import Callable, Collection, Iterable, Mapping, Sequence
 from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from benchmark.api.changes import is_study
+from benchmark.api.changes import OTHER, STUDY, toml_kind
 from benchmark.errors import EvenloadError, InputRefused, UsageError
 
 if TYPE_CHECKING:
@@ -25,6 +25,10 @@ Place = str | Path
 Told = Callable[[int, int], None]
 #: what may have become of a study, and what it is called without an earlier record
 UNCHANGED, MOVED, FLIPPED, NEW, FAILED = "unchanged", "moved", "flipped", "no earlier record", "failed"
+#: an earlier record whose study is not in the folder any more
+GONE = "study missing"
+#: names of folders and files that hold other TOML files than studies
+ELSEWHERE = frozenset({"nodes", "technologies", "wires", "circuits", "tables", "sources.toml"})
 #: endings of files that a study may read
 INPUTS = frozenset({".toml", ".csv", ".tsv", ".txt", ".dat"})
 
@@ -34,8 +38,9 @@ class StudyState:
     """One study of a batch.
 
     ``study``: its file, from the folder of the batch. ``state``: unchanged (every result is the same to the last bit),
-    moved (some result, not the verdict), flipped (the verdict), no earlier record, or failed. ``distance``: advantage
-    over the required one [1]. ``results_moved``: results that differ. ``message``: why it failed, what makes the two
+    moved (some result, not the verdict), flipped (the verdict), no earlier record, failed, or study missing: there is
+    an earlier record, named in ``study`` by its folder, and no study for it. ``distance``: advantage over the required
+    one [1]. ``results_moved``: results that differ. ``message``: why it failed, what makes the two
     records different questions, or why the new record does not say what changed. ``seconds``: its run took.
     """
 
@@ -58,13 +63,16 @@ class Batched:
     Attributes
     ----------
     rows : tuple of StudyState
-        One for each study, in the order of their files.
+        One for each study, in the order of their files; then one for each earlier record without its study.
     seconds : float
         Wall time of all [s].
+    notes : tuple of str
+        TOML files of the folder that cannot be read and stand where sets, circuits, tables or sources do.
     """
 
     rows: tuple[StudyState, ...]
     seconds: float
+    notes: tuple[str, ...] = ()
 
     @property
     def status(self) -> int:
@@ -81,22 +89,35 @@ class Batched:
 
 
 def studies_in(folder: Place) -> list[Path]:
-    """Return every study file in a folder, at any depth; record folders hold none.
+    """Return every file in a folder, at any depth, that is a study or, since it cannot be read, may be one.
 
     Raises
     ------
     UsageError
         When it is not a folder, or holds no study.
     """
+    return _listed(folder)[0]
+
+
+def _listed(folder: Place) -> tuple[list[Path], tuple[str, ...]]:
+    """Return the studies of a folder, and what is to be said of other files that cannot be read."""
     place = Path(folder)
     if not place.is_dir():
         message = f"{place} is not a folder of studies"
         raise UsageError(message)
-    found = [path for path in sorted(place.rglob("*.toml")) if path.is_file() and is_study(path)]
+    found, notes = [], []
+    for path in sorted(place.rglob("*.toml")):
+        if not path.is_file() and not path.is_symlink():  # a link to nowhere is a mistake, not an absence
+            continue
+        kind, why = toml_kind(path)
+        if kind == STUDY or (why and not {path.name, path.parent.name} & ELSEWHERE):
+            found.append(path)
+        elif kind != OTHER:
+            notes.append(f"{path.relative_to(place)} cannot be read: {why}")
     if not found:
         message = f"{place}: holds no study; a study file is a TOML file with [workload] and [[contender]]"
         raise UsageError(message)
-    return found
+    return found, tuple(notes)
 
 
 def input_files(folders: Iterable[Place], records: Iterable[Place | None] = ()) -> dict[str, tuple[int, int]]:
@@ -167,7 +188,7 @@ def batch(
         message = f"jobs: {jobs} processes cannot work; allowed: 1 or more"
         raise UsageError(message)
     root = Path(folder)
-    paths = studies_in(root)
+    paths, notes = _listed(root)
     earlier = since if since is not None else out
     if since is not None and not Path(since).is_dir():
         message = f"{since} is not a folder of records"
@@ -187,7 +208,27 @@ def batch(
         rows.append(row)
         if told is not None:
             told(len(rows), len(paths))
-    return Batched(tuple(rows), time.perf_counter() - started)
+    if earlier is not None:
+        rows += _without_study(Path(earlier), {place_of(path.relative_to(root), Path()) for path in paths})
+    return Batched(tuple(rows), time.perf_counter() - started, notes)
+
+
+def _without_study(records: Path, known: Collection[Path]) -> list[StudyState]:
+    """Return a row for each earlier record that belongs to no study; folders of killed runs begin with a dot."""
+    from benchmark.record.write import read_record
+
+    rows = []
+    for path in sorted(records.rglob("record.json")):
+        place = path.parent.relative_to(records)
+        if place in known or any(part.startswith(".") for part in place.parts):
+            continue
+        name, message = str(place), f"there is a record in {path.parent}, and no study for it"
+        try:
+            verdict = read_record(path)["verdict"]
+            rows.append(StudyState(name, GONE, verdict["word"], "", verdict["advantage"], message=message))
+        except (EvenloadError, LookupError, TypeError) as error:
+            rows.append(StudyState(name, GONE, message=f"{message}; {error}"))
+    return rows
 
 
 def _places_differ(names: Sequence[Path]) -> None:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from pathlib import Path
@@ -22,6 +23,10 @@ Place = str | Path
 End = StudyView | Result | Place
 #: tables of a comparison of two studies, in the order of the report
 TABLES = ("inputs", "other", "points", "attribution", "chain", "results")
+#: what a TOML file may be, here
+STUDY, OTHER, UNKNOWN = "study", "other", "unknown"
+#: a line of a table that only a study has
+_STUDY_LINE = re.compile(r"^\ufeff?[ \t]*(?:\[\[?[ \t]*)?[\"']?(?:workload|contender)[\"']?[ \t]*[\].=]", re.MULTILINE)
 
 
 @dataclass(frozen=True, eq=False)
@@ -175,14 +180,28 @@ def _kind(end: End) -> str:
 
 
 def is_study(path: Path) -> bool:
-    """Tell whether a TOML file is a study; one that cannot be read is none."""
-    import tomllib
+    """Tell whether a TOML file is a study; one that is no TOML counts by the tables its lines name."""
+    return toml_kind(path)[0] == STUDY
 
+
+def toml_kind(path: Path) -> tuple[str, str]:
+    """Return what a TOML file is, ``study``, ``other`` or ``unknown``, and why it cannot be read, if it cannot.
+
+    ``unknown``: it cannot be read, and none of its lines names a table that only a study has.
+    """
+    from benchmark.sets.files import MAX_BYTES, read_toml
+    from benchmark.sets.problems import Collector
+
+    collector = Collector()
+    file = read_toml(path, collector, path.name)
+    if file is not None:
+        return STUDY if "workload" in file.data or "contender" in file.data else OTHER, ""
+    why = "; ".join(map(str, collector.problems))
     try:
-        data = tomllib.loads(path.read_text(encoding="utf-8"))
-    except (OSError, ValueError, RecursionError):
-        return False
-    return "workload" in data or "contender" in data
+        text = path.read_text(encoding="utf-8", errors="replace") if path.stat().st_size <= MAX_BYTES else ""
+    except (OSError, ValueError):
+        text = ""
+    return STUDY if _STUDY_LINE.search(text) else UNKNOWN, why
 
 
 def _state(end: End, kind: str, word: str, told: Mapping[str, Any]) -> State:

@@ -73,9 +73,11 @@ def _told(done: int, of: int) -> None:
 def _print(found: Batched, form: str) -> None:
     rows = [asdict(row) for row in found.rows]
     if form == "json":
-        echo_json({"seconds": found.seconds, "studies": rows})
+        echo_json({"seconds": found.seconds, "studies": rows, "notes": list(found.notes)})
     elif form == "csv":
         echo_csv(list(rows[0]), (["" if value is None else value for value in row.values()] for row in rows))
+        for note in found.notes:
+            typer.echo(f"warning: {note}", err=True)
     else:
         _show(found)
 
@@ -90,7 +92,7 @@ def _show(found: Batched) -> None:
             _number(row.advantage_old),
             _number(row.advantage_new),
             "-" if row.distance is None else f"x {row.distance:.4g}",
-            row.verdict_new if row.verdict_old in ("", row.verdict_new) else f"{row.verdict_old} -> {row.verdict_new}",
+            " -> ".join(dict.fromkeys(word for word in (row.verdict_old, row.verdict_new) if word)),
         )
         for row in found.rows
     ]
@@ -99,6 +101,7 @@ def _show(found: Batched) -> None:
     counts = ", ".join(f"{states.count(state)} {state}" for state in dict.fromkeys(states))
     blocks: list[Block] = [Table("", columns, table)]
     blocks += [Note(f"{row.study}: {row.message}") for row in found.rows if row.message]
+    blocks += [Note(note) for note in found.notes]
     show_blocks(
         [*blocks, Note(f"{len(states)} {'study' if len(states) == 1 else 'studies'}: {counts}; {found.seconds:.1f} s.")]
     )

@@ -186,8 +186,71 @@ def test_files_are_told_apart_by_time_and_size(tmp_path: Path):
 
 def test_study_files_are_found_at_any_depth(tmp_path: Path):
     five_studies(tmp_path / "one" / "two")
-    (tmp_path / "one" / "broken.toml").write_text("x = ", encoding="utf-8")
     assert [path.name for path in studies_in(tmp_path)] == [f"s{i}.toml" for i in range(1, 6)]
+
+
+@pytest.mark.parametrize("study", [True, False])
+def test_a_file_that_cannot_be_read_and_may_be_a_study_fails(evenload: Run, tmp_path: Path, study: bool):
+    """A stray assignment in a study, and a file of which nothing says that it is none."""
+    only(tmp_path / "all", "s1", "s2")
+    broken = tmp_path / "all" / "s2.toml"
+    lines = broken.read_text(encoding="utf-8").splitlines()
+    broken.write_text("\n".join(["x = ", *lines] if study else ["x = "]), encoding="utf-8")
+    ran = evenload("batch", "all", "--format", "json")
+    assert ran.status == 3
+    rows = json.loads(ran.out)["studies"]
+    assert [(row["study"], row["state"]) for row in rows] == [("s1.toml", "no earlier record"), ("s2.toml", "failed")]
+    assert rows[1]["message"].startswith("s2.toml:1: is not TOML: Invalid value")
+
+
+def test_an_empty_file_and_a_link_to_nowhere_fail(tmp_path: Path):
+    only(tmp_path, "s1")
+    (tmp_path / "s2.toml").touch()
+    (tmp_path / "s3.toml").symlink_to("absent.toml")
+    found = batch(tmp_path)
+    assert [(row.study, row.message) for row in found.rows[1:]] == [
+        ("s2.toml", "s2.toml: is empty"),
+        ("s3.toml", "s3.toml: does not exist"),
+    ]
+    assert found.status == 3
+
+
+@pytest.mark.parametrize("form", ["text", "csv", "json"])
+def test_other_files_that_cannot_be_read_are_told(evenload: Run, tmp_path: Path, form: str):
+    """Sets, sources and descriptions that can be read are skipped, as is no study in a folder of sets."""
+    only(tmp_path / "all", "s1")
+    spoiled = tmp_path / "all" / "nodes" / "technologies" / "unused.toml"
+    spoiled.write_text('model = "given"\nx = ', encoding="utf-8")
+    ran = evenload("batch", "all", "--format", form)
+    assert ran.status == 0
+    told = ran.err if form == "csv" else ran.out
+    assert "nodes/technologies/unused.toml cannot be read: unused.toml:2: is not TOML" in " ".join(told.split())
+    if form == "json":
+        assert [row["study"] for row in json.loads(ran.out)["studies"]] == ["s1.toml"]
+
+
+def test_a_record_without_its_study_is_named(evenload: Run, tmp_path: Path):
+    only(tmp_path / "all", "s1", "s2")
+    assert evenload("batch", "all", "--out", "records", *TIME).status == 0
+    (tmp_path / "all" / "s2.toml").unlink()
+    ran = evenload("batch", "all", "--since", "records")
+    assert ran.status == 0
+    assert "s2: there is a record in records/s2, and no study for it" in ran.out
+    assert "2 studies: 1 unchanged, 1 study missing;" in ran.out
+    (tmp_path / "records" / "s2" / "record.json").write_text("{", encoding="utf-8")
+    row = batch("all", since="records").rows[1]
+    assert (row.study, row.state, row.verdict_old) == ("s2", "study missing", "")
+    assert "is not a readable record" in row.message
+
+
+def test_a_study_that_is_no_toml_is_refused_as_a_study(evenload: Run, tmp_path: Path):
+    """Not as a set of values that cannot be compared with a study."""
+    only(tmp_path, "s1", "s2")
+    broken = tmp_path / "s2.toml"
+    broken.write_text("x = \n" + broken.read_text(encoding="utf-8"), encoding="utf-8")
+    ran = evenload("changes", "s1.toml", "s2.toml")
+    assert ran.status == 3
+    assert "s2.toml:1: is not TOML" in ran.err
 
 
 @pytest.mark.parametrize(
