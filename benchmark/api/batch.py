@@ -10,6 +10,7 @@ from dataclasses import asdict, dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from benchmark.api.batch_options import taken_over
 from benchmark.api.changes import OTHER, STUDY, toml_kind
 from benchmark.errors import EvenloadError, InputRefused, UsageError
 
@@ -40,8 +41,9 @@ class StudyState:
     ``study``: its file, from the folder of the batch. ``state``: unchanged (every result is the same to the last bit),
     moved (some result, not the verdict), flipped (the verdict), no earlier record, failed, or study missing: there is
     an earlier record, named in ``study`` by its folder, and no study for it. ``distance``: advantage over the required
-    one [1]. ``results_moved``: results that differ. ``message``: why it failed, what makes the two
-    records different questions, or why the new record does not say what changed. ``seconds``: its run took.
+    one [1]. ``results_moved``: results that differ. ``message``: why it failed, what makes the two records different
+    questions, why the new record does not say what changed, or what was taken over from the earlier one. ``seconds``:
+    its run took.
     """
 
     study: str
@@ -166,9 +168,9 @@ def batch(
     created : str, optional
         As in ``run``.
     draws : int, optional
-        As in ``run``.
+        As in ``run``; by default those that were given to the run of the earlier record, else the study's.
     seed : int, optional
-        As in ``run``.
+        The same. What would be needed is worked out again when the earlier record says it.
     jobs : int
         Studies run at once, each in a process of its own; no digit depends on their number.
     told : callable, optional
@@ -302,8 +304,10 @@ def _ran(
     if since is not None and (place_of(name, since) / "record.json").is_file():
         before = read_record(place_of(name, since))
     view = load_study(path, nodes)
-    result = run(view, **options)
+    as_before, words = ({}, "") if before is None else taken_over(before, view.study, options)
+    result = run(view, **{**options, **as_before})
     row = _compared(before, result.record)
+    row["message"] = "; ".join(text for text in (row.get("message", ""), words) if text)
     if before is not None:
         result = Result(after_earlier(result.record, before))
     if out is not None:

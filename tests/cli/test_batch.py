@@ -175,6 +175,57 @@ def test_an_earlier_record_with_ratios_only_cannot_say_why(evenload: Run, tmp_pa
     assert "change" not in read(tmp_path / "records" / "s2", "record.json")
 
 
+def test_draws_seed_and_needs_are_those_of_the_earlier_record(evenload: Run, tmp_path: Path):
+    """Given to the earlier run beside its study: with nothing edited, nothing may move and nothing may be lost."""
+    only(tmp_path / "all", "s2")
+    ran = evenload(
+        "run", "all/s2.toml", "--draws", "64", "--seed", "3", "--need", "--out", "records/s2", "--quiet", *TIME
+    )
+    assert ran.status == 0, ran.err
+    before = read(tmp_path / "records" / "s2", "record.json")
+    ran = evenload("batch", "all", "--out", "records", "--format", "json", *TIME)
+    row = json.loads(ran.out)["studies"][0]
+    assert (ran.status, row["state"], row["results_moved"]) == (0, "unchanged", 0)
+    assert row["message"] == "64 draws, seed 3, questions of need as in the earlier record"
+    after = read(tmp_path / "records" / "s2", "record.json")
+    assert after["uncertainty"] == before["uncertainty"]
+    assert after["need"] == before["need"]
+    only(tmp_path / "all", "s2", coefficient="190.0")
+    assert evenload("batch", "all", "--out", "records", "--draws", "32", *TIME).status == 0
+    after = read(tmp_path / "records" / "s2", "record.json")
+    assert (after["uncertainty"]["draws"], after["uncertainty"]["seed"]) == (32, 3), "what is given goes first"
+
+
+def _with_draws(study: Path, draws: int) -> None:
+    text = study.read_text(encoding="utf-8").partition("\n[uncertainty]")[0]
+    study.write_text(f"{text}\n[uncertainty]\ndraws = {draws}\nseed = 5\n", encoding="utf-8")
+
+
+def test_draws_that_a_study_states_are_its_own(evenload: Run, tmp_path: Path):
+    """An edit of their number in the study is followed; none given to the earlier run stays none."""
+    only(tmp_path / "all", "s2")
+    study, record = tmp_path / "all" / "s2.toml", tmp_path / "records" / "s2"
+    _with_draws(study, 64)
+    assert evenload("batch", "all", "--out", "records", *TIME).status == 0
+    _with_draws(study, 32)
+    ran = evenload("batch", "all", "--out", "records", *TIME)
+    assert "as in the earlier record" not in ran.out
+    assert read(record, "record.json")["uncertainty"]["draws"] == 32
+    assert evenload("batch", "all", "--out", "records", "--draws", "0", *TIME).status == 0
+    assert read(record, "record.json")["uncertainty"] is None
+    ran = evenload("batch", "all", "--out", "records", *TIME)
+    assert "1 study: 1 unchanged;" in ran.out
+    assert "s2.toml: 0 draws as in the earlier record" in ran.out
+
+
+def test_what_an_earlier_record_was_run_with_and_a_batch_is_not_is_said(evenload: Run, tmp_path: Path):
+    only(tmp_path / "all", "s2")
+    ran = evenload("run", "all/s2.toml", "--set", "activity=0.4", "--out", "records/s2", "--quiet", *TIME)
+    assert ran.status == 0, ran.err
+    said = " ".join(evenload("batch", "all", "--since", "records").out.split())
+    assert "run with --set activity=0.4, this one without" in said
+
+
 def test_files_are_told_apart_by_time_and_size(tmp_path: Path):
     (tmp_path / "a.toml").write_text("x = 1", encoding="utf-8")
     (tmp_path / "a.png").write_text("no input", encoding="utf-8")
