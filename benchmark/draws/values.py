@@ -184,6 +184,7 @@ def draw_twice(
     plan: Plan,
     held: Sequence[str] = (),
     joints: Mapping[str, Sequence[Joint]] | None = None,
+    block: int = 0,
 ) -> tuple[dict[str, Array], dict[str, Array]]:
     """Return two independent sets of draws of one block, of nets that hold both.
 
@@ -194,7 +195,7 @@ def draw_twice(
     """
     sets: tuple[dict[str, Array], dict[str, Array]] = ({}, {})
     for owner, keys in drawn_keys(values).items():
-        table = net(f"{owner}, two sets", 2 * len(keys), plan, 0)
+        table = net(f"{owner}, two sets", 2 * len(keys), plan, block)
         for half, found in enumerate(sets):
             part = table[:, half * len(keys) : (half + 1) * len(keys)]
             _, columns = _drawn(values, keys, part, (joints or {}).get(owner, ()))

@@ -171,7 +171,9 @@ def _shares(function: Callable[[Array], Array], dimension: int) -> tuple[list[fl
         changed = a.copy()
         changed[:, i] = b[:, i]
         mixed.append(function(changed))
-    found = variance_shares.sobol_shares([str(i) for i in range(dimension)], function(a), function(b), np.stack(mixed))
+    keys = [str(i) for i in range(dimension)]
+    # one net: no error, none is asked for
+    found = variance_shares.sobol_shares(keys, function(a)[None], function(b)[None], np.stack(mixed)[:, None])
     return [one.first for one in found], [one.total for one in found]
 
 
