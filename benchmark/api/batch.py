@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-import contextlib
 import functools
 import time
 from collections.abc import Callable, Collection, Iterable, Mapping, Sequence
-from dataclasses import asdict, dataclass
+from dataclasses import asdict, dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
+from benchmark.api.batch_files import Stamps, files_read, stamps
 from benchmark.api.batch_options import taken_over
 from benchmark.api.changes import OTHER, STUDY, toml_kind
 from benchmark.errors import EvenloadError, InputRefused, UsageError
@@ -20,7 +20,7 @@ if TYPE_CHECKING:
     from benchmark.api.result import Result
     from benchmark.api.views import StudyView
 
-__all__ = ["Batched", "StudyState", "batch", "input_files", "studies_in"]
+__all__ = ["Batched", "StudyState", "batch", "studies_in"]
 
 Place = str | Path
 Told = Callable[[int, int], None]
@@ -30,8 +30,6 @@ UNCHANGED, MOVED, FLIPPED, NEW, FAILED = "unchanged", "moved", "flipped", "no ea
 GONE = "study missing"
 #: names of folders and files that hold other TOML files than studies
 ELSEWHERE = frozenset({"nodes", "technologies", "wires", "circuits", "tables", "sources.toml"})
-#: endings of files that a study may read
-INPUTS = frozenset({".toml", ".csv", ".tsv", ".txt", ".dat"})
 
 
 @dataclass(frozen=True)
@@ -58,6 +56,10 @@ class StudyState:
     seconds: float = 0.0
 
 
+#: a study that was run, and the files it was read from
+Done = tuple[StudyState, Stamps]
+
+
 @dataclass(frozen=True, eq=False)
 class Batched:
     """What became of the studies of a folder.
@@ -70,11 +72,15 @@ class Batched:
         Wall time of all [s].
     notes : tuple of str
         TOML files of the folder that cannot be read and stand where sets, circuits, tables or sources do.
+    files : mapping
+        Every file that a study was read from, wherever it lies: name -> (time of its last change [ns], size [bytes])
+        when the study was loaded; of a study that could not be loaded there are none.
     """
 
     rows: tuple[StudyState, ...]
     seconds: float
     notes: tuple[str, ...] = ()
+    files: Mapping[str, tuple[int, int]] = field(default_factory=dict)
 
     @property
     def status(self) -> int:
@@ -120,24 +126,6 @@ def _listed(folder: Place) -> tuple[list[Path], tuple[str, ...]]:
         message = f"{place}: holds no study; a study file is a TOML file with [workload] and [[contender]]"
         raise UsageError(message)
     return found, tuple(notes)
-
-
-def input_files(folders: Iterable[Place], records: Iterable[Place | None] = ()) -> dict[str, tuple[int, int]]:
-    """Return name -> (time of the last change [ns], size) of every file in some folders that a study may read.
-
-    Files in the folders ``records`` are left out: their tables are written by the runs themselves.
-    """
-    written = [Path(place).resolve() for place in records if place is not None]
-    found = {}
-    for folder in folders:
-        for path in sorted(Path(folder).rglob("*")):
-            if any(path.resolve().is_relative_to(place) for place in written):
-                continue
-            if path.suffix.lower() in INPUTS and path.is_file():
-                with contextlib.suppress(FileNotFoundError):  # an editor may just be exchanging it
-                    told = path.stat()
-                    found[str(path)] = (told.st_mtime_ns, told.st_size)
-    return found
 
 
 def batch(
@@ -206,13 +194,15 @@ def batch(
         options={"created": created, "draws": draws, "seed": seed},
     )
     rows: list[StudyState] = []
-    for row in _mapped(work, paths, jobs):
+    files: Stamps = {}
+    for row, read in _mapped(work, paths, jobs):
         rows.append(row)
+        files |= read
         if told is not None:
             told(len(rows), len(paths))
     if earlier is not None:
         rows += _without_study(Path(earlier), {place_of(path.relative_to(root), Path()) for path in paths})
-    return Batched(tuple(rows), time.perf_counter() - started, notes)
+    return Batched(tuple(rows), time.perf_counter() - started, notes, files)
 
 
 def _without_study(records: Path, known: Collection[Path]) -> list[StudyState]:
@@ -243,7 +233,7 @@ def _places_differ(names: Sequence[Path]) -> None:
         seen[place] = name
 
 
-def _mapped(work: Callable[[Path], StudyState], paths: Sequence[Path], jobs: int) -> Iterable[StudyState]:
+def _mapped(work: Callable[[Path], Done], paths: Sequence[Path], jobs: int) -> Iterable[Done]:
     if jobs == 1:
         yield from map(work, paths)
         return
@@ -261,21 +251,22 @@ def _mapped(work: Callable[[Path], StudyState], paths: Sequence[Path], jobs: int
 
 def _one(
     path: Path, *, root: Path, since: Path | None, out: Path | None, nodes: tuple[Path, ...], options: Mapping[str, Any]
-) -> StudyState:
+) -> Done:
     """Run one study; whatever is wrong with it stays with it."""
     name = path.relative_to(root)
     started = time.perf_counter()
+    files: Stamps = {}
+    row: dict[str, Any] = {"state": FAILED}
     try:
-        row = _ran(path, name, since, out, nodes, options)
+        row = _ran(path, name, since, out, nodes, options, files)
     except InputRefused as error:
         more = f" and {len(error.problems) - 1} more" if len(error.problems) > 1 else ""
-        return StudyState(str(name), FAILED, message=f"{error.problems[0]}{more}", seconds=_passed(started))
+        row["message"] = f"{error.problems[0]}{more}"
     except (EvenloadError, OSError) as error:
-        return StudyState(str(name), FAILED, message=str(error), seconds=_passed(started))
+        row["message"] = str(error)
     except Exception as error:  # a fault in one study must not lose the results of the others
-        message = f"internal fault ({type(error).__name__}: {error}); run this study alone to see more"
-        return StudyState(str(name), FAILED, message=message, seconds=_passed(started))
-    return StudyState(str(name), **row, seconds=_passed(started))
+        row["message"] = f"internal fault ({type(error).__name__}: {error}); run this study alone to see more"
+    return StudyState(str(name), **row, seconds=_passed(started)), files
 
 
 def _passed(started: float) -> float:
@@ -294,7 +285,9 @@ def _ran(
     out: Path | None,
     nodes: tuple[Path, ...],
     options: Mapping[str, Any],
+    files: Stamps,
 ) -> dict[str, Any]:
+    """Run a study, write its record, and put the files it was read from into ``files``."""
     from benchmark.api.result import Result
     from benchmark.api.session import load_study, run
     from benchmark.record.criteria import after_earlier
@@ -304,6 +297,7 @@ def _ran(
     if since is not None and (place_of(name, since) / "record.json").is_file():
         before = read_record(place_of(name, since))
     view = load_study(path, nodes)
+    files |= stamps(files_read(view))
     as_before, words = ({}, "") if before is None else taken_over(before, view.study, options)
     result = run(view, **{**options, **as_before})
     row = _compared(before, result.record)

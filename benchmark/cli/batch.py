@@ -39,7 +39,7 @@ def batch_command(
 ) -> int:
     """Run the studies and print one table; with ``watch`` again after every change of a file. Returns the status."""
     from benchmark import api
-    from benchmark.api.batch import input_files
+    from benchmark.api.batch_files import Stamps, folders_read, input_files, stamps, written_by_runs
 
     check_folders(nodes)
     check_form(form)
@@ -48,14 +48,22 @@ def batch_command(
         message = "--freeze-time is written into records; state --out FOLDER for them"
         raise UsageError(message)
     options: dict[str, Any] = {"out": out, "nodes": nodes, "draws": draws, "seed": seed, "jobs": jobs}
+    read: set[str] = set()  # files that studies read, here or elsewhere
+
+    def look() -> Stamps:
+        return input_files(folders_read(folder, nodes), [out, since]) | stamps(sorted(read))
+
     while True:
-        seen = input_files([folder, *nodes], [out, since])
+        seen = look() if watch else {}
         found = api.batch(folder, since=since, created=freeze_time or None, told=_told, **options)
         _print(found, form)
         if not watch:
             return found.status
+        new = {name: stamp for name, stamp in found.files.items() if not written_by_runs(Path(name), [out, since])}
+        seen = new | seen  # of a file seen before the run, what it was then: it may have been edited since
+        read |= set(new)
         typer.echo("\nWaiting for a change of an input file; Ctrl-C stops.")
-        _wait(seen, lambda: input_files([folder, *nodes], [out, since]))
+        _wait(seen, look)
 
 
 def _wait(seen: dict[str, tuple[int, int]], look: Callable[[], dict[str, tuple[int, int]]]) -> None:

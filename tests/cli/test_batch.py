@@ -3,16 +3,21 @@
 from __future__ import annotations
 
 import csv
+import hashlib
 import io
 import json
 import os
+import shutil
 from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
 import pytest
 
-from benchmark.api.batch import batch, input_files, studies_in
+from benchmark.api.batch import batch, studies_in
+from benchmark.api.batch_files import files_read, input_files
+from benchmark.api.session import load_study
+from benchmark.sets.library import shipped_nodes
 from tests.cli.conftest import Ran, read
 from tests.five_studies import five_studies
 
@@ -113,6 +118,69 @@ def test_watching_runs_again_after_an_edit(evenload: Run, tmp_path: Path, monkey
     assert ran.status == 130
     assert "1 study: 1 no earlier record;" in ran.out
     assert "1 study: 1 flipped;" in ran.out
+
+
+@pytest.mark.parametrize("place", ["shipped", "linked", "data"])
+def test_watching_sees_what_a_study_reads_outside_the_folder(
+    evenload: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch, place: str
+):
+    """Shipped sets, sets behind a link, and data that a number was read off; an edit of each runs it again."""
+    only(tmp_path / "all", "s2")
+    sets = tmp_path / "all" / "nodes"
+    edited = tmp_path / "other" / "nodes" / "technologies" / "film-switch.toml"
+    if place == "data":
+        edited = tmp_path / "data" / "points.xyz"
+        edited.parent.mkdir()
+        edited.write_text("1 2\n", encoding="utf-8")
+        digest = hashlib.sha256(edited.read_bytes()).hexdigest()
+        switch = sets / "technologies" / "film-switch.toml"
+        said = f'extracted_from = {{ file = "../../../data/points.xyz", digest = "{digest}" }}'
+        text = switch.read_text(encoding="utf-8")
+        head = "[value.stack_thickness]\n"
+        assert head in text
+        switch.write_text(text.replace(head, f"{head}{said}\n"), encoding="utf-8")
+    else:
+        shutil.move(sets, tmp_path / "other" / "nodes")
+        if place == "linked":
+            sets.symlink_to(tmp_path / "other" / "nodes")
+        else:
+            shutil.copy(shipped_nodes() / "sources.toml", tmp_path / "other" / "nodes")
+            monkeypatch.setattr("benchmark.sets.library._shipped", lambda name, _: tmp_path / "other" / name)
+    pauses = []
+
+    def pause(_: float) -> None:
+        pauses.append(1)
+        if len(pauses) > 1:
+            raise KeyboardInterrupt
+        os.utime(edited, ns=(1, 1))
+
+    monkeypatch.setattr("benchmark.cli.batch.time.sleep", pause)
+    ran = evenload("batch", "all", "--watch")
+    assert ran.status == 130
+    assert ran.out.count("1 study: 1 no earlier record;") == 2, ran.out + ran.err
+
+
+def test_tables_beside_the_folder_of_a_set_are_among_the_files_read(tmp_path: Path):
+    """A set beside its study names tables/...csv beside the folder of both, outside the folder of the batch."""
+    only(tmp_path / "all", "s2")
+    shutil.copy(shipped_nodes() / "technologies" / "demo-table.toml", tmp_path / "all")
+    shutil.copytree(shipped_nodes() / "tables", tmp_path / "tables")
+    study = tmp_path / "all" / "s2.toml"
+    text = study.read_text(encoding="utf-8").replace('technology = "film-switch"', 'technology = "demo-table"')
+    text = text.replace('candidate = "n1"', 'candidate = "g1"').replace(
+        "low = 0.05, high = 1.0", "low = 0.3, high = 0.3"
+    )
+    study.write_text(text, encoding="utf-8")
+    found = {
+        path.relative_to(tmp_path).as_posix() for path in files_read(load_study(study)) if tmp_path in path.parents
+    }
+    assert found == {
+        "all/s2.toml",
+        "all/demo-table.toml",
+        "all/nodes/technologies/stated-reference.toml",
+        "all/nodes/wires/no-wires.toml",
+        *(f"tables/demo-{name}.{end}" for name in ("charge", "current") for end in ("csv", "toml")),
+    }
 
 
 def test_watching_does_not_wake_up_by_its_own_records(evenload: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPatch):

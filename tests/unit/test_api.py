@@ -75,7 +75,7 @@ RESULT = [
     "text",
 ]
 MEMBERS = {
-    "Batched": ["frame", "notes", "rows", "seconds", "status"],
+    "Batched": ["files", "frame", "notes", "rows", "seconds", "status"],
     "Changes": ["data", "flipped", "frames", "record", "report"],
     "Edited": ["data", "frame", "lines", "notes", "text", "warnings", "written"],
     "Needed": ["columns", "facts", "frame", "heading", "rows", "text"],
