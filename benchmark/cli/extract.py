@@ -163,7 +163,7 @@ def _devices(one: Found, curves: MeasuredCurves) -> list[Block]:
     facts = [
         ("devices", f"{over.count}, of which {over.bounds} are known only by a bound"),
         ("quartiles", " and ".join(f"{q:.4g} {unit}" for q in quartiles) if len(quartiles) == 2 else "rest on bounds"),
-        ("spread seen", f"{size(over.seen_spread)} (distance of the quartiles over 1.349)"),
+        ("spread seen", f"{size(over.seen_spread)} (distance of the quartiles over that of as many normal draws)"),
         ("uncertainty of one device", f"{size(over.measured)} (scatter and spacing of its points)"),
         ("spread of the devices", f"{size(over.device_spread)} (spread seen without that uncertainty)"),
     ]

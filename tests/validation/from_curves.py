@@ -211,9 +211,18 @@ def _many() -> Iterator[Check]:
     for name, expected, obtained in (
         ("median of nine devices [V]", quartiles[1], over.median),
         ("lower quartile [V]", quartiles[0], over.lower_quartile),
-        ("spread from the quartiles [V]", stats.iqr(values, scale="normal"), over.seen_spread),
+        (
+            "distance of the quartiles [V]",
+            stats.iqr(values),
+            float(over.upper_quartile or 0) - float(over.lower_quartile or 0),
+        ),
     ):
         yield exact(name, source, float(expected), float(obtained or 0.0), 1e-12, group=GROUP)
+    for count, exactly in ((2, 1.0 / np.sqrt(np.pi)), (3, 1.5 / np.sqrt(np.pi))):
+        yield exact(f"mean distance of the quartiles of {count} normal draws [1]", "largest of 2 or 3 normal draws",
+                    float(exactly), devices.quartile_distance(count), 1e-9, group=GROUP)  # fmt: skip
+    yield exact("standard error of a median of one normal draw [1]", "normal distribution", 1.0,
+                devices.median_scatter(1), 1e-12, group=GROUP)  # fmt: skip
     mean = currents.mean_of_sweeps(found[0], found[1])
     yield exact("mean of two sweeps [V]", "numpy.mean", float(np.mean(values[:2])), mean.value, 1e-12, group=GROUP)
     yield exact("standard uncertainty of +-0.3 [1]", "scipy.stats.uniform", float(stats.uniform(-0.3, 0.6).std()),
