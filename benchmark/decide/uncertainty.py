@@ -33,7 +33,7 @@ from benchmark.decide.draw_block import BIN, CURVE_BIN, BlockSum, DrawTask, basi
 from benchmark.draws.bases import QUADRATURE
 from benchmark.evaluate.side import values_by_key
 
-__all__ = ["Estimate", "InputShare", "Uncertainty", "draw_blocks", "summarise", "uncertainty", "unseen"]
+__all__ = ["CONSTANT", "Estimate", "InputShare", "Uncertainty", "draw_blocks", "summarise", "uncertainty", "unseen"]
 
 Array = NDArray[np.float64]
 #: quantiles of the advantage that are stated
@@ -46,6 +46,8 @@ MOST_GROUPS = 16
 CLEAR = 3.0
 #: draws from which on an expansion goes to the next degree: every term adds noise
 DEGREES = (0, 512, 2048, 8192, 32768)
+#: spread of ln(advantage), largest less smallest, below which the advantage counts as constant
+CONSTANT = 1.0e-6
 #: told the share done
 Told = Callable[[float], None]
 
@@ -114,8 +116,13 @@ class Uncertainty:
 
     @property
     def constant(self) -> bool:
-        """Tell whether no drawn input moves the advantage."""
-        return self.smallest == self.largest
+        """Tell whether no drawn input moves the advantage by as much as ``CONSTANT`` of it."""
+        return _same(self.smallest, self.largest)
+
+
+def _same(smallest: float, largest: float) -> bool:
+    """Tell whether two ends of the advantage are one within ``CONSTANT``; no draw with an advantage is no constant."""
+    return smallest <= largest and float(np.log(largest / smallest)) < CONSTANT
 
 
 def uncertainty(task: DrawTask, jobs: int = 1, told: Told = lambda share: None) -> Uncertainty:
@@ -253,7 +260,7 @@ def _mean(block: BlockSum) -> float:
 
 
 def _variance(block: BlockSum) -> float:
-    if block.defined < 2 or block.smallest == block.largest:
+    if block.defined < 2 or _same(block.smallest, block.largest):
         return 0.0 if block.defined else float("nan")
     mean = _mean(block)
     return max(block.log_square - block.defined * mean**2, 0.0) / (block.defined - 1)

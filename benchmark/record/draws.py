@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import dataclasses
-from collections.abc import Collection, Mapping
+from collections.abc import Collection, Mapping, Sequence
 from typing import Any
 
 import numpy as np
@@ -13,22 +13,24 @@ from benchmark.decide.compare import Comparison
 from benchmark.decide.draw_block import DrawTask, resolution
 from benchmark.decide.moves import range_of
 from benchmark.decide.next_measurement import NEGLIGIBLE, next_measurements, nothing_to_measure
-from benchmark.decide.uncertainty import Estimate, Told, Uncertainty, uncertainty, unseen
+from benchmark.decide.uncertainty import CONSTANT, Estimate, Told, Uncertainty, uncertainty, unseen
 from benchmark.decide.variance_shares import variance_shares
 from benchmark.draws.plan import plan_of
-from benchmark.draws.values import drawn_keys
+from benchmark.draws.values import drawn_keys, tied_with
 from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.search import supply_grid
-from benchmark.evaluate.side import values_by_key
+from benchmark.evaluate.side import joints_by_owner, values_by_key
 from benchmark.sets.study import Choice, DrawSettings, Study
 from benchmark.sets.values import Value
 
 __all__ = ["draw_rows"]
 
-#: inputs whose total share of the variance is worked out: those with the largest first-order share
+#: inputs whose total share of the variance is worked out: those whose total share of a few draws is the largest
 MOST_TOTALS = 8
-#: draws behind each total share
-TOTAL_DRAWS = 128
+#: draws behind each total share, and behind the few that choose the inputs
+TOTAL_DRAWS, CHOOSING_DRAWS = 128, 32
+#: total share below which an input is not chosen
+LEAST_TOTAL = 1.0e-3
 
 
 def draw_rows(
@@ -60,6 +62,7 @@ def draw_rows(
         return None
     task = DrawTask(study, pair, study.policy.primary, frozen, plan_of(settings.number, settings.seed))
     found = uncertainty(task, jobs, told)
+    tied = _tied(task, found)
     ends = {key: end for key in sorted(bounds) if (end := _open_end(values[key])) is not None}
     opened = uncertainty(dataclasses.replace(task, put=ends), jobs) if ends else None
     return {
@@ -83,11 +86,12 @@ def draw_rows(
         "mean_log": vars(found.mean_log),
         "sd_log": vars(found.sd_log),
         "constant": found.constant,
+        "constant_below": CONSTANT,
         "worth_of_all": vars(found.worth_of_all),
         "negligible": NEGLIGIBLE,
         "stop": nothing_to_measure(found),
-        "shares": _share_rows(study, found, values),
-        "totals": _totals(task, found),
+        "shares": _share_rows(study, found, values, tied),
+        "totals": _totals(task, found, tied),
         "strongest": [{"side": side, "share": share} for side, share in found.strongest.items()],
         "bands": _band_rows(study, frozen, found),
     }
@@ -119,7 +123,19 @@ def _two_errors(estimate: Estimate, draws: int) -> tuple[float, float]:
     return estimate.value - reach, estimate.value + reach
 
 
-def _share_rows(study: Study, found: Uncertainty, values: Mapping[str, Value]) -> list[dict[str, Any]]:
+def _tied(task: DrawTask, found: Uncertainty) -> dict[str, list[str]]:
+    """Key -> the other drawn inputs that move with it, the one with the largest share first."""
+    joints = joints_by_owner(task.study, task.pair)
+    listed = [share.key for share in found.shares]
+    others = sorted(key for keys in drawn_keys(values_by_key(task.study, task.pair)).values() for key in keys)
+    listed += [key for key in others if key not in listed]  # drawn as samples with another
+    groups = {key: tied_with(key, joints) for key in listed}
+    return {key: [other for other in listed if other in group and other != key] for key, group in groups.items()}
+
+
+def _share_rows(
+    study: Study, found: Uncertainty, values: Mapping[str, Value], tied: Mapping[str, Sequence[str]]
+) -> list[dict[str, Any]]:
     listed = next_measurements(found, study.required_advantage, study.measurements, values)
     measured = {item.key: (place, item) for place, item in enumerate(listed, start=1)}
     rows = []
@@ -142,22 +158,30 @@ def _share_rows(study: Study, found: Uncertainty, values: Mapping[str, Value]) -
                 "worth_reachable": item.worth_reachable,
                 "worth_per_cost": item.worth_per_cost,
                 "place": place,
+                "moves_with": list(tied[share.key]),
             }
         )
     return rows
 
 
-def _totals(task: DrawTask, found: Uncertainty) -> list[dict[str, Any]]:
-    """Total shares of the inputs with the largest first-order shares; empty when they cannot be told."""
-    if found.constant or found.without_candidate or found.without_contender or found.unbounded:
+def _totals(task: DrawTask, found: Uncertainty, tied: Mapping[str, Sequence[str]]) -> list[dict[str, Any]]:
+    """Total shares of the inputs that carry most, what moves together as one; empty when they cannot be told.
+
+    An input that acts only through others has no first-order share: the total shares of a few draws choose.
+    """
+    if found.constant:
         return []
-    keys = [share.key for share in found.shares if share.share.value > 2.0 * share.share.error][:MOST_TOTALS]
-    if not keys:
-        return []
+    keys: list[str] = []
+    for share in found.shares:
+        if not set(tied[share.key]) & set(keys):
+            keys.append(share.key)
     try:
-        return [vars(item) for item in variance_shares(task, keys, TOTAL_DRAWS)]
-    except ValueError:  # a draw of these sets without an advantage
+        few = sorted(variance_shares(task, keys, CHOOSING_DRAWS), key=lambda item: -item.total)
+        chosen = [item.key for item in few if item.total > LEAST_TOTAL][:MOST_TOTALS]
+        rows = variance_shares(task, chosen, TOTAL_DRAWS) if chosen else []
+    except ValueError:  # too few of these draws have an advantage
         return []
+    return [{**vars(item), "moves_with": list(tied[item.key])} for item in sorted(rows, key=lambda item: -item.total)]
 
 
 def _band_rows(study: Study, frozen: Mapping[str, Choice], found: Uncertainty) -> list[dict[str, Any]]:

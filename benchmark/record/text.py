@@ -145,10 +145,11 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
         at_ends = probability(found["reaches_at_open_ends"], found["draws"])
         lines.append(f"  Stated as bounds: {keys}; at their open ends the probability is {at_ends}.")
     if found["constant"]:
-        return [*lines, "  No drawn input moves the advantage."]
+        least = f" by as much as {found['constant_below']:.0e} of it" if "constant_below" in found else ""
+        return [*lines, f"  No drawn input moves the advantage{least}."]
     named = [row for row in found["shares"][:3] if row["share"] > 2.0 * row["share_error"]]
     if named:
-        shares = ", ".join(f"{row['key']} {100.0 * row['share']:.2g} %" for row in named)
+        shares = ", ".join(f"{row['key']} {100.0 * row['share']:.2g} %{_tied(row)}" for row in named)
         lines.append(f"  Largest shares of the variance of its logarithm: {shares}")
     if found["stop"]:
         return [*lines, "  No measurement of these inputs can change the answer within their ranges: stop."]
@@ -159,6 +160,11 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
     elif first["worth"] > 2.0 * first["worth_error"]:
         lines.append(f"  Most worth measuring: {first['key']} (worth {first['worth']:.2g} in ln(advantage))")
     return lines
+
+
+def _tied(row: Mapping[str, Any]) -> str:
+    """Name the inputs that are not independent of one."""
+    return f" (moves with {', '.join(row['moves_with'])})" if row.get("moves_with") else ""
 
 
 def ladder_words(record: Mapping[str, Any], row: Mapping[str, Any]) -> str:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from typing import Any
 
 from benchmark.record.text import probability, uncertainty_words
@@ -33,7 +33,14 @@ def uncertainty(record: Record, figure: Figure) -> Section:
         keys = ", ".join(row["key"] for row in found["bounds"])
         reached = probability(found["reaches_at_open_ends"], found["draws"])
         blocks.insert(1, Paragraph(f"{keys}; at their open ends the probability is {reached}.", "Stated as bounds:"))
-    blocks.append(_shares(record, found))
+    if found["constant"]:
+        below = found.get("constant_below")
+        least = "" if below is None else f" by as much as {number(below)} of it"
+        blocks.append(
+            Paragraph(f"No drawn input moves the advantage{least}: there is no variance to share.", "Shares:")
+        )
+    else:
+        blocks.append(_shares(record, found))
     return Section("uncertainty", title, tuple(blocks))
 
 
@@ -52,36 +59,52 @@ def _quantiles(found: Record) -> Table:
 
 def _shares(record: Record, found: Record) -> Table:
     totals = {row["key"]: row for row in found["totals"]}
-    rows = []
-    for row in _listed(record, found):
-        total = totals.get(row["key"])
-        rows.append(
-            (
-                _value(record, row["key"]),
-                row["evidence"],
-                _share(row["share"], row["share_error"]),
-                "not worked out" if total is None else _share(total["total"], total["total_error"]),
-            )
+    rows = [
+        (
+            _value(record, row["key"], row.get("moves_with", ())),
+            row["evidence"],
+            _share(row["share"], row["share_error"]),
+            _total(row, totals),
         )
+        for row in _listed(found)
+    ]
     columns = ("input", "evidence", "share alone", "share with what it does together with others")
     caption = (
-        "Shares of the variance of ln(advantage): the inputs whose share is clear of its sampling error; "
-        f"{found['inputs'] - len(rows)} others are not"
+        "Shares of the variance of ln(advantage): the inputs with a share clear of its sampling error, alone or "
+        f"together with others; {found['inputs'] - len(rows)} others have none. Inputs that move together (stated as "
+        "not independent of each other) have one share together with others."
     )
+    left = max((row.get("left_out", 0.0) for row in totals.values()), default=0.0)
+    if left > 0.0:
+        caption += (
+            f" Shares together with others leave out the draws in which a side has no permitted point, up to "
+            f"{number(100 * left, 2)} % of them."
+        )
     return plain("variance-shares", caption, columns, rows)
 
 
-def _listed(record: Record, found: Record) -> list[Record]:
-    return [row for row in found["shares"] if row["share"] > 2.0 * row["share_error"]]
+def _total(row: Record, totals: Mapping[str, Record]) -> str:
+    """Total share of an input, or which row holds that of all that moves with it."""
+    if row["key"] in totals:
+        total = totals[row["key"]]
+        return _share(total["total"], total["total_error"])
+    other = next((key for key in row.get("moves_with", ()) if key in totals), None)
+    return "not worked out" if other is None else f"counted with {other}"
+
+
+def _listed(found: Record) -> list[Record]:
+    clear = {row["key"] for row in found["totals"] if row["total"] > 2.0 * row["total_error"]}
+    return [row for row in found["shares"] if row["share"] > 2.0 * row["share_error"] or row["key"] in clear]
 
 
 def _share(value: float, error: float) -> str:
     return f"{number(100 * value, 2)} % ± {number(100 * error, 1)}"
 
 
-def _value(record: Record, key: str) -> Cell:
+def _value(record: Record, key: str, others: Sequence[str] = ()) -> Cell:
     place = next((i for i, row in enumerate(record["ledger"], start=1) if row["key"] == key), None)
-    return Cell(key, f"#value-{place}" if place else "")
+    tied = f" (moves with {', '.join(others)})" if others else ""
+    return Cell(f"{key}{tied}", f"#value-{place}" if place else "")
 
 
 def _worth(found: Record) -> str:
@@ -116,7 +139,7 @@ def next_measurement(record: Record) -> Section:
         return Section("next-measurement", title, (Paragraph(stop, "Stop rule:"), Paragraph(whole), Paragraph(text)))
     rows = [
         (
-            _value(record, row["key"]),
+            _value(record, row["key"], row.get("moves_with", ())),
             row["evidence"],
             f"{number(row['worth'], 2)} ± {number(row['worth_error'], 1)}",
             number(row["worth_halved"], 2),

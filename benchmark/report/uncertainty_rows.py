@@ -31,8 +31,10 @@ def share_rows(record: Record) -> list[Row]:
             "spread": row["shape"],
             "share": row["share"],
             "share_error": row["share_error"],
-            "total_share": totals[row["key"]]["total"] if row["key"] in totals else "not worked out",
-            "total_share_error": totals[row["key"]]["total_error"] if row["key"] in totals else "not worked out",
+            "moves_with": " ".join(row.get("moves_with", ())),
+            "total_share": _total(row, totals, "total"),
+            "total_share_error": _total(row, totals, "total_error"),
+            "total_share_left_out": _total(row, totals, "left_out"),
             "worth_ln": row["worth"],
             "worth_error_ln": row["worth_error"],
             "worth_known_twice_as_well_ln": row["worth_halved"],
@@ -43,6 +45,14 @@ def share_rows(record: Record) -> list[Row]:
         }
         for row in found["shares"]
     ]
+
+
+def _total(row: Record, totals: Mapping[str, Record], name: str) -> Any:
+    """A number of the total share of an input, or which row holds that of all that moves with it."""
+    if row["key"] in totals:
+        return totals[row["key"]].get(name, 0.0)
+    other = next((key for key in row.get("moves_with", ()) if key in totals), None)
+    return "not worked out" if other is None else f"counted with {other}"
 
 
 def distribution_rows(record: Record) -> list[Row]:

@@ -181,6 +181,7 @@ KEPT = {
     *("at_point", "reoptimised", "of_time", "of_energy"),  # elasticities
     *("draws", "blocks", "seed", "inputs", "judgement", "likely", "unlikely", "error", "negligible", "place"),
     *("without_candidate", "without_contender", "unbounded", "share_error", "first", "first_error", "total_error"),
+    *("left_out", "constant_below"),
     *("required advantage", "likely from", "unlikely up to"),  # criteria
     *("worth", "worth_error", "worth_halved", "worth_reachable", "worth_per_cost", "cost", "enough"),
 }

@@ -24,6 +24,7 @@ PURE = {
         "share_error",
         "total_share",
         "total_share_error",
+        "total_share_left_out",
         "worth_ln",
         "worth_error_ln",
         "worth_known_twice_as_well_ln",

@@ -2,18 +2,24 @@
 
 from __future__ import annotations
 
+from pathlib import Path
+
 import pytest
 
 from benchmark.record.load import load_study
 from benchmark.record.run import run_study
+from benchmark.record.text import uncertainty_words
+from benchmark.report.blocks import Figure, Paragraph, Table
 from benchmark.report.distribution import advantage_distribution
 from benchmark.report.energy_delay import energy_delay
 from benchmark.report.ladder_chart import ladder_steps
+from benchmark.report.section_uncertainty import uncertainty
 from benchmark.report.uncertainty_rows import band_rows, distribution_rows, share_rows
 from benchmark.sets.study import DrawSettings
 from tests.fixed_displacement import fixed_displacement
 from tests.near import near
 from tests.report_records import changed, hub, mixed
+from tests.studies import D, Inputs
 
 
 @pytest.fixture(scope="module")
@@ -69,6 +75,108 @@ def test_tables_of_the_draws(record):
     assert rows[0]["value"] == record["uncertainty"]["reaches"]["value"]
     assert [row["key"] for row in share_rows(record)] == [row["key"] for row in record["uncertainty"]["shares"]]
     assert distribution_rows(mixed()) == share_rows(mixed()) == band_rows(mixed()) == []
+
+
+COEFFICIENT, CAPACITANCE, REFERENCE = (
+    "film-switch.actuator_coefficient",
+    "film-switch.input_capacitance",
+    "stated-reference.input_capacitance",
+)
+
+
+def drawn(folder: Path, inputs: Inputs, draws: int = 256):
+    study, library = load_study(inputs.write(folder))
+    return run_study(study, library, created="2026-01-31T00:00:00Z", draws=DrawSettings(draws))
+
+
+def section(record) -> tuple[str, list[tuple[str, ...]]]:
+    """All that is said of the shares, and the rows of their table."""
+    chart = advantage_distribution(record)
+    blocks = uncertainty(record, Figure(chart, "", None)).blocks
+    tables = [block for block in blocks if isinstance(block, Table) and block.key == "variance-shares"]
+    rows = [tuple(cell.text for cell in row) for table in tables for row in table.rows]
+    return " ".join([*(block.text for block in blocks if isinstance(block, Paragraph)),
+                     *(table.caption for table in tables)]), rows  # fmt: skip
+
+
+def test_an_input_without_a_clear_share_alone_has_its_share_together_with_others(tmp_path: Path):
+    inputs = fixed_displacement()
+    spread = inputs.sets["technologies/stated-reference"]["value"]["input_capacitance"]["spread"]
+    spread["ln_sd"] = D("0.06")  # 1.8 % of the variance
+    found = drawn(tmp_path, inputs, 64)["uncertainty"]
+    (alone,) = (row for row in found["shares"] if row["key"] == REFERENCE)
+    assert alone["share"] <= 2.0 * alone["share_error"]
+    (total,) = (row for row in found["totals"] if row["key"] == REFERENCE)
+    assert abs(total["total"] - 0.0177) <= 4.0 * total["total_error"]
+    assert [row["key"] for row in found["totals"]] == [COEFFICIENT, CAPACITANCE, REFERENCE]
+
+
+def test_draws_without_a_permitted_point_leave_the_shares_of_the_others(tmp_path: Path):
+    """Below d = 160 pm/V the supply of 60 pm / d lies beyond 0.375 V: ln(160/200) / 0.20, 13 % of the draws."""
+    inputs = fixed_displacement()
+    inputs.sets["technologies/film-switch"]["valid"]["supply"]["high"] = D("0.375")
+    inputs.study["candidate"]["knobs"]["supply"]["high"] = D("0.375")
+    record = drawn(tmp_path, inputs)
+    found = record["uncertainty"]
+    assert found["without_candidate"] == near(0.132, rel=0, abs=0.02)
+    assert [row["key"] for row in found["totals"]] == [COEFFICIENT, CAPACITANCE, REFERENCE]
+    left = {row["key"]: row["left_out"] for row in found["totals"]}
+    # in either of two sets, in either of both and the mixed one: which has the coefficient of one of the two
+    assert left == near(dict.fromkeys(left, 1.0 - (1.0 - 0.132) ** 2), rel=0, abs=0.06)
+    words, _ = section(record)
+    assert "leave out the draws in which a side has no permitted point, up to 2" in words
+    assert share_rows(record)[0]["total_share_left_out"] == left[share_rows(record)[0]["key"]]
+
+
+def test_inputs_that_move_together_are_marked_and_counted_once(tmp_path: Path):
+    inputs = fixed_displacement()
+    inputs.sets["technologies/film-switch"]["joint"] = [
+        {"values": ["actuator_coefficient", "input_capacitance"], "rank_correlation": D("0.8")}
+    ]
+    record = drawn(tmp_path, inputs)
+    found = record["uncertainty"]
+    assert {row["key"]: row["moves_with"] for row in found["shares"]} == {
+        COEFFICIENT: [CAPACITANCE], CAPACITANCE: [COEFFICIENT], REFERENCE: [],
+    }  # fmt: skip
+    assert [(row["key"], row["moves_with"]) for row in found["totals"]] == [
+        (COEFFICIENT, [CAPACITANCE]),
+        (REFERENCE, []),
+    ]
+    assert f"{COEFFICIENT} " in " ".join(uncertainty_words(record))
+    assert f"(moves with {CAPACITANCE})" in " ".join(uncertainty_words(record))
+    _, rows = section(record)
+    by_name = {row[0]: row for row in rows}
+    assert "±" in by_name[f"{COEFFICIENT} (moves with {CAPACITANCE})"][3]
+    table = {row["key"]: row for row in share_rows(record)}
+    assert table[COEFFICIENT]["moves_with"] == CAPACITANCE
+    assert table[CAPACITANCE]["total_share"] == f"counted with {COEFFICIENT}"
+
+
+def test_an_advantage_that_hardly_moves_is_called_constant(tmp_path: Path):
+    """Activity multiplies both energies; leakage through 1e15 ohm moves the advantage by less than 1e-7 of it."""
+    inputs = fixed_displacement()
+    inputs.study["value"]["activity"]["spread"] = {"shape": "loguniform", "low": D("0.05"), "high": D("0.9")}
+    for data in inputs.sets.values():
+        for table in data["value"].values():
+            table.pop("spread", None)
+    record = drawn(tmp_path, inputs, 64)
+    found = record["uncertainty"]
+    assert found["constant"]
+    assert found["quantiles"][0]["value"] != 0.0
+    assert "No drawn input moves the advantage by as much as 1e-06 of it." in " ".join(uncertainty_words(record))
+    words, rows = section(record)
+    assert rows == []
+    assert "No drawn input moves the advantage by as much as 10⁻⁶ of it: there is no variance to share." in words
+
+
+def test_inputs_of_judgement_are_counted_in_words(tmp_path: Path):
+    inputs = fixed_displacement()
+    switch = inputs.sets["technologies/film-switch"]["value"]
+    switch["actuator_coefficient"] |= {"evidence": "measured", "conditions": "invented for this test"}
+    switch["input_capacitance"] |= {"evidence": "assumed", "note": "invented for this test"}
+    record = drawn(tmp_path, inputs, 64)
+    assert record["uncertainty"]["judgement"] == 2
+    assert "The ranges of 2 of 3 inputs are judgement or invented." in uncertainty_words(record)[0]
 
 
 def test_the_ladder_has_a_dot_for_every_rung_of_the_record():
