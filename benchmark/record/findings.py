@@ -9,16 +9,19 @@ import math
 from collections.abc import Mapping
 from typing import Any
 
-from benchmark.record.text import factor, ladder_words, probability
+from benchmark.record.text import factor, ladder_words, probability, robustness_words, without_range
 
 __all__ = ["findings"]
 
 Record = Mapping[str, Any]
-MOST = 6
+LEAST, MOST = 3, 6
 
 
 def findings(record: Record) -> list[dict[str, str]]:
-    """Return the findings in the order of their weight.
+    """Return three to six findings in the order of their weight.
+
+    What every record can say of itself, down to its requirements and counts, follows only while there are fewer than
+    three: a study without an advantage has little else to say.
 
     Returns
     -------
@@ -27,6 +30,10 @@ def findings(record: Record) -> list[dict[str, str]]:
     """
     made = (_requirements, _advantage, _probability, _limits, _decisive, _ladder, _nodes, _knowing)
     found = [{"text": text, "at": at} for make in made for text, at in make(record)]
+    for make in (_robustness, _contenders, _requirements_met, _counts):
+        if len(found) >= LEAST:
+            break
+        found += [{"text": text, "at": at} for text, at in make(record)]
     return found[:MOST]
 
 
@@ -53,7 +60,13 @@ def _advantage(record: Record) -> list[tuple[str, str]]:
     advantage = record["verdict"]["advantage"]
     primary = record["policies"][0]
     if not _number(advantage):
-        return [("No advantage exists: a side has no permitted point.", "policies")]
+        if primary["candidate"]["point"] is not None:
+            side = "no contender has a permitted point"
+        elif any(row["point"] is not None for row in primary["contenders"]):
+            side = "the candidate has no permitted point"
+        else:
+            side = "no side has a permitted point"
+        return [(f"No advantage exists: {side} under the policy {primary['policy']}.", "policies")]
     one, required = _limits_of(record)
     metric = record["study"]["metric"].replace("-", " ")
     reach = "which reaches" if advantage >= required else "which does not reach"
@@ -73,8 +86,9 @@ def _probability(record: Record) -> list[tuple[str, str]]:
     return [
         (
             f"With all stated ranges at once an advantage of {record['study']['required_advantage']:g} has a "
-            f"probability of {probability(found['reaches'], found['draws'])}; "
-            f"{found['judgement']} of {found['inputs']} ranges are judgement or invented.",
+            f"probability of {probability(found['reaches'], found['draws'])} (under the stated "
+            f"ranges; {without_range(record)}); {found['judgement']} of {found['inputs']} ranges are judgement or "
+            "invented.",
             "uncertainty",
         )
     ]
@@ -139,3 +153,37 @@ def _knowing(record: Record) -> list[tuple[str, str]]:
     if best is None or (best["cost"] is None and best["worth"] <= 2.0 * best["worth_error"]):
         return []
     return [(f"Most worth measuring: {best['key']}.", "next-measurement")]
+
+
+def _requirements_met(record: Record) -> list[tuple[str, str]]:
+    rows = record["requirements"]
+    if not rows or any(row["state"] in ("fail", "unknown") for row in rows):
+        return []
+    met = sum(row["state"] == "pass" for row in rows)
+    return [(f"The candidate fails no listed requirement; it passes {met} of {len(rows)}.", "requirements")]
+
+
+def _contenders(record: Record) -> list[tuple[str, str]]:
+    sides = record["policies"][0]["contenders"]
+    permitted = sum(side["point"] is not None for side in sides)
+    return [
+        (
+            f"Of {len(sides)} contender(s) {permitted} can be set to a permitted point under the primary policy.",
+            "policies",
+        )
+    ]
+
+
+def _robustness(record: Record) -> list[tuple[str, str]]:
+    return [(robustness_words(record), "robustness")] if "robustness" in record else []
+
+
+def _counts(record: Record) -> list[tuple[str, str]]:
+    verdict = record["verdict"]
+    return [
+        (
+            f"{verdict['inputs_with_effect']} input(s) move the result, {verdict['inputs_without_range']} of them "
+            "without a stated range.",
+            "moves",
+        )
+    ]

@@ -20,6 +20,7 @@ __all__ = [
     "robustness_words",
     "uncertainty_words",
     "verdict_text",
+    "without_range",
 ]
 
 _PREFIXES = (
@@ -126,6 +127,16 @@ def probability(found: Mapping[str, float], draws: int) -> str:
     return f"{found['value']:.{digits}f} ± {found['error']:.{digits}f}"
 
 
+def without_range(record: Mapping[str, Any]) -> str:
+    """Say how many inputs no probability of the record has drawn, because no range is stated."""
+    without = record["verdict"]["inputs_without_range"]
+    if not without:
+        return "every input that moves the result has one"
+    if without == 1:
+        return "1 input without a range stays at its value and counts as decisive"
+    return f"{without} inputs without a range stay at their value and each counts as decisive"
+
+
 def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
     """Say how probable the required advantage is under the stated ranges, and what carries it."""
     found = record.get("uncertainty")
@@ -135,7 +146,7 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
     reaches, better = (probability(found[key], found["draws"]) for key in ("reaches", "above_one"))
     lines = [
         f"Under the stated ranges ({found['draws']} draws, seed {found['seed']}): an advantage of {required:g} is "
-        f"{found['word']}, probability {reaches}; more than 1: {better}. "
+        f"{found['word']}, probability {reaches}; more than 1: {better}; {without_range(record)}. "
         f"The ranges of {found['judgement']} of {found['inputs']} inputs are judgement or invented."
     ]
     if found["without_candidate"] > 0.0:
@@ -143,7 +154,10 @@ def uncertainty_words(record: Mapping[str, Any]) -> list[str]:
     if found["reaches_at_open_ends"] is not None:
         keys = ", ".join(row["key"] for row in found["bounds"])
         at_ends = probability(found["reaches_at_open_ends"], found["draws"])
-        lines.append(f"  Stated as bounds: {keys}; at their open ends the probability is {at_ends}.")
+        lines.append(
+            f"  Stated as bounds: {keys}; at their open ends the probability is {at_ends} (under the stated "
+            f"ranges; {without_range(record)})."
+        )
     if found["constant"]:
         least = f" by as much as {found['constant_below']:.0e} of it" if "constant_below" in found else ""
         return [*lines, f"  No drawn input moves the advantage{least}."]

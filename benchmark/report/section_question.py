@@ -235,6 +235,7 @@ _WHERE = {
     "ladder": "ladder of the reference",
     "nodes": "node pairs",
     "next-measurement": "what to measure",
+    "robustness": "robustness",
 }
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 import re
 from pathlib import Path
 
@@ -12,9 +13,12 @@ from benchmark.record.findings import findings
 from benchmark.record.load import load_study
 from benchmark.record.ratio_only import ratio_only
 from benchmark.record.run import run_study
-from benchmark.record.text import probability
+from benchmark.record.text import probability, uncertainty_words
 from benchmark.sets.study import DrawSettings
 from tests.fixed_displacement import fixed_displacement
+from tests.studies import hub
+
+NUMBER = re.compile(r"(?<![\w.-])\d+(?:\.\d+)?(?:e[+-]?\d+)?")
 
 
 @pytest.fixture(scope="module")
@@ -33,11 +37,94 @@ def test_three_to_six_sentences_with_their_place(record, tmp_path: Path):
     assert all(row["text"].endswith(".") for row in found)
 
 
+def _numbers(node) -> set[float]:
+    """Every number of a record, the lengths of its lists, and the numbers inside its names."""
+    if isinstance(node, dict):
+        return set().union(*map(_numbers, node.values())) if node else set()
+    if isinstance(node, list):
+        return {float(len(node))}.union(*map(_numbers, node))
+    if isinstance(node, bool) or node is None:
+        return set()
+    if isinstance(node, str):
+        return {float(found) for found in NUMBER.findall(node)}
+    return {abs(float(node)), 100.0 * abs(float(node))}
+
+
+def _strays(texts, record) -> list[str]:
+    """Numbers of sentences that no number of the record rounds to, at the digits they are printed with."""
+    held = [number for number in _numbers(record) if math.isfinite(number)]
+    printed = [word for text in texts for word in NUMBER.findall(text)]
+    digits = [len(word.partition("e")[0].replace(".", "").lstrip("0")) or 1 for word in printed]
+    decimals = [len(word.partition(".")[2]) for word in printed]
+    return [
+        word
+        for word, some, places in zip(printed, digits, decimals, strict=True)
+        if not any(float(f"{n:.{some}g}") == float(word) or round(n, places) == float(word) for n in held)
+    ]
+
+
 def test_every_number_is_one_of_the_record(record):
-    text = " ".join(row["text"] for row in record["findings"])
+    texts = [row["text"] for row in record["findings"]]
+    rest = {key: value for key, value in record.items() if key != "findings"}
+    assert _strays(texts, rest) == []
+    assert len([word for text in texts for word in NUMBER.findall(text)]) >= 12
+    assert _strays(["an advantage of 2.718281828"], rest) == ["2.718281828"]
+    text = " ".join(texts)
     assert "is 2 (reference / candidate), which reaches the required 1.5" in text
-    assert f"probability of {record['uncertainty']['reaches']['value']:.3f}"[:19] in text
     assert not re.search(r"\btimes (less|more|lower|better)\b", text)
+
+
+def _bare(record, without: bool):
+    """The record as it is when no side or not the candidate has a permitted point, and nothing was drawn."""
+    primary = record["policies"][0]
+    contenders = [{**side, "point": None if without else side["point"]} for side in primary["contenders"]]
+    gone = {**primary, "candidate": {**primary["candidate"], "point": None}, "contenders": contenders, "strongest": ""}
+    more = {"verdict": {**record["verdict"], "advantage": None, "moves": []}, "policies": [gone]}
+    return {**record, **more, "uncertainty": None, "ladder": [], "nodes": [], "requirements": []}
+
+
+@pytest.mark.parametrize("without", [False, True])
+def test_three_findings_also_where_no_advantage_exists(record, without: bool):
+    bare = _bare(record, without)
+    found = findings(bare)
+    assert 3 <= len(found) <= 6
+    assert _strays([row["text"] for row in found], bare) == [] or not without
+    side = "no side has" if without else "the candidate has no"
+    assert found[0]["text"].startswith(f"No advantage exists: {side}")
+    unknown = [{**record["requirements"][0], "state": "unknown"}] if record["requirements"] else []
+    assert 3 <= len(findings({**bare, "requirements": unknown})) <= 6
+    old = {key: value for key, value in bare.items() if key != "robustness"}
+    assert len(findings(old)) == 3
+
+
+def test_a_required_time_that_nothing_meets_gives_three_findings(tmp_path: Path):
+    path = hub().write(tmp_path)
+    policy = 'primary = "iso-delay"\nrequired_time = { value = 1, unit = "fs" }'
+    path.write_text(path.read_text(encoding="utf-8").replace('primary = "minimum-energy"', policy), encoding="utf-8")
+    study, library = load_study(path)
+    made = run_study(study, library, created="2026-01-31T00:00:00Z")
+    assert made["verdict"]["advantage"] is None
+    assert (
+        made["findings"][0]["text"] == "No advantage exists: no side has a permitted point under the policy iso-delay."
+    )
+    assert 3 <= len(made["findings"]) <= 6
+
+
+@pytest.mark.parametrize(
+    ("without", "words"),
+    [
+        (0, "every input that moves the result has one"),
+        (1, "1 input without a range stays at its value and counts as decisive"),
+        (7, "7 inputs without a range stay at their value and each counts as decisive"),
+    ],
+)
+def test_a_probability_says_what_was_not_drawn_in_its_sentence(record, without, words):
+    changed = {**record, "verdict": {**record["verdict"], "inputs_without_range": without}}
+    claimed = next(row["text"] for row in findings(changed) if "probability" in row["text"])
+    assert f"(under the stated ranges; {words})" in claimed
+    answer = uncertainty_words(changed)[0]
+    assert answer.startswith("Under the stated ranges")
+    assert words in answer.partition(". The ranges of")[0]
 
 
 def test_they_follow_the_record(record):
