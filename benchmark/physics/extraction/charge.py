@@ -7,7 +7,7 @@ import math
 
 import numpy as np
 
-from benchmark.physics.extraction.points import LEAST, Points, read_at
+from benchmark.physics.extraction.points import LEAST, Points, jumps_in, read_at
 from benchmark.physics.extraction.result import (
     READING,
     SCATTER,
@@ -40,10 +40,21 @@ def scatter_of(x: Array, y: Array) -> tuple[float, float]:
     -------
     tuple of float
         Root mean square of the third divided differences, each normalised to the variance of one reading: a cubic has
-        none. Neighbouring differences share points; at equal steps their correlations -0.75, 0.3 and -0.05 leave
-        (points - 3)/2.3 of them independent.
+        none. Differences across a jump are left out. Neighbouring differences share points; at equal steps their
+        correlations -0.75, 0.3 and -0.05 leave 1 in 2.3 of them independent.
+
+    Raises
+    ------
+    CannotExtract
+        Jumps leave no four points beside each other.
     """
-    x4, y4 = (np.lib.stride_tricks.sliding_window_view(one, 4) for one in (x, y))
+    across = np.zeros(x.size - 1, dtype=np.bool_)
+    across[jumps_in(x, y, "linear")] = True
+    whole = ~np.lib.stride_tricks.sliding_window_view(across, 3).any(axis=-1)
+    if not whole.any():
+        what = "the curve jumps so often that no four neighbouring points tell their scatter"
+        raise CannotExtract(what, allowed="four points without a jump between them", hint="measure more points")
+    x4, y4 = (np.lib.stride_tricks.sliding_window_view(one, 4)[whole] for one in (x, y))
     apart = x4[:, :, None] - x4[:, None, :]
     apart[:, range(4), range(4)] = 1.0
     weights = 1.0 / apart.prod(axis=-1)
@@ -51,7 +62,7 @@ def scatter_of(x: Array, y: Array) -> tuple[float, float]:
     differences = (weights * y4).sum(axis=-1)
     size = float(np.sqrt(np.mean(differences**2)))
     rounding = 8.0 * np.finfo(np.float64).eps * float(np.max(np.abs(y)))
-    return (size if size > rounding else 0.0), max(1.0, (x.size - 3) / _OVERLAP)
+    return (size if size > rounding else 0.0), max(1.0, int(whole.sum()) / _OVERLAP)
 
 
 def charge_from_capacitance(points: Points, low: float, high: float, accuracy: Accuracy | None = None) -> Extracted:

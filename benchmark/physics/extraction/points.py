@@ -2,7 +2,8 @@
 
 Between two neighbouring points a curve is a straight line on its scale: linear, or the logarithm of the measured
 column. How far the true curve may lie from it is taken from a parabola through the nearest points: its curvature gives
-the error of the straight line, its residuals the scatter of a reading. The parabola is used for the uncertainty alone.
+the error of the straight line, its residuals the scatter of a reading. The parabola is used for the uncertainty alone,
+and never reaches across a jump.
 """
 
 from __future__ import annotations
@@ -32,7 +33,7 @@ from benchmark.physics.extraction.result import (
     listed,
 )
 
-__all__ = ["LEAST", "Crossing", "Nearby", "Points", "Scale", "crossing", "crossings", "nearby", "read_at"]
+__all__ = ["LEAST", "Crossing", "Nearby", "Points", "Scale", "crossing", "crossings", "jumps_in", "nearby", "read_at"]
 
 Scale = Literal["linear", "log"]
 
@@ -40,6 +41,10 @@ Scale = Literal["linear", "log"]
 LEAST = 4
 #: points whose parabola gives scatter and curvature at a place
 NEAREST = 7
+#: a change between neighbouring points is a jump when it exceeds that of the steps beside it this many times
+JUMP = 5.0
+#: steps on either side of a change that it is compared with
+BESIDE = 3
 BRACKETED = (
     "the level lies between a reading and a bound: the middle of the two places, give or take half their distance"
 )
@@ -142,8 +147,48 @@ class Nearby:
     freedom: int
 
 
-def nearby(points: Points, at: float, scale: Scale, most: int = NEAREST) -> Nearby:
-    """Fit a parabola to the trusted points nearest to a place.
+def jumps_in(x: Array, y: Array, scale: Scale) -> IntArray:
+    """Find where readings jump between two neighbouring points.
+
+    Parameters
+    ----------
+    x, y : array, shape (points,)
+        Rising abscissa, and readings on the scale (logarithms for "log").
+    scale : str
+        "log" or "linear".
+
+    Returns
+    -------
+    array of int
+        Left point of every jump: a change by a factor of 2 or more (linear: by half of the larger reading or more) that
+        is, as a step and as a slope, more than 5 times the largest of the up to 3 steps on either side. There must be a
+        step on either side. A curve that is steep over several points has such a neighbour at its side, so it has no
+        jump; nor has a transition that is measured with a point inside it.
+    """
+    steps, slopes = np.abs(np.diff(y)), np.abs(np.diff(y) / np.diff(x))
+    if steps.size < 3:
+        return np.zeros(0, dtype=np.int64)
+    least = math.log(2.0) if scale == "log" else 0.5 * np.maximum(np.abs(y[:-1]), np.abs(y[1:]))
+    stands_out = (steps > 0.0) & (steps >= least)
+    for sizes in (steps, slopes):
+        padded = np.pad(sizes, BESIDE)
+        before = np.lib.stride_tricks.sliding_window_view(padded, BESIDE).max(axis=-1)
+        stands_out &= sizes > JUMP * np.maximum(before[: steps.size], before[BESIDE + 1 :])
+    stands_out[[0, -1]] = False
+    return np.asarray(np.flatnonzero(stands_out), dtype=np.int64)
+
+
+def _unbroken(x: Array, jumps: IntArray, low: float, high: float) -> slice:
+    """Return the points around a span that no jump parts from it; a jump inside the span parts nothing."""
+    start = max((int(left) + 1 for left in jumps if x[left + 1] <= low), default=0)
+    stop = min((int(left) + 1 for left in jumps if x[left] >= high), default=x.size)
+    return slice(start, stop)
+
+
+def nearby(
+    points: Points, at: float, scale: Scale, most: int = NEAREST, span: tuple[float, float] | None = None
+) -> Nearby:
+    """Fit a parabola to the trusted points nearest to a place, on its side of any jump.
 
     Parameters
     ----------
@@ -155,6 +200,9 @@ def nearby(points: Points, at: float, scale: Scale, most: int = NEAREST) -> Near
         "log": the natural logarithm of the readings is fitted.
     most : int
         Number of points.
+    span : tuple of float
+        What the number rests on; the place alone if left out. A jump inside of it belongs to the curve: a place between
+        the two points of a jump has both sides for its neighbours, so that its scatter spans the jump.
 
     Returns
     -------
@@ -167,12 +215,18 @@ def nearby(points: Points, at: float, scale: Scale, most: int = NEAREST) -> Near
         Fewer than four points can be used.
     """
     usable = points.trusted & ((points.y > 0.0) if scale == "log" else np.ones(points.x.shape, dtype=np.bool_))
-    x, y = points.x[usable], points.y[usable]
-    chosen = np.argsort(np.abs(x - at), kind="stable")[:most]
-    x, y = x[chosen], np.log(y[chosen]) if scale == "log" else y[chosen]
+    x, y, place = points.x[usable], points.y[usable], points.place[usable]
     if x.size < LEAST:
         what = "a curve has too few points that are readings, not bounds"
         raise CannotExtract(what, str(x.size), f"{LEAST} or more", at=points.place)
+    y = np.log(y) if scale == "log" else y
+    side = _unbroken(x, jumps_in(x, y, scale), *(span or (at, at)))
+    x, y, place = x[side], y[side], place[side]
+    if x.size < LEAST:
+        what = "the curve jumps, and the side of the jump that is read has too few points to tell their scatter"
+        raise CannotExtract(what, str(x.size), f"{LEAST} or more", "measure more points on that side", at=place)
+    chosen = np.argsort(np.abs(x - at), kind="stable")[:most]
+    x, y = x[chosen], y[chosen]
     size = float(np.max(np.abs(x - at)))
     rows = np.vander((x - at) / size, 3, increasing=True)
     found = np.linalg.lstsq(rows, y, rcond=None)[0]
@@ -392,6 +446,13 @@ def read_at(points: Points, at: float, scale: Scale, accuracy: Accuracy | None =
     )  # fmt: skip
 
 
+def _seen_jumps(points: Points, on: Array, scale: Scale) -> IntArray:
+    """Return the left point of every jump, as an index among all points; readings that are bounds have none."""
+    usable = np.flatnonzero(points.trusted & np.isfinite(on))
+    found = usable[jumps_in(points.x[usable], on[usable], scale)]
+    return np.asarray(found[np.isin(found + 1, usable)], dtype=np.int64)
+
+
 def _reading_parts(
     points: Points,
     at: float,
@@ -406,7 +467,8 @@ def _reading_parts(
     """Parts of the uncertainty of one reading; on a log scale they are relative until multiplied by the value."""
     near = nearby(points, at, scale)
     x = points.x
-    first, last = max(left - (left == right), 0), min(right + (left == right), x.size - 1)
+    side = _unbroken(x, _seen_jumps(points, on, scale), at, at)
+    first, last = max(left - (left == right), side.start), min(right + (left == right), side.stop - 1)
     slope = (on[last] - on[first]) / (x[last] - x[first]) if np.isfinite(on[last] - on[first]) else 0.0
     parts = (
         Part(SCATTER, near.scatter * math.hypot(share, 1.0 - share), near.freedom),

@@ -147,7 +147,7 @@ def minimum_swing(
     best = int(np.argmax(slopes * (1.0 if last.rising else -1.0)))
     slope = abs(float(slopes[best]))
     middle = float(windows_v[best].mean())
-    near = nearby(points, middle, "log")
+    near = nearby(points, middle, "log", span=(float(windows_v[best][0]), float(windows_v[best][-1])))
     error = near.scatter / LN10 / math.sqrt(float(spread[best]))
     width, rise = float(np.ptp(windows_v[best])), abs(float(slopes[best])) * float(np.ptp(windows_v[best]))
     parts = gathered((Part(SCATTER, error / slope**2, near.freedom), *_end_parts(width, rise, stated)))
