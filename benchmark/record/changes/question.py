@@ -34,8 +34,9 @@ def other_changes(old: State, new: State) -> list[dict[str, str]]:
     program.
     """
     rows = asked_changes(old.study, new.study)
-    for kind, make in (("option", _options), ("file", _files), ("method", _method), ("draws", _draws)):
+    for kind, make in (("option", _options), ("file", _files), ("method", _method)):
         rows += text_changes(make(old.study), make(new.study), kind)
+    rows += text_changes(_draws(old.record), _draws(new.record), "draws")
     rows += text_changes(*_constants(old.record, new.record), "constant")
     return rows + text_changes(_program(old.record), _program(new.record), "program")
 
@@ -107,8 +108,10 @@ def _method(study: Study) -> dict[str, str]:
     return rows
 
 
-def _draws(study: Study) -> dict[str, str]:
-    return {"draws": _words(study.draws.number), "seed": _words(study.draws.seed)}
+def _draws(record: Mapping[str, Any]) -> dict[str, str]:
+    """What was drawn, which may be other than the study file states."""
+    drawn = record.get("uncertainty")
+    return {name: "none" if drawn is None else str(drawn[name]) for name in ("draws", "seed")}
 
 
 def _program(record: Mapping[str, Any]) -> dict[str, str]:

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
+import re
 from collections.abc import Iterator, Mapping
 from typing import Any
 
-__all__ = ["result_changes"]
+__all__ = ["is_table", "result_changes"]
 
 Record = Mapping[str, Any]
 #: numbers of a design point -> unit
@@ -41,6 +42,8 @@ def result_changes(old: Record, new: Record) -> tuple[list[dict[str, Any]], list
         if name in before and name in after and one == two:
             same.append(name)
             continue
+        if one is None and two is None:
+            continue  # stated by neither, though only one of them has the row
         rows.append({"result": name, "unit": unit, **_ends(one, two), "factor": _factor(one, two)})
     return rows, same
 
@@ -54,6 +57,11 @@ def _shown(value: Any) -> Any:
     if isinstance(value, dict):
         return "a table"
     return f"table of {len(value)} rows" if isinstance(value, list) else value
+
+
+def is_table(shown: Any) -> bool:
+    """Tell whether what is shown of an end stands for a whole table."""
+    return isinstance(shown, str) and re.fullmatch(r"a table|table of \d+ rows", shown) is not None
 
 
 def _factor(one: Any, two: Any) -> float | None:
