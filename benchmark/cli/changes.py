@@ -77,8 +77,9 @@ def blocks(found: Row, *, additive: bool = False) -> list[Block]:
     elif found["probability"] is not None:
         shown.append(Note(f"{title}, not split: {found['probability']['note']}."))
     shown.append(_table(words.chain_table(found), "Between inputs and result of the candidate: nothing changed."))
-    if found["results"]:
-        shown.append(_table(words.result_table(found)))
+    results = words.result_table(found)
+    shown += [_table(results)] if results.rows else []
+    shown += [Note(text)] if (text := words.result_words(found)) else []
     return [*shown, Note(words.identical_words(found))]
 
 

@@ -10,8 +10,8 @@ from benchmark.report.figure import Chart
 from benchmark.report.words import is_number, number
 
 __all__ = [
-    *("Block", "Bullets", "Cell", "Code", "Figure", "Group", "Groups", "Notice", "Pairs", "Paragraph", "Section"),
-    *("Table", "plain"),
+    *("Block", "Bullets", "Cell", "Code", "Figure", "Folded", "Group", "Groups", "Notice", "Pairs", "Paragraph"),
+    *("Section", "Table", "plain"),
 ]
 
 #: characters of a word that still fits a column
@@ -61,6 +61,15 @@ class Bullets:
     items: tuple[str, ...]
     strong: str = ""
     kind: str = "bullets"
+
+
+@dataclass(frozen=True)
+class Folded:
+    """A list behind one line that says what it holds; opened by a click."""
+
+    summary: str
+    items: tuple[str, ...]
+    kind: str = "folded"
 
 
 @dataclass(frozen=True)
@@ -131,7 +140,7 @@ class Groups:
     kind: str = "groups"
 
 
-Block = Paragraph | Notice | Bullets | Pairs | Code | Table | Figure | Groups
+Block = Paragraph | Notice | Bullets | Folded | Pairs | Code | Table | Figure | Groups
 
 
 @dataclass(frozen=True)

@@ -7,7 +7,7 @@ from typing import Any
 
 from benchmark.record.changes import words
 from benchmark.record.changes.words import Print, Worded
-from benchmark.report.blocks import Block, Cell, Figure, Notice, Pairs, Paragraph, Section, Table, plain
+from benchmark.report.blocks import Block, Cell, Figure, Folded, Notice, Pairs, Paragraph, Section, Table, plain
 from benchmark.report.words import amount, number
 
 __all__ = ["PAGE", "change_sentence", "changed"]
@@ -64,7 +64,9 @@ def changed(record: Record, picture: Figure | None, parts: Figure | None) -> lis
     results = words.result_table(change, PAGE)
     if results.rows:
         blocks.append(_table("change-results", results))
-    blocks.append(Paragraph(words.identical_words(change)))
+    blocks += [Paragraph(text)] if (text := words.result_words(change, PAGE)) else []
+    same = words.identical_words(change)
+    blocks.append(Folded(same, tuple(change["identical"])) if change["identical"] else Paragraph(same))
     return [Section("change", TITLE, tuple(blocks))]
 
 

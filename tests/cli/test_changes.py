@@ -67,10 +67,14 @@ def test_text_names_inputs_parts_chain_and_what_is_identical(evenload: Run, reco
         "+69.13 aJ",
         "new inputs at the old supply",
         "251.2 kohm",
-        "Results identical to the last bit",
-        "contender stated-reference: energy",
+        "Why now (1)",
+        "Why now (2)",
     ):
         assert text in words, text
+    same = len(json.loads(evenload("changes", *records, "--format", "json").out)["identical"])
+    assert same > 10
+    assert f"Results identical to the last bit: {same}." in ran.out, "their names are in csv and json"
+    assert "contender stated-reference: energy" not in words
     assert all(len(line) <= 100 for line in ran.out.splitlines())
 
 
@@ -89,6 +93,20 @@ def test_draws_on_both_sides_are_split(evenload: Run, two):
     ran = evenload("changes", *two, "--draws", "32")
     assert ran.status == 0, ran.err
     assert "part of the moved best estimates" in ran.out
+
+
+def test_draws_that_only_one_side_has_are_a_setting_and_no_result(evenload: Run, two, tmp_path: Path):
+    assert evenload("run", two[0], "--out", "a", "--quiet", "--draws", "32", "--seed", "5").status == 0
+    assert evenload("run", two[0], "--out", "b", "--quiet", "--draws", "0").status == 0
+    ran = evenload("changes", "a", "b")
+    assert ran.status == 0, ran.err
+    rows = [line.split() for line in ran.out.splitlines() if line.startswith("  draws ")]
+    assert ["draws", "draws", "32", "none"] in rows
+    assert ["draws", "seed", "5", "none"] in rows
+    found = json.loads(evenload("changes", "a", "b", "--format", "json").out)
+    drawn = {row["result"]: (row["old"], row["new"]) for row in found["results"] if row["result"].startswith("draws")}
+    assert "draws: reaches" in drawn
+    assert all(old is not None and new is None for old, new in drawn.values())
 
 
 def test_another_question(evenload: Run, records, tmp_path: Path):

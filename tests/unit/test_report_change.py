@@ -23,6 +23,7 @@ from benchmark.record.changes.words import (
     link_table,
     part_tables,
     result_table,
+    result_words,
 )
 from benchmark.record.ratio_only import ratio_only
 from benchmark.report.change_parts import change_parts
@@ -392,8 +393,9 @@ def test_probability_is_split_into_moved_and_narrowed():
 def test_unchanged_results_and_unchanged_inputs_are_named():
     record = remeasured()
     page = html.unescape(page_of_remeasured())
-    assert f"Results identical to the last bit ({len(record['change']['identical'])}):" in page
-    assert "declared-point: contender stated-reference: energy;" in page
+    summary = f"<summary>Results identical to the last bit: {len(record['change']['identical'])}.</summary>"
+    folded = page[page.index(summary) :]
+    assert "<li>declared-point: contender stated-reference: energy</li>" in folded[: folded.index("</details>")]
 
     def none(made: dict[str, Any]) -> None:
         made["change"] |= {"inputs": [], "results": [], "chain": [], "attribution": made["change"]["attribution"][:1]}
@@ -402,6 +404,28 @@ def test_unchanged_results_and_unchanged_inputs_are_named():
     page = report_page(altered(record, none))
     assert "No input changed." in page
     assert "Between inputs and result of the candidate nothing changed." in page
+
+
+def test_results_that_differ_below_the_printed_digits_and_whole_tables_are_counted():
+    """0.455812345 V and 0.455812346 V print the same; table against table says nothing; a table that is gone does."""
+    rows = [
+        {"result": "supply", "unit": "V", "old": 0.455812345, "new": 0.455812346, "factor": 1.000000002},
+        {"result": "energy", "unit": "J", "old": 1.0e-18, "new": 2.0e-18, "factor": 2.0},
+        {"result": "curve", "unit": "", "old": "table of 62 rows", "new": "table of 62 rows", "factor": None},
+        {"result": "elasticities", "unit": "", "old": "a table", "new": "a table", "factor": None},
+        {"result": "ladder", "unit": "", "old": "table of 3 rows", "new": None, "factor": None},
+    ]
+    record = altered(remeasured(), lambda r: r["change"].update(results=rows))
+    for how in (PLAIN, PAGE):
+        assert [row[0] for row in result_table(record["change"], how).rows] == ["energy", "ladder"]
+        said = result_words(record["change"], how)
+        assert said.startswith("Results: 1 more differ only below the printed digits; 2 whole tables differ.")
+    assert said in report_page(record)
+    assert {row["name"]: row["old"] for row in change_rows(record["change"]) if row["section"] == "result"} == {
+        row["result"]: row["old"] for row in rows
+    }
+    listed = altered(remeasured(), lambda r: r["change"].update(results=rows[1:2]))
+    assert result_words(listed["change"]) == ""
 
 
 def test_an_input_leads_to_its_row_of_the_ledger_unless_it_is_gone():

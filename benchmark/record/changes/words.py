@@ -11,6 +11,7 @@ from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
+from benchmark.record.changes.results import is_table
 from benchmark.record.text import engineering
 
 __all__ = [
@@ -30,6 +31,7 @@ __all__ = [
     "part_tables",
     "probability_rows",
     "result_table",
+    "result_words",
     "unsplit",
 ]
 
@@ -99,7 +101,9 @@ def answer_rows(found: Row, how: Print = PLAIN) -> list[tuple[str, str]]:
         ("Advantage", both("advantage")),
         ("Required", both("required_advantage")),
     ]
-    return rows + [("Why now", reason) for reason in verdict["reasons_new"]]
+    reasons = verdict["reasons_new"]
+    several = len(reasons) > 1
+    return rows + [(f"Why now ({i})" if several else "Why now", reason) for i, reason in enumerate(reasons, start=1)]
 
 
 def change_lines(found: Row, how: Print = PLAIN) -> list[str]:
@@ -252,17 +256,30 @@ def chain_table(found: Row, how: Print = PLAIN) -> Worded:
 
 
 def result_table(found: Row, how: Print = PLAIN) -> Worded:
-    """Return the results that changed."""
+    """Return the results whose printed digits changed; ``result_words`` counts the others."""
     rows = tuple(
-        (
-            row["result"],
-            _result(row["old"], row["unit"], how),
-            _result(row["new"], row["unit"], how),
-            _number(row["factor"], how, 5),
-        )
+        (row["result"], *ends, _number(row["factor"], how, 5))
         for row in found["results"]
+        if not _both_tables(row) and len(set(ends := _result_ends(row, how))) > 1
     )
     return Worded("Results that changed", ("result", "old", "new", "factor"), rows)
+
+
+def result_words(found: Row, how: Print = PLAIN) -> str:
+    """Count the changed results that ``result_table`` does not list; empty where it lists all."""
+    tables = sum(map(_both_tables, found["results"]))
+    small = len(found["results"]) - tables - len(result_table(found, how).rows)
+    counted = [f"{small} more differ only below the printed digits"] if small else []
+    counted += [f"{tables} whole {'table differs' if tables == 1 else 'tables differ'}"] if tables else []
+    return f"Results: {'; '.join(counted)}. Of numbers, csv and json have all digits." if counted else ""
+
+
+def _both_tables(row: Row) -> bool:
+    return is_table(row["old"]) and is_table(row["new"])
+
+
+def _result_ends(row: Row, how: Print) -> tuple[str, str]:
+    return _result(row["old"], row["unit"], how), _result(row["new"], row["unit"], how)
 
 
 def _result(value: Any, unit: str, how: Print) -> str:
@@ -272,9 +289,8 @@ def _result(value: Any, unit: str, how: Print) -> str:
 
 
 def identical_words(found: Row) -> str:
-    """Name every result that is the same to the last bit."""
-    identical = found["identical"]
-    return f"Results identical to the last bit ({len(identical)}): {'; '.join(identical) or 'none'}."
+    """Count the results that are the same to the last bit; the rows, the json and the report name them."""
+    return f"Results identical to the last bit: {len(found['identical']) or 'none'}."
 
 
 def change_rows(found: Row) -> list[dict[str, Any]]:
