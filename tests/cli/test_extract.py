@@ -84,7 +84,7 @@ def test_the_figure_shows_points_bounds_and_fits(ending: str, evenload: Run, tmp
         text = " ".join("".join(item.itertext()) for item in root.iter() if item.tag.endswith("text"))
         assert "current of the switched path per width [A/um]" in text
         assert "voltage of the control terminal [V]" in text
-        assert "threshold extrapolated 0.7081 ± 0.0045 V" in text
+        assert "threshold extrapolated 0.7081 ± 0.0093 V" in text
 
 
 def test_the_points_of_the_figure_are_those_of_the_file():

@@ -8,7 +8,7 @@ import numpy as np
 from numpy.lib.stride_tricks import sliding_window_view
 
 from benchmark.physics.extraction.lines import line_fit
-from benchmark.physics.extraction.points import LEAST, Crossing, Points, crossing
+from benchmark.physics.extraction.points import LEAST, Crossing, Points, crossing, nearby
 from benchmark.physics.extraction.result import (
     READING,
     SCATTER,
@@ -27,6 +27,8 @@ __all__ = ["extrapolated_threshold", "hysteresis_window", "threshold_at_current"
 
 #: slopes this close to the largest count as equal to it: rounding only
 ROUNDING = 1e-9
+#: a slope this many standard errors of the difference below the largest may have been chosen by scatter alone
+CHOICE = 2.0
 
 
 def _read(points: Points, one: Crossing, level: float) -> Extracted:
@@ -89,8 +91,9 @@ def extrapolated_threshold(
         V_T = V_m - I_m/g_m - V_path/2, with the least-squares line through the neighbours whose slope g_m is largest.
         Linear extrapolation at the largest transconductance, D. K. Schroder, Semiconductor Material and Device
         Characterization (2006), section 4.8; from memory. The uncertainty holds the scatter of those points about the
-        line and half the distance to what the neighbouring lines give. Scatter above about 0.5 per cent moves a result
-        over 3 points more than that (measured: 25 mV at 1 per cent, steps of 20 mV); take more points then.
+        line and half the distance to the farthest of what the neighbouring lines give, and the lines whose slope is
+        less than the largest by no more than 2 standard errors of the difference: scatter alone may choose between
+        them. That scatter is the larger of those about the line and about a parabola through the 7 nearest points.
 
     Raises
     ------
@@ -107,7 +110,8 @@ def extrapolated_threshold(
     windows_x, windows = sliding_window_view(x, neighbours), sliding_window_view(y, neighbours)
     dx = windows_x - windows_x.mean(axis=-1, keepdims=True)
     dy = windows - windows.mean(axis=-1, keepdims=True)
-    slopes = (dx * dy).sum(axis=-1) / (dx**2).sum(axis=-1)
+    spread = (dx**2).sum(axis=-1)
+    slopes = (dx * dy).sum(axis=-1) / spread
     sizes = slopes if y[-1] > y[0] else -slopes
     if not sizes.max() > 0.0:
         what = "the current does not change along the sweep, so no line meets zero current"
@@ -124,12 +128,18 @@ def extrapolated_threshold(
         )
     fit = line_fit(windows_x[best], windows[best])
     value, error = (float(one) for one in fit.zero())
-    around = [line_fit(windows_x[k], windows[k]) for k in (best - 1, best + 1)]
-    beside = [float(line.zero()[0]) for line in around if float(line.slope) != 0.0]
     middle = float(windows_x[best].mean())
+    # the largest of slopes that scatter is chosen by the scatter: all that could be it count for the uncertainty
+    near = nearby(points, middle, "linear", span=(float(windows_x[best][0]), float(windows_x[best][-1])))
+    noise = max(near.scatter, float(fit.residual))
+    unsure = CHOICE * noise * np.sqrt(1.0 / spread + 1.0 / spread[best])
+    rivals = np.flatnonzero((sizes > 0.0) & (sizes + unsure >= sizes[best]))
+    rivals = np.union1d(rivals, [best - 1, best + 1])
+    rivals = rivals[slopes[rivals] != 0.0]
+    beside = windows_x[rivals].mean(axis=-1) - windows[rivals].mean(axis=-1) / slopes[rivals]
     parts = (
         Part(SCATTER, error, fit.freedom),
-        Part(SPACING, half_width(0.5 * max((abs(one - value) for one in beside), default=0.0))),
+        Part(SPACING, half_width(0.5 * float(np.max(np.abs(beside - value), initial=0.0)))),
         Part(READING, stated.reading * abs(middle - value) / math.sqrt(neighbours)),
         Part(SETTING, stated.setting),
     )
