@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import dataclasses
 from pathlib import Path
 
 import numpy as np
@@ -25,7 +26,7 @@ from benchmark.evaluate.batch import Batch
 from benchmark.evaluate.side import values_by_key
 from benchmark.record.load import load_study
 from benchmark.sets.joints import Joint
-from benchmark.sets.study import draws_allowed
+from benchmark.sets.study import NodePair, Study, draws_allowed
 from benchmark.sets.values import Spread, Value
 from tests.fixed_displacement import fixed_displacement
 from tests.near import near
@@ -391,6 +392,46 @@ def test_imperfect_information_by_hand():
     assert imperfect_worth(1.0, share, 0.5) == near(loss(1.0, 1.6**2 / np.hypot(1.6, 0.8)), rel=1e-3)
     assert loss(1.0, 1.6**2 / np.hypot(1.6, 0.8)) == near(0.2049, rel=0, abs=5e-5)  # EVSI of the handbook example
     assert imperfect_worth(1.0, share, 1.0e6) == near(0.0, abs=1e-6)
+
+
+#: S8, M = 1.5: mu = ln(2.000 / 1.5); s of ln(advantage); the error ratio r at which the worth of a normal prior
+#: narrowed to s / sqrt(1 + r^2) is 0.001 below that of perfect information, solved by hand from the loss function
+ENOUGH = {"film-switch.actuator_coefficient": (0.4, 0.12833), "film-switch.input_capacitance": (-0.2, 0.2785)}
+
+
+@pytest.mark.parametrize("key", ENOUGH)
+def test_the_precision_beyond_which_it_stops_mattering(key: str, tmp_path: Path):
+    effect, exact = ENOUGH[key]
+    mu, s = np.log(2.0 / 1.5), abs(effect)
+
+    def worth(sd: float) -> float:
+        return float(sd * stats.norm.pdf(mu / sd) - mu * stats.norm.sf(mu / sd))
+
+    assert worth(s) - worth(s / np.hypot(1.0, exact)) == near(1.0e-3, rel=1e-3)
+    values = values_by_key(*_study_of(tmp_path))
+    found = uncertainty(task(tmp_path / "study.toml", 2**14))
+    share = next(share for share in found.shares if share.key == key)
+
+    def enough(mean: float, coefficients: np.ndarray) -> float:
+        given = dataclasses.replace(share, coefficients=coefficients)
+        law = dataclasses.replace(found, mean_log=Estimate(mean, 0.0), shares=(given,))
+        return next_measurements(law, 1.5, (), values)[0].enough
+
+    # with the exact expansion: only the points of the quadrature stand between the two
+    assert enough(np.log(2.0), np.array([effect, 0.0, 0.0, 0.0])) == near(exact, rel=2e-4)
+    # from draws: the scatter of the expansion is all that is added; the middle one of five seeds
+    drawn = []
+    for seed in range(5):
+        other = uncertainty(dataclasses.replace(task(tmp_path / "study.toml"), plan=plan_of(2**14, seed)))
+        mine = next(share for share in other.shares if share.key == key)
+        drawn.append(enough(other.mean_log.value, mine.coefficients))
+    assert np.median(drawn) == near(exact, rel=0.02)
+    assert max(drawn) / min(drawn) < 1.08
+
+
+def _study_of(folder: Path) -> tuple[Study, NodePair]:
+    study, _ = load_study(fixed_displacement().write(folder))
+    return study, study.pair(study.headline)
 
 
 def test_measurements_with_a_cost_come_by_worth_for_it(tmp_path: Path):
