@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 from benchmark.api.batch_files import Stamps, files_read, stamps
 from benchmark.api.batch_options import taken_over
+from benchmark.api.batch_processes import mapped
 from benchmark.api.changes import OTHER, STUDY, toml_kind
 from benchmark.errors import EvenloadError, InputRefused, UsageError
 
@@ -195,7 +196,7 @@ def batch(
     )
     rows: list[StudyState] = []
     files: Stamps = {}
-    for row, read in _mapped(work, paths, jobs):
+    for row, read in mapped(work, paths, jobs):
         rows.append(row)
         files |= read
         if told is not None:
@@ -231,22 +232,6 @@ def _places_differ(names: Sequence[Path]) -> None:
             message = f"{seen[place]} and {name} would have one record folder, {place}; rename one of them"
             raise UsageError(message)
         seen[place] = name
-
-
-def _mapped(work: Callable[[Path], Done], paths: Sequence[Path], jobs: int) -> Iterable[Done]:
-    if jobs == 1:
-        yield from map(work, paths)
-        return
-    from concurrent.futures import ProcessPoolExecutor
-    from multiprocessing import get_context
-
-    # a fresh interpreter: threads of the numeric libraries do not survive a fork
-    with ProcessPoolExecutor(min(jobs, len(paths)), mp_context=get_context("spawn")) as pool:
-        try:
-            yield from pool.map(work, paths)
-        except BaseException:
-            pool.shutdown(cancel_futures=True)
-            raise
 
 
 def _one(
