@@ -163,7 +163,7 @@ def batch(
     jobs : int
         Studies run at once, each in a process of its own; no digit depends on their number.
     told : callable, optional
-        Told the number of studies done and of all.
+        Told the number of studies done, at first 0, and of all.
 
     Returns
     -------
@@ -196,6 +196,8 @@ def batch(
     )
     rows: list[StudyState] = []
     files: Stamps = {}
+    if told is not None:
+        told(0, len(paths))
     for row, read in mapped(work, paths, jobs):
         rows.append(row)
         files |= read

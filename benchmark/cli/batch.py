@@ -11,7 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 import typer
 
-from benchmark.cli.commands import check_folders, refuse_idle_draws
+from benchmark.cli.commands import check_folders, refuse_idle_draws, time_left
 from benchmark.cli.forms import check_form, echo_csv, echo_json
 from benchmark.errors import UsageError
 
@@ -55,7 +55,7 @@ def batch_command(
 
     while True:
         seen = look() if watch else {}
-        found = api.batch(folder, since=since, created=freeze_time or None, told=_told, **options)
+        found = api.batch(folder, since=since, created=freeze_time or None, told=_Told(), **options)
         _print(found, form)
         if not watch:
             return found.status
@@ -72,10 +72,17 @@ def _wait(seen: dict[str, tuple[int, int]], look: Callable[[], dict[str, tuple[i
         time.sleep(PAUSE)
 
 
-def _told(done: int, of: int) -> None:
-    if sys.stderr.isatty():
-        sys.stderr.write(f"\r\x1b[K{done} of {of} studies" if done < of else "\r\x1b[K")
-        sys.stderr.flush()
+class _Told:
+    """Progress on standard error: a line that rewrites itself on a terminal, nothing elsewhere."""
+
+    def __init__(self) -> None:
+        self.started = time.perf_counter()
+
+    def __call__(self, done: int, of: int) -> None:
+        if sys.stderr.isatty():
+            left = time_left(time.perf_counter() - self.started, done / of)
+            sys.stderr.write(f"\r\x1b[K{done} of {of} studies{left}" if done < of else "\r\x1b[K")
+            sys.stderr.flush()
 
 
 def _print(found: Batched, form: str) -> None:

@@ -17,6 +17,7 @@ import pytest
 from benchmark.api.batch import batch, studies_in
 from benchmark.api.batch_files import files_read, input_files
 from benchmark.api.session import load_study
+from benchmark.cli.batch import _Told
 from benchmark.sets.library import shipped_nodes
 from tests.cli.conftest import Ran, read
 from tests.five_studies import five_studies
@@ -85,6 +86,27 @@ def test_an_internal_fault_stays_with_its_study(tmp_path: Path, monkeypatch: pyt
     assert [row.state for row in found.rows] == ["failed"] * 5
     assert found.status == 3
     assert found.rows[0].message.startswith("internal fault (ZeroDivisionError")
+
+
+def test_progress_tells_the_studies_done_and_the_time_left(monkeypatch: pytest.MonkeyPatch):
+    """On a terminal; 2 of 8 studies took 30 s, so the other 6 take 90 s."""
+    terminal = io.StringIO()
+    monkeypatch.setattr(terminal, "isatty", lambda: True)
+    monkeypatch.setattr("sys.stderr", terminal)
+    clock = iter([100.0, 100.0, 130.0, 220.0])
+    monkeypatch.setattr("benchmark.cli.batch.time.perf_counter", lambda: next(clock))
+    told = _Told()
+    for done in (0, 2, 8):
+        told(done, 8)
+    lines = terminal.getvalue().split("\r\x1b[K")
+    assert lines == ["", "0 of 8 studies", "2 of 8 studies, about 2 min left", ""]
+
+
+def test_studies_are_told_as_they_are_done(tmp_path: Path):
+    only(tmp_path, "s1", "s2")
+    said: list[tuple[int, int]] = []
+    batch(tmp_path, told=lambda done, of: said.append((done, of)))
+    assert said == [(0, 2), (1, 2), (2, 2)]
 
 
 def test_several_processes_change_no_digit(tmp_path: Path):
