@@ -236,6 +236,7 @@ def hub(
     relay_delay: str = "100",
     residual: str = "0.05",
     wake: str = "3.0",
+    low_leakage_delay: str = "1.0",
 ) -> Inputs:
     """Scenario S1: a leakage-free relay against two flavours of a transistor, at 100 kHz and depth 20."""
     supplies = {"fast": "0.6", "low-leakage": "0.7"}
@@ -291,7 +292,7 @@ def hub(
     }
     sets = {
         "technologies/fast": _hub_switch("fast", "1.0", "0.6", "100", "0.1"),
-        "technologies/low-leakage": _hub_switch("low-leakage", "1.0", "0.7", "1", "0.1"),
+        "technologies/low-leakage": _hub_switch("low-leakage", "1.0", "0.7", "1", low_leakage_delay),
         "technologies/relay": _hub_switch("relay", "0.5", "2.0", "0", relay_delay),
         "wires/no-wires": wires("no-wires", ["n1"], "0.0", "0.0", "0.0"),
     }

@@ -349,8 +349,9 @@ def opportunity(
     Returns
     -------
     Needed
-        Rows of kind "today", "point", "boundary" (exact crossings of 0.5, 1, the level and 10) and "class" (usual place
-        of product classes, common practice, no source).
+        Rows of kind "today", "point", "boundary" (exact crossings of 0.5, 1, the level and 10), "jump" (where the
+        advantage jumps over such a level because a contender or a better design point ceases to be permitted) and
+        "class" (usual place of product classes, common practice, no source).
 
     Raises
     ------
@@ -366,6 +367,8 @@ def opportunity(
     for value, points_on in found.boundary.items():
         listed = ", ".join(f"{found.second.text(y)} at {x:.4g} s" for x, y in points_on)
         facts.append((f"boundary of advantage {value:.4g}", listed or "none on the map"))
+        if jumped := ", ".join(f"{found.second.text(y)} at {x:.4g} s" for x, y in found.jumps[value]):
+            facts.append((f"jumps over advantage {value:.4g}", f"{jumped}: what is permitted changes there"))
     won = float((found.advantage >= level).mean())
     facts.append((f"share of the map with {level:.4g} or more", f"{won:.0%} of {found.advantage.size} points"))
     return Needed(heading_of(view, trials), tuple(facts), MAP_COLUMNS, tuple(map_rows(found)))

@@ -2,11 +2,13 @@
 
 At every point both sides are optimised anew and the advantage is taken against the strongest contender there. The
 boundary of a level consists of exact crossings: along the second axis at every deadline, and along the deadline at
-every value of the second axis. Boxes of product classes are usual figures, common practice, no source.
+every value of the second axis. Where a contender drops out the advantage jumps over a level; such places bound a region
+too and are kept apart. Boxes of product classes are usual figures, common practice, no source.
 """
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -15,7 +17,7 @@ from numpy.typing import NDArray
 
 from benchmark.catalogue.product_boxes import PRODUCT_BOXES
 from benchmark.decide.axes import DEADLINE, Axis, find_axis, known_axes
-from benchmark.decide.profile import Line, profiles
+from benchmark.decide.profile import Crossing, Line, profiles
 from benchmark.decide.trials import Trials
 from benchmark.errors import UsageError
 
@@ -57,8 +59,9 @@ class ClassBox:
 class OpportunityMap:
     """Advantages over (value of the second axis, deadline); nan where ``states`` says who has no permitted point.
 
-    ``boundary``: level -> (deadline, value) of every crossing found. ``today``: deadline, value and advantage of the
-    study itself.
+    ``boundary``: level -> (deadline, value) of every crossing found. ``jumps``: the same where the advantage jumps over
+    the level without taking it, because a contender or a better design point ceases to be permitted. ``today``:
+    deadline, value and advantage of the study itself.
     """
 
     deadline: Axis
@@ -70,6 +73,7 @@ class OpportunityMap:
     meets: NDArray[np.bool_]
     states: tuple[tuple[str, ...], ...]
     boundary: dict[float, tuple[tuple[float, float], ...]]
+    jumps: dict[float, tuple[tuple[float, float], ...]]
     boxes: tuple[ClassBox, ...]
     today: tuple[float, float, float]
 
@@ -112,25 +116,12 @@ def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), c
     size = (len(along), len(across))
     names = [answers.names[position] if position >= 0 else "" for position in answers.strongest]
     states = [answers.state(row) for row in range(len(names))]
-    boundary = {
-        level: tuple(
-            sorted(
-                [
-                    (float(x), crossing.x)
-                    for x, profile in zip(across, up, strict=True)
-                    for crossing in profile.crossings_of(level)
-                    if crossing.kind == "root"
-                ]
-                + [
-                    (crossing.x, float(y))
-                    for y, profile in zip(along, over, strict=True)
-                    for crossing in profile.crossings_of(level)
-                    if crossing.kind == "root"
-                ]
-            )
-        )
-        for level in wanted_levels
-    }
+    crossed = [
+        ((float(x), crossing.x), crossing) for x, line in zip(across, up, strict=True) for crossing in line.crossings
+    ]
+    crossed += [
+        ((crossing.x, float(y)), crossing) for y, line in zip(along, over, strict=True) for crossing in line.crossings
+    ]
     return OpportunityMap(
         deadline,
         second,
@@ -140,7 +131,8 @@ def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), c
         _rows(names, size[1]),
         answers.meets.reshape(size),
         _rows(states, size[1]),
-        boundary,
+        _places(crossed, wanted_levels, "root"),
+        _places(crossed, wanted_levels, "jump"),
         _boxes(kind),
         (deadline.best, second.best, float(trials.best.advantage[0])),
     )
@@ -149,6 +141,16 @@ def opportunity_map(trials: Trials, kind: str, levels: tuple[float, ...] = (), c
 def contours(required: float) -> tuple[float, ...]:
     """Return the levels of a map, in order, each once."""
     return tuple(sorted({*CONTOURS, required}))
+
+
+def _places(
+    crossed: Sequence[tuple[tuple[float, float], Crossing]], levels: Sequence[float], kind: str
+) -> dict[float, tuple[tuple[float, float], ...]]:
+    """Return the places of the crossings of one kind, level by level."""
+    return {
+        level: tuple(sorted(place for place, found in crossed if found.level == level and found.kind == kind))
+        for level in levels
+    }
 
 
 def _rows(texts: list[str], width: int) -> tuple[tuple[str, ...], ...]:
@@ -164,7 +166,7 @@ def _boxes(kind: str) -> tuple[ClassBox, ...]:
 
 
 def map_rows(found: OpportunityMap) -> list[dict[str, Any]]:
-    """Return rows ready for drawing: kind "today", "point", "boundary" or "class"."""
+    """Return rows ready for drawing: kind "today", "point", "boundary", "jump" or "class"."""
 
     def row(kind: str, deadline: float, value: float, **more: Any) -> dict[str, Any]:
         blank = dict.fromkeys(MAP_COLUMNS, "")
@@ -186,6 +188,8 @@ def map_rows(found: OpportunityMap) -> list[dict[str, Any]]:
         ]
     for level, points in found.boundary.items():
         rows += [row("boundary", x, y, advantage=level, level=level) for x, y in points]
+    for level, points in found.jumps.items():
+        rows += [row("jump", x, y, level=level, state="the advantage jumps over the level") for x, y in points]
     for box in found.boxes:
         rows.append(
             row(

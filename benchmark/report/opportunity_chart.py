@@ -31,6 +31,8 @@ _LINES: dict[str, Row] = {
     "below": {"strokeWidth": 1.2, "strokeDash": [2, 3]},
     "further": {"strokeWidth": 1.2, "strokeDash": [9, 4]},
 }
+#: an edge at which the advantage jumps: no level is taken there
+_JUMP: Row = {"color": "#D55E00", "strokeWidth": 1.8, "strokeDash": [6, 3]}
 
 
 def opportunity_charts(record: Record, width: float = WIDTH, height: float = HEIGHT) -> list[Chart]:
@@ -62,16 +64,15 @@ def _chart(record: Record, block: Record, width: float, height: float) -> Chart:
     hatched = _infeasible(canvas, plotted)
     classes = _classes(canvas, record, [row for row in shown if row["kind"] == "class"])
     _points(canvas, plotted, required)
+    jumps = _jumps(canvas, shown, placer)
     labels = _boundary(canvas, shown, required, placer)
     placed = placer.place([f"this study: {_advantage(today)}"], [here], bold=True)
     labels += [Label(placed, INK, True)] if placed else []
     labels += _named(hatched, classes, placer)
     spots = Spots(*MARGINS[:2])
-    for row in shown:
-        if row["kind"] in ("point", "boundary", "today"):
-            place = x.pixel(row["deadline_s"]), y.pixel(row["value"])
-            if row["kind"] == "today" or (row["kind"] == "boundary" and row["level"] in (1.0, required)):
-                spots.mark(*place, shown.index(row), _said(row))
+    crossed = [row for row in shown if row["kind"] == "boundary" and row["level"] in (1.0, required)]
+    for row in [*([today] if today in shown else []), *crossed, *jumps]:
+        spots.mark(x.pixel(row["deadline_s"]), y.pixel(row["value"]), shown.index(row), _said(row))
     canvas.symbols([here], shape="diamond", size=150, color=INK, stroke="white", strokeWidth=1.2)
     canvas.leaders(labels)
     canvas.backs(labels)
@@ -102,7 +103,10 @@ def _advantage(row: Row) -> str:
 
 
 def _said(row: Row) -> str:
-    word = "boundary" if row["kind"] == "boundary" else "this study" if row["kind"] == "today" else "point"
+    if row["kind"] == "jump":
+        over = f"jumps over {number(row['level'], 3)}"
+        return f"jump: deadline {amount(row['deadline_s'], 's', 3)}, {number(row['value'], 3)}, the advantage {over}"
+    word = "boundary" if row["kind"] == "boundary" else "this study"
     return f"{word}: deadline {amount(row['deadline_s'], 's', 3)}, {number(row['value'], 3)}, {_advantage(row)}"
 
 
@@ -210,7 +214,7 @@ def _points(canvas: Canvas, rows: Sequence[Row], required: float) -> None:
         canvas.marks(group, "deadline_s", "value", **look)
 
 
-def boundary_segments(rows: Sequence[Row], level: float) -> list[tuple[Place, Place]]:
+def boundary_segments(rows: Sequence[Row], level: float, kind: str = "boundary") -> list[tuple[Place, Place]]:
     """Join the exact crossings of a level, cell by cell of the grid on whose lines they lie.
 
     Parameters
@@ -219,6 +223,8 @@ def boundary_segments(rows: Sequence[Row], level: float) -> list[tuple[Place, Pl
         Rows of a map, of kind "point" and "boundary".
     level : float
         Advantage of the boundary.
+    kind : "boundary" or "jump"
+        Crossings that take the level, or places at which the advantage jumps over it.
 
     Returns
     -------
@@ -227,7 +233,7 @@ def boundary_segments(rows: Sequence[Row], level: float) -> list[tuple[Place, Pl
     """
     across = sorted({row["deadline_s"] for row in rows if row["kind"] == "point"})
     along = sorted({row["value"] for row in rows if row["kind"] == "point"})
-    found = [(row["deadline_s"], row["value"]) for row in rows if row["kind"] == "boundary" and row["level"] == level]
+    found = [(row["deadline_s"], row["value"]) for row in rows if row["kind"] == kind and row["level"] == level]
     pieces: list[tuple[Place, Place]] = []
     for (x0, x1), (y0, y1) in itertools.product(itertools.pairwise(across), itertools.pairwise(along)):
         inside = sorted({(x, y) for x, y in found if x0 <= x <= x1 and y0 <= y <= y1})
@@ -253,6 +259,19 @@ def _boundary(canvas: Canvas, rows: Sequence[Row], required: float, placer: Plac
     return labels
 
 
+def _jumps(canvas: Canvas, rows: Sequence[Row], placer: Placer) -> list[Row]:
+    """Draw where the advantage jumps over a level, once for all levels there; returns one row for each place."""
+    levels = sorted({row["level"] for row in rows if row["kind"] == "jump"})
+    pieces = list(dict.fromkeys(piece for level in levels for piece in boundary_segments(rows, level, "jump")))
+    ends = [[{"deadline_s": x, "value": y, "run": str(k)} for x, y in piece] for k, piece in enumerate(pieces)]
+    canvas.path([row for pair in ends for row in pair], "deadline_s", "value", **_JUMP)
+    marked = {(row["deadline_s"], row["value"]): row for row in rows if row["kind"] == "jump"}
+    canvas.marks(list(marked.values()), "deadline_s", "value", shape="square", size=12, color=_JUMP["color"])
+    for a, b in pieces:
+        placer.avoid_line([(canvas.x.pixel(x), canvas.y.pixel(y)) for x, y in (a, b)])
+    return list(marked.values())
+
+
 def _look(level: float, required: float) -> Row:
     if level == required:
         return _LINES["required"]
@@ -270,6 +289,10 @@ def _caption(rows: Sequence[Row], required: float, hidden: int) -> str:
         f"Lines join exact crossings of {listed(number(level, 3) for level in drawn)}. "
         if drawn
         else "No level that would be drawn (0.5, 1, the required advantage, 10) is crossed on the map. ",
+        "Orange dashed lines with squares: the advantage jumps over a level, because a contender or a better design "
+        "point ceases to be permitted there. "
+        if any(row["kind"] == "jump" for row in rows)
+        else "",
         "Diamond: this study. Dashed boxes: usual places of product classes (common practice, no source).",
     ]
     if any(not is_number(row["advantage"]) for row in known):

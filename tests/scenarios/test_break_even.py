@@ -260,6 +260,25 @@ def test_the_map_passes_through_the_exact_break_evens(tmp_path):
     assert boxes["always-on hub"]["state"] == "common practice, no source"
 
 
+def test_a_contender_that_drops_out_bounds_a_region_of_the_map_by_a_jump(tmp_path):
+    """Twenty stages of 300 ns: low-leakage is there from 6 us on, and the fast flavour alone before."""
+    study, _ = load_study(hub(low_leakage_delay="300.0").write(tmp_path))
+    found = opportunity_map(Trials(study, study.pair("n1")), "activity", (1.0, 2.0), 9)
+    start = 20.0 * (300e-9 + math.log(2.0) * 1e3 * 1e-15)  # delay and ln 2 R C of every stage
+    for level in (1.0, 2.0):
+        # fast: 0.36 a + 60 pW x T, low-leakage: 0.49 a + 0.7 pW x T, both against 2 a
+        lowest, highest = (leak * start / (2.0 * level - charge) for leak, charge in ((0.7e3, 0.49), (60e3, 0.36)))
+        jumped = [value for value in found.values if lowest < value < highest]
+        assert len(jumped) >= 3
+        assert sorted(value for _, value in found.jumps[level]) == jumped
+        assert [deadline for deadline, _ in found.jumps[level]] == near([start] * len(jumped), rel=1e-9)
+    rows = [row for row in map_rows(found) if row["kind"] == "jump"]
+    assert {(row["level"], row["deadline_s"], row["value"]) for row in rows} == {
+        (level, *place) for level, places in found.jumps.items() for place in places
+    }
+    assert opportunity_map(hub_trials(tmp_path / "both"), "activity", (1.0,), 5).jumps == {1.0: ()}
+
+
 def test_the_map_over_duty_passes_through_the_idle_break_even(tmp_path):
     trials = hub_trials(tmp_path, activity="0.05", idle="gated", contenders=("low-leakage",))
     found = opportunity_map(trials, "duty", (1.0,), 5)

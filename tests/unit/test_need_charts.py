@@ -244,6 +244,30 @@ def test_points_that_are_drawn_are_the_data(record, tmp_path):
         assert len((tmp_path / "chart.csv").read_text(encoding="utf-8").splitlines()) == len(chart.points) + 1
 
 
+def test_a_jump_is_drawn_as_an_edge_of_its_own_style_and_is_in_the_data(tmp_path: Path):
+    found = api.opportunity(hub(low_leakage_delay="300.0").write(tmp_path), "activity", points=7)
+    record = always_on()
+    block = next(row for row in record["need"] if row["key"] == "map-activity")
+    block |= {"rows": [dict(row) for row in found.rows]}
+    chart = charts(record)["opportunity-activity"]
+    jumps = {(row["deadline_s"], row["value"]) for row in chart.points if row["kind"] == "jump"}
+    assert len(jumps) >= 4
+    edges = [layer for layer in _layers(chart) if layer["mark"].get("strokeDash") == [6, 3]]
+    (edge,) = (layer for layer in edges if layer["mark"]["type"] == "line")
+    at_one = boundary_segments(chart.points, 1.0, "jump")
+    assert len(at_one) >= 2
+    ends = {(row["deadline_s"], row["value"]) for row in edge["data"]["values"]}
+    assert {place for piece in at_one for place in piece} <= ends <= jumps
+    (squares,) = [layer for layer in _layers(chart) if layer["mark"].get("shape") == "square"]
+    assert {(row["deadline_s"], row["value"]) for row in squares["data"]["values"]} == jumps
+    assert "Orange dashed lines with squares: the advantage jumps over a level" in chart.caption
+    assert [spot.name for spot in chart.spots if spot.name.startswith("jump: deadline 6")]
+    assert "jump" not in drawn(always_on)["opportunity-activity"].caption
+    write_csv(chart.points, tmp_path / "chart.csv")
+    lines = (tmp_path / "chart.csv").read_text(encoding="utf-8").splitlines()
+    assert sum(line.startswith("jump,") for line in lines) >= 4
+
+
 def test_sides_of_the_level_have_shapes_of_their_own():
     chart = drawn(always_on)["opportunity-activity"]
     shapes = {}
