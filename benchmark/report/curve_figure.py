@@ -88,7 +88,7 @@ def curve_chart(curves: MeasuredCurves, found: Sequence[Found]) -> Chart:
     log = of in _LOGARITHMIC
     rows = [row for sweep in sweeps for row in _rows(sweep, of, curves)]
     drawn = [row for row in rows if not log or row["b"] > 0.0]
-    x, y = _axes(curves, of, drawn, log)
+    x, y = _axes(curves, of, [*drawn, *_ends(curves, found, log)], log)
     canvas, placer = Canvas(x, y), Placer(Box(3.0, 3.0, WIDTH - 3.0, HEIGHT - 3.0))
     canvas.frame()
     for run in dict.fromkeys(row["run"] for row in drawn):
@@ -152,6 +152,20 @@ def _axes(
     if log:
         return x, _Powers.around(values, HEIGHT, "1", title, vertical=True)
     return x, _linear(values, HEIGHT, title, vertical=True)
+
+
+def _ends(curves: MeasuredCurves, found: Sequence[Found], log: bool) -> list[Row]:
+    """Points of what was read that linear axes must hold: a line may begin beyond the readings, as at spacing 0."""
+    if log:
+        return []
+    axis = curves.units.get(curves.along, "1")
+    return [
+        {"a": in_unit(a, axis), "b": in_unit(b, curves.units[one.request.of])}
+        for one in found
+        for device in one.devices
+        for a, b in zip(device.read.line_x.tolist(), device.read.line_y.tolist(), strict=True)
+        if math.isfinite(a) and math.isfinite(b)
+    ]
 
 
 def _linear(values: Sequence[float], size: float, title: str, *, vertical: bool = False) -> LinearAxis:

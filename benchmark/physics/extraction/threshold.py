@@ -151,7 +151,7 @@ def extrapolated_threshold(
         neighbours,
         (float(windows_x[best][0]), float(windows_x[best][-1])),
         line_x=line,
-        line_y=np.asarray(fit.intercept + fit.slope * line),
+        line_y=np.array([0.0, float(fit.intercept + fit.slope * line[1])]),
         used=points.place[usable[best : best + neighbours]],
         remarks=(
             f"largest of {slopes.size} slopes, each over {neighbours} neighbouring points; scatter makes a largest "
