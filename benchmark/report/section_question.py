@@ -11,6 +11,7 @@ from benchmark.record.text import answer_sentence
 from benchmark.report.blocks import Block, Bullets, Cell, Figure, Notice, Pairs, Paragraph, Section, Table, plain
 from benchmark.report.margins import margin_words
 from benchmark.report.section_change import change_sentence
+from benchmark.report.section_points import anchor_of
 from benchmark.report.words import amount, is_number, listed, number, plural, policy_name, requirement_name, volts
 
 __all__ = ["answer", "evidence_counts", "findings", "question", "requirements"]
@@ -239,10 +240,39 @@ _WHERE = {
 }
 
 
+def _rows_of(record: Record, finding: Mapping[str, str]) -> tuple[tuple[str, str], ...]:
+    """Return name and place of the rows of the page that hold the numbers of a finding; none where it has no such row.
+
+    The advantage and the parts stand where the candidate's point is worked out, an input that is named in the ledger.
+    """
+    if finding["at"] == "policies":
+        primary = record["policies"][0]
+        both = (
+            anchor_of(record, "contender", primary["strongest"]) and record["study"]["metric"] == "energy-per-operation"
+        )
+        place = anchor_of(record, "candidate", primary["candidate"]["id"], "advantage")
+        return (("row of the advantage", place),) if both and place and is_number(primary["advantage"]) else ()
+    if finding["at"] == "parts":
+        candidate = record["policies"][0]["candidate"]["id"]
+        places = [(name, anchor_of(record, "candidate", candidate, name)) for name in ("time", "energy")]
+        return tuple((f"row of the {name}", place) for name, place in places if place)
+    if finding["at"] in ("moves", "next-measurement"):
+        words = finding["text"].replace(",", " ").replace(";", " ").replace(":", " ").split()
+        named = {word.rstrip(".") for word in words}
+        ledger = enumerate(record["ledger"], start=1)
+        return tuple((row["key"], f"#value-{place}") for place, row in ledger if row["key"] in named)
+    return ()
+
+
 def findings(record: Record) -> Section:
-    """Return the findings in plain words, each with the section that holds its numbers."""
+    """Return the findings in plain words, each with the section and, where there is one, the row of its numbers."""
     rows = [
-        (row["text"], Cell(_WHERE[row["at"]], f"#{row['at']}") if row["at"] in _WHERE else Cell(row["at"]))
+        (
+            row["text"],
+            Cell(_WHERE[row["at"]], f"#{row['at']}", links=_rows_of(record, row))
+            if row["at"] in _WHERE
+            else Cell(row["at"]),
+        )
         for row in record.get("findings", ())
     ]
     caption = "Made from the numbers of this record alone"

@@ -37,6 +37,19 @@ def test_three_to_six_sentences_with_their_place(record, tmp_path: Path):
     assert all(row["text"].endswith(".") for row in found)
 
 
+def test_a_finding_leads_to_the_row_of_its_numbers(record, tmp_path: Path):
+    Result(record).report(tmp_path / "report.html")
+    page = (tmp_path / "report.html").read_text(encoding="utf-8")
+    table = page.partition('<section id="findings"')[2].partition("</section>")[0]
+    links = re.findall(r'href="#([^"]+)"', table)
+    assert all(f'id="{link}"' in page for link in links)
+    assert {"point-candidate-advantage", "point-candidate-time", "point-candidate-energy"} <= set(links)
+    told = " ".join(row["text"] for row in record["findings"] if row["at"] in ("moves", "next-measurement"))
+    named = {place for place, row in enumerate(record["ledger"], start=1) if row["key"] in told}
+    assert named
+    assert {f"value-{place}" for place in named} <= set(links)
+
+
 def _numbers(node) -> set[float]:
     """Every number of a record, the lengths of its lists, and the numbers inside its names."""
     if isinstance(node, dict):
