@@ -37,7 +37,7 @@ Array = NDArray[np.float64]
 #: independently scrambled nets from which the error is taken
 NETS = 8
 #: draws with all three values that a share is taken from, at least
-LEAST = 16
+LEAST = 8
 
 
 @dataclass(frozen=True)

@@ -111,8 +111,8 @@ def test_draws_without_an_advantage_are_left_out_and_their_share_is_said():
 
 def test_too_few_draws_with_an_advantage_are_refused_in_words():
     keys, a, b, mixed = sets(ishigami, 3, draws=64)
-    a = np.where(np.arange(64).reshape(8, 8) < 15, a, np.nan)
-    with pytest.raises(ValueError, match="0: fewer than 16 draws have an advantage in all three sets"):
+    a = np.where(np.arange(64).reshape(8, 8) < 7, a, np.nan)
+    with pytest.raises(ValueError, match="0: fewer than 8 draws have an advantage in all three sets"):
         sobol_shares(keys, a, b, mixed)
 
 
