@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from benchmark.record.text import probability, uncertainty_words
+from benchmark.record.text import probability, uncertainty_words, without_range
 from benchmark.report.blocks import Block, Bullets, Cell, Figure, Paragraph, Section, Table, plain
 from benchmark.report.words import is_number, number
 
@@ -32,7 +32,9 @@ def uncertainty(record: Record, figure: Figure) -> Section:
     if found["reaches_at_open_ends"] is not None:
         keys = ", ".join(row["key"] for row in found["bounds"])
         reached = probability(found["reaches_at_open_ends"], found["draws"])
-        blocks.insert(1, Paragraph(f"{keys}; at their open ends the probability is {reached}.", "Stated as bounds:"))
+        under = f"under the stated ranges; {without_range(record)}"
+        said = f"{keys}; at their open ends the probability is {reached} ({under})."
+        blocks.insert(1, Paragraph(said, "Stated as bounds:"))
     if found["constant"]:
         below = found.get("constant_below")
         least = "" if below is None else f" by as much as {number(below)} of it"

@@ -14,6 +14,8 @@ from benchmark.record.load import load_study
 from benchmark.record.ratio_only import ratio_only
 from benchmark.record.run import run_study
 from benchmark.record.text import probability, uncertainty_words
+from benchmark.report.blocks import Paragraph
+from benchmark.report.section_uncertainty import uncertainty
 from benchmark.sets.study import DrawSettings
 from tests.fixed_displacement import fixed_displacement
 from tests.studies import hub
@@ -138,6 +140,16 @@ def test_a_probability_says_what_was_not_drawn_in_its_sentence(record, without, 
     answer = uncertainty_words(changed)[0]
     assert answer.startswith("Under the stated ranges")
     assert words in answer.partition(". The ranges of")[0]
+    drawn = {
+        **changed["uncertainty"],
+        "reaches_at_open_ends": {"value": 0.5, "error": 0.01},
+        "bounds": [{"key": "a.b"}],
+    }
+    bounded = {**changed, "uncertainty": drawn}
+    section = uncertainty(bounded, Paragraph("figure"))
+    said = [block.text for block in section.blocks if isinstance(block, Paragraph) and "probability is" in block.text]
+    assert said == [f"a.b; at their open ends the probability is 0.500 ± 0.010 (under the stated ranges; {words})."]
+    assert f"(under the stated ranges; {words})" in uncertainty_words(bounded)[2 if drawn["without_candidate"] else 1]
 
 
 def test_they_follow_the_record(record):
