@@ -170,6 +170,16 @@ def test_another_search_is_named_and_moves_no_declared_point(tmp_path: Path):
     assert REST not in part(found, "advantage")["parts"]
 
 
+def test_the_resolution_is_of_the_coarser_search(tmp_path: Path):
+    assert change(record(), record(NEW_D))["resolution"] == 1e-6
+    search = {"supply_points": 11, "refine_relative": 1e-4}
+    study, library = load_study(fixed_displacement(*NEW_D, search=search).write(tmp_path))
+    with pytest.MonkeyPatch.context() as patch:
+        patch.setattr("benchmark.record.run.closed_form_differences", lambda *_: [])
+        coarse = run_study(study, library, created="x") | {"what_if": {}}
+    assert [change(*ends)["resolution"] for ends in ((record(), coarse), (coarse, record()))] == [1e-4, 1e-4]
+
+
 def test_report_against_report_gives_the_same_as_the_records(tmp_path: Path):
     old, new = record(), record(NEW_D)
     for name, made in (("old", old), ("new", new)):

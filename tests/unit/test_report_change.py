@@ -18,6 +18,7 @@ import pytest
 from benchmark.record.changes.words import (
     PLAIN,
     chain_table,
+    change_lines,
     change_rows,
     input_table,
     link_table,
@@ -426,6 +427,43 @@ def test_results_that_differ_below_the_printed_digits_and_whole_tables_are_count
     }
     listed = altered(remeasured(), lambda r: r["change"].update(results=rows[1:2]))
     assert result_words(listed["change"]) == ""
+
+
+@pytest.mark.parametrize("how", [PLAIN, PAGE])
+def test_a_part_that_the_search_does_not_resolve_is_credited_to_no_input(how: Any):
+    """31 as of a time of about 1 ns is 3e-8 of it, below the 1e-6 of the search; 2e-6 of it is above; 0 stays 0."""
+
+    def other(record: dict[str, Any]) -> None:
+        for row in record["change"]["attribution"]:
+            if row["quantity"] == "candidate time":
+                size = row["after"] if row["scale"] == "additive" else 1.0
+                row["parts"] = {"residue": 3e-8 * size, "real": -2e-6 * size, "nothing": 0.0}
+                row["total"] = sum(row["parts"].values())
+
+    record = altered(remeasured(), other)
+    change = record["change"]
+    assert change["resolution"] == 1e-6
+    below = "below the resolution of the search"
+    logarithms, amounts = part_tables(change, how, additive=True)
+    for table in (logarithms, amounts):
+        place = table.columns.index("candidate time")
+        rows = {row[0]: row[place] for row in table.rows}
+        assert rows["residue"] == below
+        assert below not in (rows["real"], rows["nothing"], rows["total"])
+        assert f"; {below}: less than {how.number(1e-6, 3)} of the quantity" in table.title
+    facts = {(r["section"], r["node"], r["name"]): r["part"] for r in change_rows(change) if r["section"][:4] == "part"}
+    assert facts["part, logarithm", "candidate time", "residue"] == 3e-8
+    coarse = altered(record, lambda r: r["change"].update(resolution=1e-5))["change"]
+    assert part_tables(coarse, how, additive=True)[1].rows[-1][place] == below, "a total too"
+    exact = altered(record, lambda r: r["change"].pop("resolution"))["change"]
+    assert not any(below in row for table in part_tables(exact, how, additive=True) for row in table.rows)
+
+
+def test_a_part_below_a_coarse_search_does_not_make_most_of_the_change():
+    record = altered(remeasured(), lambda r: r["change"].update(resolution=0.2))
+    lines = change_lines(record["change"])
+    assert lines[1].startswith("Most of it by film-switch.actuator_coefficient (x 0.7225)."), lines
+    assert "input_capacitance" in change_lines(remeasured()["change"])[1]
 
 
 def test_an_input_leads_to_its_row_of_the_ledger_unless_it_is_gone():

@@ -48,8 +48,9 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
     -------
     dict
         ``inputs``, ``links`` (which other values the changed ones have to fit), ``other`` (what is not a value),
-        ``results``, ``identical``, ``verdict``, ``points`` (operating
-        points before and after), ``attribution``, ``probability`` (None without draws on both sides), ``chain``,
+        ``results``, ``identical``, ``verdict``, ``points`` (operating points before and after), ``resolution``
+        (relative: a smaller part may be what is left of the search), ``attribution``, ``probability`` (None without
+        draws on both sides), ``chain``,
         ``banners``.
 
     Raises
@@ -78,6 +79,7 @@ def compare_states(old: State, new: State, *, anyway: bool = False, jobs: int = 
             "flipped": old.record["verdict"]["word"] != new.record["verdict"]["word"],
         },
         "points": operating_points(old.record, new.record),
+        "resolution": max(old.study.refine_relative, new.study.refine_relative),
         "attribution": [vars(row) for row in split],
         "probability": probability_split(old.study, new.study, (old.record, new.record), jobs),
         "chain": causal_chain(old.study, new.study),

@@ -44,6 +44,8 @@ _ENDS = ("before", "at_old_supply", "after")
 SAME = 1.0e-9
 #: a smaller part of an energy or time is the rounding of its sums
 ROUNDING = 1.0e-14
+#: said of a part that the search itself may have made
+BELOW = "below the resolution of the search"
 #: a smaller part of a logarithm is left out of sentences
 SMALL = 5.0e-4
 
@@ -112,7 +114,8 @@ def change_lines(found: Row, how: Print = PLAIN) -> list[str]:
     lines = [f"Verdict {verdict}; advantage {advantage}."]
     split = _of(found, "advantage")
     parts = sorted(split["parts"].items(), key=lambda item: -abs(item[1])) if split else []
-    named = [f"{cause} ({how.times}{how.number(math.exp(part), 4)})" for cause, part in parts if abs(part) >= SMALL]
+    least = max(SMALL, _resolution(found))
+    named = [f"{cause} ({how.times}{how.number(math.exp(part), 4)})" for cause, part in parts if abs(part) >= least]
     if named:
         more = f" and {len(named) - 3} more" if len(named) > 3 else ""
         lines.append(f"Most of it by {', '.join(named[:3])}{more}.")
@@ -184,16 +187,26 @@ def unsplit(found: Row, scale: str) -> list[str]:
 
 
 def part_tables(found: Row, how: Print = PLAIN, *, additive: bool = False) -> list[Worded]:
-    """Return the parts of the change: as logarithms with their factors, and in joules and seconds when asked for."""
+    """Return the parts of the change: as logarithms with their factors, and in joules and seconds when asked for.
+
+    A part smaller than the search resolves is no effect of its cause: it is said to be, and the rows have its digits.
+    """
+    resolution = _resolution(found)
     shown: list[Worded] = []
     for scale in ("logarithm", "additive") if additive else ("logarithm",):
         split = [item for item in found["attribution"] if item["scale"] == scale and not item["note"] and _moves(item)]
         causes = list(dict.fromkeys(cause for item in split for cause in item["parts"]))
         if not causes:
             continue
-        rows = [(cause, *(_part(item, item["parts"].get(cause, 0.0), how) for item in split)) for cause in causes]
-        rows.append(("total", *(_part(item, item["total"], how) for item in split)))
+        named = [(cause, [item["parts"].get(cause, 0.0) for item in split]) for cause in causes]
+        named.append(("total", [item["total"] for item in split]))
+        rows = [
+            (cause, *(_part(item, part, how, resolution) for item, part in zip(split, parts, strict=True)))
+            for cause, parts in named
+        ]
         title = "Parts of the change, as ln(after / before) and as factor" if scale == "logarithm" else "In J and s"
+        if any(BELOW in row for row in rows):
+            title += f"; {BELOW}: less than {how.number(resolution, 3)} of the quantity"
         shown.append(Worded(title, ("cause", *(item["quantity"] for item in split)), tuple(rows)))
     return shown
 
@@ -204,7 +217,15 @@ def _moves(item: Row) -> bool:
     return any(abs(part) > small for part in item["parts"].values())
 
 
-def _part(item: Row, part: float, how: Print) -> str:
+def _resolution(found: Row) -> float:
+    """The relative step to which the coarser of both searches finds its points; 0 where a record does not state it."""
+    return float(found.get("resolution", 0.0))
+
+
+def _part(item: Row, part: float, how: Print, resolution: float) -> str:
+    size = abs(part) / (abs(item["after"]) if item["scale"] == "additive" and item["after"] else 1.0)
+    if ROUNDING < size < resolution:
+        return BELOW
     if item["scale"] == "additive":
         if abs(part) <= ROUNDING * abs(item["after"]):
             return how.amount(0.0, item["unit"], 4)
@@ -319,6 +340,8 @@ def change_rows(found: Row) -> list[dict[str, Any]]:
     rows.append(
         {"section": "verdict", "name": "verdict", "old": found["verdict"]["old"], "new": found["verdict"]["new"]}
     )
+    if "resolution" in found:
+        rows.append({"section": "resolution", "name": BELOW.removeprefix("below the "), "part": found["resolution"]})
     for item in found["attribution"]:
         head = {"section": f"part, {item['scale']}", "node": item["quantity"], "unit": item["unit"]}
         parts = [*item["parts"].items(), ("total", item["total"])]
