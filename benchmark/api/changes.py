@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 from benchmark.api.result import Result
 from benchmark.api.views import StudyView
-from benchmark.errors import UsageError
+from benchmark.errors import EvenloadError, UsageError
 
 if TYPE_CHECKING:
     import pandas
@@ -142,6 +142,7 @@ def changes(
     from benchmark.record.changes import compare_sets, compare_states, in_record, set_state
 
     places = list(nodes)
+    _refuse_absent(old, new)
     kinds = [_kind(end) for end in (old, new)]
     if kinds.count("set") == 1:
         message = f"{old} and {new} cannot be compared: one is a set of values, the other a study or its record"
@@ -154,6 +155,24 @@ def changes(
     states = [_state(end, kind, word, told) for end, kind, word in zip((old, new), kinds, ("old", "new"), strict=True)]
     found = compare_states(*states, anyway=anyway, jobs=jobs)
     return Changes(found, in_record(states[1].record, found))
+
+
+def _refuse_absent(*ends: End) -> None:
+    """Refuse places where nothing is, all in one pass; what has a colon may be a revision, which git knows."""
+    from benchmark.record.write import absent
+
+    told = []
+    for end in dict.fromkeys(end for end in ends if isinstance(end, (str, Path))):
+        try:
+            Path(end).stat()
+        except (FileNotFoundError, NotADirectoryError):
+            if ":" not in str(end):
+                told.append(absent(Path(end)))
+        except (OSError, ValueError):
+            continue  # there is something that cannot be read: said when it is
+    if told:
+        message = "\n".join(told)
+        raise EvenloadError(message)
 
 
 def _refuse_idle(kinds: list[str], given: Mapping[str, bool]) -> None:

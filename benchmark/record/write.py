@@ -13,9 +13,9 @@ from collections.abc import Callable, Iterator, Mapping
 from pathlib import Path
 from typing import Any
 
-from benchmark.errors import EvenloadError
+from benchmark.errors import EvenloadError, nearest
 
-__all__ = ["of_this_version", "read_record", "summary", "to_json", "write_folder"]
+__all__ = ["absent", "of_this_version", "read_record", "summary", "to_json", "write_folder"]
 
 #: end of the name under which the old folder waits where two folders cannot be exchanged in one step
 _OLD = ".old"
@@ -195,6 +195,15 @@ def _is_record(folder: Path) -> bool:
     return folder.is_dir() and ((folder / "record.json").is_file() or not any(folder.iterdir()))
 
 
+def absent(path: Path) -> str:
+    """Say that there is nothing at a path, with the nearest name beside it."""
+    beside: list[str] = []
+    with contextlib.suppress(OSError):
+        beside = sorted(place.name for place in path.parent.iterdir() if not place.name.startswith("."))
+    hint = nearest(path.name, beside)
+    return f"{path}: does not exist{f'; {hint}' if hint else ''}"
+
+
 def read_record(path: Path) -> dict[str, Any]:
     """Read ``record.json`` from a folder or a file.
 
@@ -210,6 +219,8 @@ def read_record(path: Path) -> dict[str, Any]:
             message = f"{file}: is not a regular file, a record is needed"
             raise EvenloadError(message)
         record = json.loads(file.read_text(encoding="utf-8"))
+    except (FileNotFoundError, NotADirectoryError) as error:
+        raise EvenloadError(absent(file)) from error
     except (OSError, ValueError, RecursionError) as error:
         message = f"{file}: is not a readable record ({type(error).__name__})"
         raise EvenloadError(message) from error

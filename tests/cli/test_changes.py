@@ -176,9 +176,13 @@ def test_without_git(evenload: Run, tmp_path: Path, monkeypatch: pytest.MonkeyPa
 @pytest.mark.parametrize(
     ("arguments", "status", "message"),
     [
-        (("absent", "absent.toml"), 3, "absent: there is no such file; a revision is written REVISION:path"),
+        (("absent", "absent.toml"), 3, "absent: does not exist\nabsent.toml: does not exist"),
+        (("other.html", "nix"), 3, "nix: does not exist"),
+        (("other.htm", "nix"), 3, "other.htm: does not exist; did you mean 'other.html'?\nnix: does not exist"),
+        ((":", "other.html"), 2, ": and other.html cannot be compared: one is a set of values"),
+        ((":", ":"), 3, ":: does not exist; a revision of a set is written REVISION:path"),
         (("empty.html", "empty.html"), 3, "empty.html: holds no record; a report.html written by evenload run does"),
-        (("gone.html", "gone.html"), 3, "gone.html: is not a readable report"),
+        (("gone.html", "gone.html"), 3, "gone.html: does not exist"),
         (("other.html", "other.html"), 3, "other.html: record schema 7 is not the one this version reads (1)"),
         (("ratio.json", "ratio.json"), 3, "ratio.json: holds ratios only"),
         (("a", "b", "--format", "pdf"), 2, "--format: 'pdf' is not one of text, csv, json"),
@@ -298,7 +302,7 @@ def test_other_constants_are_no_change_of_an_input(evenload: Run, records, tmp_p
 @pytest.mark.parametrize(
     ("arguments", "status", "message"),
     [
-        (("run", "old/study.toml", "--since", "absent"), 3, "absent: is not a readable record (FileNotFoundError)"),
+        (("run", "old/study.toml", "--since", "absent"), 3, "absent: does not exist"),
         (("run", "old/study.toml", "--since", "old/study.toml"), 3, "study.toml: is not a readable record"),
         (("run", "old/study.toml", "--since", "a", "--ratio-only"), 2, "--since needs absolute values of both runs"),
         (("run", "old/study.toml", "--anyway"), 2, "--anyway says how to compare with an earlier record; give --since"),

@@ -40,7 +40,7 @@ def test_nothing_asked_for_and_unknown_formats_are_refused(evenload, tmp_path: P
 def test_what_is_no_record_is_refused(evenload, tmp_path: Path):
     ran = evenload("export", tmp_path, "--tables", "out")
     assert ran.status == 3
-    assert "not a readable record" in ran.err
+    assert "record.json: does not exist" in ran.err
 
 
 def test_ratios_only_from_an_ordinary_record(evenload, tmp_path: Path):

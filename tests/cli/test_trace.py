@@ -277,7 +277,7 @@ def test_a_record_that_was_tampered_with(changes: dict[str, Any], message: str, 
 @pytest.mark.parametrize(
     ("text", "message"),
     [
-        (None, "is not a readable record (FileNotFoundError)"),
+        (None, "does not exist"),
         ("{half", "is not a readable record (JSONDecodeError)"),
         ("[1]", "record schema 'list' is not the one this version reads (1)"),
         ('{"schema": 2}', "record schema 2 is not the one this version reads (1)"),

@@ -389,7 +389,7 @@ def test_wrong_places_are_named(study_file: Path, result: api.Result, tmp_path: 
         api.load_study(tmp_path / "nothing.toml")
     with pytest.raises(UsageError, match="is not a folder of sets"):
         api.load_study(study_file, [tmp_path / "nothing"])
-    with pytest.raises(EvenloadError, match="is not a readable record"):
+    with pytest.raises(EvenloadError, match=r"record\.json: does not exist"):
         api.load_result(tmp_path)
     with pytest.raises(EvenloadError, match="cannot be written"):
         result.report(tmp_path / "nowhere" / "page.html")

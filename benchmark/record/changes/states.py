@@ -19,7 +19,7 @@ from benchmark.record.changes.links import set_links
 from benchmark.record.ledger import set_rows
 from benchmark.record.load import load_study, open_library
 from benchmark.record.rerun import recreate
-from benchmark.record.write import of_this_version, read_record
+from benchmark.record.write import absent, of_this_version, read_record
 from benchmark.sets.files import read_toml
 from benchmark.sets.parameters import ParameterSet
 from benchmark.sets.sources import Source
@@ -75,6 +75,8 @@ def read_any_record(path: Path) -> dict[str, Any]:
         return read_record(path)
     try:
         text = path.read_text(encoding="utf-8")
+    except (FileNotFoundError, NotADirectoryError) as error:
+        raise EvenloadError(absent(path)) from error
     except (OSError, ValueError) as error:
         message = f"{path}: is not a readable report ({type(error).__name__})"
         raise EvenloadError(message) from error
@@ -158,7 +160,7 @@ def _set_file(place: str) -> Iterator[Path]:
         return
     revision, colon, name = place.partition(":")
     if not colon or not revision or not name:
-        message = f"{place}: there is no such file; a revision is written REVISION:path"
+        message = f"{absent(Path(place))}; a revision of a set is written REVISION:path"
         raise EvenloadError(message)
     path = PurePosixPath(name)
     top = path.parent.parent if path.parent.name in ("technologies", "wires") else path.parent
