@@ -32,13 +32,12 @@ class OverDevices:
 
     ``median``, and ``median_bound`` where it rests on bounds. ``lower_quartile`` and ``upper_quartile``: None where
     they rest on bounds. ``seen_spread``: distance of the quartiles over what it is on average for as many draws from a
-    normal distribution (``quartile_distance``). ``measured``: root mean square of what makes the numbers of single devices uncertain one by one
-    (scatter and spacing of points). ``device_spread``: what is left of the spread without it, the root of the
-    difference of squares; None where the measurement explains all of it. ``common``: root mean square of the stated
-    accuracies of reading and setting, which move all devices alike. ``median_error``: standard error of a median of so
-    many (``median_scatter``) times the spread seen, or times ``measured`` where that is larger, together with the
-    common part. ``count`` devices, ``bounds`` of
-    them known only by a bound.
+    normal distribution (``quartile_distance``). ``measured``: root mean square of what makes the numbers of single
+    devices uncertain one by one (scatter and spacing of points). ``device_spread``: what is left of the spread without
+    it, the root of the difference of squares; None where the measurement explains all of it. ``common``: root mean
+    square of the stated accuracies of reading and setting, which move all devices alike. ``median_error``: standard
+    error of a median of so many (``median_scatter``) times the spread seen, or times ``measured`` where that is larger,
+    together with the common part. ``count`` devices, ``bounds`` of them known only by a bound.
     """
 
     median: float
