@@ -167,7 +167,8 @@ def _share_rows(
 def _totals(task: DrawTask, found: Uncertainty, tied: Mapping[str, Sequence[str]]) -> list[dict[str, Any]]:
     """Total shares of the inputs that carry most, what moves together as one; empty when they cannot be told.
 
-    An input that acts only through others has no first-order share: the total shares of a few draws choose.
+    An input that acts only through others has no first-order share: the total shares of a few draws choose, where that
+    costs no more than the draws themselves; else the first-order shares do.
     """
     if found.constant:
         return []
@@ -176,8 +177,12 @@ def _totals(task: DrawTask, found: Uncertainty, tied: Mapping[str, Sequence[str]
         if not set(tied[share.key]) & set(keys):
             keys.append(share.key)
     try:
-        few = sorted(variance_shares(task, keys, CHOOSING_DRAWS), key=lambda item: -item.total)
-        chosen = [item.key for item in few if item.total > LEAST_TOTAL][:MOST_TOTALS]
+        if found.draws >= CHOOSING_DRAWS * len(keys):
+            few = sorted(variance_shares(task, keys, CHOOSING_DRAWS), key=lambda item: -item.total)
+            chosen = [item.key for item in few if item.total > LEAST_TOTAL][:MOST_TOTALS]
+        else:
+            clear = [share for share in found.shares if share.share.value > 2.0 * share.share.error]
+            chosen = [share.key for share in clear if share.key in keys][:MOST_TOTALS]
         rows = variance_shares(task, chosen, TOTAL_DRAWS) if chosen else []
     except ValueError:  # too few of these draws have an advantage
         return []
