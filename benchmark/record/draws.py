@@ -177,7 +177,7 @@ def _totals(task: DrawTask, found: Uncertainty, tied: Mapping[str, Sequence[str]
         if not set(tied[share.key]) & set(keys):
             keys.append(share.key)
     try:
-        if found.draws >= CHOOSING_DRAWS * len(keys):
+        if 2 * found.draws >= CHOOSING_DRAWS * len(keys):  # an input moved alone is one side anew
             few = sorted(variance_shares(task, keys, CHOOSING_DRAWS), key=lambda item: -item.total)
             chosen = [item.key for item in few if item.total > LEAST_TOTAL][:MOST_TOTALS]
         else:
