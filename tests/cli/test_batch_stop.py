@@ -15,7 +15,7 @@ from tests.five_studies import five_studies
 
 EVENLOAD = Path(sys.executable).parent / "evenload"
 #: seconds after which the processes have begun to draw, and those after which all must have ended
-BEGUN, PATIENCE = 8.0, 20.0
+BEGUN, PATIENCE = 8.0, 60.0
 
 
 @pytest.mark.parametrize("to_all", [True, False])
