@@ -146,7 +146,7 @@ def test_edit_run_compare_edit_back(evenload: Run, first: dict[str, bytes], tmp_
     assert files("again") == first
     found = rows(evenload, "first", "again")
     told = {row["section"] for row in found if not row["section"].startswith(("chain, ", "part, "))}
-    assert told == {"verdict", "probability", "identical"}
+    assert told == {"verdict", "probability", "identical", "resolution"}  # the last says how fine the search is
     assert all(row["old"] == row["new"] for row in found if row["section"].startswith("chain, "))
     assert set(parts(found).values()) == {0.0}
 
